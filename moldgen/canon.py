@@ -1,0 +1,50 @@
+"""Canonical JSON and content hashes: the same input gives the same bytes."""
+
+from __future__ import annotations
+
+import dataclasses
+import hashlib
+import json
+import math
+from collections.abc import Mapping
+from enum import Enum
+from pathlib import PurePath
+from typing import Any
+
+
+def plain(value: Any) -> Any:
+    """Return `value` as JSON types: dataclasses to mappings, enums to their value, floats rounded to 12 digits."""
+    if dataclasses.is_dataclass(value) and not isinstance(value, type):
+        return {f.name: plain(getattr(value, f.name)) for f in dataclasses.fields(value)}
+    if isinstance(value, Enum):
+        return plain(value.value)
+    if isinstance(value, Mapping):
+        return {str(k): plain(v) for k, v in value.items()}
+    if isinstance(value, (list, tuple)):
+        return [plain(v) for v in value]
+    if isinstance(value, PurePath):
+        return value.as_posix()
+    if isinstance(value, bool) or value is None or isinstance(value, (str, int)):
+        return value
+    if isinstance(value, float) or hasattr(value, "__float__"):
+        number = float(value)
+        if not math.isfinite(number):
+            raise ValueError(f"not a finite number: {number}")
+        return float(f"{number:.12g}") + 0.0  # + 0.0 turns -0.0 into 0.0
+    raise TypeError(f"no JSON form for {type(value).__name__}")
+
+
+def to_json(value: Any, *, indent: int | None = 2) -> str:
+    """Return canonical JSON text: keys in the order given, one trailing newline."""
+    return json.dumps(plain(value), indent=indent, ensure_ascii=False) + "\n"
+
+
+def sha256_bytes(data: bytes) -> str:
+    """Return the SHA-256 of `data` in hexadecimal."""
+    return hashlib.sha256(data).hexdigest()
+
+
+def sha256_json(value: Any) -> str:
+    """Return the SHA-256 of the canonical JSON of `value`, independent of the order of mapping keys."""
+    text = json.dumps(plain(value), sort_keys=True, ensure_ascii=False, separators=(",", ":"))
+    return sha256_bytes(text.encode())

@@ -1,0 +1,71 @@
+"""The part as read, and as it stands in the mold."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+Solid = Any
+"""A kernel solid (opaque above `moldgen.kernel`)."""
+
+Vector = tuple[float, float, float]
+Box = tuple[Vector, Vector]
+"""Lower and upper corner [mm]."""
+
+
+@dataclass(frozen=True)
+class HealNote:
+    """One thing that healing changed, with its effect on the volume [mm^3]."""
+
+    what: str
+    count: int
+    volume_change_mm3: float
+
+
+@dataclass(frozen=True)
+class Part:
+    """The plastic part in its own coordinates, before shrink [mm]."""
+
+    name: str
+    solid: Solid
+    source_sha256: str
+    volume_mm3: float
+    area_mm2: float
+    bounding_box_mm: Box
+    face_count: int
+    healed: tuple[HealNote, ...] = ()
+
+
+@dataclass(frozen=True)
+class Pull:
+    """Opening direction: unit vector in part coordinates, along which the cavity half leaves the part."""
+
+    direction: Vector
+    how_chosen: str
+
+
+@dataclass(frozen=True)
+class MoldFrame:
+    """How a point of the part becomes a point of the mold: scale about the fixed point, then rotate pull to +z.
+
+    mold = rotation @ (fixed + factors * (part - fixed)); `rotation` is row-major.
+    """
+
+    factors: Vector
+    fixed_point: Vector
+    rotation: tuple[Vector, Vector, Vector]
+
+    def to_mold(self, point: Vector) -> Vector:
+        """Return a part point [mm] in mold coordinates [mm]."""
+        scaled = [f + k * (p - f) for p, f, k in zip(point, self.fixed_point, self.factors, strict=True)]
+        return _apply(self.rotation, scaled)
+
+    def to_part(self, point: Vector) -> Vector:
+        """Return a mold point [mm] in part coordinates [mm]."""
+        columns = tuple(zip(*self.rotation, strict=True))
+        scaled = _apply(columns, point)
+        return tuple(f + (p - f) / k for p, f, k in zip(scaled, self.fixed_point, self.factors, strict=True))  # type: ignore[return-value]
+
+
+def _apply(rows: Any, point: Any) -> Vector:
+    return tuple(sum(a * b for a, b in zip(row, point, strict=True)) for row in rows)  # type: ignore[return-value]

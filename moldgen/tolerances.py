@@ -1,0 +1,57 @@
+"""Every epsilon of the project, with its meaning and its reason. Lengths in mm, angles in rad.
+
+The figures marked (measured) come from trials on real parts exported by several CAD systems.
+"""
+
+from __future__ import annotations
+
+from typing import Final
+
+# --- faces against the pull -----------------------------------------------------------------------------------------
+SIGN_NOISE: Final = 0.02
+"""Overhang (projected opposite-sign area / extent of that region) below which the sign of n.d is noise (measured)."""
+
+ISLAND_OVERHANG: Final = 0.06
+"""An island of faces whose overhang stays below this may change sides to join its neighbours."""
+
+VERTICAL_SINE: Final = 1e-5
+"""|n.d| below which a triangle counts as parallel to the pull."""
+
+# --- trapped volume -------------------------------------------------------------------------------------------------
+NOISE_THICKNESS: Final = 0.03
+"""Trapped pieces and overlaps thinner than this (2V/A) are tessellation noise (measured)."""
+
+RUB_THICKNESS: Final = 0.1
+"""Trapped pieces between NOISE_THICKNESS and this rub on opening: reported; thicker ones are undercuts."""
+
+OPEN_OVERLAP: Final = 0.03
+"""Largest thickness of an overlap between two bodies that a proof accepts."""
+
+SMALL_VOLUME: Final = 1e-6
+"""mm^3: overlaps with less volume are ignored before their thickness is asked for."""
+
+# --- meshes ---------------------------------------------------------------------------------------------------------
+MESH_DEFLECTION: Final = 0.05
+MESH_ANGLE: Final = 0.2
+"""Working mesh: sag and angle between neighbouring segments."""
+
+PROOF_DEFLECTION: Final = 0.02
+PROOF_ANGLE: Final = 0.12
+"""Mesh of the proofs: at 0.05 / 0.3 a good part failed falsely (measured)."""
+
+# --- topology -------------------------------------------------------------------------------------------------------
+SHORT_EDGE: Final = 0.01
+"""Splitting tools shorter than this are dropped: one of 0.001 mm among 38 hung the splitter for ever (measured)."""
+
+ON_PLANE: Final = 1e-6
+"""A vertex this close to the parting plane lies on it."""
+
+MAX_EDGE_TOLERANCE: Final = 2e-2
+"""Largest edge tolerance met in real exports that can still be honoured (measured)."""
+
+# --- volumes --------------------------------------------------------------------------------------------------------
+BALANCE: Final = 1e-6
+"""Relative volume balance cavity + core + part = block that a proof accepts."""
+
+HEAL_VOLUME: Final = 2e-4
+"""Relative volume change that healing may cause before it is refused."""
