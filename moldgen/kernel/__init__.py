@@ -1,0 +1,1 @@
+"""The only folder that imports the geometry kernel and the mesh libraries."""
