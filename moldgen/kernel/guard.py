@@ -205,7 +205,7 @@ def _new_folder(parent: Path, name: str, in_use: set[str]) -> Path:
 
 
 def _is_ours(error: Exception) -> bool:
-    """True for our own errors and mistakes; a missing result (None) handed on to the next call is the kernel's doing."""
+    """True for our own errors and mistakes; a missing result (None) handed on to a call is the kernel's doing."""
     if isinstance(error, TypeError) and "incompatible" in str(error) and "None" in str(error):
         return False
     return isinstance(error, _OURS)

@@ -45,7 +45,7 @@ def test_the_list_of_kernel_exceptions_is_not_empty():
 @pytest.mark.parametrize("foreign", kernel_exceptions(), ids=lambda c: c.__name__)
 def test_every_kernel_exception_is_mapped_and_chained(foreign):
     with (
-        pytest.raises(KernelError, match="cut the lid failed: .*faces=3") as caught,
+        pytest.raises(KernelError, match=r"cut the lid failed: .*faces=3") as caught,
         guard.operation("cut the lid", faces=3),
     ):
         raise foreign("reason")
