@@ -47,6 +47,10 @@ class Body:
         self.edge_faces = np.array(pairs, dtype=int).reshape(-1, 2)
         """The two faces of each edge, (m, 2) int."""
 
+    def like(self, solid: TopoDS_Shape) -> Body:
+        """Return a body of another solid, meshed as finely as this one."""
+        return Body(solid, self._deflection, self._angle)
+
     @cached_property
     def mesh(self) -> SurfaceMesh:
         """The welded mesh at the body's deflection."""
