@@ -6,6 +6,8 @@
       KernelError   4  the geometry kernel failed, crashed or ran out of time
       StageError    5  our bug
 
+A run that is stopped (Ctrl-C, SIGTERM) ends with 130: that is no error of ours, and Python's own KeyboardInterrupt.
+
 A failed *check* is not an error: it is a `Finding`, and the run ends with exit code 1.
 """
 
@@ -23,6 +25,23 @@ class ExitCode(IntEnum):
     PART = 3
     KERNEL = 4
     BUG = 5
+    STOPPED = 130
+
+    @property
+    def meaning(self) -> str:
+        """The one sentence that `moldgen --help` and the README print for this code."""
+        return _MEANING[self]
+
+
+_MEANING = {
+    ExitCode.OK: "all well",
+    ExitCode.CHECK_FAILED: "done, but a check or a proof failed",
+    ExitCode.SPEC: "the spec or the command line is wrong",
+    ExitCode.PART: "the part cannot be read, or cannot be molded as asked",
+    ExitCode.KERNEL: "the geometry kernel failed, crashed, or ran out of time or memory",
+    ExitCode.BUG: "a bug in moldgen",
+    ExitCode.STOPPED: "stopped by Ctrl-C or by a signal; the earlier output is untouched",
+}
 
 
 class MoldgenError(Exception):
@@ -59,9 +78,7 @@ class MoldgenError(Exception):
         return (_rebuild, (type(self), self.what, state, dict(self.__dict__)))
 
 
-def _rebuild(
-    cls: type[MoldgenError], what: str, keywords: dict[str, str], state: dict[str, object]
-) -> MoldgenError:
+def _rebuild(cls: type[MoldgenError], what: str, keywords: dict[str, str], state: dict[str, object]) -> MoldgenError:
     error = cls(what, **keywords)
     error.__dict__.update(state)
     return error
@@ -73,7 +90,7 @@ class SpecError(MoldgenError):
     exit_code = ExitCode.SPEC
 
 
-class SpecErrors(SpecError):
+class SpecErrors(SpecError):  # noqa: N818  the plural of SpecError
     """Several mistakes of one spec, reported together."""
 
     def __init__(self, errors: list[SpecError] | str, **_: str) -> None:
