@@ -10,6 +10,7 @@ from OCP.BRepAdaptor import BRepAdaptor_Surface
 from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Shape
 
 from moldgen.kernel.mesh import SurfaceMesh, surface_mesh, tessellate
+from moldgen.kernel.rays import nearest_triangle
 from moldgen.kernel.topology import edge_faces_map, edge_points, faces_of, same_order
 from moldgen.tolerances import MESH_ANGLE, MESH_DEFLECTION
 
@@ -132,7 +133,5 @@ class Body:
 
     def nearest_face(self, point: np.ndarray) -> tuple[int, float]:
         """Return the face nearest to a point and its distance [mm], measured on the mesh."""
-        from moldgen.kernel.rays import nearest_triangle  # here: the ray library costs a second that most runs spare
-
         triangle, distance = nearest_triangle(self.mesh, np.asarray(point, dtype=float))
         return int(self.mesh.face[triangle]), distance

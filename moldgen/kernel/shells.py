@@ -1,7 +1,7 @@
 """Solids from faces that already share their edges: neither sewing nor booleans.
 
-Real exports carry edge tolerances up to 2e-2 mm, which a tight sewing cannot honour and a boolean may heal wrongly. Faces
-that share edges need neither: only their orientation has to agree, which a walk over the edges settles.
+Real exports carry edge tolerances up to 2e-2 mm, which a tight sewing cannot honour and a boolean may heal wrongly.
+Faces that share edges need neither: only their orientation has to agree, which a walk over the edges settles.
 """
 
 from __future__ import annotations
@@ -80,8 +80,8 @@ def shells_from_faces(faces: Sequence[TopoDS_Face]) -> list[ShellResult]:
     """Return one solid for each connected group of faces, in order of their first face."""
     neighbours, _, _ = _neighbours(_edge_uses(faces), len(faces))
     _, component, _ = _orient(neighbours)
-    groups = [[f for f, c in zip(faces, component, strict=True) if c == k] for k in range(max(component, default=-1) + 1)]
-    return [solid_from_faces(g) for g in groups]
+    count = max(component, default=-1) + 1
+    return [solid_from_faces([f for f, c in zip(faces, component, strict=True) if c == k]) for k in range(count)]
 
 
 def _edge_uses(faces: Sequence[TopoDS_Face]) -> list[tuple[TopoDS_Edge, list[tuple[int, bool]]]]:

@@ -1,0 +1,101 @@
+"""Vertices, edges, wires and faces made by hand, sharing what they have in common."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+from OCP.BRepBuilderAPI import (
+    BRepBuilderAPI_MakeEdge,
+    BRepBuilderAPI_MakeFace,
+    BRepBuilderAPI_MakeVertex,
+    BRepBuilderAPI_MakeWire,
+)
+from OCP.gp import gp_Dir, gp_Pln, gp_Pnt
+from OCP.ShapeFix import ShapeFix_Face
+from OCP.TopAbs import TopAbs_FORWARD
+from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Vertex, TopoDS_Wire
+
+from moldgen.errors import KernelError
+from moldgen.kernel.measure import is_valid
+from moldgen.kernel.topology import shape_list
+
+
+def point(p: Sequence[float] | np.ndarray) -> gp_Pnt:
+    """Return a kernel point."""
+    return gp_Pnt(float(p[0]), float(p[1]), float(p[2]))
+
+
+def vertex_at(p: Sequence[float] | np.ndarray) -> TopoDS_Vertex:
+    """Return a new vertex [mm]."""
+    return BRepBuilderAPI_MakeVertex(point(p)).Vertex()
+
+
+def line_edge(start: TopoDS_Vertex, end: TopoDS_Vertex) -> TopoDS_Edge:
+    """Return a straight edge between two vertices.
+
+    Raises
+    ------
+    KernelError : the vertices coincide
+    """
+    made = BRepBuilderAPI_MakeEdge(start, end)
+    if not made.IsDone():
+        raise KernelError("a straight edge between coincident vertices was asked for")
+    return made.Edge()
+
+
+def forward(edge: TopoDS_Edge) -> TopoDS_Edge:
+    """Return the edge in its own direction."""
+    return TopoDS.Edge_s(edge.Oriented(TopAbs_FORWARD))
+
+
+def backward(edge: TopoDS_Edge) -> TopoDS_Edge:
+    """Return the edge used the other way round."""
+    return TopoDS.Edge_s(edge.Reversed())
+
+
+def wire_of(edges: Sequence[TopoDS_Edge]) -> TopoDS_Wire:
+    """Return a wire of edges that share vertices; given order first, any order if that does not connect.
+
+    Raises
+    ------
+    KernelError : the edges do not form one wire
+    """
+    maker = BRepBuilderAPI_MakeWire()
+    for edge in edges:
+        maker.Add(edge)
+    if not maker.IsDone():
+        maker = BRepBuilderAPI_MakeWire()
+        maker.Add(shape_list(edges))
+    if not maker.IsDone():
+        raise KernelError(f"{len(edges)} edges do not form one wire")
+    return maker.Wire()
+
+
+def plane_through(origin: Sequence[float] | np.ndarray, normal: Sequence[float] | np.ndarray) -> gp_Pln:
+    """Return a kernel plane."""
+    return gp_Pln(point(origin), gp_Dir(float(normal[0]), float(normal[1]), float(normal[2])))
+
+
+def plane_face(plane: gp_Pln, outer: TopoDS_Wire, holes: Sequence[TopoDS_Wire] = ()) -> TopoDS_Face:
+    """Return a plane face inside `outer` and outside `holes`; wires may run either way round.
+
+    Raises
+    ------
+    KernelError : the kernel cannot make it
+    """
+    maker = BRepBuilderAPI_MakeFace(plane, outer, True)
+    for hole in holes:
+        maker.Add(TopoDS.Wire_s(hole))
+    if not maker.IsDone():
+        raise KernelError("no plane face inside this wire")
+    return mended_face(maker.Face())
+
+
+def mended_face(face: TopoDS_Face) -> TopoDS_Face:
+    """Return the face, its wires turned the right way round if the kernel calls it invalid."""
+    if is_valid(face):
+        return face
+    fixer = ShapeFix_Face(face)
+    fixer.FixOrientation()
+    return fixer.Face()
