@@ -5,7 +5,49 @@ The data are loaded and checked once, on first use. Nothing here is imported by 
 
 from __future__ import annotations
 
+from moldgen.catalog.eyebolts import Eyebolt, eyebolt_for, eyebolts
+from moldgen.catalog.fits import Bore, FitBand, bore, fit_band, fit_bands, fit_clearance
+from moldgen.catalog.pins import (
+    Pin,
+    core_pin_blank,
+    core_pin_series,
+    ejector_pin_down,
+    ejector_pin_series,
+    ejector_pin_up,
+)
 from moldgen.catalog.resins import Resin, resin, resin_names, resins
+from moldgen.catalog.sizes import SizeSeries, preferred_size_up, size_series
+from moldgen.catalog.steels import Steel, steel, steel_numbers, steels
 from moldgen.catalog.table import Fact, Range, Row
 
-__all__ = ["Fact", "Range", "Resin", "Row", "resin", "resin_names", "resins"]
+__all__ = [
+    "Bore",
+    "Eyebolt",
+    "Fact",
+    "FitBand",
+    "Pin",
+    "Range",
+    "Resin",
+    "Row",
+    "SizeSeries",
+    "Steel",
+    "bore",
+    "core_pin_blank",
+    "core_pin_series",
+    "ejector_pin_down",
+    "ejector_pin_series",
+    "ejector_pin_up",
+    "eyebolt_for",
+    "eyebolts",
+    "fit_band",
+    "fit_bands",
+    "fit_clearance",
+    "preferred_size_up",
+    "resin",
+    "resin_names",
+    "resins",
+    "size_series",
+    "steel",
+    "steel_numbers",
+    "steels",
+]

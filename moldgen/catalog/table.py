@@ -116,8 +116,8 @@ def rows_from_text(text: str, kind: type[R], file: str) -> tuple[R, ...]:
 
 
 def key_of(name: str) -> str:
-    """Return the form in which names are compared: lower case letters and digits only."""
-    return "".join(c for c in str(name).lower() if c.isalnum())
+    """Return the form in which names are compared: lower case letters, digits and decimal points only."""
+    return "".join(c for c in str(name).lower() if c.isalnum() or c == ".")
 
 
 def _columns(raw: Mapping[str, Any], kind: type[Row], file: str) -> dict[str, Fact]:
