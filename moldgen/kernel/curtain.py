@@ -1,7 +1,7 @@
 """Vertical curtains: from a closed loop straight along the pull to its foot on a level plane.
 
-This rung of the parting surface always works. Every new edge and vertex is shared between its faces, so that shells close
-without sewing.
+This rung of the parting surface always works. Every new edge and vertex is shared between its faces, so that shells
+close without sewing.
 """
 
 from __future__ import annotations

@@ -1,0 +1,194 @@
+"""Faces that close a loop of edges: plane, on a neighbour's surface, or filled."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from OCP.BRep import BRep_Tool
+from OCP.BRepBuilderAPI import BRepBuilderAPI_MakeFace
+from OCP.BRepFill import BRepFill_Filling
+from OCP.GeomAbs import GeomAbs_C0
+from OCP.ShapeFix import ShapeFix_Face
+from OCP.TopAbs import TopAbs_FACE
+from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Shape
+
+from moldgen.errors import KernelError
+from moldgen.kernel.body import Body
+from moldgen.kernel.build import backward, forward, plane_face, plane_through, wire_of
+from moldgen.kernel.measure import is_valid
+from moldgen.kernel.topology import directed_points, edges_of, same_order
+from moldgen.tolerances import MAX_EDGE_TOLERANCE
+
+PLANE_FIT = 1e-4
+"""mm: a loop that leaves its best plane by no more (or by its own edge tolerance) is flat."""
+
+SAME_PLANE = 1e-3
+"""mm: loops whose planes are this close share one face with holes."""
+
+Loop = Sequence[TopoDS_Edge]
+
+
+@dataclass(frozen=True)
+class FlatPatch:
+    """One plane face and the numbers of the loops that bound it: the outer one first."""
+
+    face: TopoDS_Face
+    loops: tuple[int, ...]
+
+
+@dataclass(frozen=True)
+class _Flat:
+    number: int
+    normal: np.ndarray
+    centre: np.ndarray
+    points: np.ndarray
+
+
+def flat_patches(loops: Sequence[Loop]) -> list[FlatPatch]:
+    """Return plane faces for all flat loops; loops of one plane that lie inside each other share a face with holes."""
+    flats = [f for f in (_flat(i, loop) for i, loop in enumerate(loops)) if f is not None]
+    groups: list[list[_Flat]] = []
+    for flat in flats:
+        for group in groups:
+            if _coplanar(group[0], flat):
+                group.append(flat)
+                break
+        else:
+            groups.append([flat])
+    return [patch for group in groups for patch in _nested(group, loops)]
+
+
+def host_patch(body: Body, loop: Loop) -> TopoDS_Face | None:
+    """Return a face that closes a loop on the surface of a neighbour whose boundary holds the whole loop.
+
+    The hole in a curved wall is closed by the wall's own surface. None when there is no such neighbour.
+    """
+    numbers = [body.edge_index.FindIndex(e) - 1 for e in loop]
+    if min(numbers) < 0:
+        return None
+    for face in sorted({int(f) for n in numbers for f in body.edge_faces[n]}):
+        if body.surface_kind(face) == "torus":  # a torus closes on itself both ways: the kernel picks the wrong side
+            continue
+        around = same_order(edges_of(body.faces[face]))
+        if all(around.Contains(e) for e in loop):
+            patch = _trimmed(BRep_Tool.Surface_s(body.faces[face]), loop)
+            if patch is not None and not _same_region(patch, body.faces[face]):
+                return patch
+    return None
+
+
+def filled_patch(loop: Loop) -> TopoDS_Face:
+    """Return a smooth face through the loop (the kernel's energy-minimising filling, position continuity only).
+
+    Raises
+    ------
+    KernelError : the kernel finds none that is valid
+    """
+    filling = BRepFill_Filling(3, 15, 2, False, 1e-5, 1e-4, 1e-2, 1e-1, 8, 9)
+    for edge in loop:
+        filling.Add(forward(edge), GeomAbs_C0)
+    filling.Build()
+    if not filling.IsDone():
+        raise KernelError(f"no filling for a loop of {len(loop)} edges")
+    patch = _trimmed(BRep_Tool.Surface_s(filling.Face()), loop)
+    if patch is None:
+        raise KernelError(f"the filling of a loop of {len(loop)} edges is not a valid face")
+    return patch
+
+
+def loop_points(loop: Loop, count: int) -> np.ndarray:
+    """Return points along a closed loop of directed edges, `count` per edge without its end, (n, 3) [mm]."""
+    return np.vstack([directed_points(e, count + 1)[:-1] for e in loop])
+
+
+def signed_area(plan: np.ndarray) -> float:
+    """Return the signed area of a closed polygon (n, 2): positive when it runs counter-clockwise."""
+    x, y = plan[:, 0], plan[:, 1]
+    return float(0.5 * (x * np.roll(y, -1) - y * np.roll(x, -1)).sum())
+
+
+def _flat(number: int, loop: Loop) -> _Flat | None:
+    points = np.vstack([directed_points(e, 9) for e in loop])
+    centre = points.mean(axis=0)
+    normal = np.linalg.svd(points - centre)[2][2]
+    allowed = max(PLANE_FIT, min(MAX_EDGE_TOLERANCE, 1.01 * max(BRep_Tool.Tolerance_s(e) for e in loop)))
+    if np.abs((points - centre) @ normal).max() >= allowed:
+        return None
+    normal = normal * np.sign(normal[np.argmax(np.abs(normal))])
+    return _Flat(number, normal, centre, loop_points(loop, 8))
+
+
+def _coplanar(one: _Flat, other: _Flat) -> bool:
+    parallel = abs(one.normal @ other.normal) > 1 - 1e-6
+    return bool(parallel and abs(one.normal @ (other.centre - one.centre)) < SAME_PLANE)
+
+
+def _nested(group: list[_Flat], loops: Sequence[Loop]) -> list[FlatPatch]:
+    """Sort coplanar loops into outlines and the holes directly inside them, and make the faces that are valid."""
+    normal, centre = group[0].normal, group[0].centre
+    first = np.cross(normal, [1.0, 0, 0] if abs(normal[0]) < 0.9 else [0, 1.0, 0])
+    first /= np.linalg.norm(first)
+    axes = np.column_stack([first, np.cross(normal, first)])
+    plan = {f.number: f.points @ axes for f in group}
+    area = {n: signed_area(p) for n, p in plan.items()}
+    hole_of: dict[int, int] = {}
+    for number in sorted(plan, key=lambda n: -abs(area[n])):
+        around = [
+            o for o in plan if o != number and abs(area[o]) > abs(area[number]) and _inside(plan[number], plan[o])
+        ]
+        parent = min(around, key=lambda o: abs(area[o]), default=None)
+        if parent is not None and parent not in hole_of and area[number] * area[parent] < 0:
+            hole_of[number] = parent
+    patches = []
+    plane = plane_through(centre, normal)
+    for number in plan:
+        if number in hole_of:
+            continue
+        holes = [h for h, parent in hole_of.items() if parent == number]
+        outline = loops[number] if area[number] > 0 else _turned(loops[number])
+        inner = [wire_of(loops[h] if area[h] < 0 else _turned(loops[h])) for h in holes]
+        try:
+            face = plane_face(plane, wire_of(outline), inner)
+        except KernelError:
+            continue
+        if is_valid(face):
+            patches.append(FlatPatch(face, (number, *holes)))
+    return patches
+
+
+def _inside(points: np.ndarray, polygon: np.ndarray) -> bool:
+    """True when two far-apart points of one loop lie inside another polygon."""
+    return all(_contains(polygon, points[k]) for k in (1, len(points) // 2))
+
+
+def _contains(polygon: np.ndarray, place: np.ndarray) -> bool:
+    x, y = place
+    x0, y0 = polygon[:, 0], polygon[:, 1]
+    x1, y1 = np.roll(x0, -1), np.roll(y0, -1)
+    crosses = (y0 > y) != (y1 > y)
+    rise = np.where(crosses, y1 - y0, 1.0)
+    return bool((crosses & (x < (x1 - x0) * (y - y0) / rise + x0)).sum() % 2)
+
+
+def _turned(loop: Loop) -> list[TopoDS_Edge]:
+    return [backward(e) for e in reversed(loop)]
+
+
+def _trimmed(surface: object, loop: Loop) -> TopoDS_Face | None:
+    maker = BRepBuilderAPI_MakeFace(surface, wire_of(loop), True)
+    if not maker.IsDone():
+        return None
+    fixer = ShapeFix_Face(maker.Face())
+    fixer.Perform()
+    result: TopoDS_Shape = fixer.Result()
+    face = TopoDS.Face_s(result) if result.ShapeType() == TopAbs_FACE else fixer.Face()
+    return face if is_valid(face) else None
+
+
+def _same_region(patch: TopoDS_Face, host: TopoDS_Face) -> bool:
+    """True when the patch covers the host itself instead of the hole in it."""
+    return len(edges_of(patch)) == len(edges_of(host)) and all(
+        same_order(edges_of(host)).Contains(e) for e in edges_of(patch)
+    )
