@@ -23,9 +23,10 @@ def eyebolts() -> tuple[Eyebolt, ...]:
 
 
 def eyebolt_for(mass: float) -> Eyebolt | None:
-    """Return the eyebolt for a tool of `mass` [kg] lifted along its axis; None when the table ends before.
+    """Return the eyebolt for a tool of `mass` [kg]; None when the table ends before.
 
-    One thread larger than the table asks for, as the standard advises for repeated use on changing loads.
+    Chosen by the lower column (45 deg), because a tool may hang askew, and then one thread larger, as is advised for
+    repeated use on changing loads.
 
     Raises
     ------
@@ -36,5 +37,5 @@ def eyebolt_for(mass: float) -> Eyebolt | None:
     """
     if not mass > 0:
         raise ValueError(f"a mass must be positive, got {mass} kg")
-    fitting = [bolt for bolt in eyebolts() if bolt.axial >= mass]
+    fitting = [bolt for bolt in eyebolts() if bolt.inclined >= mass]
     return fitting[1] if len(fitting) > 1 else None
