@@ -1,0 +1,155 @@
+"""A result, or an error, as text for a person and as JSON for a program."""
+
+from __future__ import annotations
+
+import textwrap
+from collections.abc import Iterator, Sequence
+from typing import Any
+
+from moldgen.canon import plain
+from moldgen.errors import ExitCode, MoldgenError, SpecErrors
+from moldgen.finding import Decision, Finding, Severity
+from moldgen.flow.job import Cell, JobResult, Table
+from moldgen.model.proof import Proof
+
+MOST_OF_A_CODE = 5
+"""So many findings of one code are shown on the terminal; the manifest and --json have them all."""
+
+CAUTIONS = (
+    "This is a first-pass layout, not a released design: it is not for manufacture before qualified people, licensed "
+    "where the law asks for it, have reviewed it. Strength, cooling, venting, wear and machine are theirs to judge.",
+    "A closing mold crushes, hot melt burns and can spurt, stored springs and pressure let go without warning, and "
+    "steel needs rated lifting gear. The rules and codes of your place come before anything said here.",
+)
+"""Own words; printed with every layout."""
+
+_ORDER = {Severity.FAILURE: 0, Severity.WARNING: 1, Severity.CAUTION: 2, Severity.NOTE: 3}
+
+
+def result_lines(result: JobResult, width: int = 100) -> list[str]:
+    """Return the lines that the terminal shows for `result`; tables may be wider than `width`, text is not."""
+    lines = [*_wrapped(result.headline, width)]
+    for table in result.tables:
+        lines += ["", *table_lines(table)]
+    if result.proofs:
+        lines += ["", *table_lines(_proof_table(result.proofs))]
+    if result.findings:
+        lines += ["", "findings", *_finding_lines(result.findings, width)]
+    if result.decisions:
+        lines += ["", "decided by moldgen", *(line for d in result.decisions for line in _decision_lines(d, width))]
+    if result.output is not None:
+        lines += ["", f"written: {result.output}"]
+    if result.first_pass:
+        lines += ["", *(line for text in CAUTIONS for line in _wrapped(text, width))]
+    return lines
+
+
+def table_lines(table: Table) -> list[str]:
+    """Return `table` as lines: a title, column names, one line a row; numbers stand to the right."""
+    texts = [[_cell(value) for value in row] for row in table.rows]
+    columns = list(zip(table.columns, *texts, strict=True))
+    widths = [max(map(len, column)) for column in columns]
+    right = [_is_numeric([row[i] for row in table.rows]) for i in range(len(widths))]
+    body = [table.columns, *texts] if texts else [("none",)]
+    return [table.title, *("  " + _row(cells, widths, right) for cells in body)]
+
+
+def error_lines(error: MoldgenError, width: int = 100) -> list[str]:
+    """Return the lines that the terminal shows for `error`; long ones are not broken, so that paths stay whole."""
+    del width
+    return [f"moldgen: {line}" if not line.startswith(" ") else line for line in str(error).splitlines()]
+
+
+def result_json(result: JobResult) -> dict[str, Any]:
+    """Return what ``--json`` prints for `result`."""
+    return {
+        "exit_code": int(result.exit_code),
+        "headline": result.headline,
+        "output": plain(result.output),
+        "tables": [plain(table) for table in result.tables],
+        "proofs": [plain(proof) | {"passed": proof.passed} for proof in result.proofs],
+        "findings": [plain(finding) for finding in sorted_findings(result.findings)],
+        "decisions": [plain(decision) for decision in result.decisions],
+        "timings_s": [{"stage": name, "seconds": round(seconds, 3)} for name, seconds in result.timings_s],
+        "cautions": list(CAUTIONS) if result.first_pass else [],
+    }
+
+
+def error_json(error: MoldgenError) -> dict[str, Any]:
+    """Return what ``--json`` prints for `error`: several errors of one spec are listed one by one."""
+    errors: list[MoldgenError] = list(error.errors) if isinstance(error, SpecErrors) and error.errors else [error]
+    keys = ("what", "where", "remedy", "evidence")
+    return {
+        "exit_code": int(error.exit_code),
+        "errors": [{"kind": type(e).__name__} | {key: getattr(e, key) for key in keys} for e in errors],
+    }
+
+
+def stopped_json() -> dict[str, Any]:
+    """Return what ``--json`` prints for a run that was stopped."""
+    return {"exit_code": int(ExitCode.STOPPED), "errors": [{"kind": "Stopped", "what": ExitCode.STOPPED.meaning}]}
+
+
+def sorted_findings(findings: Sequence[Finding]) -> list[Finding]:
+    """Return `findings` with the gravest first, else in the order the stages found them."""
+    return sorted(findings, key=lambda finding: _ORDER[finding.severity])
+
+
+def _proof_table(proofs: Sequence[Proof]) -> Table:
+    rows = [(p.verdict.value, p.name, p.figure, p.limit, p.unit, p.detail) for p in proofs]
+    return Table("proofs", ("verdict", "proof", "figure", "limit", "unit", "detail"), tuple(rows))
+
+
+def _finding_lines(findings: Sequence[Finding], width: int) -> Iterator[str]:
+    shown: dict[str, int] = {}
+    for finding in sorted_findings(findings):
+        shown[finding.code] = shown.get(finding.code, 0) + 1
+        if shown[finding.code] <= MOST_OF_A_CODE:
+            yield from _one_finding(finding, width)
+    for code, count in shown.items():
+        if count > MOST_OF_A_CODE:
+            yield f"  and {count - MOST_OF_A_CODE} more of {code}"
+
+
+def _one_finding(finding: Finding, width: int) -> Iterator[str]:
+    place = finding.where
+    if finding.at is not None:
+        point = ", ".join(f"{x:.2f}" for x in finding.at)
+        place = f"{place} (at {point})" if place else f"at {point}"
+    text = f"{finding.message} [{finding.code}]"
+    yield from _wrapped(text, width, first=f"  {finding.severity.value:8}", rest=" " * 10)
+    facts = [place] if place else []
+    if finding.value is not None:
+        limit = "" if finding.limit is None else f", limit {finding.limit:.6g} {finding.unit}".rstrip()
+        facts.append(f"{finding.value:.6g} {finding.unit}".rstrip() + limit)
+    if facts:
+        yield from _wrapped("; ".join(facts), width, first=" " * 10, rest=" " * 10)
+    if finding.remedy:
+        yield from _wrapped(f"try: {finding.remedy}", width, first=" " * 10, rest=" " * 15)
+
+
+def _decision_lines(decision: Decision, width: int) -> list[str]:
+    return _wrapped(f"{decision.topic}: {decision.choice} ({decision.why})", width, first="  ", rest="    ")
+
+
+def _wrapped(text: str, width: int, first: str = "", rest: str = "") -> list[str]:
+    return textwrap.wrap(
+        text, width, initial_indent=first, subsequent_indent=rest, break_long_words=False, break_on_hyphens=False
+    )
+
+
+def _cell(value: Cell) -> str:
+    if value is None:
+        return ""
+    if isinstance(value, bool):
+        return "yes" if value else "no"
+    return f"{value:.6g}" if isinstance(value, float) else str(value)
+
+
+def _is_numeric(values: Sequence[Cell]) -> bool:
+    return all(value is None or (isinstance(value, int | float) and not isinstance(value, bool)) for value in values)
+
+
+def _row(cells: Sequence[str], widths: Sequence[int], right: Sequence[bool]) -> str:
+    padded = (c.rjust(w) if r else c.ljust(w) for c, w, r in zip(cells, widths, right, strict=False))
+    return "  ".join(padded).rstrip()
