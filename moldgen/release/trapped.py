@@ -10,12 +10,16 @@ import numpy as np
 from moldgen.finding import Point
 from moldgen.kernel.body import Body
 from moldgen.kernel.meshsolid import MeshSolid, PieceMesh, mesh_solid, piece_mesh, thick_pieces, thickness
+from moldgen.kernel.rays import first_hits
 from moldgen.release.kinds import FaceKinds, Kind
 from moldgen.release.sweep import CAP, sweep_faces
 from moldgen.tolerances import NOISE_THICKNESS, RUB_THICKNESS
 
 SMALL_TOUCH = 1e-4
 """Area [mm^2] of a trapped piece on a face below which the face is not listed."""
+
+LOOK_OUT = 1e-3
+"""How far [mm] outside a side of a piece it is asked whether there is plastic."""
 
 MOST_POINTS = 2000
 """Points of a piece whose distance to open air is measured."""
@@ -98,14 +102,45 @@ def trapped_between(body: Body, kinds: FaceKinds, part: MeshSolid, above: MeshSo
     The face numbers of `part` are taken for those of `body`; so are those of the sweeps for places where they differ.
     """
     inside = (above ^ below) - part
-    found = [_measured(body, kinds, piece) for piece in thick_pieces(inside, NOISE_THICKNESS)]
+    thick = thick_pieces(inside, NOISE_THICKNESS)
+    meshes = [piece_mesh(piece) for piece in thick]
+    sides = _open_sides(body, meshes)
+    found = [_measured(body, kinds, p, m, s) for p, m, s in zip(thick, meshes, sides, strict=True)]
     noise = max(0.0, float(inside.volume()) - sum(p.volume_mm3 for p in found))
     found.sort(key=lambda p: (-round(p.volume_mm3, 6), tuple(round(c, 6) for c in p.at)))
     return Trapped(tuple(found), noise, part, above, below)
 
 
-def _measured(body: Body, kinds: FaceKinds, piece: MeshSolid) -> TrapPiece:
-    mesh = piece_mesh(piece)
+def _open_sides(body: Body, meshes: list[PieceMesh]) -> list[np.ndarray]:
+    """Return for each piece the ends of its sides towards open air, seen along the pull, (s, 2, 2) [mm].
+
+    A wall of a sweep bounds the piece either there or where it stands against a vertical face of the body: just
+    outside it, the next face along the pull looks up if that place is inside the body.
+    """
+    walls = [m.vertices[m.triangles[m.face > CAP]] for m in meshes]
+    if not any(len(w) for w in walls):
+        return [np.zeros((0, 2, 2)) for _ in meshes]
+    corners = np.concatenate(walls)
+    normal = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
+    outward = normal / np.maximum(np.linalg.norm(normal, axis=1), 1e-30)[:, None]
+    rays, triangles, _ = first_hits(body.mesh, corners.mean(axis=1) + LOOK_OUT * outward, (0.0, 0.0, 1.0))
+    hit = body.mesh.corners[triangles]
+    looks_up = np.cross(hit[:, 1] - hit[:, 0], hit[:, 2] - hit[:, 0])[:, 2] > 0.0
+    closed = np.zeros(len(corners), dtype=bool)
+    closed[rays[looks_up]] = True
+    ends = np.split(~closed, np.cumsum([len(w) for w in walls])[:-1])
+    return [_longest_edges(wall[free]) for wall, free in zip(walls, ends, strict=True)]
+
+
+def _longest_edges(corners: np.ndarray) -> np.ndarray:
+    """Return the longest edge of each triangle, seen along the pull, without repeats, (s, 2, 2)."""
+    edges = np.stack([corners[:, :, :2], np.roll(corners, -1, axis=1)[:, :, :2]], axis=2)
+    longest = np.argmax(np.linalg.norm(edges[:, :, 1] - edges[:, :, 0], axis=2), axis=1)
+    chosen = edges[np.arange(len(edges)), longest].reshape(-1, 4)
+    return np.unique(np.round(chosen, 6), axis=0).reshape(-1, 2, 2)
+
+
+def _measured(body: Body, kinds: FaceKinds, piece: MeshSolid, mesh: PieceMesh, sides: np.ndarray) -> TrapPiece:
     corners = mesh.vertices[mesh.triangles]
     area = 0.5 * np.linalg.norm(np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0]), axis=1)
     own = mesh.face < len(body.faces)
@@ -118,45 +153,38 @@ def _measured(body: Body, kinds: FaceKinds, piece: MeshSolid) -> TrapPiece:
         grip=Grip.RUB if thin < RUB_THICKNESS else Grip.UNDERCUT,
         volume_mm3=float(piece.volume()),
         thickness_mm=thin,
-        depth_mm=_depth(mesh),
+        depth_mm=_depth(mesh, sides),
         height_mm=float(np.ptp(mesh.vertices[:, 2])),
-        at=_place(mesh, corners, area, own, kinds),
+        at=_place(corners, area, mesh.face, kinds),
         faces=tuple((int(f), float(touched[f])) for f in listed),
     )
 
 
-def _place(mesh: PieceMesh, corners: np.ndarray, area: np.ndarray, own: np.ndarray, kinds: FaceKinds) -> Point:
+def _place(corners: np.ndarray, area: np.ndarray, face: np.ndarray, kinds: FaceKinds) -> Point:
     """Return the middle of the largest triangle on the face that the piece touches most, vertical faces last."""
-    if not own.any():
-        own = np.ones_like(own)
-    candidates = np.flatnonzero(own)
-    face = np.where(mesh.face < len(kinds.kind), mesh.face, 0)[candidates]
-    leaning = kinds.kind[face] != Kind.VERTICAL
-    if leaning.any():
-        candidates, face = candidates[leaning], face[leaning]
-    most = np.argmax(np.bincount(face, area[candidates]))
-    candidates = candidates[face == most]
-    x, y, z = corners[candidates[np.argmax(np.round(area[candidates], 9))]].mean(axis=0)
+    count = len(kinds.kind)
+    own = np.flatnonzero(face < count)
+    leaning = own[kinds.kind[face[own]] != Kind.VERTICAL]
+    chosen = leaning if len(leaning) else own if len(own) else np.arange(len(face))
+    most = int(np.argmax(np.bincount(face[chosen], area[chosen])))
+    chosen = chosen[face[chosen] == most]
+    x, y, z = corners[chosen[np.argmax(np.round(area[chosen], 9))]].mean(axis=0)
     return float(x), float(y), float(z)
 
 
-def _depth(mesh: PieceMesh) -> float:
-    """Return the largest horizontal distance from the piece's boundary to its open sides, the walls of the sweeps."""
+def _depth(mesh: PieceMesh, sides: np.ndarray) -> float:
+    """Return the largest horizontal distance from the piece's boundary to its open sides."""
     corners = mesh.vertices[mesh.triangles]
-    points = np.vstack([mesh.vertices, 0.5 * (corners + np.roll(corners, 1, axis=1)).reshape(-1, 3)])
+    edges = 0.5 * (corners + np.roll(corners, 1, axis=1)).reshape(-1, 3)
+    points = np.vstack([mesh.vertices, edges, corners.mean(axis=1)])
     points = np.unique(np.round(points[:, :2], 6), axis=0)
     points = points[:: max(1, len(points) // MOST_POINTS)]
-    wall = corners[mesh.face > CAP][:, :, :2]
-    if len(wall) == 0:  # a closed bubble: no side is open, so half its least width
+    if len(sides) == 0:  # a closed bubble: half its least width
         return 0.5 * _least_width(points)
-    ends = np.stack([wall, np.roll(wall, 1, axis=1)], axis=2).reshape(-1, 2, 2)
-    length = np.linalg.norm(ends[:, 1] - ends[:, 0], axis=1).reshape(-1, 3)
-    ends = ends.reshape(-1, 3, 2, 2)[np.arange(len(length)), np.argmax(length, axis=1)]
-    ends = np.unique(np.round(ends.reshape(-1, 4), 6), axis=0).reshape(-1, 2, 2)
     best = np.full(len(points), np.inf)
     step = max(1, 2_000_000 // max(1, len(points)))
-    for start in range(0, len(ends), step):
-        best = np.minimum(best, _distances(points, ends[start : start + step]).min(axis=1))
+    for start in range(0, len(sides), step):
+        best = np.minimum(best, _distances(points, sides[start : start + step]).min(axis=1))
     return float(best.max())
 
 
