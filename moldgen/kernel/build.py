@@ -55,18 +55,14 @@ def backward(edge: TopoDS_Edge) -> TopoDS_Edge:
 
 
 def wire_of(edges: Sequence[TopoDS_Edge]) -> TopoDS_Wire:
-    """Return a wire of edges that share vertices; given order first, any order if that does not connect.
+    """Return a wire of edges that share vertices, given in any order.
 
     Raises
     ------
     KernelError : the edges do not form one wire
     """
     maker = BRepBuilderAPI_MakeWire()
-    for edge in edges:
-        maker.Add(edge)
-    if not maker.IsDone():
-        maker = BRepBuilderAPI_MakeWire()
-        maker.Add(shape_list(edges))
+    maker.Add(shape_list(edges))  # all at once: one by one, the kernel forgets that an early edge did not connect
     if not maker.IsDone():
         raise KernelError(f"{len(edges)} edges do not form one wire")
     return maker.Wire()

@@ -1,0 +1,74 @@
+"""Curves and points at which a level plane, or vertical lines, divide the faces of a body."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+from OCP.BRepAdaptor import BRepAdaptor_Curve
+from OCP.BRepAlgoAPI import BRepAlgoAPI_Section
+from OCP.gp import gp_Dir, gp_Pln, gp_Pnt
+from OCP.TopExp import TopExp
+from OCP.TopoDS import TopoDS_Edge, TopoDS_Face, TopoDS_Shape
+from scipy.optimize import brentq
+
+from moldgen.errors import KernelError
+from moldgen.kernel.build import line_edge, vertex_at
+from moldgen.kernel.split import split_shape
+from moldgen.kernel.topology import compound_of, edges_of, same_order, vertex_point, vertices_of
+from moldgen.tolerances import SHORT_EDGE
+
+SAMPLES = 33
+
+
+def level_curves(faces: Sequence[TopoDS_Face], level: float) -> list[TopoDS_Edge]:
+    """Return the edges in which faces meet the plane z = level [mm]."""
+    section = BRepAlgoAPI_Section(compound_of(faces), gp_Pln(gp_Pnt(0, 0, level), gp_Dir(0, 0, 1)), False)
+    section.Build()
+    if not section.IsDone():
+        raise KernelError(f"no section at height {level:.4f}")
+    return [e for e in edges_of(section.Shape()) if chord(e) > SHORT_EDGE]
+
+
+def level_points(edge: TopoDS_Edge, level: float) -> list[TopoDS_Shape]:
+    """Return vertices where an edge passes through the plane z = level, its ends excepted."""
+    curve = BRepAdaptor_Curve(edge)
+    parameters = np.linspace(curve.FirstParameter(), curve.LastParameter(), SAMPLES)
+
+    def height(t: float) -> float:
+        return float(curve.Value(float(t)).Z()) - level
+
+    heights = [height(t) for t in parameters]
+    ends = [curve.Value(float(t)) for t in (parameters[0], parameters[-1])]
+    found = []
+    for i in range(SAMPLES - 1):
+        if heights[i] * heights[i + 1] < 0:
+            place = curve.Value(float(brentq(height, parameters[i], parameters[i + 1], xtol=1e-13)))
+            if all(place.Distance(end) > 1e-4 for end in ends):
+                found.append(vertex_at(place.Coord()))
+    return found
+
+
+def upright_lines(face: TopoDS_Face, low: float, high: float) -> list[TopoDS_Edge]:
+    """Return vertical lines on a vertical face through its vertices, clipped to the face."""
+    places: list[np.ndarray] = []
+    for vertex in vertices_of(face):
+        xy = vertex_point(vertex)[:2]
+        if all(np.hypot(*(xy - p)) >= 1e-4 for p in places):
+            places.append(xy)
+    if len(places) < 3:
+        return []
+    lines = [line_edge(vertex_at((x, y, low - 1.0)), vertex_at((x, y, high + 1.0))) for x, y in places]
+    known = same_order(edges_of(face))
+    pieces = [e for e in edges_of(split_shape(face, lines)) if not known.Contains(e) and chord(e) > SHORT_EDGE]
+    return [e for e in pieces if np.ptp([vertex_point(v)[:2] for v in vertices_of(e)], axis=0).max() < 1e-4]
+
+
+def chord(edge: TopoDS_Edge) -> float:
+    """Return the distance between the ends of an edge, or its sampled length when it is closed [mm]."""
+    first, last = TopExp.FirstVertex_s(edge), TopExp.LastVertex_s(edge)
+    if first.IsSame(last):
+        curve = BRepAdaptor_Curve(edge)
+        middle = curve.Value(0.5 * (curve.FirstParameter() + curve.LastParameter()))
+        return 2.0 * float(middle.Distance(curve.Value(curve.FirstParameter())))
+    return float(np.linalg.norm(vertex_point(first) - vertex_point(last)))

@@ -1,0 +1,80 @@
+"""Whether two halves may leave the ladder: a quick check, before the proofs on the exported files."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+from moldgen.errors import KernelError
+from moldgen.kernel.body import Body
+from moldgen.kernel.measure import volume, volume_adaptive
+from moldgen.kernel.meshsolid import MeshSolid, mesh_solid, thickest_overlap
+from moldgen.tolerances import BALANCE, OPEN_OVERLAP
+
+NOT_MEASURED = 1e9
+
+
+@dataclass(frozen=True)
+class HalvesCheck:
+    """How well two halves fit the part.
+
+    balance : |cavity + core + part - block| / block by volume
+    static_mm : thickest overlap of two of the three at rest
+    cavity_mm, core_mm : thickest overlap with the part while that half opens (three places of its way)
+    """
+
+    balance: float
+    static_mm: float
+    cavity_mm: float
+    core_mm: float
+
+    @property
+    def worst(self) -> float:
+        """One figure to compare failures by."""
+        return max(self.static_mm, self.cavity_mm, self.core_mm) + self.balance
+
+    @property
+    def proved(self) -> bool:
+        """True when every figure is inside its limit."""
+        thickest = max(self.static_mm, self.cavity_mm, self.core_mm)
+        return self.balance < BALANCE and thickest < OPEN_OVERLAP
+
+    @property
+    def complaint(self) -> str:
+        """What is outside its limit, in words."""
+        return (
+            f"volume balance {self.balance:.1e} (limit {BALANCE:.0e}), overlap at rest {self.static_mm:.3f} mm, "
+            f"cavity opening {self.cavity_mm:.3f} mm, core opening {self.core_mm:.3f} mm (limit {OPEN_OVERLAP} mm)"
+        )
+
+
+def check_halves(cavity: Any, core: Any, body: Body, part: MeshSolid, block_volume: float) -> HalvesCheck:
+    """Return the figures of two halves of a body whose pull is +z."""
+    balance = balance_of([cavity, core, body.solid], block_volume)
+    try:
+        upper, lower = mesh_solid(body.like(cavity).mesh), mesh_solid(body.like(core).mesh)
+    except KernelError:
+        return HalvesCheck(balance, NOT_MEASURED, NOT_MEASURED, NOT_MEASURED)
+    static = max(thickest_overlap(*pair) for pair in ((upper, lower), (upper, part), (lower, part)))
+    height = float(body.box[1][2] - body.box[0][2])
+    ways = (0.1, 1.0, height / 2)
+    return HalvesCheck(
+        balance, static, _worst_on_way(upper, part, ways), _worst_on_way(lower, part, tuple(-w for w in ways))
+    )
+
+
+def balance_of(solids: list[Any], block_volume: float) -> float:
+    """Return the relative volume balance; the slow exact integration is asked only if the quick one misses."""
+    quick = abs(sum(volume(s) for s in solids) - block_volume) / block_volume
+    if quick < BALANCE:
+        return quick
+    return min(quick, abs(sum(volume_adaptive(s) for s in solids) - block_volume) / block_volume)
+
+
+def _worst_on_way(mover: MeshSolid, part: MeshSolid, ways: tuple[float, ...]) -> float:
+    worst = 0.0
+    for way in ways:
+        worst = max(worst, thickest_overlap(mover.translate((0.0, 0.0, way)), part))
+        if worst >= OPEN_OVERLAP:
+            break
+    return worst

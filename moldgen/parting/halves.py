@@ -1,0 +1,185 @@
+"""Cavity and core of a part that leaves by a straight pull: levels are tried until one is proved."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import Any
+
+import numpy as np
+
+from moldgen.errors import KernelError, MoldgenError, PartError
+from moldgen.kernel.body import Body
+from moldgen.kernel.loops import boundary_loops
+from moldgen.kernel.meshsolid import MeshSolid
+from moldgen.kernel.shells import solid_from_faces
+from moldgen.kernel.walls import block_outside
+from moldgen.parting.accept import HalvesCheck, check_halves
+from moldgen.parting.level import LevelSearch, find_levels
+from moldgen.parting.refine import split_at_level, split_edges_at_level
+from moldgen.parting.sides import Sides, assign_sides
+from moldgen.parting.surface import Sheet, make_sheet, outer_loop
+from moldgen.release.contact import vertical_contact
+from moldgen.release.kinds import FaceKinds, face_kinds
+
+MOST_CHECKED = 6
+"""Levels whose halves were made but not proved, after which the search ends."""
+
+DEEP_LEVELS = 3
+"""Levels that are tried again with every vertical face split."""
+
+
+@dataclass(frozen=True)
+class Parted:
+    """The two halves of a part and how they came about, in the mold frame [mm].
+
+    body : the part with every split that the parting line needed
+    sides : which half forms each of its faces
+    loops : closed loops of directed edges; `outer` is the number of the outer one
+    """
+
+    body: Body
+    kinds: FaceKinds
+    sides: Sides
+    loops: list[list[Any]]
+    outer: int
+    level: float
+    sheet: Sheet
+    cavity: Any
+    core: Any
+    check: HalvesCheck
+    deep: bool
+    refused: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class _Task:
+    """What every trial starts from."""
+
+    body: Body
+    kinds: FaceKinds
+    contact: np.ndarray
+    search: LevelSearch
+    part: MeshSolid
+    corners: tuple[np.ndarray, np.ndarray]
+    costly: frozenset[int]
+
+
+@dataclass(frozen=True)
+class _Trial:
+    level: float
+    deep: bool
+
+
+def part_halves(
+    body: Body,
+    kinds: FaceKinds,
+    part: MeshSolid,
+    corners: tuple[np.ndarray, np.ndarray],
+    *,
+    level: float | None = None,
+    costly_faces: frozenset[int] = frozenset(),
+) -> Parted:
+    """Return cavity and core inside the block `corners` of a part whose faces all look up, down or along the pull.
+
+    level : height of the parting plane [mm] if the user fixed it, else the best of those found is used
+
+    Raises
+    ------
+    PartError : no level gives two proved halves; the message lists each with its reason
+    """
+    contact = vertical_contact(body, kinds)
+    task = _Task(body, kinds, contact, find_levels(body, kinds, part), part, corners, costly_faces)
+    levels = (level,) if level is not None else _by_cost(task)
+    refused: list[str] = []
+    unproved: list[Parted] = []
+    trials = [_Trial(z, deep=False) for z in levels] + [_Trial(z, deep=True) for z in levels[:DEEP_LEVELS]]
+    for trial in trials:
+        try:
+            parted = _part_at(task, trial)
+        except MoldgenError as error:
+            refused.append(f"level {trial.level:.3f}{' (every wall split)' if trial.deep else ''}: {error.what}")
+            continue
+        if parted.check.proved:
+            return _with_refused(parted, refused)
+        refused.append(f"level {trial.level:.3f}: {parted.check.complaint}")
+        unproved.append(parted)
+        if len(unproved) >= MOST_CHECKED:
+            break
+    if unproved:
+        return _with_refused(min(unproved, key=lambda p: p.check.worst), refused)
+    raise PartError(
+        "no parting level gives two halves: " + "; ".join(refused),
+        remedy="give parting.height, or another pull",
+    )
+
+
+def _by_cost(task: _Task) -> tuple[float, ...]:
+    costs = {z: assign_sides(task.body, task.kinds, task.contact, z, task.costly).cost for z in task.search.levels}
+    return tuple(sorted(costs, key=lambda z: (costs[z], z)))
+
+
+def _part_at(task: _Task, trial: _Trial) -> Parted:
+    level = trial.level
+    split = split_at_level(task.body, task.kinds, task.contact, task.search, level, all_faces=trial.deep)
+    state = _assigned(split, level, task.costly, (task.kinds, task.contact) if split is task.body else None)
+    crossing = [split.edge_index.FindIndex(e) - 1 for e in state.loops[state.outer]]
+    cut = split_edges_at_level(split, crossing, level)
+    if cut is not split:
+        state = _assigned(cut, level, task.costly, None)
+    if state.alike and not trial.deep:
+        raise KernelError(f"{len(state.alike) + 1} loops run as the outer one does")
+    return _halves(state, trial, task.part, task.corners)
+
+
+@dataclass(frozen=True)
+class _Assigned:
+    body: Body
+    kinds: FaceKinds
+    sides: Sides
+    loops: list[list[Any]]
+    outer: int
+    alike: tuple[int, ...]
+
+
+def _assigned(
+    body: Body, level: float, costly: frozenset[int], known: tuple[FaceKinds, np.ndarray] | None
+) -> _Assigned:
+    kinds, contact = known or (kinds_ := face_kinds(body), vertical_contact(body, kinds_))
+    sides = assign_sides(body, kinds, contact, level, costly)
+    loops = boundary_loops(body, sides.cavity)
+    if not loops:
+        raise KernelError("all faces are on one side")
+    outer, alike = outer_loop(loops)
+    return _Assigned(body, kinds, sides, loops, outer, alike)
+
+
+def _halves(state: _Assigned, trial: _Trial, part: MeshSolid, corners: tuple[np.ndarray, np.ndarray]) -> Parted:
+    body, cavity_side = state.body, state.sides.cavity
+    sheet = make_sheet(body, state.loops, state.outer, trial.level, corners)
+    halves = []
+    for is_cavity, lid in ((True, corners[1][2]), (False, corners[0][2])):
+        own = [f for f, side in zip(body.faces, cavity_side, strict=True) if side == is_cavity]
+        result = solid_from_faces([*own, *sheet.faces, *block_outside(sheet.rim, float(lid))], drop_flat=True)
+        if result.complaint:
+            raise KernelError(f"the {'cavity' if is_cavity else 'core'} does not close: {result.complaint}")
+        halves.append(result.solid)
+    cavity, core = halves
+    check = check_halves(cavity, core, body, part, float(np.prod(corners[1] - corners[0])))
+    return Parted(
+        body,
+        state.kinds,
+        state.sides,
+        state.loops,
+        state.outer,
+        trial.level,
+        sheet,
+        cavity,
+        core,
+        check,
+        trial.deep,
+        (),
+    )
+
+
+def _with_refused(parted: Parted, refused: list[str]) -> Parted:
+    return replace(parted, refused=tuple(refused))
