@@ -96,24 +96,21 @@ class Number:
         return {"anyOf": [number, text] + ([{"const": AUTO}] if self.auto else [])}
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Written:
     """Replaces the JSON Schema of a value by what the user may write for it."""
 
     schema: _JsonSchema
 
-    def __hash__(self) -> int:
-        return id(self)
-
     def __get_pydantic_json_schema__(self, _core: CoreSchema, _handler: GetJsonSchemaHandler) -> _JsonSchema:
         return dict(self.schema)
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class OrWritten:
     """Adds a second form, with its JSON Schema, in which the user may write a value."""
 
-    schema: tuple[tuple[str, Any], ...]
+    schema: _JsonSchema
 
     def __get_pydantic_json_schema__(self, core: CoreSchema, handler: GetJsonSchemaHandler) -> _JsonSchema:
         return {"anyOf": [dict(self.schema), handler(core)]}
@@ -126,7 +123,7 @@ def none_if_auto(value: object) -> object:
     return None if value == AUTO else value
 
 
-OR_AUTO: Final = OrWritten((("const", AUTO),))
+OR_AUTO: Final = OrWritten({"const": AUTO})
 
 
 def _three(value: object) -> object:

@@ -15,7 +15,7 @@ from moldgen.errors import SpecError, SpecErrors
 from moldgen.finding import Finding
 from moldgen.spec.cautions import cautions
 from moldgen.spec.messages import plain_errors
-from moldgen.spec.schema import Spec
+from moldgen.spec.schema import Spec, folder_name
 from moldgen.spec.tree import Tree, read_tree
 
 MAX_BYTES: Final = 1_000_000
@@ -75,7 +75,7 @@ def load_spec(path: str | Path, *, allow_code: bool = False) -> LoadedSpec:
     file = str(path)
     data = _read_bytes(Path(path), file)
     tree = read_tree(_decode(data, file), file)
-    spec = _checked(tree, _as_name(Path(path).stem))
+    spec = _checked(tree, folder_name(Path(path).stem))
     if spec.part.function is not None and not allow_code:
         where = tree.where(("part", "function"))
         raise SpecError(_CODE_NEEDS_FLAG, where=where, remedy="read the code, then add --allow-code to the command")
@@ -141,11 +141,6 @@ def _checked(tree: Tree, name: str) -> Spec:
 
 def _with_name(data: Mapping[str, Any], name: str) -> Mapping[str, Any]:
     return data if data.get("name") is not None else {**data, "name": name}
-
-
-def _as_name(stem: str) -> str:
-    kept = "".join(c if c.isprintable() and c not in '<>:"/\\|?*' else "_" for c in stem).strip(". ")
-    return kept[:60].strip(". ") or "spec"
 
 
 def _raise(mistakes: list[SpecError]) -> NoReturn:

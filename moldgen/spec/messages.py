@@ -13,6 +13,8 @@ from moldgen.spec.fields import shown
 from moldgen.spec.schema import PLANNED, Spec
 from moldgen.spec.tree import Path, Tree
 
+_LOOK_IT_UP: Final = "correct it; `moldgen schema` describes every key"
+
 _Words = tuple[str, str]
 """What is wrong with the value, and the remedy."""
 
@@ -28,7 +30,11 @@ def _plain_error(line: Mapping[str, Any], tree: Tree) -> tuple[tuple[int, int], 
     loc = tuple(line["loc"])
     path, value = _follow(tree.data, loc)
     kind = line["type"]
-    if kind == "extra_forbidden":
+    if kind == "recipe":  # names its feature and the nearest key itself
+        what, _, remedy = line["msg"].partition("; ")
+        remedy = remedy or _LOOK_IT_UP
+        is_value = False
+    elif kind == "extra_forbidden":
         what, remedy = _unknown_key(path)
         is_value = False
     elif kind == "missing":
@@ -124,7 +130,7 @@ def _wrong_value(line: Mapping[str, Any], value: Any) -> _Words:
     for prefix, say in _BY_TYPE:
         if line["type"].startswith(prefix):
             return say(value, context)
-    return line["msg"].removeprefix("Value error, "), "correct this value; `moldgen schema` describes it"
+    return line["msg"].removeprefix("Value error, "), _LOOK_IT_UP
 
 
 def _not_a_choice(value: Any, expected: str) -> _Words:

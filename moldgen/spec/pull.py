@@ -60,11 +60,11 @@ def _unit_vector(v: Vector) -> Vector:
     return (scaled[0] / length + 0.0, scaled[1] / length + 0.0, scaled[2] / length + 0.0)
 
 
-_NUMBERS: Final = {"type": "array", "items": {"type": "number"}, "minItems": 3, "maxItems": 3}
+_THREE: Final = {"type": "array", "items": {"type": ["number", "string"]}, "minItems": 3, "maxItems": 3}
 _WRITTEN_DIRECTION: Final = {
     "anyOf": [
         {"enum": [AUTO, *_AXES]},
-        _NUMBERS,
+        _THREE,
         {"type": "string", "pattern": "^[Ff]ace +at +.+,.+,"},
     ]
 }
@@ -77,6 +77,7 @@ class Pull(Section):
         default=None,
         description='auto, an axis such as "+z", [x, y, z], or "face at x, y, z": the normal of the flat face nearest '
         "to that point of the part [mm]",
+        examples=[AUTO],
     )
     search: Literal["axes", "full"] = Field(
         default="full",
@@ -89,9 +90,9 @@ class Pull(Section):
         return value if isinstance(value, dict) else {"direction": value}
 
 
-_WRITTEN_FIXED_POINT: Final = {"anyOf": [{"enum": ["origin", "centre", "center"]}, _NUMBERS]}
+_WRITTEN_FIXED_POINT: Final = {"anyOf": [{"enum": ["origin", "centre", "center"]}, _THREE]}
 
-SHORT_PULL: Final = OrWritten(tuple(_WRITTEN_DIRECTION.items()))
+SHORT_PULL: Final = OrWritten(_WRITTEN_DIRECTION)
 
 _SHRINK_REMEDY: Final = (
     "write the shrink as a percentage, such as 0.5 %; mold = part / (1 - S) leaves no sense at 100 %, "
@@ -154,4 +155,5 @@ class Shrink(Section):
         return (self.x, self.y, self.z)
 
 
-SHORT_SHRINK: Final = OrWritten((("anyOf", [{"type": "number"}, {"type": "string"}]),))
+_WRITTEN_SHRINK: Final = [{"type": "number", "minimum": 0, "exclusiveMaximum": 50}, {"type": "string"}]
+SHORT_SHRINK: Final = OrWritten({"anyOf": _WRITTEN_SHRINK})

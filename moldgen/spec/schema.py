@@ -29,8 +29,20 @@ def _known_resin(name: str) -> str:
     return catalog_name(resin, name)
 
 
+_NOT_IN_FOLDERS: Final = frozenset('<>:"/\\|?*')
+"""Characters that some file system or other refuses."""
+
+LONGEST_NAME: Final = 60
+
+
+def folder_name(text: str) -> str:
+    """Return `text` with what a folder's name cannot hold replaced or cut off."""
+    kept = "".join("_" if c in _NOT_IN_FOLDERS or not c.isprintable() else c for c in text)
+    return kept.strip(". ")[:LONGEST_NAME].strip(". ") or "spec"
+
+
 def _file_name(name: str) -> str:
-    if name.startswith(".") or name.endswith((".", " ")) or any(c in '<>:"/\\|?*' for c in name) or len(name) > 60:
+    if name != folder_name(name):
         refuse(f'"{shown(name)}" cannot name a folder', "use at most 60 letters, digits, spaces, - and _")
     return name
 
@@ -57,7 +69,7 @@ class Spec(Section):
     ejection: Ejection = Field(default=Ejection(), description="how the part is pushed off the core")
     marks: tuple[Mark, ...] = Field(
         default=(),
-        description="what must stay off which face of the part",
+        description="what must stay off the face nearest to a point: no_gate, no_pins, no_parting_line",
         examples=[[{"face": [0, 0, 10], "no_gate": True}]],
     )
     output: Output = Field(default=Output(), description="what is written, and where")

@@ -68,9 +68,13 @@ class Blocks(Section):
     cavity_height: AutoLength = Field(default=None, description="height of the cavity block along the pull [mm]")
     core_height: AutoLength = Field(default=None, description="height of the core block along the pull [mm]")
     wall: AutoLength = Field(default=None, description="least steel between the part and the side of a block [mm]")
-    material: Material = Field(default="1.2311", description="steel of both blocks", examples=["1.2311"])
-    cavity_material: Material | None = Field(default=None, description="steel of the cavity block if it differs")
-    core_material: Material | None = Field(default=None, description="steel of the core block if it differs")
+    material: Material = Field(default="1.2311", description="steel of both blocks")
+    cavity_material: Material | None = Field(
+        default=None, description="steel of the cavity block if it differs", examples=["1.2343"]
+    )
+    core_material: Material | None = Field(
+        default=None, description="steel of the core block if it differs", examples=["1.2343"]
+    )
 
 
 class CorePins(Section):
@@ -165,5 +169,5 @@ class Output(Section):
     step: Literal["ap242", "ap214"] = Field(default="ap242", description="application protocol of the STEP files")
     pictures: Flag = Field(default=True, description="false leaves out the pictures")
     folder: Text | None = Field(
-        default=None, description="folder that receives the result; the default is out/<name> beside the spec"
+        default=None, description="folder that receives the result; by default out/ and the name", examples=["out"]
     )
