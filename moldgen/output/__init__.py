@@ -1,0 +1,1 @@
+"""What a build leaves behind: STEP files, tables, the manifest and the pictures."""
