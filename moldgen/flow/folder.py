@@ -34,6 +34,7 @@ _REASONS = {
     errno.EACCES: ("permission denied", "give yourself write access, or write elsewhere with --output"),
     errno.EPERM: ("not permitted", "give yourself write access, or write elsewhere with --output"),
     errno.ENOTDIR: ("a file stands where a folder is needed", "choose another place with --output"),
+    errno.EEXIST: ("a file stands where a folder is needed", "choose another place with --output"),
     errno.EISDIR: ("a folder stands where a file is needed", "choose another place with --output"),
     errno.ENAMETOOLONG: ("the name is too long", "choose a shorter name with --output"),
     errno.ENOENT: ("the place does not exist", "choose another place with --output"),
@@ -58,7 +59,7 @@ def fresh_folder(final: Path, *, inputs: Sequence[Path] = (), tell: Tell | None 
     ------
     SpecError : `final` cannot be written, the disk is full, or `final` holds something that moldgen did not make
     """
-    final = final.resolve() if final.is_symlink() else final
+    final = final.resolve() if os.path.islink(final) else final  # noqa: PTH114  a name too long is told below
     if tell is not None:
         tell.output(final)
     with _explained(final):

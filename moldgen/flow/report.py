@@ -120,8 +120,8 @@ def _one_finding(finding: Finding, width: int) -> Iterator[str]:
     yield from _wrapped(text, width, first=f"  {finding.severity.value:8}", rest=" " * 10)
     facts = [place] if place else []
     if finding.value is not None:
-        limit = "" if finding.limit is None else f", limit {finding.limit:.6g} {finding.unit}".rstrip()
-        facts.append(f"{finding.value:.6g} {finding.unit}".rstrip() + limit)
+        limit = "" if finding.limit is None else f", limit {_number(finding.limit)} {finding.unit}".rstrip()
+        facts.append(f"{_number(finding.value)} {finding.unit}".rstrip() + limit)
     if facts:
         yield from _wrapped("; ".join(facts), width, first=" " * 10, rest=" " * 10)
     if finding.remedy:
@@ -143,7 +143,13 @@ def _cell(value: Cell) -> str:
         return ""
     if isinstance(value, bool):
         return "yes" if value else "no"
-    return f"{value:.6g}" if isinstance(value, float) else str(value)
+    return _number(value) if isinstance(value, float) else str(value)
+
+
+def _number(value: float) -> str:
+    """Return six digits, and an exponent only for what is tiny: a volume in mm^3 is read by people."""
+    text = f"{value:.6g}"
+    return f"{value:.0f}" if "e+" in text else text
 
 
 def _is_numeric(values: Sequence[Cell]) -> bool:

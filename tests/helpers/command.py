@@ -1,0 +1,35 @@
+"""Run the command line as a user does, in a process of its own."""
+
+from __future__ import annotations
+
+import os
+import subprocess
+import sys
+from pathlib import Path
+
+TESTS = Path(__file__).resolve().parents[1]
+
+
+def moldgen_command(*arguments: object, job: str = "") -> list[str]:
+    """The words that start moldgen; with `job`, its worker does that job of `bad_jobs` instead."""
+    start = [str(TESTS / "helpers" / "moldgen_with.py"), job] if job else ["-m", "moldgen"]
+    return [sys.executable, *start, *map(str, arguments)]
+
+
+def environment() -> dict[str, str]:
+    """Our environment, with the checkout and its tests importable."""
+    paths = [str(TESTS), str(TESTS.parent), os.environ.get("PYTHONPATH", "")]
+    return os.environ | {"PYTHONPATH": os.pathsep.join(p for p in paths if p), "COLUMNS": "100"}
+
+
+def moldgen(*arguments: object, folder: Path, job: str = "", timeout: float = 60) -> subprocess.CompletedProcess[str]:
+    """Run moldgen in `folder` and return what came of it."""
+    return subprocess.run(
+        moldgen_command(*arguments, job=job),
+        cwd=folder,
+        env=environment(),
+        capture_output=True,
+        text=True,
+        timeout=timeout,
+        check=False,
+    )

@@ -1,0 +1,14 @@
+"""The real command line with another job in its worker: python moldgen_with.py JOB ARGUMENT..."""
+
+from __future__ import annotations
+
+import sys
+from functools import partial
+
+import moldgen.flow.run
+from moldgen.cli import main
+
+if __name__ == "__main__":
+    entry = sys.argv.pop(1)
+    moldgen.flow.run.run = partial(moldgen.flow.run.run, entry=f"helpers.bad_jobs:{entry}")
+    main()
