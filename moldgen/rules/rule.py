@@ -71,6 +71,7 @@ Mass = Annotated[float, Unit("g", above=0)]
 Expansion = Annotated[float, Unit("1/K")]
 Roughness = Annotated[float, Unit("um", above=0)]
 Count = Annotated[int, Unit("1", least=1)]
+Flag = Annotated[bool, Unit("1")]
 
 
 @dataclass(frozen=True)
