@@ -32,16 +32,11 @@ from vtkmodules.vtkRenderingCore import (
 )
 
 from moldgen.output.palette import PAPER, TEXT, Rgb
+from moldgen.output.picture_frame import SIZE, Rect
 from moldgen.output.picture_geometry import View
 from moldgen.output.scene import Points, Vector
 
-SIZE = (1400, 1000)
-"""Width and height of a picture [px]."""
-
 OVERSAMPLE = 2
-
-Rect = tuple[float, float, float, float]
-"""Left, bottom, right, top [px], origin at the bottom left."""
 
 Pixels = npt.NDArray[np.uint8]
 
@@ -136,10 +131,12 @@ class Canvas:
 
     def ring(self, at: tuple[float, float], outer: float, inner: float, colour: Rgb) -> None:
         """Draw a ring between two radii [px]."""
-        turn = np.linspace(0.0, 2.0 * np.pi, 41)
-        middle = (outer + inner) / 2.0
-        points = [(at[0] + middle * float(np.cos(t)), at[1] + middle * float(np.sin(t))) for t in turn]
-        self.line(points, colour, outer - inner)
+        turn = np.linspace(0.0, 2.0 * np.pi, 41)[:-1]
+        rim = np.stack([np.cos(turn), np.sin(turn), np.zeros(40)], axis=1)
+        points = np.concatenate([inner * rim, outer * rim]) + np.array([*at, 0.0])
+        here, after = np.arange(40), (np.arange(40) + 1) % 40
+        quads = np.stack([here, here + 40, after + 40, after], axis=1)
+        self._overlay_shape(points, quads, "SetPolys", colour, 1.0)
 
     def save(self, path: Path) -> None:
         """Render the sheet and write it to `path` as PNG."""

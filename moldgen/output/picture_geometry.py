@@ -45,18 +45,35 @@ def look_from(direction: Vector, up: Vector = (0.0, 0.0, 1.0)) -> View:
 
 
 def shade(body: SceneBody) -> Shaded:
-    """Return `body` for shading: a normal is the area-weighted mean of the triangles around a point of one face."""
+    """Return `body` for shading: a normal is the mean of the triangles around a point of one face.
+
+    Triangles are weighted by their angle at the point, so that it does not matter which way a strip of a wall was split
+    [published: Thuermer and Wuethrich, Computing vertex normals from polygonal facets, J. Graphics Tools 3(1), 1998].
+    """
     _, welded = body.welded
     corner_vertex = body.triangles.reshape(-1)
     corner_face = np.repeat(body.face_id, 3)
     span = len(body.vertices) + 1
     keys, first, corner = np.unique(corner_face * span + welded[corner_vertex], return_index=True, return_inverse=True)
     corner = corner.reshape(-1)
-    area_normals = np.repeat(_area_normals(body.vertices, body.triangles), 3, axis=0)
-    normals = np.stack([np.bincount(corner, area_normals[:, k], len(keys)) for k in range(3)], axis=1)
-    length = np.linalg.norm(normals, axis=1, keepdims=True)
-    normals = np.divide(normals, length, out=np.zeros_like(normals), where=length > 0)
+    flat = _unit(_area_normals(body.vertices, body.triangles))
+    weighted = (flat[:, None, :] * _corner_angles(body.vertices, body.triangles)[:, :, None]).reshape(-1, 3)
+    normals = _unit(np.stack([np.bincount(corner, weighted[:, k], len(keys)) for k in range(3)], axis=1))
     return Shaded(body.vertices[corner_vertex[first]], normals, corner.reshape(-1, 3), corner_face[first])
+
+
+def _corner_angles(points: Points, triangles: Indices) -> Points:
+    """Return the angle (m, 3) of each triangle at each of its corners [rad]."""
+    corners = points[triangles]
+    ahead = _unit(np.roll(corners, -1, axis=1) - corners)
+    behind = _unit(np.roll(corners, 1, axis=1) - corners)
+    return np.asarray(np.arccos(np.clip((ahead * behind).sum(axis=-1), -1.0, 1.0)))
+
+
+def _unit(vectors: Points) -> Points:
+    """Return `vectors` (..., 3) at length one; a zero vector stays zero."""
+    length = np.linalg.norm(vectors, axis=-1, keepdims=True)
+    return np.divide(vectors, length, out=np.zeros_like(vectors), where=length > 0.0)
 
 
 def outline(body: SceneBody, view: View) -> Points:

@@ -1,16 +1,16 @@
-"""The four pictures: what each shows, from where, and the title, legend and scale bar around it."""
+"""The four pictures: what each shows, and from where."""
 
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
 from pathlib import Path
 
 import numpy as np
 
 from moldgen.output import palette
 from moldgen.output.palette import Ink, Rgb
-from moldgen.output.picture_canvas import SIZE, Canvas, Panel, Rect
+from moldgen.output.picture_canvas import Canvas, Panel
+from moldgen.output.picture_frame import FIELD, Mark, Rect, draw_arrow_head, draw_frame
 from moldgen.output.picture_geometry import (
     Cut,
     View,
@@ -24,25 +24,11 @@ from moldgen.output.picture_geometry import (
 )
 from moldgen.output.scene import Points, Scene, SceneBody, Vector
 
-CAUTION = "first-pass layout: review before cutting steel"
-
 FROM_ABOVE: Vector = (0.62, -0.80, 0.56)
 FROM_BELOW: Vector = (0.62, -0.80, -0.56)
 
-FIELD: Rect = (262.0, 62.0, 1384.0, 912.0)
-"""The part of a sheet that is free for panels [px]: right of the legend, below the title, above the scale bar."""
-
 EDGE_WIDTH = 1.1
 """Width of drawn edges [px]."""
-
-
-@dataclass(frozen=True)
-class Mark:
-    """One row of a legend: a colour, drawn as an area, a line or a dot, and its meaning."""
-
-    colour: Rgb
-    words: str
-    shape: str = "area"
 
 
 def draw_part(scene: Scene, canvas: Canvas) -> None:
@@ -75,7 +61,7 @@ def draw_part(scene: Scene, canvas: Canvas) -> None:
         marks.append(Mark(palette.PARTING_LINE.colour, palette.PARTING_LINE.label, "line"))
     marks += _gate_marks(scene)
     marks.append(Mark(palette.PULL.colour, palette.PULL.label, "line"))
-    _frame(canvas, scene, "plastic part: which half forms which face", marks, panels[0].px_per_mm)
+    draw_frame(canvas, scene, "plastic part: which half forms which face", marks, panels[0].px_per_mm)
 
 
 def draw_closed(scene: Scene, canvas: Canvas) -> None:
@@ -87,7 +73,7 @@ def draw_closed(scene: Scene, canvas: Canvas) -> None:
     for body in scene.of_role("cavity"):
         _show_body(panel, body, opacity=0.20)
     panel.close()
-    _frame(canvas, scene, "tool closed, cavity half translucent", _role_marks(scene.bodies), panel.px_per_mm)
+    draw_frame(canvas, scene, "tool closed, cavity half translucent", _role_marks(scene.bodies), panel.px_per_mm)
 
 
 def draw_open(scene: Scene, canvas: Canvas) -> None:
@@ -104,7 +90,7 @@ def draw_open(scene: Scene, canvas: Canvas) -> None:
     for panel, caption in zip(panels, ("the open tool", "cavity half, seen from below"), strict=True):
         panel.close()
         _caption(canvas, panel, caption)
-    _frame(canvas, scene, "tool open, part half way off its pins", _role_marks(scene.bodies), panels[0].px_per_mm)
+    draw_frame(canvas, scene, "tool open, part half way off its pins", _role_marks(scene.bodies), panels[0].px_per_mm)
 
 
 def draw_section(scene: Scene, canvas: Canvas) -> None:
@@ -116,14 +102,14 @@ def draw_section(scene: Scene, canvas: Canvas) -> None:
     depth = cut.at * float(view.toward[cut.axis])
     for body in scene.bodies:
         _show_body(panel, body, share=0.45)
-    for body in scene.bodies:
+    for body in sorted(scene.bodies, key=lambda b: b.role not in ("cavity", "core")):  # small things over blocks
         _fill_cut(panel, body, cut, depth)
     panel.close(cut=depth)
     shown = [b for b in scene.bodies if float((b.vertices @ view.toward).min()) < depth]
     _key_plan(canvas, scene, cut)
     axis = "xy"[cut.axis]
     words = f"section at {axis} = {cut.at:.2f} mm" + (f", through {cut.through}" if cut.through else "")
-    _frame(canvas, scene, words, _role_marks(shown, counted=False), panel.px_per_mm)
+    draw_frame(canvas, scene, words, _role_marks(shown, counted=False), panel.px_per_mm)
 
 
 PICTURES: tuple[tuple[str, Callable[[Scene, Canvas], None]], ...] = (
@@ -256,16 +242,8 @@ def _key_plan(canvas: Canvas, scene: Scene, cut: Cut) -> None:
     for end in (first, last):
         tip = np.add(end, 18 * look)
         canvas.line([end, tuple(tip)], palette.TEXT, 2.0)
-        _arrow_head(canvas, tuple(tip), tuple(look), palette.TEXT, 9.0)
+        draw_arrow_head(canvas, tuple(tip), tuple(look), palette.TEXT, 9.0)
     canvas.text(((rect[0] + rect[2]) / 2.0, rect[1] - 12.0), "plan: where the section lies", 13, align="centre")
-
-
-def _arrow_head(canvas: Canvas, tip: tuple[float, float], along: tuple[float, float], colour: Rgb, size: float) -> None:
-    x, y = tip
-    u, v = along
-    back = (x - size * u, y - size * v)
-    wing = 0.42 * size
-    canvas.polygon([(x, y), (back[0] - wing * v, back[1] + wing * u), (back[0] + wing * v, back[1] - wing * u)], colour)
 
 
 def _mark_gate(canvas: Canvas, panel: Panel, scene: Scene) -> None:
@@ -282,7 +260,7 @@ def _draw_pull(canvas: Canvas, panel: Panel) -> None:
     """Draw the pull as an arrow at the left border of the panel; in every view it points up."""
     x, middle = panel.rect[0] + 34.0, (panel.rect[1] + panel.rect[3]) / 2.0
     canvas.line([(x, middle - 45.0), (x, middle + 30.0)], palette.PULL.colour, 4.0)
-    _arrow_head(canvas, (x, middle + 48.0), (0.0, 1.0), palette.PULL.colour, 22.0)
+    draw_arrow_head(canvas, (x, middle + 48.0), (0.0, 1.0), palette.PULL.colour, 22.0)
     canvas.text((x, middle - 62.0), "pull", 15, colour=palette.PULL.colour, bold=True, align="centre")
 
 
@@ -302,54 +280,3 @@ def _role_marks(bodies: Sequence[SceneBody], *, counted: bool = True) -> list[Ma
         counts[ink] = counts.get(ink, 0) + 1
     order = [*palette.ROLES.values(), palette.OTHER]
     return [Mark(ink.colour, ink.describe(counts[ink] if counted else 1)) for ink in order if ink in counts]
-
-
-def _frame(canvas: Canvas, scene: Scene, subject: str, marks: Sequence[Mark], px_per_mm: float) -> None:
-    """Draw title line, legend, scale bar and caution around the panels."""
-    width, height = SIZE
-    canvas.text((24.0, height - 32.0), _short(scene.name, 48), 25, bold=True)
-    facts = [f"resin {scene.resin}" if scene.resin else "", f"pull {scene.pull}" if scene.pull else ""]
-    canvas.text((24.0, height - 63.0), _short(", ".join(f for f in facts if f), 80), 15, colour=palette.QUIET_TEXT)
-    canvas.text((width - 24.0, height - 34.0), _short(subject, 84), 17, align="right")
-    canvas.line([(24.0, height - 84.0), (width - 24.0, height - 84.0)], palette.RULE, 1.0)
-    y = height - 116.0
-    for mark in marks:
-        _legend_row(canvas, mark, y)
-        y -= 30.0
-    _scale_bar(canvas, px_per_mm)
-    canvas.text((width - 24.0, 28.0), CAUTION, 14, colour=palette.QUIET_TEXT, align="right")
-
-
-def _legend_row(canvas: Canvas, mark: Mark, y: float) -> None:
-    x0, x1 = 24.0, 50.0
-    if mark.shape == "area":
-        canvas.rectangle((x0, y - 9.0, x1, y + 9.0), palette.EDGE)
-        canvas.rectangle((x0 + 1.0, y - 8.0, x1 - 1.0, y + 8.0), mark.colour)
-    elif mark.shape == "line":
-        canvas.rectangle((x0, y - 2.5, x1, y + 2.5), mark.colour)
-    else:
-        canvas.ring(((x0 + x1) / 2.0, y), 7.0, 2.5, mark.colour)
-    canvas.text((x1 + 10.0, y), mark.words, 15)
-
-
-def _scale_bar(canvas: Canvas, px_per_mm: float) -> None:
-    """Draw a bar of a round length (1, 2 or 5 times a power of ten) between 70 and 200 px."""
-    length = scale_length(px_per_mm)
-    x0, y = 24.0, 24.0
-    x1 = x0 + length * px_per_mm
-    canvas.rectangle((x0, y - 3.0, x1, y + 3.0), palette.TEXT)
-    canvas.rectangle(((x0 + x1) / 2.0, y - 2.0, x1 - 1.0, y + 2.0), palette.PAPER)
-    for x in (x0, x1):
-        canvas.rectangle((x - 0.75, y - 7.0, x + 0.75, y + 7.0), palette.TEXT)
-    canvas.text((x1 + 10.0, y), f"{length:g} mm", 15)
-
-
-def scale_length(px_per_mm: float) -> float:
-    """Return the largest of 1, 2, 5 times a power of ten [mm] that takes at most 200 px."""
-    room = 200.0 / px_per_mm
-    power = 10.0 ** np.floor(np.log10(room))
-    return float(max(step * power for step in (1.0, 2.0, 5.0) if step * power <= room * (1.0 + 1e-9)))
-
-
-def _short(words: str, limit: int) -> str:
-    return words if len(words) <= limit else words[: limit - 3].rstrip() + "..."
