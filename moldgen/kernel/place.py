@@ -1,0 +1,42 @@
+"""Moving and scaling solids; uniform scaling keeps planes, cylinders and cones what they are."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from OCP.BRepBuilderAPI import BRepBuilderAPI_GTransform, BRepBuilderAPI_Transform
+from OCP.gp import gp_GTrsf, gp_Mat, gp_Pnt, gp_Trsf, gp_Vec, gp_XYZ
+from OCP.TopoDS import TopoDS_Shape
+
+from moldgen.kernel.guard import operation, present
+from moldgen.model.part import MoldFrame, Vector
+
+
+def to_mold(solid: TopoDS_Shape, frame: MoldFrame) -> TopoDS_Shape:
+    """Return a part solid in mold coordinates."""
+    with operation("bring the part into the mold", operands=(solid,)):
+        scaled = _scaled(solid, frame)
+        turn = gp_Trsf()
+        (a, b, c), (d, e, f), (g, h, i) = frame.rotation
+        turn.SetValues(a, b, c, 0.0, d, e, f, 0.0, g, h, i, 0.0)
+        if frame.rotation == ((1.0, 0.0, 0.0), (0.0, 1.0, 0.0), (0.0, 0.0, 1.0)):
+            return scaled
+        return present(BRepBuilderAPI_Transform(scaled, turn, True).Shape(), "turning the part")
+
+
+def moved(shape: TopoDS_Shape, by: Vector) -> TopoDS_Shape:
+    """Return a shape at another place; geometry is shared with the original."""
+    shift = gp_Trsf()
+    shift.SetTranslation(gp_Vec(*by))
+    return BRepBuilderAPI_Transform(shape, shift, False).Shape()
+
+
+def _scaled(solid: TopoDS_Shape, frame: MoldFrame) -> Any:
+    kx, ky, kz = frame.factors
+    if kx == ky == kz:
+        scale = gp_Trsf()
+        scale.SetScale(gp_Pnt(*frame.fixed_point), kx)
+        return present(BRepBuilderAPI_Transform(solid, scale, True).Shape(), "scaling the part")
+    fx, fy, fz = frame.fixed_point
+    stretch = gp_GTrsf(gp_Mat(kx, 0, 0, 0, ky, 0, 0, 0, kz), gp_XYZ(fx * (1 - kx), fy * (1 - ky), fz * (1 - kz)))
+    return present(BRepBuilderAPI_GTransform(solid, stretch, True).Shape(), "stretching the part")
