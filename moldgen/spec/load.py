@@ -133,9 +133,9 @@ def _checked(tree: Tree, name: str) -> Spec:
     try:
         spec = Spec.model_validate(_with_name(tree.data, name))
     except ValidationError as error:
-        _raise(tree.mistakes + plain_errors(error, tree))
+        _raise(tree.mistakes + plain_errors(error, tree), tree.file)
     if tree.mistakes:
-        _raise(tree.mistakes)
+        _raise(tree.mistakes, tree.file)
     return spec
 
 
@@ -143,10 +143,12 @@ def _with_name(data: Mapping[str, Any], name: str) -> Mapping[str, Any]:
     return data if data.get("name") is not None else {**data, "name": name}
 
 
-def _raise(mistakes: list[SpecError]) -> NoReturn:
+def _raise(mistakes: list[SpecError], file: str) -> NoReturn:
     if len(mistakes) == 1:
         raise mistakes[0]
     shown = mistakes[:MAX_REPORTED]
     if len(mistakes) > MAX_REPORTED:
-        shown.append(SpecError(f"and {len(mistakes) - MAX_REPORTED} more mistakes", remedy="correct these first"))
+        shown.append(
+            SpecError(f"and {len(mistakes) - MAX_REPORTED} more mistakes", where=file, remedy="correct these first")
+        )
     raise SpecErrors(shown)

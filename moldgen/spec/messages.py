@@ -21,9 +21,18 @@ _Words = tuple[str, str]
 
 def plain_errors(error: ValidationError, tree: Tree) -> list[SpecError]:
     """Return every mistake of `error` with its place in `tree`, in the order of the file."""
-    found = [_plain_error(line, tree) for line in error.errors(include_url=False)]
+    lines = error.errors(include_url=False)
+    found = [_plain_error(line, tree) for line in lines if not _only_follows(line, lines)]
     unique = {(at, str(e)): e for at, e in found}
     return [unique[key] for key in sorted(unique)]
+
+
+def _only_follows(line: Mapping[str, Any], lines: Sequence[Mapping[str, Any]]) -> bool:
+    """Whether a list is called too short only because its wrong items, reported too, were not counted."""
+    loc = line["loc"]
+    return "after validation" in line["msg"] and any(
+        len(other["loc"]) > len(loc) and other["loc"][: len(loc)] == loc for other in lines
+    )
 
 
 def _plain_error(line: Mapping[str, Any], tree: Tree) -> tuple[tuple[int, int], SpecError]:

@@ -95,7 +95,7 @@ _WRITTEN_FIXED_POINT: Final = {"anyOf": [{"enum": ["origin", "centre", "center"]
 SHORT_PULL: Final = OrWritten(_WRITTEN_DIRECTION)
 
 _SHRINK_REMEDY: Final = (
-    "write the shrink as a percentage, such as 0.5 %; mold = part / (1 - S) leaves no sense at 100 %, "
+    "write the shrink as a percentage, such as 0.5 %; mold = part / (1 - S) has no value at 100 %, "
     "and no molding resin comes near 50 %"
 )
 _LIMITS: Final = {"least": 0.0, "below": 50.0, "remedy": _SHRINK_REMEDY}

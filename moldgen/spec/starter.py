@@ -24,8 +24,8 @@ _HEADER: Final = """\
 # 0.5 in, 1.5 deg, 0.5 %. Points are in the coordinates of the part's own file, before shrink.
 """
 _OPTIONAL: Final = """
-# Everything below is optional and shows its default, or an example. To decide something yourself, delete the "# " in front of
-# the section's name and of the key.
+# Everything below is optional and shows its default, or an example. To decide something yourself, delete the "# " in
+# front of the name of the section and of the key.
 """
 
 

@@ -155,6 +155,8 @@ class _Builder:
             self._key(event.value, place)
             return
         value = _plain_scalar(event.value) if event.implicit[0] else event.value
+        if value is None and not event.value and self._open and isinstance(self._open[-1].container, dict):
+            place = self._open[-1].key_place  # the parser places a missing value at the next line
         self._count(1, place)
         self._add(value, place, size=1)
         self._remember(event.anchor, value, 1)
@@ -236,7 +238,7 @@ _SPECIAL: Final = re.compile(r"[-+]?\.(inf|Inf|INF)|\.(nan|NaN|NAN)")
 
 
 def _plain_scalar(text: str) -> Any:
-    """Return the value of unquoted text by the core schema of YAML 1.2 [YAML 1.2.2, section 10.3.2]."""
+    """Return the value of unquoted text by the core schema [YAML 1.2.2, section 10.3.2], decimal numbers only."""
     if text in _NULL:
         return None
     if text in _TRUE or text in _FALSE:
