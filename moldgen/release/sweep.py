@@ -25,10 +25,12 @@ FLAT_AREA = 1e-6
 """Relative difference between a patch's shadow and the sum of its triangles' shadows that shows an overlap."""
 
 
-def sweep_faces(body: Body, kinds: FaceKinds, up: bool) -> MeshSolid:
+def sweep_faces(body: Body, kinds: FaceKinds, up: bool, way: float | None = None) -> MeshSolid:
     """Return everything above the faces that look up, or below those that look down (the face itself included).
 
     The lower end of an up-sweep keeps the face numbers of the body; ends and walls have numbers from `CAP` on.
+    With `way` [mm] the faces are carried just so far instead of clear of the body: with the body itself, that is the
+    space it passes through when it moves.
     """
     sign = 1.0 if up else -1.0
     mesh = body.mesh
@@ -39,7 +41,8 @@ def sweep_faces(body: Body, kinds: FaceKinds, up: bool) -> MeshSolid:
     if len(chosen) == 0:
         return MeshSolid()
     far = body.box[1][2] + OVERRUN if up else body.box[0][2] - OVERRUN
-    maker = _Maker(mesh.vertices, mesh.triangles, mesh.face, far, 0.5 * np.abs(facet[:, 2]))
+    shift = None if way is None else sign * way
+    maker = _Maker(mesh.vertices, mesh.triangles, mesh.face, far, 0.5 * np.abs(facet[:, 2]), shift)
     return union(maker.prisms(chosen))
 
 
@@ -52,6 +55,7 @@ class _Maker:
     face: np.ndarray
     far: float
     shadow: np.ndarray
+    shift: float | None
 
     def prisms(self, chosen: np.ndarray) -> list[MeshSolid]:
         """Return prisms that together cover the chosen triangles."""
@@ -94,7 +98,7 @@ class _Maker:
         count = len(used)
         place = self.vertices[used]
         end = place.copy()
-        end[:, 2] = self.far
+        end[:, 2] = self.far if self.shift is None else end[:, 2] + self.shift
         edges = np.vstack([near[:, [0, 1]], near[:, [1, 2]], near[:, [2, 0]]])
         free = edges[~np.isin(edges[:, 0] * count + edges[:, 1], edges[:, 1] * count + edges[:, 0])]
         a, b = free[:, 0], free[:, 1]
