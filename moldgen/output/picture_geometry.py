@@ -73,7 +73,7 @@ def _corner_angles(points: Points, triangles: Indices) -> Points:
 def _unit(vectors: Points) -> Points:
     """Return `vectors` (..., 3) at length one; a zero vector stays zero."""
     length = np.linalg.norm(vectors, axis=-1, keepdims=True)
-    return np.divide(vectors, length, out=np.zeros_like(vectors), where=length > 0.0)
+    return np.asarray(np.divide(vectors, length, out=np.zeros_like(vectors), where=length > 0.0))
 
 
 def outline(body: SceneBody, view: View) -> Points:

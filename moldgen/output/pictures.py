@@ -21,6 +21,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
+from moldgen.errors import StageError
 from moldgen.output.scene import Scene, read_scene, write_scene
 
 FILES = ("part.png", "closed.png", "open.png", "section.png")
@@ -87,6 +88,8 @@ class PictureJob:
             self._process.kill()
             self._process.communicate()
         shutil.rmtree(self._workplace, ignore_errors=True)
+        for name in FILES:
+            _aside(self._folder, name).unlink(missing_ok=True)
 
 
 def start_pictures(scene: Scene, folder: Path, *, command: Sequence[str] | None = None) -> PictureJob:
@@ -96,8 +99,11 @@ def start_pictures(scene: Scene, folder: Path, *, command: Sequence[str] | None 
 
     Raises
     ------
+    StageError : the scene has no part
     OSError : the folder or the scene file cannot be written
     """
+    if not scene.of_role("part"):
+        raise StageError("the scene for the pictures has no body with the role 'part'", where=scene.name)
     folder.mkdir(parents=True, exist_ok=True)
     workplace = Path(tempfile.mkdtemp(prefix="moldgen-pictures-"))
     scene_file = workplace / "scene.npz"
@@ -118,6 +124,11 @@ def start_pictures(scene: Scene, folder: Path, *, command: Sequence[str] | None 
 def render_pictures(scene: Scene, folder: Path, *, command: Sequence[str] | None = None) -> PictureResult:
     """Draw `scene` into `folder` and wait; on a machine that cannot draw the result says what is missing."""
     return start_pictures(scene, folder, command=command).finish()
+
+
+def _aside(folder: Path, name: str) -> Path:
+    """Return where a picture is written first, so that a child that dies leaves nothing half-written under its name."""
+    return folder / f".{name}.part"
 
 
 def _environment() -> dict[str, str]:
@@ -169,7 +180,7 @@ def main(arguments: Sequence[str]) -> int:
     sys.stdout.write(WINDOW_READY + "\n")
     sys.stdout.flush()
     for name, draw in PICTURES:
-        aside = folder / f".{name}.part"  # a child that dies leaves no half-written picture under a real name
+        aside = _aside(folder, name)
         draw_picture(scene, canvas, draw, aside)
         aside.replace(folder / name)
         sys.stdout.write(f"wrote {name}\n")

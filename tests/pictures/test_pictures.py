@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 import struct
 import subprocess
 import sys
@@ -12,6 +13,7 @@ import numpy as np
 import pytest
 from helpers.mesh_bodies import box, cylinder
 
+from moldgen.errors import StageError
 from moldgen.output import palette
 from moldgen.output.pictures import FILES, PictureResult, render_pictures, start_pictures
 from moldgen.output.scene import Scene, read_scene, write_scene
@@ -178,12 +180,12 @@ def test_hanging_painter_is_stopped(scene: Scene, tmp_path: Path) -> None:
     assert "longer than 0.5 s" in result.missing
 
 
+def test_scene_without_a_part_is_our_bug(scene: Scene, tmp_path: Path) -> None:
+    with pytest.raises(StageError, match="no body with the role 'part'"):
+        start_pictures(dataclasses.replace(scene, bodies=scene.bodies[1:]), tmp_path)
+
+
 def test_starting_pictures_imports_no_vtk() -> None:
     code = "import sys, moldgen.output.pictures; print(any(m.startswith('vtkmodules') for m in sys.modules))"
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert done.stdout.strip() == "False"
-
-
-def test_one_colour_has_one_meaning() -> None:
-    inks = [*palette.ROLES.values(), palette.OTHER, palette.PARTING_LINE, palette.GATE, palette.PULL]
-    assert len({ink.colour for ink in inks}) == len(inks)
