@@ -5,20 +5,25 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
+from OCP.BRep import BRep_Builder
+from OCP.BRepAdaptor import BRepAdaptor_Curve
 from OCP.BRepBuilderAPI import (
     BRepBuilderAPI_MakeEdge,
     BRepBuilderAPI_MakeFace,
     BRepBuilderAPI_MakeVertex,
     BRepBuilderAPI_MakeWire,
 )
+from OCP.Geom import Geom_BSplineCurve, Geom_Surface, Geom_TrimmedCurve
+from OCP.GeomConvert import GeomConvert
 from OCP.gp import gp_Dir, gp_Pln, gp_Pnt
 from OCP.ShapeFix import ShapeFix_Face
-from OCP.TopAbs import TopAbs_FORWARD
+from OCP.TopAbs import TopAbs_FORWARD, TopAbs_WIRE
 from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Vertex, TopoDS_Wire
 
 from moldgen.errors import KernelError
 from moldgen.kernel.measure import is_valid
-from moldgen.kernel.topology import shape_list
+from moldgen.kernel.topology import explore, shape_list
+from moldgen.tolerances import MAX_EDGE_TOLERANCE
 
 
 def point(p: Sequence[float] | np.ndarray) -> gp_Pnt:
@@ -95,3 +100,60 @@ def mended_face(face: TopoDS_Face) -> TopoDS_Face:
     fixer = ShapeFix_Face(face)
     fixer.FixOrientation()
     return fixer.Face()
+
+
+def flattened_curve(edge: TopoDS_Edge, axis: int, value: float) -> Geom_BSplineCurve:
+    """Return the edge's curve as a B-spline projected along an axis (0 x, 1 y, 2 z) onto the plane where that
+    coordinate is `value` [mm]: exact, since projection is affine.
+    """
+    adaptor = BRepAdaptor_Curve(edge)
+    base = adaptor.Curve().Curve().Transformed(adaptor.Trsf())
+    trimmed = Geom_TrimmedCurve(base, adaptor.FirstParameter(), adaptor.LastParameter())
+    curve = GeomConvert.CurveToBSplineCurve_s(trimmed)
+    for i in range(1, curve.NbPoles() + 1):
+        pole = list(curve.Pole(i).Coord())
+        pole[axis] = value
+        curve.SetPole(i, point(pole))
+    return curve
+
+
+def curve_edge(curve: Geom_BSplineCurve, ends: tuple[TopoDS_Vertex, TopoDS_Vertex]) -> TopoDS_Edge:
+    """Return the whole of a curve as an edge between two vertices that may miss its ends by an edge tolerance.
+
+    Raises
+    ------
+    KernelError : they miss by more
+    """
+    first, last = curve.FirstParameter(), curve.LastParameter()
+    maker = BRepBuilderAPI_MakeEdge(curve, *ends, first, last)
+    if not maker.IsDone():  # real exports place vertices up to 2e-2 mm off their curves
+        builder = BRep_Builder()
+        for end in ends:
+            builder.UpdateVertex(end, MAX_EDGE_TOLERANCE)
+        maker = BRepBuilderAPI_MakeEdge(curve, *ends, first, last)
+    if not maker.IsDone():
+        raise KernelError("a projected curve misses its vertices")
+    return maker.Edge()
+
+
+def with_curves_on_surface(face: TopoDS_Face, surface: Geom_Surface) -> TopoDS_Face:
+    """Let the kernel add the missing curves in the surface's parameters; turn the wire if it ran the wrong way.
+
+    Raises
+    ------
+    KernelError : the kernel returns no face
+    """
+    fixer = ShapeFix_Face(face)
+    fixer.SetPrecision(1e-6)
+    fixer.FixWireTool().FixAddPCurveMode = 1
+    fixer.Perform()
+    fixed = fixer.Face()
+    if fixed is None:
+        raise KernelError("a ruled face cannot be mended")
+    fixed = TopoDS.Face_s(fixed)
+    if not is_valid(fixed):
+        wire = TopoDS.Wire_s(explore(fixed, TopAbs_WIRE)[0].Reversed())
+        turned = BRepBuilderAPI_MakeFace(surface, wire, False).Face()
+        if is_valid(turned):
+            return turned
+    return fixed

@@ -12,22 +12,29 @@ from enum import StrEnum
 from itertools import pairwise
 
 import numpy as np
-from OCP.BRep import BRep_Builder, BRep_Tool
+from OCP.BRep import BRep_Tool
 from OCP.BRepAdaptor import BRepAdaptor_Curve
-from OCP.BRepBuilderAPI import BRepBuilderAPI_MakeEdge, BRepBuilderAPI_MakeFace
-from OCP.Geom import Geom_BSplineCurve, Geom_Plane, Geom_Surface, Geom_SurfaceOfLinearExtrusion, Geom_TrimmedCurve
+from OCP.BRepBuilderAPI import BRepBuilderAPI_MakeFace
+from OCP.Geom import Geom_Plane, Geom_Surface, Geom_SurfaceOfLinearExtrusion
 from OCP.GeomAbs import GeomAbs_Line
-from OCP.GeomConvert import GeomConvert
-from OCP.gp import gp_Dir, gp_Pnt
-from OCP.ShapeFix import ShapeFix_Face
-from OCP.TopAbs import TopAbs_WIRE
+from OCP.gp import gp_Dir
 from OCP.TopExp import TopExp
 from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Vertex
 
 from moldgen.errors import KernelError
-from moldgen.kernel.build import backward, forward, line_edge, mended_face, plane_through, vertex_at, wire_of
-from moldgen.kernel.measure import is_valid
-from moldgen.kernel.topology import directed_points, explore, is_reversed, same_order, vertex_point
+from moldgen.kernel.build import (
+    backward,
+    curve_edge,
+    flattened_curve,
+    forward,
+    line_edge,
+    mended_face,
+    plane_through,
+    vertex_at,
+    wire_of,
+    with_curves_on_surface,
+)
+from moldgen.kernel.topology import directed_points, is_reversed, same_order, vertex_point
 from moldgen.tolerances import MAX_EDGE_TOLERANCE, ON_PLANE
 
 CROSSING = 1e-4
@@ -178,7 +185,7 @@ class _Hanger:
         maker = BRepBuilderAPI_MakeFace(surface, wire, straight)
         if not maker.IsDone():
             raise KernelError("no vertical face under an edge of the parting line")
-        face = mended_face(maker.Face()) if straight else _with_curves_on_surface(maker.Face(), surface)
+        face = mended_face(maker.Face()) if straight else with_curves_on_surface(maker.Face(), surface)
         return (backward(foot) if is_reversed(edge) else foot), face
 
     def _straight_foot(
@@ -192,43 +199,5 @@ class _Hanger:
     def _curved_foot(
         self, edge: TopoDS_Edge, feet: tuple[TopoDS_Vertex, TopoDS_Vertex]
     ) -> tuple[TopoDS_Edge, Geom_Surface]:
-        curve = flattened_curve(edge, self.level)
-        maker = BRepBuilderAPI_MakeEdge(curve, *feet, curve.FirstParameter(), curve.LastParameter())
-        if not maker.IsDone():  # real exports place vertices up to 2e-2 mm off their curves
-            builder = BRep_Builder()
-            for foot in feet:
-                builder.UpdateVertex(foot, MAX_EDGE_TOLERANCE)
-            maker = BRepBuilderAPI_MakeEdge(curve, *feet, curve.FirstParameter(), curve.LastParameter())
-        if not maker.IsDone():
-            raise KernelError("the foot of a curved edge misses its vertices")
-        return maker.Edge(), Geom_SurfaceOfLinearExtrusion(curve, gp_Dir(0.0, 0.0, 1.0))
-
-
-def flattened_curve(edge: TopoDS_Edge, level: float) -> Geom_BSplineCurve:
-    """Return the edge's curve as a B-spline projected along z onto z = level: exact, since projection is affine."""
-    adaptor = BRepAdaptor_Curve(edge)
-    base = adaptor.Curve().Curve().Transformed(adaptor.Trsf())
-    trimmed = Geom_TrimmedCurve(base, adaptor.FirstParameter(), adaptor.LastParameter())
-    curve = GeomConvert.CurveToBSplineCurve_s(trimmed)
-    for i in range(1, curve.NbPoles() + 1):
-        pole = curve.Pole(i)
-        curve.SetPole(i, gp_Pnt(pole.X(), pole.Y(), level))
-    return curve
-
-
-def _with_curves_on_surface(face: TopoDS_Face, surface: Geom_Surface) -> TopoDS_Face:
-    """Let the kernel add the missing curves in the surface's parameters; turn the wire if it ran the wrong way."""
-    fixer = ShapeFix_Face(face)
-    fixer.SetPrecision(1e-6)
-    fixer.FixWireTool().FixAddPCurveMode = 1
-    fixer.Perform()
-    fixed = fixer.Face()
-    if fixed is None:
-        raise KernelError("a curved vertical face cannot be mended")
-    fixed = TopoDS.Face_s(fixed)
-    if not is_valid(fixed):
-        wire = TopoDS.Wire_s(explore(fixed, TopAbs_WIRE)[0].Reversed())
-        turned = BRepBuilderAPI_MakeFace(surface, wire, False).Face()
-        if is_valid(turned):
-            return turned
-    return fixed
+        curve = flattened_curve(edge, 2, self.level)
+        return curve_edge(curve, feet), Geom_SurfaceOfLinearExtrusion(curve, gp_Dir(0.0, 0.0, 1.0))

@@ -13,18 +13,25 @@ from moldgen.kernel.topology import vertex_point
 
 @dataclass(frozen=True)
 class Rim:
-    """The rectangle where a level parting surface meets the outside of the block, counter-clockwise."""
+    """Where the parting surface meets the outside of the block, counter-clockwise from the south-west corner.
+
+    corners : the four corners; sides : the edges from each corner to the next, which may rise and fall
+    """
 
     corners: tuple[TopoDS_Vertex, ...]
-    edges: tuple[TopoDS_Edge, ...]
+    sides: tuple[tuple[TopoDS_Edge, ...], ...]
+
+    @property
+    def edges(self) -> tuple[TopoDS_Edge, ...]:
+        """All edges, in order."""
+        return tuple(e for side in self.sides for e in side)
 
 
 def rectangle_rim(low: np.ndarray, high: np.ndarray, level: float) -> Rim:
     """Return the rim of the rectangle low..high (x, y) at z = level [mm]."""
     places = [(low[0], low[1]), (high[0], low[1]), (high[0], high[1]), (low[0], high[1])]
     corners = [vertex_at((x, y, level)) for x, y in places]
-    edges = [line_edge(corners[i], corners[(i + 1) % 4]) for i in range(4)]
-    return Rim(tuple(corners), tuple(edges))
+    return Rim(tuple(corners), tuple((line_edge(corners[i], corners[(i + 1) % 4]),) for i in range(4)))
 
 
 def block_outside(rim: Rim, lid: float) -> list[TopoDS_Face]:
@@ -37,6 +44,6 @@ def block_outside(rim: Rim, lid: float) -> list[TopoDS_Face]:
     for i in range(4):
         along = places[(i + 1) % 4] - places[i]
         wall = plane_through(places[i], (along[1], -along[0], 0.0))
-        faces.append(plane_face(wall, wire_of([rim.edges[i], posts[(i + 1) % 4], lid_edges[i], posts[i]])))
+        faces.append(plane_face(wall, wire_of([*rim.sides[i], posts[(i + 1) % 4], lid_edges[i], posts[i]])))
     faces.append(plane_face(plane_through((0.0, 0.0, lid), (0.0, 0.0, 1.0)), wire_of(lid_edges)))
     return faces

@@ -11,15 +11,17 @@ from moldgen.errors import KernelError, MoldgenError, PartError
 from moldgen.kernel.body import Body
 from moldgen.kernel.loops import boundary_loops
 from moldgen.kernel.meshsolid import MeshSolid
+from moldgen.kernel.patches import loop_points
 from moldgen.kernel.shells import solid_from_faces
 from moldgen.kernel.walls import block_outside
 from moldgen.parting.accept import HalvesCheck, check_halves
 from moldgen.parting.level import LevelSearch, find_levels
-from moldgen.parting.refine import split_at_level, split_edges_at_level
+from moldgen.parting.refine import split_at_extremes, split_at_level, split_edges_at_level
 from moldgen.parting.sides import Sides, assign_sides
 from moldgen.parting.surface import Sheet, make_sheet, outer_loop
 from moldgen.release.contact import vertical_contact
 from moldgen.release.kinds import FaceKinds, face_kinds
+from moldgen.tolerances import ON_PLANE
 
 MOST_CHECKED = 6
 """Levels whose halves were made but not proved, after which the search ends."""
@@ -126,9 +128,17 @@ def _part_at(task: _Task, trial: _Trial) -> Parted:
     cut = split_edges_at_level(split, crossing, level)
     if cut is not split:
         state = _assigned(cut, level, task.costly, None)
+    if not _is_level(state, level):
+        cornered = split_at_extremes(state.body, state.loops[state.outer])
+        if cornered is not state.body:
+            state = _assigned(cornered, level, task.costly, None)
     if state.alike and not trial.deep:
         raise KernelError(f"{len(state.alike) + 1} loops run as the outer one does")
     return _halves(state, trial, task.part, task.corners)
+
+
+def _is_level(state: _Assigned, level: float) -> bool:
+    return bool(np.abs(loop_points(state.loops[state.outer], 8)[:, 2] - level).max() < ON_PLANE)
 
 
 @dataclass(frozen=True)

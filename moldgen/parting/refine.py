@@ -2,10 +2,13 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 
 from moldgen.kernel.body import Body
 from moldgen.kernel.level_split import level_curves, level_points, upright_lines
+from moldgen.kernel.runoff import extreme_points
 from moldgen.kernel.split import split_faces
 from moldgen.parting.level import LevelSearch
 from moldgen.release.kinds import FaceKinds, Kind
@@ -43,6 +46,15 @@ def split_at_level(
                 tools += lines
                 touched += [f] if lines else []
     return split_faces(body, sorted(set(touched)), tools) if tools else body
+
+
+def split_at_extremes(body: Body, loop: list[Any]) -> Body:
+    """Return the body with a vertex at each diagonal extreme of a loop, where its run-off turns a corner."""
+    tools, touched = [], set()
+    for number, vertex in extreme_points(loop):
+        tools.append(vertex)
+        touched |= {int(f) for f in body.edge_faces[body.edge_index.FindIndex(loop[number]) - 1]}
+    return split_faces(body, sorted(touched), tools) if tools else body
 
 
 def split_edges_at_level(body: Body, edges: list[int], level: float) -> Body:

@@ -11,10 +11,11 @@ import numpy as np
 
 from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
-from moldgen.kernel.build import plane_face, plane_through, wire_of
+from moldgen.kernel.build import backward, plane_face, plane_through, wire_of
 from moldgen.kernel.curtain import hang_curtain
 from moldgen.kernel.measure import is_valid
 from moldgen.kernel.patches import filled_patch, flat_patches, host_patch, loop_points, signed_area
+from moldgen.kernel.runoff import run_off
 from moldgen.kernel.topology import directed_points
 from moldgen.kernel.walls import Rim, rectangle_rim
 
@@ -26,6 +27,7 @@ class Rung(StrEnum):
     """How a loop was closed, from what a toolmaker likes best to what always works."""
 
     PLANE = "plane"
+    RUN_OFF = "carried level out to the sides of the block"
     LEVEL_AND_CURTAINS = "level plane with vertical curtains"
     HOST = "the neighbouring wall carried across the hole"
     FILLED = "filled surface"
@@ -81,15 +83,7 @@ def make_sheet(
     ------
     KernelError : a loop cannot be closed by any rung
     """
-    rim = rectangle_rim(corners[0], corners[1], level)
-    curtain = hang_curtain(loops[outer], level)
-    around = plane_face(plane_through((0, 0, level), (0, 0, 1)), wire_of(rim.edges), [wire_of(curtain.foot).Reversed()])
-    bad = [f for f in (around, *curtain.faces) if not is_valid(f)]
-    if bad:
-        raise KernelError(f"{len(bad)} faces of the parting surface at height {level:.3f} are invalid")
-    rung = Rung.LEVEL_AND_CURTAINS if curtain.faces else Rung.PLANE
-    closed_outer = _closed(rung, loops[outer], curtain.off_plane)
-    faces = [around, *curtain.faces]
+    faces, rim, closed_outer = _close_outside(loops[outer], level, corners)
     inner = [i for i in range(len(loops)) if i != outer]
     shut_offs: list[ClosedLoop] = []
     flat: set[int] = set()
@@ -103,6 +97,34 @@ def make_sheet(
             faces += made
             shut_offs.append(closed)
     return Sheet(tuple(faces), rim, closed_outer, tuple(shut_offs))
+
+
+def _close_outside(
+    loop: Loop, level: float, corners: tuple[np.ndarray, np.ndarray]
+) -> tuple[list[Face], Rim, ClosedLoop]:
+    """Return the surface from the outer loop to the sides of the block: plane, run-off, plane with curtains."""
+    curtain = hang_curtain(loop, level)
+    refused: list[str] = []
+    if curtain.faces:
+        try:
+            ran = run_off(_counter_clockwise(loop), *corners)
+        except KernelError as error:
+            refused.append(f"{Rung.RUN_OFF}: {error.what}")
+        else:
+            return list(ran.faces), ran.rim, _closed(Rung.RUN_OFF, loop, 0)
+    rim = rectangle_rim(corners[0], corners[1], level)
+    around = plane_face(plane_through((0, 0, level), (0, 0, 1)), wire_of(rim.edges), [wire_of(curtain.foot).Reversed()])
+    bad = [f for f in (around, *curtain.faces) if not is_valid(f)]
+    if bad:
+        raise KernelError(f"{len(bad)} faces of the parting surface at height {level:.3f} are invalid")
+    rung = Rung.LEVEL_AND_CURTAINS if curtain.faces else Rung.PLANE
+    return [around, *curtain.faces], rim, _closed(rung, loop, curtain.off_plane, refused)
+
+
+def _counter_clockwise(loop: Loop) -> list[Any]:
+    if signed_area(loop_points(loop, 8)[:, :2]) > 0:
+        return list(loop)
+    return [backward(e) for e in reversed(loop)]
 
 
 def _close_hole(body: Body, loop: Loop) -> tuple[list[Face], ClosedLoop]:

@@ -1,0 +1,53 @@
+"""The tool as the proofs see it: solids read back, each meshed finely, with how it moves."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+
+from moldgen.kernel.body import Body
+from moldgen.kernel.meshsolid import MeshSolid, mesh_solid
+from moldgen.kernel.place import moved
+from moldgen.model.tool import Motion, Role
+from moldgen.tolerances import PROOF_ANGLE, PROOF_DEFLECTION
+
+
+@dataclass(frozen=True, eq=False)
+class ProofBody:
+    """One component where it stands in the closed mold, pull along +z [mm]."""
+
+    name: str
+    role: Role
+    motion: Motion
+    solid: Any
+
+    @cached_property
+    def body(self) -> Body:
+        """Faces and a mesh fine enough to prove with."""
+        return Body(self.solid, PROOF_DEFLECTION, PROOF_ANGLE)
+
+    @cached_property
+    def mesh(self) -> MeshSolid:
+        """The mesh as a solid. Raises KernelError when it does not close."""
+        return mesh_solid(self.body.mesh)
+
+    def may_meet(self, other: ProofBody, slack: float = 0.0) -> bool:
+        """False when the boxes of two bodies are more than `slack` [mm] apart."""
+        low, high = self.body.box
+        other_low, other_high = other.body.box
+        return bool((low <= other_high + slack).all() and (other_low <= high + slack).all())
+
+
+def placed_bodies(
+    components: list[tuple[str, Role, Motion, Any, tuple[tuple[float, float, float], ...]]],
+) -> list[ProofBody]:
+    """Return one body for each position of each component (name, role, motion, solid, positions)."""
+    bodies = []
+    for name, role, motion, solid, positions in components:
+        for number, at in enumerate(positions, start=1):
+            here = solid if not np.any(at) else moved(solid, at)
+            bodies.append(ProofBody(f"{name} {number}" if len(positions) > 1 else name, role, motion, here))
+    return bodies

@@ -1,0 +1,80 @@
+"""The tool opens: the space that each moving body passes through holds nothing of what stands still.
+
+The space is swept as a whole, from the faces that look along the way, so nothing can be jumped over between samples.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from moldgen.kernel.meshsolid import MeshSolid, thick_pieces, thickness
+from moldgen.model.proof import Proof, Verdict
+from moldgen.model.tool import Motion
+from moldgen.proof.bodies import ProofBody
+from moldgen.release.kinds import face_kinds
+from moldgen.release.sweep import sweep_faces
+from moldgen.tolerances import NOISE_THICKNESS, OPEN_OVERLAP
+
+
+def prove_cavity_half(bodies: Sequence[ProofBody]) -> Proof:
+    """The cavity half leaves part and core half along the pull without touching them."""
+    return _prove_way(
+        "the cavity half opens", _moving(bodies, Motion.CAVITY_HALF), _others(bodies, Motion.CAVITY_HALF), None
+    )
+
+
+def prove_core_half(bodies: Sequence[ProofBody]) -> Proof:
+    """The part leaves the core half along the pull: the way of the core half, seen from the part, is free."""
+    movers = _moving(bodies, Motion.CORE_HALF)
+    return _prove_way("the part leaves the core", movers, _moving(bodies, Motion.PART), None, up=False)
+
+
+def prove_ejection(bodies: Sequence[ProofBody], stroke: float) -> Proof:
+    """The ejectors push the part through their whole stroke [mm] without touching the core half.
+
+    That they do not run into the part is the proof at rest: both move together.
+    """
+    name = "the ejectors move through their stroke"
+    movers = _moving(bodies, Motion.EJECTOR)
+    if not movers:
+        return Proof(name, Verdict.NOT_RUN, None, OPEN_OVERLAP, "mm", "the tool has no ejectors")
+    return _prove_way(name, movers, _moving(bodies, Motion.CORE_HALF), stroke)
+
+
+def _prove_way(
+    name: str, movers: Sequence[ProofBody], standing: Sequence[ProofBody], way: float | None, *, up: bool = True
+) -> Proof:
+    worst, pair = 0.0, ""
+    for mover in movers:
+        swept = _way_of(mover, way, up=up)
+        low, high = _box(swept)
+        for other in standing:
+            other_low, other_high = other.body.box
+            if (other_low > high).any() or (low > other_high).any():
+                continue
+            for piece in thick_pieces(swept ^ other.mesh, NOISE_THICKNESS):
+                if thickness(piece) > worst:
+                    worst = thickness(piece)
+                    x, y, z = piece.to_mesh64().vert_properties[0][:3]
+                    pair = f"{mover.name} against {other.name} at {x:.2f}, {y:.2f}, {z:.2f}"
+    verdict = Verdict.PASSED if worst < OPEN_OVERLAP else Verdict.FAILED
+    return Proof(name, verdict, worst, OPEN_OVERLAP, "mm", pair)
+
+
+def _way_of(mover: ProofBody, way: float | None, *, up: bool) -> MeshSolid:
+    return sweep_faces(mover.body, face_kinds(mover.body), up, way)
+
+
+def _box(solid: MeshSolid) -> tuple[np.ndarray, np.ndarray]:
+    bounds = np.asarray(solid.bounding_box())
+    return bounds[:3], bounds[3:]
+
+
+def _moving(bodies: Sequence[ProofBody], motion: Motion) -> list[ProofBody]:
+    return [b for b in bodies if b.motion is motion]
+
+
+def _others(bodies: Sequence[ProofBody], motion: Motion) -> list[ProofBody]:
+    return [b for b in bodies if b.motion is not motion]
