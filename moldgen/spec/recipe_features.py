@@ -214,7 +214,7 @@ class Boss(_Body):
     gussets: Annotated[Gussets | None, Field(description="ribs round the boss")] = None
 
 
-class Rib(_Body):
+class Rib(_Solid):
     """A straight rib between two points of its plane."""
 
     feature: Literal["rib"]

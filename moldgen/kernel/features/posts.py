@@ -84,7 +84,7 @@ def rib(values: Values, bench: Bench) -> list[Step]:
         raise PartError("the rib has no length: start and end are the same point")
     turned = frame.turned(start, math.degrees(math.atan2(run[1], run[0])))
     solid = frustum(turned, (length, values["thickness"]), values["height"], (values["end_draft"], values["draft"]))
-    return [Step("add", values["body"], solid)]
+    return [Step(values["mode"], values["body"], solid)]
 
 
 def frustum(
