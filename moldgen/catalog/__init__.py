@@ -5,7 +5,7 @@ The data are loaded and checked once, on first use. Nothing here is imported by 
 
 from __future__ import annotations
 
-from moldgen.catalog.eyebolts import Eyebolt, eyebolt_for, eyebolts
+from moldgen.catalog.eyebolts import Eyebolt, all_eyebolts, eyebolt_for
 from moldgen.catalog.fits import Bore, FitBand, bore, fit_band, fit_bands, fit_clearance
 from moldgen.catalog.pins import (
     Pin,
@@ -15,9 +15,9 @@ from moldgen.catalog.pins import (
     ejector_pin_series,
     ejector_pin_up,
 )
-from moldgen.catalog.resins import Resin, resin, resin_names, resins
+from moldgen.catalog.resins import Resin, all_resins, resin, resin_names
 from moldgen.catalog.sizes import SizeSeries, preferred_size_up, size_series
-from moldgen.catalog.steels import Steel, steel, steel_numbers, steels
+from moldgen.catalog.steels import Steel, all_steels, steel, steel_numbers
 from moldgen.catalog.table import Fact, Range, Row
 
 __all__ = [
@@ -31,6 +31,9 @@ __all__ = [
     "Row",
     "SizeSeries",
     "Steel",
+    "all_eyebolts",
+    "all_resins",
+    "all_steels",
     "bore",
     "core_pin_blank",
     "core_pin_series",
@@ -38,16 +41,13 @@ __all__ = [
     "ejector_pin_series",
     "ejector_pin_up",
     "eyebolt_for",
-    "eyebolts",
     "fit_band",
     "fit_bands",
     "fit_clearance",
     "preferred_size_up",
     "resin",
     "resin_names",
-    "resins",
     "size_series",
     "steel",
     "steel_numbers",
-    "steels",
 ]

@@ -17,7 +17,7 @@ class Eyebolt(Row):
 
 
 @cache
-def eyebolts() -> tuple[Eyebolt, ...]:
+def all_eyebolts() -> tuple[Eyebolt, ...]:
     """Return the eyebolts, smallest first."""
     return read_rows("eyebolts.yaml", Eyebolt)
 
@@ -37,5 +37,5 @@ def eyebolt_for(mass: float) -> Eyebolt | None:
     """
     if not mass > 0:
         raise ValueError(f"a mass must be positive, got {mass} kg")
-    fitting = [bolt for bolt in eyebolts() if bolt.inclined >= mass]
+    fitting = [bolt for bolt in all_eyebolts() if bolt.inclined >= mass]
     return fitting[1] if len(fitting) > 1 else None

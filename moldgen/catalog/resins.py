@@ -73,7 +73,7 @@ class Resin(Row):
 
 
 @cache
-def resins() -> tuple[Resin, ...]:
+def all_resins() -> tuple[Resin, ...]:
     """Return every resin, in the order of the data file."""
     return read_rows("resins.yaml", Resin)
 
@@ -84,7 +84,7 @@ def resin_names() -> tuple[str, ...]:
     >>> resin_names()[:3]
     ('ABS', 'PC', 'PC/ABS')
     """
-    return tuple(row.name for row in resins())
+    return tuple(row.name for row in all_resins())
 
 
 @cache
@@ -100,4 +100,4 @@ def resin(name: str) -> Resin:
     >>> resin("Acetal").shrink_along
     Range(low=1.8, high=2.5)
     """
-    return find_row(resins(), name, "resin")
+    return find_row(all_resins(), name, "resin")

@@ -33,7 +33,7 @@ class Steel(Row):
 
 
 @cache
-def steels() -> tuple[Steel, ...]:
+def all_steels() -> tuple[Steel, ...]:
     """Return every tool material, in the order of the data file."""
     return read_rows("steels.yaml", Steel)
 
@@ -44,7 +44,7 @@ def steel_numbers() -> tuple[str, ...]:
     >>> steel_numbers()[1]
     '1.2311'
     """
-    return tuple(row.name for row in steels())
+    return tuple(row.name for row in all_steels())
 
 
 @cache
@@ -58,4 +58,4 @@ def steel(number: str) -> Steel:
     >>> steel("H13").name
     '1.2344'
     """
-    return find_row(steels(), number, "tool material")
+    return find_row(all_steels(), number, "tool material")

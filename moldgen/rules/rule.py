@@ -208,5 +208,7 @@ def rule(
 
 
 def _with_unit(value: float, unit: str) -> str:
+    if isinstance(value, bool):
+        return "yes" if value else "no"
     number = f"{value:.6g}"
     return number if unit == "1" else f"{number} {unit}"
