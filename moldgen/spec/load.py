@@ -149,6 +149,8 @@ def _raise(mistakes: list[SpecError], file: str) -> NoReturn:
     shown = mistakes[:MAX_REPORTED]
     if len(mistakes) > MAX_REPORTED:
         shown.append(
-            SpecError(f"and {len(mistakes) - MAX_REPORTED} more mistakes", where=file, remedy="correct these first")
+            SpecError(
+                f"and at least {len(mistakes) - MAX_REPORTED} more mistakes", where=file, remedy="correct these first"
+            )
         )
     raise SpecErrors(shown)

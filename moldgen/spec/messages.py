@@ -15,13 +15,16 @@ from moldgen.spec.tree import Path, Tree
 
 _LOOK_IT_UP: Final = "correct it; `moldgen schema` describes every key"
 
+MAX_WORDED: Final = 500
+"""A text with more mistakes is no spec; looking for the nearest key of each would take seconds."""
+
 _Words = tuple[str, str]
 """What is wrong with the value, and the remedy."""
 
 
 def plain_errors(error: ValidationError, tree: Tree) -> list[SpecError]:
-    """Return every mistake of `error` with its place in `tree`, in the order of the file."""
-    lines = error.errors(include_url=False)
+    """Return the mistakes of `error`, at most `MAX_WORDED`, with their places in `tree`, in the order of the file."""
+    lines = error.errors(include_url=False)[:MAX_WORDED]
     found = [_plain_error(line, tree) for line in lines if not _only_follows(line, lines)]
     unique = {(at, str(e)): e for at, e in found}
     return [unique[key] for key in sorted(unique)]

@@ -32,7 +32,7 @@ Path = tuple[str | int, ...]
 
 MAX_DEPTH: Final = 40
 MAX_ALIASES: Final = 100
-MAX_VALUES: Final = 50_000
+MAX_VALUES: Final = 20_000
 """Values in the text with every alias written out: the longest demo spec has a few hundred."""
 
 
@@ -151,6 +151,8 @@ class _Builder:
             return
         if not isinstance(event, ScalarEvent):
             return
+        if _HALF_CHARACTER.search(event.value):
+            self._stop(place, "an escape here is half a character", "write the character itself, or \\U and 8 digits")
         if self._wants_key():
             self._key(event.value, place)
             return
@@ -228,6 +230,9 @@ class _Builder:
     def _stop(self, place: Place, what: str, remedy: str) -> None:
         raise SpecError(what, where=at(self.tree.file, place), remedy=remedy)
 
+
+_HALF_CHARACTER: Final = re.compile("[\ud800-\udfff]")
+"""Surrogates: only an escape can smuggle them in, and no UTF-8 file or message could hold them."""
 
 _NULL: Final = frozenset({"", "~", "null", "Null", "NULL"})
 _TRUE: Final = frozenset({"true", "True", "TRUE"})

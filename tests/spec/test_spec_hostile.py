@@ -14,6 +14,7 @@ from moldgen.errors import SpecError
 from moldgen.spec.load import load_spec
 from moldgen.spec.tree import MAX_ALIASES, MAX_DEPTH, MAX_VALUES, read_tree
 
+SEARCH = settings(max_examples=300, suppress_health_check=[HealthCheck.too_slow], deadline=None, derandomize=True)
 HEAD = "part: {file: lid.step}\nresin: ABS\n"
 
 
@@ -74,6 +75,7 @@ def _only_spec_errors(text: str | bytes) -> None:
 
 
 @given(st.binary(max_size=60) | st.text(max_size=120))
+@SEARCH
 def test_any_bytes(data):
     _only_spec_errors(data)
 
@@ -118,7 +120,7 @@ PIECES += ["\t", "0.5 in", "100 %", "-1", "1e999", ".nan", "%YAML 1.1\n", "\\x",
 
 
 @given(st.lists(st.sampled_from(PIECES), max_size=25))
-@settings(max_examples=300)
+@SEARCH
 def test_any_soup_of_yaml_signs(pieces):
     _only_spec_errors("".join(pieces))
     _only_spec_errors(HEAD + "".join(pieces))
@@ -178,6 +180,6 @@ DATA = st.recursive(
 
 
 @given(st.dictionaries(st.sampled_from(KEYS), DATA, max_size=8))
-@settings(max_examples=300, suppress_health_check=[HealthCheck.too_slow], deadline=None)
+@SEARCH
 def test_any_data_under_known_keys(data):
     _only_spec_errors(json.dumps({"part": {"file": "a.step"}, "resin": "ABS"} | data))

@@ -135,6 +135,7 @@ YAML = [
     _(HEAD + "gate: {at: *here}\n", "3:12", "no finished value is named &here"),
     _(HEAD + "gate: &g {at: [*g]}\n", "3:16", "no finished value is named &g"),
     _(HEAD + "name: \x01\n", "3:7", "a character that text cannot hold"),
+    _(HEAD + 'name: "\\ud800"\n', "3:7", "half a character"),
     _(HEAD + 'name: "\\U99999999"\n', "", "this is not YAML"),
 ]
 
@@ -157,7 +158,7 @@ def test_several_mistakes_are_reported_at_once_in_the_order_of_the_file(mistakes
 def test_very_many_mistakes_are_counted(mistakes):
     found = mistakes(HEAD + "".join(f"key{i}: 1\n" for i in range(200)))
     assert len(found) == 31
-    assert "and 170 more" in found[-1][1]
+    assert "and at least 170 more" in found[-1][1]
 
 
 PLANNED = ["side_actions", "inserts", "cavities", "runner", "cooling", "vents", "base", "press"]

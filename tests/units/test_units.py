@@ -7,7 +7,7 @@ import subprocess
 import sys
 
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from moldgen.errors import SpecError
@@ -88,6 +88,7 @@ def test_wrong_measure_names_what_was_expected(value, measure, said):
 @given(
     st.text(max_size=30) | st.from_regex(r"[0-9.]{1,5} ?[a-zA-Z%/*23]{1,8}", fullmatch=True), st.sampled_from(Measure)
 )
+@settings(deadline=None, derandomize=True)
 def test_any_text_is_a_finite_number_or_a_spec_error(text, measure):
     try:
         number = to_number(text, measure)
@@ -97,6 +98,7 @@ def test_any_text_is_a_finite_number_or_a_spec_error(text, measure):
 
 
 @given(st.floats(-1e6, 1e6), st.sampled_from(Measure))
+@settings(deadline=None, derandomize=True)
 def test_a_plain_number_is_taken_as_it_is(number, measure):
     assert to_number(number, measure) == number
 
