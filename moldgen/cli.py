@@ -116,9 +116,9 @@ def prove(folder: Path, **how: Any) -> None:
 @cli.command()
 def schema() -> None:
     """Print the JSON Schema of a spec, for editors."""
-    from moldgen.spec.schema import Spec  # noqa: PLC0415  pydantic takes its time to import
+    from moldgen.spec.describe import json_schema  # noqa: PLC0415  pydantic takes its time to import
 
-    click.echo(to_json(Spec.model_json_schema()), nl=False)
+    _echo_json(json_schema())
 
 
 def _existing(path: Path, what: str) -> None:

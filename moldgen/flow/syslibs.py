@@ -7,11 +7,14 @@ import re
 from moldgen.errors import KernelError
 
 PACKAGES = ("libgl1", "libegl1")
-"""Debian packages that bring every library the wheels load and do not ship [read off the wheels with readelf]:
+"""Debian packages that bring every library the wheels load and do not ship [tried in a minimal Debian 12]:
 
 libGL.so.1, libX11.so.6 and libexpat.so.1 (cadquery-ocp, on import) come with libgl1; libEGL.so.1 (vtk, which opens it
 for pictures without a display) with libegl1.
 """
+
+TEST_PACKAGES = ("libglu1-mesa", "libxft2", "libxinerama1", "libxcursor1", "libgomp1")
+"""What the tests need besides: their second STEP reader, gmsh, brings a window system's libraries into play."""
 
 APT_LINE = f"sudo apt-get install -y {' '.join(PACKAGES)}"
 

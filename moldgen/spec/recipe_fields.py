@@ -9,6 +9,7 @@ from typing import Annotated, Any, Final, Literal
 from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, PlainSerializer, PlainValidator, WithJsonSchema
 
 from moldgen.spec.expression import Dimension, Expression, Sign, parse
+from moldgen.spec.fields import OrWritten
 
 Mapping = dict[str, Any]
 NAME_PATTERN: Final = r"[A-Za-z][A-Za-z0-9_-]*"
@@ -87,7 +88,9 @@ EDGE_WORDS: Final = (
 class Choice(RecipeModel):
     """Faces or edges by geometry, when the short text form does not reach: conditions that must all hold."""
 
-    select: Annotated[str, Field(description="text form, e.g. 'top of lid', 'concave', 'between boss and floor'")] = "all"
+    select: Annotated[str, Field(description="text form, e.g. 'top of lid', 'concave', 'between boss and floor'")] = (
+        "all"
+    )
     within: Annotated[
         tuple[Point3, Point3] | None,
         Field(description="two opposite corners of a box that must hold the whole edge, or the middle of the face"),
@@ -125,7 +128,9 @@ def split_words(text: str, known: tuple[str, ...]) -> Words:
     words = tuple(match["words"].split())
     for word in words:
         if word not in known:
-            raise ValueError(f"unknown word '{word}' in '{text}'; known: {', '.join(known)}, of NAME, between NAME and NAME")
+            raise ValueError(
+                f"unknown word '{word}' in '{text}'; known: {', '.join(known)}, of NAME, between NAME and NAME"
+            )
     between = (match["a"], match["b"]) if match["a"] else None
     if not words and not match["of"] and between is None:
         raise ValueError("the choice is empty; write e.g. 'top of NAME'")
@@ -146,6 +151,8 @@ def _choices(what: str, known: tuple[str, ...]) -> Any:
     return (
         BeforeValidator(partial(_as_choices, known=known)),
         Field(min_length=1, description=f"{what}: text, mapping (select, within, at) or a list of them"),
+        OrWritten({"type": ["string", "object"]}),
+        OrWritten({"type": "array", "items": {"type": ["string", "object"]}, "minItems": 1}),
     )
 
 
@@ -165,9 +172,9 @@ class PlaneOn(RecipeModel):
 
     plane: Annotated[Literal["xy", "xz", "yz"] | None, Field(description="coordinate plane")] = None
     face: Annotated[str | None, Field(description="planar face, e.g. 'top of base'")] = None
-    offset: Annotated[Length | None, Field(description="distance of the plane along the growth direction before flip")] = (
-        None
-    )
+    offset: Annotated[
+        Length | None, Field(description="distance of the plane along the growth direction before flip")
+    ] = None
     flip: Annotated[bool, Field(description="grow the other way")] = False
     origin: Annotated[
         Literal["part", "centre"],
@@ -194,5 +201,6 @@ On = Annotated[
     PlaneOn,
     BeforeValidator(_plane),
     Field(description="xy, xz, yz, a face such as 'top of base', or a mapping (plane|face, offset, flip, origin)"),
+    OrWritten({"type": "string"}),
 ]
 XY: Final = PlaneOn(plane="xy")

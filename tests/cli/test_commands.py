@@ -11,7 +11,7 @@ import sys
 from pathlib import Path
 
 import pytest
-from helpers.command import environment, moldgen, moldgen_command
+from helpers.command import TESTS, environment, moldgen, moldgen_command
 
 from moldgen.errors import ExitCode
 
@@ -175,3 +175,15 @@ def test_an_output_that_cannot_be_written_is_2(tmp_path: Path) -> None:
     done = moldgen("build", "lid.yaml", "--output", "/dev/null/lid", folder=tmp_path, job="good")
     assert done.returncode == 2
     assert "a file stands where a folder is needed" in done.stderr
+
+
+def test_schema_is_a_valid_json_schema_that_knows_the_demos(tmp_path: Path) -> None:
+    import jsonschema  # noqa: PLC0415
+    from ruamel.yaml import YAML  # noqa: PLC0415
+
+    schema = json.loads(moldgen("schema", folder=tmp_path).stdout)
+    jsonschema.Draft202012Validator.check_schema(schema)
+    validator = jsonschema.Draft202012Validator(schema)
+    for spec in sorted(TESTS.parent.glob("specs/*/spec.yaml")):
+        assert [e.message for e in validator.iter_errors(YAML(typ="safe").load(spec))] == []
+    assert list(validator.iter_errors({"resn": "ABS"}))

@@ -14,6 +14,7 @@ MAY_CATCH_ALL = {
     "moldgen.kernel.guard": "kernel exceptions share no base class",
     "moldgen.flow.child": "the worker's outermost handler",
     "moldgen.cli": "the outermost handler of the command line",
+    "moldgen.flow.part_source": "what the user's own Python function raises is his, not ours",
 }
 
 PROGRAMS = {"moldgen.output.pictures": "a program of its own, whose lines the worker reads"}
