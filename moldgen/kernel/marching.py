@@ -117,7 +117,8 @@ def _scale(slope: Slope, chain: np.ndarray) -> np.ndarray:
     step = np.array([high_u - low_u, high_v - low_v]) * 1e-4
     here = slope.point(u, v)
     moved = [slope.point(u + step[0], v) - here, slope.point(u, v + step[1]) - here]
-    return step / np.maximum([np.linalg.norm(m) for m in moved], 1e-9 * np.abs(step).max() + 1e-12)
+    size = np.maximum([np.linalg.norm(m) for m in moved], 1e-9 * np.abs(step).max() + 1e-12)
+    return np.asarray(step / size)
 
 
 def _extended(slope: Slope, chain: np.ndarray, scale: np.ndarray) -> np.ndarray:
@@ -153,7 +154,7 @@ def _resampled(slope: Slope, chain: np.ndarray, scale: np.ndarray, count: int) -
         if found is not None:
             points.append(found)
     points.append(chain[-1])
-    return np.array(points) * scale
+    return np.asarray(points) * np.asarray(scale)
 
 
 def _corrected(slope: Slope, start: np.ndarray, way: np.ndarray, scale: np.ndarray) -> np.ndarray | None:

@@ -10,7 +10,9 @@ from typing import Any
 import numpy as np
 from OCP.BRepAdaptor import BRepAdaptor_Surface
 from OCP.BRepTools import BRepTools
+from OCP.GeomAbs import GeomAbs_C2, GeomAbs_Cone, GeomAbs_Cylinder, GeomAbs_Plane
 from OCP.gp import gp_Pnt, gp_Vec
+from OCP.TColStd import TColStd_Array1OfReal
 from OCP.TopoDS import TopoDS_Face
 from scipy.optimize import brentq
 
@@ -116,9 +118,6 @@ def axis_parts(position: Any) -> tuple[float, float, float, float]:
 
 def profile_places(curve: Any, low: float, high: float) -> np.ndarray:
     """Return the places at which the slope of a profile curve (an adaptor) is looked at."""
-    from OCP.GeomAbs import GeomAbs_C2  # noqa: PLC0415
-    from OCP.TColStd import TColStd_Array1OfReal  # noqa: PLC0415
-
     count = curve.NbIntervals(GeomAbs_C2)
     knots = TColStd_Array1OfReal(1, count + 1)
     curve.Intervals(knots, GeomAbs_C2)
@@ -126,3 +125,30 @@ def profile_places(curve: Any, low: float, high: float) -> np.ndarray:
     ends = np.array([low, *inner, high])
     steps = np.linspace(0.0, 1.0, SAMPLES_A_SPAN, endpoint=False)
     return np.append((ends[:-1, None] + steps * np.diff(ends)[:, None]).ravel(), high)
+
+
+def sine_range(face: TopoDS_Face) -> tuple[float, float] | None:
+    """Return the least and greatest n.d over the parameter box of a plane, cylinder or cone; None for other surfaces.
+
+    For a face that does not fill its parameter box the range may be wider than that of the face itself.
+    """
+    slope = Slope(face)
+    kind = slope.surface.GetType()
+    low_u, high_u, low_v, high_v = slope.bounds
+    middle = 0.5 * (low_v + high_v)
+    if kind == GeomAbs_Plane:
+        value = slope(low_u, middle)
+        return value, value
+    if kind == GeomAbs_Cylinder:
+        a, b, _, _ = axis_parts(slope.surface.Cylinder().Position())
+    elif kind == GeomAbs_Cone:
+        a, b, _, _ = axis_parts(slope.surface.Cone().Position())
+    else:
+        return None
+    # n.d is a cosine of u plus a constant: its extremes lie at the ends or where the cosine turns
+    places = [low_u, high_u]
+    if math.hypot(a, b) > LEVEL:
+        turn = math.atan2(b, a)
+        places += [turn + k * math.pi for k in range(-4, 5) if low_u < turn + k * math.pi < high_u]
+    values = [slope(u, middle) for u in places]
+    return min(values), max(values)
