@@ -9,6 +9,7 @@ import numpy as np
 
 from moldgen.errors import KernelError, MoldgenError, PartError
 from moldgen.kernel.body import Body
+from moldgen.kernel.guard import operation
 from moldgen.kernel.loops import boundary_loops
 from moldgen.kernel.meshsolid import MeshSolid
 from moldgen.kernel.patches import loop_points
@@ -97,7 +98,8 @@ def part_halves(
     trials = [_Trial(z, deep=False) for z in levels] + [_Trial(z, deep=True) for z in levels[:DEEP_LEVELS]]
     for trial in trials:
         try:
-            parted = _part_at(task, trial)
+            with operation(f"part the mold at height {trial.level:.3f}", operands=(body.solid,)):
+                parted = _part_at(task, trial)
         except MoldgenError as error:
             refused.append(f"level {trial.level:.3f}{' (every wall split)' if trial.deep else ''}: {error.what}")
             continue

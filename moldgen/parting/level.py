@@ -37,6 +37,7 @@ def find_levels(body: Body, kinds: FaceKinds, part: MeshSolid) -> LevelSearch:
     """
     on_outline = edges_on_outline(body, part)
     lengths: dict[float, float] = {}
+    exact: dict[float, tuple[float, float]] = {}
     points = body.edge_points
     for edge, (a, b) in enumerate(body.edge_faces):
         if not on_outline[edge] or np.ptp(points[edge, :, 2]) > 1e-5:
@@ -44,13 +45,15 @@ def find_levels(body: Body, kinds: FaceKinds, part: MeshSolid) -> LevelSearch:
         pair = {int(kinds.kind[a]), int(kinds.kind[b])}
         weight = 2 if pair == {Kind.UPPER, Kind.LOWER} else 1 if Kind.VERTICAL in pair and len(pair) == 2 else 0
         if weight:
-            height = round(float(points[edge, 4, 2]), 3)
-            lengths[height] = lengths.get(height, 0.0) + weight * float(body.edge_lengths[edge])
+            height, length = round(float(points[edge, 4, 2]), 3), float(body.edge_lengths[edge])
+            lengths[height] = lengths.get(height, 0.0) + weight * length
+            # heights are gathered rounded, but the plane has to lie exactly on the edges that it is to hold
+            exact[height] = max(exact.get(height, (0.0, 0.0)), (length, float(points[edge, 4, 2])))
     best = sorted(lengths, key=lambda z: (-lengths[z], z))[:MOST_LEVELS]
     if not best:
         middle = float(body.box[0][2] + body.box[1][2]) / 2
         return LevelSearch((middle,), (0.0,), on_outline)
-    return LevelSearch(tuple(best), tuple(lengths[z] for z in best), on_outline)
+    return LevelSearch(tuple(exact[z][1] for z in best), tuple(lengths[z] for z in best), on_outline)
 
 
 def edges_on_outline(body: Body, part: MeshSolid) -> np.ndarray:

@@ -150,15 +150,18 @@ def _close_hole(body: Body, loop: Loop) -> tuple[list[Face], ClosedLoop]:
 def _levels_of(loop: Loop) -> list[float]:
     """Return heights at which to close a hole: where most of its rim is level, then its lowest and highest point."""
     run: dict[float, float] = {}
+    exact: dict[float, float] = {}
     every = []
     for edge in loop:
         points = directed_points(edge, 5)
         every.append(points[:, 2])
         if np.ptp(points[:, 2]) < 1e-5:
             height = round(float(points[2, 2]), 4)
+            exact.setdefault(height, float(points[2, 2]))
             run[height] = run.get(height, 0.0) + float(np.linalg.norm(np.diff(points[:, :2], axis=0), axis=1).sum())
     heights = np.concatenate(every)
-    return [*sorted(run, key=lambda z: (-run[z], z)), float(heights.min()), float(heights.max())]
+    level = sorted(run, key=lambda z: (-run[z], z))
+    return [*(exact[z] for z in level), float(heights.min()), float(heights.max())]
 
 
 def _closed(rung: Rung, loop: Loop, off_plane: int, refused: Sequence[str] = ()) -> ClosedLoop:

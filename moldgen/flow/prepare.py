@@ -1,0 +1,72 @@
+"""The part in the mold, ready to be parted: faces split where they turn over, one closed mesh, trapped space known."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+from moldgen.errors import KernelError, PartError
+from moldgen.finding import Decision, Notes
+from moldgen.kernel.body import Body
+from moldgen.kernel.crossing import crossings
+from moldgen.kernel.meshsolid import mesh_solid
+from moldgen.kernel.prepare import preparations
+from moldgen.release.imprint import imprint_silhouettes
+from moldgen.release.kinds import FaceKinds, face_kinds
+from moldgen.release.trapped import Trapped, trapped_volume
+
+
+@dataclass(frozen=True)
+class Prepared:
+    """The part in mold coordinates (pull +z), every face looking one way."""
+
+    body: Body
+    kinds: FaceKinds
+    trapped: Trapped
+
+
+def prepare(solid: Any, volume_mm3: float | None = None) -> tuple[Prepared, Notes]:
+    """Return the part ready to be parted, by the first rung of the preparation ladder that copes with all of it.
+
+    solid : the part in mold coordinates; volume_mm3 : its volume, if known
+
+    Raises
+    ------
+    PartError : no rung copes; each with its reason. Or two faces of the part pass through each other
+    """
+    refused: list[str] = []
+    for candidate in preparations(solid, volume_mm3):
+        refused = [*candidate.refused, *refused[len(candidate.refused) :]]
+        try:
+            body, notes = ready(Body(candidate.solid))
+            prepared = Prepared(body, kinds := face_kinds(body), trapped_volume(body, kinds))
+        except KernelError as error:
+            refused.append(f"{candidate.rung}: {error.what}")
+            continue
+        _refuse_crossings(body)
+        choice = f"{len(body.faces)} faces"
+        why = "every face meshes, the mesh is closed and the solid stays valid when split"
+        return prepared, notes + Notes(
+            decisions=(Decision("preparation", choice, why, candidate.rung, tuple(refused)),)
+        )
+    raise PartError(
+        "the part cannot be prepared for parting: " + "; ".join(refused),
+        remedy="repair the part in the CAD system that wrote it, and export it again",
+    )
+
+
+def ready(body: Body) -> tuple[Body, Notes]:
+    """Return the body with its straddling faces split at their silhouettes, its mesh checked to be closed."""
+    mesh_solid(body.mesh)
+    return imprint_silhouettes(body, face_kinds(body))
+
+
+def _refuse_crossings(body: Body) -> None:
+    found = crossings(body.mesh)
+    if found:
+        x, y, z = found[0].at
+        raise PartError(
+            f"faces of the part pass through each other, {found[0].depth_mm:.3f} mm deep",
+            where=f"at {x:.3f}, {y:.3f}, {z:.3f} (mold frame)",
+            remedy="repair the part in the CAD system that wrote it",
+        )
