@@ -54,9 +54,8 @@ def table_lines(table: Table) -> list[str]:
     return [table.title, *("  " + _row(cells, widths, right) for cells in body)]
 
 
-def error_lines(error: MoldgenError, width: int = 100) -> list[str]:
+def error_lines(error: MoldgenError) -> list[str]:
     """Return the lines that the terminal shows for `error`; long ones are not broken, so that paths stay whole."""
-    del width
     return [f"moldgen: {line}" if not line.startswith(" ") else line for line in str(error).splitlines()]
 
 

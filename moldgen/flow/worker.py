@@ -201,6 +201,7 @@ def _started(space: Path) -> Iterator[_Child]:
                 stderr=log,
                 pass_fds=(its.fileno(),),
                 start_new_session=True,
+                env={"PYTHONHASHSEED": "0", **os.environ},  # belt and braces: nothing may depend on it
             )
         child = _Child(process, ours, space)
         try:
