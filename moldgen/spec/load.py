@@ -43,7 +43,7 @@ class LoadedSpec:
 
         A key that the user did not write is located at its section, or at the top of the file.
         """
-        path = key if isinstance(key, tuple) else tuple(int(k) if k.isdigit() else k for k in key.split("."))
+        path = key if isinstance(key, tuple) else tuple(int(k) if k.isdecimal() else k for k in key.split("."))
         return self._tree.where(path)
 
     @property

@@ -14,7 +14,7 @@ from moldgen.spec.describe import json_schema, starter
 from moldgen.spec.load import load_spec
 from moldgen.spec.schema import Spec
 
-SPECS = sorted((Path(__file__).parents[2] / "specs").glob("*.yaml"))
+SPECS = sorted((Path(__file__).parents[2] / "specs").glob("**/*.yaml"))
 HEAD = {"part": {"file": "lid.step"}, "resin": "ABS"}
 
 
@@ -92,7 +92,7 @@ def test_the_schema_refuses_what_the_loader_refuses(validator, more):
     assert not validator.is_valid(HEAD | more)
 
 
-@pytest.mark.parametrize("path", SPECS, ids=lambda p: p.stem)
+@pytest.mark.parametrize("path", SPECS, ids=lambda p: p.parent.name)
 def test_the_specs_of_the_project_satisfy_the_schema(validator, path):
     validator.validate(YAML(typ="safe", pure=True).load(path.read_text()))
     assert load_spec(path).spec.name
