@@ -1,0 +1,111 @@
+"""What every decision of the layout asks of the part in its halves; each answer is worked out once."""
+
+from __future__ import annotations
+
+from functools import cached_property
+
+import numpy as np
+
+from moldgen.finding import Point
+from moldgen.kernel.body import Body
+from moldgen.kernel.mesh import SurfaceMesh
+from moldgen.kernel.probe import Probe
+from moldgen.model.halves import Halves
+from moldgen.model.part import MoldFrame
+
+OFF = 1e-3
+"""mm: how far inside its face a ray starts, so that it does not meet that face again."""
+
+THICKEST = 1e3
+"""mm: stands for a wall that a ray does not leave (a hole in the mesh)."""
+
+
+class PartView:
+    """The part between its halves, read-only, in the mold frame [mm].
+
+    frame : the way back to the part's own coordinates for findings; None leaves mold coordinates
+    """
+
+    def __init__(self, halves: Halves, frame: MoldFrame | None = None) -> None:
+        self.halves = halves
+        self.body: Body = halves.body
+        self.mesh: SurfaceMesh = self.body.mesh
+        self.level = halves.level
+        self.low, self.high = np.asarray(halves.low, float), np.asarray(halves.high, float)
+        self._frame = frame
+
+    def place(self, point: np.ndarray | Point) -> Point:
+        """Return a mold point as a place to report, in part coordinates [mm]."""
+        x, y, z = (float(v) for v in point)
+        spot = (x, y, z) if self._frame is None else self._frame.to_part((x, y, z))
+        return (round(spot[0], 3), round(spot[1], 3), round(spot[2], 3))
+
+    @cached_property
+    def probe(self) -> Probe:
+        """Rays against the part."""
+        return Probe(self.mesh)
+
+    @cached_property
+    def core_side(self) -> np.ndarray:
+        """Which triangles the core half forms, (t,) bool."""
+        return ~np.asarray(self.halves.cavity_side, bool)[self.mesh.face]
+
+    @cached_property
+    def centres(self) -> np.ndarray:
+        """Centre of each triangle, (t, 3) [mm]."""
+        return np.asarray(self.mesh.corners.mean(axis=1))
+
+    @cached_property
+    def normals(self) -> np.ndarray:
+        """Outward unit normal of each triangle as it lies, (t, 3)."""
+        p = self.mesh.corners
+        normal = np.cross(p[:, 1] - p[:, 0], p[:, 2] - p[:, 0])
+        return np.asarray(normal / np.maximum(np.linalg.norm(normal, axis=1), 1e-30)[:, None])
+
+    def thickness(self, points: np.ndarray, normals: np.ndarray) -> np.ndarray:
+        """Return the wall under surface points (k, 3), straight against their outward normals (k, 3), (k,) [mm]."""
+        distance, _ = self.probe.first(points - OFF * normals, -normals)
+        return np.asarray(np.where(np.isfinite(distance), distance + OFF, THICKEST))
+
+    @cached_property
+    def triangle_walls(self) -> np.ndarray:
+        """Wall under the centre of each triangle, (t,) [mm]."""
+        return self.thickness(self.centres, self.normals)
+
+    @cached_property
+    def wall(self) -> float:
+        """The usual wall of the part: half of its surface lies over a thinner one [mm]."""
+        order = np.argsort(self.triangle_walls, kind="stable")
+        share = np.cumsum(self.body.triangle_areas[order])
+        return float(self.triangle_walls[order][np.searchsorted(share, 0.5 * share[-1])])
+
+    @cached_property
+    def middle(self) -> np.ndarray:
+        """Middle of the part's box in plan, (2,) [mm]."""
+        low, high = self.body.box
+        return np.asarray(0.5 * (low + high)[:2])
+
+    @cached_property
+    def triangle_edges(self) -> np.ndarray:
+        """Number of the mesh edge opposite to each corner, (t, 3): neighbours share the number."""
+        t = self.mesh.triangles.astype(np.int64)
+        ends = np.sort(np.stack([t[:, [1, 2]], t[:, [2, 0]], t[:, [0, 1]]], axis=1), axis=2).reshape(-1, 2)
+        _, number = np.unique(ends[:, 0] * len(self.mesh.vertices) + ends[:, 1], return_inverse=True)
+        return np.asarray(number.reshape(-1, 3))
+
+    def underside(self, places: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """Look up from under the part: height [mm] of the first surface over plan places (k, 2) and its triangle.
+
+        Height is inf and the triangle -1 where there is no part.
+        """
+        start = self.body.box[0][2] - 1.0
+        origins = np.column_stack([places, np.full(len(places), start)])
+        distance, triangle = self.probe.first(origins, np.array([0.0, 0.0, 1.0]))
+        return start + distance, triangle
+
+    def topside(self, places: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """Look down from above the part: as `underside`; height is -inf where there is no part."""
+        start = self.body.box[1][2] + 1.0
+        origins = np.column_stack([places, np.full(len(places), start)])
+        distance, triangle = self.probe.first(origins, np.array([0.0, 0.0, -1.0]))
+        return start - distance, triangle
