@@ -18,7 +18,7 @@ from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Shape, TopoDS_So
 
 from moldgen.errors import PartError
 from moldgen.kernel.guard import operation
-from moldgen.kernel.measure import is_valid, volume
+from moldgen.kernel.measure import bounding_box, is_valid, volume
 from moldgen.kernel.sew import close, open_edges
 from moldgen.kernel.topology import edge_points, edges_of, explore, faces_of, solids_of, vertex_point
 from moldgen.model.part import HealNote
@@ -145,10 +145,10 @@ def _without_voids(state: Healed) -> Healed:
     with operation("look for hollow spaces", operands=(solid,)):
         outer = BRepClass3d.OuterShell_s(solid)
         others = [(volume(s), s) for s in shells if not s.IsSame(outer)]
-    separate = [s for v, s in others if v > 0.0]
+        separate = [s for v, s in others if v > 0.0 or not _within(s, outer)]
     if separate:
         raise PartError(
-            f"the solid consists of {1 + len(separate)} bodies that do not touch",
+            f"the solid consists of {1 + len(separate)} bodies that are not joined",
             where=_place(separate[0]),
             remedy="export them as solids of their own and choose one",
         )
@@ -165,6 +165,13 @@ def _without_voids(state: Healed) -> Healed:
         BRepLib.OrientClosedSolid_s(filled)
     note = HealNote("closed hollow spaces filled", len(others), hollow)
     return Healed(filled, _measured(filled), (*state.notes, note))
+
+
+def _within(inner: TopoDS_Shape, outer: TopoDS_Shape) -> bool:
+    """True when the vertices of a shell lie in the box of another: a reader may turn a second body inside out."""
+    points = np.array([vertex_point(TopoDS.Vertex_s(v)) for v in explore(inner, TopAbs_VERTEX)])
+    low, high = bounding_box(outer)
+    return bool(np.all(points >= low) and np.all(points <= high))
 
 
 def _remarks(solid: TopoDS_Solid) -> tuple[HealNote, ...]:

@@ -19,6 +19,7 @@ _COMMENT = re.compile(rb"/\*.*?\*/", re.DOTALL)
 _SCHEMA = re.compile(rb"FILE_SCHEMA\s*\(\s*\(\s*'([^']*)'", re.IGNORECASE)
 
 _OTHER_FORMATS: Final = (
+    (b"\xef\xbb\xbf", "a text file that was saved again with a byte order mark: save it without"),
     (b"PK", "a zip archive (3MF, or a packed STEP file: unpack it first)"),
     (b"solid", "an STL mesh"),
     (b"ACIS", "an ACIS file"),
@@ -59,7 +60,7 @@ def check_step_text(path: Path) -> StepText:
     where = str(path)
     if not data.strip():
         raise PartError("the file is empty", where=where, remedy="export the part again")
-    start = _COMMENT.sub(b"", data[:20000].removeprefix(b"\xef\xbb\xbf")).lstrip()
+    start = _COMMENT.sub(b"", data[:20000]).lstrip()
     if not start.upper().startswith(START):
         raise PartError(
             f"not a STEP file{_guess(start)}", where=where, remedy="export the part as STEP (AP203, AP214 or AP242)"
