@@ -7,6 +7,7 @@ are 2.6 times smaller and written twice as fast, and all of 48 real parts came b
 from __future__ import annotations
 
 import io
+import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -42,7 +43,10 @@ TIME_STAMP: Final = "1970-01-01T00:00:00"
 """The header must hold a time; a fixed one keeps the bytes the same on every run."""
 
 GREY: Final[Rgb] = (200, 200, 200)
-LONGEST_NAME: Final = 80
+LONGEST_NAME: Final = 60
+"""The kernel breaks longer text over lines, and readers stumble over a code that is broken in the middle."""
+
+_OTHER: Final = re.compile("[\x80-\uffff]+|[\U00010000-\U0010ffff]+")
 
 
 @dataclass(frozen=True)
@@ -160,18 +164,23 @@ def write_component(component: Component, path: Path, looks: Looks, schema: str 
 
 
 def step_text(text: str) -> str:
-    """Return a name as it may stand in a STEP file: one line, no backslash, other alphabets coded in ASCII.
+    """Return a name as it may stand in a STEP file: one short line, no backslash, other alphabets coded in ASCII.
 
     [published: ISO 10303-21, encoding of characters outside the basic alphabet]
     """
-    line = " ".join("".join(c if c.isprintable() else " " for c in text.replace("\\", "/")).split())[:LONGEST_NAME]
-    return "".join(c if c.isascii() else _coded(c) for c in line)
+    line = " ".join("".join(c if c.isprintable() else " " for c in text.replace("\\", "/")).split())
+    for length in range(len(line), 0, -1):
+        coded = _OTHER.sub(_coded, line[:length].rstrip())
+        if len(coded) <= LONGEST_NAME:
+            return coded
+    return ""
 
 
-def _coded(character: str) -> str:
-    if ord(character) > 0xFFFF:
-        return f"\\X4\\{ord(character):08X}\\X0\\"
-    return f"\\X2\\{ord(character):04X}\\X0\\"
+def _coded(run: re.Match[str]) -> str:
+    characters = run.group()
+    if ord(characters[0]) > 0xFFFF:
+        return "\\X4\\" + "".join(f"{ord(c):08X}" for c in characters) + "\\X0\\"
+    return "\\X2\\" + "".join(f"{ord(c):04X}" for c in characters) + "\\X0\\"
 
 
 def _set_name(label: TDF_Label, name: str) -> None:
