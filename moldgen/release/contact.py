@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from moldgen.kernel.body import Body
-from moldgen.kernel.rays import blocked
+from moldgen.kernel.tracer import Tracer
 from moldgen.release.kinds import FaceKinds, Kind
 
 SAMPLES = 4000
@@ -36,8 +36,9 @@ def vertical_contact(body: Body, kinds: FaceKinds) -> np.ndarray:
     points = points + (STEP_OFF + 1e-4 * body.diagonal) * normal
     face = body.mesh.face[triangle]
     total = np.maximum(np.bincount(face, weight, count), 1e-30)
+    tracer = Tracer(body.mesh)
     for column, direction in enumerate(((0.0, 0.0, -1.0), (0.0, 0.0, 1.0))):
-        hit = blocked(body.mesh, points, direction)
+        hit = tracer.blocked(points, direction)
         share[:, column] = np.bincount(face, weight * hit, count) / total
     return share
 

@@ -121,7 +121,7 @@ def _finding(row: FaceDraft, required_deg: float) -> Finding:
     return Finding(
         "draft.too_small",
         Severity.WARNING,
-        f"the {row.surface} has {round(row.least_deg, 3):g} deg of draft where {required_deg:.3g} deg are asked for{parts}",
+        f"the {row.surface} has {round(row.least_deg, 3):g} deg of draft, {required_deg:.3g} deg are asked for{parts}",
         where=f"{row.surface} face at {x:.2f}, {y:.2f}, {z:.2f}, formed by {_formed_by(row.half)}",
         at=row.at,
         value=row.least_deg,

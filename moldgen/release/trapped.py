@@ -10,7 +10,7 @@ import numpy as np
 from moldgen.finding import Point
 from moldgen.kernel.body import Body
 from moldgen.kernel.meshsolid import MeshSolid, PieceMesh, mesh_solid, piece_mesh, thick_pieces, thickness
-from moldgen.kernel.rays import first_hits
+from moldgen.kernel.tracer import Tracer
 from moldgen.release.kinds import FaceKinds, Kind
 from moldgen.release.sweep import CAP, sweep_faces
 from moldgen.tolerances import NOISE_THICKNESS, RUB_THICKNESS
@@ -123,11 +123,9 @@ def _open_sides(body: Body, meshes: list[PieceMesh]) -> list[np.ndarray]:
     corners = np.concatenate(walls)
     normal = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
     outward = normal / np.maximum(np.linalg.norm(normal, axis=1), 1e-30)[:, None]
-    rays, triangles, _ = first_hits(body.mesh, corners.mean(axis=1) + LOOK_OUT * outward, (0.0, 0.0, 1.0))
-    hit = body.mesh.corners[triangles]
-    looks_up = np.cross(hit[:, 1] - hit[:, 0], hit[:, 2] - hit[:, 0])[:, 2] > 0.0
-    closed = np.zeros(len(corners), dtype=bool)
-    closed[rays[looks_up]] = True
+    first = Tracer(body.mesh).first_triangle(corners.mean(axis=1) + LOOK_OUT * outward, (0.0, 0.0, 1.0))
+    hit = body.mesh.corners[first]
+    closed = (first >= 0) & (np.cross(hit[:, 1] - hit[:, 0], hit[:, 2] - hit[:, 0])[:, 2] > 0.0)
     ends = np.split(~closed, np.cumsum([len(w) for w in walls])[:-1])
     return [_longest_edges(wall[free]) for wall, free in zip(walls, ends, strict=True)]
 
