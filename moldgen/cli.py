@@ -42,7 +42,7 @@ class _How:
 def _shared(command: Callable[..., None]) -> Callable[..., None]:
     """Give `command` the options of `_How`."""
     for option in (
-        click.option("--memory-limit", type=click.FloatRange(min=0.25), default=8.0, show_default=True, metavar="GIB"),
+        click.option("--memory-limit", type=click.FloatRange(min=1.0), default=8.0, show_default=True, metavar="GIB"),
         click.option(
             "--time-limit", type=click.FloatRange(min=1.0), default=120.0, show_default=True, metavar="SECONDS"
         ),
