@@ -154,7 +154,7 @@ def _resampled(slope: Slope, chain: np.ndarray, scale: np.ndarray, count: int) -
         if found is not None:
             points.append(found)
     points.append(chain[-1])
-    return np.asarray(points) * np.asarray(scale)
+    return np.asarray(np.multiply(points, scale))
 
 
 def _corrected(slope: Slope, start: np.ndarray, way: np.ndarray, scale: np.ndarray) -> np.ndarray | None:

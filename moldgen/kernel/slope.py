@@ -46,7 +46,8 @@ class Slope:
             self.surface.D1(u, v, self._point, self._u, self._v)
             n = self._u.Crossed(self._v)
             size = max(n.Magnitude(), 1e-300)
-        return np.array([n.X(), n.Y(), n.Z()]) * (self.side / size)
+        k = self.side / size
+        return np.array([k * n.X(), k * n.Y(), k * n.Z()])
 
     def __call__(self, u: float, v: float) -> float:
         """Return n.d - sine."""

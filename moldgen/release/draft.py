@@ -11,6 +11,7 @@ from moldgen.finding import Finding, Point, Severity
 from moldgen.kernel.body import Body
 from moldgen.kernel.slope import sine_range
 from moldgen.release.kinds import FaceKinds, Kind
+from moldgen.release.place import face_at
 
 ANGLE_NOISE = 1e-3
 """Degrees by which a draft may miss the requirement: exporters write angles with about six digits."""
@@ -115,14 +116,13 @@ def _too_small(row: FaceDraft, required_deg: float) -> bool:
 
 
 def _finding(row: FaceDraft, required_deg: float) -> Finding:
-    x, y, z = row.at
     whole = row.below_mm2 > 0.99 * row.area_mm2
     parts = "" if whole else f" on {row.below_mm2:.3g} of its {row.area_mm2:.3g} mm2"
     return Finding(
         "draft.too_small",
         Severity.WARNING,
         f"the {row.surface} has {round(row.least_deg, 3):g} deg of draft, {required_deg:.3g} deg are asked for{parts}",
-        where=f"{row.surface} face at {x:.2f}, {y:.2f}, {z:.2f}, formed by {_formed_by(row.half)}",
+        where=f"{face_at(row.surface, row.at)}, formed by {_formed_by(row.half)}",
         at=row.at,
         value=row.least_deg,
         limit=required_deg,
@@ -154,7 +154,7 @@ def _reach(body: Body, chosen: np.ndarray) -> np.ndarray:
     low, high = np.full(count, np.inf), np.full(count, -np.inf)
     np.minimum.at(low, face, z.min(axis=1, initial=np.inf))
     np.maximum.at(high, face, z.max(axis=1, initial=-np.inf))
-    return np.maximum(high - low, 0.0)
+    return np.asarray(np.maximum(high - low, 0.0))
 
 
 def _halves(kinds: FaceKinds, contact: np.ndarray | None) -> list[Half]:

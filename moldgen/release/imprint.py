@@ -7,18 +7,20 @@ from typing import Any
 import numpy as np
 
 from moldgen.errors import KernelError
-from moldgen.finding import Decision, Finding, Notes, Point, Severity
+from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.kernel.body import Body
 from moldgen.kernel.silhouette import silhouette_edges
 from moldgen.kernel.split import split_faces
+from moldgen.model.part import MoldFrame
 from moldgen.release.kinds import FaceKinds, Kind, face_kinds
+from moldgen.release.place import face_place
 
 
-def imprint_silhouettes(body: Body, kinds: FaceKinds) -> tuple[Body, Notes]:
+def imprint_silhouettes(body: Body, kinds: FaceKinds, frame: MoldFrame | None = None) -> tuple[Body, Notes]:
     """Return the body with its straddling faces split where they turn over (body itself when there are none).
 
     A face whose silhouette cannot be found or imprinted stays as it is and is reported, with the overhang that it
-    leaves on the wrong side.
+    leaves on the wrong side; with a `frame`, at its place in part coordinates.
 
     Raises
     ------
@@ -34,7 +36,7 @@ def imprint_silhouettes(body: Body, kinds: FaceKinds) -> tuple[Body, Notes]:
         split, failed_split, by_one = _split(body, touched, tools)
         failed.update(failed_split)
     after = kinds if split is body else face_kinds(split)
-    findings = _residual(split, after, "; ".join(sorted(set(failed.values()))))
+    findings = _residual(split, after, frame, "; ".join(sorted(set(failed.values()))))
     count = sum(len(tools[f]) for f in touched)
     choice = f"{len(touched)} faces split along {count} curves"
     why = f"{len(straddling)} faces look both up and down along the pull"
@@ -82,18 +84,17 @@ def _split(body: Body, touched: list[int], tools: dict[int, list[Any]]) -> tuple
     return body, failed, True
 
 
-def _residual(body: Body, kinds: FaceKinds, why: str) -> tuple[Finding, ...]:
+def _residual(body: Body, kinds: FaceKinds, frame: MoldFrame | None, why: str) -> tuple[Finding, ...]:
     findings = []
     for number in kinds.numbers(Kind.STRADDLING):
-        x, y, z = (float(c) for c in body.face_places[number])
-        at: Point = (x, y, z)
+        at, where = face_place(body, int(number), frame)
         findings.append(
             Finding(
                 "release.straddling",
                 Severity.WARNING,
                 "a face looks both up and down along the pull and could not be split where it turns over"
                 + (f" ({why})" if why else ""),
-                where=f"{body.surface_kind(int(number))} face at {x:.2f}, {y:.2f}, {z:.2f}",
+                where=where,
                 at=at,
                 value=float(kinds.overhang[number].min()),
                 limit=0.0,

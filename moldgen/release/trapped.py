@@ -40,7 +40,8 @@ class TrapPiece:
     depth_mm : largest distance, square to the pull, from a place in the piece to the open air beside it: how far the
         plastic reaches over it (a window through a wall is open on both sides and counts from its middle)
     height_mm : extent along the pull
-    at : a point on the trapped face, that is on the face looking along the pull that the piece touches most
+    at, face : a point on the trapped face, and its number: of the faces that look along the pull, the one that the
+        piece touches most (-1 if the piece touches none)
     faces : (face number, touched area [mm^2]), largest first
     """
 
@@ -51,6 +52,7 @@ class TrapPiece:
     depth_mm: float
     height_mm: float
     at: Point
+    face: int
     faces: tuple[tuple[int, float], ...]
 
     @property
@@ -146,6 +148,7 @@ def _measured(body: Body, kinds: FaceKinds, piece: MeshSolid, mesh: PieceMesh, s
     listed = np.flatnonzero(touched > SMALL_TOUCH)
     listed = listed[np.lexsort((listed, -touched[listed]))]
     thin = thickness(piece)
+    at, number = _place(corners, area, mesh.face, kinds)
     return TrapPiece(
         solid=piece,
         grip=Grip.RUB if thin < RUB_THICKNESS else Grip.UNDERCUT,
@@ -153,13 +156,14 @@ def _measured(body: Body, kinds: FaceKinds, piece: MeshSolid, mesh: PieceMesh, s
         thickness_mm=thin,
         depth_mm=_depth(mesh, sides),
         height_mm=float(np.ptp(mesh.vertices[:, 2])),
-        at=_place(corners, area, mesh.face, kinds),
+        at=at,
+        face=number,
         faces=tuple((int(f), float(touched[f])) for f in listed),
     )
 
 
-def _place(corners: np.ndarray, area: np.ndarray, face: np.ndarray, kinds: FaceKinds) -> Point:
-    """Return the middle of the largest triangle on the face that the piece touches most, vertical faces last."""
+def _place(corners: np.ndarray, area: np.ndarray, face: np.ndarray, kinds: FaceKinds) -> tuple[Point, int]:
+    """Return the face that the piece touches most, vertical ones last, and the middle of its largest triangle there."""
     count = len(kinds.kind)
     own = np.flatnonzero(face < count)
     leaning = own[kinds.kind[face[own]] != Kind.VERTICAL]
@@ -167,7 +171,7 @@ def _place(corners: np.ndarray, area: np.ndarray, face: np.ndarray, kinds: FaceK
     most = int(np.argmax(np.bincount(face[chosen], area[chosen])))
     chosen = chosen[face[chosen] == most]
     x, y, z = corners[chosen[np.argmax(np.round(area[chosen], 9))]].mean(axis=0)
-    return float(x), float(y), float(z)
+    return (float(x), float(y), float(z)), most if len(own) else -1
 
 
 def _depth(mesh: PieceMesh, sides: np.ndarray) -> float:
