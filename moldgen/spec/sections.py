@@ -58,6 +58,11 @@ class Parting(Section):
     height: AutoCoordinate = Field(
         default=None, description="height of the flat parting surface: part coordinate along the pull [mm]"
     )
+    undercuts: Literal["refuse", "fill"] = Field(
+        default="refuse",
+        description="what a face that no straight pull can release means: refuse names it and stops; fill molds the "
+        "part with that space filled, and says what the part gains",
+    )
 
 
 class Blocks(Section):

@@ -1,0 +1,187 @@
+"""The front half of every run: from the spec to the part against its pull, before any steel."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from moldgen.catalog import Resin, resin
+from moldgen.errors import PartError
+from moldgen.finding import Decision, Finding, Notes, Severity
+from moldgen.flow.part_source import read_part
+from moldgen.flow.prepare import Prepared, prepare
+from moldgen.flow.tell import Tell
+from moldgen.kernel.body import Body
+from moldgen.kernel.place import to_mold
+from moldgen.model.part import MoldFrame, Part, Pull, Vector
+from moldgen.release.contact import vertical_contact
+from moldgen.release.draft import FaceDraft, draft_findings, draft_table
+from moldgen.release.frame import mold_frame
+from moldgen.release.pull import PullCandidate, search_pull
+from moldgen.release.trapped import Grip, TrapPiece
+from moldgen.rules.draft import draft_required
+from moldgen.spec.load import LoadedSpec
+from moldgen.spec.pull import FaceNormal
+
+MOST_NAMED = 8
+"""Trapped places that an error message names one by one; the manifest has them all."""
+
+
+@dataclass(frozen=True)
+class Reviewed:
+    """What is known about the part before steel is built. Findings speak in part coordinates."""
+
+    loaded: LoadedSpec
+    resin: Resin
+    part: Part
+    pull: Pull
+    candidates: tuple[PullCandidate, ...]
+    frame: MoldFrame
+    prepared: Prepared
+    contact: np.ndarray
+    draft: tuple[FaceDraft, ...]
+    required_draft_deg: float
+    notes: Notes
+
+
+def review(loaded: LoadedSpec, tell: Tell) -> Reviewed:
+    """Read the part, choose the pull, and see how every face releases.
+
+    Raises
+    ------
+    PartError, SpecError, KernelError : the part cannot be read or prepared
+    """
+    spec = loaded.spec
+    data = resin(spec.resin)
+    notes = Notes(findings=loaded.findings)
+    with tell.stage("read the part") as stage:
+        part, more = read_part(loaded)
+        notes += more
+        stage.detail = f"{part.face_count} faces, {part.volume_mm3 / 1000:.2f} cm3"
+    with tell.stage("choose the pull") as stage:
+        pull, candidates, more = _choose_pull(loaded, part)
+        notes += more
+        stage.detail = _listed(pull.direction)
+    with tell.stage("prepare the part") as stage:
+        frame, more = mold_frame(pull.direction, spec.shrink, spec.resin, part.bounding_box_mm)
+        notes += more
+        scale = float(np.prod(frame.factors))
+        prepared, more = prepare(to_mold(part.solid, frame), part.volume_mm3 * scale)
+        notes += _in_part(more, frame)
+        stage.detail = f"{len(prepared.body.faces)} faces, {len(prepared.trapped.undercuts)} undercuts"
+    with tell.stage("review the draft") as stage:
+        contact = vertical_contact(prepared.body, prepared.kinds)
+        section = spec.draft
+        least = data.draft_minimum.low if section.minimum is None else section.minimum
+        asked = (least, section.texture_depth, section.texture_slope)
+        required = draft_required(*asked)
+        rows = draft_table(prepared.body, prepared.kinds, required, contact)
+        found = draft_findings(rows, required)
+        notes += _in_part(Notes(found), frame) + Notes(
+            draft_required.outside(*asked), quantities=(draft_required.line("draft asked of every wall", *asked),)
+        )
+        stage.detail = f"{len(found)} faces below {required:.2g} deg"
+    notes += Notes(tuple(trap_finding(p, frame, prepared.body) for p in prepared.trapped.pieces))
+    return Reviewed(loaded, data, part, pull, candidates, frame, prepared, contact, rows, required, notes)
+
+
+def refuse_undercuts(reviewed: Reviewed) -> None:
+    """Pass if a straight pull releases the part.
+
+    Raises
+    ------
+    PartError : it does not; the trapped places are named with position, area and depth
+    """
+    pieces = reviewed.prepared.trapped.undercuts
+    if not pieces:
+        return
+    lines = [_named(p, reviewed.frame) for p in pieces[:MOST_NAMED]]
+    if len(pieces) > MOST_NAMED:
+        lines.append(f"and {len(pieces) - MOST_NAMED} more")
+    raise PartError(
+        f"{len(pieces)} undercuts hold the part against a straight pull along {_listed(reviewed.pull.direction)}:\n    "
+        + "\n    ".join(lines),
+        where=reviewed.loaded.locate("pull"),
+        remedy="give another pull (moldgen check lists the best), change these faces so that they taper along the "
+        "pull, open a slot under them, or accept them filled with parting.undercuts: fill",
+    )
+
+
+def trap_finding(piece: TrapPiece, frame: MoldFrame, body: Body) -> Finding:
+    """Return what one trapped piece means for the tool."""
+    at = frame.to_part(piece.at)
+    face = piece.faces[0][0] if piece.faces else 0
+    undercut = piece.grip is Grip.UNDERCUT
+    what = "holds the part on opening" if undercut else "rubs on opening; the plastic has to give way"
+    return Finding(
+        code="release.undercut" if undercut else "release.rub",
+        severity=Severity.FAILURE if undercut else Severity.WARNING,
+        message=f"a space of {piece.volume_mm3:.3f} mm^3, {piece.depth_mm:.2f} mm deep, touching {piece.area_mm2:.2f} "
+        f"mm^2 of {len(piece.faces)} faces, {what}",
+        where=f"{body.surface_kind(face)} face at {_listed(at)}",
+        at=at,
+        value=piece.thickness_mm,
+        limit=0.1 if undercut else 0.03,
+        unit="mm",
+        remedy="taper the face along the pull, open a slot under it, or move the parting" if undercut else "",
+    )
+
+
+def _named(piece: TrapPiece, frame: MoldFrame) -> str:
+    return (
+        f"face at {_listed(frame.to_part(piece.at))}: {piece.area_mm2:.2f} mm^2 of {len(piece.faces)} faces, "
+        f"{piece.depth_mm:.2f} mm deep, {piece.height_mm:.2f} mm high, {piece.volume_mm3:.3f} mm^3"
+    )
+
+
+def _choose_pull(loaded: LoadedSpec, part: Part) -> tuple[Pull, tuple[PullCandidate, ...], Notes]:
+    section = loaded.spec.pull
+    given = section.direction
+    if isinstance(given, FaceNormal):
+        direction = _normal_at(loaded, part, given.point)
+        why = f"normal of the flat face nearest to {_listed(given.point)}, given in the spec"
+        return Pull(direction, why), (), Notes(decisions=(Decision("pull", _listed(direction), why),))
+    if given is not None:
+        why = "given in the spec"
+        return Pull(given, why), (), Notes(decisions=(Decision("pull", _listed(given), why),))
+    found = search_pull(Body(part.solid), axes_only=section.search == "axes")
+    best = found[0]
+    others = tuple(f"{_listed(c.direction)} ({c.source}): {c.why}" for c in found[1:5])
+    chosen = Decision("pull", _listed(best.direction), best.why, best.source, others)
+    return Pull(best.direction, best.why), found, Notes(decisions=(chosen,))
+
+
+def _normal_at(loaded: LoadedSpec, part: Part, point: Vector) -> Vector:
+    body = Body(part.solid)
+    number, distance = body.nearest_face(np.asarray(point))
+    if body.surface_kind(number) != "plane":
+        raise PartError(
+            f"the face nearest to {_listed(point)} is no plane but a {body.surface_kind(number)}, {distance:.3g} mm away",
+            where=loaded.locate("pull"),
+            remedy="give a point on a flat face, or a direction",
+        )
+    normal = body.mesh.normals[body.mesh.face == number][0]
+    x, y, z = (float(v) + 0.0 for v in normal / np.linalg.norm(normal))
+    return (x, y, z)
+
+
+_PLACE = re.compile(r" at -?[\d.]+, -?[\d.]+, -?[\d.]+")
+
+
+def _in_part(notes: Notes, frame: MoldFrame) -> Notes:
+    """Return notes made in the mold frame with their places in part coordinates."""
+    findings = []
+    for finding in notes.findings:
+        if finding.at is None:
+            findings.append(finding)
+            continue
+        at = frame.to_part(finding.at)
+        where = _PLACE.sub(f" at {_listed(at)}", finding.where, count=1)
+        findings.append(replace(finding, at=at, where=where))
+    return replace(notes, findings=tuple(findings))
+
+
+def _listed(point: Vector) -> str:
+    return ", ".join(f"{v + 0.0:.2f}" if abs(v) >= 0.005 else "0.00" for v in point)
