@@ -10,6 +10,7 @@ import io
 import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
+from functools import cached_property
 from pathlib import Path
 from types import MappingProxyType
 from typing import Any, Final
@@ -32,6 +33,7 @@ from moldgen import __version__
 from moldgen.errors import KernelError, StageError
 from moldgen.kernel.guard import operation
 from moldgen.kernel.quiet import quiet
+from moldgen.kernel.step_cut import StepAssembly
 from moldgen.kernel.step_style import Rgb, Style, add_styles
 from moldgen.kernel.topology import only_solid
 from moldgen.model.tool import Component
@@ -75,9 +77,10 @@ class StepExport:
         names = [c.name for c in components]
         if len(set(names)) != len(names):
             raise StageError(f"components share a name: {', '.join(sorted(n for n in names if names.count(n) > 1))}")
-        self._schema, self._looks = schema, looks
-        self._components = {c.name: c for c in components}
-        self._labels: dict[str, TDF_Label] = {}
+        self._schema, self._names = schema, names
+        self._styles = [
+            Style(looks.colours.get(c.role.value, GREY), looks.transparency.get(c.role.value, 0.0)) for c in components
+        ]
         with operation("collect the components for STEP"):
             self._document = TDocStd_Document(TCollection_ExtendedString("moldgen"))
             self._shapes = XCAFDoc_DocumentTool.ShapeTool_s(self._document.Main())
@@ -90,7 +93,6 @@ class StepExport:
     def _add(self, component: Component) -> None:
         label = self._shapes.AddShape(only_solid(component.solid), False)
         _set_name(label, component.name)
-        self._labels[component.name] = label
         for number, position in enumerate(component.positions, start=1):
             move = gp_Trsf()
             move.SetTranslation(gp_Vec(*position))
@@ -105,7 +107,7 @@ class StepExport:
         KernelError : the kernel cannot translate them
         OSError : the file cannot be written
         """
-        path.write_bytes(self._bytes(self._root, list(self._components.values()), path.name))
+        path.write_bytes(self._assembly.whole(step_text(path.name)))
 
     def write_component(self, name: str, path: Path) -> None:
         """Write the definition of one component, where it was built (its positions are not applied).
@@ -115,19 +117,21 @@ class StepExport:
         KernelError : the kernel cannot translate it
         OSError : the file cannot be written
         """
-        path.write_bytes(self._bytes(self._labels[name], [self._components[name]], path.name))
+        path.write_bytes(self._assembly.product(self._names.index(name), step_text(path.name)))
 
-    def _bytes(self, label: TDF_Label, components: list[Component], file_name: str) -> bytes:
-        with quiet(), operation("write STEP", file=file_name):
+    @cached_property
+    def _assembly(self) -> StepAssembly:
+        """The tool as STEP text, translated once: component files are cut out of it."""
+        with quiet(), operation("write STEP", components=len(self._names)):
             writer = self._writer()
-            if not writer.Transfer(label, STEPControl_AsIs, None, Message_ProgressRange()):
-                raise KernelError(f"the kernel cannot translate {file_name} to STEP")
+            if not writer.Transfer(self._root, STEPControl_AsIs, None, Message_ProgressRange()):
+                raise KernelError("the kernel cannot translate the tool to STEP")
             model = writer.ChangeWriter().Model(False)
-            _set_header(model, file_name)
+            _set_header(model)
             _number_instances(model)
             stream = io.BytesIO()
             writer.WriteStream(stream)
-        return add_styles(stream.getvalue(), [self._style(c) for c in components])
+        return StepAssembly(add_styles(stream.getvalue(), self._styles))
 
     def _writer(self) -> STEPCAFControl_Writer:
         STEPCAFControl_Writer()  # the settings below exist only once a writer was made
@@ -145,10 +149,6 @@ class StepExport:
         ):
             set_mode(False)
         return writer
-
-    def _style(self, component: Component) -> Style:
-        role = component.role.value
-        return Style(self._looks.colours.get(role, GREY), self._looks.transparency.get(role, 0.0))
 
 
 def write_assembly(
@@ -197,11 +197,10 @@ def _number_instances(model: Any) -> None:
             entity.SetId(TCollection_HAsciiString(str(count)))
 
 
-def _set_header(model: Any, file_name: str) -> None:
+def _set_header(model: Any) -> None:
     header = APIHeaderSection_MakeHeader(model)
     us = TCollection_HAsciiString(f"moldgen {__version__}")
     nobody = TCollection_HAsciiString("")
-    header.SetName(TCollection_HAsciiString(step_text(file_name)))
     header.SetTimeStamp(TCollection_HAsciiString(TIME_STAMP))
     header.SetAuthorValue(1, nobody)
     header.SetOrganizationValue(1, nobody)

@@ -17,6 +17,7 @@ import manifold3d
 import numpy as np
 import pytest
 import trimesh
+from OCP.BRepAlgoAPI import BRepAlgoAPI_Cut
 from OCP.BRepBuilderAPI import BRepBuilderAPI_Transform
 from OCP.BRepPrimAPI import BRepPrimAPI_MakeBox, BRepPrimAPI_MakeCone, BRepPrimAPI_MakeCylinder, BRepPrimAPI_MakeSphere
 from OCP.gp import gp_Ax2, gp_Dir, gp_Pnt, gp_Trsf
@@ -27,7 +28,7 @@ from moldgen.kernel.measure import bounding_box, volume
 from moldgen.kernel.mesh import surface_mesh, tessellate
 from moldgen.kernel.step_read import read_step
 from moldgen.kernel.step_write import Looks, StepExport, step_text, write_assembly, write_component
-from moldgen.kernel.topology import compound_of, faces_of
+from moldgen.kernel.topology import compound_of, faces_of, only_solid
 from moldgen.model.tool import Component, Motion, Role
 
 LOOKS = Looks({"part": (238, 136, 102), "cavity": (119, 170, 221)}, {"cavity": 0.5})
@@ -93,16 +94,31 @@ def test_identical_components_share_one_definition_and_instances_are_numbered(fi
     ]
 
 
-def test_faces_shared_between_solids_are_written_for_each(tmp_path):
-    # A solid built from the faces of another shares them in memory; each product must own its faces in the file.
+def test_one_solid_given_twice_is_refused(tmp_path):
+    # the kernel makes one definition of it: the caller must say so by positions
     block = BRepPrimAPI_MakeBox(10, 20, 30).Solid()
     twice = [
         Component("part", Role.PART, block, "", Motion.PART),
-        Component("cavity", Role.CAVITY, block.Reversed().Reversed(), "", Motion.CAVITY_HALF, ((50.0, 0.0, 0.0),)),
+        Component("cavity", Role.CAVITY, block, "", Motion.CAVITY_HALF, ((50.0, 0.0, 0.0),)),
     ]
-    with pytest.raises(KernelError, match="solids instead of 2"):
-        # the very same solid twice is one definition: the caller must say so by positions
+    with pytest.raises(KernelError, match="1 solids instead of 2"):
         write_assembly(twice, tmp_path / "tool.step", LOOKS)
+
+
+def test_faces_shared_between_solids_are_written_for_each(tmp_path):
+    # Steel cut by a part keeps the part's faces, the same in memory; in the file each product owns its faces.
+    part = BRepPrimAPI_MakeBox(gp_Pnt(5, 5, 5), 5, 5, 5).Solid()
+    steel = only_solid(BRepAlgoAPI_Cut(BRepPrimAPI_MakeBox(20, 20, 10).Solid(), part).Shape())
+    both = [
+        Component("part", Role.PART, part, "ABS", Motion.PART),
+        Component("core", Role.CORE, steel, "1.2311", Motion.CORE_HALF),
+    ]
+    export = StepExport(both, LOOKS)
+    export.write_assembly(tmp_path / "tool.step")
+    export.write_component("core", tmp_path / "core.step")
+    assert len(re.findall(r"= ADVANCED_FACE\(", (tmp_path / "tool.step").read_text())) == 6 + 11
+    assert len(re.findall(r"= ADVANCED_FACE\(", (tmp_path / "core.step").read_text())) == 11
+    assert read_step(tmp_path / "core.step").volume_mm3 == pytest.approx(4000 - 125)
 
 
 def test_header_units_and_schema(files, tmp_path):
