@@ -1,32 +1,57 @@
-"""What the worker process does for each command. Runs in the child: here the kernel may be imported."""
+"""What the worker process does for each command. The kernel is loaded only after the spec was found to be good."""
 
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
+from pathlib import Path
 
-from moldgen.errors import StageError
+from moldgen.flow.folder import fresh_folder, write_new_file
 from moldgen.flow.job import Job, JobKind, JobResult
 from moldgen.flow.tell import Tell
+from moldgen.spec.load import LoadedSpec, load_spec
+
+OUT = Path("out")
+"""Where outputs go, in the folder where moldgen is run, unless the spec or the command line says otherwise."""
 
 
 def build(job: Job, tell: Tell) -> JobResult:
     """From a spec to a proved tool in the output folder."""
-    raise StageError(f"{job.kind} is not written yet ({tell.timings_s})")
+    loaded, final = _loaded(job, "")
+    tell.output(final)
+    from moldgen.flow.build import build_tool  # noqa: PLC0415  loads the kernel
+
+    with fresh_folder(final, inputs=_inputs(loaded), tell=tell) as aside:
+        result = build_tool(loaded, aside, job.options, tell)
+    return replace(result, output=final)
 
 
 def check(job: Job, tell: Tell) -> JobResult:
     """Review the part of a spec against its pull, without building steel."""
-    raise StageError(f"{job.kind} is not written yet ({tell.timings_s})")
+    loaded, final = _loaded(job, "-check")
+    tell.output(final)
+    from moldgen.flow.check import check_part  # noqa: PLC0415  loads the kernel
+
+    with fresh_folder(final, inputs=_inputs(loaded), tell=tell) as aside:
+        result = check_part(loaded, aside, tell)
+    return replace(result, output=final)
 
 
 def prove(job: Job, tell: Tell) -> JobResult:
     """Read an output folder back and prove the tool again, without its spec."""
-    raise StageError(f"{job.kind} is not written yet ({tell.timings_s})")
+    from moldgen.flow.prove import prove_folder  # noqa: PLC0415  loads the kernel
+
+    return prove_folder(job.source, tell)
 
 
 def new(job: Job, tell: Tell) -> JobResult:
     """Write a commented starter spec for a STEP file."""
-    raise StageError(f"{job.kind} is not written yet ({tell.timings_s})")
+    from moldgen.flow.new import starter_spec  # noqa: PLC0415  loads the kernel
+
+    output = job.output or Path(f"{job.source.stem}.yaml")
+    text, result = starter_spec(job.source, output, job.options.resin, tell)
+    write_new_file(output, text)
+    return replace(result, output=output)
 
 
 _JOBS: dict[JobKind, Callable[[Job, Tell], JobResult]] = {
@@ -45,3 +70,16 @@ def run_job(job: Job, tell: Tell) -> JobResult:
     MoldgenError : as the stages say
     """
     return _JOBS[job.kind](job, tell)
+
+
+def _loaded(job: Job, suffix: str) -> tuple[LoadedSpec, Path]:
+    loaded = load_spec(job.source, allow_code=job.options.allow_code)
+    if job.output is not None:
+        return loaded, job.output
+    given = loaded.spec.output.folder
+    place = OUT if given is None else loaded.folder / given
+    return loaded, place / f"{loaded.spec.name}{suffix}"
+
+
+def _inputs(loaded: LoadedSpec) -> list[Path]:
+    return [loaded.path, *([loaded.part_file] if loaded.part_file is not None else [])]

@@ -1,0 +1,116 @@
+"""`moldgen check`: the part against its pull, as tables and as a manifest; no steel."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+from moldgen.canon import to_json
+from moldgen.flow.folder import MANIFEST
+from moldgen.flow.job import JobResult, Table, verdict_code
+from moldgen.flow.record import notes_record, review_record
+from moldgen.flow.review import Reviewed, review
+from moldgen.flow.tell import Tell
+from moldgen.release.kinds import Kind
+from moldgen.spec.load import LoadedSpec
+
+MOST_ROWS = 20
+"""Rows of a table on the terminal; the manifest has all of them."""
+
+_LOOKS = {
+    Kind.UPPER: "to the cavity",
+    Kind.LOWER: "to the core",
+    Kind.VERTICAL: "along the pull, no draft",
+    Kind.STRADDLING: "both ways",
+}
+
+
+def check_part(loaded: LoadedSpec, folder: Path, tell: Tell) -> JobResult:
+    """Review the part and write the manifest of the review into `folder`."""
+    reviewed = review(loaded, tell)
+    record = {**review_record(reviewed), **notes_record(reviewed.notes)}
+    record["timings_s"] = {}
+    (folder / MANIFEST).write_text(to_json(record), encoding="utf-8")
+    code = verdict_code(reviewed.notes.findings)
+    undercuts = len(reviewed.prepared.trapped.undercuts)
+    verdict = f"{undercuts} undercuts hold it" if undercuts else "a straight pull releases it"
+    return JobResult(
+        exit_code=code,
+        headline=f"{reviewed.part.name}: {verdict}",
+        tables=review_tables(reviewed),
+        findings=reviewed.notes.findings,
+        decisions=reviewed.notes.decisions,
+    )
+
+
+def review_tables(reviewed: Reviewed) -> tuple[Table, ...]:
+    """Return the tables of the review: pull candidates, faces by direction, draft, trapped space."""
+    return tuple(t for t in (_pulls(reviewed), _faces(reviewed), _draft(reviewed), _trapped(reviewed)) if t.rows)
+
+
+def _pulls(reviewed: Reviewed) -> Table:
+    rows = tuple(
+        (
+            _listed(c.direction, 3),
+            c.source,
+            round(c.score, 4),
+            round(c.trapped_mm2, 2),
+            round(c.unevenness_mm, 2),
+            round(c.depth_mm, 1),
+            round(c.projected_mm2 / 100, 2),
+        )
+        for c in reviewed.candidates[:6]
+    )
+    columns = ("direction", "from", "score", "trapped [mm2]", "uneven line [mm]", "depth [mm]", "projected [cm2]")
+    return Table("pulls tried, best first", columns, rows)
+
+
+def _faces(reviewed: Reviewed) -> Table:
+    kinds, areas = reviewed.prepared.kinds.kind, reviewed.prepared.body.face_areas
+    rows = tuple(
+        (_LOOKS[kind], int((kinds == kind).sum()), round(float(areas[kinds == kind].sum()), 2))
+        for kind in Kind
+        if (kinds == kind).any()
+    )
+    return Table("faces against the pull", ("looks", "faces", "area [mm2]"), rows)
+
+
+def _draft(reviewed: Reviewed) -> Table:
+    required = reviewed.required_draft_deg
+    short = [r for r in reviewed.draft if r.mean_deg < required - 1e-3]
+    short.sort(key=lambda r: (-round(r.area_mm2, 3), r.face))
+    rows = tuple(
+        (
+            _listed(reviewed.frame.to_part(r.at), 2),
+            r.surface,
+            r.half.value,
+            round(r.least_deg, 3),
+            round(required, 3),
+            round(r.area_mm2, 2),
+        )
+        for r in short[:MOST_ROWS]
+    )
+    more = f" (largest {MOST_ROWS} of {len(short)})" if len(short) > MOST_ROWS else ""
+    columns = ("face at", "surface", "formed by", "draft [deg]", "asked [deg]", "area [mm2]")
+    return Table(f"faces with too little draft{more}", columns, rows)
+
+
+def _trapped(reviewed: Reviewed) -> Table:
+    pieces = reviewed.prepared.trapped.pieces
+    rows = tuple(
+        (
+            _listed(reviewed.frame.to_part(p.at), 2),
+            p.grip.value,
+            len(p.faces),
+            round(p.area_mm2, 2),
+            round(p.depth_mm, 2),
+            round(p.thickness_mm, 3),
+            round(p.volume_mm3, 3),
+        )
+        for p in pieces[:MOST_ROWS]
+    )
+    columns = ("face at", "grip", "faces", "area [mm2]", "depth [mm]", "thickness [mm]", "volume [mm3]")
+    return Table("trapped space", columns, rows)
+
+
+def _listed(point: tuple[float, float, float], digits: int) -> str:
+    return ", ".join(f"{round(v, digits) + 0.0:.{digits}f}" for v in point)
