@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 
+from OCP.BRepAlgoAPI import BRepAlgoAPI_Check
 from OCP.BRepOffset import BRepOffset_Skin
 from OCP.BRepOffsetAPI import BRepOffsetAPI_DraftAngle, BRepOffsetAPI_MakeThickSolid
 from OCP.GeomAbs import GeomAbs_Arc, GeomAbs_Intersection
@@ -38,12 +39,18 @@ def shell(body: TopoDS_Shape, thickness: float, opened: Sequence[TopoDS_Face]) -
             solid = checked_solid(shape, "hollowing")
         except (KernelError, PartError):
             continue
-        if volume(solid) < volume(body):
+        if volume(solid) < volume(body) and not _crosses_itself(solid):
             return solid
     raise PartError(
         f"a wall of {thickness:g} mm cannot be made inside the body",
-        remedy="use a thinner wall, make the shell before fillets smaller than the wall, or cut the inside out",
+        remedy="use a thinner wall, or give edges that were rounded before a radius larger than the wall",
     )
+
+
+def _crosses_itself(solid: TopoDS_Shape) -> bool:
+    """True when faces of the solid meet where they should not: an offset does this and still counts as valid."""
+    with operation("look for faces that cross", operands=(solid,)):
+        return not BRepAlgoAPI_Check(solid, False, True).IsValid()
 
 
 def draft(

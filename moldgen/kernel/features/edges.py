@@ -11,9 +11,13 @@ from OCP.TopoDS import TopoDS_Edge, TopoDS_Shape
 from moldgen.errors import KernelError, PartError
 from moldgen.kernel.features.shapes import checked_solid
 from moldgen.kernel.guard import operation
+from moldgen.kernel.measure import bounding_box
 
 SMALLER: Final = (0.75, 0.5, 0.25, 0.1)
 """Fractions of a refused size that are tried, only to tell the user what would work."""
+
+BULGE: Final = 1e-2
+"""mm that the box of a body may seem to grow by rounding: boxes of spline faces are not exact."""
 
 
 def fillet(body: TopoDS_Shape, edges: Sequence[TopoDS_Edge], radius: float) -> TopoDS_Shape:
@@ -60,7 +64,7 @@ def _fillet(body: TopoDS_Shape, edges: Sequence[TopoDS_Edge], radius: float) -> 
             maker.Add(radius, edge)
         maker.Build()
         shape = maker.Shape()
-    return checked_solid(shape, "rounding")
+    return _inside(body, checked_solid(shape, "rounding"))
 
 
 def _chamfer(body: TopoDS_Shape, edges: Sequence[TopoDS_Edge], distance: float) -> TopoDS_Shape:
@@ -70,4 +74,12 @@ def _chamfer(body: TopoDS_Shape, edges: Sequence[TopoDS_Edge], distance: float) 
             maker.Add(distance, edge)
         maker.Build()
         shape = maker.Shape()
-    return checked_solid(shape, "bevelling")
+    return _inside(body, checked_solid(shape, "bevelling"))
+
+
+def _inside(before: TopoDS_Shape, after: TopoDS_Shape) -> TopoDS_Shape:
+    """Return `after` if it stays within the box of `before`: a fillet that bulges out is wrong, though it is valid."""
+    (low, high), (new_low, new_high) = bounding_box(before), bounding_box(after)
+    if (new_low < low - BULGE).any() or (new_high > high + BULGE).any():
+        raise PartError("the edges bulge out of the body")
+    return after

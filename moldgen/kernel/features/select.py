@@ -197,14 +197,17 @@ class Chooser:
             if not any(self._belongs(p, one) and self._belongs(q, other) for p, q in pairs):
                 return False
         sides = [w for w in selector.words if w in _SIDES]
-        if sides and not self._bounds(row, Selector(selector.text, tuple(sides), selector.of)):
+        meant = set(row.faces)
+        if sides:
+            meant &= set(self._faces(Selector(selector.text, tuple(sides), selector.of)))
+            if not meant:
+                return False
+        on_rim = {_on_outer_wire(row.edge, self.all_faces[i]) for i in meant}
+        if ("outer" in selector.words and True not in on_rim) or ("inner" in selector.words and False not in on_rim):
             return False
         if selector.within and not _in_box(edge_points(row.edge, 9), selector.within):
             return False
         return all(_EDGE_TESTS[w](row, self.all_faces) for w in selector.words if w in _EDGE_TESTS)
-
-    def _bounds(self, row: _Edge, selector: Selector) -> bool:
-        return bool(set(row.faces) & set(self._faces(selector)))
 
     def _hint(self, selector: Selector) -> str:
         names = ", ".join(sorted(self.made))
@@ -223,10 +226,8 @@ class _Edge:
 
 
 def _is_vertical(row: _Edge, _: Sequence[TopoDS_Face]) -> bool:
-    points = edge_points(row.edge, 2)
-    run = points[1] - points[0]
-    straight = BRepAdaptor_Curve(row.edge).GetType() == GeomAbs_Line
-    return straight and abs(float(run[2])) > UPRIGHT * float(np.linalg.norm(run))
+    runs = np.diff(edge_points(row.edge, 5), axis=0)  # not one chord: an arc comes back
+    return bool((np.abs(runs[:, 2]) > UPRIGHT * np.linalg.norm(runs, axis=1)).all())
 
 
 def _is_horizontal(row: _Edge, _: Sequence[TopoDS_Face]) -> bool:
@@ -241,14 +242,6 @@ def _is_round(row: _Edge, _: Sequence[TopoDS_Face]) -> bool:
     return bool(BRepAdaptor_Curve(row.edge).GetType() == GeomAbs_Circle)
 
 
-def _is_outer(row: _Edge, faces: Sequence[TopoDS_Face]) -> bool:
-    return any(_on_outer_wire(row.edge, faces[i]) for i in row.faces)
-
-
-def _is_inner(row: _Edge, faces: Sequence[TopoDS_Face]) -> bool:
-    return any(not _on_outer_wire(row.edge, faces[i]) for i in row.faces)
-
-
 _EDGE_TESTS: Final[Mapping[str, Callable[[_Edge, Sequence[TopoDS_Face]], bool]]] = {
     "vertical": _is_vertical,
     "horizontal": _is_horizontal,
@@ -256,8 +249,6 @@ _EDGE_TESTS: Final[Mapping[str, Callable[[_Edge, Sequence[TopoDS_Face]], bool]]]
     "round": _is_round,
     "convex": lambda row, _: row.convex,
     "concave": lambda row, _: not row.convex,
-    "outer": _is_outer,
-    "inner": _is_inner,
 }
 
 
