@@ -65,7 +65,7 @@ def _face(body: Body, number: int, place: np.ndarray, base: float, growth: float
     if (offset * body.mesh.normals[own, :2]).sum() >= 0.0:
         return None
     low, high = (float(z) for z in body.face_heights[number])
-    radii = (base + growth * (low - place[2]), base + growth * (high - place[2]))
+    radii = (base + growth * (low - float(place[2])), base + growth * (high - float(place[2])))
     height = high - low
     whole = math.pi * abs(sum(radii)) * math.hypot(height, radii[1] - radii[0])
     if height <= 0.0 or whole <= 0.0:

@@ -109,7 +109,7 @@ def find_sticking(view: PartView, resin: Resin) -> tuple[Sticking, Notes]:
 
 @dataclass(frozen=True)
 class _Rings:
-    """Loops that enclose a core, and the stacks that they form. root : (l,) foot of the stack of each, -1 for others."""
+    """Loops that enclose a core, and the stacks that they form. root : (l,) foot of each one's stack, else -1."""
 
     root: np.ndarray
     roots: list[int]
@@ -140,7 +140,7 @@ class _Rings:
         blind = np.zeros(cut.loops, dtype=bool)
         for foot in roots:
             blind[foot] = not cut.inside(vents, int(cut.loop_layers[foot]))[:, foot].any()
-        wall = cut.mean(view.thickness(_on_segments(view, cut), view.normals[cut.triangle]))
+        wall = cut.mean(view.thickness(_on_segments(cut), view.normals[cut.triangle]))
         draft = cut.mean(np.degrees(np.arcsin(np.clip(-view.normals[cut.triangle, 2], 0.0, 1.0))))
         return cls(root, roots, blind, wall, draft)
 
@@ -163,7 +163,7 @@ def _anchors(cut: Sections) -> np.ndarray:
     return anchor
 
 
-def _on_segments(view: PartView, cut: Sections) -> np.ndarray:
+def _on_segments(cut: Sections) -> np.ndarray:
     return np.column_stack([cut.middles, cut.heights[cut.layer]]) if len(cut.loop) else np.zeros((0, 3))
 
 
@@ -223,7 +223,8 @@ def _open_walls(view: PartView, cut: Sections, rings: _Rings, stiff: _Stiffness)
     to_middle /= np.maximum(np.linalg.norm(to_middle, axis=1), 1e-9)[:, None]
     pressed = np.clip((cut.outward * to_middle).sum(axis=1), 0.0, 1.0)
     draft = np.degrees(np.arcsin(np.clip(-view.normals[cut.triangle, 2], 0.0, 1.0)))
-    ease = np.array([draft_factor_menges(stiff.friction, d) for d in np.round(np.minimum(draft, 89.0), 2)])
+    values, number = np.unique(np.round(np.minimum(draft, 89.0), 1), return_inverse=True)
+    ease = np.array([draft_factor_menges(stiff.friction, float(d)) for d in values])[number]
     wall = stiff.friction * stiff.tension * view.wall * ease * pressed * cut.lengths * cut.step
     counted = (rings.root[cut.loop] < 0) & view.core_side[cut.triangle] & (height > SHORTEST_WALL)
     return np.asarray(np.where(counted, wall / np.maximum(height, cut.step), 0.0))

@@ -30,7 +30,9 @@ class EjectorPinLayout:
     x, y : axis; tip_z : highest z that the pin may reach on the core surface under its whole face
     diameter : nominal, of the standard series; fit_length : guided length in the core below the part;
     clearance_diameter : bore below the fit; head_diameter, head_height; length : catalog length before cutting
+    seat_z : lower face of the head, where it rests on the ejector plate while the mold is closed
     force_n : share of the ejection force; pressure_mpa : on the part; buckling_n : Euler load
+    tip_drop : how far the core surface falls below tip_z within the pin's face; 0 for a flat tip
     """
 
     name: str
@@ -48,6 +50,7 @@ class EjectorPinLayout:
     pressure_mpa: float
     buckling_n: float
     chosen_by: Chooser
+    tip_drop: float = 0.0
 
 
 @dataclass(frozen=True)

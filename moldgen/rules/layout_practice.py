@@ -39,3 +39,6 @@ SPRUE_ORIFICE: Final = Practice(
     "mm",
     "sprue bushes on the market, from memory, unverified",
 )
+STEEL_BETWEEN_BORES: Final = Practice("least steel between the bores of two pins", 1.5, 1.0, 3.0, "mm")
+STEEL_TO_FEATURE: Final = Practice("least steel between a pin's bore and a wall of the core", 1.0, 1.0, 3.0, "mm")
+STEEL_TO_EDGE: Final = Practice("least steel between a bore and the side of the block", 5.0, 4.0, 10.0, "mm")
