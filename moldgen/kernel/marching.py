@@ -122,19 +122,22 @@ def _scale(slope: Slope, chain: np.ndarray) -> np.ndarray:
 
 
 def _extended(slope: Slope, chain: np.ndarray, scale: np.ndarray) -> np.ndarray:
-    """Lead both ends of a chain past the mesh, inside the parameter box of the face."""
-    low_u, high_u, low_v, high_v = slope.bounds
-    low, high = np.array([low_u, low_v]) / scale, np.array([high_u, high_v]) / scale
+    """Lead both ends of a chain past the mesh, but not past a seam or the end of the surface."""
+    low, high = (np.array(corner) / scale for corner in slope.room())
     for _ in range(2):
         chain = chain[::-1]
         behind = chain[-1] - chain[max(0, len(chain) - 3)]
         size = float(np.linalg.norm(behind))
         if size < 1e-12:
             continue
-        ahead = _corrected(slope, chain[-1] + behind * (OVERSHOOT / size), behind / size, scale)
-        # never past the parameter box: a seam or the end of a patch is there
-        if ahead is not None and (ahead > low + 1e-9).all() and (ahead < high - 1e-9).all():
-            chain = np.vstack([chain, ahead])
+        way = behind / size
+        left = np.where(way > 0.0, high - chain[-1], chain[-1] - low) / np.maximum(np.abs(way), 1e-12)
+        step = min(OVERSHOOT, float(left.min()))
+        if step < 1e-6:
+            continue
+        ahead = _corrected(slope, chain[-1] + step * way, way, scale)
+        if ahead is not None:
+            chain = np.vstack([chain, np.clip(ahead, low, high)])
     return chain
 
 

@@ -8,6 +8,7 @@ from collections.abc import Callable
 from typing import Any
 
 import numpy as np
+from OCP.BRep import BRep_Tool
 from OCP.BRepAdaptor import BRepAdaptor_Surface
 from OCP.BRepTools import BRepTools
 from OCP.GeomAbs import GeomAbs_C2, GeomAbs_Cone, GeomAbs_Cylinder, GeomAbs_Plane
@@ -33,6 +34,7 @@ class Slope:
         self.side = -1.0 if is_reversed(face) else 1.0
         self.sine = sine
         self.bounds: tuple[float, float, float, float] = BRepTools.UVBounds_s(face)
+        self.natural: tuple[float, float, float, float] = BRep_Tool.Surface_s(face).Bounds()
         self._point, self._u, self._v = gp_Pnt(), gp_Vec(), gp_Vec()
 
     def normal(self, u: float, v: float) -> np.ndarray:
@@ -57,6 +59,23 @@ class Slope:
         if size < 1e-12:
             return float(self.normal(u, v)[2]) - self.sine
         return float(self.side * n.Z() / size) - self.sine
+
+    def room(self) -> tuple[tuple[float, float], tuple[float, float]]:
+        """Return the lower and upper (u, v) up to which the surface goes on beyond the face without meeting a seam."""
+        low_u, high_u, low_v, high_v = self.bounds
+        end_u, far_u, end_v, far_v = self.natural
+        u, v = (low_u, high_u), (low_v, high_v)
+        if self.surface.IsUPeriodic():
+            spare = 0.4 * max(0.0, self.surface.UPeriod() - (high_u - low_u) - 1e-6)
+            u = (low_u - spare, high_u + spare)
+        elif not self.surface.IsUClosed():
+            u = (min(end_u, low_u), max(far_u, high_u))
+        if self.surface.IsVPeriodic():
+            spare = 0.4 * max(0.0, self.surface.VPeriod() - (high_v - low_v) - 1e-6)
+            v = (low_v - spare, high_v + spare)
+        elif not self.surface.IsVClosed():
+            v = (min(end_v, low_v), max(far_v, high_v))
+        return (u[0], v[0]), (u[1], v[1])
 
     def along(self, one: np.ndarray, other: np.ndarray) -> float:
         """Return the root between two parameter places of opposite sign, as the share of the way from one to other."""

@@ -47,19 +47,21 @@ def face_kinds(body: Body) -> FaceKinds:
     """
     mesh = body.mesh
     sine = mesh.normals[:, 2] / np.maximum(np.linalg.norm(mesh.normals, axis=1), 1e-30)
-    overhang = np.column_stack([_overhang(body, sine > VERTICAL_SINE), _overhang(body, sine < -VERTICAL_SINE)])
+    overhang = np.column_stack(
+        [_overhang(body, sine, sine > VERTICAL_SINE), _overhang(body, sine, sine < -VERTICAL_SINE)]
+    )
     up, down = overhang[:, 0] >= SIGN_NOISE, overhang[:, 1] >= SIGN_NOISE
     kind = np.select([up & down, up, down], [Kind.STRADDLING, Kind.UPPER, Kind.LOWER], Kind.VERTICAL)
     return FaceKinds(overhang, kind.astype(np.int8), sine)
 
 
-def _overhang(body: Body, chosen: np.ndarray) -> np.ndarray:
+def _overhang(body: Body, sine: np.ndarray, chosen: np.ndarray) -> np.ndarray:
     """Return per face the projected area of the chosen triangles over the diagonal of their box, both along z."""
     mesh, count = body.mesh, len(body.faces)
     face = mesh.face[chosen]
+    # by the exact normals: facets of a vertical wall between nodes that do not face each other project areas of noise
+    area = np.bincount(face, (body.triangle_areas * np.abs(sine))[chosen], count)
     corners = mesh.corners[chosen][:, :, :2]
-    one, two = corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0]
-    area = np.bincount(face, 0.5 * np.abs(one[:, 0] * two[:, 1] - one[:, 1] * two[:, 0]), count)
     low, high = np.full((count, 2), np.inf), np.full((count, 2), -np.inf)
     np.minimum.at(low, face, corners.min(axis=1))
     np.maximum.at(high, face, corners.max(axis=1))
