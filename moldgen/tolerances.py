@@ -27,6 +27,10 @@ RUB_THICKNESS: Final = 0.1
 OPEN_OVERLAP: Final = 0.03
 """Largest thickness of an overlap between two bodies that a proof accepts."""
 
+EROSION: Final = 0.012
+"""How far one of two bodies is eroded before their overlap is asked for; well under OPEN_OVERLAP, and added to the
+thickness of what remains."""
+
 SMALL_VOLUME: Final = 1e-6
 """mm^3: overlaps with less volume are ignored before their thickness is asked for."""
 

@@ -9,7 +9,7 @@ import numpy as np
 
 from moldgen.errors import KernelError
 from moldgen.kernel.mesh import SurfaceMesh
-from moldgen.tolerances import NOISE_THICKNESS, SMALL_VOLUME
+from moldgen.tolerances import EROSION, NOISE_THICKNESS, SMALL_VOLUME
 
 MeshSolid = manifold3d.Manifold
 
@@ -57,12 +57,33 @@ def thick_pieces(solid: MeshSolid, least: float = NOISE_THICKNESS) -> list[MeshS
     return sorted(found, key=lambda p: -p.volume())
 
 
-def thickest_overlap(one: MeshSolid, other: MeshSolid) -> float:
-    """Return the thickness [mm] of the thickest connected piece that two solids share, 0 when they do not meet."""
-    common = one ^ other
+def eroded(mesh: SurfaceMesh, by: float = EROSION) -> MeshSolid | None:
+    """Return the mesh with every vertex moved inward so that each face around it gives way by `by` [mm] or so.
+
+    Bodies of a tool touch everywhere, and a boolean of coincident sheets makes thousands of slivers. One that was eroded
+    touches nothing: overlaps deeper than the erosion remain, and the boolean is tens of times faster (measured).
+    """
+    corners = mesh.corners
+    normal = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
+    normal /= np.maximum(np.linalg.norm(normal, axis=1), 1e-300)[:, None]
+    at = mesh.triangles.ravel()
+    count = len(mesh.vertices)
+    each = np.repeat(normal, 3, axis=0)
+    mean = np.stack([np.bincount(at, each[:, k], count) for k in range(3)], axis=1)
+    mean /= np.maximum(np.linalg.norm(mean, axis=1), 1e-300)[:, None]
+    least = np.ones(count)
+    np.minimum.at(least, at, (each * mean[at]).sum(axis=1))
+    moved = mesh.vertices - mean * (by / np.maximum(least, 0.3))[:, None]
+    return make_solid(moved, mesh.triangles, mesh.face)
+
+
+def overlap_depth(one: MeshSolid, eroded_other: MeshSolid) -> float:
+    """Return how deep a solid reaches into another, given eroded: 0 when by no more than `EROSION` [mm]."""
+    common = one ^ eroded_other
     if common.num_tri() == 0:
         return 0.0
-    return max((thickness(p) for p in common.decompose() if p.volume() > SMALL_VOLUME), default=0.0)
+    thick = max((thickness(p) for p in common.decompose() if p.volume() > SMALL_VOLUME), default=0.0)
+    return thick + EROSION if thick else 0.0
 
 
 @dataclass(frozen=True)

@@ -7,8 +7,8 @@ from typing import Any
 
 from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
-from moldgen.kernel.measure import volume, volume_adaptive
-from moldgen.kernel.meshsolid import MeshSolid, mesh_solid, thickest_overlap
+from moldgen.kernel.measure import joint_volume
+from moldgen.kernel.meshsolid import MeshSolid, eroded, mesh_solid, overlap_depth
 from moldgen.tolerances import BALANCE, OPEN_OVERLAP
 
 NOT_MEASURED = 1e9
@@ -48,33 +48,34 @@ class HalvesCheck:
         )
 
 
-def check_halves(cavity: Any, core: Any, body: Body, part: MeshSolid, block_volume: float) -> HalvesCheck:
+def check_halves(cavity: Any, core: Any, body: Body, block_volume: float) -> HalvesCheck:
     """Return the figures of two halves of a body whose pull is +z."""
     balance = balance_of([cavity, core, body.solid], block_volume)
     try:
-        upper, lower = mesh_solid(body.like(cavity).mesh), mesh_solid(body.like(core).mesh)
+        lower_mesh = body.like(core).mesh
+        upper, lower = mesh_solid(body.like(cavity).mesh), mesh_solid(lower_mesh)
     except KernelError:
         return HalvesCheck(balance, NOT_MEASURED, NOT_MEASURED, NOT_MEASURED)
-    static = max(thickest_overlap(*pair) for pair in ((upper, lower), (upper, part), (lower, part)))
+    thin_lower, thin_part = eroded(lower_mesh), eroded(body.mesh)
+    if thin_lower is None or thin_part is None:
+        return HalvesCheck(balance, NOT_MEASURED, NOT_MEASURED, NOT_MEASURED)
+    static = max(overlap_depth(*p) for p in ((upper, thin_lower), (upper, thin_part), (lower, thin_part)))
     height = float(body.box[1][2] - body.box[0][2])
     ways = (0.1, 1.0, height / 2)
     return HalvesCheck(
-        balance, static, _worst_on_way(upper, part, ways), _worst_on_way(lower, part, tuple(-w for w in ways))
+        balance, static, _worst_on_way(upper, thin_part, ways), _worst_on_way(lower, thin_part, tuple(-w for w in ways))
     )
 
 
 def balance_of(solids: list[Any], block_volume: float) -> float:
-    """Return the relative volume balance; the slow exact integration is asked only if the quick one misses."""
-    quick = abs(sum(volume(s) for s in solids) - block_volume) / block_volume
-    if quick < BALANCE:
-        return quick
-    return min(quick, abs(sum(volume_adaptive(s) for s in solids) - block_volume) / block_volume)
+    """Return the relative volume balance of solids that fill a block."""
+    return abs(joint_volume(solids) - block_volume) / block_volume
 
 
 def _worst_on_way(mover: MeshSolid, part: MeshSolid, ways: tuple[float, ...]) -> float:
     worst = 0.0
     for way in ways:
-        worst = max(worst, thickest_overlap(mover.translate((0.0, 0.0, way)), part))
+        worst = max(worst, overlap_depth(mover.translate((0.0, 0.0, way)), part))
         if worst >= OPEN_OVERLAP:
             break
     return worst

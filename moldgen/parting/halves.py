@@ -136,7 +136,7 @@ def _part_at(task: _Task, trial: _Trial) -> Parted:
             state = _assigned(cornered, level, task.costly, None)
     if state.alike and not trial.deep:
         raise KernelError(f"{len(state.alike) + 1} loops run as the outer one does")
-    return _halves(state, trial, task.part, task.corners)
+    return _halves(state, trial, task.corners)
 
 
 def _is_level(state: _Assigned, level: float) -> bool:
@@ -165,7 +165,7 @@ def _assigned(
     return _Assigned(body, kinds, sides, loops, outer, alike)
 
 
-def _halves(state: _Assigned, trial: _Trial, part: MeshSolid, corners: tuple[np.ndarray, np.ndarray]) -> Parted:
+def _halves(state: _Assigned, trial: _Trial, corners: tuple[np.ndarray, np.ndarray]) -> Parted:
     body, cavity_side = state.body, state.sides.cavity
     sheet = make_sheet(body, state.loops, state.outer, trial.level, corners)
     halves = []
@@ -176,7 +176,7 @@ def _halves(state: _Assigned, trial: _Trial, part: MeshSolid, corners: tuple[np.
             raise KernelError(f"the {'cavity' if is_cavity else 'core'} does not close: {result.complaint}")
         halves.append(result.solid)
     cavity, core = halves
-    check = check_halves(cavity, core, body, part, float(np.prod(corners[1] - corners[0])))
+    check = check_halves(cavity, core, body, float(np.prod(corners[1] - corners[0])))
     return Parted(
         body,
         state.kinds,

@@ -8,8 +8,9 @@ from typing import Any
 
 import numpy as np
 
+from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
-from moldgen.kernel.meshsolid import MeshSolid, mesh_solid
+from moldgen.kernel.meshsolid import MeshSolid, eroded, mesh_solid
 from moldgen.kernel.place import moved
 from moldgen.model.tool import Motion, Role
 from moldgen.tolerances import PROOF_ANGLE, PROOF_DEFLECTION
@@ -33,6 +34,14 @@ class ProofBody:
     def mesh(self) -> MeshSolid:
         """The mesh as a solid. Raises KernelError when it does not close."""
         return mesh_solid(self.body.mesh)
+
+    @cached_property
+    def thin(self) -> MeshSolid:
+        """The mesh as a solid, eroded: for overlaps. Raises KernelError when it does not close."""
+        solid = eroded(self.body.mesh)
+        if solid is None:
+            raise KernelError(f"the mesh of {self.name} is not closed")
+        return solid
 
     def may_meet(self, other: ProofBody, slack: float = 0.0) -> bool:
         """False when the boxes of two bodies are more than `slack` [mm] apart."""

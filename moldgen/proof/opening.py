@@ -9,13 +9,13 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from moldgen.kernel.meshsolid import MeshSolid, thick_pieces, thickness
+from moldgen.kernel.meshsolid import MeshSolid, thickness
 from moldgen.model.proof import Proof, Verdict
 from moldgen.model.tool import Motion
 from moldgen.proof.bodies import ProofBody
 from moldgen.release.kinds import face_kinds
 from moldgen.release.sweep import sweep_faces
-from moldgen.tolerances import NOISE_THICKNESS, OPEN_OVERLAP
+from moldgen.tolerances import EROSION, OPEN_OVERLAP, SMALL_VOLUME
 
 
 def prove_cavity_half(bodies: Sequence[ProofBody]) -> Proof:
@@ -54,9 +54,9 @@ def _prove_way(
             other_low, other_high = other.body.box
             if (other_low > high).any() or (low > other_high).any():
                 continue
-            for piece in thick_pieces(swept ^ other.mesh, NOISE_THICKNESS):
-                if thickness(piece) > worst:
-                    worst = thickness(piece)
+            for piece in (swept ^ other.thin).decompose():
+                if piece.volume() > SMALL_VOLUME and thickness(piece) + EROSION > worst:
+                    worst = thickness(piece) + EROSION
                     x, y, z = piece.to_mesh64().vert_properties[0][:3]
                     pair = f"{mover.name} against {other.name} at {x:.2f}, {y:.2f}, {z:.2f}"
     verdict = Verdict.PASSED if worst < OPEN_OVERLAP else Verdict.FAILED

@@ -6,8 +6,8 @@ from collections.abc import Sequence
 from itertools import combinations
 
 from moldgen.errors import KernelError
-from moldgen.kernel.measure import is_valid, volume, volume_adaptive
-from moldgen.kernel.meshsolid import thickest_overlap
+from moldgen.kernel.measure import is_valid, joint_volume
+from moldgen.kernel.meshsolid import overlap_depth
 from moldgen.model.proof import Proof, Verdict
 from moldgen.model.tool import Role
 from moldgen.proof.bodies import ProofBody
@@ -38,9 +38,7 @@ def prove_balance(bodies: Sequence[ProofBody], block_mm3: float, bored_mm3: floa
     block_mm3 : volume of the closed block; bored_mm3 : volume removed from the halves for pins and feed
     """
     solids = [b.solid for b in bodies if b.role in IN_BLOCK]
-    missing = abs(sum(volume(s) for s in solids) + bored_mm3 - block_mm3) / block_mm3
-    if missing >= BALANCE:  # the default integration is up to 3e-3 off on spline faces: ask the slow, exact one
-        missing = min(missing, abs(sum(volume_adaptive(s) for s in solids) + bored_mm3 - block_mm3) / block_mm3)
+    missing = abs(joint_volume(solids) + bored_mm3 - block_mm3) / block_mm3
     verdict = Verdict.PASSED if missing < BALANCE else Verdict.FAILED
     detail = f"{len(solids)} solids and {bored_mm3:.3f} mm^3 of bores in a block of {block_mm3:.3f} mm^3"
     return Proof("the halves and the part fill the block", verdict, missing, BALANCE, "of the block", detail)
@@ -51,7 +49,7 @@ def prove_rest(bodies: Sequence[ProofBody]) -> Proof:
     worst, pair = 0.0, ""
     for one, other in combinations(bodies, 2):
         if one.may_meet(other):
-            overlap = thickest_overlap(one.mesh, other.mesh)
+            overlap = overlap_depth(one.mesh, other.thin)
             if overlap > worst:
                 worst, pair = overlap, f"{one.name} and {other.name}"
     verdict = Verdict.PASSED if worst < OPEN_OVERLAP else Verdict.FAILED
