@@ -49,3 +49,9 @@ def tilted(shape, degrees, about=(1.0, 0.3, 0.0)):
     move = gp_Trsf()
     move.SetRotation(gp_Ax1(gp_Pnt(1, 2, 3), gp_Dir(*about)), math.radians(degrees))
     return BRepBuilderAPI_Transform(shape, move, True).Shape()
+
+
+def tilted_pull(degrees, about):
+    """Return where `tilted` turns the +z direction."""
+    up = gp_Dir(0, 0, 1).Rotated(gp_Ax1(gp_Pnt(1, 2, 3), gp_Dir(*about)), math.radians(degrees))
+    return up.X(), up.Y(), up.Z()
