@@ -71,6 +71,7 @@ class _Workshop:
 
     def __init__(self) -> None:
         self.bodies: dict[str, TopoDS_Shape] = {}
+        self.sizes: dict[str, float] = {}  # body -> volume [mm^3]
         self.makers: dict[str, str] = {}  # body -> feature that started it
         self.steps: dict[str, list[Step]] = {}
         self.made: dict[str, Sequence[TopoDS_Face]] = {}
@@ -128,7 +129,8 @@ class _Workshop:
             self.makers.setdefault(name, feature.name)
             self._replace(name, solid, None)
             return
-        self._replace(body, combine(mode, self._body(body), [s.solid for s in group]), self._body(body))
+        before = self._body(body)
+        self._replace(body, combine(mode, before, [s.solid for s in group], self.sizes[body]), before)
 
     def _replace(self, name: str, solid: TopoDS_Shape, before: TopoDS_Shape | None) -> None:
         """Put a new state of a body in place, after the checks that hold for every feature."""
@@ -140,9 +142,10 @@ class _Workshop:
         size = volume(pieces[0])
         if size < LEAST_CHANGE:
             raise PartError(f"the body '{name}' would have no volume")
-        if before is not None and abs(size - volume(before)) < LEAST_CHANGE:
+        if before is not None and abs(size - self.sizes[name]) < LEAST_CHANGE:
             raise PartError("nothing changes", remedy="the feature misses the body or lies wholly inside it; move it")
         self.bodies[name] = pieces[0]
+        self.sizes[name] = size
 
     def _body(self, name: str) -> TopoDS_Shape:
         if name not in self.bodies:

@@ -9,15 +9,14 @@ from OCP.BRepFilletAPI import BRepFilletAPI_MakeChamfer, BRepFilletAPI_MakeFille
 from OCP.TopoDS import TopoDS_Edge, TopoDS_Shape
 
 from moldgen.errors import KernelError, PartError
-from moldgen.kernel.features.shapes import checked_solid
+from moldgen.kernel.features.shapes import BOX_SAG, checked_solid, rough_box
 from moldgen.kernel.guard import operation
-from moldgen.kernel.measure import bounding_box
 
 SMALLER: Final = (0.75, 0.5, 0.25, 0.1)
 """Fractions of a refused size that are tried, only to tell the user what would work."""
 
-BULGE: Final = 1e-2
-"""mm that the box of a body may seem to grow by rounding: boxes of spline faces are not exact."""
+BULGE: Final = 2 * BOX_SAG
+"""mm that the box of a body may seem to grow by rounding."""
 
 
 def fillet(body: TopoDS_Shape, edges: Sequence[TopoDS_Edge], radius: float) -> TopoDS_Shape:
@@ -79,7 +78,7 @@ def _chamfer(body: TopoDS_Shape, edges: Sequence[TopoDS_Edge], distance: float) 
 
 def _inside(before: TopoDS_Shape, after: TopoDS_Shape) -> TopoDS_Shape:
     """Return `after` if it stays within the box of `before`: a fillet that bulges out is wrong, though it is valid."""
-    (low, high), (new_low, new_high) = bounding_box(before), bounding_box(after)
+    (low, high), (new_low, new_high) = rough_box(before), rough_box(after)
     if (new_low < low - BULGE).any() or (new_high > high + BULGE).any():
         raise PartError("the edges bulge out of the body")
     return after

@@ -14,8 +14,7 @@ from OCP.gp import gp_Ax1, gp_Ax2, gp_Ax3, gp_Dir, gp_Pnt, gp_Vec
 from OCP.TopoDS import TopoDS_Face
 
 from moldgen.errors import PartError
-from moldgen.kernel.measure import bounding_box
-from moldgen.kernel.topology import is_reversed
+from moldgen.kernel.topology import edge_points, edges_of, is_reversed
 from moldgen.model.recipe import Selector
 
 Array = np.ndarray
@@ -123,8 +122,8 @@ def frame_on(on: Mapping[str, Any], choose_face: Callable[[Selector], TopoDS_Fac
     normal, point = outward_plane(face, on["face"].text)
     u, v = sketch_directions(normal)
     if on["origin"] == "centre":
-        low, high = bounding_box(face)
-        origin = _onto(normal, point, (low + high) / 2)
+        rim = np.vstack([edge_points(edge, 17) for edge in edges_of(face)])
+        origin = _onto(normal, point, (rim.min(axis=0) + rim.max(axis=0)) / 2)
     else:
         origin = _onto(normal, point, np.zeros(3))
     return Frame(origin + offset * normal, u, v, sign * normal)

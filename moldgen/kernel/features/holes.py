@@ -15,11 +15,10 @@ from OCP.TopoDS import TopoDS_Shape
 from moldgen.errors import PartError
 from moldgen.kernel.features.frame import Array, Frame, direction, pnt
 from moldgen.kernel.features.primitives import cone_on
-from moldgen.kernel.features.shapes import combine
+from moldgen.kernel.features.shapes import combine, rough_box
 from moldgen.kernel.features.sweeps import prism
 from moldgen.kernel.features.tools import Bench, Step, Values
 from moldgen.kernel.guard import operation
-from moldgen.kernel.measure import bounding_box
 
 BEYOND: Final = 1.0
 """mm that a through hole runs on behind the body."""
@@ -74,7 +73,7 @@ def round_hole(bench: Bench, entry: Array, inward: Array, values: Mapping[str, A
 def _through(bench: Bench, entry: Array, inward: Array) -> float:
     if bench.body is None:
         raise PartError("there is no body to go through yet", remedy="make the hole after the body")
-    low, high = bounding_box(bench.body)
+    low, high = rough_box(bench.body)
     far = float(np.maximum((low - entry) * inward, (high - entry) * inward).sum())
     if far <= 1e-6:
         raise PartError("the whole body lies behind the entry of the hole", remedy="turn its plane with flip, or move it")

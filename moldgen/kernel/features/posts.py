@@ -10,10 +10,11 @@ from OCP.gp import gp_Ax2
 from OCP.TopoDS import TopoDS_Shape
 
 from moldgen.errors import PartError
-from moldgen.kernel.features.frame import Frame, direction
+from moldgen.kernel.features.frame import Frame, direction, pnt
 from moldgen.kernel.features.holes import round_hole
 from moldgen.kernel.features.primitives import cone_on
 from moldgen.kernel.features.shapes import combine, polyhedron
+from moldgen.kernel.features.sweeps import prism
 from moldgen.kernel.features.tools import Bench, Step, Values
 from moldgen.kernel.guard import operation
 
@@ -107,19 +108,11 @@ def frustum(
             remedy="use less draft or height, or more thickness",
         )
     with operation("build a rib"):
-        # the wedge grows along its second axis; its third one must be u x grow
+        # the kernel's wedge grows along its second axis, so its third one is u x grow
         third = np.cross(frame.u, frame.grow)
-        axes = gp_Ax2(frame.point(0, 0), direction(third), direction(frame.u))
-        corner = gp_Ax2(frame.point(0, 0), axes.Direction(), axes.XDirection())
-        corner.SetLocation(frame.point(0, 0).Translated(_shift(third, -thickness / 2)))
-        wedge = BRepPrimAPI_MakeWedge(corner, length, height, thickness, in_u, in_v, length - in_u, thickness - in_v)
+        axes = gp_Ax2(pnt(frame.origin - thickness / 2 * third), direction(third), direction(frame.u))
+        wedge = BRepPrimAPI_MakeWedge(axes, length, height, thickness, in_u, in_v, length - in_u, thickness - in_v)
         return wedge.Solid()
-
-
-def _shift(along: np.ndarray, distance: float):  # type: ignore[no-untyped-def]
-    from moldgen.kernel.features.frame import vec
-
-    return vec(distance * along)
 
 
 def snap_hook(values: Values, bench: Bench) -> list[Step]:
@@ -156,8 +149,6 @@ def snap_hook(values: Values, bench: Bench) -> list[Step]:
         "round": None,
         "minus": (),
     }
-    from moldgen.kernel.features.sweeps import prism
-
     middle = Frame(side.place(0, 0, -width / 2), side.u, side.v, side.grow)
     solid = prism(path, middle, width, 0.0)
     if values["side_draft"]:

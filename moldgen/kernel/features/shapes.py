@@ -6,6 +6,7 @@ from collections.abc import Iterable, Sequence
 from typing import Final
 
 import numpy as np
+from OCP.Bnd import Bnd_Box
 from OCP.BRepAlgoAPI import BRepAlgoAPI_Common, BRepAlgoAPI_Cut, BRepAlgoAPI_Fuse
 from OCP.BRepBuilderAPI import (
     BRepBuilderAPI_Copy,
@@ -15,7 +16,10 @@ from OCP.BRepBuilderAPI import (
     BRepBuilderAPI_Sewing,
     BRepBuilderAPI_Transform,
 )
+from OCP.BRepBndLib import BRepBndLib
 from OCP.BRepLib import BRepLib
+from OCP.BRepMesh import BRepMesh_IncrementalMesh
+from OCP.BRepTools import BRepTools
 from OCP.gp import gp_Trsf
 from OCP.ShapeUpgrade import ShapeUpgrade_UnifySameDomain
 from OCP.TopoDS import TopoDS, TopoDS_Shape
@@ -29,6 +33,9 @@ from moldgen.kernel.topology import faces_of, only_solid, shape_list, solids_of
 LEAST_CHANGE: Final = 1e-6
 """mm^3: a feature that changes the volume by less did nothing."""
 
+BOX_SAG: Final = 0.05
+"""mm, sag of the mesh behind `rough_box`."""
+
 VOLUME_SLACK: Final = 4e-3
 """Relative error granted to the kernel's default volume integration (2.6e-3 measured on spline faces)."""
 
@@ -36,13 +43,14 @@ _BOOLEANS: Final = {"add": BRepAlgoAPI_Fuse, "cut": BRepAlgoAPI_Cut, "intersect"
 _VERBS: Final = {"add": "join", "cut": "cut", "intersect": "intersect"}
 
 
-def combine(mode: str, body: TopoDS_Shape, tools: Sequence[TopoDS_Shape]) -> TopoDS_Shape:
+def combine(mode: str, body: TopoDS_Shape, tools: Sequence[TopoDS_Shape], size: float | None = None) -> TopoDS_Shape:
     """Return the body after adding, cutting or intersecting with the tools, as one valid solid.
 
     Parameters
     ----------
     mode : ``add``, ``cut`` or ``intersect``
     body, tools : solids
+    size : volume of the body [mm^3], if it is known (on spline faces it takes the kernel a while)
 
     Raises
     ------
@@ -61,8 +69,9 @@ def combine(mode: str, body: TopoDS_Shape, tools: Sequence[TopoDS_Shape]) -> Top
         raise PartError(f"nothing is left after the {verb}", remedy="check sizes and places of the bodies")
     if pieces > 1:
         raise PartError(f"the body falls into {pieces} pieces", remedy="let the bodies overlap, or cut less")
-    _check_volume(mode, volume(raw), volume(body), sum(volume(t) for t in tools))
-    return tidy(only_solid(raw))
+    after = volume(raw)
+    _check_volume(mode, after, volume(body) if size is None else size, sum(volume(t) for t in tools))
+    return tidy(only_solid(raw), after)
 
 
 def _check_volume(mode: str, after: float, body: float, tools: float) -> None:
@@ -76,17 +85,31 @@ def _check_volume(mode: str, after: float, body: float, tools: float) -> None:
         )
 
 
-def tidy(solid: TopoDS_Shape) -> TopoDS_Shape:
-    """Return the solid with faces of one surface joined, if that leaves it valid and its volume as it was."""
+def tidy(solid: TopoDS_Shape, size: float) -> TopoDS_Shape:
+    """Return the solid with faces of one surface joined, if that leaves it valid and its volume `size` [mm^3]."""
     with operation("join faces of one surface", operands=(solid,)):
         unify = ShapeUpgrade_UnifySameDomain(solid, True, True, False)
         unify.Build()
         joined = unify.Shape()
     pieces = [] if joined is None or joined.IsNull() else solids_of(joined)
-    if len(pieces) == 1 and is_valid(pieces[0]) and np.isclose(volume(pieces[0]), volume(solid), rtol=1e-5, atol=1e-9):
+    if len(pieces) == 1 and len(faces_of(pieces[0])) == len(faces_of(solid)):
+        pieces = []  # nothing was joined: keep the solid that was checked already
+    if len(pieces) == 1 and np.isclose(volume(pieces[0]), size, rtol=1e-5, atol=1e-9) and is_valid(pieces[0]):
         solid = pieces[0]
     # a copy drops the leftovers of the boolean that make later ones fail
     return only_solid(BRepBuilderAPI_Copy(solid).Shape())
+
+
+def rough_box(shape: TopoDS_Shape) -> tuple[np.ndarray, np.ndarray]:
+    """Return the axis-parallel box, lower and upper corner, (3,), (3,) [mm], up to about BOX_SAG too large or small.
+
+    The exact box of a body with spline faces takes the kernel minutes.
+    """
+    BRepMesh_IncrementalMesh(shape, BOX_SAG, False, 0.5)
+    box = Bnd_Box()
+    BRepBndLib.Add_s(shape, box, True)
+    BRepTools.Clean_s(shape)  # the validity check would judge the mesh too
+    return np.array(box.CornerMin().Coord()), np.array(box.CornerMax().Coord())
 
 
 def polyhedron(corners: Sequence[np.ndarray], faces: Iterable[Sequence[int]]) -> TopoDS_Shape:

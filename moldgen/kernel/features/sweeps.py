@@ -9,9 +9,13 @@ from typing import Any
 import numpy as np
 from OCP.BRepAdaptor import BRepAdaptor_Surface
 from OCP.BRepAlgoAPI import BRepAlgoAPI_Cut
-from OCP.BRepBuilderAPI import BRepBuilderAPI_MakeEdge, BRepBuilderAPI_MakeWire
+from OCP.BRepBuilderAPI import (
+    BRepBuilderAPI_MakeFace,
+    BRepBuilderAPI_MakeSolid,
+    BRepBuilderAPI_MakeWire,
+    BRepBuilderAPI_Sewing,
+)
 from OCP.BRepFill import BRepFill
-from OCP.BRepBuilderAPI import BRepBuilderAPI_MakeFace, BRepBuilderAPI_MakeSolid, BRepBuilderAPI_Sewing
 from OCP.BRepLib import BRepLib
 from OCP.BRepOffsetAPI import BRepOffsetAPI_ThruSections
 from OCP.BRepPrimAPI import BRepPrimAPI_MakePrism, BRepPrimAPI_MakeRevol
@@ -21,13 +25,12 @@ from OCP.LocOpe import LocOpe_DPrism
 from OCP.TopoDS import TopoDS, TopoDS_Face, TopoDS_Shape
 
 from moldgen.errors import PartError
-from moldgen.kernel.features.frame import Array, Frame, X, Y, Z, axis, unit, vec
+from moldgen.kernel.features.frame import Array, Frame, X, Y, axis, unit, vec
 from moldgen.kernel.features.profile import inner_faces, outline_face, spline_edge
 from moldgen.kernel.features.shapes import checked_solid
 from moldgen.kernel.features.tools import Bench, Step, Values
 from moldgen.kernel.guard import operation
-from moldgen.kernel.measure import bounding_box
-from moldgen.kernel.topology import faces_of, shape_list
+from moldgen.kernel.topology import edge_points, edges_of, shape_list, vertex_point, vertices_of
 
 
 def extrude(values: Values, bench: Bench) -> list[Step]:
@@ -84,8 +87,8 @@ def _prism_of(
         return _drafted_spline(profile, frame, height, draft)
     slope = math.radians(draft)
     with operation(f"extrude an outline with {draft:g} deg of draft", remedy="use less draft or a simpler outline"):
-        adaptor = BRepAdaptor_Surface(face).Plane().Axis().Direction()
-        sense = 1.0 if np.dot(adaptor.Coord(), frame.grow) > 0 else -1.0
+        normal = BRepAdaptor_Surface(face).Plane().Axis().Direction()
+        sense = 1.0 if np.dot(normal.Coord(), frame.grow) > 0 else -1.0
         # the kernel measures the length along the sloped wall
         shape = LocOpe_DPrism(face, sense * height / math.cos(slope), sense * slope).Shape()
     solid = checked_solid(shape, f"an outline with {draft:g} deg of draft over {height:g} mm")
@@ -94,12 +97,7 @@ def _prism_of(
 
 
 def _check_height(solid: TopoDS_Shape, frame: Frame, height: float) -> None:
-    low, high = bounding_box(solid)
-    corners = np.array([[(low, high)[i][0], (low, high)[j][1], (low, high)[k][2]]
-                        for i in (0, 1) for j in (0, 1) for k in (0, 1)])  # fmt: skip
-    if np.abs(np.abs(frame.grow)).max() < 1 - 1e-9:
-        return  # the box of an inclined solid says nothing about its height
-    heights = (corners - frame.origin) @ frame.grow
+    heights = np.array([(vertex_point(v) - frame.origin) @ frame.grow for v in vertices_of(solid)])
     if abs(heights.max() - height) > 1e-4 or abs(heights.min()) > 1e-4:
         raise PartError("the draft closes the outline before its full height", remedy="use less draft or height")
 
@@ -172,19 +170,8 @@ def _axis_frame(values: Values) -> Frame:
 
 
 def _check_side(face: TopoDS_Face, frame: Frame) -> None:
-    from OCP.Bnd import Bnd_Box
-    from OCP.BRepBndLib import BRepBndLib
-    from OCP.gp import gp_Ax3, gp_Trsf
-
-    from moldgen.kernel.features.frame import direction, pnt
-
-    to_local = gp_Trsf()
-    to_local.SetTransformation(gp_Ax3(pnt(frame.origin), direction(frame.v), direction(frame.u)))
-    box = Bnd_Box()
-    from OCP.TopLoc import TopLoc_Location
-
-    BRepBndLib.AddOptimal_s(face.Moved(TopLoc_Location(to_local)), box, False, False)
-    least = box.CornerMin().X()
+    points = np.vstack([edge_points(edge, 33) for edge in edges_of(face)])
+    least = float(((points - frame.origin) @ frame.u).min())
     if least < -1e-6:
         raise PartError(
             f"the outline crosses the axis by {-least:.4g} mm", remedy="keep every u (distance from the axis) at 0 or more"
