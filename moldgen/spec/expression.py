@@ -36,7 +36,7 @@ UNITS: Final[Mapping[str, tuple[float, str]]] = {
     "deg": (1.0, "angle"),
     "rad": (180.0 / math.pi, "angle"),
 }
-"""Unit -> (factor to mm or deg, dimension). The inch is 25.4 mm exactly [published: international yard agreement, 1959]."""
+"""Unit -> (factor to mm or deg, dimension). The inch is 25.4 mm exactly [published: yard and pound agreement 1959]."""
 
 _WITH_UNIT = re.compile(r"(?<![\w.])(\d+\.?\d*(?:[eE][+-]?\d+)?|\.\d+(?:[eE][+-]?\d+)?)\s*([A-Za-z]+)(?![\w(])")
 _NAME = re.compile(r"[A-Za-z_][A-Za-z0-9_]*\Z")
@@ -190,7 +190,9 @@ def check_name(name: str) -> str:
 
 
 def _check_sign(expression: Expression, number: float) -> None:
-    shown = f"{number:g}" if expression.source in (repr(number), f"{number:g}") else f"'{expression.source}' = {number:g}"
+    shown = (
+        f"{number:g}" if expression.source in (repr(number), f"{number:g}") else f"'{expression.source}' = {number:g}"
+    )
     if expression.sign is Sign.POSITIVE and number <= 0.0:
         raise ValueError(f"{shown} must be {Sign.POSITIVE}")
     if expression.sign is Sign.NOT_NEGATIVE and number < 0.0:
@@ -216,7 +218,7 @@ def _tree(source: str) -> ast.expr:
         raise ValueError(f"'{source}' is not an expression; example: 'wall * 2 + 0.5 mm'") from None
     for node in ast.walk(tree):
         if not isinstance(node, _ALLOWED):
-            raise ValueError(f"'{source}': {type(node).__name__} is not allowed; use numbers, names and + - * / ** %")
+            raise ValueError(f"'{source}': {type(node).__name__} is not allowed; use numbers, names and + - * / ** %")  # noqa: TRY004 (pydantic)
     return tree
 
 
@@ -304,7 +306,7 @@ def _power(a: float, b: float) -> Value:
         raise ValueError(f"exponent {b:g} is out of range; the largest is 64")
     result = a**b
     if isinstance(result, complex):
-        raise ValueError(f"{a:g} ** {b:g} is not a real number")
+        raise ValueError(f"{a:g} ** {b:g} is not a real number")  # noqa: TRY004 (pydantic)
     return Value(result)
 
 
@@ -342,4 +344,3 @@ def _one_argument(name: str, value: Value) -> Value:
         raise ValueError(f"{name}() of a length; give an angle")
     functions: dict[str, Callable[[float], float]] = {"sin": math.sin, "cos": math.cos, "tan": math.tan}
     return Value(functions[name](math.radians(value.number)))
-

@@ -16,14 +16,15 @@ from pydantic_core import InitErrorDetails, PydanticCustomError
 from moldgen.model.recipe import MAIN_BODY, ResolvedFeature, ResolvedRecipe, Selector
 from moldgen.spec import recipe_changes as changes
 from moldgen.spec import recipe_features as solids
-from moldgen.spec.expression import Expression, Value, check_name, evaluate, resolve_parameters
+from moldgen.spec.expression import Dimension, Expression, Value, check_name, evaluate, resolve_parameters
 from moldgen.spec.recipe_fields import EDGE_WORDS, FACE_WORDS, Choice, PlaneOn, RecipeModel, _sized, split_words
-from moldgen.spec.expression import Dimension
 
 MOST_FEATURES: Final = 500
 MOST_PARAMETERS: Final = 200
 
-Parameter = Annotated[Expression, *_sized("number, text with unit, or expression of other parameters", Dimension.NUMBER)]
+Parameter = Annotated[
+    Expression, *_sized("number, text with unit, or expression of other parameters", Dimension.NUMBER)
+]
 
 Feature = Annotated[
     solids.Block
@@ -57,7 +58,10 @@ KINDS: Final[Mapping[str, type[BaseModel]]] = {
 """Feature kind -> its model."""
 
 REPEATABLE: Final = frozenset(
-    {*("block", "cylinder", "sphere", "torus", "extrude", "revolve", "loft"), *("hole", "boss", "rib", "window", "snap_hook")}
+    {
+        *("block", "cylinder", "sphere", "torus", "extrude", "revolve", "loft"),
+        *("hole", "boss", "rib", "window", "snap_hook"),
+    }
     | {"pattern", "mirror"}
 )
 """Kinds that pattern and mirror can repeat: those that make material or remove it by a shape of their own."""
@@ -71,7 +75,9 @@ class Recipe(RecipeModel):
 
     parameters: Annotated[
         dict[str, Parameter],
-        Field(max_length=MOST_PARAMETERS, description="name -> number, text with unit, or expression of other parameters"),
+        Field(
+            max_length=MOST_PARAMETERS, description="name -> number, text with unit, or expression of other parameters"
+        ),
     ] = {}  # noqa: RUF012 (pydantic copies defaults)
     features: Annotated[
         tuple[Feature, ...], Field(min_length=1, max_length=MOST_FEATURES, description="features in order")
@@ -245,7 +251,7 @@ def _known_keys(at: Location) -> list[str]:
     for step in at[3:-1]:
         if isinstance(step, str):
             model = _inner_model(model, step) or model
-    return [k for k in model.model_fields]
+    return list(model.model_fields)
 
 
 def _inner_model(model: type[BaseModel], step: str) -> type[BaseModel] | None:

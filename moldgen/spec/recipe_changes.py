@@ -47,8 +47,7 @@ class Draft(_Body):
     faces: FaceChoice
     angle: Annotated[Turn, Field(description="slope")]
     pull: Direction = "+z"
-    neutral: Annotated[Length, Field(description="where the walls keep their place, along the pull",
-                                     validate_default=True)] = ZERO  # fmt: skip
+    neutral: Annotated[Length, Field(description="where the walls keep their place, along the pull")] = ZERO
 
 
 class Linear(RecipeModel):
@@ -64,8 +63,8 @@ class Polar(RecipeModel):
 
     count: Annotated[Count, Field(description="how many, the original included")]
     axis: Direction = "+z"
-    at: Annotated[Point3, Field(description="point of the axis", validate_default=True)] = ZERO3
-    angle: Annotated[Turn, Field(description="whole angle; 360 closes the circle", validate_default=True)] = 360  # type: ignore[assignment]
+    at: Annotated[Point3, Field(description="point of the axis")] = ZERO3
+    angle: Annotated[Turn, Field(description="whole angle; 360 closes the circle")] = 360  # type: ignore[assignment]
 
 
 class Pattern(FeatureBase):
@@ -89,7 +88,7 @@ class Mirror(_Body):
     feature: Literal["mirror"]
     of: Annotated[tuple[Name, ...], Field(description="features to mirror; none means the whole body")] = ()
     plane: Annotated[Literal["xy", "xz", "yz"], Field(description="mirror plane")]
-    offset: Annotated[Length, Field(description="place of the plane along its normal", validate_default=True)] = ZERO
+    offset: Annotated[Length, Field(description="place of the plane along its normal")] = ZERO
 
 
 class _Combine(_Body):

@@ -52,12 +52,11 @@ class Block(_Solid):
 
     feature: Literal["block"]
     size: Annotated[tuple[Size, Size, Size], Field(description="[along u, along v, height]")]
-    at: Place = Field(default=ZERO2, validate_default=True)
+    at: Place = ZERO2
     on: On = XY
-    radius: Annotated[Extent, Field(description="radius of the upright edges", validate_default=True)] = ZERO
-    draft: Annotated[Angle, Field(description="slope of the walls, positive = smaller away from the plane",
-                                  validate_default=True)] = ZERO  # fmt: skip
-    angle: Annotated[Angle, Field(description="turn about the centre", validate_default=True)] = ZERO
+    radius: Annotated[Extent, Field(description="radius of the upright edges")] = ZERO
+    draft: Annotated[Angle, Field(description="slope of the walls, positive = smaller away from the plane")] = ZERO
+    angle: Annotated[Angle, Field(description="turn about the centre")] = ZERO
 
 
 class Cylinder(_Solid):
@@ -66,10 +65,9 @@ class Cylinder(_Solid):
     feature: Literal["cylinder"]
     diameter: Annotated[Size, Field(description="diameter on the plane")]
     height: Annotated[Size, Field(description="height")]
-    at: Place = Field(default=ZERO2, validate_default=True)
+    at: Place = ZERO2
     on: On = XY
-    draft: Annotated[Angle, Field(description="slope of the wall, positive = smaller away from the plane",
-                                  validate_default=True)] = ZERO  # fmt: skip
+    draft: Annotated[Angle, Field(description="slope of the wall, positive = smaller away from the plane")] = ZERO
 
 
 class Sphere(_Solid):
@@ -77,7 +75,7 @@ class Sphere(_Solid):
 
     feature: Literal["sphere"]
     diameter: Annotated[Size, Field(description="diameter")]
-    at: Annotated[Point3, Field(description="centre [x, y, z]", validate_default=True)] = ZERO3
+    at: Annotated[Point3, Field(description="centre [x, y, z]")] = ZERO3
 
 
 class Torus(_Solid):
@@ -86,7 +84,7 @@ class Torus(_Solid):
     feature: Literal["torus"]
     diameter: Annotated[Size, Field(description="diameter of the centre line")]
     section: Annotated[Size, Field(description="diameter of the section")]
-    at: Annotated[Point3, Field(description="centre [x, y, z]", validate_default=True)] = ZERO3
+    at: Annotated[Point3, Field(description="centre [x, y, z]")] = ZERO3
     axis: Direction = "+z"
 
 
@@ -97,9 +95,8 @@ class Extrude(_Solid):
     profile: Profile
     height: Annotated[Size, Field(description="how far")]
     on: On = XY
-    at: Place = Field(default=ZERO2, validate_default=True)
-    draft: Annotated[Angle, Field(description="slope of the walls, positive = smaller away from the plane",
-                                  validate_default=True)] = ZERO  # fmt: skip
+    at: Place = ZERO2
+    draft: Annotated[Angle, Field(description="slope of the walls, positive = smaller away from the plane")] = ZERO
     both: Annotated[bool, Field(description="half of the height to each side of the plane (no draft)")] = False
 
 
@@ -109,10 +106,9 @@ class Revolve(_Solid):
     feature: Literal["revolve"]
     profile: Profile
     axis: Direction = "+z"
-    at: Annotated[Point3, Field(description="point of the axis that is u = v = 0", validate_default=True)] = ZERO3
-    angle: Annotated[Turn, Field(description="how far, 360 at most", validate_default=True)] = 360  # type: ignore[assignment]
-    start: Annotated[Angle, Field(description="where the turn starts, from +x (or +y for an x axis)",
-                                  validate_default=True)] = ZERO  # fmt: skip
+    at: Annotated[Point3, Field(description="point of the axis that is u = v = 0")] = ZERO3
+    angle: Annotated[Turn, Field(description="how far, 360 at most")] = 360  # type: ignore[assignment]
+    start: Annotated[Angle, Field(description="where the turn starts, from +x (or +y for an x axis)")] = ZERO
 
 
 class Section(RecipeModel):
@@ -144,14 +140,14 @@ class Counterbore(RecipeModel):
 
     diameter: Annotated[Size, Field(description="diameter")]
     depth: Annotated[Size, Field(description="depth")]
-    draft: Annotated[Slope, Field(description="slope of its wall, wider at the entry", validate_default=True)] = ZERO
+    draft: Annotated[Slope, Field(description="slope of its wall, wider at the entry")] = ZERO
 
 
 class Countersink(RecipeModel):
     """A conical widening at the entry of a hole."""
 
     diameter: Annotated[Size, Field(description="diameter at the entry")]
-    angle: Annotated[Turn, Field(description="included angle", validate_default=True)] = 90  # type: ignore[assignment]
+    angle: Annotated[Turn, Field(description="included angle")] = 90  # type: ignore[assignment]
 
 
 def _through(value: object) -> object:
@@ -173,10 +169,10 @@ class Hole(_Body):
     at: Annotated[Place, Field(description="centre of the entry")]
     on: On = XY
     depth: Depth = None
-    draft: Annotated[Angle, Field(description="slope of the wall, positive = narrower inward", validate_default=True)] = (
-        ZERO
+    draft: Annotated[Angle, Field(description="slope of the wall, positive = narrower inward")] = ZERO
+    bottom: Annotated[Literal["flat", "cone", "round"], Field(description="end of a blind hole (cone: 118 deg)")] = (
+        "flat"
     )
-    bottom: Annotated[Literal["flat", "cone", "round"], Field(description="end of a blind hole (cone: 118 deg)")] = "flat"
     counterbore: Annotated[Counterbore | None, Field(description="flat widening at the entry")] = None
     countersink: Annotated[Countersink | None, Field(description="conical widening at the entry")] = None
 
@@ -186,7 +182,7 @@ class BossHole(RecipeModel):
 
     diameter: Annotated[Size, Field(description="diameter at the free end")]
     depth: Depth = None
-    draft: Annotated[Slope, Field(description="slope of the wall, narrower inward", validate_default=True)] = ZERO
+    draft: Annotated[Slope, Field(description="slope of the wall, narrower inward")] = ZERO
     bottom: Annotated[Literal["flat", "cone", "round"], Field(description="end of a blind hole")] = "flat"
 
 
@@ -197,8 +193,8 @@ class Gussets(RecipeModel):
     length: Annotated[Size, Field(description="how far they reach from the boss wall on the plane")]
     height: Annotated[Size, Field(description="height at the boss")]
     thickness: Annotated[Size, Field(description="thickness on the plane")]
-    draft: Annotated[Slope, Field(description="slope of the sides", validate_default=True)] = ZERO
-    start: Annotated[Angle, Field(description="direction of the first, from +u", validate_default=True)] = ZERO
+    draft: Annotated[Slope, Field(description="slope of the sides")] = ZERO
+    start: Annotated[Angle, Field(description="direction of the first, from +u")] = ZERO
 
 
 class Boss(_Body):
@@ -209,7 +205,7 @@ class Boss(_Body):
     height: Annotated[Size, Field(description="height above the plane")]
     at: Annotated[Place, Field(description="centre of the foot")]
     on: On = XY
-    draft: Annotated[Slope, Field(description="slope of the outer wall, wider at the foot", validate_default=True)] = ZERO
+    draft: Annotated[Slope, Field(description="slope of the outer wall, wider at the foot")] = ZERO
     hole: Annotated[BossHole | None, Field(description="hole from the free end")] = None
     gussets: Annotated[Gussets | None, Field(description="ribs round the boss")] = None
 
@@ -223,8 +219,8 @@ class Rib(_Solid):
     thickness: Annotated[Size, Field(description="thickness at the foot")]
     height: Annotated[Size, Field(description="height above the plane")]
     on: On = XY
-    draft: Annotated[Slope, Field(description="slope of both sides", validate_default=True)] = ZERO
-    end_draft: Annotated[Slope, Field(description="slope of both ends", validate_default=True)] = ZERO
+    draft: Annotated[Slope, Field(description="slope of both sides")] = ZERO
+    end_draft: Annotated[Slope, Field(description="slope of both ends")] = ZERO
 
 
 class Window(_Body):
@@ -234,10 +230,9 @@ class Window(_Body):
     size: Annotated[tuple[Size, Size], Field(description="[along u, along v] on the plane")]
     at: Annotated[Place, Field(description="centre on the plane; the wall is found by looking inward from there")]
     on: Annotated[On, Field(description="plane or face through which the window looks")]
-    radius: Annotated[Extent, Field(description="corner radius", validate_default=True)] = ZERO
-    draft: Annotated[Angle, Field(description="slope of its sides, positive = narrower inward",
-                                  validate_default=True)] = ZERO  # fmt: skip
-    angle: Annotated[Angle, Field(description="turn about the centre", validate_default=True)] = ZERO
+    radius: Annotated[Extent, Field(description="corner radius")] = ZERO
+    draft: Annotated[Angle, Field(description="slope of its sides, positive = narrower inward")] = ZERO
+    angle: Annotated[Angle, Field(description="turn about the centre")] = ZERO
     depth: Annotated[Size | None, Field(description="how deep instead of through the wall")] = None
 
 
@@ -247,17 +242,16 @@ class SnapHook(_Body):
     feature: Literal["snap_hook"]
     at: Annotated[Place, Field(description="middle of the foot, in the plane of the face that carries the lip")]
     on: On = XY
-    toward: Annotated[Angle, Field(description="direction in which the lip points, from +u", validate_default=True)] = ZERO
+    toward: Annotated[Angle, Field(description="direction in which the lip points, from +u")] = ZERO
     length: Annotated[Size, Field(description="from the plane to the underside of the lip")]
     width: Annotated[Size, Field(description="width at the foot")]
     thickness: Annotated[Size, Field(description="thickness at the foot")]
     lip: Annotated[Size, Field(description="how far the lip stands out")]
     lip_height: Annotated[Size, Field(description="height of the lip")]
-    lead_angle: Annotated[Turn, Field(description="slope of the lead-in, from the direction of assembly",
-                                      validate_default=True)] = 30  # type: ignore[assignment]  # fmt: skip
-    return_angle: Annotated[Turn, Field(description="slope of the underside of the lip: 90 holds for good",
-                                        validate_default=True)] = 90  # type: ignore[assignment]  # fmt: skip
-    back_draft: Annotated[Slope, Field(description="slope of the back", validate_default=True)] = ZERO
-    side_draft: Annotated[Slope, Field(description="slope of both sides", validate_default=True)] = ZERO
-    front_draft: Annotated[Angle, Field(description="slope of the front below the lip, positive = away from the lip",
-                                        validate_default=True)] = ZERO  # fmt: skip
+    lead_angle: Annotated[Turn, Field(description="slope of the lead-in, from the direction of assembly")] = 30  # type: ignore[assignment]
+    return_angle: Annotated[Turn, Field(description="slope of the underside of the lip: 90 holds for good")] = 90  # type: ignore[assignment]
+    back_draft: Annotated[Slope, Field(description="slope of the back")] = ZERO
+    side_draft: Annotated[Slope, Field(description="slope of both sides")] = ZERO
+    front_draft: Annotated[
+        Angle, Field(description="slope of the front below the lip, positive = away from the lip")
+    ] = ZERO

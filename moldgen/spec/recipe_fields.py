@@ -18,7 +18,7 @@ NAME_PATTERN: Final = r"[A-Za-z][A-Za-z0-9_-]*"
 class RecipeModel(BaseModel):
     """Base of everything in a recipe: unknown keys are errors, values never change."""
 
-    model_config = ConfigDict(extra="forbid", frozen=True, arbitrary_types_allowed=True)
+    model_config = ConfigDict(extra="forbid", frozen=True, validate_default=True)
 
 
 def _sized(what: str, dimension: Dimension, sign: Sign = Sign.ANY, *, whole: bool = False) -> Any:

@@ -23,7 +23,7 @@ class Circle(_Outline):
 
     shape: Literal["circle"]
     diameter: Annotated[Size, Field(description="diameter")]
-    at: At = Field(default=ORIGIN, validate_default=True)
+    at: At = ORIGIN
 
 
 class Ellipse(_Outline):
@@ -31,8 +31,8 @@ class Ellipse(_Outline):
 
     shape: Literal["ellipse"]
     size: Annotated[tuple[Size, Size], Field(description="both axes, end to end [along u, along v] before turning")]
-    at: At = Field(default=ORIGIN, validate_default=True)
-    angle: Annotated[Angle, Field(description="turn about the centre", validate_default=True)] = 0  # type: ignore[assignment]
+    at: At = ORIGIN
+    angle: Annotated[Angle, Field(description="turn about the centre")] = 0  # type: ignore[assignment]
 
 
 class Rectangle(_Outline):
@@ -40,9 +40,9 @@ class Rectangle(_Outline):
 
     shape: Literal["rectangle"]
     size: Annotated[tuple[Size, Size], Field(description="[along u, along v] before turning")]
-    radius: Annotated[Extent, Field(description="corner radius", validate_default=True)] = 0  # type: ignore[assignment]
-    at: At = Field(default=ORIGIN, validate_default=True)
-    angle: Annotated[Angle, Field(description="turn about the centre", validate_default=True)] = 0  # type: ignore[assignment]
+    radius: Annotated[Extent, Field(description="corner radius")] = 0  # type: ignore[assignment]
+    at: At = ORIGIN
+    angle: Annotated[Angle, Field(description="turn about the centre")] = 0  # type: ignore[assignment]
 
 
 class Polygon(_Outline):
@@ -52,9 +52,9 @@ class Polygon(_Outline):
     sides: Annotated[Count, Field(description="number of sides, 3 or more")]
     diameter: Annotated[Size, Field(description="across corners or across flats")]
     across: Annotated[Literal["corners", "flats"], Field(description="what `diameter` measures")] = "corners"
-    radius: Annotated[Extent, Field(description="corner radius", validate_default=True)] = 0  # type: ignore[assignment]
-    at: At = Field(default=ORIGIN, validate_default=True)
-    angle: Annotated[Angle, Field(description="turn about the centre", validate_default=True)] = 0  # type: ignore[assignment]
+    radius: Annotated[Extent, Field(description="corner radius")] = 0  # type: ignore[assignment]
+    at: At = ORIGIN
+    angle: Annotated[Angle, Field(description="turn about the centre")] = 0  # type: ignore[assignment]
 
 
 class Slot(_Outline):
@@ -63,8 +63,8 @@ class Slot(_Outline):
     shape: Literal["slot"]
     length: Annotated[Size, Field(description="overall length along u before turning, ends included")]
     width: Annotated[Size, Field(description="width = diameter of the ends")]
-    at: At = Field(default=ORIGIN, validate_default=True)
-    angle: Annotated[Angle, Field(description="turn about the centre", validate_default=True)] = 0  # type: ignore[assignment]
+    at: At = ORIGIN
+    angle: Annotated[Angle, Field(description="turn about the centre")] = 0  # type: ignore[assignment]
 
 
 class Blob(_Outline):
@@ -103,7 +103,9 @@ class ArcStep(RecipeModel):
 class SplineStep(RecipeModel):
     """A smooth curve through points; the last one is the end point."""
 
-    spline: Annotated[tuple[Point2, ...], Field(min_length=2, description="points after the start, the last is the end")]
+    spline: Annotated[
+        tuple[Point2, ...], Field(min_length=2, description="points after the start, the last is the end")
+    ]
     start_tangent: Annotated[Point2 | None, Field(description="direction at the start")] = None
     end_tangent: Annotated[Point2 | None, Field(description="direction at the end")] = None
     round: Annotated[Size | None, Field(description="radius that rounds the corner at the end point")] = None

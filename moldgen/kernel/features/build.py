@@ -206,7 +206,8 @@ class _Workshop:
         for step in found:
             if step.mode == "new":
                 raise PartError(
-                    "a feature with 'mode: new' cannot be repeated", remedy="repeat features that add or cut, or mirror the body"
+                    "a feature with 'mode: new' cannot be repeated",
+                    remedy="repeat features that add or cut, or mirror the body",
                 )
         return found
 

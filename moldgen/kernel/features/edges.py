@@ -26,7 +26,7 @@ def fillet(body: TopoDS_Shape, edges: Sequence[TopoDS_Edge], radius: float) -> T
     ------
     PartError : the radius does not fit, with one that does if there is any
     """
-    return _sized("radius", body, radius, lambda r: _fillet(body, edges, r))
+    return _sized("radius", radius, lambda r: _fillet(body, edges, r))
 
 
 def chamfer(body: TopoDS_Shape, edges: Sequence[TopoDS_Edge], distance: float) -> TopoDS_Shape:
@@ -36,10 +36,10 @@ def chamfer(body: TopoDS_Shape, edges: Sequence[TopoDS_Edge], distance: float) -
     ------
     PartError : the distance does not fit, with one that does if there is any
     """
-    return _sized("distance", body, distance, lambda d: _chamfer(body, edges, d))
+    return _sized("distance", distance, lambda d: _chamfer(body, edges, d))
 
 
-def _sized(what: str, body: TopoDS_Shape, size: float, make: Callable[[float], TopoDS_Shape]) -> TopoDS_Shape:
+def _sized(what: str, size: float, make: Callable[[float], TopoDS_Shape]) -> TopoDS_Shape:
     try:
         return make(size)
     except (KernelError, PartError):

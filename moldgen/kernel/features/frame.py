@@ -60,7 +60,7 @@ class Frame:
         """Return the sketch plane at a height along the growth direction."""
         return gp_Ax3(self.point(0.0, 0.0, height), direction(self.normal()), direction(self.u))
 
-    def turned(self, at: Sequence[float], angle: float) -> Frame:
+    def turned(self, at: Sequence[float] | Array, angle: float) -> Frame:
         """Return the frame moved to a place of the plane and turned by `angle` [deg] from u towards v."""
         return Frame(self.place(*at), self.along(angle), self.along(angle + 90.0), self.grow)
 
@@ -138,7 +138,9 @@ def outward_plane(face: TopoDS_Face, name: str) -> tuple[Array, Array]:
     """
     surface = BRepAdaptor_Surface(face)
     if surface.GetType() != GeomAbs_Plane:
-        raise PartError(f"the face '{name}' is curved; a feature can only stand on a plane", remedy="use a plane: xy ...")
+        raise PartError(
+            f"the face '{name}' is curved; a feature can only stand on a plane", remedy="use a plane: xy ..."
+        )
     plane = surface.Plane()
     normal = np.array(plane.Position().XDirection().Crossed(plane.Position().YDirection()).Coord())
     return (-normal if is_reversed(face) else normal), np.array(plane.Location().Coord())

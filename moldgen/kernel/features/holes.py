@@ -7,7 +7,7 @@ from collections.abc import Mapping
 from typing import Any, Final
 
 import numpy as np
-from OCP.BRepPrimAPI import BRepPrimAPI_MakeSphere, BRepPrimAPI_MakeCone
+from OCP.BRepPrimAPI import BRepPrimAPI_MakeCone, BRepPrimAPI_MakeSphere
 from OCP.gp import gp_Ax2, gp_Lin
 from OCP.IntCurvesFace import IntCurvesFace_ShapeIntersector
 from OCP.TopoDS import TopoDS_Shape
@@ -76,7 +76,9 @@ def _through(bench: Bench, entry: Array, inward: Array) -> float:
     low, high = rough_box(bench.body)
     far = float(np.maximum((low - entry) * inward, (high - entry) * inward).sum())
     if far <= 1e-6:
-        raise PartError("the whole body lies behind the entry of the hole", remedy="turn its plane with flip, or move it")
+        raise PartError(
+            "the whole body lies behind the entry of the hole", remedy="turn its plane with flip, or move it"
+        )
     return far + BEYOND
 
 

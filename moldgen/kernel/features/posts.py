@@ -88,9 +88,7 @@ def rib(values: Values, bench: Bench) -> list[Step]:
     return [Step(values["mode"], values["body"], solid)]
 
 
-def frustum(
-    frame: Frame, size: tuple[float, float], height: float, draft: tuple[float, float]
-) -> TopoDS_Shape:
+def frustum(frame: Frame, size: tuple[float, float], height: float, draft: tuple[float, float]) -> TopoDS_Shape:
     """Return a straight-sided block that narrows upward: from u = 0 to the length, centred on v = 0.
 
     Parameters

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import math
 from collections.abc import Mapping, Sequence
 from typing import Any, Final
@@ -176,7 +177,7 @@ def _step(
         middle = _arc_middle(step, here, end, heading)
         return _arc(frame, here, middle, end), end, _arrival(here, middle, end)
     points = [here, *(np.array(p) for p in step["spline"])]
-    for a, b in zip(points, points[1:], strict=False):
+    for a, b in itertools.pairwise(points):
         _must_differ(a, b)
     tangents = [None if step[k] is None else np.array(step[k]) for k in ("start_tangent", "end_tangent")]
     if (tangents[0] is None) != (tangents[1] is None):
@@ -208,7 +209,9 @@ def _arc_middle(step: Mapping[str, Any], start: Array, end: Array, heading: Arra
         return (start + end) / 2 + length / 2 * math.tan(turn / 2) * left  # type: ignore[no-any-return]
     radius = step["radius"]
     if radius < length / 2 - SAME_POINT:
-        raise PartError(f"an arc of radius {radius:g} cannot span {length:g}", remedy=f"use a radius of {length / 2:g} or more")
+        raise PartError(
+            f"an arc of radius {radius:g} cannot span {length:g}", remedy=f"use a radius of {length / 2:g} or more"
+        )
     bulge = radius - math.sqrt(max(radius**2 - length**2 / 4, 0.0))
     return (start + end) / 2 + (bulge if step["side"] == "left" else -bulge) * left  # type: ignore[no-any-return]
 
@@ -227,12 +230,23 @@ def _line(frame: Frame, a: Array, b: Array) -> TopoDS_Edge:
 
 
 def _arc(frame: Frame, a: Array, middle: Array, b: Array) -> TopoDS_Edge:
-    return BRepBuilderAPI_MakeEdge(GC_MakeArcOfCircle(frame.point(*a), frame.point(*middle), frame.point(*b)).Value()).Edge()
+    return BRepBuilderAPI_MakeEdge(
+        GC_MakeArcOfCircle(frame.point(*a), frame.point(*middle), frame.point(*b)).Value()
+    ).Edge()
 
 
 def spline_edge(
     frame: Frame, points: Sequence[Array], *, tangents: Sequence[Array | None] = (None, None), periodic: bool = False
 ) -> TopoDS_Edge:
+    """Return the smooth curve through points of a plane.
+
+    Parameters
+    ----------
+    frame : the plane
+    points : (2,) each [mm]
+    tangents : directions at both ends, both or none
+    periodic : close the curve smoothly; the first point is not repeated
+    """
     array = TColgp_HArray1OfPnt(1, len(points))
     for index, point in enumerate(points, start=1):
         array.SetValue(index, frame.point(*point))

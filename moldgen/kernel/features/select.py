@@ -8,19 +8,19 @@ from typing import Final
 
 import numpy as np
 from OCP.Bnd import Bnd_Box
+from OCP.BOPTools import BOPTools_AlgoTools3D
 from OCP.BRep import BRep_Tool
 from OCP.BRepAdaptor import BRepAdaptor_Curve, BRepAdaptor_Surface
 from OCP.BRepBndLib import BRepBndLib
 from OCP.BRepBuilderAPI import BRepBuilderAPI_MakeVertex
 from OCP.BRepExtrema import BRepExtrema_DistShapeShape
 from OCP.BRepTools import BRepTools
-from OCP.BOPTools import BOPTools_AlgoTools3D
 from OCP.GeomAbs import GeomAbs_Circle, GeomAbs_Line, GeomAbs_Plane
 from OCP.gp import gp_Pnt, gp_Pnt2d, gp_Vec
 from OCP.IntTools import IntTools_Context
 from OCP.ShapeAnalysis import ShapeAnalysis_Surface
 from OCP.TopAbs import TopAbs_EDGE
-from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Shape
+from OCP.TopoDS import TopoDS_Edge, TopoDS_Face, TopoDS_Shape
 
 from moldgen.errors import PartError
 from moldgen.kernel.features.frame import X, Y, Z, pnt
@@ -99,7 +99,7 @@ class Chooser:
         if not flat:
             kind = "planar face" if not found else "planar face (the one there is curved)"
             raise PartError(f"no {kind} is '{selector.text}'", remedy=self._hint(selector))
-        return max(flat, key=lambda f: _extent(f))
+        return max(flat, key=_extent)
 
     def lies_on(self, face: TopoDS_Face, name: str) -> bool:
         """True when the face lies on the boundary of the solids that made the feature `name`."""

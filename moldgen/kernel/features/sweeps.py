@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import math
 from collections.abc import Mapping
 from typing import Any
@@ -77,9 +78,7 @@ def _without(solid: TopoDS_Shape, inner: list[TopoDS_Shape]) -> TopoDS_Shape:
     return checked_solid(cut.Shape(), "an outline with inner outlines")
 
 
-def _prism_of(
-    face: TopoDS_Face, profile: Mapping[str, Any], frame: Frame, height: float, draft: float
-) -> TopoDS_Shape:
+def _prism_of(face: TopoDS_Face, profile: Mapping[str, Any], frame: Frame, height: float, draft: float) -> TopoDS_Shape:
     if abs(draft) < 1e-9:
         with operation("extrude an outline"):
             return BRepPrimAPI_MakePrism(face, vec(height * frame.grow)).Shape()
@@ -103,7 +102,7 @@ def _check_height(solid: TopoDS_Shape, frame: Frame, height: float) -> None:
 
 
 def _drafted_spline(profile: Mapping[str, Any], frame: Frame, height: float, draft: float) -> TopoDS_Shape:
-    """Return the ruled solid between a closed spline and its inward offset (the kernel's own draft fails on splines)."""
+    """Return the ruled solid between a closed spline and its inward offset: the kernel's own draft fails there."""
     points = np.array(profile["points"], dtype=float)
     base = spline_edge(frame, list(points), periodic=True)
     raised = Frame(frame.place(0, 0, height), frame.u, frame.v, frame.grow)
@@ -174,7 +173,8 @@ def _check_side(face: TopoDS_Face, frame: Frame) -> None:
     least = float(((points - frame.origin) @ frame.u).min())
     if least < -1e-6:
         raise PartError(
-            f"the outline crosses the axis by {-least:.4g} mm", remedy="keep every u (distance from the axis) at 0 or more"
+            f"the outline crosses the axis by {-least:.4g} mm",
+            remedy="keep every u (distance from the axis) at 0 or more",
         )
 
 
@@ -188,7 +188,7 @@ def loft(values: Values, bench: Bench) -> list[Step]:
     frame = bench.frame(values["on"])
     sections = values["sections"]
     heights = [s["height"] for s in sections]
-    if any(b - a < 1e-6 for a, b in zip(heights, heights[1:], strict=False)):
+    if any(b - a < 1e-6 for a, b in itertools.pairwise(heights)):
         raise PartError(f"the heights of the sections must rise: {', '.join(f'{h:g}' for h in heights)}")
     if any(s["profile"]["minus"] for s in sections):
         raise PartError("a section of a loft cannot have inner outlines", remedy="cut a second loft out of the first")
