@@ -10,6 +10,7 @@ from scipy.sparse.csgraph import connected_components
 
 from moldgen.kernel.body import Body
 from moldgen.kernel.meshsolid import MeshSolid, make_solid, union
+from moldgen.release.contested import contested
 from moldgen.release.kinds import FaceKinds, Kind
 
 CAP, WALL = 10**7, 2 * 10**7
@@ -32,18 +33,48 @@ def sweep_faces(body: Body, kinds: FaceKinds, up: bool, way: float | None = None
     With `way` [mm] the faces are carried just so far instead of clear of the body: with the body itself, that is the
     space it passes through when it moves.
     """
-    sign = 1.0 if up else -1.0
-    mesh = body.mesh
-    corners = mesh.corners
-    facet = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
-    look = np.isin(kinds.kind, (Kind.UPPER if up else Kind.LOWER, Kind.STRADDLING))[mesh.face]
-    chosen = np.flatnonzero(look & (sign * facet[:, 2] > EDGE_ON * np.linalg.norm(facet, axis=1)))
-    if len(chosen) == 0:
-        return MeshSolid()
-    far = body.box[1][2] + OVERRUN if up else body.box[0][2] - OVERRUN
-    shift = None if way is None else sign * way
-    maker = _Maker(mesh.vertices, mesh.triangles, mesh.face, far, 0.5 * np.abs(facet[:, 2]), shift)
-    return union(maker.prisms(chosen))
+    facing = _Facing(body, kinds)
+    return facing.swept(facing.looking(up), up, way)
+
+
+def contested_sweeps(body: Body, kinds: FaceKinds) -> tuple[MeshSolid, MeshSolid]:
+    """Return the sweeps up and down, without what cannot matter where the two meet.
+
+    Faces above which nothing looks down are left out, and the other way round, so that the sweeps meet exactly where
+    full ones would, for a fraction of the time.
+    """
+    facing = _Facing(body, kinds)
+    upper, lower = facing.looking(True), facing.looking(False)
+    corners = body.mesh.corners
+    keep_up, keep_down = contested(corners[upper], corners[lower])
+    return facing.swept(upper[keep_up], True), facing.swept(lower[keep_down], False)
+
+
+class _Facing:
+    """The triangles of a body by the way they look."""
+
+    def __init__(self, body: Body, kinds: FaceKinds) -> None:
+        self._body = body
+        self._kind = kinds.kind[body.mesh.face]
+        corners = body.mesh.corners
+        facet = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
+        self._rise = facet[:, 2]
+        self._noise = EDGE_ON * np.linalg.norm(facet, axis=1)
+
+    def looking(self, up: bool) -> np.ndarray:
+        """Return the numbers of the triangles that look up, or down."""
+        faces = np.isin(self._kind, (Kind.UPPER if up else Kind.LOWER, Kind.STRADDLING))
+        return np.flatnonzero(faces & ((self._rise if up else -self._rise) > self._noise))
+
+    def swept(self, chosen: np.ndarray, up: bool, way: float | None = None) -> MeshSolid:
+        """Return the union of the prisms over (or under) the chosen triangles."""
+        if len(chosen) == 0:
+            return MeshSolid()
+        mesh, box = self._body.mesh, self._body.box
+        far = float(box[1][2] + OVERRUN if up else box[0][2] - OVERRUN)
+        shift = None if way is None else (way if up else -way)
+        maker = _Maker(mesh.vertices, mesh.triangles, mesh.face, far, 0.5 * np.abs(self._rise), shift)
+        return union(maker.prisms(chosen))
 
 
 @dataclass(frozen=True)

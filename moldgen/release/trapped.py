@@ -6,13 +6,14 @@ from dataclasses import dataclass
 from enum import StrEnum
 
 import numpy as np
+from scipy.spatial import cKDTree
 
 from moldgen.finding import Point
 from moldgen.kernel.body import Body
 from moldgen.kernel.meshsolid import MeshSolid, PieceMesh, mesh_solid, piece_mesh, thick_pieces, thickness
 from moldgen.kernel.tracer import Tracer
 from moldgen.release.kinds import FaceKinds, Kind
-from moldgen.release.sweep import CAP, sweep_faces
+from moldgen.release.sweep import CAP, contested_sweeps
 from moldgen.tolerances import NOISE_THICKNESS, RUB_THICKNESS
 
 SMALL_TOUCH = 1e-4
@@ -23,6 +24,9 @@ LOOK_OUT = 1e-3
 
 MOST_POINTS = 2000
 """Points of a piece whose distance to open air is measured."""
+
+BEADS = 4000
+"""Beads along all open sides of a piece, to find the nearest side by."""
 
 
 class Grip(StrEnum):
@@ -67,7 +71,8 @@ class Trapped:
 
     pieces : rubs and undercuts; noise (thinner than `NOISE_THICKNESS`) is left out
     noise_mm3 : volume of what was left out
-    part, above, below : the body, everything above its faces that look up, everything below those that look down
+    part, above, below : the body; everything above its faces that look up and below those that look down, as far as
+        it can matter here (see `contested_sweeps`)
     """
 
     pieces: tuple[TrapPiece, ...]
@@ -95,7 +100,8 @@ def trapped_volume(body: Body, kinds: FaceKinds) -> Trapped:
     KernelError : the mesh of the body is not closed
     """
     part = mesh_solid(body.mesh)
-    return trapped_between(body, kinds, part, sweep_faces(body, kinds, up=True), sweep_faces(body, kinds, up=False))
+    above, below = contested_sweeps(body, kinds)
+    return trapped_between(body, kinds, part, above, below)
 
 
 def trapped_between(body: Body, kinds: FaceKinds, part: MeshSolid, above: MeshSolid, below: MeshSolid) -> Trapped:
@@ -183,20 +189,22 @@ def _depth(mesh: PieceMesh, sides: np.ndarray) -> float:
     points = points[:: max(1, len(points) // MOST_POINTS)]
     if len(sides) == 0:  # a closed bubble: half its least width
         return 0.5 * _least_width(points)
-    best = np.full(len(points), np.inf)
-    step = max(1, 2_000_000 // max(1, len(points)))
-    for start in range(0, len(sides), step):
-        best = np.minimum(best, _distances(points, sides[start : start + step]).min(axis=1))
-    return float(best.max())
+    return float(_distances(points, sides).max())
 
 
-def _distances(points: np.ndarray, ends: np.ndarray) -> np.ndarray:
-    """Return the distance from each point (p, 2) to each segment (s, 2, 2), (p, s)."""
-    along = ends[:, 1] - ends[:, 0]
-    square = np.maximum((along**2).sum(axis=1), 1e-18)
-    offset = points[:, None, :] - ends[None, :, 0]
-    share = np.clip((offset * along).sum(axis=2) / square, 0.0, 1.0)
-    return np.asarray(np.linalg.norm(offset - share[:, :, None] * along, axis=2))
+def _distances(points: np.ndarray, sides: np.ndarray) -> np.ndarray:
+    """Return the distance from each point (p, 2) to the nearest of the segments (s, 2, 2), (p,)."""
+    along = sides[:, 1] - sides[:, 0]
+    length = np.linalg.norm(along, axis=1)
+    # the nearest beads on the segments name the few segments that are worth measuring
+    count = np.clip(np.ceil(length / (length.sum() / BEADS)).astype(int), 1, BEADS)
+    owner = np.repeat(np.arange(len(sides)), count)
+    turn = np.arange(len(owner)) - np.repeat(np.cumsum(count) - count, count)
+    beads = sides[owner, 0] + ((turn + 0.5) / count[owner])[:, None] * along[owner]
+    near = owner[cKDTree(beads).query(points, k=min(4, len(beads)))[1].reshape(len(points), -1)]
+    offset = points[:, None] - sides[near, 0]
+    share = np.clip((offset * along[near]).sum(axis=2) / np.maximum(length[near] ** 2, 1e-18), 0.0, 1.0)
+    return np.asarray(np.linalg.norm(offset - share[:, :, None] * along[near], axis=2).min(axis=1))
 
 
 def _least_width(points: np.ndarray) -> float:
