@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
-from OCP.BRep import BRep_Builder
+from OCP.BRep import BRep_Builder, BRep_Tool
 from OCP.BRepAdaptor import BRepAdaptor_Curve
 from OCP.BRepBuilderAPI import (
     BRepBuilderAPI_MakeEdge,
@@ -94,12 +94,23 @@ def plane_face(plane: gp_Pln, outer: TopoDS_Wire, holes: Sequence[TopoDS_Wire] =
 
 
 def mended_face(face: TopoDS_Face) -> TopoDS_Face:
-    """Return the face, its wires turned the right way round if the kernel calls it invalid."""
+    """Return the face, its wires turned the right way round if the kernel calls it invalid. Its edges stay the same."""
     if is_valid(face):
         return face
     fixer = ShapeFix_Face(face)
     fixer.FixOrientation()
-    return fixer.Face()
+    fixed = fixer.Face()
+    wires = explore(face, TopAbs_WIRE)
+    if is_valid(fixed) or len(wires) != 1:
+        return fixed
+    # edges that miss the surface by nearly their tolerance fool the repair. A full one widens the tolerances in place;
+    # what it returns may have other edges and is not used, but the same edges then make a valid face
+    ShapeFix_Face(face).Perform()
+    for wire in (wires[0], wires[0].Reversed()):
+        made = BRepBuilderAPI_MakeFace(BRep_Tool.Surface_s(face), TopoDS.Wire_s(wire), True)
+        if made.IsDone() and is_valid(made.Face()):
+            return made.Face()
+    return fixed
 
 
 def flattened_curve(edge: TopoDS_Edge, axis: int, value: float) -> Geom_BSplineCurve:

@@ -17,6 +17,7 @@ from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Shape
 from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
 from moldgen.kernel.build import backward, forward, plane_face, plane_through, wire_of
+from moldgen.kernel.guard import operation
 from moldgen.kernel.measure import is_valid
 from moldgen.kernel.topology import directed_points, edges_of, same_order
 from moldgen.tolerances import MAX_EDGE_TOLERANCE
@@ -86,10 +87,11 @@ def filled_patch(loop: Loop) -> TopoDS_Face:
     ------
     KernelError : the kernel finds none that is valid
     """
-    filling = BRepFill_Filling(3, 15, 2, False, 1e-5, 1e-4, 1e-2, 1e-1, 8, 9)
-    for edge in loop:
-        filling.Add(forward(edge), GeomAbs_C0)
-    filling.Build()
+    with operation("fill a loop of edges", operands=loop):
+        filling = BRepFill_Filling(3, 15, 2, False, 1e-5, 1e-4, 1e-2, 1e-1, 8, 9)
+        for edge in loop:
+            filling.Add(forward(edge), GeomAbs_C0)
+        filling.Build()
     if not filling.IsDone():
         raise KernelError(f"no filling for a loop of {len(loop)} edges")
     patch = _trimmed(BRep_Tool.Surface_s(filling.Face()), loop)
