@@ -11,10 +11,10 @@ import numpy as np
 from moldgen.catalog import Pin, Resin, ejector_pin_down, ejector_pin_series, ejector_pin_up
 from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.layout.balance import shares
-from moldgen.layout.ejection_checks import check_balance, check_given
+from moldgen.layout.ejection_checks import check_balance, check_given, check_stays
 from moldgen.layout.pin_choice import Choice, Counts, Load, gather, mirrors, units
 from moldgen.layout.sites import Disc, Underside
-from moldgen.layout.sticking import Sticking, find_sticking
+from moldgen.layout.sticking import Sticking, find_sticking, hold_of_cavity
 from moldgen.layout.view import PartView
 from moldgen.model.layout import Chooser, CorePinLayout, EjectorPinLayout
 from moldgen.model.part import Vector
@@ -39,7 +39,7 @@ WORSE: Final = 1.25
 MOST_PINS: Final = 24
 """Pins of one part, unless the force asks for more."""
 
-SUPPORT: Final = 0.1
+SUPPORT: Final = 0.3
 """Weight of the floor itself among what sticks, so that large free areas are pushed too."""
 
 MOST_UNITS: Final = 700
@@ -112,6 +112,7 @@ def place_ejector_pins(
     A pin pushes only where the part lies over its whole end face. The force is that of `find_sticking`.
     """
     sticking, notes = find_sticking(view, resin)
+    notes += check_stays(view, sticking, hold_of_cavity(view, resin))
     stroke, more = _stroke(view, section)
     notes += more
     task = _Task(view, section, resin, Underside(view, no_pins), core_pins, sticking, stroke)

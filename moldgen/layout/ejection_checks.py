@@ -51,6 +51,10 @@ def check_given(
     elif not disc.whole:
         text = "has the part over only a portion of its end face"
         found.append(("overhangs", Severity.FAILURE, text, None, None, ""))
+    step = math.tan(math.radians(PIN_SLOPE.default)) * diameter + 0.1
+    if disc.faces and disc.high - disc.low > step:
+        text = f"meets a step of {disc.high - disc.low:.2f} mm of the part within its end face"
+        found.append(("step", Severity.FAILURE, text, disc.high - disc.low, step, "mm"))
     if disc.faces and disc.slope > PIN_SLOPE.default:
         text = f"pushes on a surface that slopes by {disc.slope:.0f} deg"
         found.append(("slope", Severity.WARNING, text, disc.slope, PIN_SLOPE.default, "deg"))
@@ -99,6 +103,36 @@ def _steel(
         text = f"leaves {edge:.2f} mm of steel to the side of the block"
         found.append(("block_edge", Severity.WARNING, text, edge, STEEL_TO_EDGE.default, "mm"))
     return found
+
+
+def check_stays(view: PartView, sticking: Sticking, cavity_force: float) -> Notes:
+    """Return what holds the part to the cavity half, with a finding when that is more than the core's hold."""
+    core = sum(c.friction for c in sticking.cores)
+    core = max(core, sticking.force - sum(c.vacuum for c in sticking.cores))
+    line = Quantity(
+        "hold of the cavity half",
+        cavity_force,
+        "N",
+        "as for the core, without vacuum (see the hold of the cores)",
+        Provenance.DERIVED,
+        inputs={"hold of the core half": f"{core:.4g} N"},
+        drives="which half the part stays on",
+    )
+    if cavity_force <= core:
+        return Notes(quantities=(line,))
+    low, high = view.body.box
+    finding = Finding(
+        "ejection.stays_in_cavity",
+        Severity.WARNING,
+        f"the part holds to the cavity half with {cavity_force:.0f} N and to the core half, where the ejectors are, "
+        f"with {core:.0f} N: it may stay in the cavity when the mold opens",
+        at=view.place(0.5 * (low + high)),
+        value=round(cavity_force, 1),
+        limit=round(core, 1),
+        unit="N",
+        remedy="turn the pull round, so that what the part shrinks onto is the core",
+    )
+    return Notes((finding,), quantities=(line,))
 
 
 def check_balance(view: PartView, pins: tuple[EjectorPinLayout, ...], sticking: Sticking, resin: Resin) -> Notes:

@@ -14,8 +14,9 @@ ALIKE: Final = 0.9
 ROOM_ALIKE: Final = 0.35
 """mm: difference of room between a place and its image."""
 
-PIN_COST: Final = 0.006
-"""A pin is worth placing when it brings the mean distance to what sticks down by this share of the part's diagonal."""
+PIN_COST: Final = 0.008
+"""A pin is worth placing when it brings the distance to what sticks (root of the mean square) down by this share of
+the part's diagonal."""
 
 BALANCE: Final = 0.5
 """Weight of the distance between the middle of the pins and the centre of sticking, against the mean distance."""
@@ -108,12 +109,17 @@ class Choice:
         return self._places[np.unique(self._sets[self.chosen])]
 
     def search(self, counts: Counts) -> float:
-        """Choose by greed, then improve one unit at a time; return the cost [mm]."""
-        while self._grow(counts):
-            pass
-        for _ in range(ROUNDS):
-            if not self._improve(counts):
-                break
+        """Choose by greed, from two beginnings, then improve unit by unit; return the cost of the best choice [mm]."""
+        results = []
+        for by_pin in (False, True):
+            self.chosen = []
+            while self._grow(counts, by_pin):
+                pass
+            for _ in range(ROUNDS):
+                if not (self._improve(counts) | self._prune(counts) | self._grow(counts, by_pin)):
+                    break
+            results.append((self.count() < counts.least, self.cost(), by_pin, self.chosen))
+        self.chosen = min(results)[3]
         return self.cost()
 
     def cost(self) -> float:
@@ -128,14 +134,13 @@ class Choice:
         """Return the number of pins, with the fixed ones."""
         return len(self._fixed) + int(self._sizes[self.chosen].sum())
 
-    def _grow(self, counts: Counts) -> bool:
+    def _grow(self, counts: Counts, by_pin: bool) -> bool:
         free = self._free(self.chosen, counts)
         if not free.any():
             return False
         costs = np.where(free, self._costs(self.chosen, self._reach, self._sizes, self._middles), np.inf)
-        # by gain of each pin, so that a set of four does not win by its number alone
         now = self.cost() if self.chosen or len(self._fixed) else 2.0 * self._load.diagonal
-        gain = (now - costs) / np.maximum(self._sizes, 1)
+        gain = (now - costs) / (self._sizes if by_pin else 1.0)
         best = int(np.argmax(gain))
         if gain[best] <= 1e-9 and self.count() >= counts.least:
             return False
@@ -154,6 +159,18 @@ class Choice:
                 self.chosen[position] = best
                 better = True
         return better
+
+    def _prune(self, counts: Counts) -> bool:
+        """Leave out a unit that costs more than it brings."""
+        for position, unit in enumerate(self.chosen):
+            now, kept = self.cost(), self.chosen
+            if self.count() - self._sizes[unit] < counts.least or len(kept) < 2:
+                continue
+            self.chosen = kept[:position] + kept[position + 1 :]
+            if self.cost() < now - 1e-6:
+                return True
+            self.chosen = kept
+        return False
 
     def _free(self, chosen: list[int], counts: Counts) -> np.ndarray:
         """Return which units keep their distance from the chosen ones and do not make too many, (u,) bool."""
@@ -174,7 +191,8 @@ class Choice:
             base = np.minimum(base, gap.min(axis=1))
         if chosen:
             base = np.minimum(base, self._reach[chosen].min(axis=0))
-        mean = (np.minimum(base, reach) * load.weights).sum(axis=1) / load.weights.sum()
+        # by the square: what lies far from every pin counts most
+        mean = np.sqrt((np.minimum(base, reach) ** 2 * load.weights).sum(axis=1) / load.weights.sum())
         number = len(self._fixed) + self._sizes[chosen].sum() + sizes
         total = self._fixed.sum(axis=0) + self._middles[chosen].sum(axis=0) + middles
         off = np.linalg.norm(total / np.maximum(number, 1)[:, None] - load.centre, axis=1)

@@ -94,9 +94,14 @@ class Sections:
             np.bincount(self.loop, values * self.lengths, self.loops) / np.maximum(self.loop_lengths, 1e-12)
         )
 
-    def inside(self, points: np.ndarray, layer: int) -> np.ndarray:
-        """Return which loops of a layer hold which plan points (p, 2): (p, l) bool, False for loops of other layers."""
+    def inside(self, points: np.ndarray, layer: int, only: np.ndarray | None = None) -> np.ndarray:
+        """Return which loops of a layer hold which plan points (p, 2): (p, l) bool, False for loops of other layers.
+
+        `only` names the loops that are asked for.
+        """
         own = np.flatnonzero(self.layer == layer)
+        if only is not None:
+            own = own[np.isin(self.loop[own], only)]
         held = np.zeros((len(points), self.loops), dtype=bool)
         if len(own) == 0 or len(points) == 0:
             return held
@@ -112,10 +117,10 @@ class Sections:
         return held
 
 
-def cut_sections(view: PartView) -> Sections:
-    """Return level sections over the height of the faces that the core half forms; none when it forms no wall."""
+def cut_sections(view: PartView, chosen: np.ndarray) -> Sections:
+    """Return level sections over the height of the walls among the chosen triangles (t,) bool; none without walls."""
     z = view.mesh.corners[:, :, 2]
-    steep = view.core_side & (np.abs(view.normals[:, 2]) < 0.9)
+    steep = chosen & (np.abs(view.normals[:, 2]) < 0.9)
     if not steep.any():
         return _joined(view, [], np.zeros(0), 0.0)
     bottom, top = float(z[steep].min()), float(z[steep].max())

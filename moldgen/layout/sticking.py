@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 from dataclasses import dataclass
 from typing import Final
 
@@ -10,7 +9,7 @@ import numpy as np
 
 from moldgen.catalog import Resin
 from moldgen.finding import Finding, Notes, Severity
-from moldgen.layout.sections import Sections, cut_sections
+from moldgen.layout.sections import PHASE, Sections, cut_sections
 from moldgen.layout.view import PartView
 from moldgen.quantity import Provenance, Quantity
 from moldgen.rules.ejection import draft_factor_menges, vacuum_force
@@ -71,6 +70,19 @@ class Sticking:
 
 
 @dataclass(frozen=True)
+class _Side:
+    """The half that is asked about: triangles that it forms (t,), and the sign of z in which its drafted walls face."""
+
+    formed: np.ndarray
+    sign: float
+
+    def draft(self, view: PartView, triangle: np.ndarray) -> np.ndarray:
+        """Return the draft of triangles [deg], 0 for those that lean the other way."""
+        lean = self.sign * view.normals[triangle, 2]
+        return np.asarray(np.minimum(np.degrees(np.arcsin(np.clip(lean, 0.0, 1.0))), 89.0))
+
+
+@dataclass(frozen=True)
 class _Stiffness:
     """Friction, modulus * strain [MPa] and Poisson's ratio of the resin at ejection."""
 
@@ -86,18 +98,21 @@ def find_sticking(view: PartView, resin: Resin) -> tuple[Sticking, Notes]:
     Menges, from memory, see `moldgen.rules.ejection`). Open walls are pressed by the floor between them. Blind cores
     hold the part by vacuum besides.
     """
-    strain = min(resin.shrink_along.low, resin.shrink_across.low) / 100.0
-    stiff = _Stiffness(resin.friction.mean, resin.ejection_modulus.mean * strain, resin.poisson)
-    cut = cut_sections(view)
-    rings = _Rings.of(view, cut)
+    strain = _strain(resin)
+    stiff = _stiffness(resin, strain)
+    core = _Side(view.core_side, -1.0)
+    cut = cut_sections(view, core.formed)
+    rings = _Rings.of(view, cut, core)
     closed = rings.forces(cut, stiff)
     cores = tuple(_core(cut, rings, root, closed) for root in rings.roots)
     places, forces = [cut.middles], [closed[cut.loop] * cut.lengths / np.maximum(cut.loop_lengths, 1e-12)[cut.loop]]
-    open_force = _open_walls(view, cut, rings, stiff)
+    open_force = _open_walls(view, cut, rings, stiff, core)
     forces[0] = forces[0] + open_force
-    vacuum = [core for core in cores if core.vacuum > 0.0]
-    places.append(np.array([[c.x, c.y] for c in vacuum]).reshape(-1, 2))
-    forces.append(np.array([c.vacuum for c in vacuum]))
+    for root, core in zip(rings.roots, cores, strict=True):
+        if core.vacuum > 0.0:
+            ceiling, share = _ceiling(view, cut, root)
+            places.append(ceiling)
+            forces.append(core.vacuum * share)
     place, force = np.vstack(places), np.concatenate(forces)
     keep = force > 0.0
     place, force = place[keep], force[keep]
@@ -105,6 +120,23 @@ def find_sticking(view: PartView, resin: Resin) -> tuple[Sticking, Notes]:
     centre = (place * force[:, None]).sum(axis=0) / total if total > 0.0 else view.middle
     found = Sticking(cores, place, force, total, centre)
     return found, _notes(view, resin, found, float(open_force.sum()), strain)
+
+
+def hold_of_cavity(view: PartView, resin: Resin) -> float:
+    """Return the friction with which the part holds to the cavity half, by the same rules, without vacuum [N]."""
+    stiff = _stiffness(resin, _strain(resin))
+    cavity = _Side(~view.core_side, 1.0)
+    cut = cut_sections(view, cavity.formed)
+    rings = _Rings.of(view, cut, cavity)
+    return float(rings.forces(cut, stiff).sum() + _open_walls(view, cut, rings, stiff, cavity).sum())
+
+
+def _strain(resin: Resin) -> float:
+    return min(resin.shrink_along.low, resin.shrink_across.low) / 100.0
+
+
+def _stiffness(resin: Resin, strain: float) -> _Stiffness:
+    return _Stiffness(resin.friction.mean, resin.ejection_modulus.mean * strain, resin.poisson)
 
 
 @dataclass(frozen=True)
@@ -118,11 +150,11 @@ class _Rings:
     draft: np.ndarray
 
     @classmethod
-    def of(cls, view: PartView, cut: Sections) -> _Rings:
-        """Find the rings of core in the sections, foot first."""
-        core = cut.mean(view.core_side[cut.triangle].astype(float))
+    def of(cls, view: PartView, cut: Sections, side: _Side) -> _Rings:
+        """Find the rings of one half in the sections, foot first."""
+        share = cut.mean(side.formed[cut.triangle].astype(float))
         hole = cut.areas < 0.0
-        ring = hole & (core > MOSTLY_CORE)
+        ring = hole & (share > MOSTLY_CORE)
         root = np.full(cut.loops, -1)
         anchor = _anchors(cut)
         below: np.ndarray = np.zeros(0, dtype=int)
@@ -141,7 +173,7 @@ class _Rings:
         for foot in roots:
             blind[foot] = not cut.inside(vents, int(cut.loop_layers[foot]))[:, foot].any()
         wall = cut.mean(view.thickness(_on_segments(cut), view.normals[cut.triangle]))
-        draft = cut.mean(np.degrees(np.arcsin(np.clip(-view.normals[cut.triangle, 2], 0.0, 1.0))))
+        draft = cut.mean(side.draft(view, cut.triangle))
         return cls(root, roots, blind, wall, draft)
 
     def forces(self, cut: Sections, stiff: _Stiffness) -> np.ndarray:
@@ -149,7 +181,7 @@ class _Rings:
         radius = 2.0 * np.abs(cut.areas) / np.maximum(cut.loop_lengths, 1e-12)
         # An infinitely thick wall presses no harder than one of r / (1 + poisson): closed form for a hole in a solid.
         wall = np.minimum(self.wall, radius / (1.0 + stiff.poisson))
-        ease = np.array([draft_factor_menges(stiff.friction, min(float(d), 89.0)) for d in self.draft])
+        ease = np.array([draft_factor_menges(stiff.friction, float(d)) for d in self.draft])
         end = np.where(self.blind[np.maximum(self.root, 0)], 1.0 / (1.0 - stiff.poisson / 2.0), 1.0)
         force = stiff.friction * stiff.tension * wall * cut.grip * ease * end * cut.step
         return np.asarray(np.where(self.root >= 0, force, 0.0))
@@ -194,7 +226,7 @@ def _core(cut: Sections, rings: _Rings, root: int, closed: np.ndarray) -> Core:
     low, high = cut.loop_layers[stack].min(), cut.loop_layers[stack].max()
     area = float(-cut.areas[root])
     blind = bool(rings.blind[root])
-    bottom = float(cut.heights[low] - PHASE_LEFT * cut.step)
+    bottom = float(cut.heights[low] - PHASE * cut.step)
     return Core(
         x=float(x),
         y=float(y),
@@ -209,12 +241,24 @@ def _core(cut: Sections, rings: _Rings, root: int, closed: np.ndarray) -> Core:
     )
 
 
-PHASE_LEFT: Final = 0.381966
-"""Share of a layer below its section (`moldgen.layout.sections.PHASE`)."""
+def _ceiling(view: PartView, cut: Sections, root: int) -> tuple[np.ndarray, np.ndarray]:
+    """Return places of the underside within the foot of a core, and the share of its vacuum that each takes."""
+    down = np.flatnonzero(view.core_side & (view.normals[:, 2] < -0.5))
+    centres = view.centres[down, :2]
+    own = cut.loop == root
+    low, high = cut.start[own].min(axis=0), cut.start[own].max(axis=0)
+    near = ((centres >= low) & (centres <= high)).all(axis=1)
+    down, centres = down[near], centres[near]
+    held = cut.inside(centres, int(cut.loop_layers[root]), np.array([root]))[:, root]
+    weight = view.body.triangle_areas[down[held]] * -view.normals[down[held], 2]
+    if weight.sum() <= 0.0:
+        middle = (cut.middles[own] * cut.lengths[own][:, None]).sum(axis=0) / cut.lengths[own].sum()
+        return middle[None], np.ones(1)
+    return centres[held], weight / weight.sum()
 
 
-def _open_walls(view: PartView, cut: Sections, rings: _Rings, stiff: _Stiffness) -> np.ndarray:
-    """Return the friction at each segment of a wall that stands open in the core, (s,) [N]."""
+def _open_walls(view: PartView, cut: Sections, rings: _Rings, stiff: _Stiffness, side: _Side) -> np.ndarray:
+    """Return the friction at each segment of a wall that stands open in the steel, (s,) [N]."""
     if len(cut.loop) == 0:
         return np.zeros(0)
     heights = view.body.face_heights
@@ -222,11 +266,10 @@ def _open_walls(view: PartView, cut: Sections, rings: _Rings, stiff: _Stiffness)
     to_middle = view.middle - cut.middles
     to_middle /= np.maximum(np.linalg.norm(to_middle, axis=1), 1e-9)[:, None]
     pressed = np.clip((cut.outward * to_middle).sum(axis=1), 0.0, 1.0)
-    draft = np.degrees(np.arcsin(np.clip(-view.normals[cut.triangle, 2], 0.0, 1.0)))
-    values, number = np.unique(np.round(np.minimum(draft, 89.0), 1), return_inverse=True)
+    values, number = np.unique(np.round(side.draft(view, cut.triangle), 1), return_inverse=True)
     ease = np.array([draft_factor_menges(stiff.friction, float(d)) for d in values])[number]
     wall = stiff.friction * stiff.tension * view.wall * ease * pressed * cut.lengths * cut.step
-    counted = (rings.root[cut.loop] < 0) & view.core_side[cut.triangle] & (height > SHORTEST_WALL)
+    counted = (rings.root[cut.loop] < 0) & side.formed[cut.triangle] & (height > SHORTEST_WALL)
     return np.asarray(np.where(counted, wall / np.maximum(height, cut.step), 0.0))
 
 
@@ -304,8 +347,3 @@ def _core_line(view: PartView, core: Core, number: int, resin: Resin, strain: fl
         },
         drives="ejection force",
     )
-
-
-def is_flat(found: Sticking) -> bool:
-    """True when nothing holds the part to the core but its weight."""
-    return math.isclose(found.force, 0.0)

@@ -93,6 +93,21 @@ class PartView:
         _, number = np.unique(ends[:, 0] * len(self.mesh.vertices) + ends[:, 1], return_inverse=True)
         return np.asarray(number.reshape(-1, 3))
 
+    @cached_property
+    def outline(self) -> np.ndarray:
+        """The outer parting line as the mesh has it, counter-clockwise in plan, first point not repeated, (n, 3) [mm]."""
+        t = self.mesh.triangles
+        edges = self.triangle_edges
+        count = int(edges.max()) + 1
+        seen = np.bincount(edges[self.core_side].ravel(), minlength=count)
+        row, corner = np.nonzero(~self.core_side[:, None] & (seen[edges] > 0))
+        start, end = t[row, (corner + 1) % 3], t[row, (corner + 2) % 3]
+        loops = [self.mesh.vertices[loop] for loop in _chained(start.tolist(), end.tolist())]
+        if not loops:
+            return np.asarray(self.halves.parting_line[0], float)
+        best = max(loops, key=lambda p: abs(plan_area(p)))
+        return best if plan_area(best) > 0.0 else best[::-1]
+
     def underside(self, places: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """Look up from under the part: height [mm] of the first surface over plan places (k, 2) and its triangle.
 
@@ -109,3 +124,28 @@ class PartView:
         origins = np.column_stack([places, np.full(len(places), start)])
         distance, triangle = self.probe.first(origins, np.array([0.0, 0.0, -1.0]))
         return start - distance, triangle
+
+
+def plan_area(loop: np.ndarray) -> float:
+    """Return the signed area of a closed loop (n, 3) in plan, positive counter-clockwise [mm^2]."""
+    x, y = loop[:, 0], loop[:, 1]
+    return float(0.5 * (x * np.roll(y, -1) - y * np.roll(x, -1)).sum())
+
+
+def _chained(start: list[int], end: list[int]) -> list[list[int]]:
+    """Return closed chains of vertices from directed edges; a chain that does not close is left out."""
+    leaving: dict[int, list[int]] = {}
+    for number, vertex in enumerate(start):
+        leaving.setdefault(vertex, []).append(number)
+    chains = []
+    used = [False] * len(start)
+    for first in range(len(start)):
+        chain: list[int] = []
+        number: int | None = first
+        while number is not None and not used[number]:
+            used[number] = True
+            chain.append(start[number])
+            number = next((n for n in leaving.get(end[number], []) if not used[n]), None)
+        if len(chain) > 2:
+            chains.append(chain)
+    return chains

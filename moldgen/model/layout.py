@@ -91,7 +91,10 @@ class GateLayout:
     at : where the melt enters the part, on its surface; inward : horizontal unit vector into the part (edge gate)
     width, depth, land : of an edge gate; diameter : at the part, of a pin or sprue gate
     runner_diameter, runner_length : from the sprue to the edge gate's land; 0 for pin and sprue gates
-    sprue_top_diameter, sprue_taper_deg : sprue or pin gate channel through the cavity block, taper per side
+    sprue_foot_diameter, sprue_taper_deg : the channel through the cavity block, taper per side. A sprue (also the one
+        that feeds an edge gate, land + runner_length behind `at`) widens downward and has this diameter at its foot;
+        the channel of a pin gate widens upward from `diameter`.
+    in_cavity : the edge gate is cut into the cavity half, above the parting plane; False: into the core half
     """
 
     kind: GateKind
@@ -107,6 +110,7 @@ class GateLayout:
     sprue_taper_deg: float
     flow_length: float
     chosen_by: Chooser
+    in_cavity: bool = True
 
 
 @dataclass(frozen=True)
