@@ -35,7 +35,7 @@ def shares(places: np.ndarray, areas: np.ndarray, force: float, centre: np.ndarr
         active[np.flatnonzero(active)[spread < 0.0]] = False
     result = np.maximum(result, 0.0)
     total = result.sum()
-    return result * (force / total) if total > 0.0 else force * areas / areas.sum()
+    return np.asarray(result * (force / total) if total > 0.0 else force * areas / areas.sum())
 
 
 def resultant(places: np.ndarray, forces: np.ndarray) -> np.ndarray:

@@ -75,8 +75,8 @@ def size_blocks(body: Body, resin: Resin, blocks: Blocks, level: float | None = 
     spans = []
     for axis, name, size in ((0, "length", blocks.length), (1, "width", blocks.width)):
         along = float((high - low)[1 - axis])
-        wall, lines = _wall(name, along, load)
-        notes += lines
+        wall, more = _wall(name, along, load)
+        notes += more
         spans.append(_Span(name, float((high - low)[axis]), wall, blocks.wall, size))
     sizes = []
     for span in spans:

@@ -53,7 +53,7 @@ class EdgeSites:
     @property
     def troubles(self) -> np.ndarray:
         """Number of rules that each place breaks, (k,)."""
-        return np.sum([broken for _, broken in self.reasons], axis=0)
+        return np.asarray(np.sum([broken for _, broken in self.reasons], axis=0))
 
 
 @dataclass(frozen=True)

@@ -18,6 +18,7 @@ from moldgen.layout.sticking import Sticking, find_sticking, hold_of_cavity
 from moldgen.layout.view import PartView
 from moldgen.model.layout import Chooser, CorePinLayout, EjectorPinLayout
 from moldgen.model.part import Vector
+from moldgen.quantity import Quantity
 from moldgen.rules.layout_practice import EJECTOR_FEWEST, RETAINER_PLATE, STEEL_BETWEEN_BORES, STEEL_TO_EDGE
 from moldgen.rules.pins import clearance_bore_diameter, euler_buckling_force, guided_fit_length
 from moldgen.rules.practice import BUCKLING_SAFETY, PIN_END_FACTOR
@@ -132,7 +133,7 @@ def _stroke(view: PartView, section: Ejection) -> tuple[float, Notes]:
     z = view.mesh.corners[view.core_side][:, :, 2]
     depth = float(max(z.max(), view.level) - min(z.min(), view.level)) if len(z) else 0.0
     needed = ejection_stroke_pye.line("ejector stroke", depth)
-    lines = (measured("depth of the part on the core", depth, "mm", "ejector stroke"), needed)
+    lines: tuple[Quantity, ...] = (measured("depth of the part on the core", depth, "mm", "ejector stroke"), needed)
     if section.stroke is None:
         return float(math.ceil(needed.value)), Notes(quantities=lines)
     lines += (given_line("ejector stroke", section.stroke, "mm", "ejector stroke", where="ejection.stroke"),)

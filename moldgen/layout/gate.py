@@ -35,7 +35,7 @@ FAR: Final = 2.0
 OBLIQUE: Final = 0.05
 """Cost of a runner that runs at 45 deg to the sides of the block, as a share of the flow length."""
 
-ASIDE: Final = 0.1
+ASIDE: Final = 0.3
 """Cost of a place beside the part's middle lines, by its distance over the size in plan: flow lengths are only good
 to a few percent, and a gate on a middle line is easier to make and to balance."""
 
@@ -241,7 +241,7 @@ def _best_top(task: _Task, paths: FlowPaths, sites: TopSites) -> int:
     pool = pool[some]
     flow, _ = paths.longest(sites.places[pool])
     off = np.linalg.norm(sites.places[pool][:, :2] - task.view.middle, axis=1) / _size(task.view)
-    cost = flow * _thin(task, sites.wall[pool]) * (1.0 + 2 * ASIDE * off)
+    cost = flow * _thin(task, sites.wall[pool]) * (1.0 + 3 * ASIDE * off)
     return int(pool[np.argmin(np.round(cost, 6))])
 
 
@@ -252,7 +252,7 @@ def _size(view: PartView) -> float:
 
 def _thin(task: _Task, wall: np.ndarray) -> np.ndarray:
     """Return what a gate into a wall costs against one into the usual wall: the melt should flow from thick to thin."""
-    return np.sqrt(np.clip(task.view.wall / np.maximum(wall, 1e-3), 0.5, 4.0))
+    return np.asarray(np.sqrt(np.clip(task.view.wall / np.maximum(wall, 1e-3), 0.5, 4.0)))
 
 
 def _node(paths: FlowPaths, number: int) -> tuple[float, float, float]:

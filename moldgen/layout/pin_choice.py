@@ -92,9 +92,7 @@ def units(places: np.ndarray, group: list[np.ndarray], middle: np.ndarray, apart
 class Choice:
     """Units chosen so far, over places (k, 2) [mm], pins `apart` from each other; `fixed` (g, 2) are there already."""
 
-    def __init__(
-        self, places: np.ndarray, sets: list[tuple[int, ...]], load: Load, apart: float, fixed: np.ndarray
-    ) -> None:
+    def __init__(self, places: np.ndarray, sets: np.ndarray, load: Load, apart: float, fixed: np.ndarray) -> None:
         self._places, self._sets, self._load, self._fixed = places, sets, load, fixed
         first = np.column_stack([np.ones(len(sets), bool), np.diff(sets, axis=1) != 0])
         self._sizes = first.sum(axis=1)
@@ -106,7 +104,7 @@ class Choice:
 
     def result(self) -> np.ndarray:
         """Return the chosen places, (n, 2) [mm]."""
-        return self._places[np.unique(self._sets[self.chosen])]
+        return np.asarray(self._places[np.unique(self._sets[self.chosen])])
 
     def search(self, counts: Counts) -> float:
         """Choose by greed, from two beginnings, then improve unit by unit; return the cost of the best choice [mm]."""

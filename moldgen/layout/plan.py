@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 from moldgen.catalog import Resin
 from moldgen.finding import Notes
@@ -24,11 +24,11 @@ class Wishes:
     no_pins, no_gate : numbers of the marked faces of the body in the halves
     """
 
-    core_pins: CorePins = CorePins()
+    core_pins: CorePins = field(default_factory=CorePins)
     core_pins_at: tuple[Vector, ...] = ()
-    ejection: Ejection = Ejection()
+    ejection: Ejection = field(default_factory=Ejection)
     pins: tuple[GivenPin, ...] | None = None
-    gate: Gate = Gate()
+    gate: Gate = field(default_factory=Gate)
     gate_at: Vector | None = None
     no_pins: frozenset[int] = frozenset()
     no_gate: frozenset[int] = frozenset()

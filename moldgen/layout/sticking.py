@@ -100,13 +100,13 @@ def find_sticking(view: PartView, resin: Resin) -> tuple[Sticking, Notes]:
     """
     strain = _strain(resin)
     stiff = _stiffness(resin, strain)
-    core = _Side(view.core_side, -1.0)
-    cut = cut_sections(view, core.formed)
-    rings = _Rings.of(view, cut, core)
+    half = _Side(view.core_side, -1.0)
+    cut = cut_sections(view, half.formed)
+    rings = _Rings.of(view, cut, half)
     closed = rings.forces(cut, stiff)
     cores = tuple(_core(cut, rings, root, closed) for root in rings.roots)
     places, forces = [cut.middles], [closed[cut.loop] * cut.lengths / np.maximum(cut.loop_lengths, 1e-12)[cut.loop]]
-    open_force = _open_walls(view, cut, rings, stiff, core)
+    open_force = _open_walls(view, cut, rings, stiff, half)
     forces[0] = forces[0] + open_force
     for root, core in zip(rings.roots, cores, strict=True):
         if core.vacuum > 0.0:

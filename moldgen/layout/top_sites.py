@@ -29,7 +29,7 @@ class TopSites:
     @property
     def troubles(self) -> np.ndarray:
         """Number of rules that each place breaks, (k,)."""
-        return np.sum([broken for _, broken in self.reasons], axis=0)
+        return np.asarray(np.sum([broken for _, broken in self.reasons], axis=0))
 
 
 def find_top_sites(view: PartView, plan: np.ndarray, diameter: float, no_gate: frozenset[int]) -> TopSites:

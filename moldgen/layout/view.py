@@ -48,7 +48,7 @@ class PartView:
     @cached_property
     def core_side(self) -> np.ndarray:
         """Which triangles the core half forms, (t,) bool."""
-        return ~np.asarray(self.halves.cavity_side, bool)[self.mesh.face]
+        return np.asarray(~np.asarray(self.halves.cavity_side, bool)[self.mesh.face])
 
     @cached_property
     def centres(self) -> np.ndarray:
@@ -95,7 +95,7 @@ class PartView:
 
     @cached_property
     def outline(self) -> np.ndarray:
-        """The outer parting line as the mesh has it, counter-clockwise in plan, first point not repeated, (n, 3) [mm]."""
+        """The outer parting line as the mesh has it, counter-clockwise in plan, (n, 3) [mm]."""
         t = self.mesh.triangles
         edges = self.triangle_edges
         count = int(edges.max()) + 1
@@ -141,11 +141,11 @@ def _chained(start: list[int], end: list[int]) -> list[list[int]]:
     used = [False] * len(start)
     for first in range(len(start)):
         chain: list[int] = []
-        number: int | None = first
-        while number is not None and not used[number]:
-            used[number] = True
-            chain.append(start[number])
-            number = next((n for n in leaving.get(end[number], []) if not used[n]), None)
+        at: int | None = first
+        while at is not None and not used[at]:
+            used[at] = True
+            chain.append(start[at])
+            at = next((n for n in leaving.get(end[at], []) if not used[n]), None)
         if len(chain) > 2:
             chains.append(chain)
     return chains
