@@ -62,9 +62,8 @@ class _Task:
     kinds: FaceKinds
     contact: np.ndarray
     search: LevelSearch
-    part: MeshSolid
     corners: tuple[np.ndarray, np.ndarray]
-    costly: frozenset[int]
+    avoid: tuple[np.ndarray, ...]
 
 
 @dataclass(frozen=True)
@@ -80,18 +79,19 @@ def part_halves(
     corners: tuple[np.ndarray, np.ndarray],
     *,
     level: float | None = None,
-    costly_faces: frozenset[int] = frozenset(),
+    avoid: tuple[np.ndarray, ...] = (),
 ) -> Parted:
     """Return cavity and core inside the block `corners` of a part whose faces all look up, down or along the pull.
 
     level : height of the parting plane [mm] if the user fixed it, else the best of those found is used
+    avoid : points [mm] on faces along which the parting line should not run
 
     Raises
     ------
     PartError : no level gives two proved halves; the message lists each with its reason
     """
     contact = vertical_contact(body, kinds)
-    task = _Task(body, kinds, contact, find_levels(body, kinds, part), part, corners, costly_faces)
+    task = _Task(body, kinds, contact, find_levels(body, kinds, part), corners, avoid)
     levels = (level,) if level is not None else _by_cost(task)
     refused: list[str] = []
     unproved: list[Parted] = []
@@ -118,22 +118,27 @@ def part_halves(
 
 
 def _by_cost(task: _Task) -> tuple[float, ...]:
-    costs = {z: assign_sides(task.body, task.kinds, task.contact, z, task.costly).cost for z in task.search.levels}
+    costly = _costly(task.body, task.avoid)
+    costs = {z: assign_sides(task.body, task.kinds, task.contact, z, costly).cost for z in task.search.levels}
     return tuple(sorted(costs, key=lambda z: (costs[z], z)))
+
+
+def _costly(body: Body, avoid: tuple[np.ndarray, ...]) -> frozenset[int]:
+    return frozenset(body.nearest_face(point)[0] for point in avoid)
 
 
 def _part_at(task: _Task, trial: _Trial) -> Parted:
     level = trial.level
     split = split_at_level(task.body, task.kinds, task.contact, task.search, level, all_faces=trial.deep)
-    state = _assigned(split, level, task.costly, (task.kinds, task.contact) if split is task.body else None)
+    state = _assigned(split, level, task.avoid, (task.kinds, task.contact) if split is task.body else None)
     crossing = [split.edge_index.FindIndex(e) - 1 for e in state.loops[state.outer]]
     cut = split_edges_at_level(split, crossing, level)
     if cut is not split:
-        state = _assigned(cut, level, task.costly, None)
+        state = _assigned(cut, level, task.avoid, None)
     if not _is_level(state, level):
         cornered = split_at_extremes(state.body, state.loops[state.outer])
         if cornered is not state.body:
-            state = _assigned(cornered, level, task.costly, None)
+            state = _assigned(cornered, level, task.avoid, None)
     if state.alike and not trial.deep:
         raise KernelError(f"{len(state.alike) + 1} loops run as the outer one does")
     return _halves(state, trial, task.corners)
@@ -154,10 +159,10 @@ class _Assigned:
 
 
 def _assigned(
-    body: Body, level: float, costly: frozenset[int], known: tuple[FaceKinds, np.ndarray] | None
+    body: Body, level: float, avoid: tuple[np.ndarray, ...], known: tuple[FaceKinds, np.ndarray] | None
 ) -> _Assigned:
     kinds, contact = known or (kinds_ := face_kinds(body), vertical_contact(body, kinds_))
-    sides = assign_sides(body, kinds, contact, level, costly)
+    sides = assign_sides(body, kinds, contact, level, _costly(body, avoid))
     loops = boundary_loops(body, sides.cavity)
     if not loops:
         raise KernelError("all faces are on one side")

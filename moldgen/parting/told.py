@@ -1,0 +1,94 @@
+"""What to tell about the parting: the line, the surface, each shut-off, and which rung of which ladder made it."""
+
+from __future__ import annotations
+
+from collections import Counter
+
+import numpy as np
+
+from moldgen.finding import Decision, Finding, Notes, Severity
+from moldgen.kernel.patches import loop_points
+from moldgen.model.part import MoldFrame
+from moldgen.parting.halves import Parted
+from moldgen.parting.surface import ClosedLoop, Rung
+
+_WHY = {
+    Rung.PLANE: "the parting line is flat and level there",
+    Rung.RUN_OFF: "the parting line rises and falls, but never doubles back along a side of the block",
+    Rung.LEVEL_AND_CURTAINS: "no surface without vertical steps holds this line",
+    Rung.HOST: "the whole rim lies in the boundary of one wall",
+    Rung.FILLED: "the rim lies on no plane, no level and no single wall",
+}
+
+
+def parting_line(parted: Parted) -> tuple[np.ndarray, ...]:
+    """Return the parting line as closed polylines (k, 3) in the mold frame [mm], the outer one first."""
+    order = [parted.outer, *(i for i in range(len(parted.loops)) if i != parted.outer)]
+    lines = []
+    for number in order:
+        points = loop_points(parted.loops[number], 12)
+        lines.append(np.vstack([points, points[:1]]))
+    return tuple(lines)
+
+
+def told(parted: Parted, frame: MoldFrame) -> Notes:
+    """Return the decisions and findings about the parting, places in part coordinates."""
+    line = _decision("parting line", f"{len(parted.loops)} loops, level {parted.level:.3f} mm (mold)", parted)
+    outer = parted.sheet.outer
+    surface = Decision("parting surface", _shape(outer), _WHY[outer.rung], outer.rung.value, outer.refused)
+    shut = Counter(s.rung for s in parted.sheet.shut_offs)
+    shut_offs = tuple(
+        Decision("shut-off", f"{count} of {len(parted.sheet.shut_offs)} holes", _WHY[rung], rung.value)
+        for rung, count in sorted(shut.items(), key=lambda item: list(Rung).index(item[0]))
+    )
+    steep = [("parting surface", outer), *(("shut-off", s) for s in parted.sheet.shut_offs)]
+    findings = tuple(_upright(name, loop, frame) for name, loop in steep if loop.off_plane)
+    return Notes((*findings, *_torn(parted, frame)), (line, surface, *shut_offs))
+
+
+def _decision(topic: str, choice: str, parted: Parted) -> Decision:
+    why = "shortest line between the faces of both halves near the level (minimum cut over the faces)"
+    rung = "every vertical face split" if parted.deep else "vertical faces on the outline split at the level"
+    return Decision(topic, choice, why, rung, parted.refused)
+
+
+def _shape(loop: ClosedLoop) -> str:
+    if loop.rung is Rung.PLANE:
+        return "flat"
+    return "stepped or curved" if loop.rung is Rung.RUN_OFF else "flat with vertical steps at the part"
+
+
+def _upright(name: str, loop: ClosedLoop, frame: MoldFrame) -> Finding:
+    at = frame.to_part(loop.at)
+    return Finding(
+        code="parting.no_draft",
+        severity=Severity.WARNING,
+        message=f"the {name} has {loop.off_plane} vertical steps, up to {loop.span[2]:.2f} mm high: steel slides on "
+        "steel without draft there and will gall",
+        where=f"{name} at {at[0]:.2f}, {at[1]:.2f}, {at[2]:.2f}",
+        at=at,
+        value=0.0,
+        limit=3.0,
+        unit="deg",
+        remedy="lean these walls of the part by 3 deg or more (trade pages ask for 3 to 7 deg), or let the toolmaker "
+        "blend the step",
+    )
+
+
+def _torn(parted: Parted, frame: MoldFrame) -> tuple[Finding, ...]:
+    findings = []
+    for face in parted.sides.torn:
+        x, y, z = (float(v) for v in parted.body.face_places[face])
+        at = frame.to_part((x, y, z))
+        findings.append(
+            Finding(
+                code="parting.torn_face",
+                severity=Severity.CAUTION,
+                message="a wall along the pull has material above it and below it; the half that reaches more of it "
+                "forms it whole",
+                where=f"{parted.body.surface_kind(face)} face at {at[0]:.2f}, {at[1]:.2f}, {at[2]:.2f}",
+                at=at,
+                remedy="look at this place in section.png",
+            )
+        )
+    return tuple(findings)
