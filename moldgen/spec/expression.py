@@ -38,7 +38,9 @@ UNITS: Final[Mapping[str, tuple[float, str]]] = {
 }
 """Unit -> (factor to mm or deg, dimension). The inch is 25.4 mm exactly [published: yard and pound agreement 1959]."""
 
-_WITH_UNIT = re.compile(r"(?<![\w.])(\d+\.?\d*(?:[eE][+-]?\d+)?|\.\d+(?:[eE][+-]?\d+)?)\s*([A-Za-z]+)(?![\w(])")
+_WITH_UNIT = re.compile(
+    r"(?<![\w.])(\d+\.?\d*(?:[eE][+-]?\d+)?|\.\d+(?:[eE][+-]?\d+)?)\s*(?![eE][+-]?\d)([A-Za-z]+)(?![\w(])"
+)
 _NAME = re.compile(r"[A-Za-z_][A-Za-z0-9_]*\Z")
 
 
@@ -102,7 +104,7 @@ def parse(
         raise ValueError(f"expected a number or an expression, got {type(source).__name__}")  # noqa: TRY004 (pydantic)
     if isinstance(source, (int, float)):
         if not abs(source) <= LARGEST:
-            raise ValueError(f"expected a number of at most {LARGEST:g}, got {source:g}")
+            raise ValueError(f"expected a number of at most {LARGEST:g}, got {str(source)[:12]}")
         return Expression(repr(source), dimension, sign, whole)
     _tree(source)
     return Expression(source.strip(), dimension, sign, whole)
@@ -160,6 +162,11 @@ def resolve_parameters(parameters: Mapping[str, Expression]) -> tuple[dict[str, 
             if other in parameters:
                 visit(other, (*path, name))
         if name in errors:
+            return
+        unknown = [n for n in expression.names() if n not in parameters]
+        if unknown:
+            known = [*parameters, *_CONSTANTS, *_FUNCTIONS]
+            errors[name] = f"parameter '{name}': unknown name '{unknown[0]}'{_nearest(unknown[0], known)}"
             return
         broken = [n for n in expression.names() if n in errors]
         if broken:
