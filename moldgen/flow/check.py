@@ -10,18 +10,10 @@ from moldgen.flow.job import JobResult, Table, verdict_code
 from moldgen.flow.record import notes_record, review_record
 from moldgen.flow.review import Reviewed, review
 from moldgen.flow.tell import Tell
-from moldgen.release.kinds import Kind
 from moldgen.spec.load import LoadedSpec
 
 MOST_ROWS = 20
 """Rows of a table on the terminal; the manifest has all of them."""
-
-_LOOKS = {
-    Kind.UPPER: "to the cavity",
-    Kind.LOWER: "to the core",
-    Kind.VERTICAL: "along the pull, no draft",
-    Kind.STRADDLING: "both ways",
-}
 
 
 def check_part(loaded: LoadedSpec, folder: Path, tell: Tell) -> JobResult:
@@ -58,33 +50,28 @@ def _pulls(reviewed: Reviewed) -> Table:
             round(c.depth_mm, 1),
             round(c.projected_mm2 / 100, 2),
         )
-        for c in reviewed.candidates[:6]
+        for c in reviewed.release.pull_tried[:6]
     )
     columns = ("direction", "from", "score", "trapped [mm2]", "uneven line [mm]", "depth [mm]", "projected [cm2]")
     return Table("pulls tried, best first", columns, rows)
 
 
 def _faces(reviewed: Reviewed) -> Table:
-    kinds, areas = reviewed.prepared.kinds.kind, reviewed.prepared.body.face_areas
-    rows = tuple(
-        (_LOOKS[kind], int((kinds == kind).sum()), round(float(areas[kinds == kind].sum()), 2))
-        for kind in Kind
-        if (kinds == kind).any()
-    )
+    rows = tuple((c.kind, c.count, round(c.area_mm2, 2)) for c in reviewed.release.faces if c.count)
     return Table("faces against the pull", ("looks", "faces", "area [mm2]"), rows)
 
 
 def _draft(reviewed: Reviewed) -> Table:
-    required = reviewed.required_draft_deg
-    short = [r for r in reviewed.draft if r.mean_deg < required - 1e-3]
+    summary = reviewed.release.draft
+    short = [r for r in summary.rows if r.below_mm2 > 0 and r.mean_deg < summary.required_deg - 1e-3]
     short.sort(key=lambda r: (-round(r.area_mm2, 3), r.face))
     rows = tuple(
         (
-            _listed(reviewed.frame.to_part(r.at), 2),
+            _listed(r.at, 2),
             r.surface,
             r.half.value,
             round(r.least_deg, 3),
-            round(required, 3),
+            round(summary.required_deg, 3),
             round(r.area_mm2, 2),
         )
         for r in short[:MOST_ROWS]
@@ -95,10 +82,9 @@ def _draft(reviewed: Reviewed) -> Table:
 
 
 def _trapped(reviewed: Reviewed) -> Table:
-    pieces = reviewed.prepared.trapped.pieces
     rows = tuple(
         (
-            _listed(reviewed.frame.to_part(p.at), 2),
+            _listed(p.at, 2),
             p.grip.value,
             len(p.faces),
             round(p.area_mm2, 2),
@@ -106,7 +92,7 @@ def _trapped(reviewed: Reviewed) -> Table:
             round(p.thickness_mm, 3),
             round(p.volume_mm3, 3),
         )
-        for p in pieces[:MOST_ROWS]
+        for p in reviewed.release.trapped[:MOST_ROWS]
     )
     columns = ("face at", "grip", "faces", "area [mm2]", "depth [mm]", "thickness [mm]", "volume [mm3]")
     return Table("trapped space", columns, rows)

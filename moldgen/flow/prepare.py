@@ -11,8 +11,10 @@ from moldgen.kernel.body import Body
 from moldgen.kernel.crossing import crossings
 from moldgen.kernel.meshsolid import mesh_solid
 from moldgen.kernel.prepare import preparations
+from moldgen.model.part import MoldFrame
 from moldgen.release.imprint import imprint_silhouettes
 from moldgen.release.kinds import FaceKinds, face_kinds
+from moldgen.release.place import part_point
 from moldgen.release.trapped import Trapped, trapped_volume
 
 
@@ -25,10 +27,11 @@ class Prepared:
     trapped: Trapped
 
 
-def prepare(solid: Any, volume_mm3: float | None = None) -> tuple[Prepared, Notes]:
+def prepare(solid: Any, volume_mm3: float | None = None, frame: MoldFrame | None = None) -> tuple[Prepared, Notes]:
     """Return the part ready to be parted, by the first rung of the preparation ladder that copes with all of it.
 
     solid : the part in mold coordinates; volume_mm3 : its volume, if known
+    frame : the way back to part coordinates, for findings
 
     Raises
     ------
@@ -38,12 +41,12 @@ def prepare(solid: Any, volume_mm3: float | None = None) -> tuple[Prepared, Note
     for candidate in preparations(solid, volume_mm3):
         refused = [*candidate.refused, *refused[len(candidate.refused) :]]
         try:
-            body, notes = ready(Body(candidate.solid))
+            body, notes = ready(Body(candidate.solid), frame)
             prepared = Prepared(body, kinds := face_kinds(body), trapped_volume(body, kinds))
         except KernelError as error:
             refused.append(f"{candidate.rung}: {error.what}")
             continue
-        _refuse_crossings(body)
+        _refuse_crossings(body, frame)
         choice = f"{len(body.faces)} faces"
         why = "every face meshes, the mesh is closed and the solid stays valid when split"
         return prepared, notes + Notes(
@@ -55,18 +58,18 @@ def prepare(solid: Any, volume_mm3: float | None = None) -> tuple[Prepared, Note
     )
 
 
-def ready(body: Body) -> tuple[Body, Notes]:
+def ready(body: Body, frame: MoldFrame | None = None) -> tuple[Body, Notes]:
     """Return the body with its straddling faces split at their silhouettes, its mesh checked to be closed."""
     mesh_solid(body.mesh)
-    return imprint_silhouettes(body, face_kinds(body))
+    return imprint_silhouettes(body, face_kinds(body), frame)
 
 
-def _refuse_crossings(body: Body) -> None:
+def _refuse_crossings(body: Body, frame: MoldFrame | None) -> None:
     found = crossings(body.mesh)
     if found:
-        x, y, z = found[0].at
+        x, y, z = part_point(found[0].at, frame)
         raise PartError(
             f"faces of the part pass through each other, {found[0].depth_mm:.3f} mm deep",
-            where=f"at {x:.3f}, {y:.3f}, {z:.3f} (mold frame)",
+            where=f"at {x:.3f}, {y:.3f}, {z:.3f}",
             remedy="repair the part in the CAD system that wrote it",
         )

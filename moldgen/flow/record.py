@@ -13,12 +13,12 @@ from moldgen.flow.report import CAUTIONS, sorted_findings
 from moldgen.flow.review import Reviewed
 from moldgen.model.proof import Proof
 from moldgen.model.tool import Component, Tool
-from moldgen.release.kinds import Kind
 
 
 def review_record(reviewed: Reviewed) -> dict[str, Any]:
     """Return what is known of the part before steel: source, shrink, pull, faces against the pull, draft, traps."""
     part, frame = reviewed.part, reviewed.frame
+    of_mold = reviewed.loaded.spec.shrink.convention == "mold"
     low, high = part.bounding_box_mm
     return {
         "moldgen": __version__,
@@ -35,47 +35,16 @@ def review_record(reviewed: Reviewed) -> dict[str, Any]:
         "resin": reviewed.resin.name,
         "shrink": {
             **dict(zip("xyz", frame.factors, strict=True)),
-            "rule": f"mold = {'part / (1 - S)' if reviewed.loaded.spec.shrink.convention == 'mold' else 'part * (1 + S)'}",
+            "rule": f"mold = {'part / (1 - S)' if of_mold else 'part * (1 + S)'}",
             "fixed_point_mm": frame.fixed_point,
         },
         "pull": {
             "direction": reviewed.pull.direction,
             "how_chosen": reviewed.pull.how_chosen,
             "part_to_mold_rotation": frame.rotation,
-            "candidates": reviewed.candidates[:12],
         },
-        "release": _release_record(reviewed),
+        "release": reviewed.release,
     }
-
-
-def _release_record(reviewed: Reviewed) -> dict[str, Any]:
-    prepared = reviewed.prepared
-    areas = prepared.body.face_areas
-    kinds = {
-        kind.name.lower(): {
-            "faces": int((prepared.kinds.kind == kind).sum()),
-            "area_mm2": float(areas[prepared.kinds.kind == kind].sum()),
-        }
-        for kind in Kind
-    }
-    trapped = [
-        {
-            "grip": piece.grip,
-            "at": reviewed.frame.to_part(piece.at),
-            "area_mm2": piece.area_mm2,
-            "depth_mm": piece.depth_mm,
-            "height_mm": piece.height_mm,
-            "thickness_mm": piece.thickness_mm,
-            "volume_mm3": piece.volume_mm3,
-            "faces": [
-                {"at": reviewed.frame.to_part(_place(prepared.body.face_places[f])), "area_mm2": a}
-                for f, a in piece.faces
-            ],
-        }
-        for piece in prepared.trapped.pieces
-    ]
-    drafts = [{**plain(row), "at": reviewed.frame.to_part(row.at), "half": row.half.value} for row in reviewed.draft]
-    return {"faces": kinds, "trapped": trapped, "draft_asked_deg": reviewed.required_draft_deg, "draft": drafts}
 
 
 def notes_record(notes: Notes, proofs: Sequence[Proof] = ()) -> dict[str, Any]:
@@ -107,8 +76,3 @@ def component_record(component: Component, file: Path, volume_mm3: float) -> dic
 def component_files(tool: Tool) -> dict[str, Path]:
     """Return the file of each component inside the output folder."""
     return {c.name: Path("step") / f"{c.name.replace(' ', '_')}.step" for c in tool.components}
-
-
-def _place(point: Any) -> tuple[float, float, float]:
-    x, y, z = (float(v) for v in point)
-    return (x, y, z)

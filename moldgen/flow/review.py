@@ -2,14 +2,13 @@
 
 from __future__ import annotations
 
-import re
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 
 from moldgen.catalog import Resin, resin
 from moldgen.errors import PartError
-from moldgen.finding import Decision, Finding, Notes, Severity
+from moldgen.finding import Decision, Notes
 from moldgen.flow.part_source import read_part
 from moldgen.flow.prepare import Prepared, prepare
 from moldgen.flow.tell import Tell
@@ -17,10 +16,10 @@ from moldgen.kernel.body import Body
 from moldgen.kernel.place import to_mold
 from moldgen.model.part import MoldFrame, Part, Pull, Vector
 from moldgen.release.contact import vertical_contact
-from moldgen.release.draft import FaceDraft, draft_findings, draft_table
 from moldgen.release.frame import mold_frame
 from moldgen.release.pull import PullCandidate, search_pull
-from moldgen.release.trapped import Grip, TrapPiece
+from moldgen.release.review import ReleaseReview, TrappedPlace, review_release
+from moldgen.release.trapped import Grip
 from moldgen.rules.draft import draft_required
 from moldgen.spec.load import LoadedSpec
 from moldgen.spec.pull import FaceNormal
@@ -37,12 +36,9 @@ class Reviewed:
     resin: Resin
     part: Part
     pull: Pull
-    candidates: tuple[PullCandidate, ...]
     frame: MoldFrame
     prepared: Prepared
-    contact: np.ndarray
-    draft: tuple[FaceDraft, ...]
-    required_draft_deg: float
+    release: ReleaseReview
     notes: Notes
 
 
@@ -68,23 +64,28 @@ def review(loaded: LoadedSpec, tell: Tell) -> Reviewed:
         frame, more = mold_frame(pull.direction, spec.shrink, spec.resin, part.bounding_box_mm)
         notes += more
         scale = float(np.prod(frame.factors))
-        prepared, more = prepare(to_mold(part.solid, frame), part.volume_mm3 * scale)
-        notes += _in_part(more, frame)
+        prepared, more = prepare(to_mold(part.solid, frame), part.volume_mm3 * scale, frame)
+        notes += more
         stage.detail = f"{len(prepared.body.faces)} faces, {len(prepared.trapped.undercuts)} undercuts"
     with tell.stage("review the draft") as stage:
-        contact = vertical_contact(prepared.body, prepared.kinds)
         section = spec.draft
         least = data.draft_minimum.low if section.minimum is None else section.minimum
         asked = (least, section.texture_depth, section.texture_slope)
-        required = draft_required(*asked)
-        rows = draft_table(prepared.body, prepared.kinds, required, contact)
-        found = draft_findings(rows, required)
-        notes += _in_part(Notes(found), frame) + Notes(
+        notes += Notes(
             draft_required.outside(*asked), quantities=(draft_required.line("draft asked of every wall", *asked),)
         )
-        stage.detail = f"{len(found)} faces below {required:.2g} deg"
-    notes += Notes(tuple(trap_finding(p, frame, prepared.body) for p in prepared.trapped.pieces))
-    return Reviewed(loaded, data, part, pull, candidates, frame, prepared, contact, rows, required, notes)
+        release, more = review_release(
+            prepared.body,
+            prepared.kinds,
+            prepared.trapped,
+            draft_required(*asked),
+            contact=vertical_contact(prepared.body, prepared.kinds),
+            frame=frame,
+            tried=candidates,
+        )
+        notes += more
+        stage.detail = f"{release.draft.faces_below} faces below {release.draft.required_deg:.2g} deg"
+    return Reviewed(loaded, data, part, pull, frame, prepared, release, notes)
 
 
 def refuse_undercuts(reviewed: Reviewed) -> None:
@@ -94,10 +95,10 @@ def refuse_undercuts(reviewed: Reviewed) -> None:
     ------
     PartError : it does not; the trapped places are named with position, area and depth
     """
-    pieces = reviewed.prepared.trapped.undercuts
+    pieces = [t for t in reviewed.release.trapped if t.grip is Grip.UNDERCUT]
     if not pieces:
         return
-    lines = [_named(p, reviewed.frame) for p in pieces[:MOST_NAMED]]
+    lines = [_named(p) for p in pieces[:MOST_NAMED]]
     if len(pieces) > MOST_NAMED:
         lines.append(f"and {len(pieces) - MOST_NAMED} more")
     raise PartError(
@@ -109,29 +110,9 @@ def refuse_undercuts(reviewed: Reviewed) -> None:
     )
 
 
-def trap_finding(piece: TrapPiece, frame: MoldFrame, body: Body) -> Finding:
-    """Return what one trapped piece means for the tool."""
-    at = frame.to_part(piece.at)
-    face = piece.faces[0][0] if piece.faces else 0
-    undercut = piece.grip is Grip.UNDERCUT
-    what = "holds the part on opening" if undercut else "rubs on opening; the plastic has to give way"
-    return Finding(
-        code="release.undercut" if undercut else "release.rub",
-        severity=Severity.FAILURE if undercut else Severity.WARNING,
-        message=f"a space of {piece.volume_mm3:.3f} mm^3, {piece.depth_mm:.2f} mm deep, touching {piece.area_mm2:.2f} "
-        f"mm^2 of {len(piece.faces)} faces, {what}",
-        where=f"{body.surface_kind(face)} face at {_listed(at)}",
-        at=at,
-        value=piece.thickness_mm,
-        limit=0.1 if undercut else 0.03,
-        unit="mm",
-        remedy="taper the face along the pull, open a slot under it, or move the parting" if undercut else "",
-    )
-
-
-def _named(piece: TrapPiece, frame: MoldFrame) -> str:
+def _named(piece: TrappedPlace) -> str:
     return (
-        f"face at {_listed(frame.to_part(piece.at))}: {piece.area_mm2:.2f} mm^2 of {len(piece.faces)} faces, "
+        f"face at {_listed(piece.at)}: {piece.area_mm2:.2f} mm^2 of {len(piece.faces)} faces, "
         f"{piece.depth_mm:.2f} mm deep, {piece.height_mm:.2f} mm high, {piece.volume_mm3:.3f} mm^3"
     )
 
@@ -158,29 +139,13 @@ def _normal_at(loaded: LoadedSpec, part: Part, point: Vector) -> Vector:
     number, distance = body.nearest_face(np.asarray(point))
     if body.surface_kind(number) != "plane":
         raise PartError(
-            f"the face nearest to {_listed(point)} is no plane but a {body.surface_kind(number)}, {distance:.3g} mm away",
+            f"the face nearest to {_listed(point)}, {distance:.3g} mm away, is no plane but a {body.surface_kind(number)}",
             where=loaded.locate("pull"),
             remedy="give a point on a flat face, or a direction",
         )
     normal = body.mesh.normals[body.mesh.face == number][0]
     x, y, z = (float(v) + 0.0 for v in normal / np.linalg.norm(normal))
     return (x, y, z)
-
-
-_PLACE = re.compile(r" at -?[\d.]+, -?[\d.]+, -?[\d.]+")
-
-
-def _in_part(notes: Notes, frame: MoldFrame) -> Notes:
-    """Return notes made in the mold frame with their places in part coordinates."""
-    findings = []
-    for finding in notes.findings:
-        if finding.at is None:
-            findings.append(finding)
-            continue
-        at = frame.to_part(finding.at)
-        where = _PLACE.sub(f" at {_listed(at)}", finding.where, count=1)
-        findings.append(replace(finding, at=at, where=where))
-    return replace(notes, findings=tuple(findings))
 
 
 def _listed(point: Vector) -> str:

@@ -10,7 +10,7 @@ from OCP.BRepAdaptor import BRepAdaptor_Surface
 from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Shape
 
 from moldgen.kernel.mesh import SurfaceMesh, surface_mesh, tessellate
-from moldgen.kernel.rays import nearest_triangle
+from moldgen.kernel.nearest import nearest_triangle
 from moldgen.kernel.topology import edge_faces_map, edge_points, faces_of, same_order
 from moldgen.tolerances import MESH_ANGLE, MESH_DEFLECTION
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TypeAlias
 
 import manifold3d
 import numpy as np
@@ -11,7 +12,7 @@ from moldgen.errors import KernelError
 from moldgen.kernel.mesh import SurfaceMesh
 from moldgen.tolerances import EROSION, NOISE_THICKNESS, SMALL_VOLUME
 
-MeshSolid = manifold3d.Manifold
+MeshSolid: TypeAlias = manifold3d.Manifold
 
 
 def mesh_solid(mesh: SurfaceMesh) -> MeshSolid:
@@ -60,8 +61,8 @@ def thick_pieces(solid: MeshSolid, least: float = NOISE_THICKNESS) -> list[MeshS
 def eroded(mesh: SurfaceMesh, by: float = EROSION) -> MeshSolid | None:
     """Return the mesh with every vertex moved inward so that each face around it gives way by `by` [mm] or so.
 
-    Bodies of a tool touch everywhere, and a boolean of coincident sheets makes thousands of slivers. One that was eroded
-    touches nothing: overlaps deeper than the erosion remain, and the boolean is tens of times faster (measured).
+    Bodies of a tool touch everywhere, and a boolean of coincident sheets makes thousands of slivers. One that was
+    eroded touches nothing: overlaps deeper than that remain, and the boolean is tens of times faster (measured).
     """
     corners = mesh.corners
     normal = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])

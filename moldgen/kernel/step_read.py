@@ -119,6 +119,19 @@ def read_step(path: Path, choose: int | str | None = None, *, find_crossings: bo
     )
 
 
+def read_assembly(path: Path) -> tuple[tuple[str, TopoDS_Shape], ...]:
+    """Return (product name, solid at its place [mm]) of every solid of a STEP file, in the file's order, unhealed.
+
+    Raises
+    ------
+    PartError : the file is not sound STEP text, see `check_step_text`
+    KernelError : the kernel threw
+    """
+    check_step_text(Path(path))
+    with quiet():
+        return _transfer(Path(path)).solids
+
+
 def refuse_crossings(solid: TopoDS_Solid) -> None:
     """Pass if no two faces of the solid pass through each other by more than the mesh can tell.
 

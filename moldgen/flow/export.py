@@ -1,0 +1,42 @@
+"""Everything that is written of a tool besides manifest and pictures: STEP files and tables."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+from moldgen.flow.record import component_files
+from moldgen.flow.reread import TOOL_FILE, Entry, read_bodies
+from moldgen.kernel.step_write import Looks, StepExport
+from moldgen.model.tool import Tool
+from moldgen.output.palette import ROLES
+from moldgen.output.tables import holes_csv, parts_list_csv
+from moldgen.proof.bodies import ProofBody
+
+CLEAR_ROLES = {"cavity": 0.55}
+"""Share of light that passes a role in the STEP file: one looks through the cavity half at the part."""
+
+
+def export_tool(tool: Tool, folder: Path, schema: str) -> None:
+    """Write the assembly, one STEP file a component, the parts list and the hole table.
+
+    Raises
+    ------
+    KernelError : the kernel cannot translate the solids
+    OSError : a file cannot be written
+    """
+    looks = Looks({role: ink.colour for role, ink in ROLES.items()}, CLEAR_ROLES)
+    files = component_files(tool)
+    export = StepExport(tool.components, looks, schema)
+    export.write_assembly(folder / TOOL_FILE)
+    (folder / "step").mkdir()
+    for component in tool.components:
+        export.write_component(component.name, folder / files[component.name])
+    listed = {name: path.as_posix() for name, path in files.items()}
+    (folder / "parts_list.csv").write_bytes(parts_list_csv(tool, listed).encode())
+    (folder / "holes.csv").write_bytes(holes_csv(tool).encode())
+
+
+def reread_bodies(tool: Tool, folder: Path) -> list[ProofBody]:
+    """Return the tool as the exported assembly holds it, for the proofs."""
+    entries = tuple(Entry(c.name, c.role, c.motion, len(c.positions)) for c in tool.components)
+    return read_bodies(folder / TOOL_FILE, entries)

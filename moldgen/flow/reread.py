@@ -1,0 +1,92 @@
+"""Reading an output folder back: the exported STEP files and what the manifest claims about them."""
+
+from __future__ import annotations
+
+import json
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from moldgen.errors import PartError, SpecError
+from moldgen.flow.folder import MANIFEST, MANIFEST_KEY
+from moldgen.kernel.step_read import read_assembly
+from moldgen.model.tool import Motion, Role
+from moldgen.proof.bodies import ProofBody
+from moldgen.proof.run import Claims
+
+TOOL_FILE = "tool.step"
+
+
+@dataclass(frozen=True)
+class Entry:
+    """One component as the manifest lists it."""
+
+    name: str
+    role: Role
+    motion: Motion
+    count: int
+
+
+@dataclass(frozen=True)
+class Listing:
+    """What the manifest says was exported."""
+
+    title: str
+    entries: tuple[Entry, ...]
+    claims: Claims
+
+
+def read_listing(folder: Path) -> Listing:
+    """Return what the manifest of an output folder says.
+
+    Raises
+    ------
+    SpecError : there is no manifest, or it is none of ours, or it describes no tool
+    """
+    path = folder / MANIFEST
+    try:
+        record: Any = json.loads(path.read_text(encoding="utf-8"))
+    except OSError as error:
+        raise SpecError(f"no {MANIFEST} here: {error.strerror}", where=str(folder), remedy="give a folder that "
+                        "`moldgen build` wrote") from error  # fmt: skip
+    except ValueError as error:
+        raise SpecError(f"{MANIFEST} is damaged: {error}", where=str(path), remedy="build the tool again") from error
+    if not isinstance(record, dict) or MANIFEST_KEY not in record or "components" not in record:
+        raise SpecError("the manifest describes no tool", where=str(path), remedy="build the tool first")
+    try:
+        entries = tuple(
+            Entry(c["name"], Role(c["role"]), Motion(c["moves_with"]), len(c["positions"]))
+            for c in record["components"]
+        )
+        claims = Claims(**{key: float(record["claims"][key]) for key in ("block_mm3", "bored_mm3", "stroke_mm")})
+    except (KeyError, TypeError, ValueError) as error:
+        raise SpecError(f"{MANIFEST} is damaged: {error!r}", where=str(path), remedy="build the tool again") from error
+    return Listing(str(record.get("part", {}).get("name", folder.name)), entries, claims)
+
+
+def read_bodies(file: Path, entries: tuple[Entry, ...]) -> list[ProofBody]:
+    """Return the exported components where they stand, by the order and the names of the manifest.
+
+    Raises
+    ------
+    PartError : the file holds other components than the manifest lists
+    """
+    found = read_assembly(file)
+    wanted = [(e, n) for e in entries for n in range(1, e.count + 1)]
+    if [name for name, _ in found] != [e.name for e, _ in wanted]:
+        raise PartError(
+            f"{file.name} holds {_named(name for name, _ in found)}; the manifest lists "
+            f"{_named(e.name for e, _ in wanted)}",
+            where=str(file),
+            remedy="build the tool again",
+        )
+    return [
+        ProofBody(e.name if e.count == 1 else f"{e.name} {n}", e.role, e.motion, solid)
+        for (e, n), (_, solid) in zip(wanted, found, strict=True)
+    ]
+
+
+def _named(names: Any) -> str:
+    listed = list(names)
+    more = f" and {len(listed) - 12} more" if len(listed) > 12 else ""
+    return f"{len(listed)} components ({', '.join(listed[:12])}{more})"
