@@ -1,0 +1,1 @@
+"""Steel: pins, bores and the feed, cut into the two halves."""
