@@ -78,7 +78,8 @@ def find_core_pins(
     auto = section.pick == "auto"
     seats = [_seat(view, core) for core in cores]
     use = [i for i, seat in enumerate(seats) if i in wanted or (auto and _pays(seat.core))]
-    seats = _neighbours(seats, use)
+    made = [i for i in use if i in wanted or not seats[i].trouble]
+    seats = _neighbours(seats, made)
     pins: list[CorePinLayout] = []
     refused: list[str] = []
     for i in use:

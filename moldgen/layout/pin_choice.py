@@ -8,7 +8,7 @@ from typing import Final
 import numpy as np
 from scipy.spatial import cKDTree
 
-ALIKE: Final = 0.9
+ALIKE: Final = 0.8
 """Share of the places whose mirror image must be as good for a part to count as symmetric."""
 
 ROOM_ALIKE: Final = 0.35

@@ -2,18 +2,23 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, field
+from typing import Final
 
 from moldgen.catalog import Resin
-from moldgen.finding import Notes
+from moldgen.finding import Decision, Notes
 from moldgen.layout.clearances import check_clearances
 from moldgen.layout.core_pins import find_core_pins
-from moldgen.layout.ejection import GivenPin, place_ejector_pins
+from moldgen.layout.ejection import EjectionLayout, GivenPin, place_ejector_pins
 from moldgen.layout.gate import place_gate
 from moldgen.layout.view import PartView
-from moldgen.model.layout import Layout
+from moldgen.model.layout import Chooser, CorePinLayout, Layout
 from moldgen.model.part import Vector
 from moldgen.spec.sections import CorePins, Ejection, Gate
+
+WORTH: Final = 0.8
+"""Core pins yield to ejector pins when that lowers the highest pressure on the part to this share."""
 
 
 @dataclass(frozen=True)
@@ -36,9 +41,31 @@ class Wishes:
 
 def plan_layout(view: PartView, resin: Resin, wishes: Wishes) -> tuple[Layout, Notes]:
     """Return pins and gate of the part that `view` shows."""
-    core_pins, notes = find_core_pins(view, wishes.core_pins, resin, wishes.core_pins_at)
-    ejection, more = place_ejector_pins(view, wishes.ejection, resin, core_pins, wishes.pins, wishes.no_pins)
-    notes += more
+    core_pins, ejection, notes = _pins(view, resin, wishes)
     gate, more = place_gate(view, wishes.gate, resin, wishes.gate_at, wishes.no_gate)
     notes += more + check_clearances(view, core_pins, ejection.pins)
     return Layout(core_pins, ejection.pins, gate, ejection.stroke_mm, ejection.force_n), notes
+
+
+def _pins(view: PartView, resin: Resin, wishes: Wishes) -> tuple[tuple[CorePinLayout, ...], EjectionLayout, Notes]:
+    """Return the pins; where core pins of moldgen's own choice crowd out the ejectors, they stay in the block."""
+    core_pins, notes = find_core_pins(view, wishes.core_pins, resin, wishes.core_pins_at)
+    ejection, more = place_ejector_pins(view, wishes.ejection, resin, core_pins, wishes.pins, wishes.no_pins)
+    pressure = _pressure(ejection)
+    if pressure <= resin.push_pressure or all(p.chosen_by is Chooser.GIVEN for p in core_pins):
+        return core_pins, ejection, notes + more
+    own = wishes.core_pins.model_copy(update={"pick": "none"})
+    fewer, told = find_core_pins(view, own, resin, wishes.core_pins_at)
+    other, other_more = place_ejector_pins(view, wishes.ejection, resin, fewer, wishes.pins, wishes.no_pins)
+    if _pressure(other) > WORTH * pressure:
+        return core_pins, ejection, notes + more
+    why = f"core pins would crowd the ejector pins, which would press on the part with {pressure:.0f} MPa"
+    refused = tuple(f"{p.name} at {p.x:.1f}, {p.y:.1f}" for p in core_pins if p.chosen_by is Chooser.MOLDGEN)
+    decision = Decision("core pins", f"{len(fewer)}, the other round cores stay in the block", why, "", refused)
+    return fewer, other, told + other_more + Notes(decisions=(decision,))
+
+
+def _pressure(ejection: EjectionLayout) -> float:
+    """Return the highest pressure on the part [MPa], infinite when a part that sticks gets no pin."""
+    none = math.inf if ejection.force_n > 0.0 else 0.0
+    return max((pin.pressure_mpa for pin in ejection.pins), default=none)

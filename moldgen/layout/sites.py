@@ -58,15 +58,17 @@ class Disc:
 class Underside:
     """The surface of the part that the core half forms and a pin can push on.
 
-    no_pins : faces of the part that must stay free of pins
+    no_pins : faces of the part that must stay free of pins; steepest : slope up to which a pin pushes [deg]
     """
 
-    def __init__(self, view: PartView, no_pins: frozenset[int] = frozenset()) -> None:
+    def __init__(
+        self, view: PartView, no_pins: frozenset[int] = frozenset(), steepest: float = PIN_SLOPE.default
+    ) -> None:
         self.view = view
         slope = np.degrees(np.arccos(np.clip(-view.normals[:, 2], -1.0, 1.0)))
         marked = np.isin(view.mesh.face, sorted(no_pins))
         self.slope = slope
-        self.pushable: np.ndarray = view.core_side & (slope <= PIN_SLOPE.default) & ~marked
+        self.pushable: np.ndarray = view.core_side & (slope <= steepest) & ~marked
         """(t,) bool"""
 
     @cached_property

@@ -21,6 +21,9 @@ MOSTLY_CORE: Final = 0.5
 SHOWN_CORES: Final = 6
 """Cores that get a line of their own in the calculation sheet, largest force first."""
 
+VENT_PLACES: Final = 6
+"""Places in each hole of a section from which a way out along the pull is looked for."""
+
 SHORTEST_WALL: Final = 0.2
 """mm: lower open walls are not counted."""
 
@@ -158,11 +161,11 @@ class _Rings:
         root = np.full(cut.loops, -1)
         anchor = _anchors(cut)
         below: np.ndarray = np.zeros(0, dtype=int)
-        for layer in range(len(cut.heights)):
+        upward = range(len(cut.heights))
+        for layer in upward if side.sign < 0.0 else reversed(upward):
             own = np.flatnonzero(ring & (cut.loop_layers == layer))
-            held = (
-                cut.inside(anchor[own], layer - 1)[:, below] if layer and len(below) else np.zeros((len(own), 0), bool)
-            )
+            before = int(layer + side.sign)
+            held = cut.inside(anchor[own], before, below)[:, below] if len(below) else np.zeros((len(own), 0), bool)
             for row, loop in enumerate(own):
                 parent = below[held[row]]
                 root[loop] = root[parent[0]] if len(parent) else loop
@@ -171,7 +174,7 @@ class _Rings:
         vents = _through_places(view, cut, np.flatnonzero(hole))
         blind = np.zeros(cut.loops, dtype=bool)
         for foot in roots:
-            blind[foot] = not cut.inside(vents, int(cut.loop_layers[foot]))[:, foot].any()
+            blind[foot] = not cut.inside(vents, int(cut.loop_layers[foot]), np.array([foot]))[:, foot].any()
         wall = cut.mean(view.thickness(_on_segments(cut), view.normals[cut.triangle]))
         draft = cut.mean(side.draft(view, cut.triangle))
         return cls(root, roots, blind, wall, draft)
@@ -206,7 +209,9 @@ def _through_places(view: PartView, cut: Sections, holes: np.ndarray) -> np.ndar
     middle = np.column_stack([cut.mean(cut.middles[:, k]) for k in (0, 1)])
     reach = np.abs(cut.areas) / np.maximum(cut.loop_lengths, 1e-12)
     own = np.flatnonzero(np.isin(cut.loop, holes))
-    own = own[:: max(1, len(own) // 4000)]
+    own = own[np.argsort(cut.loop[own], kind="stable")]
+    turn = np.arange(len(own)) - np.searchsorted(cut.loop[own], cut.loop[own])
+    own = own[turn % np.maximum(np.bincount(cut.loop[own])[cut.loop[own]] // VENT_PLACES, 1) == 0]
     beside = cut.middles[own] + (cut.outward[own] * np.minimum(reach[cut.loop[own]], 1.0)[:, None])
     points = np.vstack([middle[holes], beside])
     loops, layers = np.r_[holes, cut.loop[own]], np.r_[cut.loop_layers[holes], cut.layer[own]]
@@ -215,7 +220,7 @@ def _through_places(view: PartView, cut: Sections, holes: np.ndarray) -> np.ndar
     within = np.zeros(len(points), dtype=bool)
     for layer in np.unique(layers):
         here = np.flatnonzero(layers == layer)
-        within[here] = cut.inside(points[here], int(layer))[np.arange(len(here)), loops[here]]
+        within[here] = cut.inside(points[here], int(layer), loops[here])[np.arange(len(here)), loops[here]]
     return np.asarray(points[within])
 
 

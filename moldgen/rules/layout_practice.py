@@ -24,6 +24,7 @@ CORE_PIN_SLENDER: Final = Practice(
 CORE_PIN_SHALLOW: Final = Practice("length over diameter below which a core is left in the block", 0.25, 0.2, 0.5, "1")
 HEAD_SHOULDER: Final = Practice("least shoulder of a ground pin head, on the radius", 0.5, 0.5, 1.0, "mm")
 PIN_SLOPE: Final = Practice("steepest surface that an ejector pin pushes on", 30.0, 15.0, 45.0, "deg")
+PIN_GENTLE_SLOPE: Final = Practice("slope up to which an ejector pin does not slip", 15.0, 10.0, 20.0, "deg")
 EJECTOR_FEWEST: Final = Practice(
     "fewest ejector pins of one part", 3.0, 2.0, 4.0, "1", "common practice: three points hold a plane"
 )
