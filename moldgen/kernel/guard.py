@@ -206,7 +206,8 @@ def _new_folder(parent: Path, name: str, in_use: set[str]) -> Path:
 
 def _is_ours(error: Exception) -> bool:
     """True for our own errors and mistakes; a missing result (None) handed on to a call is the kernel's doing."""
-    if isinstance(error, TypeError) and "incompatible" in str(error) and "None" in str(error):
+    called_with = str(error).partition("Invoked with:")[2]
+    if isinstance(error, TypeError) and "None" in called_with:
         return False
     return isinstance(error, _OURS)
 

@@ -9,7 +9,7 @@ from OCP.BRepAdaptor import BRepAdaptor_Curve
 from OCP.BRepAlgoAPI import BRepAlgoAPI_Section
 from OCP.gp import gp_Dir, gp_Pln, gp_Pnt
 from OCP.TopExp import TopExp
-from OCP.TopoDS import TopoDS_Edge, TopoDS_Face, TopoDS_Shape
+from OCP.TopoDS import TopoDS_Edge, TopoDS_Face
 from scipy.optimize import brentq
 
 from moldgen.errors import KernelError
@@ -30,8 +30,8 @@ def level_curves(faces: Sequence[TopoDS_Face], level: float) -> list[TopoDS_Edge
     return [e for e in edges_of(section.Shape()) if chord(e) > SHORT_EDGE]
 
 
-def level_points(edge: TopoDS_Edge, level: float) -> list[TopoDS_Shape]:
-    """Return vertices where an edge passes through the plane z = level, its ends excepted."""
+def level_parameters(edge: TopoDS_Edge, level: float) -> list[float]:
+    """Return the curve parameters at which an edge passes through the plane z = level, its ends excepted."""
     curve = BRepAdaptor_Curve(edge)
     parameters = np.linspace(curve.FirstParameter(), curve.LastParameter(), SAMPLES)
 
@@ -43,9 +43,9 @@ def level_points(edge: TopoDS_Edge, level: float) -> list[TopoDS_Shape]:
     found = []
     for i in range(SAMPLES - 1):
         if heights[i] * heights[i + 1] < 0:
-            place = curve.Value(float(brentq(height, parameters[i], parameters[i + 1], xtol=1e-13)))
-            if all(place.Distance(end) > 1e-4 for end in ends):
-                found.append(vertex_at(place.Coord()))
+            t = float(brentq(height, parameters[i], parameters[i + 1], xtol=1e-13))
+            if all(curve.Value(t).Distance(end) > 1e-4 for end in ends):
+                found.append(t)
     return found
 
 

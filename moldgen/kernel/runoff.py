@@ -17,7 +17,7 @@ from OCP.Geom import Geom_SurfaceOfLinearExtrusion
 from OCP.GeomAbs import GeomAbs_Line
 from OCP.gp import gp_Dir
 from OCP.TopExp import TopExp
-from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Shape, TopoDS_Vertex
+from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Vertex
 from scipy.optimize import minimize_scalar
 
 from moldgen.errors import KernelError
@@ -65,8 +65,11 @@ class _Way:
     sense: int
 
 
-def extreme_points(loop: Loop) -> list[tuple[int, TopoDS_Shape]]:
-    """Return (edge number, vertex) where a diagonal extreme of the loop lies inside an edge, which must be split."""
+def extreme_parameters(loop: Loop) -> list[tuple[int, float]]:
+    """Return (edge number, curve parameter) where a diagonal extreme of the loop lies inside an edge.
+
+    The edge must be split there.
+    """
     found = []
     for dx, dy in DIAGONALS:
         reach = [float((edge_points(e, 33)[:, :2] @ (dx, dy)).max()) for e in loop]
@@ -87,7 +90,7 @@ def run_off(loop: Loop, low: np.ndarray, high: np.ndarray) -> RunOff:
     return _Runner(loop, low, high).run()
 
 
-def _furthest(edge: TopoDS_Edge, dx: int, dy: int) -> TopoDS_Shape:
+def _furthest(edge: TopoDS_Edge, dx: int, dy: int) -> float:
     curve = BRepAdaptor_Curve(edge)
     parameters = np.linspace(curve.FirstParameter(), curve.LastParameter(), 33)
 
@@ -97,8 +100,7 @@ def _furthest(edge: TopoDS_Edge, dx: int, dy: int) -> TopoDS_Shape:
 
     best = int(np.argmin([depth(t) for t in parameters]))
     bounds = parameters[max(best - 1, 0)], parameters[min(best + 1, 32)]
-    t = minimize_scalar(depth, bounds=bounds, method="bounded", options={"xatol": 1e-10}).x
-    return vertex_at(curve.Value(float(t)).Coord())
+    return float(minimize_scalar(depth, bounds=bounds, method="bounded", options={"xatol": 1e-10}).x)
 
 
 class _Runner:

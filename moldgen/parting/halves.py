@@ -17,7 +17,7 @@ from moldgen.kernel.shells import solid_from_faces
 from moldgen.kernel.walls import block_outside
 from moldgen.parting.accept import HalvesCheck, check_halves
 from moldgen.parting.level import LevelSearch, find_levels
-from moldgen.parting.refine import split_at_extremes, split_at_level, split_edges_at_level
+from moldgen.parting.refine import split_at_extremes, split_at_level, split_closed_edges, split_edges_at_level
 from moldgen.parting.sides import Sides, assign_sides
 from moldgen.parting.surface import Sheet, make_sheet, outer_loop
 from moldgen.release.contact import vertical_contact
@@ -139,6 +139,9 @@ def _part_at(task: _Task, trial: _Trial) -> Parted:
         cornered = split_at_extremes(state.body, state.loops[state.outer])
         if cornered is not state.body:
             state = _assigned(cornered, level, task.avoid, None)
+    opened = split_closed_edges(state.body, state.loops)
+    if opened is not state.body:
+        state = _assigned(opened, level, task.avoid, None)
     if state.alike and not trial.deep:
         raise KernelError(f"{len(state.alike) + 1} loops run as the outer one does")
     return _halves(state, trial, task.corners)

@@ -7,11 +7,14 @@ from typing import Any
 import numpy as np
 
 from moldgen.kernel.body import Body
-from moldgen.kernel.level_split import level_curves, level_points, upright_lines
-from moldgen.kernel.runoff import extreme_points
+from moldgen.kernel.edge_split import parameter_range, split_edges
+from moldgen.kernel.level_split import level_curves, level_parameters, upright_lines
+from moldgen.kernel.patches import loop_points
+from moldgen.kernel.runoff import extreme_parameters
 from moldgen.kernel.split import split_faces
 from moldgen.parting.level import LevelSearch
 from moldgen.release.kinds import FaceKinds, Kind
+from moldgen.tolerances import ON_PLANE
 
 ABOVE_BELOW = 1e-3
 """mm: a face must reach this far to both sides of the level to be split there."""
@@ -50,19 +53,27 @@ def split_at_level(
 
 def split_at_extremes(body: Body, loop: list[Any]) -> Body:
     """Return the body with a vertex at each diagonal extreme of a loop, where its run-off turns a corner."""
-    tools, touched = [], set()
-    for number, vertex in extreme_points(loop):
-        tools.append(vertex)
-        touched |= {int(f) for f in body.edge_faces[body.edge_index.FindIndex(loop[number]) - 1]}
-    return split_faces(body, sorted(touched), tools) if tools else body
+    places: dict[int, list[float]] = {}
+    for number, parameter in extreme_parameters(loop):
+        places.setdefault(body.edge_index.FindIndex(loop[number]) - 1, []).append(parameter)
+    return split_edges(body, places) if places else body
 
 
 def split_edges_at_level(body: Body, edges: list[int], level: float) -> Body:
     """Return the body with a vertex wherever one of the given edges passes through z = level."""
-    tools, touched = [], set()
-    for number in edges:
-        points = level_points(body.edges[number], level)
-        if points:
-            tools += points
-            touched |= {int(f) for f in body.edge_faces[number]}
-    return split_faces(body, sorted(touched), tools) if tools else body
+    places = {number: level_parameters(body.edges[number], level) for number in edges}
+    places = {number: found for number, found in places.items() if found}
+    return split_edges(body, places) if places else body
+
+
+def split_closed_edges(body: Body, loops: list[list[Any]]) -> Body:
+    """Return the body with two vertices on each closed edge that makes a loop of the parting line which is not flat.
+
+    A curtain under one closed edge would close on itself along a seam, and the kernel copies edges there.
+    """
+    places = {}
+    for loop in loops:
+        if len(loop) == 1 and np.ptp(loop_points(loop, 8)[:, 2]) > ON_PLANE:
+            first, last = parameter_range(loop[0])
+            places[body.edge_index.FindIndex(loop[0]) - 1] = [(2 * first + last) / 3, (first + 2 * last) / 3]
+    return split_edges(body, places) if places else body
