@@ -7,7 +7,7 @@ from typing import Any
 
 from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
-from moldgen.kernel.measure import joint_volume
+from moldgen.kernel.measure import balance
 from moldgen.kernel.meshsolid import MeshSolid, eroded, mesh_solid, overlap_depth
 from moldgen.tolerances import BALANCE, OPEN_OVERLAP
 
@@ -50,26 +50,21 @@ class HalvesCheck:
 
 def check_halves(cavity: Any, core: Any, body: Body, block_volume: float) -> HalvesCheck:
     """Return the figures of two halves of a body whose pull is +z."""
-    balance = balance_of([cavity, core, body.solid], block_volume)
+    gap = balance([cavity, core, body.solid], block_volume, BALANCE)
     try:
         lower_mesh = body.like(core).mesh
         upper, lower = mesh_solid(body.like(cavity).mesh), mesh_solid(lower_mesh)
     except KernelError:
-        return HalvesCheck(balance, NOT_MEASURED, NOT_MEASURED, NOT_MEASURED)
+        return HalvesCheck(gap, NOT_MEASURED, NOT_MEASURED, NOT_MEASURED)
     thin_lower, thin_part = eroded(lower_mesh), eroded(body.mesh)
     if thin_lower is None or thin_part is None:
-        return HalvesCheck(balance, NOT_MEASURED, NOT_MEASURED, NOT_MEASURED)
+        return HalvesCheck(gap, NOT_MEASURED, NOT_MEASURED, NOT_MEASURED)
     static = max(overlap_depth(*p) for p in ((upper, thin_lower), (upper, thin_part), (lower, thin_part)))
     height = float(body.box[1][2] - body.box[0][2])
     ways = (0.1, 1.0, height / 2)
     return HalvesCheck(
-        balance, static, _worst_on_way(upper, thin_part, ways), _worst_on_way(lower, thin_part, tuple(-w for w in ways))
+        gap, static, _worst_on_way(upper, thin_part, ways), _worst_on_way(lower, thin_part, tuple(-w for w in ways))
     )
-
-
-def balance_of(solids: list[Any], block_volume: float) -> float:
-    """Return the relative volume balance of solids that fill a block."""
-    return abs(joint_volume(solids) - block_volume) / block_volume
 
 
 def _worst_on_way(mover: MeshSolid, part: MeshSolid, ways: tuple[float, ...]) -> float:

@@ -6,7 +6,7 @@ from collections.abc import Sequence
 from itertools import combinations
 
 from moldgen.errors import KernelError
-from moldgen.kernel.measure import is_valid, joint_volume
+from moldgen.kernel.measure import balance, is_valid
 from moldgen.kernel.meshsolid import overlap_depth
 from moldgen.model.proof import Proof, Verdict
 from moldgen.model.tool import Role
@@ -38,7 +38,7 @@ def prove_balance(bodies: Sequence[ProofBody], block_mm3: float, bored_mm3: floa
     block_mm3 : volume of the closed block; bored_mm3 : volume removed from the halves for pins and feed
     """
     solids = [b.solid for b in bodies if b.role in IN_BLOCK]
-    missing = abs(joint_volume(solids) + bored_mm3 - block_mm3) / block_mm3
+    missing = balance(solids, block_mm3 - bored_mm3, BALANCE)
     verdict = Verdict.PASSED if missing < BALANCE else Verdict.FAILED
     detail = f"{len(solids)} solids and {bored_mm3:.3f} mm^3 of bores in a block of {block_mm3:.3f} mm^3"
     return Proof("the halves and the part fill the block", verdict, missing, BALANCE, "of the block", detail)
