@@ -174,17 +174,16 @@ def _best_edge(task: _Task, paths: FlowPaths, sites: EdgeSites) -> tuple[int, tu
         near = distance <= max(FAR, float(distance.min()) + FAR)
         pool = np.flatnonzero(near & (sites.troubles == sites.troubles[near].min()))
         choice = int(pool[np.argmin(distance[pool])])
-        flow, end = paths.longest(sites.places[[choice]])
-        return choice, _node(paths, end[0]), float(flow[0])
+        return choice, *_flow_from(paths, sites.places[choice])
     pool = np.flatnonzero(sites.troubles == sites.troubles.min())
     off = np.abs(sites.places[pool][:, :2] - task.view.middle).min(axis=1)
     pool = np.union1d(pool[:: math.ceil(len(pool) / MOST_WEIGHED)], pool[off < 1e-6])
-    flow, end = paths.longest(sites.places[pool] + 0.5 * np.column_stack([sites.inward[pool], np.zeros(len(pool))]))
+    flow, _ = paths.longest(sites.places[pool])
     slant = 1.0 - np.abs(sites.inward[pool]).max(axis=1)
     off = np.abs(sites.places[pool][:, :2] - task.view.middle).min(axis=1) / _size(task.view)
     cost = flow * _thin(task, sites.wall[pool]) * (1.0 + OBLIQUE * slant / (1.0 - math.sqrt(0.5)) + ASIDE * off)
     best = int(np.argmin(np.round(cost, 6)))
-    return int(pool[best]), _node(paths, end[best]), float(flow[best])
+    return int(pool[best]), *_flow_from(paths, sites.places[pool[best]])
 
 
 def _top(task: _Task, paths: FlowPaths, kind: GateKind | None) -> _Found:
@@ -202,7 +201,7 @@ def _top(task: _Task, paths: FlowPaths, kind: GateKind | None) -> _Found:
         up = ~view.core_side[paths.triangle] & (view.normals[paths.triangle, 2] > 0.9)
         sites = find_top_sites(view, np.vstack([view.middle[None], paths.surface[up][:, :2]]), diameter, task.no_gate)
         choice = _best_top(task, paths, sites)
-    flow, end = paths.longest(sites.places[[choice]])
+    end, flow = _flow_from(paths, sites.places[choice])
     spot = tuple(float(v) for v in sites.places[choice])
     wall, height = float(sites.wall[choice]), float(view.high[2]) - spot[2]
     if kind is GateKind.PIN:
@@ -221,11 +220,11 @@ def _top(task: _Task, paths: FlowPaths, kind: GateKind | None) -> _Found:
         runner_length=0.0,
         sprue_foot_diameter=size.foot,
         sprue_taper_deg=SPRUE_TAPER.default,
-        flow_length=float(flow[0]),
+        flow_length=flow,
         chosen_by=task.chooser,
     )
     broken = tuple(text for text, broken in sites.reasons if broken[choice])
-    return _Found(gate, notes, broken, _node(paths, end[0]))
+    return _Found(gate, notes, broken, end)
 
 
 def _best_top(task: _Task, paths: FlowPaths, sites: TopSites) -> int:
@@ -255,9 +254,11 @@ def _thin(task: _Task, wall: np.ndarray) -> np.ndarray:
     return np.asarray(np.sqrt(np.clip(task.view.wall / np.maximum(wall, 1e-3), 0.5, 4.0)))
 
 
-def _node(paths: FlowPaths, number: int) -> tuple[float, float, float]:
-    x, y, z = (float(v) for v in paths.surface[number])
-    return (x, y, z)
+def _flow_from(paths: FlowPaths, place: np.ndarray) -> tuple[tuple[float, float, float], float]:
+    """Return the farthest place of the part and the flow length to it [mm]."""
+    flow, end = paths.longest(place[None], through=8)
+    x, y, z = (float(v) for v in paths.surface[end[0]])
+    return (x, y, z), float(flow[0])
 
 
 def _judged(task: _Task, found: _Found) -> tuple[Finding, ...]:

@@ -43,12 +43,14 @@ class Counts:
     most: int
 
 
-def gather(places: np.ndarray, weights: np.ndarray, diagonal: float) -> tuple[np.ndarray, np.ndarray]:
-    """Return places (n, 2) and weights joined cell by cell of a grid, so that few are left."""
+def gather(
+    places: np.ndarray, weights: np.ndarray, diagonal: float, middle: np.ndarray
+) -> tuple[np.ndarray, np.ndarray]:
+    """Return places (n, 2) and weights joined cell by cell of a grid about `middle`, so that few are left."""
     if len(places) == 0:
         return places, weights
     cell = max(diagonal / 20.0, 0.5)
-    _, number = np.unique(np.round(places / cell).astype(int), axis=0, return_inverse=True)
+    _, number = np.unique(np.round((places - middle) / cell).astype(int), axis=0, return_inverse=True)
     number = number.ravel()
     total = np.bincount(number, weights)
     x, y = (np.bincount(number, weights * places[:, k]) / np.maximum(total, 1e-30) for k in (0, 1))

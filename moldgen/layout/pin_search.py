@@ -98,7 +98,7 @@ def _load(task: Task) -> Load:
     places = np.vstack([sticking.places, view.centres[floor][:, :2]])
     weights = np.r_[sticking.forces, weight * area / max(float(area.sum()), 1e-30)]
     centre = sticking.centre if sticking.force > 0.0 else (places * weights[:, None]).sum(axis=0) / weights.sum()
-    return Load(*gather(places, weights, diagonal), centre, diagonal)
+    return Load(*gather(places, weights, diagonal, view.middle), centre, diagonal)
 
 
 def search_pins(task: Task, kept: list[Place]) -> tuple[list[Place], Notes]:
