@@ -34,7 +34,8 @@ from moldgen.proof.run import Claims, prove_tool
 from moldgen.release.kinds import face_kinds
 from moldgen.release.trapped import trapped_volume
 from moldgen.spec.load import LoadedSpec
-from moldgen.steel.tool import make_tool
+from moldgen.steel.bored import Materials
+from moldgen.steel.make import make_tool
 
 
 @dataclass(frozen=True)
@@ -68,7 +69,7 @@ def build_tool(loaded: LoadedSpec, folder: Path, options: Options, tell: Tell) -
         tool, bored, more = make_tool(halves, layout, _materials(reviewed))
         notes += more
         stage.detail = f"{len(tool.components)} components"
-    claims = Claims(float(np.prod(halves.high - halves.low)), bored.volume_mm3, layout.stroke_mm)
+    claims = Claims(float(np.prod(halves.high - halves.low)), bored.total_mm3, layout.stroke_mm)
     built = Built(reviewed, halves, layout, tool, claims, reviewed.notes + notes)
     with tell.stage("export") as stage:
         export_tool(tool, folder, loaded.spec.output.step)
@@ -140,9 +141,13 @@ def _mold_level(reviewed: Reviewed, height: float) -> float:
     return reviewed.frame.to_mold((x, y, z))[2]
 
 
-def _materials(reviewed: Reviewed) -> tuple[str, str, str]:
+def _materials(reviewed: Reviewed) -> Materials:
     blocks = reviewed.loaded.spec.blocks
-    return blocks.cavity_material or blocks.material, blocks.core_material or blocks.material, reviewed.resin.name
+    return Materials(
+        part=reviewed.resin.name,
+        cavity=blocks.cavity_material or blocks.material,
+        core=blocks.core_material or blocks.material,
+    )
 
 
 def _prove_and_record(built: Built, folder: Path, options: Options, tell: Tell) -> JobResult:
@@ -155,12 +160,12 @@ def _prove_and_record(built: Built, folder: Path, options: Options, tell: Tell) 
         notes = built.notes + Notes(proof_findings(proofs))
         if pictures is not None:
             with tell.stage("draw the pictures") as stage:
-                notes += Notes(_missing(pictures))
-                stage.detail = "done" if not notes.findings or notes.findings[-1].code != "pictures.missing" else "none"
-    except BaseException:
+                missing = _missing(pictures)
+                notes += Notes(missing)
+                stage.detail = "none: see the findings" if missing else "done"
+    finally:
         if pictures is not None:
             pictures.stop()
-        raise
     record = _record(built, notes, proofs)
     (folder / MANIFEST).write_text(to_json(record), encoding="utf-8")
     return _result(built, notes, proofs)
@@ -171,7 +176,7 @@ def _start_pictures(built: Built, folder: Path, options: Options) -> PictureJob 
         return None
     reviewed = built.reviewed
     pull = ", ".join(f"{v + 0.0:g}" for v in reviewed.pull.direction)
-    title = (reviewed.part.name, reviewed.resin.name, f"pull {pull}")
+    title = (reviewed.part.name, reviewed.resin.name, pull)
     scene = tool_scene(built.tool, built.halves, title, built.layout.gate.at, built.layout.stroke_mm)
     (folder / "pictures").mkdir()
     return start_pictures(scene, folder / "pictures")

@@ -31,4 +31,3 @@ def starter_spec(part: Path, output: Path, resin: str, tell: Tell) -> tuple[str,
     text = starter(Path(beside).as_posix(), folder_name(part.stem), resin or "ABS", facts=facts)
     headline = f"a spec to start from: edit it, then run `moldgen build {output}`"
     return text, JobResult(ExitCode.OK, headline)
-

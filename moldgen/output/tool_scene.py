@@ -23,7 +23,7 @@ def tool_scene(tool: Tool, halves: Halves, title: tuple[str, str, str], gate: Ve
     depth = float(halves.high[2] - halves.low[2])
     part_height = float(np.ptp(halves.body.mesh.vertices[:, 2]))
     lift = {
-        Motion.CAVITY_HALF: max(0.8 * depth, 2.5 * part_height + stroke),
+        Motion.CAVITY_HALF: max(1.1 * depth, 2.5 * part_height + stroke),
         Motion.CORE_HALF: 0.0,
         Motion.EJECTOR: 0.5 * stroke,
         Motion.PART: 0.5 * stroke,
