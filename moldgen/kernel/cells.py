@@ -14,7 +14,7 @@ from OCP.TopoDS import TopoDS_Shape
 from moldgen.errors import KernelError
 from moldgen.kernel.guard import operation
 from moldgen.kernel.measure import volume
-from moldgen.kernel.topology import compound_of, shape_list, solids_of
+from moldgen.kernel.topology import compound_of, faces_of, same_order, shape_list, solids_of
 
 
 @dataclass(frozen=True)
@@ -47,12 +47,17 @@ def take_out(solid: TopoDS_Shape, tools: Sequence[TopoDS_Shape], name: str) -> C
     return Cells(rest, plugs)
 
 
-def lost_volume(before: TopoDS_Shape, cells: Sequence[TopoDS_Shape]) -> float:
-    """Return the volume [mm^3] by which solids fail to make up the solid that they were cut from.
+def lost_volume(before: TopoDS_Shape, rest: TopoDS_Shape, plugs: Sequence[TopoDS_Shape]) -> float:
+    """Return the volume [mm^3] by which what is left and what was taken out fail to make up the solid again.
 
-    All are integrated about one point, so that the errors on the walls that they share cancel.
+    Only faces that `before` and `rest` do not share are integrated, all about one point: the rest cancels.
     """
-    return abs(volume(compound_of([before.Reversed(), *cells])))
+    old, new = faces_of(before), faces_of(rest)
+    gone, come = (
+        [f for f in faces if others.FindIndex(f) == 0]
+        for faces, others in ((old, same_order(new)), (new, same_order(old)))
+    )
+    return abs(volume(compound_of([*(f.Reversed() for f in gone), *come, *plugs])))
 
 
 def _chosen(

@@ -19,6 +19,9 @@ from moldgen.kernel.guard import operation
 from moldgen.kernel.measure import is_valid, volume
 from moldgen.kernel.topology import only_solid
 
+SLACK = 1e-6
+"""Relative error of volumes that is none: pieces of real parts carry curves that are good to that."""
+
 
 @dataclass(frozen=True)
 class Profile:
@@ -72,10 +75,10 @@ class Profile:
         return cap + h * (u + foot)
 
 
-def channel(start: np.ndarray, end: np.ndarray, profile: Profile) -> list[TopoDS_Shape]:
-    """Return a straight channel between two points (3,) on one level of the parting surface, with round ends there.
+def channel(start: np.ndarray, end: np.ndarray, profile: Profile, *, round_start: bool) -> list[TopoDS_Shape]:
+    """Return a straight channel between two points (3,) on one level of the parting surface, its far end round.
 
-    It comes in three pieces that share their end faces: joining everything in one go is twice as fast (measured).
+    It comes in pieces that share their end faces: joining everything in one go is twice as fast (measured).
     """
     along = end - start
     way = along / np.linalg.norm(along)
@@ -83,7 +86,8 @@ def channel(start: np.ndarray, end: np.ndarray, profile: Profile) -> list[TopoDS
     with operation("build a runner"):
         middle = BRepPrimAPI_MakePrism(profile.face(start, side, whole=True), gp_Vec(*along)).Shape()
         # turned by half about the upright axis, a half section sweeps the side that lies beyond the end of the way
-        ends = [_turned(profile.face(at, s, whole=False), at) for at, s in ((start, -side), (end, side))]
+        places = [(start, -side), (end, side)] if round_start else [(end, side)]
+        ends = [_turned(profile.face(at, s, whole=False), at) for at, s in places]
     return [middle, *ends]
 
 
@@ -110,7 +114,7 @@ def joined(solids: list[TopoDS_Shape], name: str) -> TopoDS_Shape:
         raise KernelError(f"{name}: {len(solids)} pieces join to {len(found)} solids, expected one")
     result = found[0]
     sizes = [volume(s) for s in solids]
-    if not is_valid(result) or not max(sizes) * (1 - 1e-9) <= volume(result) <= sum(sizes) * (1 + 1e-9):
+    if not is_valid(result) or not max(sizes) * (1 - SLACK) <= volume(result) <= sum(sizes) * (1 + SLACK):
         raise KernelError(f"{name}: the union of {len(solids)} pieces is not sound")
     return result
 

@@ -21,7 +21,7 @@ from OCP.TopoDS import TopoDS, TopoDS_Face, TopoDS_Shape, TopoDS_Wire
 from moldgen.errors import KernelError
 from moldgen.kernel.build import plane_face, plane_through, point, wire_of
 from moldgen.kernel.guard import operation
-from moldgen.kernel.measure import area, volume
+from moldgen.kernel.measure import area
 from moldgen.kernel.merge import merged_faces
 from moldgen.kernel.shells import solid_from_faces
 from moldgen.kernel.topology import edge_points, edges_of, faces_of, only_solid, vertex_point, vertices_of
@@ -87,18 +87,16 @@ def pin_on_plug(plug: TopoDS_Shape, axis: Place, below: Below) -> TopoDS_Shape:
         return merged_faces(made.solid)
 
 
-def upper_volume(plug: TopoDS_Shape, fit_low: float) -> float:
-    """Return the volume of a plug above the lower end of its fit [mm^3].
+def faces_below(plug: TopoDS_Shape, fit_low: float) -> int:
+    """Return how many faces of a plug lie below the lower end of its fit.
 
     Raises
     ------
     KernelError : the bore breaks through the core's surface beside the fit
     """
     upper = _upper_faces(plug, fit_low)
-    closed = solid_from_faces([*upper, _disc(_rim(upper, fit_low), fit_low)])
-    if closed.complaint:
-        raise KernelError(f"what the bore takes out does not close: {closed.complaint}")
-    return volume(closed.solid)
+    _rim(upper, fit_low)
+    return len(faces_of(plug)) - len(upper)
 
 
 def alike(one: TopoDS_Shape, one_at: Vector, other: TopoDS_Shape, other_at: Vector) -> bool:

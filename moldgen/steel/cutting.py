@@ -10,7 +10,6 @@ from moldgen.errors import KernelError
 from moldgen.kernel.boolean import copied
 from moldgen.kernel.cells import lost_volume, take_out
 from moldgen.kernel.measure import is_valid, volume
-from moldgen.tolerances import BALANCE
 
 TURNS = (0.0, 37.0, 101.0)
 """deg: where the seams of round tools look when a bore is tried again: a seam along an edge is what fails most."""
@@ -111,7 +110,6 @@ def _judge(wanted: Wanted, plug: Any) -> None:
 
 def _balance(before: Any, after: Any, plugs: Sequence[Any], name: str) -> None:
     """What is left and what was taken out must make the half again."""
-    missing = lost_volume(before, [after, *plugs])
-    limit = max(LOST * min(volume(p) for p in plugs), BALANCE * volume(before))
+    missing, limit = lost_volume(before, after, plugs), LOST * min(volume(p) for p in plugs)
     if missing > limit:
         raise KernelError(f"{missing:.3f} mm^3 of the {name} are lost or doubled, limit {limit:.3f} mm^3")

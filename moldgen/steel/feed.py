@@ -57,8 +57,16 @@ class Feed:
     notes: Notes
 
 
-def make_feed(halves: Halves, gate: GateLayout, ground: Ground) -> Feed:
-    """Return the feed of the one gate.
+@dataclass(frozen=True)
+class _Task:
+    halves: Halves
+    gate: GateLayout
+    ground: Ground
+    seam: float
+
+
+def make_feed(halves: Halves, gate: GateLayout, ground: Ground, seam: float = 0.0) -> Feed:
+    """Return the feed of the one gate; the seams of round solids look to `seam` [deg] from +x.
 
     Raises
     ------
@@ -66,22 +74,25 @@ def make_feed(halves: Halves, gate: GateLayout, ground: Ground) -> Feed:
     KernelError : its pieces do not join
     """
     makers = {GateKind.EDGE: _edge, GateKind.PIN: _pin, GateKind.SPRUE: _direct}
-    return makers[gate.kind](halves, gate, ground)
+    return makers[gate.kind](_Task(halves, gate, ground, seam))
 
 
-def _edge(halves: Halves, gate: GateLayout, ground: Ground) -> Feed:
+def _edge(task: _Task) -> Feed:
+    gate = task.gate
     at, inward = np.array(gate.at), np.array([gate.inward[0], gate.inward[1], 0.0])
     inward = inward / np.linalg.norm(inward)
-    profile = Profile(gate.runner_diameter, FLANK, gate.runner_diameter, gate.in_cavity)
+    profile = Profile(gate.runner_diameter, FLANK, gate.runner_diameter, bool(gate.in_cavity))
     near = at - (gate.land + profile.half_width) * inward
     far = at - (gate.land + gate.runner_length) * inward
-    reach, notes = _reach(gate, ground, near, inward)
+    reach, notes = _reach(gate, task.ground, near, inward)
     sign = 1.0 if gate.in_cavity else -1.0
     heights = sorted((at[2] - sign * profile.skirt, at[2] + sign * gate.depth))
     back = near if gate.runner_length > profile.half_width + OVERRUN else far
     land = slot(back, at + reach * inward, gate.width, (heights[0], heights[1]))
-    pieces = [land] if back is far else [land, *channel(far, near, profile)]
-    sprue, hole = _sprue(halves, (float(far[0]), float(far[1])), float(at[2]), gate)
+    # the foot of the sprue hides the runner's end where it is wider and in the same half
+    hidden = gate.in_cavity and gate.sprue_foot_diameter >= 2 * profile.half_width
+    pieces = [land] if back is far else [land, *channel(far, near, profile, round_start=not hidden)]
+    sprue, hole = _sprue(task, (float(far[0]), float(far[1])), float(at[2]))
     half = "cavity" if gate.in_cavity else "core"
     if gate.in_cavity:
         in_cavity, in_core = joined([*pieces, sprue], "join the feed"), None
@@ -94,18 +105,20 @@ def _edge(halves: Halves, gate: GateLayout, ground: Ground) -> Feed:
     return Feed(in_cavity, in_core, Motion.PART, (hole,), note, notes)
 
 
-def _direct(halves: Halves, gate: GateLayout, ground: Ground) -> Feed:
+def _direct(task: _Task) -> Feed:
+    gate = task.gate
     x, y, z = gate.at
-    foot, notes = _foot(gate, ground, gate.diameter)
-    sprue, hole = _sprue(halves, (x, y), z, gate, foot)
+    foot, notes = _foot(gate, task.ground, gate.diameter)
+    sprue, hole = _sprue(task, (x, y), z, foot)
     note = f"sprue gate, {gate.diameter:g} mm at the part"
     return Feed(sprue, None, Motion.PART, (hole,), note, notes)
 
 
-def _pin(halves: Halves, gate: GateLayout, ground: Ground) -> Feed:
+def _pin(task: _Task) -> Feed:
+    gate = task.gate
     x, y, z = gate.at
-    foot, notes = _foot(gate, ground, gate.diameter)
-    radius, high = gate.diameter / 2, float(halves.high[2])
+    foot, notes = _foot(gate, task.ground, gate.diameter)
+    radius, high = gate.diameter / 2, float(task.halves.high[2])
     slope, start = math.tan(math.radians(gate.sprue_taper_deg)), z + gate.land
     if start >= high:
         raise PartError(
@@ -126,15 +139,13 @@ def _pin(halves: Halves, gate: GateLayout, ground: Ground) -> Feed:
         "cavity plate: a third plate or a hot nozzle, not laid out",
     )
     note = f"pin gate {gate.diameter:g} mm, land {gate.land:g} mm"
-    return Feed(
-        turned_solid((x, y), outline), None, Motion.CAVITY_HALF, holes, note, notes + Notes(decisions=(decision,))
-    )
+    notes += Notes(decisions=(decision,))
+    return Feed(turned_solid((x, y), outline, task.seam), None, Motion.CAVITY_HALF, holes, note, notes)
 
 
-def _sprue(
-    halves: Halves, axis: tuple[float, float], level: float, gate: GateLayout, foot: float | None = None
-) -> tuple[Any, Hole]:
+def _sprue(task: _Task, axis: tuple[float, float], level: float, foot: float | None = None) -> tuple[Any, Hole]:
     """Return the cone that is narrowest at the top of the block; `foot` is where its tool ends below `level` [mm]."""
+    gate, halves = task.gate, task.halves
     high, slope = float(halves.high[2]), math.tan(math.radians(gate.sprue_taper_deg))
     diameter = gate.sprue_foot_diameter if gate.kind is GateKind.EDGE else gate.diameter
     top = diameter / 2 - (high - level) * slope
@@ -164,7 +175,7 @@ def _sprue(
         diameter,
         f"tapered to {2 * top:.2f} mm, {gate.sprue_taper_deg:g} deg per side",
     )
-    return turned_solid(axis, outline), hole
+    return turned_solid(axis, outline, task.seam), hole
 
 
 def _reach(gate: GateLayout, ground: Ground, near: np.ndarray, inward: np.ndarray) -> tuple[float, Notes]:

@@ -38,7 +38,7 @@ class Ground:
     def under_ring(self, x: float, y: float, radius: float) -> np.ndarray:
         """Return the height of the core's surface on a circle's line, where there is part over it, (k,)."""
         found = self.under(_circle(x, y, radius))
-        return found[np.isfinite(found)]
+        return np.asarray(found[np.isfinite(found)])
 
     def under(self, places: Sequence[tuple[float, float]]) -> np.ndarray:
         """Return the height of the first surface met from below over each place, inf where there is none, (k,)."""
