@@ -34,8 +34,11 @@ OVERRUN = 1.0
 INTO = 0.1
 """mm: how far a gate's tool reaches past the deepest place of the part's surface across the gate."""
 
-DEEPEST = 5.0
-"""mm: a surface that falls back further than this across the gate is not the wall that the gate feeds."""
+STEP_BACK = 0.5
+"""mm: where the surface across a gate's mouth falls back by more at once, what lies behind is not the wall it feeds."""
+
+FAR = 5.0
+"""mm: a surface further than this from the gate is another one."""
 
 PLACES = 7
 """Rays across and up an edge gate, each."""
@@ -187,18 +190,30 @@ def _reach(gate: GateLayout, ground: Ground, near: np.ndarray, inward: np.ndarra
     origins = near + across.reshape(-1, 1) * side + up.reshape(-1, 1) * np.array([0.0, 0.0, 1.0])
     start = float(np.dot(np.array(gate.at) - near, inward))
     behind = ground.ahead(origins, inward) - start
-    met = np.isfinite(behind) & (np.abs(behind) < DEEPEST)
-    notes = _open_mouth(gate, float(met.mean()), "edge gate")
-    return float(behind[met].max()) + INTO, notes
+    back, share = _wall(behind)
+    return back + INTO, _open_mouth(gate, share, "edge gate")
 
 
 def _foot(gate: GateLayout, ground: Ground, diameter: float) -> tuple[float, Notes]:
     """Return the height where the tool of a gate from above ends: below the part's surface under its whole mouth."""
     x, y, z = gate.at
-    heights = ground.over_circle(x, y, diameter / 2 * 0.98)
-    met = np.isfinite(heights) & (np.abs(heights - z) < DEEPEST)
-    notes = _open_mouth(gate, float(met.mean()), f"{gate.kind.value} gate")
-    return float(heights[met].min()) - INTO, notes
+    back, share = _wall(z - ground.over_circle(x, y, diameter / 2 * 0.98))
+    return z - back - INTO, _open_mouth(gate, share, f"{gate.kind.value} gate")
+
+
+def _wall(behind: np.ndarray) -> tuple[float, float]:
+    """Return how far behind the gate its wall goes back [mm], and the share of the mouth that lies on it.
+
+    behind : distance from the gate to the surface at places across the mouth, inf where there is none, (k,) [mm]
+    """
+    found = np.sort(behind[np.isfinite(behind)])
+    found = found[np.abs(found) < FAR]
+    if len(found) == 0:
+        return 0.0, 0.0
+    steps = np.flatnonzero(np.diff(found) > STEP_BACK)
+    # the wall is the group of places nearest to the gate itself
+    group = min(np.split(found, steps + 1), key=lambda g: float(np.abs(g).min()))
+    return float(group.max()), len(group) / len(behind)
 
 
 def _open_mouth(gate: GateLayout, share: float, name: str) -> Notes:
