@@ -57,8 +57,8 @@ def joint_volume_fine(shapes: Sequence[TopoDS_Shape], relative: float = 1e-9) ->
 
 def balance(shapes: Sequence[TopoDS_Shape], expected: float, limit: float) -> float:
     """Return |sum of volumes - expected| / expected of solids that fill a block, by the cheapest way below `limit`."""
-    quick = abs(joint_volume(shapes) - expected) / expected
-    return quick if quick < limit else min(quick, abs(joint_volume_fine(shapes) - expected) / expected)
+    quick = abs((joint_volume(shapes) - expected) / expected)
+    return quick if quick < limit else min(quick, abs((joint_volume_fine(shapes) - expected) / expected))
 
 
 def volume_adaptive(shape: TopoDS_Shape, relative: float = 1e-9) -> float:
