@@ -17,18 +17,20 @@ from moldgen.release.kinds import face_kinds
 from moldgen.release.sweep import sweep_faces
 from moldgen.tolerances import EROSION, OPEN_OVERLAP, SMALL_VOLUME
 
+CAVITY_OPENS = "the cavity half opens"
+PART_LEAVES = "the part leaves the core"
+EJECTORS_MOVE = "the ejectors move through their stroke"
+
 
 def prove_cavity_half(bodies: Sequence[ProofBody]) -> Proof:
     """The cavity half leaves part and core half along the pull without touching them."""
-    return _prove_way(
-        "the cavity half opens", _moving(bodies, Motion.CAVITY_HALF), _others(bodies, Motion.CAVITY_HALF), None
-    )
+    return _prove_way(CAVITY_OPENS, _moving(bodies, Motion.CAVITY_HALF), _others(bodies, Motion.CAVITY_HALF), None)
 
 
 def prove_core_half(bodies: Sequence[ProofBody]) -> Proof:
     """The part leaves the core half along the pull: the way of the core half, seen from the part, is free."""
     movers = _moving(bodies, Motion.CORE_HALF)
-    return _prove_way("the part leaves the core", movers, _moving(bodies, Motion.PART), None, up=False)
+    return _prove_way(PART_LEAVES, movers, _moving(bodies, Motion.PART), None, up=False)
 
 
 def prove_ejection(bodies: Sequence[ProofBody], stroke: float) -> Proof:
@@ -36,16 +38,21 @@ def prove_ejection(bodies: Sequence[ProofBody], stroke: float) -> Proof:
 
     That they do not run into the part is the proof at rest: both move together.
     """
-    name = "the ejectors move through their stroke"
-    movers = _moving(bodies, Motion.EJECTOR)
-    if not movers:
-        return Proof(name, Verdict.NOT_RUN, None, OPEN_OVERLAP, "mm", "the tool has no ejectors")
-    return _prove_way(name, movers, _moving(bodies, Motion.CORE_HALF), stroke)
+    if not stroke > 0.0:
+        return not_run(EJECTORS_MOVE, f"a stroke of {stroke:g} mm ejects nothing")
+    return _prove_way(EJECTORS_MOVE, _moving(bodies, Motion.EJECTOR), _moving(bodies, Motion.CORE_HALF), stroke)
+
+
+def not_run(name: str, why: str) -> Proof:
+    """Return what a question about an overlap reads that could not be asked."""
+    return Proof(name, Verdict.NOT_RUN, None, OPEN_OVERLAP, "mm", why)
 
 
 def _prove_way(
     name: str, movers: Sequence[ProofBody], standing: Sequence[ProofBody], way: float | None, *, up: bool = True
 ) -> Proof:
+    if not movers or not standing:
+        return not_run(name, f"the tool has nothing that {'stands still' if movers else 'moves'} in this step")
     worst, pair = 0.0, ""
     for mover in movers:
         swept = _way_of(mover, way, up=up)

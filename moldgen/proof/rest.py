@@ -8,6 +8,7 @@ from itertools import combinations
 from moldgen.errors import KernelError
 from moldgen.kernel.measure import balance, is_valid
 from moldgen.kernel.meshsolid import overlap_depth
+from moldgen.kernel.topology import solids_of
 from moldgen.model.proof import Proof, Verdict
 from moldgen.model.tool import Role
 from moldgen.proof.bodies import ProofBody
@@ -17,19 +18,31 @@ IN_BLOCK = (Role.PART, Role.CAVITY, Role.CORE)
 """What fills the block before anything is bored."""
 
 
+SOUND = "every component is a sound solid"
+FILLED = "the halves and the part fill the block"
+APART = "nothing overlaps in the closed tool"
+
+
 def prove_sound(bodies: Sequence[ProofBody]) -> Proof:
-    """Every solid is valid for the kernel and its mesh closes."""
-    bad = []
-    for body in bodies:
-        if not is_valid(body.solid):
-            bad.append(f"{body.name}: the kernel calls it invalid")
-            continue
-        try:
-            body.mesh  # noqa: B018  meshing is the test
-        except KernelError as error:
-            bad.append(f"{body.name}: {error.what}")
+    """Every component is one solid, valid for the kernel, whose mesh closes and looks outward."""
+    bad = [f"{body.name}: {fault}" for body in bodies if (fault := _fault(body))]
+    if not bodies:
+        bad.append("there is no component")
     verdict = Verdict.FAILED if bad else Verdict.PASSED
-    return Proof("every component is a sound solid", verdict, float(len(bad)), 0.0, "faults", "; ".join(bad))
+    return Proof(SOUND, verdict, float(len(bad)), 0.0, "faults", "; ".join(bad))
+
+
+def _fault(body: ProofBody) -> str:
+    count = len(solids_of(body.solid))
+    if count != 1:
+        return f"{count} solids instead of one"
+    if not is_valid(body.solid):
+        return "the kernel calls it invalid"
+    try:
+        # overlaps with a solid turned inside out would come out empty, and pass
+        return "" if body.mesh.volume() > 0.0 else "it is inside out"
+    except KernelError as error:
+        return error.what
 
 
 def prove_balance(bodies: Sequence[ProofBody], block_mm3: float, bored_mm3: float) -> Proof:
@@ -41,7 +54,7 @@ def prove_balance(bodies: Sequence[ProofBody], block_mm3: float, bored_mm3: floa
     missing = balance(solids, block_mm3 - bored_mm3, BALANCE)
     verdict = Verdict.PASSED if missing < BALANCE else Verdict.FAILED
     detail = f"{len(solids)} solids and {bored_mm3:.3f} mm^3 of bores in a block of {block_mm3:.3f} mm^3"
-    return Proof("the halves and the part fill the block", verdict, missing, BALANCE, "of the block", detail)
+    return Proof(FILLED, verdict, missing, BALANCE, "of the block", detail)
 
 
 def prove_rest(bodies: Sequence[ProofBody]) -> Proof:
@@ -53,4 +66,4 @@ def prove_rest(bodies: Sequence[ProofBody]) -> Proof:
             if overlap > worst:
                 worst, pair = overlap, f"{one.name} and {other.name}"
     verdict = Verdict.PASSED if worst < OPEN_OVERLAP else Verdict.FAILED
-    return Proof("nothing overlaps in the closed tool", verdict, worst, OPEN_OVERLAP, "mm", pair)
+    return Proof(APART, verdict, worst, OPEN_OVERLAP, "mm", pair)

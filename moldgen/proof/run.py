@@ -3,13 +3,23 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from moldgen.errors import KernelError
+from moldgen.kernel.guard import operation
 from moldgen.model.proof import Proof, Verdict
 from moldgen.proof.bodies import ProofBody
-from moldgen.proof.opening import prove_cavity_half, prove_core_half, prove_ejection
-from moldgen.proof.rest import prove_balance, prove_rest, prove_sound
+from moldgen.proof.opening import (
+    CAVITY_OPENS,
+    EJECTORS_MOVE,
+    PART_LEAVES,
+    not_run,
+    prove_cavity_half,
+    prove_core_half,
+    prove_ejection,
+)
+from moldgen.proof.rest import APART, FILLED, SOUND, prove_balance, prove_rest, prove_sound
+from moldgen.tolerances import BALANCE
 
 
 @dataclass(frozen=True)
@@ -23,17 +33,23 @@ class Claims:
 
 def prove_tool(bodies: Sequence[ProofBody], claims: Claims) -> tuple[Proof, ...]:
     """Return every proof; one that could not run says why and does not count as passed."""
-    sound = prove_sound(bodies)
-    proofs = [sound, prove_balance(bodies, claims.block_mm3, claims.bored_mm3)]
-    later: list[tuple[str, Callable[[], Proof]]] = [
-        ("nothing overlaps in the closed tool", lambda: prove_rest(bodies)),
-        ("the cavity half opens", lambda: prove_cavity_half(bodies)),
-        ("the part leaves the core", lambda: prove_core_half(bodies)),
-        ("the ejectors move through their stroke", lambda: prove_ejection(bodies, claims.stroke_mm)),
-    ]
-    for name, run in later:
-        try:
-            proofs.append(run())
-        except KernelError as error:
-            proofs.append(Proof(name, Verdict.NOT_RUN, None, 0.0, "mm", error.what))
-    return tuple(proofs)
+    return (
+        _asked(Proof(SOUND, Verdict.NOT_RUN, None, 0.0, "faults"), lambda: prove_sound(bodies)),
+        _asked(
+            Proof(FILLED, Verdict.NOT_RUN, None, BALANCE, "of the block"),
+            lambda: prove_balance(bodies, claims.block_mm3, claims.bored_mm3),
+        ),
+        _asked(not_run(APART, ""), lambda: prove_rest(bodies)),
+        _asked(not_run(CAVITY_OPENS, ""), lambda: prove_cavity_half(bodies)),
+        _asked(not_run(PART_LEAVES, ""), lambda: prove_core_half(bodies)),
+        _asked(not_run(EJECTORS_MOVE, ""), lambda: prove_ejection(bodies, claims.stroke_mm)),
+    )
+
+
+def _asked(unanswered: Proof, ask: Callable[[], Proof]) -> Proof:
+    """Return the answer, or why there is none: a kernel that gives up on one question must not hide the others."""
+    try:
+        with operation(f"prove that {unanswered.name}"):
+            return ask()
+    except KernelError as error:
+        return replace(unanswered, detail=error.what)
