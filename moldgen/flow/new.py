@@ -27,7 +27,7 @@ def starter_spec(part: Path, output: Path, resin: str, tell: Tell) -> tuple[str,
         size = " x ".join(f"{b - a:.2f}" for a, b in zip(low, high, strict=True))
         stage.detail = f"{size} mm"
     facts = (f"{size} mm, {read.volume_mm3 / 1000:.3f} cm3", f"{read.schema}, drawn in {read.unit}")
-    beside = os.path.relpath(part, output.parent or Path())
+    beside = os.path.relpath(os.fspath(part), os.fspath(output.parent))
     text = starter(Path(beside).as_posix(), folder_name(part.stem), resin or "ABS", facts=facts)
     headline = f"a spec to start from: edit it, then run `moldgen build {output}`"
     return text, JobResult(ExitCode.OK, headline)

@@ -9,6 +9,7 @@ from moldgen.finding import Finding, Severity
 from moldgen.flow.job import JobResult, verdict_code
 from moldgen.flow.reread import TOOL_FILE, read_bodies, read_listing
 from moldgen.flow.tell import Tell
+from moldgen.model.proof import Proof
 from moldgen.proof.run import prove_tool
 
 
@@ -38,7 +39,7 @@ def prove_folder(folder: Path, tell: Tell) -> JobResult:
     )
 
 
-def proof_findings(proofs: tuple) -> tuple[Finding, ...]:  # type: ignore[type-arg]
+def proof_findings(proofs: tuple[Proof, ...]) -> tuple[Finding, ...]:
     """Return a failure for each proof that did not pass."""
     return tuple(
         Finding(

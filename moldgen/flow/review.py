@@ -139,7 +139,8 @@ def _normal_at(loaded: LoadedSpec, part: Part, point: Vector) -> Vector:
     number, distance = body.nearest_face(np.asarray(point))
     if body.surface_kind(number) != "plane":
         raise PartError(
-            f"the face nearest to {_listed(point)}, {distance:.3g} mm away, is no plane but a {body.surface_kind(number)}",
+            f"the face nearest to {_listed(point)}, {distance:.3g} mm away, is no plane but a "
+            f"{body.surface_kind(number)}",
             where=loaded.locate("pull"),
             remedy="give a point on a flat face, or a direction",
         )

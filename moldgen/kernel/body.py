@@ -115,7 +115,7 @@ class Body:
     @cached_property
     def edge_lengths(self) -> np.ndarray:
         """Length of each edge's chord polygon [mm]."""
-        return np.linalg.norm(np.diff(self.edge_points, axis=1), axis=2).sum(axis=1)
+        return np.asarray(np.linalg.norm(np.diff(self.edge_points, axis=1), axis=2).sum(axis=1))
 
     @cached_property
     def edges_at_face(self) -> list[list[int]]:

@@ -79,7 +79,7 @@ class _Hanger:
         self.level = level
         starts = [TopExp.FirstVertex_s(e, True) for e in self.loop]
         index = same_order(starts)
-        self.at = [index.FindIndex(v) - 1 for v in starts]
+        self.at: list[int] = [index.FindIndex(v) - 1 for v in starts]
         self.vertices = [TopoDS.Vertex_s(index.FindKey(i + 1)) for i in range(index.Extent())]
         self.places = np.array([vertex_point(v) for v in self.vertices])
         reach = np.array([min(BRep_Tool.Tolerance_s(v), MAX_EDGE_TOLERANCE) for v in self.vertices])

@@ -42,12 +42,12 @@ class SurfaceMesh:
     @property
     def corners(self) -> np.ndarray:
         """Corner points of each triangle, (t, 3, 3) [mm]."""
-        return self.vertices[self.triangles]
+        return np.asarray(self.vertices[self.triangles])
 
     def areas(self) -> np.ndarray:
         """Area of each triangle, (t,) [mm^2]."""
         p = self.corners
-        return 0.5 * np.linalg.norm(np.cross(p[:, 1] - p[:, 0], p[:, 2] - p[:, 0]), axis=1)
+        return np.asarray(0.5 * np.linalg.norm(np.cross(p[:, 1] - p[:, 0], p[:, 2] - p[:, 0]), axis=1))
 
 
 @dataclass(frozen=True)
@@ -180,7 +180,7 @@ def _weld(faces: list[TopoDS_Face], raw: _Raw) -> np.ndarray:
                 other += nodes
     size = len(raw.nodes)
     links = coo_matrix((np.ones(len(one), dtype=np.int8), (one, other)), shape=(size, size))
-    return connected_components(links, directed=False)[1]
+    return np.asarray(connected_components(links, directed=False)[1])
 
 
 def _matrix(location: TopLoc_Location) -> np.ndarray:

@@ -66,12 +66,12 @@ def eroded(mesh: SurfaceMesh, by: float = EROSION) -> MeshSolid | None:
     """
     corners = mesh.corners
     normal = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
-    normal /= np.maximum(np.linalg.norm(normal, axis=1), 1e-300)[:, None]
+    normal = normal / np.maximum(np.linalg.norm(normal, axis=1), 1e-300)[:, None]
     at = mesh.triangles.ravel()
     count = len(mesh.vertices)
     each = np.repeat(normal, 3, axis=0)
     mean = np.stack([np.bincount(at, each[:, k], count) for k in range(3)], axis=1)
-    mean /= np.maximum(np.linalg.norm(mean, axis=1), 1e-300)[:, None]
+    mean = mean / np.maximum(np.linalg.norm(mean, axis=1), 1e-300)[:, None]
     least = np.ones(count)
     np.minimum.at(least, at, (each * mean[at]).sum(axis=1))
     moved = mesh.vertices - mean * (by / np.maximum(least, 0.3))[:, None]

@@ -96,7 +96,7 @@ def _furthest(edge: TopoDS_Edge, dx: int, dy: int) -> float:
 
     def depth(t: float) -> float:
         place = curve.Value(float(t))
-        return -(dx * place.X() + dy * place.Y())
+        return -float(dx * place.X() + dy * place.Y())
 
     best = int(np.argmin([depth(t) for t in parameters]))
     bounds = parameters[max(best - 1, 0)], parameters[min(best + 1, 32)]

@@ -93,7 +93,7 @@ def _edge_costs(body: Body, level: float, costly_faces: frozenset[int]) -> np.nd
     cost = body.edge_lengths + HEIGHT_WEIGHT * (run * height).sum(axis=1) / body.diagonal
     if costly_faces:
         cost[np.isin(body.edge_faces, sorted(costly_faces)).any(axis=1)] *= 10.0
-    return (1e6 * cost / body.diagonal / 20).astype(np.int64).clip(max=NEVER // 10) + 1
+    return np.asarray((1e6 * cost / body.diagonal / 20).astype(np.int64).clip(max=NEVER // 10) + 1)
 
 
 def _join_islands(body: Body, kinds: FaceKinds, cavity: np.ndarray) -> np.ndarray:
