@@ -16,7 +16,7 @@ from moldgen.flow.job import JobResult, Options, Table, verdict_code
 from moldgen.flow.lay_out import lay_out, marked_points
 from moldgen.flow.prepare import Prepared, ready
 from moldgen.flow.prove import proof_findings
-from moldgen.flow.record import component_files, component_record, notes_record, review_record
+from moldgen.flow.record import component_files, component_record, file_record, notes_record, review_record
 from moldgen.flow.review import Reviewed, refuse_undercuts, review
 from moldgen.flow.tell import Tell
 from moldgen.kernel.measure import volume
@@ -117,8 +117,8 @@ def _halves(parted: Parted, low: np.ndarray, high: np.ndarray) -> Halves:
 
 def _filled(reviewed: Reviewed) -> tuple[Prepared, Notes]:
     before = reviewed.prepared
-    body, notes = fill_trapped(before.body, before.kinds, before.trapped)
-    body, more = ready(body)
+    body, notes = fill_trapped(before.body, before.kinds, before.trapped, reviewed.frame)
+    body, more = ready(body, reviewed.frame)
     kinds = face_kinds(body)
     gained = sum(p.volume_mm3 for p in before.trapped.pieces)
     finding = Finding(
@@ -166,7 +166,7 @@ def _prove_and_record(built: Built, folder: Path, options: Options, tell: Tell) 
     finally:
         if pictures is not None:
             pictures.stop()
-    record = _record(built, notes, proofs)
+    record = {**_record(built, notes, proofs), "files": file_record(folder)}
     (folder / MANIFEST).write_text(to_json(record), encoding="utf-8")
     return _result(built, notes, proofs)
 

@@ -13,10 +13,10 @@ from moldgen.errors import MoldgenError, PartError, SpecError
 from moldgen.finding import Finding, Notes, Severity
 from moldgen.kernel.features import build_recipe
 from moldgen.kernel.heal import heal
-from moldgen.kernel.measure import area, bounding_box, volume
+from moldgen.kernel.measure import area, volume
 from moldgen.kernel.step_read import read_step
 from moldgen.kernel.topology import faces_of
-from moldgen.model.part import Box, HealNote, Part
+from moldgen.model.part import HealNote, Part
 from moldgen.spec.load import LoadedSpec
 
 
@@ -95,10 +95,8 @@ def _imported(path: Path, name: str, where: str) -> Callable[[], Any]:
 
 
 def _part(name: str, solid: Any, sha256: str, healed: tuple[HealNote, ...], mm3: float | None = None) -> Part:
-    low, high = bounding_box(solid)
-    box: Box = (tuple(float(v) for v in low), tuple(float(v) for v in high))  # type: ignore[assignment]
     mm3 = volume(solid) if mm3 is None else mm3
-    return Part(name, solid, sha256, mm3, area(solid), box, len(faces_of(solid)), healed)
+    return Part(name, solid, sha256, mm3, area(solid), len(faces_of(solid)), healed=healed)
 
 
 def _healed(note: HealNote) -> Finding:

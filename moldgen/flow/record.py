@@ -7,7 +7,7 @@ from pathlib import Path
 from typing import Any
 
 from moldgen import __version__
-from moldgen.canon import plain
+from moldgen.canon import plain, sha256_bytes
 from moldgen.finding import Notes
 from moldgen.flow.report import CAUTIONS, sorted_findings
 from moldgen.flow.review import Reviewed
@@ -19,7 +19,6 @@ def review_record(reviewed: Reviewed) -> dict[str, Any]:
     """Return what is known of the part before steel: source, shrink, pull, faces against the pull, draft, traps."""
     part, frame = reviewed.part, reviewed.frame
     of_mold = reviewed.loaded.spec.shrink.convention == "mold"
-    low, high = part.bounding_box_mm
     return {
         "moldgen": __version__,
         "spec": {"path": reviewed.loaded.path.name, "sha256": reviewed.loaded.sha256},
@@ -28,7 +27,7 @@ def review_record(reviewed: Reviewed) -> dict[str, Any]:
             "source_sha256": part.source_sha256,
             "volume_mm3": part.volume_mm3,
             "area_mm2": part.area_mm2,
-            "bounding_box_mm": [low, high],
+            "bounding_box_mm": part.bounding_box_mm,
             "faces": part.face_count,
             "healed": part.healed,
         },
@@ -55,6 +54,7 @@ def notes_record(notes: Notes, proofs: Sequence[Proof] = ()) -> dict[str, Any]:
         "decisions": notes.decisions,
         "quantities": notes.quantities,
         "cautions": CAUTIONS,
+        "timings_s": {},  # stage times differ on every run: they go to the terminal and to --json
     }
 
 
@@ -76,3 +76,9 @@ def component_record(component: Component, file: Path, volume_mm3: float) -> dic
 def component_files(tool: Tool) -> dict[str, Path]:
     """Return the file of each component inside the output folder."""
     return {c.name: Path("step") / f"{c.name.replace(' ', '_')}.step" for c in tool.components}
+
+
+def file_record(folder: Path) -> dict[str, str]:
+    """Return the SHA-256 of each STEP file and table below the output folder, by its path in it."""
+    paths = sorted(p for p in folder.rglob("*") if p.suffix in (".step", ".csv"))
+    return {p.relative_to(folder).as_posix(): sha256_bytes(p.read_bytes()) for p in paths}

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -13,8 +13,10 @@ from moldgen.flow.part_source import read_part
 from moldgen.flow.prepare import Prepared, prepare
 from moldgen.flow.tell import Tell
 from moldgen.kernel.body import Body
+from moldgen.kernel.extent import reach
+from moldgen.kernel.measure import bounding_box
 from moldgen.kernel.place import to_mold
-from moldgen.model.part import MoldFrame, Part, Pull, Vector
+from moldgen.model.part import Box, MoldFrame, Part, Pull, Vector
 from moldgen.release.contact import vertical_contact
 from moldgen.release.frame import mold_frame
 from moldgen.release.pull import PullCandidate, search_pull
@@ -61,11 +63,13 @@ def review(loaded: LoadedSpec, tell: Tell) -> Reviewed:
         notes += more
         stage.detail = _listed(pull.direction)
     with tell.stage("prepare the part") as stage:
-        frame, more = mold_frame(pull.direction, spec.shrink, spec.resin, part.bounding_box_mm)
+        box = _exact_box(part) if spec.shrink.fixed_point == "centre" else _NO_BOX
+        frame, more = mold_frame(pull.direction, spec.shrink, spec.resin, box)
         notes += more
         scale = float(np.prod(frame.factors))
         prepared, more = prepare(to_mold(part.solid, frame), part.volume_mm3 * scale, frame)
         notes += more
+        part = replace(part, bounding_box_mm=part_box(prepared.body, frame))
         stage.detail = f"{len(prepared.body.faces)} faces, {len(prepared.trapped.undercuts)} undercuts"
     with tell.stage("review the draft") as stage:
         section = spec.draft
@@ -86,6 +90,26 @@ def review(loaded: LoadedSpec, tell: Tell) -> Reviewed:
         notes += more
         stage.detail = f"{release.draft.faces_below} faces below {release.draft.required_deg:.2g} deg"
     return Reviewed(loaded, data, part, pull, frame, prepared, release, notes)
+
+
+_NO_BOX: Box = ((0.0, 0.0, 0.0), (0.0, 0.0, 0.0))
+"""Stands for the box where nothing depends on it: finding the exact one takes the kernel up to a second."""
+
+
+def _exact_box(part: Part) -> Box:
+    low, high = bounding_box(part.solid)
+    return tuple(low.tolist()), tuple(high.tolist())
+
+
+def part_box(body: Body, frame: MoldFrame) -> Box:
+    """Return the box of the part in its own coordinates [mm], from its body in the mold."""
+    low, high = [], []
+    origin = np.asarray(frame.to_part((0.0, 0.0, 0.0)))
+    columns = np.array([frame.to_part(tuple(e)) for e in np.eye(3)]) - origin
+    for axis in range(3):
+        high.append(float(origin[axis] + reach(body, columns[:, axis])))
+        low.append(float(origin[axis] - reach(body, -columns[:, axis])))
+    return tuple(low), tuple(high)  # type: ignore[return-value]
 
 
 def refuse_undercuts(reviewed: Reviewed) -> None:
@@ -136,11 +160,10 @@ def _choose_pull(loaded: LoadedSpec, part: Part) -> tuple[Pull, tuple[PullCandid
 
 def _normal_at(loaded: LoadedSpec, part: Part, point: Vector) -> Vector:
     body = Body(part.solid)
-    number, distance = body.nearest_face(np.asarray(point))
+    number, _ = body.nearest_face(np.asarray(point))
     if body.surface_kind(number) != "plane":
         raise PartError(
-            f"the face nearest to {_listed(point)}, {distance:.3g} mm away, is no plane but a "
-            f"{body.surface_kind(number)}",
+            f"the face nearest to {_listed(point)} is no plane but a {body.surface_kind(number)}",
             where=loaded.locate("pull"),
             remedy="give a point on a flat face, or a direction",
         )

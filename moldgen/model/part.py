@@ -24,15 +24,18 @@ class HealNote:
 
 @dataclass(frozen=True)
 class Part:
-    """The plastic part in its own coordinates, before shrink [mm]."""
+    """The plastic part in its own coordinates, before shrink [mm].
+
+    bounding_box_mm : None until the part was meshed (see `moldgen.flow.review`)
+    """
 
     name: str
     solid: Solid
     source_sha256: str
     volume_mm3: float
     area_mm2: float
-    bounding_box_mm: Box
     face_count: int
+    bounding_box_mm: Box | None = None
     healed: tuple[HealNote, ...] = ()
 
 

@@ -22,7 +22,9 @@ from moldgen.kernel.meshsolid import piece_mesh
 from moldgen.kernel.patches import flat_patches
 from moldgen.kernel.shells import shells_from_faces, solid_from_faces
 from moldgen.kernel.topology import compound_of, only_solid
+from moldgen.model.part import MoldFrame
 from moldgen.release.kinds import FaceKinds, Kind
+from moldgen.release.place import part_point
 from moldgen.release.trapped import Trapped, TrapPiece
 
 MOSTLY = 0.5
@@ -41,8 +43,10 @@ class _Plug:
     rung: str
 
 
-def fill_trapped(body: Body, kinds: FaceKinds, trapped: Trapped) -> tuple[Body, Notes]:
+def fill_trapped(body: Body, kinds: FaceKinds, trapped: Trapped, frame: MoldFrame | None = None) -> tuple[Body, Notes]:
     """Return the body with every trapped piece (rubs included) filled.
+
+    frame : the way back to part coordinates, for what is told
 
     Raises
     ------
@@ -55,14 +59,14 @@ def fill_trapped(body: Body, kinds: FaceKinds, trapped: Trapped) -> tuple[Body, 
     for piece in trapped.pieces:
         whole = _whole_faces(body, kinds, piece, gone)
         if isinstance(whole, str):
-            plug, refused = _prism_plug(body, kinds, piece)
+            plug, refused = _prism_plug(body, kinds, piece, frame)
             plugs.append(plug)
-            decisions.append(_decision(piece, plug.rung, (f"whole faces: {whole}", *refused)))
+            decisions.append(_decision(piece, frame, plug.rung, (f"whole faces: {whole}", *refused)))
         else:
             faces, rims = whole
             gone |= faces
             patches += rims
-            decisions.append(_decision(piece, "whole faces taken out", ()))
+            decisions.append(_decision(piece, frame, "whole faces taken out", ()))
     filled = _patched(body, gone, patches) if gone else body.solid
     if plugs:
         filled = _fused(filled, [s for p in plugs for s in p.solids])
@@ -102,7 +106,9 @@ def _patched(body: Body, gone: set[int], patches: Sequence[Any]) -> Any:
     return result.solid
 
 
-def _prism_plug(body: Body, kinds: FaceKinds, piece: TrapPiece) -> tuple[_Plug, tuple[str, ...]]:
+def _prism_plug(
+    body: Body, kinds: FaceKinds, piece: TrapPiece, frame: MoldFrame | None
+) -> tuple[_Plug, tuple[str, ...]]:
     mesh = piece_mesh(piece.solid)
     low, high = mesh.vertices.min(axis=0), mesh.vertices.max(axis=0)
     height = float(high[2] - low[2])
@@ -131,10 +137,10 @@ def _prism_plug(body: Body, kinds: FaceKinds, piece: TrapPiece) -> tuple[_Plug, 
         if solids and abs(got - piece.volume_mm3) < allowed and all(is_valid(s) for s in solids):
             return _Plug(tuple(solids), name), tuple(refused)
         refused.append(f"{name}: {len(solids)} solids of {got:.4f} mm^3 instead of {piece.volume_mm3:.4f}")
-    x, y, z = piece.at
+    x, y, z = part_point(piece.at, frame)
     raise PartError(
         "an undercut cannot be filled: " + "; ".join(refused),
-        where=f"face at {x:.3f}, {y:.3f}, {z:.3f} (mold frame)",
+        where=f"face at {x:.3f}, {y:.3f}, {z:.3f}",
         remedy="fill it in the part, or give another pull",
     )
 
@@ -169,8 +175,8 @@ def _fused(solid: Any, plugs: Sequence[Any]) -> Any:
     return result[0]
 
 
-def _decision(piece: TrapPiece, rung: str, refused: tuple[str, ...]) -> Decision:
-    x, y, z = piece.at
+def _decision(piece: TrapPiece, frame: MoldFrame | None, rung: str, refused: tuple[str, ...]) -> Decision:
+    x, y, z = part_point(piece.at, frame)
     return Decision(
         topic="undercut filled",
         choice=f"{piece.volume_mm3:.3f} mm^3 at {x:.2f}, {y:.2f}, {z:.2f} filled in the molded part",
