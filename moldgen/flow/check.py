@@ -20,7 +20,6 @@ def check_part(loaded: LoadedSpec, folder: Path, tell: Tell) -> JobResult:
     """Review the part and write the manifest of the review into `folder`."""
     reviewed = review(loaded, tell)
     record = {**review_record(reviewed), **notes_record(reviewed.notes)}
-    record["timings_s"] = {}
     (folder / MANIFEST).write_text(to_json(record), encoding="utf-8")
     code = verdict_code(reviewed.notes.findings)
     undercuts = len(reviewed.prepared.trapped.undercuts)

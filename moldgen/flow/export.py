@@ -6,6 +6,7 @@ from pathlib import Path
 
 from moldgen.flow.record import component_files
 from moldgen.flow.reread import TOOL_FILE, Entry, read_bodies
+from moldgen.kernel.measure import volume
 from moldgen.kernel.step_write import Looks, StepExport
 from moldgen.model.tool import Tool
 from moldgen.output.palette import ROLES
@@ -38,5 +39,5 @@ def export_tool(tool: Tool, folder: Path, schema: str) -> None:
 
 def reread_bodies(tool: Tool, folder: Path) -> list[ProofBody]:
     """Return the tool as the exported assembly holds it, for the proofs."""
-    entries = tuple(Entry(c.name, c.role, c.motion, len(c.positions)) for c in tool.components)
+    entries = tuple(Entry(c.name, c.role, c.motion, volume(c.solid), c.positions) for c in tool.components)
     return read_bodies(folder / TOOL_FILE, entries)

@@ -6,6 +6,7 @@ from pathlib import Path
 
 from moldgen.errors import ExitCode
 from moldgen.finding import Finding, Severity
+from moldgen.flow.as_listed import changed_since_built
 from moldgen.flow.job import JobResult, verdict_code
 from moldgen.flow.reread import TOOL_FILE, read_bodies, read_listing
 from moldgen.flow.tell import Tell
@@ -28,13 +29,15 @@ def prove_folder(folder: Path, tell: Tell) -> JobResult:
     with tell.stage("prove the tool") as stage:
         proofs = prove_tool(bodies, listing.claims)
         stage.detail = f"{sum(p.passed for p in proofs)} of {len(proofs)} passed"
-    code = verdict_code((), proofs)
-    verdict = "proved" if code is ExitCode.OK else "NOT proved"
+    changed = changed_since_built(folder, listing, bodies)
+    code = verdict_code(changed, proofs)
+    verdict = "proved" if verdict_code((), proofs) is ExitCode.OK else "NOT proved"
+    but = ", but the folder is not as it was built" if changed else ""
     return JobResult(
         code,
-        f"{listing.title}: {verdict} from {TOOL_FILE} alone",
+        f"{listing.title}: {verdict} from {TOOL_FILE} alone{but}",
         proofs=proofs,
-        findings=proof_findings(proofs),
+        findings=(*proof_findings(proofs), *changed),
         first_pass=True,
     )
 

@@ -10,6 +10,7 @@ from typing import Any
 from moldgen.errors import PartError, SpecError
 from moldgen.flow.folder import MANIFEST, MANIFEST_KEY
 from moldgen.kernel.step_read import read_assembly
+from moldgen.model.part import Vector
 from moldgen.model.tool import Motion, Role
 from moldgen.proof.bodies import ProofBody
 from moldgen.proof.run import Claims
@@ -19,21 +20,28 @@ TOOL_FILE = "tool.step"
 
 @dataclass(frozen=True)
 class Entry:
-    """One component as the manifest lists it."""
+    """One component as the manifest lists it: volume of one [mm^3] and where each stands [mm]."""
 
     name: str
     role: Role
     motion: Motion
-    count: int
+    volume_mm3: float
+    positions: tuple[Vector, ...]
+
+    @property
+    def count(self) -> int:
+        """How many of it the tool has."""
+        return len(self.positions)
 
 
 @dataclass(frozen=True)
 class Listing:
-    """What the manifest says was exported."""
+    """What the manifest says was exported; `files` has the SHA-256 of each file by its path in the folder."""
 
     title: str
     entries: tuple[Entry, ...]
     claims: Claims
+    files: dict[str, str]
 
 
 def read_listing(folder: Path) -> Listing:
@@ -55,13 +63,21 @@ def read_listing(folder: Path) -> Listing:
         raise SpecError("the manifest describes no tool", where=str(path), remedy="build the tool first")
     try:
         entries = tuple(
-            Entry(c["name"], Role(c["role"]), Motion(c["moves_with"]), len(c["positions"]))
+            Entry(
+                str(c["name"]),
+                Role(c["role"]),
+                Motion(c["moves_with"]),
+                float(c["volume_mm3"]),
+                tuple((float(x), float(y), float(z)) for x, y, z in c["positions"]),
+            )
             for c in record["components"]
         )
         claims = Claims(**{key: float(record["claims"][key]) for key in ("block_mm3", "bored_mm3", "stroke_mm")})
-    except (KeyError, TypeError, ValueError) as error:
+        files = {str(path): str(digest) for path, digest in record["files"].items()}
+        title = str(record["part"]["name"])
+    except (KeyError, TypeError, ValueError, AttributeError) as error:
         raise SpecError(f"{MANIFEST} is damaged: {error!r}", where=str(path), remedy="build the tool again") from error
-    return Listing(str(record.get("part", {}).get("name", folder.name)), entries, claims)
+    return Listing(title, entries, claims, files)
 
 
 def read_bodies(file: Path, entries: tuple[Entry, ...]) -> list[ProofBody]:

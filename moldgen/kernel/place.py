@@ -31,6 +31,12 @@ def moved(shape: TopoDS_Shape, by: Vector) -> TopoDS_Shape:
     return BRepBuilderAPI_Transform(shape, shift, False).Shape()
 
 
+def standing_at(shape: TopoDS_Shape) -> Vector:
+    """Return how far [mm] a located shape stands from where its definition was built."""
+    shift = shape.Location().Transformation().TranslationPart()
+    return (shift.X(), shift.Y(), shift.Z())
+
+
 def _scaled(solid: TopoDS_Shape, frame: MoldFrame) -> Any:
     kx, ky, kz = frame.factors
     if kx == ky == kz:

@@ -159,7 +159,7 @@ def _edge(task: _Task, paths: FlowPaths) -> _Found:
         sprue_taper_deg=SPRUE_TAPER.default,
         flow_length=flow,
         chosen_by=task.chooser,
-        in_cavity=bool(sites.above[choice]) or sites.troubles[choice] > 0,
+        in_cavity=bool(sites.above[choice] or sites.troubles[choice] > 0),
     )
     return _Found(gate, notes, tuple(text for text, broken in sites.reasons if broken[choice]), end)
 
