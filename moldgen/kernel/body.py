@@ -127,9 +127,9 @@ class Body:
         return around
 
     def surface_kind(self, face: int) -> str:
-        """Return the kind of a face's surface: plane, cylinder, cone, sphere, torus, bspline, ..."""
+        """Return the kind of a face's surface: plane, cylinder, cone, sphere, torus, bspline, extrusion, ..."""
         name: str = BRepAdaptor_Surface(self.faces[face]).GetType().name
-        return name.removeprefix("GeomAbs_").removesuffix("Surface").lower()
+        return name.removeprefix("GeomAbs_").removeprefix("SurfaceOf").removesuffix("Surface").lower()
 
     def nearest_face(self, point: np.ndarray) -> tuple[int, float]:
         """Return the face nearest to a point and its distance [mm], measured on the mesh."""

@@ -59,7 +59,10 @@ def thick_pieces(solid: MeshSolid, least: float = NOISE_THICKNESS) -> list[MeshS
 
 
 def eroded(mesh: SurfaceMesh, by: float = EROSION) -> MeshSolid | None:
-    """Return the mesh with every vertex moved inward so that each face around it gives way by `by` [mm] or so.
+    """Return the mesh with every vertex moved inward so that each face around it gives way by `by` [mm] or more.
+
+    The faces around a vertex count by their angle there, not by how many triangles happen to meet in it: the corner of
+    a block moves by the same along each of its three faces. Very sharp corners (under 35 deg) give way by less.
 
     Bodies of a tool touch everywhere, and a boolean of coincident sheets makes thousands of slivers. One that was
     eroded touches nothing: overlaps deeper than that remain, and the boolean is tens of times faster (measured).
@@ -70,12 +73,20 @@ def eroded(mesh: SurfaceMesh, by: float = EROSION) -> MeshSolid | None:
     at = mesh.triangles.ravel()
     count = len(mesh.vertices)
     each = np.repeat(normal, 3, axis=0)
-    mean = np.stack([np.bincount(at, each[:, k], count) for k in range(3)], axis=1)
+    angle = _corner_angles(corners).ravel()
+    mean = np.stack([np.bincount(at, angle * each[:, k], count) for k in range(3)], axis=1)
     mean = mean / np.maximum(np.linalg.norm(mean, axis=1), 1e-300)[:, None]
     least = np.ones(count)
     np.minimum.at(least, at, (each * mean[at]).sum(axis=1))
     moved = mesh.vertices - mean * (by / np.maximum(least, 0.3))[:, None]
     return make_solid(moved, mesh.triangles, mesh.face)
+
+
+def _corner_angles(corners: np.ndarray) -> np.ndarray:
+    """Return the angle of each triangle at each of its corners, (t, 3) [rad]."""
+    onward, back = np.roll(corners, -1, axis=1) - corners, np.roll(corners, 1, axis=1) - corners
+    across = np.linalg.norm(np.cross(onward, back), axis=2)
+    return np.asarray(np.arctan2(across, (onward * back).sum(axis=2)))
 
 
 def overlap_depth(one: MeshSolid, eroded_other: MeshSolid) -> float:
