@@ -57,8 +57,11 @@ def joint_volume_fine(shapes: Sequence[TopoDS_Shape], relative: float = 1e-9) ->
 
 def balance(shapes: Sequence[TopoDS_Shape], expected: float, limit: float) -> float:
     """Return |sum of volumes - expected| / expected of solids that fill a block, by the cheapest way below `limit`."""
-    quick = abs((joint_volume(shapes) - expected) / expected)
-    return quick if quick < limit else min(quick, abs((joint_volume_fine(shapes) - expected) / expected))
+    best = abs((joint_volume(shapes) - expected) / expected)
+    for finer in (joint_volume_fine, lambda solids: volume_adaptive(compound_of(solids), 1e-7)):
+        if best >= limit:
+            best = min(best, abs((finer(shapes) - expected) / expected))
+    return best
 
 
 def volume_adaptive(shape: TopoDS_Shape, relative: float = 1e-9) -> float:
