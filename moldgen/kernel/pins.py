@@ -99,9 +99,12 @@ def faces_below(plug: TopoDS_Shape, fit_low: float) -> int:
     return len(faces_of(plug)) - len(upper)
 
 
-def alike(one: TopoDS_Shape, one_at: Vector, other: TopoDS_Shape, other_at: Vector) -> bool:
-    """True when two solids are the same but for their place: corners, edges and faces fall on each other."""
-    for ours, theirs in zip(_marks(one, one_at), _marks(other, other_at), strict=True):
+def alike(one: TopoDS_Shape, one_at: Vector, other: TopoDS_Shape, other_at: Vector, *, turned: bool = False) -> bool:
+    """True when two solids are the same but for their place: corners, edges and faces fall on each other.
+
+    With `turned`, both are round about an upright axis through their places, and may be turned about it.
+    """
+    for ours, theirs in zip(_marks(one, one_at, turned), _marks(other, other_at, turned), strict=True):
         if ours.shape != theirs.shape:
             return False
         gap = np.abs(ours[:, None, :] - theirs[None, :, :]).max(axis=2)
@@ -168,9 +171,11 @@ def _disc(rim: TopoDS_Wire, level: float) -> TopoDS_Face:
     return plane_face(plane_through((0.0, 0.0, level), (0.0, 0.0, 1.0)), rim)
 
 
-def _marks(solid: TopoDS_Shape, at: Vector) -> Sequence[np.ndarray]:
+def _marks(solid: TopoDS_Shape, at: Vector, turned: bool) -> Sequence[np.ndarray]:
     corners = np.array([vertex_point(v) for v in vertices_of(solid)]).reshape(-1, 3) - at
     lines = [e for e in edges_of(solid) if not BRep_Tool.Degenerated_s(e)]
     middles = np.array([edge_points(e, 3)[1] for e in lines]).reshape(-1, 3) - at
     faces = np.array([area(f) for f in faces_of(solid)])[:, None]
+    if turned:
+        corners, middles = (np.column_stack([np.hypot(p[:, 0], p[:, 1]), p[:, 2]]) for p in (corners, middles))
     return corners, middles, faces

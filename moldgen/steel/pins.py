@@ -86,7 +86,10 @@ def _same(kind: _Kind, one: PinBore, plug: Any, top: float | None) -> bool:
     if top is not None:
         return True
     size = volume(kind.plug)
-    return abs(volume(plug) - size) < SAME * size and alike(plug, _origin(one), kind.plug, _origin(other))
+    if abs(volume(plug) - size) >= SAME * size:
+        return False
+    turned = kind.turned and is_turned(plug, (one.x, one.y), ours.fit_low)
+    return alike(plug, _origin(one), kind.plug, _origin(other), turned=turned)
 
 
 def _component(kind: _Kind, name: str, materials: Materials) -> Component:
