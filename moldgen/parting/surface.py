@@ -16,11 +16,16 @@ from moldgen.kernel.curtain import hang_curtain
 from moldgen.kernel.measure import is_valid
 from moldgen.kernel.patches import filled_patch, flat_patches, host_patch, loop_points, signed_area
 from moldgen.kernel.runoff import run_off
+from moldgen.kernel.slope import sine_range
 from moldgen.kernel.topology import directed_points
 from moldgen.kernel.walls import Rim, rectangle_rim
 
 Face = Any
 Loop = Sequence[Any]
+
+
+LEAST_SHUT_OFF = float(np.sin(np.radians(5.0)))
+"""Sine of 5 deg: steel that closes on steel at less gap or gall (trade pages ask for 3 to 7 deg; common practice)."""
 
 
 class Rung(StrEnum):
@@ -128,8 +133,13 @@ def _counter_clockwise(loop: Loop) -> list[Any]:
 
 
 def _close_hole(body: Body, loop: Loop) -> tuple[list[Face], ClosedLoop]:
-    """Close a hole whose rim is not flat: level with curtains, then the neighbour's surface, then a filling."""
+    """Close a hole whose rim is not flat: the neighbour's surface where it leans enough for steel on steel, level with
+    curtains, the neighbour's surface as steep as it is, a filling.
+    """
     refused = []
+    host = host_patch(body, loop)
+    if host is not None and _leans(host):
+        return [host], _closed(Rung.HOST, loop, 0)
     for level in _levels_of(loop):
         try:
             curtain = hang_curtain(loop, level)
@@ -140,11 +150,16 @@ def _close_hole(body: Body, loop: Loop) -> tuple[list[Face], ClosedLoop]:
         if is_valid(lid) and all(is_valid(f) for f in curtain.faces):
             return [lid, *curtain.faces], _closed(Rung.LEVEL_AND_CURTAINS, loop, curtain.off_plane, refused)
         refused.append(f"level {level:.3f}: a face is invalid")
-    host = host_patch(body, loop)
     if host is not None:
         return [host], _closed(Rung.HOST, loop, 0, refused)
     refused.append("no neighbour holds the whole rim")
     return [filled_patch(loop)], _closed(Rung.FILLED, loop, 0, refused)
+
+
+def _leans(patch: Face) -> bool:
+    """True when a shut-off on this face is nowhere steeper than the least shut-off angle, and looks one way along z."""
+    sines = sine_range(patch)
+    return sines is not None and sines[0] * sines[1] > 0 and min(map(abs, sines)) >= LEAST_SHUT_OFF
 
 
 def _levels_of(loop: Loop) -> list[float]:
