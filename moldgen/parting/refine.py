@@ -6,10 +6,12 @@ from typing import Any
 
 import numpy as np
 
+from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
 from moldgen.kernel.edge_split import parameter_range, split_edges
 from moldgen.kernel.level_split import level_curves, level_parameters, upright_lines
 from moldgen.kernel.patches import loop_points
+from moldgen.kernel.rehearse import LIMIT_S, survives
 from moldgen.kernel.runoff import extreme_parameters
 from moldgen.kernel.split import split_faces
 from moldgen.parting.level import LevelSearch
@@ -48,7 +50,12 @@ def split_at_level(
                 lines = upright_lines(body.faces[f], *heights[f])
                 tools += lines
                 touched += [f] if lines else []
-    return split_faces(body, sorted(set(touched)), tools) if tools else body
+    if not tools:
+        return body
+    faces = sorted(set(touched))
+    if all_faces and not survives(lambda: split_faces(body, faces, tools)):
+        raise KernelError(f"splitting {len(faces)} faces along {len(tools)} lines did not end within {LIMIT_S:g} s")
+    return split_faces(body, faces, tools)
 
 
 def split_at_extremes(body: Body, loop: list[Any]) -> Body:
