@@ -1,4 +1,4 @@
-"""What the worker process does for each command. The kernel is loaded only after the spec was found to be good."""
+"""What the worker process does for each command. The kernel is loaded only once spec and output place are good."""
 
 from __future__ import annotations
 
@@ -19,9 +19,9 @@ def build(job: Job, tell: Tell) -> JobResult:
     """From a spec to a proved tool in the output folder."""
     loaded, final = _loaded(job, "")
     tell.output(final)
-    from moldgen.flow.build import build_tool  # noqa: PLC0415  loads the kernel
-
     with fresh_folder(final, inputs=_inputs(loaded), tell=tell) as aside:
+        from moldgen.flow.build import build_tool  # noqa: PLC0415  loads the kernel
+
         result = build_tool(loaded, aside, job.options, tell)
     return replace(result, output=final)
 
@@ -30,9 +30,9 @@ def check(job: Job, tell: Tell) -> JobResult:
     """Review the part of a spec against its pull, without building steel."""
     loaded, final = _loaded(job, "-check")
     tell.output(final)
-    from moldgen.flow.check import check_part  # noqa: PLC0415  loads the kernel
-
     with fresh_folder(final, inputs=_inputs(loaded), tell=tell) as aside:
+        from moldgen.flow.check import check_part  # noqa: PLC0415  loads the kernel
+
         result = check_part(loaded, aside, tell)
     return replace(result, output=final)
 

@@ -14,7 +14,7 @@ from moldgen.finding import Finding, Notes, Severity
 from moldgen.kernel.features import build_recipe
 from moldgen.kernel.heal import heal
 from moldgen.kernel.measure import area, volume
-from moldgen.kernel.step_read import read_step
+from moldgen.kernel.step_read import check_size, read_step
 from moldgen.kernel.topology import faces_of
 from moldgen.model.part import HealNote, Part
 from moldgen.spec.load import LoadedSpec
@@ -34,6 +34,7 @@ def read_part(loaded: LoadedSpec) -> tuple[Part, Notes]:
         recipe = source.recipe.resolve()
         try:
             solid = build_recipe(recipe)
+            check_size(solid, "check the units of the recipe: plain numbers are mm")
         except MoldgenError as error:
             error.where = error.where or loaded.locate("part.recipe")
             raise
@@ -71,23 +72,33 @@ def _from_function(loaded: LoadedSpec) -> Part:
     try:
         result = function()
     except Exception as error:
-        raise PartError(f"{source} raised {type(error).__name__}: {error}", where=where) from error
+        raise PartError(
+            f"{source} raised {type(error).__name__}: {error}", where=where, remedy="correct the function"
+        ) from error
     shape = getattr(result, "wrapped", result) if not hasattr(result, "val") else result.val().wrapped
     if not hasattr(shape, "ShapeType"):
-        raise PartError(f"{source} returned {type(result).__name__}, not a solid", where=where)
-    healed = heal(shape)
+        what = f"{source} returned {type(result).__name__}, not a solid"
+        raise PartError(what, where=where, remedy="return a cadquery solid or workplane, or a kernel shape")
+    try:
+        healed = heal(shape)
+        check_size(healed.solid, f"{source} counts in mm")
+    except PartError as error:
+        error.where = f"{where}: {error.where}" if error.where else where
+        raise
     return _part(loaded.spec.name, healed.solid, sha256_bytes(path.read_bytes()), healed.notes, healed.volume_mm3)
 
 
 def _imported(path: Path, name: str, where: str) -> Callable[[], Any]:
     found = importlib.util.spec_from_file_location("moldgen_user_part", path)
     if found is None or found.loader is None:
-        raise SpecError(f"{path.name} cannot be imported", where=where)
+        raise SpecError(f"{path.name} cannot be imported", where=where, remedy="name a Python file")
     module = importlib.util.module_from_spec(found)
     try:
         found.loader.exec_module(module)
     except Exception as error:
-        raise PartError(f"{path.name} raised {type(error).__name__}: {error}", where=where) from error
+        raise PartError(
+            f"{path.name} raised {type(error).__name__}: {error}", where=where, remedy="correct the file"
+        ) from error
     function = getattr(module, name, None)
     if not callable(function):
         raise SpecError(f"{path.name} has no function {name}", where=where, remedy="correct part.function")

@@ -67,7 +67,11 @@ def review(loaded: LoadedSpec, tell: Tell) -> Reviewed:
         frame, more = mold_frame(pull.direction, spec.shrink, spec.resin, box)
         notes += more
         scale = float(np.prod(frame.factors))
-        prepared, more = prepare(to_mold(part.solid, frame), part.volume_mm3 * scale, frame)
+        try:
+            prepared, more = prepare(to_mold(part.solid, frame), part.volume_mm3 * scale, frame)
+        except PartError as error:
+            error.where = f"{loaded.locate('part')}: {error.where}".removesuffix(": ")
+            raise
         notes += more
         part = replace(part, bounding_box_mm=part_box(prepared.body, frame))
         stage.detail = f"{len(prepared.body.faces)} faces, {len(prepared.trapped.undercuts)} undercuts"

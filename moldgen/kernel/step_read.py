@@ -104,7 +104,7 @@ def read_step(path: Path, choose: int | str | None = None, *, find_crossings: bo
             content = _transfer(path)
             name, shape, listed = _pick(content, choose)
             healed = heal(_bake(shape))
-            _check_size(healed.solid, content.unit)
+            check_size(healed.solid, f"check the length unit of the file (it says {content.unit or 'nothing'})")
             if find_crossings:
                 refuse_crossings(healed.solid)
     except PartError as error:
@@ -149,6 +149,25 @@ def refuse_crossings(solid: TopoDS_Solid) -> None:
             f"the solid passes through itself at {len(found)} pairs of faces, by up to {found[0].depth_mm:.3g} mm",
             where=f"{x:.3f}, {y:.3f}, {z:.3f}",
             remedy="unite or separate the crossing features in the CAD",
+        )
+
+
+def check_size(solid: TopoDS_Solid, remedy: str) -> None:
+    """Pass if the longest side of a part lies between `SMALLEST_PART` and `LARGEST_PART`.
+
+    Raises
+    ------
+    PartError : it does not; `remedy` says what to do
+    """
+    with operation("measure the part", operands=(solid,)):
+        longest = _longest_side(solid)
+    if longest < SMALLEST_PART:
+        raise PartError(
+            f"the part is too small: {longest:.4g} mm on its longest side, at least {SMALLEST_PART:g} mm", remedy=remedy
+        )
+    if longest > LARGEST_PART:
+        raise PartError(
+            f"the part is too large: {longest:.6g} mm on its longest side, at most {LARGEST_PART:g} mm", remedy=remedy
         )
 
 
@@ -282,20 +301,6 @@ def _bake(shape: TopoDS_Shape) -> TopoDS_Shape:
     bare = shape.Located(TopLoc_Location())
     with operation("move the solid to its place in the assembly", operands=(shape,)):
         return BRepBuilderAPI_Transform(bare, location.Transformation(), True).Shape()
-
-
-def _check_size(solid: TopoDS_Solid, unit: str) -> None:
-    with operation("measure the part", operands=(solid,)):
-        longest = _longest_side(solid)
-    remedy = f"check the length unit of the file (it says {unit or 'nothing'})"
-    if longest < SMALLEST_PART:
-        raise PartError(
-            f"the part is too small: {longest:.4g} mm on its longest side, at least {SMALLEST_PART:g} mm", remedy=remedy
-        )
-    if longest > LARGEST_PART:
-        raise PartError(
-            f"the part is too large: {longest:.6g} mm on its longest side, at most {LARGEST_PART:g} mm", remedy=remedy
-        )
 
 
 def _longest_side(solid: TopoDS_Solid) -> float:

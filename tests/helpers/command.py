@@ -22,12 +22,14 @@ def environment() -> dict[str, str]:
     return os.environ | {"PYTHONPATH": os.pathsep.join(p for p in paths if p), "COLUMNS": "100"}
 
 
-def moldgen(*arguments: object, folder: Path, job: str = "", timeout: float = 60) -> subprocess.CompletedProcess[str]:
-    """Run moldgen in `folder` and return what came of it."""
+def moldgen(
+    *arguments: object, folder: Path, job: str = "", timeout: float = 60, **variables: str
+) -> subprocess.CompletedProcess[str]:
+    """Run moldgen in `folder`, with environment `variables` of its own, and return what came of it."""
     return subprocess.run(
         moldgen_command(*arguments, job=job),
         cwd=folder,
-        env=environment(),
+        env=environment() | variables,
         capture_output=True,
         text=True,
         timeout=timeout,
