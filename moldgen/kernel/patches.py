@@ -2,24 +2,28 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from OCP.BRep import BRep_Tool
+from OCP.BOPTools import BOPTools_AlgoTools2D
+from OCP.BRep import BRep_Builder, BRep_Tool
+from OCP.BRepAdaptor import BRepAdaptor_Surface
 from OCP.BRepBuilderAPI import BRepBuilderAPI_MakeFace
 from OCP.BRepFill import BRepFill_Filling
-from OCP.GeomAbs import GeomAbs_C0
+from OCP.Geom import Geom_Surface
+from OCP.GeomAbs import GeomAbs_C0, GeomAbs_Cone, GeomAbs_Cylinder, GeomAbs_Sphere
 from OCP.ShapeFix import ShapeFix_Face
-from OCP.TopAbs import TopAbs_FACE
-from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Shape
+from OCP.TopAbs import TopAbs_EDGE, TopAbs_FACE, TopAbs_FORWARD, TopAbs_WIRE
+from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Shape, TopoDS_Wire
 
 from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
 from moldgen.kernel.build import backward, forward, plane_face, plane_through, wire_of
 from moldgen.kernel.guard import operation
-from moldgen.kernel.measure import is_valid
-from moldgen.kernel.topology import directed_points, edges_of, same_order
+from moldgen.kernel.measure import area, is_valid
+from moldgen.kernel.topology import directed_points, edges_of, explore, same_order
 from moldgen.tolerances import MAX_EDGE_TOLERANCE
 
 PLANE_FIT = 1e-4
@@ -27,6 +31,18 @@ PLANE_FIT = 1e-4
 
 SAME_PLANE = 1e-3
 """mm: loops whose planes are this close share one face with holes."""
+
+FILLING_DEGREES = (3, 2)
+"""Degrees of the energy that a filling minimises, in the order in which they are tried."""
+
+SLACK_SKIN = 1.5
+"""Area of a filling over the largest area of a minimal surface, from which it is not believed."""
+
+_ROUND = {
+    GeomAbs_Cylinder: BRepAdaptor_Surface.Cylinder,
+    GeomAbs_Cone: BRepAdaptor_Surface.Cone,
+    GeomAbs_Sphere: BRepAdaptor_Surface.Sphere,
+}
 
 Loop = Sequence[TopoDS_Edge]
 
@@ -64,20 +80,53 @@ def flat_patches(loops: Sequence[Loop]) -> list[FlatPatch]:
 def host_patch(body: Body, loop: Loop) -> TopoDS_Face | None:
     """Return a face that closes a loop on the surface of a neighbour whose boundary holds the whole loop.
 
-    The hole in a curved wall is closed by the wall's own surface. None when there is no such neighbour.
+    The hole in a curved wall is closed by the wall's own surface. None when there is no such neighbour, or when the
+    loop runs round the axis of the wall, which then does not close it.
     """
     numbers = [body.edge_index.FindIndex(e) - 1 for e in loop]
     if min(numbers) < 0:
         return None
     for face in sorted({int(f) for n in numbers for f in body.edge_faces[n]}):
-        if body.surface_kind(face) == "torus":  # a torus closes on itself both ways: the kernel picks the wrong side
+        if body.surface_kind(face) == "torus":  # a torus closes on itself both ways: either side would do
             continue
         around = same_order(edges_of(body.faces[face]))
         if all(around.Contains(e) for e in loop):
-            patch = _trimmed(BRep_Tool.Surface_s(body.faces[face]), loop)
+            patch = _wire_of_host(body.faces[face], loop) or _across_seam(body.faces[face], loop)
             if patch is not None and not _same_region(patch, body.faces[face]):
                 return patch
     return None
+
+
+def _wire_of_host(host: TopoDS_Face, loop: Loop) -> TopoDS_Face | None:
+    """Return the face inside a wire of the host: its curves on the surface are there already."""
+    edges = same_order(loop)
+    for wire in explore(host, TopAbs_WIRE):
+        own = explore(wire, TopAbs_EDGE)
+        if len(own) == len(loop) and all(edges.Contains(e) for e in own):
+            bare = TopoDS.Face_s(host.Oriented(TopAbs_FORWARD).EmptyCopied())
+            return _inside(bare, TopoDS.Wire_s(wire))
+    return None
+
+
+def _across_seam(host: TopoDS_Face, loop: Loop) -> TopoDS_Face | None:
+    """Return the face inside a loop over the seam of a round wall, on the same surface turned until the seam is away.
+
+    Other surfaces, and loops round the axis, give None.
+    """
+    adaptor = BRepAdaptor_Surface(host)
+    kind = adaptor.GetType()
+    if kind not in _ROUND:
+        return None
+    position = _ROUND[kind](adaptor).Position()
+    frame = np.array([position.XDirection().Coord(), position.YDirection().Coord()])
+    across = (loop_points(loop, 16) - position.Location().Coord()) @ frame.T
+    angle = np.unwrap(np.arctan2(across[:, 1], across[:, 0]))
+    if np.ptp(angle) > 0.9 * math.pi:
+        return None
+    turn = float(angle.mean()) - math.pi
+    surface = BRep_Tool.Surface_s(host).Copy()
+    surface.Rotate(position.Axis(), turn if position.Direct() else -turn)
+    return _trimmed(surface, loop)
 
 
 def filled_patch(loop: Loop) -> TopoDS_Face:
@@ -85,19 +134,29 @@ def filled_patch(loop: Loop) -> TopoDS_Face:
 
     Raises
     ------
-    KernelError : the kernel finds none that is valid
+    KernelError : the kernel finds none that is valid and as large as a skin over this loop can be
     """
-    with operation("fill a loop of edges", operands=loop):
-        filling = BRepFill_Filling(3, 15, 2, False, 1e-5, 1e-4, 1e-2, 1e-1, 8, 9)
-        for edge in loop:
-            filling.Add(forward(edge), GeomAbs_C0)
-        filling.Build()
-    if not filling.IsDone():
-        raise KernelError(f"no filling for a loop of {len(loop)} edges")
-    patch = _trimmed(BRep_Tool.Surface_s(filling.Face()), loop)
-    if patch is None:
-        raise KernelError(f"the filling of a loop of {len(loop)} edges is not a valid face")
-    return patch
+    for degree in FILLING_DEGREES:
+        with operation("fill a loop of edges", operands=loop):
+            filling = BRepFill_Filling(degree, 15, 2, False, 1e-5, 1e-4, 1e-2, 1e-1, 8, 9)
+            for edge in loop:
+                filling.Add(forward(edge), GeomAbs_C0)
+            filling.Build()
+        if not filling.IsDone():
+            continue
+        patch = _mended(BRep_Tool.Surface_s(filling.Face()), loop)
+        if patch is not None and area(patch) < _largest_skin(loop):
+            return patch
+    raise KernelError(f"the kernel finds no sound filling for a loop of {len(loop)} edges")
+
+
+def _largest_skin(loop: Loop) -> float:
+    """Return the area [mm^2] that a taut skin over a loop cannot exceed: length^2 / 4 pi (isoperimetric inequality of
+    minimal surfaces), with room for a skin that is not quite taut. The kernel once made one of 800 000 mm^2.
+    """
+    points = loop_points(loop, 32)
+    length = float(np.linalg.norm(np.roll(points, -1, axis=0) - points, axis=1).sum())
+    return SLACK_SKIN * length**2 / (4.0 * math.pi)
 
 
 def loop_points(loop: Loop, count: int) -> np.ndarray:
@@ -134,14 +193,16 @@ def _nested(group: list[_Flat], loops: Sequence[Loop]) -> list[FlatPatch]:
     first /= np.linalg.norm(first)
     axes = np.column_stack([first, np.cross(normal, first)])
     plan = {f.number: f.points @ axes for f in group}
-    area = {n: signed_area(p) for n, p in plan.items()}
+    signed = {n: signed_area(p) for n, p in plan.items()}
     hole_of: dict[int, int] = {}
-    for number in sorted(plan, key=lambda n: -abs(area[n])):
+    for number in sorted(plan, key=lambda n: -abs(signed[n])):
         around = [
-            o for o in plan if o != number and abs(area[o]) > abs(area[number]) and _inside(plan[number], plan[o])
+            o
+            for o in plan
+            if o != number and abs(signed[o]) > abs(signed[number]) and _lies_within(plan[number], plan[o])
         ]
-        parent = min(around, key=lambda o: abs(area[o]), default=None)
-        if parent is not None and parent not in hole_of and area[number] * area[parent] < 0:
+        parent = min(around, key=lambda o: abs(signed[o]), default=None)
+        if parent is not None and parent not in hole_of and signed[number] * signed[parent] < 0:
             hole_of[number] = parent
     patches = []
     plane = plane_through(centre, normal)
@@ -149,8 +210,8 @@ def _nested(group: list[_Flat], loops: Sequence[Loop]) -> list[FlatPatch]:
         if number in hole_of:
             continue
         holes = [h for h, parent in hole_of.items() if parent == number]
-        outline = loops[number] if area[number] > 0 else _turned(loops[number])
-        inner = [wire_of(loops[h] if area[h] < 0 else _turned(loops[h])) for h in holes]
+        outline = loops[number] if signed[number] > 0 else _turned(loops[number])
+        inner = [wire_of(loops[h] if signed[h] < 0 else _turned(loops[h])) for h in holes]
         try:
             face = plane_face(plane, wire_of(outline), inner)
         except KernelError:
@@ -160,7 +221,7 @@ def _nested(group: list[_Flat], loops: Sequence[Loop]) -> list[FlatPatch]:
     return patches
 
 
-def _inside(points: np.ndarray, polygon: np.ndarray) -> bool:
+def _lies_within(points: np.ndarray, polygon: np.ndarray) -> bool:
     """True when two far-apart points of one loop lie inside another polygon."""
     return all(_contains(polygon, points[k]) for k in (1, len(points) // 2))
 
@@ -178,15 +239,41 @@ def _turned(loop: Loop) -> list[TopoDS_Edge]:
     return [backward(e) for e in reversed(loop)]
 
 
-def _trimmed(surface: object, loop: Loop) -> TopoDS_Face | None:
-    maker = BRepBuilderAPI_MakeFace(surface, wire_of(loop), True)
-    if not maker.IsDone():
-        return None
-    fixer = ShapeFix_Face(maker.Face())
-    fixer.Perform()
-    result: TopoDS_Shape = fixer.Result()
-    face = TopoDS.Face_s(result) if result.ShapeType() == TopAbs_FACE else fixer.Face()
-    return face if is_valid(face) else None
+def _trimmed(surface: Geom_Surface, loop: Loop) -> TopoDS_Face | None:
+    """Return the part of a round surface inside a loop that lies on it."""
+    bare = TopoDS_Face()
+    BRep_Builder().MakeFace(bare, surface, 1e-7)
+    for edge in loop:
+        BOPTools_AlgoTools2D.BuildPCurveForEdgeOnFace_s(forward(edge), bare)
+    return _inside(bare, wire_of(loop))
+
+
+def _mended(surface: Geom_Surface, loop: Loop) -> TopoDS_Face | None:
+    """Return the part of a free surface inside a loop near it; the kernel's repair finds the curves on the surface."""
+    for edges in (loop, _turned(loop)):
+        maker = BRepBuilderAPI_MakeFace(surface, wire_of(edges), True)
+        if not maker.IsDone():
+            continue
+        fixer = ShapeFix_Face(maker.Face())
+        fixer.Perform()
+        result: TopoDS_Shape = fixer.Result()
+        face = TopoDS.Face_s(result) if result.ShapeType() == TopAbs_FACE else fixer.Face()
+        if area(face) > 0.0:
+            return face if is_valid(face) else None
+    return None
+
+
+def _inside(bare: TopoDS_Face, wire: TopoDS_Wire) -> TopoDS_Face | None:
+    """Return a face without boundary as the one inside a wire, whichever way that runs.
+
+    The wrong side has negative area; the kernel calls it valid, and finds no triangles in it.
+    """
+    for turned in (wire, wire.Reversed()):
+        face = TopoDS.Face_s(bare.EmptyCopied())
+        BRep_Builder().Add(face, turned)
+        if area(face) > 0.0:
+            return face if is_valid(face) else None
+    return None
 
 
 def _same_region(patch: TopoDS_Face, host: TopoDS_Face) -> bool:
