@@ -11,12 +11,13 @@ from OCP.BRep import BRep_Builder, BRep_Tool
 from OCP.BRepAdaptor import BRepAdaptor_Curve, BRepAdaptor_Surface
 from OCP.TopAbs import TopAbs_FORWARD, TopAbs_REVERSED
 from OCP.TopExp import TopExp
-from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Iterator, TopoDS_Shape, TopoDS_Vertex, TopoDS_Wire
+from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Vertex, TopoDS_Wire
 
 from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
 from moldgen.kernel.build import forward, vertex_at
 from moldgen.kernel.shells import solid_from_faces
+from moldgen.kernel.topology import parts_of
 
 STRAY = 1.2
 """Tolerance of the pieces over the largest distance found between the curves of the edge."""
@@ -57,10 +58,10 @@ def _rebuilt(body: Body, face: TopoDS_Face, chains: Mapping[int, list[TopoDS_Edg
     builder = BRep_Builder()
     flat = face.Oriented(TopAbs_FORWARD)
     new = flat.EmptyCopied()
-    for wire in _parts(flat):
+    for wire in parts_of(flat):
         loop = TopoDS_Wire()
         builder.MakeWire(loop)
-        for edge in _parts(wire.Oriented(TopAbs_FORWARD)):
+        for edge in parts_of(wire.Oriented(TopAbs_FORWARD)):
             chain = chains.get(body.edge_index.FindIndex(edge) - 1)
             if chain is None:
                 builder.Add(loop, edge)
@@ -71,14 +72,6 @@ def _rebuilt(body: Body, face: TopoDS_Face, chains: Mapping[int, list[TopoDS_Edg
         loop.Closed(True)
         builder.Add(new, loop.Oriented(wire.Orientation()))
     return TopoDS.Face_s(new.Oriented(face.Orientation()))
-
-
-def _parts(shape: TopoDS_Shape) -> list[TopoDS_Shape]:
-    iterator, found = TopoDS_Iterator(shape), []
-    while iterator.More():
-        found.append(iterator.Value())
-        iterator.Next()
-    return found
 
 
 def _stray(body: Body, number: int) -> float:

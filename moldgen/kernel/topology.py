@@ -10,7 +10,7 @@ from OCP.BRep import BRep_Builder, BRep_Tool
 from OCP.BRepAdaptor import BRepAdaptor_Curve
 from OCP.TopAbs import TopAbs_EDGE, TopAbs_FACE, TopAbs_REVERSED, TopAbs_ShapeEnum, TopAbs_SOLID, TopAbs_VERTEX
 from OCP.TopExp import TopExp, TopExp_Explorer
-from OCP.TopoDS import TopoDS, TopoDS_Compound, TopoDS_Edge, TopoDS_Face, TopoDS_Shape, TopoDS_Vertex
+from OCP.TopoDS import TopoDS, TopoDS_Compound, TopoDS_Edge, TopoDS_Face, TopoDS_Iterator, TopoDS_Shape, TopoDS_Vertex
 from OCP.TopTools import (
     TopTools_IndexedDataMapOfShapeListOfShape,
     TopTools_IndexedMapOfShape,
@@ -66,6 +66,15 @@ def walk(shape: TopoDS_Shape, kind: TopAbs_ShapeEnum) -> Iterator[TopoDS_Shape]:
     while explorer.More():
         yield explorer.Current()
         explorer.Next()
+
+
+def parts_of(shape: TopoDS_Shape) -> list[TopoDS_Shape]:
+    """Return the direct parts of a shape, in order, oriented as they are used in it."""
+    iterator, found = TopoDS_Iterator(shape), []
+    while iterator.More():
+        found.append(iterator.Value())
+        iterator.Next()
+    return found
 
 
 def shape_list(shapes: Iterable[TopoDS_Shape]) -> TopTools_ListOfShape:

@@ -9,6 +9,7 @@ import numpy as np
 from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
 from moldgen.kernel.edge_split import parameter_range, split_edges
+from moldgen.kernel.level_faces import split_vertical_faces
 from moldgen.kernel.level_split import level_curves, level_parameters, upright_lines
 from moldgen.kernel.patches import loop_points
 from moldgen.kernel.rehearse import LIMIT_S, survives
@@ -41,6 +42,8 @@ def split_at_level(
         and heights[f, 0] < level - ABOVE_BELOW
         and heights[f, 1] > level + ABOVE_BELOW
     ]
+    if crossing and not all_faces:
+        body, crossing = split_vertical_faces(body, crossing, level)
     tools = level_curves([body.faces[f] for f in crossing], level) if crossing else []
     touched = list(crossing)
     if all_faces:
@@ -53,7 +56,7 @@ def split_at_level(
     if not tools:
         return body
     faces = sorted(set(touched))
-    if all_faces and not survives(lambda: split_faces(body, faces, tools)):
+    if not survives(lambda: split_faces(body, faces, tools)):
         raise KernelError(f"splitting {len(faces)} faces along {len(tools)} lines did not end within {LIMIT_S:g} s")
     return split_faces(body, faces, tools)
 

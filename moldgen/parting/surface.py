@@ -42,7 +42,7 @@ class Rung(StrEnum):
 class ClosedLoop:
     """One loop of the parting line and how it was closed.
 
-    edges : number of edges; off_plane : edges that needed a vertical curtain
+    edges : number of edges; off_plane : edges with a vertical face beside them
     at : a point of the loop [mm]; span : extent of the loop in x, y, z [mm]
     refused : the better rungs that failed, with the reason
     """
@@ -116,7 +116,7 @@ def _close_outside(
         except KernelError as error:
             refused.append(f"{Rung.RUN_OFF}: {error.what}")
         else:
-            return list(ran.faces), ran.rim, _closed(Rung.RUN_OFF, loop, 0)
+            return list(ran.faces), ran.rim, _closed(Rung.RUN_OFF, loop, ran.upright)
     rim = rectangle_rim(corners[0], corners[1], level)
     around = plane_face(plane_through((0, 0, level), (0, 0, 1)), wire_of(rim.edges), [wire_of(curtain.foot).Reversed()])
     bad = [f for f in (around, *curtain.faces) if not is_valid(f)]
