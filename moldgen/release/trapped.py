@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from enum import StrEnum
 
 import numpy as np
@@ -13,7 +13,7 @@ from moldgen.kernel.body import Body
 from moldgen.kernel.meshsolid import MeshSolid, PieceMesh, mesh_solid, piece_mesh, thick_pieces, thickness
 from moldgen.kernel.tracer import Tracer
 from moldgen.release.kinds import FaceKinds, Kind
-from moldgen.release.sweep import CAP, contested_sweeps
+from moldgen.release.sweep import CAP, WALL, contested_sweeps
 from moldgen.tolerances import NOISE_THICKNESS, RUB_THICKNESS
 
 SMALL_TOUCH = 1e-4
@@ -111,31 +111,44 @@ def trapped_between(body: Body, kinds: FaceKinds, part: MeshSolid, above: MeshSo
     """
     inside = (above ^ below) - part
     thick = thick_pieces(inside, NOISE_THICKNESS)
-    meshes = [piece_mesh(piece) for piece in thick]
-    sides = _open_sides(body, meshes)
+    meshes, sides = _beside(body, [piece_mesh(piece) for piece in thick])
     found = [_measured(body, kinds, p, m, s) for p, m, s in zip(thick, meshes, sides, strict=True)]
     noise = max(0.0, float(inside.volume()) - sum(p.volume_mm3 for p in found))
     found.sort(key=lambda p: (-round(p.volume_mm3, 6), tuple(round(c, 6) for c in p.at)))
     return Trapped(tuple(found), noise, part, above, below)
 
 
-def _open_sides(body: Body, meshes: list[PieceMesh]) -> list[np.ndarray]:
-    """Return for each piece the ends of its sides towards open air, seen along the pull, (s, 2, 2) [mm].
+def _beside(body: Body, meshes: list[PieceMesh]) -> tuple[list[PieceMesh], list[np.ndarray]]:
+    """Return the pieces, walls of the sweeps that stand against a vertical face of the body numbered as that face,
+    and for each piece the ends of its sides towards open air, seen along the pull, (s, 2, 2) [mm].
 
-    A wall of a sweep bounds the piece either there or where it stands against a vertical face of the body: just
-    outside it, the next face along the pull looks up if that place is inside the body.
+    Just outside a wall there is plastic if the next face along the pull looks up; the face between is the nearest one
+    on the way back into the piece.
     """
-    walls = [m.vertices[m.triangles[m.face > CAP]] for m in meshes]
+    where = [np.flatnonzero(m.face > CAP) for m in meshes]
+    walls = [m.vertices[m.triangles[own]] for m, own in zip(meshes, where, strict=True)]
     if not any(len(w) for w in walls):
-        return [np.zeros((0, 2, 2)) for _ in meshes]
+        return meshes, [np.zeros((0, 2, 2)) for _ in meshes]
     corners = np.concatenate(walls)
     normal = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
     outward = normal / np.maximum(np.linalg.norm(normal, axis=1), 1e-30)[:, None]
-    first = Tracer(body.mesh).first_triangle(corners.mean(axis=1) + LOOK_OUT * outward, (0.0, 0.0, 1.0))
+    outside = corners.mean(axis=1) + LOOK_OUT * outward
+    tracer = Tracer(body.mesh)
+    first = tracer.first_triangle(outside, (0.0, 0.0, 1.0))
     hit = body.mesh.corners[first]
     closed = (first >= 0) & (np.cross(hit[:, 1] - hit[:, 0], hit[:, 2] - hit[:, 0])[:, 2] > 0.0)
-    ends = np.split(~closed, np.cumsum([len(w) for w in walls])[:-1])
-    return [_longest_edges(wall[free]) for wall, free in zip(walls, ends, strict=True)]
+    back = tracer.first_triangle(outside, -outward)
+    number = np.where(closed & (back >= 0), body.mesh.face[back], WALL)
+    ends = np.cumsum([len(w) for w in walls])[:-1]
+    split = zip(meshes, where, np.split(number, ends), strict=True)
+    sides = [_longest_edges(wall[free]) for wall, free in zip(walls, np.split(~closed, ends), strict=True)]
+    return [_numbered(mesh, own, new) for mesh, own, new in split], sides
+
+
+def _numbered(mesh: PieceMesh, own: np.ndarray, number: np.ndarray) -> PieceMesh:
+    face = mesh.face.copy()
+    face[own] = number
+    return replace(mesh, face=face)
 
 
 def _longest_edges(corners: np.ndarray) -> np.ndarray:
