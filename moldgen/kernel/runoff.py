@@ -44,15 +44,19 @@ DIAGONALS = ((1, 1), (-1, 1), (-1, -1), (1, -1))
 BACKTRACK = 1e-7
 """mm: how far a chain may run against its own direction before it is refused."""
 
+UPRIGHT = 1e-5
+"""mm: an edge that covers no more than this, seen along the pull, is vertical."""
+
 Loop = Sequence[TopoDS_Edge]
 
 
 @dataclass(frozen=True)
 class RunOff:
-    """Faces from the loop to the sides of the block, and the rim they leave there."""
+    """Faces from the loop to the sides of the block, the rim they leave there, and how many of them stand upright."""
 
     faces: tuple[TopoDS_Face, ...]
     rim: Rim
+    upright: int
 
 
 @dataclass(frozen=True)
@@ -88,6 +92,11 @@ def run_off(loop: Loop, low: np.ndarray, high: np.ndarray) -> RunOff:
     KernelError : a chain doubles back on its way along the side, or the kernel cannot make a face
     """
     return _Runner(loop, low, high).run()
+
+
+def _is_upright(edge: TopoDS_Edge) -> bool:
+    """True when an edge runs along the pull, so that what it is carried along is a vertical face."""
+    return bool(np.ptp(edge_points(edge, 9)[:, :2], axis=0).max() < UPRIGHT)
 
 
 def _furthest(edge: TopoDS_Edge, dx: int, dy: int) -> float:
@@ -143,7 +152,7 @@ class _Runner:
         rim = Rim(tuple(corners[i] for i in order), tuple(tuple(sides[i]) for i in order))
         if any(not is_valid(f) for f in faces):
             raise KernelError("a face of the run-off is invalid")
-        return RunOff(tuple(faces), rim)
+        return RunOff(tuple(faces), rim, sum(_is_upright(e) for e in self.loop))
 
     def _corner(self, number: int, extreme: int, corner: TopoDS_Vertex, sides: list[list[TopoDS_Edge]]) -> TopoDS_Face:
         """Return the level rectangle at one diagonal extreme; add its outer edges to the sides it touches."""
@@ -176,7 +185,7 @@ class _Runner:
         travel = way.sense * np.diff(points[:, way.along])
         if travel.min() < -BACKTRACK:
             raise KernelError("the parting line doubles back along a side of the block")
-        if np.ptp(points[:, way.along]) < 1e-5 and np.ptp(points[:, way.axis]) > 1e-5:
+        if np.ptp(points[:, way.along]) < UPRIGHT and np.ptp(points[:, way.axis]) > UPRIGHT:
             raise KernelError("the parting line runs square to a side of the block")
         following = (k + 1) % len(self.loop)
         ends = self._far(k, number), self._far(following, number)
