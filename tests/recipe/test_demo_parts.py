@@ -10,8 +10,8 @@ import pytest
 from moldgen.kernel.body import Body
 from moldgen.kernel.features import build_recipe
 from moldgen.kernel.measure import is_valid
-from moldgen.kernel.rays import blocked
 from moldgen.kernel.topology import solids_of
+from moldgen.kernel.tracer import Tracer
 from moldgen.spec.load import load_spec
 
 SPECS = Path(__file__).resolve().parents[2] / "specs"
@@ -44,7 +44,8 @@ def test_every_point_sees_up_or_down(demo: tuple[str, Body]) -> None:
     normals = np.cross(mesh.corners[:, 1] - mesh.corners[:, 0], mesh.corners[:, 2] - mesh.corners[:, 0])
     normals /= np.maximum(np.linalg.norm(normals, axis=1), 1e-12)[:, None]
     origins = mesh.corners.mean(axis=1) + 0.02 * normals
-    trapped = blocked(mesh, origins, (0, 0, 1)) & blocked(mesh, origins, (0, 0, -1))
+    tracer = Tracer(mesh)
+    trapped = tracer.blocked(origins, (0, 0, 1)) & tracer.blocked(origins, (0, 0, -1))
     assert mesh.areas()[trapped].sum() < 0.01
 
 

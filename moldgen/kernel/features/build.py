@@ -11,7 +11,7 @@ from moldgen.errors import KernelError, PartError
 from moldgen.kernel.features import bodywork, copies, edges, holes, posts, primitives, sweeps
 from moldgen.kernel.features.frame import Frame, frame_on
 from moldgen.kernel.features.select import Chooser
-from moldgen.kernel.features.shapes import LEAST_CHANGE, boundary, combine, moved
+from moldgen.kernel.features.shapes import LEAST_CHANGE, boundary, combine, combine_sized, moved
 from moldgen.kernel.features.tools import Bench, Maker, Step
 from moldgen.kernel.measure import is_valid, volume
 from moldgen.kernel.topology import faces_of, solids_of
@@ -130,16 +130,17 @@ class _Workshop:
             self._replace(name, solid, None)
             return
         before = self._body(body)
-        self._replace(body, combine(mode, before, [s.solid for s in group], self.sizes[body]), before)
+        solid, size = combine_sized(mode, before, [s.solid for s in group], self.sizes[body])
+        self._replace(body, solid, before, size)
 
-    def _replace(self, name: str, solid: TopoDS_Shape, before: TopoDS_Shape | None) -> None:
+    def _replace(self, name: str, solid: TopoDS_Shape, before: TopoDS_Shape | None, size: float | None = None) -> None:
         """Put a new state of a body in place, after the checks that hold for every feature."""
         pieces = solids_of(solid)
         if len(pieces) != 1:
             raise PartError(f"the body '{name}' falls into {len(pieces)} pieces")
         if not is_valid(pieces[0]):
             raise PartError(f"the body '{name}' would cross itself", remedy="move the feature by 0.01 mm, or resize it")
-        size = volume(pieces[0])
+        size = volume(pieces[0]) if size is None else size
         if size < LEAST_CHANGE:
             raise PartError(f"the body '{name}' would have no volume")
         if before is not None and abs(size - self.sizes[name]) < LEAST_CHANGE:

@@ -43,14 +43,21 @@ _BOOLEANS: Final = {"add": BRepAlgoAPI_Fuse, "cut": BRepAlgoAPI_Cut, "intersect"
 _VERBS: Final = {"add": "join", "cut": "cut", "intersect": "intersect"}
 
 
-def combine(mode: str, body: TopoDS_Shape, tools: Sequence[TopoDS_Shape], size: float | None = None) -> TopoDS_Shape:
-    """Return the body after adding, cutting or intersecting with the tools, as one valid solid.
+def combine(mode: str, body: TopoDS_Shape, tools: Sequence[TopoDS_Shape]) -> TopoDS_Shape:
+    """Return the body after adding, cutting or intersecting with the tools, as one valid solid (see `combine_sized`)."""
+    return combine_sized(mode, body, tools, volume(body))[0]
+
+
+def combine_sized(
+    mode: str, body: TopoDS_Shape, tools: Sequence[TopoDS_Shape], size: float
+) -> tuple[TopoDS_Shape, float]:
+    """Return the body after adding, cutting or intersecting with the tools, as one valid solid, and its volume [mm^3].
 
     Parameters
     ----------
     mode : ``add``, ``cut`` or ``intersect``
     body, tools : solids
-    size : volume of the body [mm^3], if it is known (on spline faces it takes the kernel a while)
+    size : volume of the body [mm^3]: on spline faces it takes the kernel a while, so nobody asks twice
 
     Raises
     ------
@@ -70,8 +77,8 @@ def combine(mode: str, body: TopoDS_Shape, tools: Sequence[TopoDS_Shape], size: 
     if pieces > 1:
         raise PartError(f"the body falls into {pieces} pieces", remedy="let the bodies overlap, or cut less")
     after = volume(raw)
-    _check_volume(mode, after, volume(body) if size is None else size, sum(volume(t) for t in tools))
-    return tidy(only_solid(raw), after)
+    _check_volume(mode, after, size, sum(volume(t) for t in tools))
+    return tidy(only_solid(raw), after), after
 
 
 def _check_volume(mode: str, after: float, body: float, tools: float) -> None:
@@ -149,10 +156,10 @@ def checked_solid(shape: TopoDS_Shape | None, what: str) -> TopoDS_Shape:
     pieces = [] if shape is None or shape.IsNull() else solids_of(shape)
     if len(pieces) != 1:
         raise PartError(f"{what} gives {len(pieces)} solids instead of one", remedy="check its sizes")
-    solid = pieces[0]
-    if volume(solid) < 0:
+    solid, size = pieces[0], volume(pieces[0])
+    if size < 0:
         solid = TopoDS.Solid_s(solid.Reversed())
-    if volume(solid) < LEAST_CHANGE or not is_valid(solid):
+    if abs(size) < LEAST_CHANGE or not is_valid(solid):
         raise PartError(f"{what} gives a solid that crosses itself or is empty", remedy="check its sizes")
     return solid
 
