@@ -9,11 +9,13 @@ from moldgen.catalog.eyebolts import Eyebolt, all_eyebolts, eyebolt_for
 from moldgen.catalog.fits import Bore, FitBand, bore, fit_band, fit_bands, fit_clearance
 from moldgen.catalog.pins import (
     Pin,
+    ShoulderedPin,
     core_pin_blank,
     core_pin_series,
     ejector_pin_down,
     ejector_pin_series,
     ejector_pin_up,
+    shouldered_pin_series,
 )
 from moldgen.catalog.resins import Resin, all_resins, resin, resin_names
 from moldgen.catalog.sizes import SizeSeries, preferred_size_up, size_series
@@ -29,6 +31,7 @@ __all__ = [
     "Range",
     "Resin",
     "Row",
+    "ShoulderedPin",
     "SizeSeries",
     "Steel",
     "all_eyebolts",
@@ -47,6 +50,7 @@ __all__ = [
     "preferred_size_up",
     "resin",
     "resin_names",
+    "shouldered_pin_series",
     "size_series",
     "steel",
     "steel_numbers",

@@ -26,6 +26,31 @@ class Pin(Row):
         return next((one for one in self.lengths if one >= length), None)
 
 
+@dataclass(frozen=True, kw_only=True)
+class ShoulderedPin(Row):
+    """One shouldered ejector pin: a thin tip on a thicker shank [mm].
+
+    shank_lengths : from the foot of the head to the shoulder, one for each of the lengths
+    """
+
+    diameter: float
+    shank: float
+    head_diameter: float
+    head_height: float
+    lengths: tuple[float, ...]
+    shank_lengths: tuple[float, ...]
+
+
+@cache
+def shouldered_pin_series() -> tuple[ShoulderedPin, ...]:
+    """Return the shouldered ejector pins, thinnest tip first.
+
+    >>> [(pin.diameter, pin.shank) for pin in shouldered_pin_series()][:2]
+    [(0.8, 2.0), (1.0, 2.0)]
+    """
+    return tuple(sorted(read_rows("pins_shouldered.yaml", ShoulderedPin), key=lambda pin: pin.diameter))
+
+
 @cache
 def ejector_pin_series() -> tuple[Pin, ...]:
     """Return the ejector pins, thinnest first.

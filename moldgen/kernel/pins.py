@@ -41,12 +41,23 @@ class Below:
 
     fit_low : lower end of the fit; shoulder : upper face of the head; foot : lower end of the pin
     head : diameter of the head, 0 without one
+    shank, shank_top : diameter and upper end of a shank that is thicker than the pin's tip, 0 without one
     """
 
     fit_low: float
     shoulder: float
     foot: float
     head: float
+    shank: float = 0.0
+    shank_top: float = 0.0
+
+    @property
+    def collars(self) -> tuple[tuple[float, float, float], ...]:
+        """Everything thicker than the tip, from the highest down: diameter, upper end, lower end."""
+        head = (self.head, self.shoulder, self.foot)
+        end = self.shoulder if self.head > 0.0 else self.foot
+        found = ((self.shank, self.shank_top, end), head)
+        return tuple(c for c in found if c[0] > 0.0)
 
 
 def flat_top(plug: TopoDS_Shape, fit_low: float) -> float | None:
@@ -151,17 +162,17 @@ def _rim(upper: Sequence[TopoDS_Face], fit_low: float) -> TopoDS_Wire:
 
 
 def _lower_faces(rim: TopoDS_Wire, axis: Place, below: Below) -> list[TopoDS_Face]:
-    head = below.head > 0.0
-    end = below.shoulder if head else below.foot
+    collars = below.collars
+    end = collars[0][1] if collars else below.foot
     faces, foot = [], rim
     if below.fit_low - end > LEVEL:
         shank = BRepPrimAPI_MakePrism(rim, gp_Vec(0.0, 0.0, end - below.fit_low))
         faces, foot = faces_of(shank.Shape()), TopoDS.Wire_s(shank.LastShape())
-    if head:
-        about = gp_Ax2(point((*axis, end)), gp_Dir(0.0, 0.0, 1.0), gp_Dir(1.0, 0.0, 0.0))
-        circle = wire_of([BRepBuilderAPI_MakeEdge(gp_Circ(about, below.head / 2)).Edge()])
-        collar = BRepPrimAPI_MakePrism(circle, gp_Vec(0.0, 0.0, below.foot - end))
-        ring = plane_face(plane_through((0.0, 0.0, end), (0.0, 0.0, 1.0)), circle, [foot])
+    for diameter, high, low in collars:
+        about = gp_Ax2(point((*axis, high)), gp_Dir(0.0, 0.0, 1.0), gp_Dir(1.0, 0.0, 0.0))
+        circle = wire_of([BRepBuilderAPI_MakeEdge(gp_Circ(about, diameter / 2)).Edge()])
+        collar = BRepPrimAPI_MakePrism(circle, gp_Vec(0.0, 0.0, low - high))
+        ring = plane_face(plane_through((0.0, 0.0, high), (0.0, 0.0, 1.0)), circle, [foot])
         faces += [ring, *faces_of(collar.Shape())]
         foot = TopoDS.Wire_s(collar.LastShape())
     return [*faces, _disc(foot, below.foot)]

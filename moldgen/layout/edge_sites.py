@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Final
 
 import numpy as np
 
 from moldgen.layout.gate_size import THICKEST
+from moldgen.layout.mouth import ACROSS, ENTRY, START, room_for_gates
 from moldgen.layout.view import PartView
 from moldgen.rules.layout_practice import EDGE_GATE_RUNNER, STEEL_TO_EDGE
 
@@ -19,11 +21,14 @@ MOST_PLACES: Final = 240
 ON_LEVEL: Final = 0.01
 """mm: the parting line counts as level within this."""
 
-STRAIGHT: Final = 0.2
-"""mm: the parting line may bend this much over the width of the gate."""
+NEAR_PLANE: Final = 0.1
+"""mm: height over or under the parting plane at which the wall at the parting line is measured."""
 
-ENTRY: Final = 0.4
-"""mm: the part's side may lean back this much over the depth of the gate."""
+SMALLEST: Final = 0.3
+"""mm: a gate that is narrower or shallower than this freezes at once."""
+
+LEAST: Final = 0.12
+"""Share of the mouth that the rules want, by area, from which a smaller gate is taken without being a failure."""
 
 BESIDE: Final = 1.0
 """mm: free room on both sides of the runner, and behind the sprue."""
@@ -37,17 +42,19 @@ class EdgeSites:
     """Places on the parting line, (k, 3) [mm].
 
     inward : (k, 2) unit vectors in plan into the part; wall : (k,) at the place [mm]
-    above : (k,) the part stands over the parting plane there, so the cavity half can hold the gate
+    wanted, room : (k, 2) width and depth of the mouth by the rules, and the largest up to it that meets the part [mm]
+    above : (k,) the cavity half can hold the gate; False: the core half must
     runner : (k,) length that fits between gate and sprue [mm]
-    troubles : (k,) number of rules broken; reasons : what each rule is, with which places break it, (k,) bool
+    reasons : what each rule is, with which places break it, (k,) bool
     """
 
     places: np.ndarray
     inward: np.ndarray
     wall: np.ndarray
+    wanted: np.ndarray
+    room: np.ndarray
     above: np.ndarray
     runner: np.ndarray
-    faces: np.ndarray
     reasons: tuple[tuple[str, np.ndarray], ...]
 
     @property
@@ -55,55 +62,87 @@ class EdgeSites:
         """Number of rules that each place breaks, (k,)."""
         return np.asarray(np.sum([broken for _, broken in self.reasons], axis=0))
 
+    @property
+    def fullness(self) -> np.ndarray:
+        """Area of the mouth as a share of what the rules want, (k,)."""
+        return np.asarray(self.room.prod(axis=1) / self.wanted.prod(axis=1))
+
 
 @dataclass(frozen=True)
 class Need:
-    """What the gate needs: its width, depth and land, diameters of runner and sprue foot [mm], faces to keep off."""
+    """What the gate needs.
+
+    width, land, runner, foot : of the usual gate, its land, diameters of runner and sprue foot [mm]
+    wanted : width and depth (k, 2) of the mouth into walls (k,) [mm]; fixed : whether the spec gives width and depth
+    no_gate : faces to keep off
+    """
 
     width: float
-    depth: float
     land: float
     runner: float
     foot: float
+    wanted: Callable[[np.ndarray], np.ndarray]
+    fixed: tuple[bool, bool]
     no_gate: frozenset[int]
 
 
 def find_edge_sites(view: PartView, need: Need) -> EdgeSites:
     """Return the places along the outer parting line."""
-    places, inward, level, straight = _along(view, need.width)
-    above, below, wall, faces = _entry(view, places, inward, need.depth)
+    line = _Line(view)
+    middle = line.places(view.middle)
+    places, inward = line.at(middle), line.inward(middle, need.width)
+    wall, faces = _entry(view, places, inward)
+    wanted = need.wanted(wall)
+    level = line.level(middle, wanted[:, 0], view.level)
+    room, above = room_for_gates(view, places, inward, wanted, level)
     runner = np.zeros(len(places))
     for length in (EDGE_GATE_RUNNER.low, EDGE_GATE_RUNNER.default):
-        fits = _corridor(view, places, inward, need, length)
-        runner[fits] = length
+        runner[_corridor(view, places, inward, need, length)] = length
+    full = room >= wanted - 1e-9
+    small = (room.min(axis=1) < SMALLEST) | (room.prod(axis=1) < LEAST * wanted.prod(axis=1))
+    small |= (np.array(need.fixed) & ~full).any(axis=1)
     reasons = (
-        ("the parting line is not level there", ~level),
-        ("the parting line bends too much over the width of the gate", ~straight),
-        ("the side of the part is lower than the gate is deep", ~(above | below)),
+        ("the parting line is not level there", ~level[:, ACROSS // 2]),
+        ("the side of the part is too low, too short or too curved for the mouth of the gate", small),
         ("no straight way for runner and sprue beside the part inside the block", runner <= 0.0),
         ("the face is marked no_gate", np.isin(faces, sorted(need.no_gate))),
     )
-    return EdgeSites(places, inward, wall, above, np.maximum(runner, EDGE_GATE_RUNNER.low), faces, reasons)
+    return EdgeSites(places, inward, wall, wanted, room, above, np.maximum(runner, EDGE_GATE_RUNNER.low), reasons)
 
 
-def _along(view: PartView, width: float) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
-    """Return places along the loop, the way in, and whether the line is level and straight over the width there."""
-    loop = view.outline
-    closed = np.vstack([loop, loop[:1]])
-    way = np.r_[0.0, np.cumsum(np.linalg.norm(np.diff(closed, axis=0), axis=1))]
-    total = float(way[-1])
-    count = int(min(max(total / SPACING, 12), MOST_PLACES))
-    middle = np.unique(np.r_[(np.arange(count) + 0.5) / count * total, _crossings(closed, way, view.middle)])
-    offsets = np.linspace(-0.5, 0.5, 7) * (width + 2 * 0.25)
-    at = (middle[:, None] + offsets) % total
-    points = np.stack([np.interp(at, way, closed[:, k]) for k in range(3)], axis=-1)
-    chord = points[:, -1, :2] - points[:, 0, :2]
-    length = np.maximum(np.linalg.norm(chord, axis=1), 1e-9)
-    # the loop turns left, so the part lies to the left of its chord
-    inward = np.column_stack([-chord[:, 1], chord[:, 0]]) / length[:, None] + 0.0
-    off = ((points[:, :, :2] - points[:, 3:4, :2]) * inward[:, None]).sum(axis=2)
-    level = np.abs(points[:, :, 2] - view.level).max(axis=1) < ON_LEVEL
-    return points[:, 3], inward, level, np.ptp(off, axis=1) < STRAIGHT
+class _Line:
+    """The outer parting line by the way along it [mm]."""
+
+    def __init__(self, view: PartView) -> None:
+        loop = view.outline
+        self._closed = np.vstack([loop, loop[:1]])
+        self._way = np.r_[0.0, np.cumsum(np.linalg.norm(np.diff(self._closed, axis=0), axis=1))]
+        self._total = float(self._way[-1])
+
+    def at(self, way: np.ndarray) -> np.ndarray:
+        """Return the points at ways of any shape, (..., 3) [mm]."""
+        turned = way % self._total
+        return np.stack([np.interp(turned, self._way, self._closed[:, k]) for k in range(3)], axis=-1)
+
+    def places(self, middle: np.ndarray) -> np.ndarray:
+        """Return evenly spread ways, and those where the line crosses the middle lines of the part, (k,) [mm]."""
+        count = int(min(max(self._total / SPACING, 12), MOST_PLACES))
+        even = (np.arange(count) + 0.5) / count * self._total
+        return np.unique(np.r_[even, _crossings(self._closed, self._way, middle)])
+
+    def inward(self, way: np.ndarray, width: float) -> np.ndarray:
+        """Return the way into the part, across the chord over a width, (k, 2)."""
+        half = 0.5 * width + 0.25
+        chord = (self.at(way + half) - self.at(way - half))[:, :2]
+        # the loop turns left, so the part lies to the left of its chord
+        length = np.maximum(np.linalg.norm(chord, axis=1), 1e-9)
+        return np.asarray(np.column_stack([-chord[:, 1], chord[:, 0]]) / length[:, None] + 0.0)
+
+    def level(self, way: np.ndarray, widths: np.ndarray, level: float) -> np.ndarray:
+        """Return where the line is on the parting plane at places over widths (k,) [mm], (k, ACROSS) bool."""
+        share = np.linspace(-0.5, 0.5, ACROSS)
+        height = self.at(way[:, None] + share * widths[:, None])[:, :, 2]
+        return np.asarray(np.abs(height - level) < ON_LEVEL)
 
 
 def _crossings(closed: np.ndarray, way: np.ndarray, middle: np.ndarray) -> np.ndarray:
@@ -116,38 +155,32 @@ def _crossings(closed: np.ndarray, way: np.ndarray, middle: np.ndarray) -> np.nd
     return np.concatenate(found)
 
 
-def _entry(
-    view: PartView, places: np.ndarray, inward: np.ndarray, depth: float
-) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
-    """Return whether the part's side stands over / under the plane by the gate's depth, the wall, and the face met."""
-    start = 0.5
-    found = []
+def _entry(view: PartView, places: np.ndarray, inward: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Return the wall behind the places, (k,) [mm], and the face that a gate there would enter, -1 for none, (k,)."""
     way = np.column_stack([inward, np.zeros(len(inward))])
+    found = []
     for sign in (1.0, -1.0):
-        whole = np.ones(len(places), dtype=bool)
-        for share in (0.1, 0.5, 0.95):
-            origin = places - start * way
-            origin[:, 2] = view.level + sign * share * depth
-            distance, triangle = view.probe.first(origin, way)
-            whole &= np.abs(distance - start) < ENTRY
-            if share == 0.5:
-                found.append((distance, triangle, whole))
-    above, below = found[0][2], found[1][2]
+        origin = places - START * way
+        origin[:, 2] += sign * NEAR_PLANE
+        found.append(view.probe.first(origin, way))
+    above = np.abs(found[0][0] - START) < ENTRY
     distance = np.where(above, found[0][0], found[1][0])
     triangle = np.where(above, found[0][1], found[1][1])
-    gap = np.where(np.isfinite(distance), distance, start) - start
+    gap = np.where(np.abs(distance - START) < ENTRY, distance - START, 0.0)
     inside = places + way * (gap + 0.05)[:, None]
-    inside[:, 2] = view.level + np.where(above, 0.5, -0.5) * depth
-    wall = np.minimum(_wall_at(view, inside, way), _wall_at(view, inside + 1.5 * view.wall * way, way))
-    return above, below, wall, np.where(triangle >= 0, view.mesh.face[np.maximum(triangle, 0)], -1)
+    inside[:, 2] += np.where(above, NEAR_PLANE, -NEAR_PLANE)
+    # not at the very edge: it may be rounded
+    deep = [_wall_at(view, inside + share * view.wall * way, way) for share in (0.4, 1.5)]
+    wall = np.minimum(*deep)
+    return wall, np.where(triangle >= 0, view.mesh.face[np.maximum(triangle, 0)], -1)
 
 
 def _wall_at(view: PartView, inside: np.ndarray, way: np.ndarray) -> np.ndarray:
     """Return the smallest extent of the plastic round places in it: along the way in, across it, along the pull."""
     up = np.array([0.0, 0.0, 1.0])
     side = np.column_stack([way[:, 1], -way[:, 0], way[:, 2]])
-    reach = [view.probe.first(inside, d)[0] for d in (way, side, -side, up, -up)]
-    wall = np.minimum(reach[0] + 0.05, np.minimum(reach[1] + reach[2], reach[3] + reach[4]))
+    reach = [view.probe.first(inside, d)[0] for d in (way, -way, side, -side, up, -up)]
+    wall = np.min([reach[0] + reach[1], reach[2] + reach[3], reach[4] + reach[5]], axis=0)
     # outside the plastic a ray finds no end, or the far side of a gap: then the usual wall stands
     return np.where(np.isfinite(wall), np.minimum(wall, THICKEST), view.wall)
 
@@ -167,7 +200,9 @@ def _corridor(view: PartView, places: np.ndarray, inward: np.ndarray, need: Need
         + (half[:, None] * across)[None, :, :, None] * side[:, None, None]
     )
     flat = points.reshape(-1, 2)
-    free = ~np.isfinite(view.underside(flat)[0]).reshape(len(places), -1)
+    free = ~np.isfinite(view.underside(flat)[0])
+    free[free] = view.on_plane(flat[free])
+    free = free.reshape(len(places), -1)
     sprue = places[:, :2] - (need.land + length) * inward
     edge = np.minimum(sprue - view.low[:2], view.high[:2] - sprue).min(axis=1)
     return np.asarray(free.all(axis=1) & (edge >= need.foot / 2 + STEEL_TO_EDGE.default))

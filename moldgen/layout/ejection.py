@@ -11,16 +11,14 @@ from moldgen.catalog import Resin, ejector_pin_down, ejector_pin_series
 from moldgen.finding import Finding, Notes, Severity
 from moldgen.layout.balance import shares
 from moldgen.layout.ejection_checks import check_balance, check_given, check_stays
-from moldgen.layout.pin_search import Place, Task, search_pins, size_cap, standard_pin
+from moldgen.layout.pin_kinds import Place, of_diameter, stack_up
+from moldgen.layout.pin_search import Task, search_pins, size_cap
 from moldgen.layout.sites import Underside
 from moldgen.layout.sticking import Sticking, find_sticking, hold_of_cavity
 from moldgen.layout.view import PartView
 from moldgen.model.layout import Chooser, CorePinLayout, EjectorPinLayout
 from moldgen.model.part import Vector
 from moldgen.quantity import Quantity
-from moldgen.rules.layout_practice import RETAINER_PLATE
-from moldgen.rules.pins import clearance_bore_diameter, euler_buckling_force, guided_fit_length
-from moldgen.rules.practice import PIN_END_FACTOR
 from moldgen.rules.pushing import ejection_stroke_pye
 from moldgen.rules.sheet import given as given_line
 from moldgen.rules.sheet import measured
@@ -75,8 +73,8 @@ def place_ejector_pins(
     if given is None or section.add:
         found, more = search_pins(task, kept)
         notes += more
-    pins = _pins(task, [*kept, *found])
-    notes += check_balance(view, pins, sticking, resin)
+    pins, more = _pins(task, [*kept, *found])
+    notes += more + check_balance(view, pins, sticking, resin)
     return EjectionLayout(pins, sticking.force, stroke, sticking), notes
 
 
@@ -112,9 +110,9 @@ def _given(task: Task, given: tuple[GivenPin, ...]) -> tuple[list[Place], Notes]
         spot = np.array(pin.at[:2])
         diameter = pin.diameter or task.section.diameter or _fitting(task, spot)
         disc = task.under.discs(spot[None], np.array([diameter]))[0]
-        others = [(p.x, p.y, p.diameter) for p in kept]
-        place = Place(float(spot[0]), float(spot[1]), diameter, disc, Chooser.GIVEN)
-        notes += check_given(task.under, (place.x, place.y, diameter), disc, number, others, task.bores)
+        kind = of_diameter(diameter, task.section.edge_clearance)
+        place = Place(float(spot[0]), float(spot[1]), kind, disc, Chooser.GIVEN)
+        notes += check_given(task.under, place, number, kept, task.bores)
         notes += _marked(task.view, place, number, task.no_pins)
         room, needed = task.under.exact_room(spot), diameter / 2 + task.section.edge_clearance
         if disc.whole and disc.core_side and room < needed - 1e-6:
@@ -159,40 +157,61 @@ def _fitting(task: Task, spot: np.ndarray) -> float:
     return (pin or ejector_pin_series()[0]).diameter
 
 
-def _pins(task: Task, places: list[Place]) -> tuple[EjectorPinLayout, ...]:
+def _pins(task: Task, places: list[Place]) -> tuple[tuple[EjectorPinLayout, ...], Notes]:
     """Return the pins in the order of their places, with their share of the force."""
     order = sorted(places, key=lambda p: (p.chooser is not Chooser.GIVEN, round(p.x, 3), round(p.y, 3)))
     spots = np.array([[p.x, p.y] for p in order]).reshape(-1, 2)
     areas = np.array([math.pi / 4 * p.diameter**2 for p in order])
     forces = shares(spots, areas, task.sticking.force, task.sticking.centre)
-    return tuple(
-        _pin(task, place, number, float(force), float(area))
-        for number, (place, force, area) in enumerate(zip(order, forces, areas, strict=True), 1)
-    )
+    pins, ground = [], []
+    for number, (place, force) in enumerate(zip(order, forces, strict=True), 1):
+        pin, cut = _pin(task, place, number, float(force))
+        pins.append(pin)
+        if cut > 0.0:
+            ground.append((cut, pin))
+    return tuple(pins), _ground(task.view, ground)
 
 
-def _pin(task: Task, place: Place, number: int, force: float, area: float) -> EjectorPinLayout:
-    catalog = standard_pin(place.diameter)
-    bottom = float(task.view.low[2])
-    seat = bottom - task.stroke - RETAINER_PLATE.default
-    fit = min(guided_fit_length(place.diameter), max(place.disc.low - bottom, 0.0))
-    needed = place.disc.high - seat
-    free = max(place.disc.low - fit - seat, 1.0)
-    return EjectorPinLayout(
+def _pin(task: Task, place: Place, number: int, force: float) -> tuple[EjectorPinLayout, float]:
+    """Return one pin, and how much of its shank is ground down to the tip's diameter [mm]."""
+    kind, disc = place.kind, place.disc
+    stack = stack_up(kind, task.view, task.stroke, disc.high, disc.low)
+    pin = EjectorPinLayout(
         name=f"ejector pin {number}",
         x=place.x,
         y=place.y,
-        tip_z=place.disc.high,
-        diameter=place.diameter,
-        fit_length=fit,
-        clearance_diameter=clearance_bore_diameter(place.diameter),
-        head_diameter=catalog.head_diameter,
-        head_height=catalog.head_height,
-        seat_z=seat,
-        length=catalog.length_up(needed) or math.ceil(needed),
+        tip_z=disc.high,
+        diameter=kind.diameter,
+        fit_length=stack.fit,
+        clearance_diameter=kind.bore,
+        head_diameter=kind.head_diameter,
+        head_height=kind.head_height,
+        seat_z=stack.seat,
+        length=stack.length,
         force_n=force,
-        pressure_mpa=force / area,
-        buckling_n=euler_buckling_force(place.diameter, free, end_factor=PIN_END_FACTOR.default),
+        pressure_mpa=force / (math.pi / 4 * kind.diameter**2),
+        buckling_n=stack.buckling,
         chosen_by=place.chooser,
-        tip_drop=place.disc.high - place.disc.low,
+        tip_drop=disc.high - disc.low,
+        shank_diameter=kind.shank if kind.stepped else 0.0,
+        shank_length=stack.shank,
     )
+    return pin, stack.ground
+
+
+def _ground(view: PartView, ground: list[tuple[float, EjectorPinLayout]]) -> Notes:
+    """Tell when the tips that are sold are too short for stroke and fit."""
+    if not ground:
+        return Notes()
+    most, pin = max(ground, key=lambda entry: entry[0])
+    finding = Finding(
+        "ejector_pin.ground_shank",
+        Severity.NOTE,
+        f"the shoulder of {len(ground)} ejector pins is ground back by up to {most:.1f} mm: on a pin of "
+        f"{pin.length:g} mm it would run into the fit before the end of the stroke",
+        at=view.place((pin.x, pin.y, pin.tip_z)),
+        value=round(most, 2),
+        unit="mm",
+        remedy="grind the shank to the diameter of the tip, or order pins with a longer tip",
+    )
+    return Notes((finding,))

@@ -7,16 +7,17 @@ from typing import Final
 
 import numpy as np
 
-from moldgen.catalog import Resin, ejector_pin_series
+from moldgen.catalog import Resin, ejector_pin_series, shouldered_pin_series
 from moldgen.finding import Finding, Notes, Severity
 from moldgen.layout.balance import resultant
-from moldgen.layout.sites import Disc, Underside
+from moldgen.layout.pin_kinds import Place
+from moldgen.layout.sites import Underside
 from moldgen.layout.sticking import Sticking
 from moldgen.layout.view import PartView
 from moldgen.model.layout import CorePinLayout, EjectorPinLayout
 from moldgen.quantity import Provenance, Quantity
 from moldgen.rules.layout_practice import PIN_SLOPE, STEEL_BETWEEN_BORES, STEEL_TO_EDGE
-from moldgen.rules.pins import clearance_bore_diameter, euler_buckling_force
+from moldgen.rules.pins import euler_buckling_force
 from moldgen.rules.practice import BUCKLING_SAFETY
 from moldgen.rules.pushing import pin_push_pressure, punch_shear_stress
 
@@ -26,22 +27,18 @@ OFF_CENTRE: Final = 0.1
 PUNCH_SHARE: Final = 0.5
 """Shear stress that may punch a pin through, as a share of the push pressure (common practice)."""
 
-Spot = tuple[float, float, float]
-"""x, y and diameter of a pin [mm]."""
-
 
 def check_given(
     under: Underside,
-    pin: Spot,
-    disc: Disc,
+    pin: Place,
     number: int,
-    others: list[Spot],
+    others: list[Place],
     core_pins: tuple[CorePinLayout, ...],
 ) -> Notes:
     """Return a finding for each rule that pin `number` of the spec breaks; `others` are the ones before it."""
     view = under.view
-    x, y, diameter = pin
-    at = view.place((x, y, disc.high if disc.faces else view.level))
+    disc, diameter = pin.disc, pin.diameter
+    at = view.place((pin.x, pin.y, disc.high if disc.faces else view.level))
     found: list[tuple[str, Severity, str, float | None, float | None, str]] = []
     if not disc.faces:
         found.append(("no_part", Severity.FAILURE, "has no part above it and is left out", None, None, ""))
@@ -58,7 +55,8 @@ def check_given(
     if disc.faces and disc.slope > PIN_SLOPE.default:
         text = f"pushes on a surface that slopes by {disc.slope:.0f} deg"
         found.append(("slope", Severity.WARNING, text, disc.slope, PIN_SLOPE.default, "deg"))
-    if not any(math.isclose(p.diameter, diameter) for p in ejector_pin_series()):
+    series = [*(p.diameter for p in ejector_pin_series()), *(p.diameter for p in shouldered_pin_series())]
+    if not any(math.isclose(d, diameter) for d in series):
         text = f"has a diameter of {diameter:g} mm, which is not in the standard series"
         found.append(("not_standard", Severity.CAUTION, text, diameter, None, "mm"))
     found += _steel(view, pin, others, core_pins)
@@ -81,13 +79,13 @@ def check_given(
 
 
 def _steel(
-    view: PartView, pin: Spot, others: list[Spot], core_pins: tuple[CorePinLayout, ...]
+    view: PartView, pin: Place, others: list[Place], core_pins: tuple[CorePinLayout, ...]
 ) -> list[tuple[str, Severity, str, float | None, float | None, str]]:
-    x, y, diameter = pin
-    bore, limit = clearance_bore_diameter(diameter) / 2, STEEL_BETWEEN_BORES.default
+    x, y = pin.x, pin.y
+    bore, limit = pin.kind.bore / 2, STEEL_BETWEEN_BORES.default
     found: list[tuple[str, Severity, str, float | None, float | None, str]] = []
-    for ox, oy, other in others:
-        steel = math.hypot(ox - x, oy - y) - bore - clearance_bore_diameter(other) / 2
+    for other in others:
+        steel = math.hypot(other.x - x, other.y - y) - bore - other.kind.bore / 2
         if steel < limit:
             text = f"leaves {steel:.2f} mm of steel to another ejector pin's bore"
             found.append(("too_close", Severity.WARNING, text, steel, limit, "mm"))
@@ -189,11 +187,14 @@ def _lines(view: PartView, pins: tuple[EjectorPinLayout, ...], sticking: Stickin
                 "N",
                 "statics of the rigid ejector plate, spread evenly over the pin faces",
                 Provenance.DERIVED,
-                inputs={"pressure": f"{pin.pressure_mpa:.4g} MPa", "buckling force": f"{pin.buckling_n:.5g} N"},
+                inputs={
+                    "pressure": f"{pin.pressure_mpa:.4g} MPa",
+                    "buckling force": f"{pin.buckling_n:.5g} N" + (", tip and shank" if pin.shank_length else ""),
+                },
                 drives=pin.name,
             )
         )
-        if pin is pins[0]:
+        if pin is pins[0] and pin.shank_length == 0.0:
             lines.append(euler_buckling_force.line(f"{pin.name} and pins like it", pin.diameter, free))
     return lines
 

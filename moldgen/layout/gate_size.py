@@ -20,7 +20,7 @@ from moldgen.rules.gate import (
     round_gate_diameter_min,
     sprue_diameter_menges,
 )
-from moldgen.rules.layout_practice import SPRUE_ORIFICE
+from moldgen.rules.layout_practice import GATE_OVER_RUNNER, PIN_GATE_LEAST, SPRUE_ORIFICE
 from moldgen.rules.practice import GATE_LAND, SPRUE_TAPER
 from moldgen.rules.runner import runner_diameter_pye
 from moldgen.rules.sheet import given, measured
@@ -80,40 +80,82 @@ def sized(wall: float) -> float:
     return min(max(wall, THINNEST), THICKEST)
 
 
-def size_edge(section: Gate, resin: Resin, melt: Melt, wall: float, height: float) -> tuple[GateSize, Notes]:
+def wanted_edge(section: Gate, resin: Resin, melt: Melt, walls: np.ndarray) -> np.ndarray:
+    """Return width and depth that an edge gate into walls (k,) [mm] wants: by the rules, as far as the runner feeds it.
+
+    (k, 2) [mm]; what the spec gives is kept.
+    """
+    runner, _ = _runner(melt)
+    values, number = np.unique(np.round(np.clip(walls, THINNEST, THICKEST), 2), return_inverse=True)
+    sizes = [_edge_size(section, resin, melt, float(wall), runner)[:2] for wall in values]
+    return np.array(sizes).reshape(-1, 2)[number.ravel()]
+
+
+def _edge_size(
+    section: Gate, resin: Resin, melt: Melt, wall: float, runner: float
+) -> tuple[float, float, list[Quantity]]:
+    depth_line = edge_gate_depth_pye.line("depth of the gate", resin.gate_factor, wall)
+    width_line = edge_gate_width_pye.line("width of the gate", resin.gate_factor, melt.area)
+    depth = min(depth_line.value, runner) if section.depth is None else section.depth
+    shear_line = edge_gate_width_min.line("width of the gate", melt.rate, depth, resin.shear_limit)
+    width = max(width_line.value, shear_line.value, depth)
+    width = min(width, GATE_OVER_RUNNER.default * runner) if section.width is None else section.width
+    return _up(width), _up(depth), [depth_line, width_line, shear_line]
+
+
+def size_edge(
+    section: Gate, resin: Resin, melt: Melt, wall: float, height: float, room: tuple[float, float] | None = None
+) -> tuple[GateSize, Notes]:
     """Return the sizes of an edge gate.
 
     Parameters
     ----------
     wall : of the part at the gate [mm]
     height : of the cavity's depth over the parting plane, from the plane to the nozzle [mm]
+    room : width and depth of the mouth that the part has room for there [mm]; None for enough
     """
-    wall = sized(wall)
-    depth_line = edge_gate_depth_pye.line("depth of the gate", resin.gate_factor, wall)
-    width_line = edge_gate_width_pye.line("width of the gate", resin.gate_factor, melt.area)
-    depth = depth_line.value if section.depth is None else section.depth
-    shear_line = edge_gate_width_min.line("width of the gate", melt.rate, depth, resin.shear_limit)
-    width = max(width_line.value, shear_line.value, depth) if section.width is None else section.width
-    lines: list[Quantity] = [depth_line, width_line, shear_line]
+    runner, more = _runner(melt)
+    width, depth, lines = _edge_size(section, resin, melt, sized(wall), runner)
+    small: tuple[Finding, ...] = ()
+    if room is not None and (width > room[0] + 1e-9 or depth > room[1] + 1e-9):
+        wanted = f"{width:g} x {depth:g} mm"
+        width, depth = min(width, _down(room[0])), min(depth, _down(room[1]))
+        small = (_smaller(width, depth, wanted),)
     lines += [
         given(f"{k} of the gate", v, "mm", "gate", where=f"gate.{k}")
         for k, v in (("width", section.width), ("depth", section.depth))
         if v is not None
     ]
     shear = slot_shear_rate.line("shear of the melt in the gate", melt.rate, width, depth)
-    runner, more = _runner(melt)
     foot = max(SPRUE_ORIFICE.default + 2 * height * math.tan(math.radians(SPRUE_TAPER.default)), runner)
-    notes = Notes(_sheared(shear, resin), quantities=(*lines, shear)) + more
+    lines += [GATE_OVER_RUNNER.line("width of the gate"), shear]
+    notes = Notes((*small, *_sheared(shear, resin)), quantities=tuple(lines)) + more
     land, more = _land(section)
-    return GateSize(_up(width), _up(depth), land, 0.0, runner, foot), notes + more
+    return GateSize(width, depth, land, 0.0, runner, foot), notes + more
 
 
-def size_pin(section: Gate, resin: Resin, melt: Melt, wall: float) -> tuple[GateSize, Notes]:
-    """Return the sizes of a pin gate into a wall [mm]."""
+def _smaller(width: float, depth: float, wanted: str) -> Finding:
+    return Finding(
+        "gate.small_mouth",
+        Severity.CAUTION,
+        f"the gate is {width:g} x {depth:g} mm, by the rules it should be {wanted}: the side of the part has no room "
+        "for more",
+        where="gate",
+        value=depth,
+        unit="mm",
+        remedy="watch filling and packing, or give the part a flat side for the gate",
+    )
+
+
+def size_pin(section: Gate, resin: Resin, melt: Melt, wall: float, share: float = 1.0) -> tuple[GateSize, Notes]:
+    """Return the sizes of a pin gate into a wall [mm]; `share` of what the rules want where there is no room for it."""
     wall = sized(wall)
     by_pye = pin_gate_diameter_pye.line("diameter of the gate", resin.gate_factor, wall, melt.area)
     by_shear = round_gate_diameter_min.line("diameter of the gate", melt.rate, resin.shear_limit)
-    diameter = _up(max(by_pye.value, by_shear.value)) if section.diameter is None else section.diameter
+    usual = max(by_pye.value, by_shear.value)
+    diameter = (
+        _up(max(share * usual, min(usual, PIN_GATE_LEAST.default))) if section.diameter is None else section.diameter
+    )
     shear = round_shear_rate.line("shear of the melt in the gate", melt.rate, diameter)
     land, more = _land(section)
     notes = Notes(_sheared(shear, resin), quantities=(by_pye, by_shear, shear)) + more
@@ -182,6 +224,11 @@ def _runner(melt: Melt, length: float = 12.0) -> tuple[float, Notes]:
 def _up(value: float) -> float:
     """Round up to a twentieth of a millimeter: what a shop grinds to."""
     return round(math.ceil(value / 0.05 - 1e-9) * 0.05, 2)
+
+
+def _down(value: float) -> float:
+    """Round down to a twentieth of a millimeter; what is smaller than that stays as it is."""
+    return round(math.floor(value / 0.05 + 1e-9) * 0.05, 2) or value
 
 
 def _sheared(shear: Quantity, resin: Resin) -> tuple[Finding, ...]:

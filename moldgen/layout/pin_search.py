@@ -1,4 +1,4 @@
-"""The search for ejector pins: diameter and places, on gentle slopes if there is room."""
+"""The search for ejector pins: size and places; straight pins if they find room, else shouldered ones."""
 
 from __future__ import annotations
 
@@ -8,22 +8,22 @@ from typing import Final
 
 import numpy as np
 
-from moldgen.catalog import Pin, Resin, ejector_pin_series, ejector_pin_up
+from moldgen.catalog import Resin, ejector_pin_series, shouldered_pin_series
 from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.layout.balance import shares
 from moldgen.layout.pin_choice import Choice, Counts, Load, gather, mirrors, units
-from moldgen.layout.sites import Disc, Underside
+from moldgen.layout.pin_kinds import PinKind, Place, of_diameter, shouldered, stack_up, straight
+from moldgen.layout.sites import Underside
 from moldgen.layout.sticking import Sticking
 from moldgen.layout.view import PartView
 from moldgen.model.layout import Chooser, CorePinLayout
 from moldgen.rules.layout_practice import (
     EJECTOR_FEWEST,
     PIN_GENTLE_SLOPE,
-    RETAINER_PLATE,
+    SMALL_PIN_EDGE,
     STEEL_BETWEEN_BORES,
     STEEL_TO_EDGE,
 )
-from moldgen.rules.pins import clearance_bore_diameter, euler_buckling_force
 from moldgen.rules.practice import BUCKLING_SAFETY
 from moldgen.spec.sections import Ejection
 
@@ -49,6 +49,9 @@ MOST_UNITS: Final = 700
 SIZES_TRIED: Final = 3
 """Diameters that are compared, the largest that fit."""
 
+BETTER: Final = 0.8
+"""Pins that come nearer to an edge are taken when they press on the part with no more than this share."""
+
 HEADS_APART: Final = 1.5
 """mm: steel between the counterbores of two ejector pin heads."""
 
@@ -65,17 +68,6 @@ class Task:
     sticking: Sticking
     stroke: float
     no_pins: frozenset[int]
-
-
-@dataclass(frozen=True)
-class Place:
-    """One ejector pin: axis and diameter [mm], what lies over its end face, who chose it."""
-
-    x: float
-    y: float
-    diameter: float
-    disc: Disc
-    chooser: Chooser
 
 
 def size_cap(view: PartView) -> float:
@@ -102,59 +94,102 @@ def _load(task: Task) -> Load:
 
 
 def search_pins(task: Task, kept: list[Place]) -> tuple[list[Place], Notes]:
-    """Return moldgen's pins: on gentle slopes if enough of them find room there, else also on steeper ones."""
-    gentle = Underside(task.view, task.no_pins, PIN_GENTLE_SLOPE.default)
+    """Return moldgen's pins: straight ones if they find room, else shouldered ones that come nearer to edges."""
     load = _load(task)
-    best = _size_and_places(replace(task, under=gentle), kept, load)
-    if best is None or not best.enough:
-        steep = _size_and_places(task, kept, load)
-        if steep is not None and (best is None or steep.enough or steep.pressure < best.pressure):
-            best = steep
+    best = _on_slopes(task, kept, load, _straight_kinds(task))
+    why = "thickest standard pins whose places are hardly farther from what sticks than those of thinner ones"
+    few = int(EJECTOR_FEWEST.default) - len(kept)
+    for edge in _small_edges(task):
+        if best is not None and (best.enough or (len(best.places) >= few and not best.kind.stepped)):
+            break
+        other = _on_slopes(task, kept, load, _small_kinds(task, edge))
+        if other is not None and (best is None or _better(other, best, few)):
+            best, why = other, "too few places for straight pins: shouldered pins, as thick as their tips may be"
     if best is None:
         return [], _no_room(task, kept)
-    spots, diameter = best.places, best.diameter
-    discs = task.under.discs(spots, np.full(len(spots), diameter))
-    found = [
-        Place(float(x), float(y), diameter, disc, Chooser.MOLDGEN) for (x, y), disc in zip(spots, discs, strict=True)
-    ]
-    why = "thickest standard pins whose places are hardly farther from what sticks than those of thinner ones"
-    return found, Notes(decisions=(Decision("ejector pins", f"{len(found)} of {diameter:g} mm", why),))
+    spots, kind = best.places, best.kind
+    discs = task.under.discs(spots, np.full(len(spots), kind.diameter))
+    found = [Place(float(x), float(y), kind, disc, Chooser.MOLDGEN) for (x, y), disc in zip(spots, discs, strict=True)]
+    name = f" shouldered, shank {kind.shank:g} mm" if kind.stepped else ""
+    notes = Notes(decisions=(Decision("ejector pins", f"{len(found)} of {kind.diameter:g} mm{name}", why),))
+    return found, notes + (_small(task, found, kind) if kind.edge < task.section.edge_clearance else Notes())
+
+
+def _better(other: _Proposal, best: _Proposal, few: int) -> bool:
+    """Return whether pins that come nearer to edges are worth it; `few` pins are needed to hold the part level."""
+    missing, now = (max(few - len(p.places), 0) for p in (other, best))
+    return other.enough or missing < now or (missing == now and other.pressure < BETTER * best.pressure)
+
+
+def _on_slopes(task: Task, kept: list[Place], load: Load, kinds: list[PinKind]) -> _Proposal | None:
+    """Return pins on gentle slopes if enough of them find room there, else also on steeper ones."""
+    gentle = Underside(task.view, task.no_pins, PIN_GENTLE_SLOPE.default)
+    best = _size_and_places(replace(task, under=gentle), kept, load, kinds)
+    if best is None or not best.enough:
+        steep = _size_and_places(task, kept, load, kinds)
+        if steep is not None and (best is None or steep.enough or steep.pressure < best.pressure):
+            best = steep
+    return best
+
+
+def _straight_kinds(task: Task) -> list[PinKind]:
+    """Return the straight pins that may be taken, thickest first; a diameter of the spec leaves only that one."""
+    edge, wanted = task.section.edge_clearance, task.section.diameter
+    if wanted is not None:
+        kind = of_diameter(wanted, edge)
+        return [] if kind.stepped else [kind]
+    return [straight(p, edge) for p in reversed(ejector_pin_series()) if p.diameter <= size_cap(task.view) + 1e-9]
+
+
+def _small_kinds(task: Task, edge: float) -> list[PinKind]:
+    """Return the shouldered pins that may be taken, thickest first."""
+    wanted = task.section.diameter
+    series = reversed(shouldered_pin_series())
+    return [shouldered(p, edge) for p in series if wanted is None or math.isclose(p.diameter, wanted)]
+
+
+def _small_edges(task: Task) -> list[float]:
+    """Return the edge clearances of shouldered pins, in the order tried; one that the spec gives is kept."""
+    limit = task.section.edge_clearance
+    if "edge_clearance" in task.section.model_fields_set:
+        return [limit]
+    return [min(limit, SMALL_PIN_EDGE.default), min(limit, SMALL_PIN_EDGE.low)]
 
 
 @dataclass(frozen=True)
 class _Proposal:
-    """Places (n, 2) for pins of one diameter [mm], the highest pressure on the part [MPa], whether they suffice."""
+    """Places (n, 2) for pins of one kind, the highest pressure on the part [MPa], whether they suffice."""
 
     places: np.ndarray
-    diameter: float
+    kind: PinKind
     pressure: float
     enough: bool
     cost: float
 
 
-def _size_and_places(task: Task, kept: list[Place], load: Load) -> _Proposal | None:
-    """Return the largest diameter whose places are hardly worse than those of smaller ones; None without any place."""
-    places, room = task.under.grid()
+def _size_and_places(task: Task, kept: list[Place], load: Load, kinds: list[PinKind]) -> _Proposal | None:
+    """Return the largest pins whose places are hardly worse than those of smaller ones; None without any place."""
+    if not kinds:
+        return None
+    places, room = task.under.fine_grid if kinds[0].stepped else task.under.grid
     group = mirrors(places, room, task.view.middle) if not kept else [np.array([1.0, 1.0])]
-    sizes = [p for p in reversed(ejector_pin_series()) if p.diameter <= size_cap(task.view) + 1e-9]
-    if task.section.diameter is not None:
-        sizes = [standard_pin(task.section.diameter)]
     fixed = np.array([[p.x, p.y] for p in kept]).reshape(-1, 2)
     tried: list[_Proposal] = []
-    for pin in sizes:
-        choice = _choose(task, pin, (places, room, group), load, fixed)
+    for kind in kinds:
+        choice = _choose(task, kind, (places, room, group), load, fixed)
         if choice is None or choice.count() <= len(kept):
             continue
-        pressure = _highest_pressure(task, kept, choice.result(), pin.diameter)
-        enough = choice.count() >= _counts(task, pin).least and pressure <= task.resin.push_pressure
-        tried.append(_Proposal(choice.result(), pin.diameter, pressure, enough, choice.cost()))
+        pressure = _highest_pressure(task, kept, choice.result(), kind.diameter)
+        enough = choice.count() >= _counts(task, kind).least and pressure <= task.resin.push_pressure
+        tried.append(_Proposal(choice.result(), kind, pressure, enough, choice.cost()))
         if sum(p.enough for p in tried) >= SIZES_TRIED:
             break
     good = [p for p in tried if p.enough]
     if good:
         limit = WORSE * min(p.cost for p in good)
         return next(p for p in good if p.cost <= limit)
-    return min(tried, key=lambda p: p.pressure, default=None)
+    few = int(EJECTOR_FEWEST.default) - len(kept)
+    return min(tried, key=lambda p: (max(few - len(p.places), 0), p.pressure), default=None)
 
 
 def _highest_pressure(task: Task, kept: list[Place], places: np.ndarray, diameter: float) -> float:
@@ -164,54 +199,38 @@ def _highest_pressure(task: Task, kept: list[Place], places: np.ndarray, diamete
     return float((shares(spots, areas, task.sticking.force, task.sticking.centre) / areas).max())
 
 
-def standard_pin(diameter: float) -> Pin:
-    """Return the standard pin of this diameter; for another diameter the next one's head is used."""
-    like = ejector_pin_up(diameter) or ejector_pin_series()[-1]
-    if math.isclose(like.diameter, diameter):
-        return like
-    return Pin(
-        name=f"{diameter:g}",
-        diameter=diameter,
-        head_diameter=max(like.head_diameter, diameter + 2.0),
-        head_height=like.head_height,
-        lengths=like.lengths,
-        facts=like.facts,
-    )
-
-
 def _choose(
-    task: Task, pin: Pin, grid: tuple[np.ndarray, np.ndarray, list[np.ndarray]], load: Load, fixed: np.ndarray
+    task: Task, kind: PinKind, grid: tuple[np.ndarray, np.ndarray, list[np.ndarray]], load: Load, fixed: np.ndarray
 ) -> Choice | None:
     places, room, group = grid
-    needed = pin.diameter / 2 + task.section.edge_clearance
-    spots = places[(room >= needed) & _clear(task, places, pin)]
+    spots = places[(room >= kind.room) & _clear(task, places, kind)]
     if len(spots) == 0:
         return None
-    apart = pin.head_diameter + HEADS_APART
+    apart = kind.head_diameter + HEADS_APART
     sets = units(spots, group, task.view.middle, apart)
     if len(sets) == 0:
         sets = units(spots, group[:1], task.view.middle, apart)
     sets = sets[:: math.ceil(len(sets) / MOST_UNITS)]
     choice = Choice(spots, sets, load, apart, fixed)
-    choice.search(_counts(task, pin))
+    choice.search(_counts(task, kind))
     return choice
 
 
-def _counts(task: Task, pin: Pin) -> Counts:
+def _counts(task: Task, kind: PinKind) -> Counts:
     """Return how many pins of a size the part and the pins themselves ask for."""
     force, limit = task.sticking.force, task.resin.push_pressure
-    area = math.pi / 4 * pin.diameter**2
+    area = math.pi / 4 * kind.diameter**2
     by_pressure = force / (limit * area)
-    by_punch = force / (0.5 * limit * math.pi * pin.diameter * max(task.view.wall, 0.1))
-    length = max(task.view.level - task.view.low[2] + task.stroke + RETAINER_PLATE.default, 1.0)
-    hold = euler_buckling_force(pin.diameter, float(length)) / BUCKLING_SAFETY.default
+    by_punch = force / (0.5 * limit * math.pi * kind.diameter * max(task.view.wall, 0.1))
+    level = task.view.level
+    hold = stack_up(kind, task.view, task.stroke, level, level).buckling / BUCKLING_SAFETY.default
     least = max(int(EJECTOR_FEWEST.default), math.ceil(max(by_pressure, by_punch, force / hold) - 1e-9))
     return Counts(least, max(MOST_PINS, 2 * least))
 
 
-def _clear(task: Task, places: np.ndarray, pin: Pin) -> np.ndarray:
+def _clear(task: Task, places: np.ndarray, kind: PinKind) -> np.ndarray:
     """Return which places keep clear of core pins and of the sides of the block, (k,) bool."""
-    bore = clearance_bore_diameter(pin.diameter) / 2
+    bore = kind.bore / 2
     view, steel = task.view, STEEL_BETWEEN_BORES.default
     edge = np.minimum(places - view.low[:2], view.high[:2] - places).min(axis=1)
     free = edge >= bore + STEEL_TO_EDGE.default
@@ -221,10 +240,30 @@ def _clear(task: Task, places: np.ndarray, pin: Pin) -> np.ndarray:
     return np.asarray(free)
 
 
+def _small(task: Task, found: list[Place], kind: PinKind) -> Notes:
+    """Tell that small pins come nearer to an edge than pins usually do."""
+    room = [(task.under.exact_room(np.array([p.x, p.y])), p) for p in found]
+    least, place = min(room, key=lambda entry: entry[0])
+    left = least - kind.diameter / 2
+    usual, name = task.section.edge_clearance, f"{len(found)} shouldered pins of {kind.diameter:g} mm"
+    finding = Finding(
+        "ejection.small_pins",
+        Severity.CAUTION,
+        f"straight ejector pins find too little room: {name} come as near as {left:.2f} mm to an edge of the part, "
+        f"at least {kind.edge:g} mm is common practice for pins so small",
+        at=task.view.place((place.x, place.y, place.disc.high)),
+        value=round(left, 3),
+        limit=usual,
+        unit="mm",
+        remedy="give the part a pad for a thicker pin, or watch these pins for wear and flash",
+    )
+    return Notes((finding,), quantities=(SMALL_PIN_EDGE.line("shouldered ejector pins"),))
+
+
 def _no_room(task: Task, kept: list[Place]) -> Notes:
-    _, room = task.under.grid()
-    smallest = task.section.diameter or ejector_pin_series()[0].diameter
-    needed = smallest / 2 + task.section.edge_clearance
+    _, room = task.under.fine_grid
+    kinds = [*_straight_kinds(task), *(k for e in _small_edges(task) for k in _small_kinds(task, e))]
+    needed = min(kind.room for kind in kinds)
     widest = float(room.max()) if len(room) else 0.0
     if widest <= 0.0:
         reason = "the core half forms no surface that a pin could push on: all of it is steeper than 30 deg or marked"
@@ -235,11 +274,11 @@ def _no_room(task: Task, kept: list[Place]) -> Notes:
     finding = Finding(
         "ejection.no_room",
         Severity.CAUTION if kept else Severity.FAILURE,
-        f"no place for an ejector pin: {reason}",
+        f"no place for an ejector pin, not even for the thinnest shouldered one: {reason}",
         at=task.view.place((*task.view.middle, task.view.body.box[0][2])),
         value=round(widest, 3),
         limit=round(needed, 3),
         unit="mm",
-        remedy="give the part a flat pad, allow a smaller edge_clearance, give pins, or use a stripper plate",
+        remedy="push the part off with a stripper plate or sleeve, give it a flat pad, or give pins in the spec",
     )
     return Notes((finding,))

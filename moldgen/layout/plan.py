@@ -51,18 +51,25 @@ def _pins(view: PartView, resin: Resin, wishes: Wishes) -> tuple[tuple[CorePinLa
     """Return the pins; where core pins of moldgen's own choice crowd out the ejectors, they stay in the block."""
     core_pins, notes = find_core_pins(view, wishes.core_pins, resin, wishes.core_pins_at)
     ejection, more = place_ejector_pins(view, wishes.ejection, resin, core_pins, wishes.pins, wishes.no_pins)
-    pressure = _pressure(ejection)
-    if pressure <= resin.push_pressure or all(p.chosen_by is Chooser.GIVEN for p in core_pins):
+    pressure, small = _pressure(ejection), _small(ejection)
+    if (pressure <= resin.push_pressure and not small) or all(p.chosen_by is Chooser.GIVEN for p in core_pins):
         return core_pins, ejection, notes + more
     own = wishes.core_pins.model_copy(update={"pick": "none"})
     fewer, told = find_core_pins(view, own, resin, wishes.core_pins_at)
     other, other_more = place_ejector_pins(view, wishes.ejection, resin, fewer, wishes.pins, wishes.no_pins)
-    if _pressure(other) > WORTH * pressure:
+    gain = _pressure(other) <= WORTH * pressure or (small and not _small(other))
+    if not gain:
         return core_pins, ejection, notes + more
-    why = f"core pins would crowd the ejector pins, which would press on the part with {pressure:.0f} MPa"
+    press = f"{'shouldered ones would ' if small else 'which would '}press on the part with {pressure:.0f} MPa"
+    why = f"core pins would crowd the ejector pins, {press}"
     refused = tuple(f"{p.name} at {p.x:.1f}, {p.y:.1f}" for p in core_pins if p.chosen_by is Chooser.MOLDGEN)
     decision = Decision("core pins", f"{len(fewer)}, the other round cores stay in the block", why, "", refused)
     return fewer, other, told + other_more + Notes(decisions=(decision,))
+
+
+def _small(ejection: EjectionLayout) -> bool:
+    """Return whether there was only room for shouldered pins."""
+    return any(pin.shank_length > 0.0 and pin.chosen_by is Chooser.MOLDGEN for pin in ejection.pins)
 
 
 def _pressure(ejection: EjectionLayout) -> float:

@@ -21,22 +21,12 @@ GRID_PLACES: Final = 2500
 FINEST_GRID: Final = 0.8
 """mm: least distance of two places."""
 
+FINE_PLACES: Final = 4000
+FINE_GRID: Final = 0.2
+"""The same for pins so small that the usual grid would step over their places."""
+
 RING: Final = 24
 """Points on a pin's rim, and half as many on a ring of half its radius, that must meet the part."""
-
-
-@dataclass(frozen=True)
-class Bore:
-    """A bore in the core that pins must keep away from, along the pull [mm].
-
-    x, y : axis; radius : of the bore at the height of the part; foot_radius : its largest, at the bottom of the block
-    """
-
-    x: float
-    y: float
-    radius: float
-    foot_radius: float
-    name: str
 
 
 @dataclass(frozen=True)
@@ -102,10 +92,19 @@ class Underside:
             room[on] = np.sqrt(np.maximum(sampled**2 - (SPACING / 2) ** 2, 0.0))
         return room
 
+    @cached_property
     def grid(self) -> tuple[np.ndarray, np.ndarray]:
-        """Return places on a grid that is symmetric about the middle of the part, (k, 2) [mm], and their room."""
+        """Places on a grid that is symmetric about the middle of the part, (k, 2) [mm], and their room, (k,) [mm]."""
+        return self._grid(GRID_PLACES, FINEST_GRID)
+
+    @cached_property
+    def fine_grid(self) -> tuple[np.ndarray, np.ndarray]:
+        """As `grid`, for small pins."""
+        return self._grid(FINE_PLACES, FINE_GRID)
+
+    def _grid(self, count: int, finest: float) -> tuple[np.ndarray, np.ndarray]:
         low, high = (v[:2] for v in self.view.body.box)
-        step = max(float(np.sqrt(np.prod(high - low) / GRID_PLACES)), FINEST_GRID)
+        step = max(float(np.sqrt(np.prod(high - low) / count)), finest)
         half = np.floor((high - low) / 2 / step).astype(int)
         x, y = (self.view.middle[k] + step * np.arange(-half[k], half[k] + 1) for k in (0, 1))
         places = np.stack(np.meshgrid(x, y, indexing="ij"), axis=-1).reshape(-1, 2)

@@ -14,16 +14,24 @@ RING: Final = 16
 BESIDE: Final = 0.5
 """mm: level surface wanted round the gate."""
 
+STEP: Final = 0.4
+"""mm: a step that the mouth of a gate cannot bridge."""
+
+ROUNDS: Final = 4
+"""Times that places are moved away from edges."""
+
 
 @dataclass(frozen=True)
 class TopSites:
     """Places on the cavity's side of the part, (k, 3) [mm]; wall : (k,) under them, along the pull [mm].
 
+    open : (k,) share of the gate's rim that lies on the surface that it feeds, 0 where there is no part
     reasons : what each rule is, with which places break it, (k,) bool
     """
 
     places: np.ndarray
     wall: np.ndarray
+    open: np.ndarray
     reasons: tuple[tuple[str, np.ndarray], ...]
 
     @property
@@ -58,7 +66,23 @@ def find_top_sites(view: PartView, plan: np.ndarray, diameter: float, no_gate: f
         ("the face is marked no_gate", np.isin(faces, sorted(no_gate))),
     )
     depth = np.where(np.isfinite(depth), depth + 1e-3, view.wall)
-    return TopSites(places, np.minimum(depth, _across(view, places, depth)), reasons)
+    rim, _ = view.topside((plan[:, None] + diameter / 2 / (diameter / 2 + BESIDE) * ring).reshape(-1, 2))
+    beside = np.abs(rim.reshape(len(plan), -1) - places[:, 2:]) < STEP  # the height beside the part is infinite
+    return TopSites(places, np.minimum(depth, _across(view, places, depth)), on * beside.mean(axis=1), reasons)
+
+
+def centered(view: PartView, plan: np.ndarray, radius: float) -> np.ndarray:
+    """Return plan places (k, 2) moved away from steps and edges of the upper surface within a radius [mm]."""
+    turn = 2 * np.pi * np.arange(RING) / RING
+    way = np.column_stack([np.cos(turn), np.sin(turn)])
+    for _ in range(ROUNDS):
+        height, _ = view.topside(plan)
+        around, _ = view.topside((plan[:, None] + radius * way).reshape(-1, 2))
+        on = np.isfinite(height)
+        off = np.abs(around.reshape(len(plan), -1) - np.where(on, height, 0.0)[:, None]) > STEP
+        away = -(off[:, :, None] * way).sum(axis=1) / RING
+        plan = plan + np.where(on[:, None], radius * away, 0.0)
+    return plan
 
 
 def _across(view: PartView, places: np.ndarray, depth: np.ndarray) -> np.ndarray:

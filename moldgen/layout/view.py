@@ -16,6 +16,9 @@ from moldgen.model.part import MoldFrame
 OFF = 1e-3
 """mm: how far inside its face a ray starts, so that it does not meet that face again."""
 
+LEVEL = 0.02
+"""mm: what lies this close to the parting plane is on it."""
+
 THICKEST = 1e3
 """mm: stands for a wall that a ray does not leave (a hole in the mesh)."""
 
@@ -107,6 +110,22 @@ class PartView:
             return np.asarray(self.halves.parting_line[0], float)
         best = max(loops, key=lambda p: abs(plan_area(p)))
         return best if plan_area(best) > 0.0 else best[::-1]
+
+    @cached_property
+    def _core(self) -> Probe | None:
+        """Rays against the core half; None where its surface beside the part is the parting plane."""
+        if self.halves.core is None or np.abs(self.outline[:, 2] - self.level).max() < LEVEL:
+            return None
+        return Probe(Body(self.halves.core).mesh)
+
+    def on_plane(self, places: np.ndarray) -> np.ndarray:
+        """Return whether the halves meet in the parting plane at plan places (k, 2) beside the part, (k,) bool."""
+        if self._core is None or len(places) == 0:
+            return np.ones(len(places), dtype=bool)
+        start = float(self.high[2]) + 1.0
+        origins = np.column_stack([places, np.full(len(places), start)])
+        distance, _ = self._core.first(origins, np.array([0.0, 0.0, -1.0]))
+        return np.asarray(np.abs(start - distance - self.level) < LEVEL)
 
     def underside(self, places: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """Look up from under the part: height [mm] of the first surface over plan places (k, 2) and its triangle.

@@ -25,6 +25,10 @@ CORE_PIN_SHALLOW: Final = Practice("length over diameter below which a core is l
 HEAD_SHOULDER: Final = Practice("least shoulder of a ground pin head, on the radius", 0.5, 0.5, 1.0, "mm")
 PIN_SLOPE: Final = Practice("steepest surface that an ejector pin pushes on", 30.0, 15.0, 45.0, "deg")
 PIN_GENTLE_SLOPE: Final = Practice("slope up to which an ejector pin does not slip", 15.0, 10.0, 20.0, "deg")
+SMALL_PIN_EDGE: Final = Practice(
+    "steel between the rim of a small ejector pin and the edge of what it pushes on", 0.5, 0.3, 1.0, "mm"
+)
+SHOULDER_GAP: Final = Practice("room over the shoulder of an ejector pin at the end of its stroke", 1.0, 0.5, 2.0, "mm")
 EJECTOR_FEWEST: Final = Practice(
     "fewest ejector pins of one part", 3.0, 2.0, 4.0, "1", "common practice: three points hold a plane"
 )
@@ -40,6 +44,8 @@ SPRUE_ORIFICE: Final = Practice(
     "mm",
     "sprue bushes on the market, from memory, unverified",
 )
+GATE_OVER_RUNNER: Final = Practice("width of an edge gate over the runner that feeds it", 2.0, 1.0, 3.0, "1")
+PIN_GATE_LEAST: Final = Practice("smallest pin gate", 0.6, 0.5, 1.0, "mm")
 STEEL_BETWEEN_BORES: Final = Practice("least steel between the bores of two pins", 1.5, 1.0, 3.0, "mm")
 STEEL_TO_FEATURE: Final = Practice("least steel between a pin's bore and a wall of the core", 1.0, 1.0, 3.0, "mm")
 STEEL_TO_EDGE: Final = Practice("least steel between a bore and the side of the block", 5.0, 4.0, 10.0, "mm")

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -95,6 +95,11 @@ def _ejector_pin(ground: Ground, bottom: float, pin: EjectorPinLayout) -> PinBor
     sits = bore("ejector pin")
     steps = _steps(bottom, fit_low, (pin.diameter, pin.clearance_diameter), float(heights.max()), sits.fit)
     below = Below(fit_low, pin.seat_z + pin.head_height, pin.seat_z, pin.head_diameter)
+    if pin.shank_diameter > 0.0:
+        # where the fit reaches deeper than laid out the shoulder goes down with it: it must never run into the fit
+        deeper = max(pin.tip_z - pin.tip_drop - pin.fit_length - fit_low, 0.0)
+        top = max(pin.shoulder_z - deeper, below.shoulder)
+        below = replace(below, shank=pin.shank_diameter, shank_top=top)
     return _bore_of(pin, Role.EJECTOR_PIN, (pin.x, pin.y, pin.diameter), steps, below, heights)
 
 

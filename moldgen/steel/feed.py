@@ -190,8 +190,8 @@ def _reach(gate: GateLayout, ground: Ground, near: np.ndarray, inward: np.ndarra
     origins = near + across.reshape(-1, 1) * side + up.reshape(-1, 1) * np.array([0.0, 0.0, 1.0])
     start = float(np.dot(np.array(gate.at) - near, inward))
     behind = ground.ahead(origins, inward) - start
-    back, share = _wall(behind)
-    return back + INTO, _open_mouth(gate, share, "edge gate")
+    back, part = _wall(behind)
+    return back + INTO, _open_mouth(gate, part, "edge gate")
 
 
 def _foot(gate: GateLayout, ground: Ground, diameter: float) -> tuple[float, Notes]:

@@ -74,13 +74,15 @@ def _same(kind: _Kind, one: PinBore, plug: Any, top: float | None) -> bool:
     sizes = (
         (one.diameter, other.diameter),
         (ours.head, theirs.head),
+        (ours.shank, theirs.shank),
+        (ours.shank_top - ours.foot if ours.shank else 0.0, theirs.shank_top - theirs.foot if theirs.shank else 0.0),
         (ours.shoulder - ours.foot, theirs.shoulder - theirs.foot),
         (ours.fit_low - ours.foot, theirs.fit_low - theirs.foot),
     )
     if one.role is not other.role or (top is None) != (kind.top is None):
         return False
     if top is not None and kind.top is not None:
-        sizes = (*sizes[:3], (top - ours.foot, kind.top - theirs.foot))
+        sizes = (*sizes[:-1], (top - ours.foot, kind.top - theirs.foot))
     if any(abs(a - b) > SAME for a, b in sizes):
         return False
     if top is not None:
@@ -96,6 +98,11 @@ def _component(kind: _Kind, name: str, materials: Materials) -> Component:
     one = kind.bore
     material = materials.core_pin if one.role is Role.CORE_PIN else materials.ejector_pin
     note = "tip level" if kind.top is not None else "tip turned" if kind.turned else _SHAPED
+    if one.below.shank > 0.0:
+        above = one.below.shank_top - one.below.foot
+        note += (
+            f"; shouldered: tip {one.diameter:g} mm, shank {one.below.shank:g} mm up to {above:.2f} mm from the foot"
+        )
     if len(kind.members) > 1:
         note += f"; {len(kind.members)} alike: {', '.join(m.name for m in kind.members)}"
     positions = tuple(_origin(m) for m in kind.members)
@@ -105,10 +112,9 @@ def _component(kind: _Kind, name: str, materials: Materials) -> Component:
 def _solid(kind: _Kind) -> Any:
     one, below = kind.bore, kind.bore.below
     if kind.top is not None:
-        head, length = below.shoulder - below.foot, kind.top - below.foot
-        collar = [(below.head / 2, 0.0, head)] if below.head > 0.0 else []
-        shank = (one.diameter / 2, head if collar else 0.0, length)
-        return stepped_solid((0.0, 0.0), [*collar, shank])
+        collars = [(d / 2, low - below.foot, high - below.foot) for d, high, low in reversed(below.collars)]
+        tip = (one.diameter / 2, collars[-1][2] if collars else 0.0, kind.top - below.foot)
+        return stepped_solid((0.0, 0.0), [*collars, tip])
     x, y, z = _origin(one)
     try:
         pin = pin_on_plug(kind.plug, (x, y), below)

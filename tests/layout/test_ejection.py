@@ -13,7 +13,7 @@ from moldgen.layout.core_pins import find_core_pins
 from moldgen.layout.ejection import GivenPin, place_ejector_pins
 from moldgen.layout.sites import Underside
 from moldgen.model.layout import Chooser
-from moldgen.rules.layout_practice import STEEL_BETWEEN_BORES
+from moldgen.rules.layout_practice import SMALL_PIN_EDGE, STEEL_BETWEEN_BORES
 from moldgen.spec.sections import CorePins, Ejection
 
 from .shapes import box, channel, cup, faces_at, lid, plate, view_of
@@ -127,7 +127,7 @@ def test_a_part_without_room_says_so():
     (finding,) = [f for f in notes.findings if f.code == "ejection.no_room"]
     assert finding.severity is Severity.FAILURE
     assert finding.value == pytest.approx(0.6, abs=0.05)
-    assert finding.limit == pytest.approx(2.0)
+    assert finding.limit == pytest.approx(0.8 / 2 + SMALL_PIN_EDGE.low)  # the thinnest shouldered pin
 
 
 def test_marked_faces_stay_free():
