@@ -25,14 +25,15 @@ class BlockLayout:
 
 @dataclass(frozen=True)
 class EjectorPinLayout:
-    """One ejector pin, straight, parallel to the pull.
+    """One ejector pin, parallel to the pull, straight or shouldered.
 
     x, y : axis; tip_z : highest z that the pin may reach on the core surface under its whole face
-    diameter : nominal, of the standard series; fit_length : guided length in the core below the part;
+    diameter : nominal, of the standard series, at the tip; fit_length : guided length in the core below the part;
     clearance_diameter : bore below the fit; head_diameter, head_height; length : catalog length before cutting
     seat_z : lower face of the head, where it rests on the ejector plate while the mold is closed
     force_n : share of the ejection force; pressure_mpa : on the part; buckling_n : Euler load
     tip_drop : how far the core surface falls below tip_z within the pin's face; 0 for a flat tip
+    shank_diameter, shank_length : of a shouldered pin, from its foot to the shoulder; 0 for a straight pin
     """
 
     name: str
@@ -51,6 +52,13 @@ class EjectorPinLayout:
     buckling_n: float
     chosen_by: Chooser
     tip_drop: float = 0.0
+    shank_diameter: float = 0.0
+    shank_length: float = 0.0
+
+    @property
+    def shoulder_z(self) -> float:
+        """Height of the shoulder while the mold is closed [mm]."""
+        return self.seat_z + self.shank_length
 
 
 @dataclass(frozen=True)
