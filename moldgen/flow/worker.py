@@ -201,7 +201,9 @@ def _started(space: Path) -> Iterator[_Child]:
                 stderr=log,
                 pass_fds=(its.fileno(),),
                 start_new_session=True,
-                env={"PYTHONHASHSEED": "0", **os.environ},  # belt and braces: nothing may depend on it
+                # belt and braces: nothing may depend on the hash seed; and what the child and its own children leave
+                # in the temporary folder goes with the workspace, also when they are killed
+                env={"PYTHONHASHSEED": "0", **os.environ, "TMPDIR": str(space)},
             )
         child = _Child(process, ours, space)
         try:
