@@ -37,6 +37,8 @@ class Parted:
 
     body : the part with every split that the parting line needed
     sides : which half forms each of its faces
+    level : height of the parting plane; of the outer loop itself where that is flat
+    asked : the level that the user fixed
     loops : closed loops of directed edges; `outer` is the number of the outer one
     """
 
@@ -52,6 +54,7 @@ class Parted:
     check: HalvesCheck
     deep: bool
     refused: tuple[str, ...]
+    asked: float | None = None
 
 
 @dataclass(frozen=True)
@@ -104,13 +107,13 @@ def part_halves(
             refused.append(f"level {trial.level:.3f}{' (every wall split)' if trial.deep else ''}: {error.what}")
             continue
         if parted.check.proved:
-            return _with_refused(parted, refused)
+            return replace(parted, refused=tuple(refused), asked=level)
         refused.append(f"level {trial.level:.3f}: {parted.check.complaint}")
         unproved.append(parted)
         if len(unproved) >= MOST_CHECKED:
             break
     if unproved:
-        return _with_refused(min(unproved, key=lambda p: p.check.worst), refused)
+        return replace(min(unproved, key=lambda p: p.check.worst), refused=tuple(refused), asked=level)
     raise PartError(
         "no parting level gives two halves: " + "; ".join(refused),
         remedy="give parting.height, or another pull",
@@ -131,6 +134,7 @@ def _part_at(task: _Task, trial: _Trial) -> Parted:
     level = trial.level
     split = split_at_level(task.body, task.kinds, task.contact, task.search, level, all_faces=trial.deep)
     state = _assigned(split, level, task.avoid, (task.kinds, task.contact) if split is task.body else None)
+    level = _own_level(state, level)
     crossing = [split.edge_index.FindIndex(e) - 1 for e in state.loops[state.outer]]
     cut = split_edges_at_level(split, crossing, level)
     if cut is not split:
@@ -144,7 +148,16 @@ def _part_at(task: _Task, trial: _Trial) -> Parted:
         state = _assigned(opened, level, task.avoid, None)
     if state.alike and not trial.deep:
         raise KernelError(f"{len(state.alike) + 1} loops run as the outer one does")
-    return _halves(state, trial, task.corners)
+    return _halves(state, level, trial, task.corners)
+
+
+def _own_level(state: _Assigned, level: float) -> float:
+    """Return the height of the outer loop if that is flat, else `level`.
+
+    A leaning wall can be parted only at its widest, whatever level is tried.
+    """
+    heights = loop_points(state.loops[state.outer], 8)[:, 2]
+    return float(heights.mean()) if np.ptp(heights) < ON_PLANE and abs(heights.mean() - level) > ON_PLANE else level
 
 
 def _is_level(state: _Assigned, level: float) -> bool:
@@ -173,9 +186,9 @@ def _assigned(
     return _Assigned(body, kinds, sides, loops, outer, alike)
 
 
-def _halves(state: _Assigned, trial: _Trial, corners: tuple[np.ndarray, np.ndarray]) -> Parted:
+def _halves(state: _Assigned, level: float, trial: _Trial, corners: tuple[np.ndarray, np.ndarray]) -> Parted:
     body, cavity_side = state.body, state.sides.cavity
-    sheet = make_sheet(body, state.loops, state.outer, trial.level, corners)
+    sheet = make_sheet(body, state.loops, state.outer, level, corners)
     halves = []
     for is_cavity, lid in ((True, corners[1][2]), (False, corners[0][2])):
         own = [f for f, side in zip(body.faces, cavity_side, strict=True) if side == is_cavity]
@@ -191,7 +204,7 @@ def _halves(state: _Assigned, trial: _Trial, corners: tuple[np.ndarray, np.ndarr
         state.sides,
         state.loops,
         state.outer,
-        trial.level,
+        level,
         sheet,
         cavity,
         core,
@@ -199,7 +212,3 @@ def _halves(state: _Assigned, trial: _Trial, corners: tuple[np.ndarray, np.ndarr
         trial.deep,
         (),
     )
-
-
-def _with_refused(parted: Parted, refused: list[str]) -> Parted:
-    return replace(parted, refused=tuple(refused))

@@ -21,6 +21,10 @@ _WHY = {
 }
 
 
+SAME_LEVEL = 1e-3
+"""mm: a parting plane this close to the height asked for lies there."""
+
+
 def parting_line(parted: Parted) -> tuple[np.ndarray, ...]:
     """Return the parting line as closed polylines (k, 3) in the mold frame [mm], the outer one first."""
     order = [parted.outer, *(i for i in range(len(parted.loops)) if i != parted.outer)]
@@ -43,7 +47,7 @@ def told(parted: Parted, frame: MoldFrame) -> Notes:
     )
     steep = [("parting surface", outer), *(("shut-off", s) for s in parted.sheet.shut_offs)]
     findings = tuple(_upright(name, loop, frame) for name, loop in steep if loop.off_plane)
-    return Notes((*findings, *_torn(parted, frame)), (line, surface, *shut_offs))
+    return Notes((*_moved(parted, frame), *findings, *_torn(parted, frame)), (line, surface, *shut_offs))
 
 
 def _decision(topic: str, choice: str, parted: Parted) -> Decision:
@@ -56,6 +60,27 @@ def _shape(loop: ClosedLoop) -> str:
     if loop.rung is Rung.PLANE:
         return "flat"
     return "stepped or curved" if loop.rung is Rung.RUN_OFF else "flat with vertical steps at the part"
+
+
+def _moved(parted: Parted, frame: MoldFrame) -> tuple[Finding, ...]:
+    """Tell that the parting plane is not where the user asked for it: the walls lean, and are widest elsewhere."""
+    if parted.asked is None or abs(parted.level - parted.asked) < SAME_LEVEL:
+        return ()
+    at = frame.to_part(parted.sheet.outer.at)
+    return (
+        Finding(
+            code="parting.level_moved",
+            severity=Severity.CAUTION,
+            message="the parting plane cannot lie at the height given: the walls lean, and the part is widest "
+            "elsewhere",
+            where=f"parting plane through {at[0]:.2f}, {at[1]:.2f}, {at[2]:.2f}",
+            at=at,
+            value=parted.level,
+            limit=parted.asked,
+            unit="mm (mold)",
+            remedy="leave parting.height out, or change the draft of the outer walls",
+        ),
+    )
 
 
 def _upright(name: str, loop: ClosedLoop, frame: MoldFrame) -> Finding:

@@ -104,12 +104,8 @@ def test_the_cost_does_not_depend_on_the_size_of_the_part():
 def test_a_line_along_a_costly_face_costs_more_and_is_left():
     body, cheap = sides(BLOCK, 5.0)  # either end is as good
     walls = [f for f in range(6) if np.isclose(body.face_heights[f], (0, 10)).all()]
-    end = (
-        int(np.argmax(body.face_centres[:, 2]))
-        if cheap.cavity[walls[0]] is np.False_
-        else int(np.argmin(body.face_centres[:, 2]))
-    )
-    _, dear = sides(BLOCK, 5.0, frozenset({end}))
+    near = np.argmin if cheap.cavity[walls[0]] else np.argmax  # walls in the cavity: the line runs round the lower end
+    _, dear = sides(BLOCK, 5.0, frozenset({int(near(body.face_centres[:, 2]))}))
     assert (dear.cavity[walls] != cheap.cavity[walls]).all()
     assert dear.cost == cheap.cost
 
@@ -150,10 +146,9 @@ def test_only_walls_on_the_outline_are_split_at_first():
 
 def test_closed_edges_are_split_only_where_their_loop_is_not_flat():
     bored = Body(solids.cut(solids.cylinder(10, 40), solids.cylinder(3, 30, at=(0, -15, 20), along=(0, 1, 0))))
-    bore = np.array(
-        [bored.surface_kind(f) == "cylinder" and np.ptp(bored.face_heights[f]) < 7 for f in range(len(bored.faces))]
-    )
-    loops = boundary_loops(bored, bore)
+    low = np.ptp(bored.face_heights, axis=1) < 7
+    rounded = np.array([bored.surface_kind(f) == "cylinder" for f in range(len(bored.faces))])
+    loops = boundary_loops(bored, low & rounded)
     split = split_closed_edges(bored, loops)
     assert len(split.edges) == len(bored.edges) + 2 * sum(len(loop) == 1 for loop in loops)
     flat = Body(solids.cylinder(5, 3))
@@ -167,7 +162,7 @@ def test_extremes_and_crossings_become_vertices():
     cornered = split_at_extremes(body, loop)
     (loop,) = boundary_loops(cornered, np.arange(3) == int(np.argmax(cornered.face_centres[:, 2])))
     assert len(loop) == 4 + 1  # and where the circle began
-    level = float(loop_points(loop, 8)[:, 2].mean())
+    level = float(loop_points(loop, 8)[:, 2].mean()) + 1.0
     numbers = [cornered.edge_index.FindIndex(e) - 1 for e in loop]
     cut = split_edges_at_level(cornered, numbers, level)
     assert len(cut.edges) == len(cornered.edges) + 2
