@@ -20,7 +20,7 @@ class HalvesCheck:
 
     balance : |cavity + core + part - block| / block by volume
     static_mm : thickest overlap of two of the three at rest
-    cavity_mm, core_mm : thickest overlap with the part while that half opens (three places of its way)
+    cavity_mm, core_mm : thickest overlap with the part while that half opens (two places of its way)
     """
 
     balance: float
@@ -61,7 +61,7 @@ def check_halves(cavity: Any, core: Any, body: Body, block_volume: float) -> Hal
         return HalvesCheck(gap, NOT_MEASURED, NOT_MEASURED, NOT_MEASURED)
     static = max(overlap_depth(*p) for p in ((upper, thin_lower), (upper, thin_part), (lower, thin_part)))
     height = float(body.box[1][2] - body.box[0][2])
-    ways = (0.1, 1.0, height / 2)
+    ways = (0.1, height / 2)
     return HalvesCheck(
         gap, static, _worst_on_way(upper, thin_part, ways), _worst_on_way(lower, thin_part, tuple(-w for w in ways))
     )
