@@ -2,14 +2,17 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 from dataclasses import replace
 from pathlib import Path
 
+from moldgen.errors import SpecError
 from moldgen.flow.folder import fresh_folder, write_new_file
 from moldgen.flow.job import Job, JobKind, JobResult
 from moldgen.flow.tell import Tell
 from moldgen.spec.load import LoadedSpec, load_spec
+from moldgen.spec.schema import Spec
 
 OUT = Path("out")
 """Where outputs go, in the folder where moldgen is run, unless the spec or the command line says otherwise."""
@@ -22,7 +25,8 @@ def build(job: Job, tell: Tell) -> JobResult:
     with fresh_folder(final, inputs=_inputs(loaded), tell=tell) as aside:
         from moldgen.flow.build import build_tool  # noqa: PLC0415  loads the kernel
 
-        result = build_tool(loaded, aside, job.options, tell)
+        with _located(loaded):
+            result = build_tool(loaded, aside, job.options, tell)
     return replace(result, output=final)
 
 
@@ -33,7 +37,8 @@ def check(job: Job, tell: Tell) -> JobResult:
     with fresh_folder(final, inputs=_inputs(loaded), tell=tell) as aside:
         from moldgen.flow.check import check_part  # noqa: PLC0415  loads the kernel
 
-        result = check_part(loaded, aside, tell)
+        with _located(loaded):
+            result = check_part(loaded, aside, tell)
     return replace(result, output=final)
 
 
@@ -79,6 +84,19 @@ def _loaded(job: Job, suffix: str) -> tuple[LoadedSpec, Path]:
     given = loaded.spec.output.folder
     place = OUT if given is None else loaded.folder / given
     return loaded, place / f"{loaded.spec.name}{suffix}"
+
+
+@contextmanager
+def _located(loaded: LoadedSpec) -> Iterator[None]:
+    """Let a mistake that a stage finds in a key of the spec, such as ``blocks.length``, be told with its place."""
+    try:
+        yield
+    except SpecError as error:
+        key = error.where.replace("[", ".").replace("]", "")
+        if key.partition(".")[0] in Spec.model_fields:
+            error.what = f"{error.where}: {error.what}"
+            error.where = loaded.locate(key)
+        raise
 
 
 def _inputs(loaded: LoadedSpec) -> list[Path]:
