@@ -16,6 +16,7 @@ from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Vertex, TopoDS_W
 from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
 from moldgen.kernel.build import forward, vertex_at
+from moldgen.kernel.measure import is_valid
 from moldgen.kernel.shells import solid_from_faces
 from moldgen.kernel.topology import parts_of
 
@@ -42,8 +43,9 @@ def split_edges(body: Body, places: Mapping[int, Sequence[float]]) -> Body:
     touched = {int(f) for number in chains for f in body.edge_faces[number]}
     faces = [_rebuilt(body, face, chains) if i in touched else face for i, face in enumerate(body.faces)]
     result = solid_from_faces(faces)
-    if result.complaint:
-        raise KernelError(f"splitting {len(places)} edges left an unsound solid: {result.complaint}")
+    bad = sum(not is_valid(faces[i]) for i in touched)
+    if result.gap or bad:
+        raise KernelError(f"splitting {len(places)} edges left {bad} invalid faces {result.gap}".rstrip())
     return body.like(result.solid)
 
 

@@ -54,8 +54,8 @@ def split_vertical_faces(body: Body, faces: Sequence[int], level: float) -> tupl
     if len(pieces) == len(cut.faces):
         return body, list(faces)
     result = solid_from_faces(pieces)
-    if result.complaint:
-        raise KernelError(f"splitting {len(faces)} walls at height {level:.3f}: {result.complaint}")
+    if result.gap:  # each piece was checked when it was made
+        raise KernelError(f"splitting {len(faces)} walls at height {level:.3f}: {result.gap}")
     split = body.like(result.solid)
     return split, [split.face_index.FindIndex(f) - 1 for f in left_faces]
 

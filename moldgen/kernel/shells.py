@@ -45,14 +45,19 @@ class ShellResult:
         return not self.free and not self.crowded and self.components == 1 and not self.contradictions
 
     @property
+    def gap(self) -> str:
+        """Why the faces do not bound one body, in words; empty when they do."""
+        if self.closed:
+            return ""
+        return (
+            f"{len(self.free)} free edges, {self.crowded} crowded edges, {self.components} shells, "
+            f"{self.contradictions} contradictions"
+        )
+
+    @property
     def complaint(self) -> str:
-        """What speaks against the shell, in words; empty when nothing does."""
-        if not self.closed:
-            return (
-                f"{len(self.free)} free edges, {self.crowded} crowded edges, {self.components} shells, "
-                f"{self.contradictions} contradictions"
-            )
-        return "" if is_valid(self.solid) else "the kernel calls the solid invalid"
+        """What speaks against the solid, in words; empty when nothing does. Asks the kernel about every face."""
+        return self.gap or ("" if is_valid(self.solid) else "the kernel calls the solid invalid")
 
 
 def solid_from_faces(faces: Sequence[TopoDS_Face], *, drop_flat: bool = False) -> ShellResult:

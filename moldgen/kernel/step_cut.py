@@ -29,6 +29,7 @@ class StepAssembly:
         body, _, tail = rest.rpartition(_END)
         self._head, self._body, self._tail = head + _DATA, body, _END + tail
         self._statements: dict[int, bytes] = {}
+        self._referred: dict[int, list[int]] = {}
         self._kinds: dict[bytes, list[int]] = {k: [] for k in (_PROTOCOL, _CATEGORY, _DEFINITION, _SOLIDS, _STYLE)}
         for statement in body.removeprefix(b"#").removesuffix(b";\n").split(b";\n#"):
             number, _, text = statement.partition(b" = ")
@@ -71,8 +72,13 @@ class StepAssembly:
         return _FILE_NAME.sub(lambda _: name, self._head, count=1)
 
     def _references(self, number: int) -> list[int]:
-        text = _TEXT.sub(b"", self._statements[number])
-        return [int(n) for n in _REFERENCE.findall(text)]
+        known = self._referred.get(number)
+        if known is None:
+            text = self._statements[number]
+            if b"'" in text:
+                text = _TEXT.sub(b"", text)
+            known = self._referred[number] = [int(n) for n in _REFERENCE.findall(text)]
+        return known
 
     def _closure(self, roots: Iterable[int]) -> set[int]:
         """Return the roots and everything they refer to, directly or not."""

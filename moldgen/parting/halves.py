@@ -193,8 +193,8 @@ def _halves(state: _Assigned, level: float, trial: _Trial, corners: tuple[np.nda
     for is_cavity, lid in ((True, corners[1][2]), (False, corners[0][2])):
         own = [f for f, side in zip(body.faces, cavity_side, strict=True) if side == is_cavity]
         result = solid_from_faces([*own, *sheet.faces, *block_outside(sheet.rim, float(lid))], drop_flat=True)
-        if result.complaint:
-            raise KernelError(f"the {'cavity' if is_cavity else 'core'} does not close: {result.complaint}")
+        if result.gap:  # that every face is valid was checked when it was made
+            raise KernelError(f"the {'cavity' if is_cavity else 'core'} does not close: {result.gap}")
         halves.append(result.solid)
     cavity, core = halves
     check = check_halves(cavity, core, body, float(np.prod(corners[1] - corners[0])))
