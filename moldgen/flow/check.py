@@ -10,6 +10,7 @@ from moldgen.flow.job import JobResult, Table, verdict_code
 from moldgen.flow.record import notes_record, review_record
 from moldgen.flow.review import Reviewed, review
 from moldgen.flow.tell import Tell
+from moldgen.flow.words import direction_text
 from moldgen.spec.load import LoadedSpec
 
 MOST_ROWS = 20
@@ -41,7 +42,7 @@ def review_tables(reviewed: Reviewed) -> tuple[Table, ...]:
 def _pulls(reviewed: Reviewed) -> Table:
     rows = tuple(
         (
-            _listed(c.direction, 3),
+            direction_text(c.direction),
             c.source,
             round(c.score, 4),
             round(c.trapped_mm2, 2),

@@ -15,6 +15,15 @@ from moldgen.model.proof import Proof
 MOST_OF_A_CODE = 5
 """So many findings of one code are shown on the terminal; the manifest and --json have them all."""
 
+SHORT = 40
+"""Characters of a detail that is shown although its proof held."""
+
+MOST_OF_A_TOPIC = 22
+"""Characters of the column of decided topics."""
+
+INDENT = " " * 10
+"""Before what follows the severity of a finding."""
+
 CAUTIONS = (
     "This is a first-pass layout, not a released design: it is not for manufacture before qualified people, licensed "
     "where the law asks for it, have reviewed it. Strength, cooling, venting, wear and machine are theirs to judge.",
@@ -36,7 +45,7 @@ def result_lines(result: JobResult, width: int = 100) -> list[str]:
     if result.findings:
         lines += ["", "findings", *_finding_lines(result.findings, width)]
     if result.decisions:
-        lines += ["", "decided by moldgen", *(line for d in result.decisions for line in _decision_lines(d, width))]
+        lines += ["", "decided by moldgen", *_decision_table(result.decisions, width)]
     if result.output is not None:
         lines += ["", f"written: {result.output}"]
     if result.first_pass:
@@ -95,40 +104,65 @@ def sorted_findings(findings: Sequence[Finding]) -> list[Finding]:
 
 
 def _proof_table(proofs: Sequence[Proof]) -> Table:
-    rows = [(p.verdict.value, p.name, p.figure, p.limit, p.unit, p.detail) for p in proofs]
-    return Table("proofs", ("verdict", "proof", "figure", "limit", "unit", "detail"), tuple(rows))
+    """Return the proofs as a table; the detail of one that held is for the manifest, unless it is a few words."""
+    rows: list[tuple[Cell, ...]] = []
+    for p in proofs:
+        detail = p.detail if not p.passed or len(p.detail) <= SHORT else ""
+        figure = None if p.figure is None else _rounded(p.figure)
+        rows.append((p.verdict.value, p.name, figure, _rounded(p.limit), p.unit, detail))
+    columns = ("verdict", "proof", "figure", "limit", "unit", "detail")
+    shown = len(columns) if any(row[-1] for row in rows) else len(columns) - 1
+    return Table("proofs", columns[:shown], tuple(row[:shown] for row in rows))
 
 
 def _finding_lines(findings: Sequence[Finding], width: int) -> Iterator[str]:
-    shown: dict[str, int] = {}
+    """Yield the findings by code, the gravest first: the advice that they share stands once, below them."""
+    groups: dict[tuple[Severity, str], list[Finding]] = {}
     for finding in sorted_findings(findings):
-        shown[finding.code] = shown.get(finding.code, 0) + 1
-        if shown[finding.code] <= MOST_OF_A_CODE:
-            yield from _one_finding(finding, width)
-    for code, count in shown.items():
-        if count > MOST_OF_A_CODE:
-            yield f"  and {count - MOST_OF_A_CODE} more of {code}"
+        groups.setdefault((finding.severity, finding.code), []).append(finding)
+    for (severity, code), group in groups.items():
+        remedies = list(dict.fromkeys(f.remedy for f in group[:MOST_OF_A_CODE] if f.remedy))
+        head = f"  {severity.value:8}"
+        for finding in group[:MOST_OF_A_CODE]:
+            yield from _wrapped(f"{finding.message} [{code}]", width, first=head, rest=INDENT)
+            facts = "; ".join(_facts(finding))
+            if facts:
+                yield from _wrapped(facts, width, first=INDENT, rest=INDENT)
+            if finding.remedy and len(remedies) > 1:
+                yield from _advice(finding.remedy, width)
+            head = INDENT
+        if len(group) > MOST_OF_A_CODE:
+            yield f"{INDENT}and {len(group) - MOST_OF_A_CODE} more of {code}"
+        if len(remedies) == 1:
+            yield from _advice(remedies[0], width)
 
 
-def _one_finding(finding: Finding, width: int) -> Iterator[str]:
-    place = finding.where
+def _advice(remedy: str, width: int) -> list[str]:
+    return _wrapped(f"try: {remedy}", width, first=INDENT, rest=f"{INDENT}     ")
+
+
+def _facts(finding: Finding) -> Iterator[str]:
+    """Yield where a finding is, without a place that the words name already, and its figure against the limit."""
+    place = finding.where if finding.where not in finding.message else ""
     if finding.at is not None:
-        point = ", ".join(f"{x:.2f}" for x in finding.at)
-        place = f"{place} (at {point})" if place else f"at {point}"
-    text = f"{finding.message} [{finding.code}]"
-    yield from _wrapped(text, width, first=f"  {finding.severity.value:8}", rest=" " * 10)
-    facts = [place] if place else []
+        point = ", ".join(f"{x + 0.0:.2f}" for x in finding.at)
+        if point not in f"{place} {finding.message}":
+            place = f"{place} (at {point})" if place else f"at {point}"
+    if place:
+        yield place
     if finding.value is not None:
-        limit = "" if finding.limit is None else f", limit {_number(finding.limit)} {finding.unit}".rstrip()
-        facts.append(f"{_number(finding.value)} {finding.unit}".rstrip() + limit)
-    if facts:
-        yield from _wrapped("; ".join(facts), width, first=" " * 10, rest=" " * 10)
-    if finding.remedy:
-        yield from _wrapped(f"try: {finding.remedy}", width, first=" " * 10, rest=" " * 15)
+        unit = "" if finding.unit == "1" else f" {finding.unit}".rstrip()
+        limit = "" if finding.limit is None else f", limit {_figure(finding.limit)}{unit}"
+        yield f"{_figure(finding.value)}{unit}{limit}"
 
 
-def _decision_lines(decision: Decision, width: int) -> list[str]:
-    return _wrapped(f"{decision.topic}: {decision.choice} ({decision.why})", width, first="  ", rest="    ")
+def _decision_table(decisions: Sequence[Decision], width: int) -> Iterator[str]:
+    """Yield what was decided, the topics in a column of their own, each with its reason."""
+    column = min(max(len(d.topic) for d in decisions), MOST_OF_A_TOPIC) + 4
+    for decision in decisions:
+        words = f"{decision.choice} ({decision.why})" if decision.why else decision.choice
+        first = f"  {decision.topic}".ljust(column)
+        yield from _wrapped(words, width, first=first, rest=" " * column)
 
 
 def _wrapped(text: str, width: int, first: str = "", rest: str = "") -> list[str]:
@@ -149,6 +183,15 @@ def _number(value: float) -> str:
     """Return six digits, and an exponent only for what is tiny: a volume in mm^3 is read by people."""
     text = f"{value:.6g}"
     return f"{value:.0f}" if "e+" in text else text
+
+
+def _rounded(value: float) -> float:
+    """Return what a person compares with a limit: four digits, two if it is tiny; the manifest has all of them."""
+    return float(f"{value:.2g}" if abs(value) < 1e-3 else f"{value:.4g}")
+
+
+def _figure(value: float) -> str:
+    return _number(_rounded(value))
 
 
 def _is_numeric(values: Sequence[Cell]) -> bool:

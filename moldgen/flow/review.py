@@ -12,6 +12,7 @@ from moldgen.finding import Decision, Notes
 from moldgen.flow.part_source import read_part
 from moldgen.flow.prepare import Prepared, prepare
 from moldgen.flow.tell import Tell
+from moldgen.flow.words import direction_text
 from moldgen.kernel.body import Body
 from moldgen.kernel.extent import reach
 from moldgen.kernel.measure import bounding_box
@@ -61,7 +62,7 @@ def review(loaded: LoadedSpec, tell: Tell) -> Reviewed:
     with tell.stage("choose the pull") as stage:
         pull, candidates, more = _choose_pull(loaded, part)
         notes += more
-        stage.detail = _listed(pull.direction)
+        stage.detail = direction_text(pull.direction)
     with tell.stage("prepare the part") as stage:
         box = _exact_box(part) if spec.shrink.fixed_point == "centre" else _NO_BOX
         frame, more = mold_frame(pull.direction, spec.shrink, spec.resin, box)
@@ -130,8 +131,8 @@ def refuse_undercuts(reviewed: Reviewed) -> None:
     if len(pieces) > MOST_NAMED:
         lines.append(f"and {len(pieces) - MOST_NAMED} more")
     raise PartError(
-        f"{len(pieces)} undercuts hold the part against a straight pull along {_listed(reviewed.pull.direction)}:\n    "
-        + "\n    ".join(lines),
+        f"{len(pieces)} undercuts hold the part against a straight pull along "
+        f"{direction_text(reviewed.pull.direction)}:\n    " + "\n    ".join(lines),
         where=reviewed.loaded.locate("pull"),
         remedy="give another pull (moldgen check lists the best), change these faces so that they taper along the "
         "pull, open a slot under them, or accept them filled with parting.undercuts: fill",
@@ -151,14 +152,14 @@ def _choose_pull(loaded: LoadedSpec, part: Part) -> tuple[Pull, tuple[PullCandid
     if isinstance(given, FaceNormal):
         direction = _normal_at(loaded, part, given.point)
         why = f"normal of the flat face nearest to {_listed(given.point)}, given in the spec"
-        return Pull(direction, why), (), Notes(decisions=(Decision("pull", _listed(direction), why),))
+        return Pull(direction, why), (), Notes(decisions=(Decision("pull", direction_text(direction), why),))
     if given is not None:
         why = "given in the spec"
-        return Pull(given, why), (), Notes(decisions=(Decision("pull", _listed(given), why),))
+        return Pull(given, why), (), Notes(decisions=(Decision("pull", direction_text(given), why),))
     found = search_pull(Body(part.solid), axes_only=section.search == "axes")
     best = found[0]
-    others = tuple(f"{_listed(c.direction)} ({c.source}): {c.why}" for c in found[1:5])
-    chosen = Decision("pull", _listed(best.direction), best.why, best.source, others)
+    others = tuple(f"{direction_text(c.direction)} ({c.source}): {c.why}" for c in found[1:5])
+    chosen = Decision("pull", direction_text(best.direction), best.why, best.source, others)
     return Pull(best.direction, best.why), found, Notes(decisions=(chosen,))
 
 

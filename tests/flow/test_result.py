@@ -33,7 +33,7 @@ def test_findings_come_gravest_first_and_many_of_a_kind_are_counted() -> None:
     lines = result_lines(result)
     shown = [line for line in lines if "[draft.too_small]" in line]
     assert len(shown) == MOST_OF_A_CODE
-    assert "  and 3 more of draft.too_small" in lines
+    assert "          and 3 more of draft.too_small" in lines
     assert lines.index("  failure a failure [part.open]") < lines.index(shown[0])
     assert len(result_json(result)["findings"]) == MOST_OF_A_CODE + 4
 
