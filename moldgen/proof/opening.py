@@ -71,6 +71,7 @@ def _prove_way(
 
 
 def _way_of(mover: ProofBody, way: float | None, *, up: bool) -> MeshSolid:
+    mover.mesh  # noqa: B018  raises for an open mesh: a missing face would sweep nothing, and hide what it meets
     return sweep_faces(mover.body, face_kinds(mover.body), up, way)
 
 
