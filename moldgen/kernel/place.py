@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import Any
 
 from OCP.BRepBuilderAPI import BRepBuilderAPI_GTransform, BRepBuilderAPI_Transform
+from OCP.BRepTools import BRepTools
 from OCP.gp import gp_GTrsf, gp_Mat, gp_Pnt, gp_Trsf, gp_Vec, gp_XYZ
 from OCP.TopoDS import TopoDS_Shape
 
@@ -45,4 +46,6 @@ def _scaled(solid: TopoDS_Shape, frame: MoldFrame) -> Any:
         return present(BRepBuilderAPI_Transform(solid, scale, True).Shape(), "scaling the part")
     fx, fy, fz = frame.fixed_point
     stretch = gp_GTrsf(gp_Mat(kx, 0, 0, 0, ky, 0, 0, 0, kz), gp_XYZ(fx * (1 - kx), fy * (1 - ky), fz * (1 - kz)))
-    return present(BRepBuilderAPI_GTransform(solid, stretch, True).Shape(), "stretching the part")
+    stretched = present(BRepBuilderAPI_GTransform(solid, stretch, True).Shape(), "stretching the part")
+    BRepTools.Clean_s(stretched)  # it would keep the triangles of the part, half stretched
+    return stretched
