@@ -96,11 +96,11 @@ def _edge_size(
 ) -> tuple[float, float, list[Quantity]]:
     depth_line = edge_gate_depth_pye.line("depth of the gate", resin.gate_factor, wall)
     width_line = edge_gate_width_pye.line("width of the gate", resin.gate_factor, melt.area)
-    depth = min(depth_line.value, runner) if section.depth is None else section.depth
+    depth = _up(min(depth_line.value, runner)) if section.depth is None else section.depth
     shear_line = edge_gate_width_min.line("width of the gate", melt.rate, depth, resin.shear_limit)
     width = max(width_line.value, shear_line.value, depth)
-    width = min(width, GATE_OVER_RUNNER.default * runner) if section.width is None else section.width
-    return _up(width), _up(depth), [depth_line, width_line, shear_line]
+    width = _up(min(width, GATE_OVER_RUNNER.default * runner)) if section.width is None else section.width
+    return width, depth, [depth_line, width_line, shear_line]
 
 
 def size_edge(
