@@ -23,17 +23,16 @@ def mold_frame(direction: Vector, shrink: Shrink, resin: str, box: Box) -> tuple
     rule = shrink_factor_iso294_4 if shrink.convention == "mold" else shrink_factor_first_order
     factors = tuple(rule(s) for s in percent)
     uniform = len(set(percent)) == 1
-    lines = tuple(
-        rule.line(f"size of the mold along {'all axes' if uniform else AXES[i]}", s)
-        for i, s in enumerate(percent[:1] if uniform else percent)
+    ways = ["all axes"] if uniform else list(AXES)
+    lines = tuple(rule.line(f"size of the mold along {way}", s) for way, s in zip(ways, percent, strict=False))
+    provenance = Provenance.GIVEN if shrink.percent else Provenance.UNVERIFIED
+    given = tuple(
+        Quantity(f"shrinkage along {way}", s, "%", decision.why, provenance, symbol="S", drives="shrink factor")
+        for way, s in zip(ways, percent, strict=False)
     )
     frame = MoldFrame(factors, _fixed_point(shrink, box), rotation_to_z(direction))  # type: ignore[arg-type]
     findings = () if uniform else (_not_uniform(percent),)
-    given = Quantity(
-        "shrinkage", percent[0], "%", decision.why, Provenance.GIVEN if shrink.percent else Provenance.UNVERIFIED,
-        symbol="S", drives="shrink factors",
-    )  # fmt: skip
-    return frame, Notes(findings, (decision,), (given, *lines))
+    return frame, Notes(findings, (decision,), (*given, *lines))
 
 
 def rotation_to_z(direction: Vector) -> tuple[Vector, Vector, Vector]:

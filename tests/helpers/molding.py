@@ -53,13 +53,20 @@ class Molded:
         return Claims(block_mm3(self.corners), 0.0, 10.0)
 
 
-def mold(solid: Any, *, margin: float = 15.0, level: float | None = None, avoid: tuple[Any, ...] = ()) -> Molded:
+def mold(
+    solid: Any,
+    *,
+    margin: float = 15.0,
+    level: float | None = None,
+    avoid: tuple[Any, ...] = (),
+    corners: Corners | None = None,
+) -> Molded:
     """Part a solid that leaves along +z."""
     body = Body(solid)
     body, _ = imprint_silhouettes(body, face_kinds(body))
     kinds = face_kinds(body)
     trapped = trapped_volume(body, kinds)
-    corners = block_around(body, margin)
+    corners = corners or block_around(body, margin)
     return Molded(part_halves(body, kinds, trapped.part, corners, level=level, avoid=avoid), corners)
 
 
