@@ -44,7 +44,7 @@ def prepare(solid: Any, volume_mm3: float | None = None, frame: MoldFrame | None
             body, notes = ready(Body(candidate.solid), frame)
             prepared = Prepared(body, kinds := face_kinds(body), trapped_volume(body, kinds))
         except KernelError as error:
-            refused.append(f"{candidate.rung}: {error.what}")
+            refused.append(f"{candidate.rung}: {error.where}: {error.what}".replace(": : ", ": "))
             continue
         _refuse_crossings(body, frame)
         choice = f"{len(body.faces)} faces"

@@ -124,18 +124,27 @@ def refuse_undercuts(reviewed: Reviewed) -> None:
     ------
     PartError : it does not; the trapped places are named with position, area and depth
     """
-    pieces = [t for t in reviewed.release.trapped if t.grip is Grip.UNDERCUT]
-    if not pieces:
-        return
+    if any(t.grip is Grip.UNDERCUT for t in reviewed.release.trapped):
+        raise undercut_error(
+            reviewed,
+            "give another pull (moldgen check lists the best), change these faces so that they taper along the pull, "
+            "open a slot under them, or accept them filled with parting.undercuts: fill",
+        )
+
+
+def undercut_error(reviewed: Reviewed, remedy: str, unfilled: str = "") -> PartError:
+    """Return the refusal that names the trapped places; `unfilled` is why they cannot be molded full either."""
+    pieces = reviewed.release.trapped
     lines = [_named(p) for p in pieces[:MOST_NAMED]]
     if len(pieces) > MOST_NAMED:
         lines.append(f"and {len(pieces) - MOST_NAMED} more")
-    raise PartError(
-        f"{len(pieces)} undercuts hold the part against a straight pull along "
+    if unfilled:
+        lines.append(f"they cannot be molded full either: {unfilled}")
+    return PartError(
+        f"{len(pieces)} {'places hold' if len(pieces) > 1 else 'place holds'} the part against a straight pull along "
         f"{direction_text(reviewed.pull.direction)}:\n    " + "\n    ".join(lines),
         where=reviewed.loaded.locate("pull"),
-        remedy="give another pull (moldgen check lists the best), change these faces so that they taper along the "
-        "pull, open a slot under them, or accept them filled with parting.undercuts: fill",
+        remedy=remedy,
     )
 
 
