@@ -14,24 +14,34 @@ from typing import Any
 
 def plain(value: Any) -> Any:
     """Return `value` as JSON types: dataclasses to mappings, enums to their value, floats rounded to 12 digits."""
-    if dataclasses.is_dataclass(value) and not isinstance(value, type):
-        return {f.name: plain(getattr(value, f.name)) for f in dataclasses.fields(value)}
     if isinstance(value, Enum):
         return plain(value.value)
-    if isinstance(value, Mapping):
-        return {str(k): plain(v) for k, v in value.items()}
-    if isinstance(value, (list, tuple)):
-        return [plain(v) for v in value]
+    if isinstance(value, (bool, str, int)) or value is None:
+        return value
     if isinstance(value, PurePath):
         return value.as_posix()
-    if isinstance(value, bool) or value is None or isinstance(value, (str, int)):
+    if isinstance(value, (list, tuple)):
+        return [plain(v) for v in value]
+    members = _members(value)
+    return _number(value) if members is None else {str(k): plain(v) for k, v in members.items()}
+
+
+def _members(value: Any) -> Mapping[Any, Any] | None:
+    """Return what a mapping or a dataclass holds, by name; None for anything else."""
+    if isinstance(value, Mapping):
         return value
-    if isinstance(value, float) or hasattr(value, "__float__"):
-        number = float(value)
-        if not math.isfinite(number):
-            raise ValueError(f"not a finite number: {number}")
-        return float(f"{number:.12g}") + 0.0  # + 0.0 turns -0.0 into 0.0
-    raise TypeError(f"no JSON form for {type(value).__name__}")
+    if dataclasses.is_dataclass(value) and not isinstance(value, type):
+        return {f.name: getattr(value, f.name) for f in dataclasses.fields(value)}
+    return None
+
+
+def _number(value: Any) -> float:
+    if not hasattr(value, "__float__"):
+        raise TypeError(f"no JSON form for {type(value).__name__}")
+    number = float(value)
+    if not math.isfinite(number):
+        raise ValueError(f"not a finite number: {number}")
+    return float(f"{number:.12g}") + 0.0  # + 0.0 turns -0.0 into 0.0
 
 
 def to_json(value: Any, *, indent: int | None = 2) -> str:
