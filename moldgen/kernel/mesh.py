@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import io
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from OCP.BinTools import BinTools, BinTools_FormatVersion
@@ -39,10 +40,12 @@ class SurfaceMesh:
     face: np.ndarray
     normals: np.ndarray
 
-    @property
+    @cached_property
     def corners(self) -> np.ndarray:
-        """Corner points of each triangle, (t, 3, 3) [mm]."""
-        return np.asarray(self.vertices[self.triangles])
+        """Corner points of each triangle, read-only, (t, 3, 3) [mm]."""
+        points = np.asarray(self.vertices[self.triangles])
+        points.flags.writeable = False
+        return points
 
     def areas(self) -> np.ndarray:
         """Area of each triangle, (t,) [mm^2]."""

@@ -20,6 +20,9 @@ START: Final = 0.5
 ENTRY: Final = 0.4
 """mm: the part's side may lie this far before or behind the parting line within the mouth."""
 
+STRAIGHT: Final = 0.2
+"""mm: the part's side may bend this much over the width of the mouth."""
+
 STEP: Final = 0.4
 """mm: a step of the part's side within the mouth that its melt cannot bridge."""
 
@@ -58,7 +61,9 @@ def _closed(view: PartView, places: np.ndarray, inward: np.ndarray, wanted: np.n
     across = (np.arange(ACROSS) + 0.5) / ACROSS - 0.5
     up = (np.arange(UP) + 0.5) / UP
     behind = _behind(view, places, inward, (across, up), wanted * np.array([1.0, sign]), START)
-    return np.asarray(np.abs(behind) < ENTRY)
+    behind = np.where(np.isfinite(behind), behind, 10.0 * ENTRY)
+    middle = behind[:, ACROSS // 2, None]
+    return np.asarray((np.abs(middle) < ENTRY) & (np.abs(behind - middle) < STRAIGHT))
 
 
 def _behind(

@@ -7,6 +7,7 @@ from typing import Final
 
 import numpy as np
 from scipy.spatial import cKDTree
+from scipy.spatial.distance import cdist
 
 ALIKE: Final = 0.8
 """Share of the places whose mirror image must be as good for a part to count as symmetric."""
@@ -98,8 +99,8 @@ class Choice:
         self._places, self._sets, self._load, self._fixed = places, sets, load, fixed
         first = np.column_stack([np.ones(len(sets), bool), np.diff(sets, axis=1) != 0])
         self._sizes = first.sum(axis=1)
-        gap = np.linalg.norm(places[:, None] - load.places[None], axis=2)
-        self._reach = gap[sets].min(axis=1)
+        gap = cdist(places, load.places)
+        self._reach = np.min([gap[column] for column in sets.T], axis=0)
         self._middles = (places[sets] * first[:, :, None]).sum(axis=1)
         self._apart = apart
         self.chosen: list[int] = []
@@ -187,8 +188,7 @@ class Choice:
         load = self._load
         base = np.full(len(load.places), 2.0 * load.diagonal)
         if len(self._fixed):
-            gap = np.linalg.norm(load.places[:, None] - self._fixed[None], axis=2)
-            base = np.minimum(base, gap.min(axis=1))
+            base = np.minimum(base, cdist(load.places, self._fixed).min(axis=1))
         if chosen:
             base = np.minimum(base, self._reach[chosen].min(axis=0))
         # by the square: what lies far from every pin counts most

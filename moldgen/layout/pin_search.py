@@ -96,13 +96,17 @@ def _load(task: Task) -> Load:
 def search_pins(task: Task, kept: list[Place]) -> tuple[list[Place], Notes]:
     """Return moldgen's pins: straight ones if they find room, else shouldered ones that come nearer to edges."""
     load = _load(task)
-    best = _on_slopes(task, kept, load, _straight_kinds(task))
+    gentle = Underside(task.view, task.no_pins, PIN_GENTLE_SLOPE.default)
+    grounds = [replace(task, under=gentle), task]
+    if (gentle.pushable == task.under.pushable).all():
+        grounds = [task]
+    best = _on_slopes(grounds, kept, load, _straight_kinds(task))
     why = "thickest standard pins whose places are hardly farther from what sticks than those of thinner ones"
     few = int(EJECTOR_FEWEST.default) - len(kept)
     for edge in _small_edges(task):
         if best is not None and (best.enough or (len(best.places) >= few and not best.kind.stepped)):
             break
-        other = _on_slopes(task, kept, load, _small_kinds(task, edge))
+        other = _on_slopes(grounds, kept, load, _small_kinds(task, edge))
         if other is not None and (best is None or _better(other, best, few)):
             best, why = other, "too few places for straight pins: shouldered pins, as thick as their tips may be"
     if best is None:
@@ -121,14 +125,14 @@ def _better(other: _Proposal, best: _Proposal, few: int) -> bool:
     return other.enough or missing < now or (missing == now and other.pressure < BETTER * best.pressure)
 
 
-def _on_slopes(task: Task, kept: list[Place], load: Load, kinds: list[PinKind]) -> _Proposal | None:
-    """Return pins on gentle slopes if enough of them find room there, else also on steeper ones."""
-    gentle = Underside(task.view, task.no_pins, PIN_GENTLE_SLOPE.default)
-    best = _size_and_places(replace(task, under=gentle), kept, load, kinds)
-    if best is None or not best.enough:
-        steep = _size_and_places(task, kept, load, kinds)
-        if steep is not None and (best is None or steep.enough or steep.pressure < best.pressure):
-            best = steep
+def _on_slopes(grounds: list[Task], kept: list[Place], load: Load, kinds: list[PinKind]) -> _Proposal | None:
+    """Return pins on the first ground, the gentle slopes, if enough of them find room there, else on the next too."""
+    best: _Proposal | None = None
+    for ground in grounds:
+        if best is None or not best.enough:
+            found = _size_and_places(ground, kept, load, kinds)
+            if found is not None and (best is None or found.enough or found.pressure < best.pressure):
+                best = found
     return best
 
 
@@ -245,12 +249,12 @@ def _small(task: Task, found: list[Place], kind: PinKind) -> Notes:
     room = [(task.under.exact_room(np.array([p.x, p.y])), p) for p in found]
     least, place = min(room, key=lambda entry: entry[0])
     left = least - kind.diameter / 2
-    usual, name = task.section.edge_clearance, f"{len(found)} shouldered pins of {kind.diameter:g} mm"
+    usual, name = task.section.edge_clearance, f"{len(found)} shouldered of {kind.diameter:g} mm"
     finding = Finding(
         "ejection.small_pins",
         Severity.CAUTION,
-        f"straight ejector pins find too little room: {name} come as near as {left:.2f} mm to an edge of the part, "
-        f"at least {kind.edge:g} mm is common practice for pins so small",
+        f"straight ejector pins find too little room; {name} come to {left:.2f} mm from an edge of the part; "
+        f"{kind.edge:g} mm is common practice for pins so small",
         at=task.view.place((place.x, place.y, place.disc.high)),
         value=round(left, 3),
         limit=usual,

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from typing import Final
 
-STEP: Final = 0.05
+STEP: Final = 0.2
 """rad: step of the search along the softer piece; two roots never lie this close."""
 
 

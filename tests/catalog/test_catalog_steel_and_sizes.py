@@ -20,6 +20,7 @@ from moldgen.catalog import (
     fit_bands,
     fit_clearance,
     preferred_size_up,
+    shouldered_pin_series,
     size_series,
     steel,
     steel_numbers,
@@ -58,6 +59,19 @@ def test_an_unknown_steel_is_answered_with_the_nearest() -> None:
     with pytest.raises(SpecError, match=r"unknown tool material '1\.2310'") as caught:
         steel("1.2310")
     assert "1.2311" in caught.value.remedy
+
+
+def test_shouldered_pins_are_thinner_than_straight_ones_and_keep_a_shoulder() -> None:
+    series = shouldered_pin_series()
+    assert [pin.diameter for pin in series] == [0.8, 1.0, 1.2, 1.5, 2.0, 2.5]
+    for pin in series:
+        assert 0.5 <= pin.shank - pin.diameter <= 1.5  # about 1 mm (common practice), so that the shoulder bears
+        assert pin.head_diameter > pin.shank
+        assert len(pin.lengths) == len(pin.shank_lengths)
+        assert all(
+            0.4 * whole < shank < 0.6 * whole for whole, shank in zip(pin.lengths, pin.shank_lengths, strict=True)
+        )
+        assert all("unverified" in fact.source for fact in pin.facts)
 
 
 def test_pins_grow_in_every_dimension() -> None:

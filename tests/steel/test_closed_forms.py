@@ -7,10 +7,12 @@ import numpy as np
 import pytest
 
 from moldgen.kernel.channel import Profile, channel, joined, slot
-from moldgen.kernel.measure import bounding_box, volume, volume_adaptive
+from moldgen.kernel.measure import bounding_box, is_valid, volume, volume_adaptive
 from moldgen.kernel.topology import faces_of
 from moldgen.model.layout import GateKind
 from moldgen.model.tool import Role
+from moldgen.steel.bores import pin_bores
+from moldgen.steel.ground import Ground
 
 from . import tools
 
@@ -64,6 +66,45 @@ def test_pins_have_shank_and_head():
     assert (low[2], high[2]) == (pytest.approx(0.0, abs=1e-6), pytest.approx(tools.ROOF + 40.0, abs=1e-6))
     assert high[0] - low[0] == pytest.approx(10.0, abs=1e-6)
     assert len(faces_of(core_pin.solid)) == 7  # foot, head, shoulder, shank, ring round the hole, cone, tip
+
+
+def test_a_shouldered_pin_is_three_bars_in_a_stepped_bore():
+    pins = tuple(tools.shouldered(i, *at) for i, at in enumerate(tools.RING, 1))
+    made, bored, _ = tools.tool(replace(tools.LAYOUT, ejector_pins=pins))
+    (pin,) = made.by_role(Role.EJECTOR_PIN)
+    # foot at -85: head of 2 mm, shoulder at -35, tip at 20
+    expected = round_bar(4.0, 2.0) + round_bar(2.0, 48.0) + round_bar(1.0, 55.0)
+    assert volume(pin.solid) == pytest.approx(expected, rel=EXACT)
+    assert len(faces_of(pin.solid)) == 7
+    assert "shank 2 mm up to 50.00 mm" in pin.note
+    # fit from the tip at 20 down to 10, then a bore that the shank passes, to the bottom at -40
+    assert taken(bored)["ejector pin 1"] == pytest.approx(round_bar(1.0, 10.0) + round_bar(2.5, 50.0), rel=EXACT)
+    rows = [(h.diameter_mm, h.z_from_mm, h.z_to_mm, h.fit) for h in made.holes if h.purpose.startswith("ejector pin 1")]
+    assert rows == [(1.0, pytest.approx(10.0), pytest.approx(20.0), "H7"), (2.5, -40.0, pytest.approx(10.0), "")]
+
+
+def test_a_shoulder_stays_below_a_fit_that_reaches_deeper():
+    """Beside a low wall the fit goes deeper, and the shoulder with it: else it would run into the fit on the way."""
+    (near,) = pin_bores(tools.halves(), one_pin(tools.shouldered(1, 16.65, 0.0)), Ground(tools.halves()))
+    (free,) = pin_bores(tools.halves(), one_pin(tools.shouldered(1, 12.0, 3.0)), Ground(tools.halves()))
+    assert near.below.fit_low < free.below.fit_low
+    way = [b.below.fit_low - b.below.shank_top for b in (near, free)]
+    assert way[0] == pytest.approx(way[1]) == pytest.approx(45.0)
+
+
+def one_pin(pin):
+    return replace(tools.PLAIN, ejector_pins=(pin,))
+
+
+def test_a_shouldered_pin_on_a_slope_has_its_shank_under_a_shaped_tip():
+    pin = tools.shouldered(1, 9.0, 4.0, tip=tools.FLOOR, drop=2.0)
+    made, bored, _ = tools.tool(one_pin(pin), holes=False, dome=3.0)
+    (solid,) = made.by_role(Role.EJECTOR_PIN)
+    below = round_bar(4.0, 2.0) + round_bar(2.0, 48.0)
+    fit_low = next(h.z_from_mm for h in made.holes if h.purpose.startswith("ejector pin 1") and h.fit)
+    in_bore = taken(bored)["ejector pin 1"] - round_bar(2.5, fit_low + 40.0)
+    assert volume_adaptive(solid.solid) == pytest.approx(below + round_bar(1.0, fit_low + 35.0) + in_bore, rel=1e-6)
+    assert is_valid(solid.solid)
 
 
 def test_a_direct_sprue_is_a_cone_through_the_cavity_block():

@@ -14,6 +14,7 @@ from moldgen.proof.rest import prove_balance, prove_rest, prove_sound
 from . import tools
 
 SHAPED = replace(tools.PLAIN, ejector_pins=tuple(tools.ejector(i, *at) for i, at in enumerate(tools.RING, 1)))
+SMALL = replace(tools.LAYOUT, ejector_pins=tuple(tools.shouldered(i, *at) for i, at in enumerate(tools.RING, 1)))
 TOOLS = {
     "edge gate": (tools.LAYOUT, {}),
     "edge gate askew": (replace(tools.LAYOUT, gate=tools.edge_gate(angle=0.7)), {}),
@@ -21,6 +22,7 @@ TOOLS = {
     "pin gate": (replace(tools.LAYOUT, gate=tools.top_gate(GateKind.PIN, 1.2)), {}),
     "sprue gate": (replace(tools.LAYOUT, gate=tools.top_gate(GateKind.SPRUE, 6.0)), {}),
     "pins on a slope": (SHAPED, {"holes": False, "dome": 2.0}),
+    "shouldered pins": (SMALL, {}),
 }
 
 
@@ -76,6 +78,14 @@ def test_a_stroke_longer_than_the_room_drives_the_heads_into_the_core():
     room = 85.0 - 3.0 - 40.0  # from the heads' shoulders up to the bottom of the core
     assert prove_ejection(bodies, room - 0.1).passed
     assert not prove_ejection(bodies, room + 1.0).passed
+
+
+def test_a_shoulder_that_runs_into_its_fit_is_seen():
+    """Shoulder at 0, fit from 10 up, stroke 25: the shank meets the core on the way."""
+    long = replace(SMALL, ejector_pins=tuple(replace(p, shank_length=85.0) for p in SMALL.ejector_pins))
+    made, _, _ = tools.tool(long)
+    assert not prove_ejection(tools.bodies(made.components), long.stroke_mm).passed
+    assert prove_ejection(tools.bodies(made.components), 9.0).passed
 
 
 def test_a_sprue_that_widens_upward_holds_the_cavity_half():

@@ -84,6 +84,15 @@ def ejector(number, x, y, tip=FLOOR, diameter=4.0, drop=0.0):
     )  # fmt: skip
 
 
+def shouldered(number, x, y, tip=FLOOR, drop=0.0, shank=50.0):
+    """A tip of 1 mm on a shank of 2 mm; the shoulder stands `shank` over the foot."""
+    plain = ejector(number, x, y, tip=tip, diameter=1.0, drop=drop)
+    return replace(
+        plain, fit_length=10.0, clearance_diameter=2.5, head_diameter=4.0, head_height=2.0, shank_diameter=2.0,
+        shank_length=shank,
+    )  # fmt: skip
+
+
 def core_pin(number, x, y, diameter=5.0):
     return CorePinLayout(
         name=f"core pin {number}", x=x, y=y, top_z=ROOF, base_z=FLOOR, diameter=diameter, fit_length=12.0,
