@@ -42,10 +42,10 @@ class Mark:
 def draw_frame(canvas: Canvas, scene: Scene, subject: str, marks: Sequence[Mark], px_per_mm: float) -> None:
     """Draw title line, legend, scale bar and caution around the panels."""
     width, height = SIZE
-    canvas.text((24.0, height - 32.0), _short(scene.name, 48), 25, bold=True)
+    canvas.text((24.0, height - 32.0), _short(scene.name, 36), 25, bold=True)
     facts = [f"resin {scene.resin}" if scene.resin else "", f"pull {scene.pull}" if scene.pull else ""]
     canvas.text((24.0, height - 63.0), _short(", ".join(f for f in facts if f), 80), 15, colour=palette.QUIET_TEXT)
-    canvas.text((width - 24.0, height - 34.0), _short(subject, 84), 17, align="right")
+    canvas.text((width - 24.0, height - 34.0), _short(subject, 96), 17, align="right")
     canvas.line([(24.0, height - 84.0), (width - 24.0, height - 84.0)], palette.RULE, 1.0)
     y = height - 116.0
     for mark in marks:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -192,12 +192,36 @@ def hatch(segments: Points, spacing: float, angle: float, phase: float = 0.0) ->
 
 @dataclass(frozen=True)
 class Cut:
-    """A vertical section plane, `axis` (0 x, 1 y) = `at` [mm], and what lies on it in words."""
+    """A vertical section plane, `axis` (0 x, 1 y) = `at` [mm], and what lies on it in words.
+
+    With `beyond` the section is stepped: where the other coordinate is less than `beyond.turn` (more if `above`),
+    it follows the plane of `beyond` instead.
+    """
 
     axis: int
     at: float
     through: str
+    beyond: Step | None = None
 
+
+@dataclass(frozen=True)
+class Step:
+    """The second plane of a stepped section: where it begins [mm], on which side, its place [mm], and through what."""
+
+    turn: float
+    above: bool
+    at: float
+    through: str
+
+
+NEAR = 0.05
+"""A plane closer than this [mm] is said to go through a thing."""
+
+GATE_ROOM = 0.15
+"""Share of the part that a stepped section shows beside the gate at least."""
+
+STEP_REACH = 0.22
+"""Share of the part's width that a section may step aside: farther off it would show quite another shape."""
 
 Span = tuple[SceneBody, float, float]
 """A body and its lower and upper end along one axis [mm]."""
@@ -208,8 +232,9 @@ def choose_cut(part: Sequence[SceneBody], pins: Sequence[SceneBody], gate: Vecto
 
     Candidates are the planes square to x and y through the gate, the middle of the part and each pin. Each is scored
     by what it cuts: gate 3, core pins 1 each, ejector pins 0.5 each (three of a kind count at most), middle of the part
-    0.5, the length of the part along the plane up to 0.4, and minus 4 for each part of its
-    bounding rectangle beyond a third that the part fills: a plane along a rib shows nothing but the rib.
+    0.5, the length of the part along the plane up to 0.4, minus 6 for what it cuts less than half of that length (a
+    plane along the rim shows nothing but the rim), and minus 4 for each part of its bounding rectangle beyond a third
+    that the part fills: a plane along a rib shows nothing but the rib.
     """
     low, high = _bounds(part or pins)
     middle = (low + high) / 2.0
@@ -224,15 +249,48 @@ def choose_cut(part: Sequence[SceneBody], pins: Sequence[SceneBody], gate: Vecto
                 continue
             score, words = _score_cut(axis, at, float(middle[axis]), spans, gate)
             score += 0.4 * float(size[1 - axis] / size[:2].max())
-            score -= 4.0 * max(_filled(part, axis, at) - 0.33, 0.0)
+            cut = _cut_plan(part, axis, at)
+            reach = float(np.ptp(cut[..., 0])) if len(cut) else 0.0
+            score -= 6.0 * max(0.5 - reach / float(size[1 - axis]), 0.0)
+            score -= 4.0 * max(_filled(cut) - 0.33, 0.0)
             if best is None or score > best[0] + 1e-9:
                 best = (score, Cut(axis, at, words))
-    return best[1] if best else Cut(1, float(middle[1]), "the middle of the part")
+    return _stepped(best[1], (low, high), pins, gate) if best else Cut(1, float(middle[1]), "the middle of the part")
 
 
-def _filled(part: Sequence[SceneBody], axis: int, at: float) -> float:
+def _stepped(cut: Cut, box: tuple[Points, Points], pins: Sequence[SceneBody], gate: Vector | None) -> Cut:
+    """Return `cut` with a step to a row of pins, if it goes through the gate and no pin, and there is room."""
+    if gate is None or abs(gate[cut.axis] - cut.at) > NEAR or "pin" in cut.through:
+        return cut
+    along = 1 - cut.axis
+    low, high = float(box[0][along]), float(box[1][along])
+    above = gate[along] < (low + high) / 2.0  # the pins' side lies away from the gate
+    sign = 1.0 if above else -1.0
+    room = gate[along] + sign * GATE_ROOM * (high - low)
+    best: tuple[float, Cut] | None = None
+    free = [b for b in pins if min(sign * v for v in _extent(b, along)) > sign * room]
+    reach = STEP_REACH * float(box[1][cut.axis] - box[0][cut.axis])
+    places = sorted({round(sum(_extent(b, cut.axis)) / 2.0, 3) for b in free})
+    for at in [at for at in places if abs(at - cut.at) <= reach]:
+        spans: list[Span] = [(b, *_extent(b, cut.axis)) for b in free]
+        score, words = _score_cut(cut.axis, at, np.inf, spans, None)
+        hit = [b for b, a, c in spans if abs(at - (a + c) / 2.0) < 0.25 * (c - a)]
+        nearest = min(min(sign * v for v in _extent(b, along)) for b in hit)
+        turn = sign * (nearest + sign * gate[along]) / 2.0
+        turn = room if sign * (turn - room) < 0.0 else turn
+        score -= 0.01 * abs(at - cut.at) / (high - low)
+        if best is None or score > best[0] + 1e-9:
+            best = (score, replace(cut, beyond=Step(turn, above, at, words)))
+    return best[1] if best else cut
+
+
+def _cut_plan(part: Sequence[SceneBody], axis: int, at: float) -> Points:
+    """Return the segments (k, 2, 2) where a plane cuts the part: the other coordinate, and z [mm]."""
+    return np.concatenate([cut_mesh(b, axis, at)[:, :, [1 - axis, 2]] for b in part] or [np.zeros((0, 2, 2))])
+
+
+def _filled(segments: Points) -> float:
     """Return how much of its bounding rectangle the cut part fills, 0 to 1."""
-    segments = np.concatenate([cut_mesh(b, axis, at)[:, :, [1 - axis, 2]] for b in part] or [np.zeros((0, 2, 2))])
     if not len(segments):
         return 0.0
     size = np.ptp(segments.reshape(-1, 2), axis=0)
@@ -244,19 +302,18 @@ def _filled(part: Sequence[SceneBody], axis: int, at: float) -> float:
 
 
 def _score_cut(axis: int, at: float, middle: float, spans: Sequence[Span], gate: Vector | None) -> tuple[float, str]:
-    near = 0.05  # [mm]: closer than this the plane is said to go through it
     score, words = 0.0, []
-    if gate is not None and abs(gate[axis] - at) < near:
+    if gate is not None and abs(gate[axis] - at) < NEAR:
         score += 3.0
         words.append("the gate")
-    if abs(at - middle) < near:
+    if abs(at - middle) < NEAR:
         score += 0.5
         words.append("the middle of the part")
     for role, worth, word in (("core_pin", 1.0, "core pin"), ("ejector_pin", 0.5, "ejector pin")):
         hit = sum(1 for b, a, c in spans if b.role == role and abs(at - (a + c) / 2.0) < 0.25 * (c - a))
         score += worth * min(hit, 3)
         if hit:
-            words.append(word if hit == 1 else f"{hit} {word}s")
+            words.append(f"{'an' if word[0] in 'aeio' else 'a'} {word}" if hit == 1 else f"{hit} {word}s")
     return score, " and ".join([", ".join(words[:-1]), words[-1]] if len(words) > 1 else words)
 
 

@@ -25,8 +25,8 @@ def tool_scene(tool: Tool, halves: Halves, title: tuple[str, str, str], gate: Ve
     lift = {
         Motion.CAVITY_HALF: max(1.1 * depth, 2.5 * part_height + stroke),
         Motion.CORE_HALF: 0.0,
-        Motion.EJECTOR: 0.5 * stroke,
-        Motion.PART: 0.5 * stroke,
+        Motion.EJECTOR: stroke,
+        Motion.PART: stroke,
     }
     bodies = [b for c in tool.components for b in _bodies(c, halves, lift[c.motion])]
     sides = {f: 1 if side else -1 for f, side in enumerate(halves.cavity_side.tolist())}

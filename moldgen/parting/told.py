@@ -25,12 +25,16 @@ SAME_LEVEL = 1e-3
 """mm: a parting plane this close to the height asked for lies there."""
 
 
+POINTS_OF_AN_EDGE = 48
+"""Of the parting line, for pictures: a rim may be one edge all round."""
+
+
 def parting_line(parted: Parted) -> tuple[np.ndarray, ...]:
     """Return the parting line as closed polylines (k, 3) in the mold frame [mm], the outer one first."""
     order = [parted.outer, *(i for i in range(len(parted.loops)) if i != parted.outer)]
     lines = []
     for number in order:
-        points = loop_points(parted.loops[number], 12)
+        points = loop_points(parted.loops[number], POINTS_OF_AN_EDGE)
         lines.append(np.vstack([points, points[:1]]))
     return tuple(lines)
 
