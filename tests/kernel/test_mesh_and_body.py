@@ -22,7 +22,7 @@ from moldgen.kernel.topology import compound_of, edges_of, explore, faces_of, on
 from moldgen.spec.load import load_spec
 
 SPECS = Path(__file__).resolve().parents[2] / "specs"
-DEMOS = ("sensor-lid",)
+DEMOS = (pytest.param("sensor-lid", marks=pytest.mark.slow),)
 
 SIMPLE = {
     "block": solids.box((0, 0, 0), (30, 20, 10)),
@@ -119,7 +119,7 @@ def test_a_face_without_triangles_is_named_by_its_place():
     assert caught.value.where.startswith("face at 40.000")
 
 
-@pytest.mark.parametrize("name", ["cup", "ring", "sensor-lid"])
+@pytest.mark.parametrize("name", ["cup", "ring", *DEMOS])
 def test_nearest_triangle_agrees_with_trimesh(name):
     mesh = body_of(name).mesh
     low, high = body_of(name).box

@@ -176,6 +176,17 @@ def test_a_lip_however_thin_along_the_way_is_not_jumped_over(height):
     assert proof.detail.startswith("cavity against part at 3")
 
 
+@pytest.mark.parametrize(("gap", "passes"), [(0.02, True), (0.025, True), (0.04, False), (0.1, False)])
+def test_a_round_cavity_too_small_is_measured_by_its_gap(gap, passes):
+    # a ball in half a cavity of smaller radius: a crescent as thick as the difference, which facets must not hide
+    made = mold(solids.sphere(10.0))
+    low, high = made.corners
+    cavity = solids.cut(solids.box((low[0], low[1], 0.0), high), solids.sphere(10.0 - gap))
+    proof = rest.prove_rest(changed(made.bodies, Role.CAVITY, cavity))
+    assert proof.figure == pytest.approx(gap, rel=0.02)
+    assert proof.passed is passes
+
+
 def test_the_part_must_leave_the_core_too():
     part, cavity, core = held_by(0.0001)
     upside_down = [
