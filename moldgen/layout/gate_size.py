@@ -120,6 +120,7 @@ def size_edge(
     if room is not None and (width > room[0] + 1e-9 or depth > room[1] + 1e-9):
         wanted = f"{width:g} x {depth:g} mm"
         width, depth = min(width, _down(room[0])), min(depth, _down(room[1]))
+        depth = min(depth, width) if section.depth is None else depth
         small = (_smaller(width, depth, wanted),)
     lines += [
         given(f"{k} of the gate", v, "mm", "gate", where=f"gate.{k}")

@@ -101,6 +101,7 @@ def test_a_smaller_gate_than_the_rules_want_is_told():
     gate, notes = place_gate(view, Gate(kind="edge"), ABS)
     (finding,) = [f for f in notes.findings if f.code == "gate.small_mouth"]
     assert f"{gate.width:g} x {gate.depth:g} mm" in finding.message
+    assert gate.depth <= gate.width
     assert mouth(view, gate) == 1.0
 
 
