@@ -36,7 +36,7 @@ SMALL_VOLUME: Final = 1e-6
 
 # --- meshes ---------------------------------------------------------------------------------------------------------
 MESH_DEFLECTION: Final = 0.05
-MESH_ANGLE: Final = 0.3
+MESH_ANGLE: Final = 0.2
 """Working mesh: sag and angle between neighbouring segments."""
 
 PROOF_DEFLECTION: Final = 0.02
