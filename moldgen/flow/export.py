@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import itertools
+from collections.abc import Sequence
 from pathlib import Path
 
 from moldgen.flow.record import component_files
@@ -39,5 +41,15 @@ def export_tool(tool: Tool, folder: Path, schema: str) -> None:
 
 def reread_bodies(tool: Tool, folder: Path) -> list[ProofBody]:
     """Return the tool as the exported assembly holds it, for the proofs."""
-    entries = tuple(Entry(c.name, c.role, c.motion, volume(c.solid), c.positions) for c in tool.components)
+    entries = tuple(Entry(c.name, c.role, c.motion, c.positions) for c in tool.components)
     return read_bodies(folder / TOOL_FILE, entries)
+
+
+def exported_volumes(tool: Tool, bodies: Sequence[ProofBody]) -> dict[str, float]:
+    """Return the volume [mm^3] of each component by its name, of the solids as they were read back.
+
+    Measured there, the figure is the one that every reader of the file finds: the kernel's integration errs on spline
+    faces by an amount that depends on how the reader parametrises their edges.
+    """
+    first = itertools.accumulate((len(c.positions) for c in tool.components[:-1]), initial=0)
+    return {c.name: volume(bodies[i].solid) for c, i in zip(tool.components, first, strict=True)}

@@ -20,13 +20,13 @@ TOOL_FILE = "tool.step"
 
 @dataclass(frozen=True)
 class Entry:
-    """One component as the manifest lists it: volume of one [mm^3] and where each stands [mm]."""
+    """One component as the manifest lists it: where each stands [mm], and the volume of one [mm^3], 0 if unknown."""
 
     name: str
     role: Role
     motion: Motion
-    volume_mm3: float
     positions: tuple[Vector, ...]
+    volume_mm3: float = 0.0
 
     @property
     def count(self) -> int:
@@ -67,8 +67,8 @@ def read_listing(folder: Path) -> Listing:
                 str(c["name"]),
                 Role(c["role"]),
                 Motion(c["moves_with"]),
-                float(c["volume_mm3"]),
                 tuple((float(x), float(y), float(z)) for x, y, z in c["positions"]),
+                float(c["volume_mm3"]),
             )
             for c in record["components"]
         )

@@ -112,7 +112,8 @@ def _core_pin(ground: Ground, bottom: float, pin: CorePinLayout, circles: np.nda
     ring = ground.under_ring(x, y, diameter / 2 + BESIDE)
     fit_low = _fit_low(np.r_[pin.base_z, ring], beside, pin.fit_length, shoulder)
     sits = bore("core pin")
-    steps = _steps(shoulder, fit_low, (diameter, pin.clearance_diameter), float(heights.max()), sits.fit)
+    top = min(pin.base_z, float(heights.max()))  # the tip above stands in the open, there is no bore round it
+    steps = _steps(shoulder, fit_low, (diameter, pin.clearance_diameter), top, sits.fit)
     if head:
         seat = Step("head seat", round(head + sits.counterbore.low, 3), bottom, shoulder)
         steps = (seat, *steps)

@@ -82,7 +82,7 @@ def test_the_table_of_holes_lists_every_bore_from_the_tip_down():
     made, _, _ = tools.tool()
     rows = [(h.component, h.purpose, h.z_from_mm, h.z_to_mm, h.diameter_mm, h.fit) for h in made.holes]
     assert rows[:3] == [
-        ("core", "core pin 1, fit", 8.0, pytest.approx(22.0), 5.0, "H7"),
+        ("core", "core pin 1, fit", 8.0, pytest.approx(20.0), 5.0, "H7"),  # the tip stands 2 mm out of the core
         ("core", "core pin 1, clearance bore", -37.0, 8.0, 5.5, ""),
         ("core", "core pin 1, head seat", -40.0, -37.0, 10.5, ""),
     ]
