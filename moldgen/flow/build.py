@@ -9,17 +9,19 @@ from typing import Any
 import numpy as np
 
 from moldgen.canon import to_json
+from moldgen.errors import PartError, SpecError
 from moldgen.finding import Finding, Notes, Severity
-from moldgen.flow.export import export_tool, reread_bodies
+from moldgen.flow.export import export_tool, exported_volumes, reread_bodies
 from moldgen.flow.folder import MANIFEST
 from moldgen.flow.job import JobResult, Options, Table, verdict_code
 from moldgen.flow.lay_out import lay_out, marked_points
 from moldgen.flow.prepare import Prepared, ready
 from moldgen.flow.prove import proof_findings
 from moldgen.flow.record import component_files, component_record, file_record, notes_record, review_record
-from moldgen.flow.review import Reviewed, refuse_undercuts, review
+from moldgen.flow.review import Reviewed, refuse_undercuts, review, undercut_error
 from moldgen.flow.tell import Tell
-from moldgen.kernel.measure import volume
+from moldgen.flow.words import direction_text, told_note
+from moldgen.kernel.body import Body
 from moldgen.layout.blocks import size_blocks
 from moldgen.model.halves import Halves
 from moldgen.model.layout import Layout
@@ -34,8 +36,13 @@ from moldgen.proof.run import Claims, prove_tool
 from moldgen.release.kinds import face_kinds
 from moldgen.release.trapped import trapped_volume
 from moldgen.spec.load import LoadedSpec
+from moldgen.spec.sections import Blocks
 from moldgen.steel.bored import Materials
 from moldgen.steel.make import make_tool
+from moldgen.tolerances import ON_PLANE
+
+MOST_FILLED = 0.1
+"""Share of the part's volume that may be molded full: filling is for small undercuts (our choice)."""
 
 
 @dataclass(frozen=True)
@@ -86,20 +93,42 @@ def _part_it(reviewed: Reviewed, tell: Tell) -> tuple[Halves, Notes]:
             stage.detail = f"{len(reviewed.prepared.trapped.pieces)} places"
     else:
         refuse_undercuts(reviewed)
+    level = None if spec.parting.height is None else _mold_level(reviewed, spec.parting.height, prepared.body)
+    fixed = spec.blocks.cavity_height is not None or spec.blocks.core_height is not None
+    # the plane is known only after parting, and given heights count from it: then the blocks are sized twice
+    section = spec.blocks
+    if fixed and level is None:
+        section = section.model_copy(update={"cavity_height": None, "core_height": None})
+    corners, more = _blocks(reviewed, prepared, section, level, tell)
+    parted = _parted(reviewed, prepared, corners, level, tell)
+    if fixed and abs(parted.level - (np.inf if level is None else level)) > ON_PLANE:
+        corners, more = _blocks(reviewed, prepared, spec.blocks, parted.level, tell)
+        parted = _parted(reviewed, prepared, corners, parted.level, tell)
+    return _halves(parted, *corners), notes + more + told(parted, frame)
+
+
+def _blocks(
+    reviewed: Reviewed, prepared: Prepared, section: Blocks, level: float | None, tell: Tell
+) -> tuple[tuple[np.ndarray, np.ndarray], Notes]:
     with tell.stage("size the blocks") as stage:
-        blocks, more = size_blocks(prepared.body, reviewed.resin, spec.blocks)
-        notes += more
+        blocks, notes = size_blocks(prepared.body, reviewed.resin, section, level)
         low, high = np.asarray(blocks.low), np.asarray(blocks.high)
         stage.detail = " x ".join(f"{v:.0f}" for v in high - low) + " mm"
+    return (low, high), notes
+
+
+def _parted(
+    reviewed: Reviewed,
+    prepared: Prepared,
+    corners: tuple[np.ndarray, np.ndarray],
+    level: float | None,
+    tell: Tell,
+) -> Parted:
     with tell.stage("part the mold") as stage:
         avoid = marked_points(reviewed, "no_parting_line")
-        level = None if spec.parting.height is None else _mold_level(reviewed, spec.parting.height)
-        parted = part_halves(
-            prepared.body, prepared.kinds, prepared.trapped.part, (low, high), level=level, avoid=avoid
-        )
-        notes += told(parted, frame)
+        parted = part_halves(prepared.body, prepared.kinds, prepared.trapped.part, corners, level=level, avoid=avoid)
         stage.detail = f"{len(parted.loops)} loops, {parted.sheet.outer.rung}"
-    return _halves(parted, low, high), notes
+    return parted
 
 
 def _halves(parted: Parted, low: np.ndarray, high: np.ndarray) -> Halves:
@@ -117,10 +146,18 @@ def _halves(parted: Parted, low: np.ndarray, high: np.ndarray) -> Halves:
 
 def _filled(reviewed: Reviewed) -> tuple[Prepared, Notes]:
     before = reviewed.prepared
-    body, notes = fill_trapped(before.body, before.kinds, before.trapped, reviewed.frame)
+    gained = sum(p.volume_mm3 for p in before.trapped.pieces)
+    share = gained / float(before.trapped.part.volume())
+    remedy = "fill these places in the part, change them so that they taper along the pull, or give another pull"
+    if share > MOST_FILLED:
+        limit = f"{100 * share:.0f} % of the part's volume, more than the {100 * MOST_FILLED:.0f} % that makes sense"
+        raise undercut_error(reviewed, remedy, f"together they are {limit}")
+    try:
+        body, notes = fill_trapped(before.body, before.kinds, before.trapped, reviewed.frame)
+    except PartError as error:
+        raise undercut_error(reviewed, remedy, f"{error.where}: {error.what}".removeprefix(": ")) from error
     body, more = ready(body, reviewed.frame)
     kinds = face_kinds(body)
-    gained = sum(p.volume_mm3 for p in before.trapped.pieces)
     finding = Finding(
         code="release.filled",
         severity=Severity.WARNING,
@@ -135,10 +172,18 @@ def _filled(reviewed: Reviewed) -> tuple[Prepared, Notes]:
     return Prepared(body, kinds, trapped_volume(body, kinds)), notes + more + Notes((finding,))
 
 
-def _mold_level(reviewed: Reviewed, height: float) -> float:
-    """Return the mold z of a part coordinate along the pull."""
-    x, y, z = (c * height for c in reviewed.pull.direction)
-    return reviewed.frame.to_mold((x, y, z))[2]
+def _mold_level(reviewed: Reviewed, height: float, body: Body) -> float:
+    """Return the mold z of a part coordinate along the pull, which must lie on the part."""
+    base, unit = (reviewed.frame.to_mold(tuple(c * h for c in reviewed.pull.direction))[2] for h in (0.0, 1.0))  # type: ignore[arg-type]
+    low, high = ((float(corner[2]) - base) / (unit - base) for corner in body.box)
+    if not low - ON_PLANE <= height <= high + ON_PLANE:
+        raise SpecError(
+            f"the parting height {height:g} mm does not lie on the part, which reaches from {low:g} to {high:g} mm "
+            "along the pull",
+            where=reviewed.loaded.locate("parting.height"),
+            remedy="give a height between these, or leave it out",
+        )
+    return base + height * (unit - base)
 
 
 def _materials(reviewed: Reviewed) -> Materials:
@@ -155,7 +200,8 @@ def _prove_and_record(built: Built, folder: Path, options: Options, tell: Tell) 
     pictures = _start_pictures(built, folder, options)
     try:
         with tell.stage("prove the tool") as stage:
-            proofs = prove_tool(reread_bodies(built.tool, folder), built.claims)
+            bodies = reread_bodies(built.tool, folder)
+            proofs = prove_tool(bodies, built.claims)
             stage.detail = f"{sum(p.passed for p in proofs)} of {len(proofs)} passed"
         notes = built.notes + Notes(proof_findings(proofs))
         if pictures is not None:
@@ -166,7 +212,7 @@ def _prove_and_record(built: Built, folder: Path, options: Options, tell: Tell) 
     finally:
         if pictures is not None:
             pictures.stop()
-    record = {**_record(built, notes, proofs), "files": file_record(folder)}
+    record = {**_record(built, notes, proofs, exported_volumes(built.tool, bodies)), "files": file_record(folder)}
     (folder / MANIFEST).write_text(to_json(record), encoding="utf-8")
     return _result(built, notes, proofs)
 
@@ -175,8 +221,7 @@ def _start_pictures(built: Built, folder: Path, options: Options) -> PictureJob 
     if not (options.pictures and built.reviewed.loaded.spec.output.pictures):
         return None
     reviewed = built.reviewed
-    pull = ", ".join(f"{v + 0.0:g}" for v in reviewed.pull.direction)
-    title = (reviewed.part.name, reviewed.resin.name, pull)
+    title = (reviewed.part.name, reviewed.resin.name, direction_text(reviewed.pull.direction))
     scene = tool_scene(built.tool, built.halves, title, built.layout.gate.at, built.layout.stroke_mm)
     (folder / "pictures").mkdir()
     return start_pictures(scene, folder / "pictures")
@@ -197,7 +242,7 @@ def _missing(pictures: PictureJob) -> tuple[Finding, ...]:
     )
 
 
-def _record(built: Built, notes: Notes, proofs: tuple[Proof, ...]) -> dict[str, Any]:
+def _record(built: Built, notes: Notes, proofs: tuple[Proof, ...], volumes: dict[str, float]) -> dict[str, Any]:
     files = component_files(built.tool)
     record = review_record(built.reviewed)
     record["parting"] = {
@@ -206,7 +251,7 @@ def _record(built: Built, notes: Notes, proofs: tuple[Proof, ...]) -> dict[str, 
         "block_mm": [built.halves.low.tolist(), built.halves.high.tolist()],
     }
     record["layout"] = built.layout
-    record["components"] = [component_record(c, files[c.name], volume(c.solid)) for c in built.tool.components]
+    record["components"] = [component_record(c, files[c.name], volumes[c.name]) for c in built.tool.components]
     record["claims"] = built.claims
     return {**record, **notes_record(notes, proofs)}
 
@@ -214,11 +259,11 @@ def _record(built: Built, notes: Notes, proofs: tuple[Proof, ...]) -> dict[str, 
 def _result(built: Built, notes: Notes, proofs: tuple[Proof, ...]) -> JobResult:
     code = verdict_code(notes.findings, proofs)
     proved = "proved" if all(p.passed for p in proofs) else "NOT proved"
-    rows = tuple((c.name, c.role.value, len(c.positions), c.material, c.note) for c in built.tool.components)
+    rows = tuple((c.name, len(c.positions), c.material, told_note(c.note)) for c in built.tool.components)
     return JobResult(
         exit_code=code,
         headline=f"{built.reviewed.part.name}: {len(built.tool.components)} components, {proved}",
-        tables=(Table("components", ("name", "role", "quantity", "material", "note"), rows),),
+        tables=(Table("components", ("name", "quantity", "material", "note"), rows),),
         proofs=proofs,
         findings=notes.findings,
         decisions=notes.decisions,
