@@ -126,7 +126,14 @@ def _parted(
 ) -> Parted:
     with tell.stage("part the mold") as stage:
         avoid = marked_points(reviewed, "no_parting_line")
-        parted = part_halves(prepared.body, prepared.kinds, prepared.trapped.part, corners, level=level, avoid=avoid)
+        part = prepared.trapped.part
+        try:
+            parted = part_halves(prepared.body, prepared.kinds, part, corners, level=level, avoid=avoid)
+        except PartError as error:
+            if prepared.trapped.pieces:  # rubs: thin, but they can keep the halves from closing around the part
+                remedy = "taper these faces along the pull, or accept them filled with parting.undercuts: fill"
+                raise undercut_error(reviewed, remedy, error.what) from error
+            raise
         stage.detail = f"{len(parted.loops)} loops, {parted.sheet.outer.rung}"
     return parted
 
@@ -151,11 +158,12 @@ def _filled(reviewed: Reviewed) -> tuple[Prepared, Notes]:
     remedy = "fill these places in the part, change them so that they taper along the pull, or give another pull"
     if share > MOST_FILLED:
         limit = f"{100 * share:.0f} % of the part's volume, more than the {100 * MOST_FILLED:.0f} % that makes sense"
-        raise undercut_error(reviewed, remedy, f"together they are {limit}")
+        raise undercut_error(reviewed, remedy, f"they cannot be molded full: together they are {limit}")
     try:
         body, notes = fill_trapped(before.body, before.kinds, before.trapped, reviewed.frame)
     except PartError as error:
-        raise undercut_error(reviewed, remedy, f"{error.where}: {error.what}".removeprefix(": ")) from error
+        why = f"{error.where}: {error.what}".removeprefix(": ")
+        raise undercut_error(reviewed, remedy, f"they cannot be molded full: {why}") from error
     body, more = ready(body, reviewed.frame)
     kinds = face_kinds(body)
     finding = Finding(

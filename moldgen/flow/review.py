@@ -132,14 +132,14 @@ def refuse_undercuts(reviewed: Reviewed) -> None:
         )
 
 
-def undercut_error(reviewed: Reviewed, remedy: str, unfilled: str = "") -> PartError:
-    """Return the refusal that names the trapped places; `unfilled` is why they cannot be molded full either."""
+def undercut_error(reviewed: Reviewed, remedy: str, also: str = "") -> PartError:
+    """Return the refusal that names the trapped places; `also` is what else stands in the way."""
     pieces = reviewed.release.trapped
     lines = [_named(p) for p in pieces[:MOST_NAMED]]
     if len(pieces) > MOST_NAMED:
         lines.append(f"and {len(pieces) - MOST_NAMED} more")
-    if unfilled:
-        lines.append(f"they cannot be molded full either: {unfilled}")
+    if also:
+        lines.append(also)
     return PartError(
         f"{len(pieces)} {'places hold' if len(pieces) > 1 else 'place holds'} the part against a straight pull along "
         f"{direction_text(reviewed.pull.direction)}:\n    " + "\n    ".join(lines),
