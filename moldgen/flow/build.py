@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
 
@@ -77,11 +77,21 @@ def build_tool(loaded: LoadedSpec, folder: Path, options: Options, tell: Tell) -
         notes += more
         stage.detail = f"{len(tool.components)} components"
     claims = Claims(float(np.prod(halves.high - halves.low)), bored.total_mm3, layout.stroke_mm)
-    built = Built(reviewed, halves, layout, tool, claims, reviewed.notes + notes)
+    built = Built(reviewed, halves, layout, tool, claims, _accepted(reviewed) + notes)
     with tell.stage("export") as stage:
         export_tool(tool, folder, loaded.spec.output.step)
         stage.detail = "STEP files and tables"
     return _prove_and_record(built, folder, options, tell)
+
+
+def _accepted(reviewed: Reviewed) -> Notes:
+    """Return the notes of the review; undercuts that the spec accepts to be molded full no longer fail the build."""
+    if reviewed.loaded.spec.parting.undercuts != "fill":
+        return reviewed.notes
+    findings = tuple(
+        replace(f, severity=Severity.WARNING) if f.code == "release.trapped" else f for f in reviewed.notes.findings
+    )
+    return replace(reviewed.notes, findings=findings)
 
 
 def _part_it(reviewed: Reviewed, tell: Tell) -> tuple[Halves, Notes]:
