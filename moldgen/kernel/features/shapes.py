@@ -44,7 +44,7 @@ _VERBS: Final = {"add": "join", "cut": "cut", "intersect": "intersect"}
 
 
 def combine(mode: str, body: TopoDS_Shape, tools: Sequence[TopoDS_Shape]) -> TopoDS_Shape:
-    """Return the body after adding, cutting or intersecting with the tools, as one valid solid (see `combine_sized`)."""
+    """Return the body after adding, cutting or intersecting with the tools, as one valid solid."""
     return combine_sized(mode, body, tools, volume(body))[0]
 
 
