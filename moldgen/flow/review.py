@@ -140,8 +140,10 @@ def undercut_error(reviewed: Reviewed, remedy: str, also: str = "") -> PartError
         lines.append(f"and {len(pieces) - MOST_NAMED} more")
     if also:
         lines.append(also)
+    undercuts = sum(p.grip is Grip.UNDERCUT for p in pieces)
+    noun, count = ("undercut", undercuts) if undercuts else ("rub", len(pieces))
     return PartError(
-        f"{len(pieces)} {'places hold' if len(pieces) > 1 else 'place holds'} the part against a straight pull along "
+        f"{count} {noun}{'s hold' if count > 1 else ' holds'} the part against a straight pull along "
         f"{direction_text(reviewed.pull.direction)}:\n    " + "\n    ".join(lines),
         where=reviewed.loaded.locate("pull"),
         remedy=remedy,
