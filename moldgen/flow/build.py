@@ -11,16 +11,17 @@ import numpy as np
 from moldgen.canon import to_json
 from moldgen.errors import PartError, SpecError
 from moldgen.finding import Finding, Notes, Severity
+from moldgen.flow.build_tables import build_tables
 from moldgen.flow.export import export_tool, exported_volumes, reread_bodies
 from moldgen.flow.folder import MANIFEST
-from moldgen.flow.job import JobResult, Options, Table, verdict_code
+from moldgen.flow.job import JobResult, Options, verdict_code
 from moldgen.flow.lay_out import lay_out, marked_points
 from moldgen.flow.prepare import Prepared, ready
 from moldgen.flow.prove import proof_findings
 from moldgen.flow.record import component_files, component_record, file_record, notes_record, review_record
 from moldgen.flow.review import Reviewed, refuse_undercuts, review, undercut_error
 from moldgen.flow.tell import Tell
-from moldgen.flow.words import direction_text, told_note
+from moldgen.flow.words import direction_text
 from moldgen.kernel.body import Body
 from moldgen.layout.blocks import size_blocks
 from moldgen.model.halves import Halves
@@ -277,11 +278,10 @@ def _record(built: Built, notes: Notes, proofs: tuple[Proof, ...], volumes: dict
 def _result(built: Built, notes: Notes, proofs: tuple[Proof, ...]) -> JobResult:
     code = verdict_code(notes.findings, proofs)
     proved = "proved" if all(p.passed for p in proofs) else "NOT proved"
-    rows = tuple((c.name, len(c.positions), c.material, told_note(c.note)) for c in built.tool.components)
     return JobResult(
         exit_code=code,
         headline=f"{built.reviewed.part.name}: {len(built.tool.components)} components, {proved}",
-        tables=(Table("components", ("name", "quantity", "material", "note"), rows),),
+        tables=build_tables(built.tool, built.layout),
         proofs=proofs,
         findings=notes.findings,
         decisions=notes.decisions,

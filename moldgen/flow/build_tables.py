@@ -1,0 +1,48 @@
+"""The tables that a build shows: components, the force balance of the ejectors, the core pins."""
+
+from __future__ import annotations
+
+from moldgen.flow.job import Table
+from moldgen.flow.words import told_note
+from moldgen.model.layout import Layout
+from moldgen.model.tool import Tool
+
+
+def build_tables(tool: Tool, layout: Layout) -> tuple[Table, ...]:
+    """Return the tables of a built tool; those without rows are left out."""
+    return tuple(t for t in (_components(tool), _ejectors(layout), _core_pins(layout)) if t.rows)
+
+
+def _components(tool: Tool) -> Table:
+    rows = tuple((c.name, len(c.positions), c.material, told_note(c.note)) for c in tool.components)
+    return Table("components", ("name", "quantity", "material", "note"), rows)
+
+
+def _ejectors(layout: Layout) -> Table:
+    rows = tuple(
+        (
+            p.name,
+            _listed(p.x, p.y),
+            p.diameter,
+            round(p.force_n, 1),
+            round(p.pressure_mpa, 2),
+            round(p.buckling_n),
+            p.chosen_by.value,
+        )
+        for p in layout.ejector_pins
+    )
+    title = f"ejection: {layout.ejection_force_n:.0f} N needed, stroke {layout.stroke_mm:g} mm"
+    columns = ("pin", "at x, y (mold)", "d [mm]", "force [N]", "on the part [MPa]", "buckles at [N]", "chosen")
+    return Table(title, columns, rows)
+
+
+def _core_pins(layout: Layout) -> Table:
+    rows = tuple(
+        (p.name, _listed(p.x, p.y), p.diameter, round(p.slenderness, 2), "blind" if p.blind else "through")
+        for p in layout.core_pins
+    )
+    return Table("core pins", ("pin", "at x, y (mold)", "d [mm]", "length / d", "hole"), rows)
+
+
+def _listed(*values: float) -> str:
+    return ", ".join(f"{round(v, 2) + 0.0:.2f}" for v in values)
