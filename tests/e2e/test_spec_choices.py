@@ -141,8 +141,9 @@ def test_given_pins_a_pin_gate_and_a_core_pin_asked_for(build) -> None:
     assert core_pin["chosen_by"] == "given in the spec"
     # the boss ends 12 mm under its plane z = 14.2, so at 2.2; its hole is 11 mm deep: its floor is at 13.2
     assert core_pin["top_z"] == pytest.approx(13.2 * K, abs=1e-6)
+    # its bore ends where the core does: under the end of the boss
     rows = [r for r in table(record["folder"] / "holes.csv") if r["purpose"] == "core pin 1, fit"]
-    assert [float(rows[0]["x_mm"]), float(rows[0]["z_to_mm"])] == pytest.approx([8 * K, 13.2 * K], abs=1e-4)
+    assert [float(rows[0]["x_mm"]), float(rows[0]["z_to_mm"])] == pytest.approx([8 * K, 2.2 * K], abs=1e-4)
 
 
 def test_illegal_pins_and_core_pins_fail_with_their_place_and_a_sprue_gate_is_built(build) -> None:
