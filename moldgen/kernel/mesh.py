@@ -33,12 +33,15 @@ class SurfaceMesh:
     triangles : (t, 3) int, counter-clockwise seen from outside
     face : (t,) int, index of the face that each triangle approximates
     normals : (t, 3) float, mean of the exact surface normals at the triangle's corners, outward, not normalised
+    sag : (t,) float [mm], about how far the surface bulges from the triangle's sides: the chord of an arc with unit
+        normals n1, n2 at its ends p1, p2 has the sag |(p2 - p1) . (n2 - n1)| / 8
     """
 
     vertices: np.ndarray
     triangles: np.ndarray
     face: np.ndarray
     normals: np.ndarray
+    sag: np.ndarray
 
     @cached_property
     def corners(self) -> np.ndarray:
@@ -89,8 +92,15 @@ def surface_mesh(faces: list[TopoDS_Face]) -> SurfaceMesh:
         & (triangles[:, 1] != triangles[:, 2])
         & (triangles[:, 2] != triangles[:, 0])
     )
-    normals = raw.normals[raw.triangles].mean(axis=1)
-    return SurfaceMesh(raw.nodes[first], triangles[proper], raw.face[proper], normals[proper])
+    corner_normals = raw.normals[raw.triangles][proper]
+    sag = _sag(raw.nodes[raw.triangles][proper], corner_normals)
+    return SurfaceMesh(raw.nodes[first], triangles[proper], raw.face[proper], corner_normals.mean(axis=1), sag)
+
+
+def _sag(corners: np.ndarray, normals: np.ndarray) -> np.ndarray:
+    unit = normals / np.maximum(np.linalg.norm(normals, axis=2), 1e-300)[:, :, None]
+    along, turn = np.roll(corners, -1, axis=1) - corners, np.roll(unit, -1, axis=1) - unit
+    return np.asarray(np.abs((along * turn).sum(axis=2)).max(axis=1) / 8.0)
 
 
 def _read_triangulations(faces: list[TopoDS_Face]) -> _Raw:

@@ -9,13 +9,14 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from moldgen.kernel.meshsolid import MeshSolid, thickness
+from moldgen.kernel.meshsolid import MeshSolid
 from moldgen.model.proof import Proof, Verdict
 from moldgen.model.tool import Motion
 from moldgen.proof.bodies import ProofBody
+from moldgen.proof.overlap import deepest
 from moldgen.release.kinds import face_kinds
 from moldgen.release.sweep import sweep_faces
-from moldgen.tolerances import EROSION, OPEN_OVERLAP, SMALL_VOLUME
+from moldgen.tolerances import OPEN_OVERLAP
 
 CAVITY_OPENS = "the cavity half opens"
 PART_LEAVES = "the part leaves the core"
@@ -61,11 +62,9 @@ def _prove_way(
             other_low, other_high = other.body.box
             if (other_low > high).any() or (low > other_high).any():
                 continue
-            for piece in (swept ^ other.thin).decompose():
-                if piece.volume() > SMALL_VOLUME and thickness(piece) + EROSION > worst:
-                    worst = thickness(piece) + EROSION
-                    x, y, z = piece.to_mesh64().vert_properties[0][:3]
-                    pair = f"{mover.name} against {other.name} at {x:.2f}, {y:.2f}, {z:.2f}"
+            found = deepest(swept, mover.body.mesh, other)
+            if found.depth_mm > worst:
+                worst, pair = found.depth_mm, f"{mover.name} against {other.name} {found.told}"
     verdict = Verdict.PASSED if worst < OPEN_OVERLAP else Verdict.FAILED
     return Proof(name, verdict, worst, OPEN_OVERLAP, "mm", pair)
 

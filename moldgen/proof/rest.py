@@ -7,11 +7,11 @@ from itertools import combinations
 
 from moldgen.errors import KernelError
 from moldgen.kernel.measure import balance, is_valid
-from moldgen.kernel.meshsolid import overlap_depth
 from moldgen.kernel.topology import solids_of
 from moldgen.model.proof import Proof, Verdict
 from moldgen.model.tool import Role
 from moldgen.proof.bodies import ProofBody
+from moldgen.proof.overlap import deepest
 from moldgen.tolerances import BALANCE, OPEN_OVERLAP
 
 IN_BLOCK = (Role.PART, Role.CAVITY, Role.CORE)
@@ -62,8 +62,8 @@ def prove_rest(bodies: Sequence[ProofBody]) -> Proof:
     worst, pair = 0.0, ""
     for one, other in combinations(bodies, 2):
         if one.may_meet(other):
-            overlap = overlap_depth(one.mesh, other.thin)
-            if overlap > worst:
-                worst, pair = overlap, f"{one.name} and {other.name}"
+            found = deepest(one.mesh, one.body.mesh, other)
+            if found.depth_mm > worst:
+                worst, pair = found.depth_mm, f"{one.name} and {other.name} {found.told}"
     verdict = Verdict.PASSED if worst < OPEN_OVERLAP else Verdict.FAILED
     return Proof(APART, verdict, worst, OPEN_OVERLAP, "mm", pair)

@@ -139,7 +139,7 @@ def test_nearest_triangle_agrees_with_trimesh(name):
 def test_a_triangle_without_area_is_as_near_as_its_sides():
     # two triangles in the plane z = 0, and one far away that is only a line: its plane is nowhere, not here
     vertices = np.array([[0, 0, 0], [4, 0, 0], [0, 4, 0], [90, 0, 0], [91, 0, 0], [92, 0, 0]], dtype=float)
-    mesh = SurfaceMesh(vertices, np.array([[0, 1, 2], [3, 4, 5]]), np.array([0, 1]), np.zeros((2, 3)))
+    mesh = SurfaceMesh(vertices, np.array([[0, 1, 2], [3, 4, 5]]), np.array([0, 1]), np.zeros((2, 3)), np.zeros(2))
     assert nearest_triangle(mesh, np.array([1.0, 1.0, 2.5])) == (0, pytest.approx(2.5))
     assert nearest_triangle(mesh, np.array([93.0, 0.0, 0.0])) == (1, pytest.approx(1.0))
 
