@@ -61,6 +61,8 @@ def _pins(view: PartView, resin: Resin, wishes: Wishes) -> tuple[tuple[CorePinLa
     if not gain:
         return core_pins, ejection, notes + more
     press = f"{'shouldered ones would ' if small else 'which would '}press on the part with {pressure:.0f} MPa"
+    if math.isinf(pressure):
+        press = "for which no place would be left"
     why = f"core pins would crowd the ejector pins, {press}"
     refused = tuple(f"{p.name} at {p.x:.1f}, {p.y:.1f}" for p in core_pins if p.chosen_by is Chooser.MOLDGEN)
     decision = Decision("core pins", f"{len(fewer)}, the other round cores stay in the block", why, "", refused)
