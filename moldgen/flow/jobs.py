@@ -14,6 +14,9 @@ from moldgen.flow.tell import Tell
 from moldgen.spec.load import LoadedSpec, load_spec
 from moldgen.spec.schema import Spec
 
+LOADING = "load the kernel"
+"""The stage that takes seconds before anything about the part happens."""
+
 OUT = Path("out")
 """Where outputs go, in the folder where moldgen is run, unless the spec or the command line says otherwise."""
 
@@ -23,7 +26,8 @@ def build(job: Job, tell: Tell) -> JobResult:
     loaded, final = _loaded(job, "")
     tell.output(final)
     with fresh_folder(final, inputs=_inputs(loaded), tell=tell) as aside:
-        from moldgen.flow.build import build_tool  # noqa: PLC0415  loads the kernel
+        with tell.stage(LOADING):
+            from moldgen.flow.build import build_tool  # noqa: PLC0415
 
         with _located(loaded):
             result = build_tool(loaded, aside, job.options, tell)
@@ -35,7 +39,8 @@ def check(job: Job, tell: Tell) -> JobResult:
     loaded, final = _loaded(job, "-check")
     tell.output(final)
     with fresh_folder(final, inputs=_inputs(loaded), tell=tell) as aside:
-        from moldgen.flow.check import check_part  # noqa: PLC0415  loads the kernel
+        with tell.stage(LOADING):
+            from moldgen.flow.check import check_part  # noqa: PLC0415
 
         with _located(loaded):
             result = check_part(loaded, aside, tell)
@@ -44,14 +49,16 @@ def check(job: Job, tell: Tell) -> JobResult:
 
 def prove(job: Job, tell: Tell) -> JobResult:
     """Read an output folder back and prove the tool again, without its spec."""
-    from moldgen.flow.prove import prove_folder  # noqa: PLC0415  loads the kernel
+    with tell.stage(LOADING):
+        from moldgen.flow.prove import prove_folder  # noqa: PLC0415
 
     return prove_folder(job.source, tell)
 
 
 def new(job: Job, tell: Tell) -> JobResult:
     """Write a commented starter spec for a STEP file."""
-    from moldgen.flow.new import starter_spec  # noqa: PLC0415  loads the kernel
+    with tell.stage(LOADING):
+        from moldgen.flow.new import starter_spec  # noqa: PLC0415
 
     output = job.output or Path(f"{job.source.stem}.yaml")
     text, result = starter_spec(job.source, output, job.options.resin, tell)

@@ -99,7 +99,7 @@ def _read(part: RealPart, code: int, said: dict[str, Any]) -> Outcome:
     else:
         verdict = f"proved, {filled[0]['value']:.2f} mm3 filled" if filled else "proved"
         detail = ", ".join(f"{p['figure']:.1e}" for p in said["proofs"] if p["figure"] is not None)
-    seconds = sum(t["seconds"] for t in said["timings_s"] if t["stage"] != "load the stages")
+    seconds = sum(t["seconds"] for t in said["timings_s"] if not t["stage"].startswith("load the "))
     return Outcome(part, code, verdict, rungs, seconds, detail)
 
 
