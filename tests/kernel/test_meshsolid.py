@@ -41,7 +41,7 @@ def test_volume_and_area_agree_with_trimesh():
 def test_a_mesh_with_a_hole_is_no_solid():
     mesh = mesh_of(solids.box((0, 0, 0), (1, 1, 1)))
     assert make_solid(mesh.vertices, mesh.triangles[1:], mesh.face[1:]) is None
-    open_mesh = type(mesh)(mesh.vertices, mesh.triangles[1:], mesh.face[1:], mesh.normals[1:])
+    open_mesh = type(mesh)(mesh.vertices, mesh.triangles[1:], mesh.face[1:], mesh.normals[1:], mesh.bulge[1:])
     with pytest.raises(KernelError, match="not closed"):
         mesh_solid(open_mesh)
 
