@@ -177,6 +177,11 @@ def _filled(reviewed: Reviewed) -> tuple[Prepared, Notes]:
         raise undercut_error(reviewed, remedy, f"they cannot be molded full: {why}") from error
     body, more = ready(body, reviewed.frame)
     kinds = face_kinds(body)
+    trapped = trapped_volume(body, kinds)
+    if trapped.undercuts:
+        left = sum(p.volume_mm3 for p in trapped.undercuts)
+        why = f"filled, {len(trapped.undercuts)} places of {left:.3f} mm^3 stay trapped"
+        raise undercut_error(reviewed, remedy, f"they cannot be molded full: {why}")
     finding = Finding(
         code="release.filled",
         severity=Severity.WARNING,
@@ -188,7 +193,7 @@ def _filled(reviewed: Reviewed) -> tuple[Prepared, Notes]:
         unit="mm^3",
         remedy="machine these places after molding, change the part, or plan side actions",
     )
-    return Prepared(body, kinds, trapped_volume(body, kinds)), notes + more + Notes((finding,))
+    return Prepared(body, kinds, trapped), notes + more + Notes((finding,))
 
 
 def _mold_level(reviewed: Reviewed, height: float, body: Body) -> float:
