@@ -67,7 +67,7 @@ def test_a_boss_left_standing_in_the_cavity_overlaps_the_part():
     nub = solids.cylinder(0.5, 0.2, at=(0, 10, 24.9))  # 0.1 mm into the roof, 1 mm wide
     failed = refused(Role.CAVITY, solids.fuse(role(bodies, Role.CAVITY).solid, nub))
     assert failed[APART].figure == pytest.approx(0.1, rel=0.15)
-    assert failed[APART].detail .startswith("part and cavity at")
+    assert failed[APART].detail.startswith("part and cavity at")
 
 
 @pytest.mark.parametrize("way", [(0.1, 0, 0), (0, -0.1, 0), (0, 0, 0.1)])
@@ -121,12 +121,12 @@ def test_an_unsound_solid_is_told_by_name(broken, words):
 
 def test_a_pin_beside_its_bore_hits_the_core():
     failed = refused(Role.EJECTOR_PIN, pin(at=(8.15, 0.0)))
-    assert failed[APART].detail .startswith("core and ejector pin at")
+    assert failed[APART].detail.startswith("core and ejector pin at")
 
 
 def test_a_pin_too_long_stands_in_the_part():
     failed = refused(Role.EJECTOR_PIN, pin(top=CEILING + 0.3))
-    assert failed[APART].detail .startswith("part and ejector pin at")
+    assert failed[APART].detail.startswith("part and ejector pin at")
     assert failed[APART].figure == pytest.approx(0.3, rel=0.2)
 
 
