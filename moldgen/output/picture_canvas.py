@@ -32,8 +32,7 @@ from vtkmodules.vtkRenderingCore import (
 )
 
 from moldgen.output.palette import PAPER, TEXT, Rgb
-from moldgen.output.picture_frame import SIZE, Rect
-from moldgen.output.picture_geometry import View
+from moldgen.output.picture_geometry import SIZE, Rect, View
 from moldgen.output.scene import Points, Vector
 
 OVERSAMPLE = 2

@@ -10,19 +10,14 @@ import numpy as np
 
 from moldgen.output import palette
 from moldgen.output.palette import Rgb
+from moldgen.output.picture_geometry import SIZE, Rect
 from moldgen.output.scene import Scene
 
 if TYPE_CHECKING:
     from moldgen.output.picture_canvas import Canvas
 
-Rect = tuple[float, float, float, float]
-"""Left, bottom, right, top [px], origin at the bottom left."""
-
 Spot = tuple[float, float]
 """A place on the sheet [px], or a direction on it."""
-
-SIZE = (1400, 1000)
-"""Width and height of a picture [px]."""
 
 CAUTION = "first-pass layout: review before cutting steel"
 

@@ -9,6 +9,12 @@ import numpy as np
 
 from moldgen.output.scene import Indices, Points, SceneBody, Vector
 
+Rect = tuple[float, float, float, float]
+"""Left, bottom, right, top [px], origin at the bottom left."""
+
+SIZE = (1400, 1000)
+"""Width and height of a picture [px]."""
+
 
 @dataclass(frozen=True)
 class Shaded:

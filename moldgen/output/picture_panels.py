@@ -9,8 +9,8 @@ import numpy as np
 from moldgen.output import palette
 from moldgen.output.palette import Ink, Rgb
 from moldgen.output.picture_canvas import Canvas, Panel
-from moldgen.output.picture_frame import Mark, Rect
-from moldgen.output.picture_geometry import View, outline, shade
+from moldgen.output.picture_frame import Mark
+from moldgen.output.picture_geometry import Rect, View, outline, shade
 from moldgen.output.scene import Points, SceneBody, Vector
 
 EDGE_WIDTH = 1.1

@@ -9,8 +9,8 @@ import numpy as np
 
 from moldgen.output import palette
 from moldgen.output.picture_canvas import Canvas, Panel
-from moldgen.output.picture_frame import FIELD, Rect, draw_arrow_head, draw_frame
-from moldgen.output.picture_geometry import Cut, View, choose_cut, cut_mesh, hatch, look_from
+from moldgen.output.picture_frame import FIELD, draw_arrow_head, draw_frame
+from moldgen.output.picture_geometry import Cut, Rect, View, choose_cut, cut_mesh, hatch, look_from
 from moldgen.output.picture_panels import common_scale, flat_bounds, make_panels, role_marks, show_body
 from moldgen.output.scene import Points, Scene, SceneBody
 

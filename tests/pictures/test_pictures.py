@@ -3,15 +3,14 @@
 from __future__ import annotations
 
 import dataclasses
-import struct
 import subprocess
 import sys
-import zlib
 from pathlib import Path
 
 import numpy as np
 import pytest
 from helpers.mesh_bodies import box, cylinder
+from helpers.png import pixels
 
 from moldgen.errors import StageError
 from moldgen.output import palette
@@ -42,24 +41,6 @@ def drawn(scene: Scene, tmp_path_factory: pytest.TempPathFactory) -> PictureResu
     if "cannot draw" in result.missing or "is missing" in result.missing:
         pytest.skip(result.missing)
     return result
-
-
-def pixels(path: Path) -> np.ndarray:
-    """Read a PNG of our own by the letter of the format: 8-bit RGB, row filter 2; every chunk's checksum must hold."""
-    data = path.read_bytes()
-    assert data[:8] == b"\x89PNG\r\n\x1a\n"
-    at, packed = 8, b""
-    while at < len(data):
-        (length,) = struct.unpack(">I", data[at : at + 4])
-        kind, body = data[at + 4 : at + 8], data[at + 8 : at + 8 + length]
-        assert struct.unpack(">I", data[at + 8 + length : at + 12 + length])[0] == zlib.crc32(kind + body)
-        if kind == b"IHDR":
-            width, height = struct.unpack(">II", body[:8])
-        packed += body if kind == b"IDAT" else b""
-        at += 12 + length
-    rows = np.frombuffer(zlib.decompress(packed), np.uint8).reshape(height, 1 + 3 * width)
-    assert (rows[:, 0] == 2).all()
-    return np.cumsum(rows[:, 1:], axis=0, dtype=np.uint8).reshape(height, width, 3)
 
 
 def share_of(picture: np.ndarray, colour: palette.Rgb) -> float:
