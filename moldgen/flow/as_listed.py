@@ -10,7 +10,6 @@ from moldgen.canon import sha256_bytes
 from moldgen.errors import KernelError
 from moldgen.finding import Finding, Severity
 from moldgen.flow.reread import Entry, Listing
-from moldgen.kernel.measure import volume
 from moldgen.kernel.place import standing_at
 from moldgen.proof.bodies import ProofBody
 
@@ -53,7 +52,7 @@ def _components(entries: Sequence[Entry], bodies: Sequence[ProofBody]) -> Iterat
         if not off <= SAME_PLACE:
             yield _differs(body, f"stands {off:.6g} mm from where the manifest puts it", off, SAME_PLACE, "mm")
         try:
-            found = volume(body.solid)
+            found = body.volume_mm3
         except KernelError:
             continue  # the proof that every component is sound tells it
         part = abs(found - entry.volume_mm3) / max(abs(found), 1e-9)

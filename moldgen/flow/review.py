@@ -18,6 +18,7 @@ from moldgen.kernel.extent import reach
 from moldgen.kernel.measure import bounding_box, volume_adaptive
 from moldgen.kernel.place import to_mold
 from moldgen.model.part import Box, MoldFrame, Part, Pull, Vector
+from moldgen.proof.bodies import SAME_VOLUME
 from moldgen.release.contact import vertical_contact
 from moldgen.release.frame import mold_frame
 from moldgen.release.pull import PullCandidate, search_pull
@@ -97,10 +98,6 @@ def review(loaded: LoadedSpec, tell: Tell) -> Reviewed:
         notes += more
         stage.detail = f"{release.draft.faces_below} faces below {release.draft.required_deg:.2g} deg"
     return Reviewed(loaded, data, part, pull, frame, prepared, release, notes)
-
-
-SAME_VOLUME = 1e-4
-"""Relative difference between two ways to the part's volume above which a third, slow one decides."""
 
 
 def _sure_volume(part: Part, prepared: Prepared, scale: float) -> float:

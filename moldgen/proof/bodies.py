@@ -10,10 +10,14 @@ import numpy as np
 
 from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
+from moldgen.kernel.measure import volume, volume_adaptive
 from moldgen.kernel.meshsolid import MeshSolid, eroded, mesh_solid
 from moldgen.kernel.place import moved
 from moldgen.model.tool import Motion, Role
 from moldgen.tolerances import PROOF_ANGLE, PROOF_DEFLECTION
+
+SAME_VOLUME = 1e-4
+"""Relative difference between two ways to a volume above which a third, slow one decides."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -34,6 +38,16 @@ class ProofBody:
     def mesh(self) -> MeshSolid:
         """The mesh as a solid. Raises KernelError when it does not close."""
         return mesh_solid(self.body.mesh)
+
+    @cached_property
+    def volume_mm3(self) -> float:
+        """Volume of the solid [mm^3].
+
+        The kernel's default integration was up to 9e-3 off on trimmed spline faces; where it disagrees with the mesh,
+        the adaptive one decides. Raises KernelError when there is no mesh to check it by.
+        """
+        quick, checked = volume(self.solid), self.body.mesh.volume()
+        return quick if abs(quick - checked) < SAME_VOLUME * abs(checked) else volume_adaptive(self.solid, 1e-7)
 
     @cached_property
     def thin(self) -> MeshSolid:

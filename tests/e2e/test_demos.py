@@ -64,20 +64,21 @@ def test_gmsh_reads_the_volumes_the_places_and_the_colours_of_the_manifest(demo,
     record, tool = manifest(folder), gmsh_solids(folder / "tool.step")
     listed = [(c, place) for c in record["components"] for place in c["positions"]]
     assert [solid.name for solid in tool] == [c["name"] for c, _ in listed]
+    # gmsh integrates as the kernel does by default: up to 0.9 % off on these two, whose faces have spline edges
+    near = 1e-2 if name in ("mast-clip", "rain-funnel") else 1e-6
     alone: dict[str, Seen] = {}
     for component in record["components"]:
         (alone[component["name"]],) = gmsh_solids(folder / component["file"])
     for solid, (component, place) in zip(tool, listed, strict=True):
-        assert solid.volume == pytest.approx(component["volume_mm3"], rel=1e-6)
-        assert alone[solid.name].volume == pytest.approx(component["volume_mm3"], rel=1e-6)
+        assert solid.volume == pytest.approx(component["volume_mm3"], rel=near)
+        assert alone[solid.name].volume == pytest.approx(component["volume_mm3"], rel=near)
         moved = np.subtract(solid.centre, alone[solid.name].centre)
         assert moved == pytest.approx(place, abs=1e-5), f"{solid.name} stands elsewhere"
         assert solid.colour == alone[solid.name].colour == pytest.approx(ROLES[component["role"]].colour, abs=1)
     volumes = {c["role"]: c["volume_mm3"] for c in record["components"]}
     factors = math.prod(record["shrink"][axis] for axis in "xyz")
     drawn = record["part"]["volume_mm3"] * factors
-    # the kernel's default integration is 0.9 % off on the mast clip, whose faces have spline edges, else far better
-    assert volumes["part"] == pytest.approx(drawn, rel=1e-2 if name == "mast-clip" else 1e-3)
+    assert volumes["part"] == pytest.approx(drawn, rel=2e-4 if near > 1e-6 else 1e-6)
 
 
 def test_identical_components_share_one_definition(demo, name: str) -> None:
