@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from moldgen.flow.job import Table
-from moldgen.flow.words import told_note
+from moldgen.flow.words import point_text, told_note
 from moldgen.model.layout import Layout
 from moldgen.model.tool import Tool
 
@@ -22,7 +22,7 @@ def _ejectors(layout: Layout) -> Table:
     rows = tuple(
         (
             p.name,
-            _listed(p.x, p.y),
+            point_text((p.x, p.y)),
             p.diameter,
             round(p.force_n, 1),
             round(p.pressure_mpa, 2),
@@ -38,11 +38,7 @@ def _ejectors(layout: Layout) -> Table:
 
 def _core_pins(layout: Layout) -> Table:
     rows = tuple(
-        (p.name, _listed(p.x, p.y), p.diameter, round(p.slenderness, 2), "blind" if p.blind else "through")
+        (p.name, point_text((p.x, p.y)), p.diameter, round(p.slenderness, 2), "blind" if p.blind else "through")
         for p in layout.core_pins
     )
     return Table("core pins", ("pin", "at x, y (mold)", "d [mm]", "length / d", "hole"), rows)
-
-
-def _listed(*values: float) -> str:
-    return ", ".join(f"{round(v, 2) + 0.0:.2f}" for v in values)

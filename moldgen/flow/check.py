@@ -10,7 +10,7 @@ from moldgen.flow.job import JobResult, Table, verdict_code
 from moldgen.flow.record import notes_record, review_record
 from moldgen.flow.review import Reviewed, review
 from moldgen.flow.tell import Tell
-from moldgen.flow.words import direction_text
+from moldgen.flow.words import direction_text, point_text
 from moldgen.spec.load import LoadedSpec
 
 MOST_ROWS = 20
@@ -67,7 +67,7 @@ def _draft(reviewed: Reviewed) -> Table:
     short.sort(key=lambda r: (-round(r.area_mm2, 3), r.face))
     rows = tuple(
         (
-            _listed(r.at, 2),
+            point_text(r.at, 2),
             r.surface,
             r.half.value,
             round(r.least_deg, 3),
@@ -84,7 +84,7 @@ def _draft(reviewed: Reviewed) -> Table:
 def _trapped(reviewed: Reviewed) -> Table:
     rows = tuple(
         (
-            _listed(p.at, 2),
+            point_text(p.at, 2),
             p.grip.value,
             len(p.faces),
             round(p.area_mm2, 2),
@@ -96,7 +96,3 @@ def _trapped(reviewed: Reviewed) -> Table:
     )
     columns = ("face at", "grip", "faces", "area [mm2]", "depth [mm]", "thickness [mm]", "volume [mm3]")
     return Table("trapped space", columns, rows)
-
-
-def _listed(point: tuple[float, float, float], digits: int) -> str:
-    return ", ".join(f"{round(v, digits) + 0.0:.{digits}f}" for v in point)

@@ -12,7 +12,7 @@ from moldgen.finding import Decision, Notes
 from moldgen.flow.part_source import read_part
 from moldgen.flow.prepare import Prepared, prepare
 from moldgen.flow.tell import Tell
-from moldgen.flow.words import direction_text
+from moldgen.flow.words import direction_text, point_text
 from moldgen.kernel.body import Body
 from moldgen.kernel.extent import reach
 from moldgen.kernel.measure import bounding_box, volume_adaptive
@@ -163,7 +163,7 @@ def undercut_error(reviewed: Reviewed, remedy: str, also: str = "") -> PartError
 
 def _named(piece: TrappedPlace) -> str:
     return (
-        f"face at {_listed(piece.at)}: {piece.area_mm2:.2f} mm^2 of {len(piece.faces)} faces, "
+        f"face at {point_text(piece.at)}: {piece.area_mm2:.2f} mm^2 of {len(piece.faces)} faces, "
         f"{piece.depth_mm:.2f} mm deep, {piece.height_mm:.2f} mm high, {piece.volume_mm3:.3f} mm^3"
     )
 
@@ -173,7 +173,7 @@ def _choose_pull(loaded: LoadedSpec, part: Part) -> tuple[Pull, tuple[PullCandid
     given = section.direction
     if isinstance(given, FaceNormal):
         direction = _normal_at(loaded, part, given.point)
-        why = f"normal of the flat face nearest to {_listed(given.point)}, given in the spec"
+        why = f"normal of the flat face nearest to {point_text(given.point)}, given in the spec"
         return Pull(direction, why), (), Notes(decisions=(Decision("pull", direction_text(direction), why),))
     if given is not None:
         why = "given in the spec"
@@ -190,14 +190,10 @@ def _normal_at(loaded: LoadedSpec, part: Part, point: Vector) -> Vector:
     number, _ = body.nearest_face(np.asarray(point))
     if body.surface_kind(number) != "plane":
         raise PartError(
-            f"the face nearest to {_listed(point)} is no plane but a {body.surface_kind(number)}",
+            f"the face nearest to {point_text(point)} is no plane but a {body.surface_kind(number)}",
             where=loaded.locate("pull"),
             remedy="give a point on a flat face, or a direction",
         )
     normal = body.mesh.normals[body.mesh.face == number][0]
     x, y, z = (float(v) + 0.0 for v in normal / np.linalg.norm(normal))
     return (x, y, z)
-
-
-def _listed(point: Vector) -> str:
-    return ", ".join(f"{v + 0.0:.2f}" if abs(v) >= 0.005 else "0.00" for v in point)

@@ -43,3 +43,8 @@ def _ranges(numbers: Sequence[int]) -> str:
         values = [value for _, value in run]
         texts += [f"{values[0]} to {values[-1]}"] if len(values) > 2 else [str(v) for v in values]
     return ", ".join(texts)
+
+
+def point_text(point: Sequence[float], digits: int = 2) -> str:
+    """Return coordinates with a fixed number of digits, comma between them, no minus before a zero."""
+    return ", ".join(f"{round(v, digits) + 0.0:.{digits}f}" for v in point)

@@ -16,9 +16,6 @@ from moldgen.output.scene import Scene
 if TYPE_CHECKING:
     from moldgen.output.picture_canvas import Canvas
 
-Spot = tuple[float, float]
-"""A place on the sheet [px], or a direction on it."""
-
 CAUTION = "first-pass layout: review before cutting steel"
 
 FIELD: Rect = (262.0, 62.0, 1384.0, 912.0)
