@@ -1,0 +1,85 @@
+"""Side actions: steel that leaves the part along a line of its own. Mold frame, mm."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from enum import StrEnum
+
+import numpy as np
+
+from moldgen.model.part import Vector
+
+
+class SideKind(StrEnum):
+    """What carries the steel."""
+
+    SLIDE = "slide"
+    LIFTER = "lifter"
+
+
+@dataclass(frozen=True)
+class Front:
+    """The forming end of a side action: a straight prism of steel, from which the part is cut.
+
+    kind : a slide leaves before the part is ejected; a lifter moves with the ejectors
+    axis : unit vector along which the prism is straight. Of a slide: the way it leaves. Of a lifter: down into the core
+    release : unit vector of its motion relative to the part; of a slide the axis, of a lifter square to the pull
+    outline : polygons (k, 2) [mm] in the plane across `axis` (see `across`): outer ones counterclockwise, holes clockwise
+    near, far : where the prism starts and ends, as coordinates along `axis` [mm]; far lies clear of the part
+    clear : coordinate along `axis` beyond which the prism holds no plastic, at most `far` [mm]
+    travel : motion along `release` until nothing of it has plastic before it [mm], without clearance
+    pieces : numbers of the trapped pieces that it serves
+    rung : how it was found, in words
+    given : the number of its entry in the spec's `side_actions`, -1 if moldgen placed it
+    """
+
+    kind: SideKind
+    axis: Vector
+    release: Vector
+    outline: tuple[np.ndarray, ...]
+    near: float
+    far: float
+    clear: float
+    travel: float
+    pieces: tuple[int, ...]
+    rung: str
+    given: int = -1
+
+
+@dataclass(frozen=True)
+class Unreleased:
+    """A trapped piece that no side action was found for.
+
+    piece : its number among the trapped pieces
+    why : the reason in the trade's words ("closed undercut", "thread", "a collapsing core would be needed", ...)
+    remedy : the smallest change of the part that would help
+    tried : what was tried, and how each failed
+    """
+
+    piece: int
+    why: str
+    remedy: str
+    tried: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True)
+class SidePlan:
+    """Fronts that together release every trapped piece, in opening order, or what is left without one."""
+
+    fronts: tuple[Front, ...] = ()
+    left: tuple[Unreleased, ...] = ()
+
+
+def across(axis: Vector) -> np.ndarray:
+    """Return the rows x, y, z of a right-handed frame whose z runs along a unit vector, (3, 3).
+
+    For a horizontal axis x is horizontal and y points along the pull. A point p has the coordinates `across(axis) @ p`.
+
+    >>> across((1.0, 0.0, 0.0)).round(6).tolist()
+    [[0.0, 1.0, 0.0], [0.0, 0.0, 1.0], [1.0, 0.0, 0.0]]
+    """
+    z = np.asarray(axis, dtype=float)
+    up = np.array([0.0, 0.0, 1.0]) if abs(z[2]) < 0.999 else np.array([0.0, 1.0, 0.0])
+    x = np.cross(up, z)
+    x /= np.linalg.norm(x)
+    return np.vstack([x, np.cross(z, x), z]) + 0.0
