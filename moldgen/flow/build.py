@@ -171,7 +171,7 @@ def _filled(reviewed: Reviewed) -> tuple[Prepared, Notes]:
         limit = f"{100 * share:.0f} % of the part's volume, more than the {100 * MOST_FILLED:.0f} % that makes sense"
         raise undercut_error(reviewed, remedy, f"they cannot be molded full: together they are {limit}")
     try:
-        body, notes = fill_trapped(before.body, before.kinds, before.trapped, reviewed.frame)
+        body, notes = fill_trapped(before.body, before.kinds, before.trapped.pieces, reviewed.frame)
     except PartError as error:
         why = f"{error.where}: {error.what}".removeprefix(": ")
         raise undercut_error(reviewed, remedy, f"they cannot be molded full: {why}") from error

@@ -8,17 +8,35 @@ from typing import Any
 import numpy as np
 
 from moldgen.model.part import Solid
+from moldgen.model.side_action import Front
+
+
+@dataclass(frozen=True)
+class SideSteel:
+    """The forming steel of one side action, in the mold frame: its front without the part.
+
+    name : "slide 1", "lifter 2", ...
+    solid : of a slide it reaches from the front's near end to the side of the block, of a lifter to its bottom; a
+        compound where the outline has several polygons that only the body outside joins
+    """
+
+    name: str
+    front: Front
+    solid: Solid
 
 
 @dataclass(frozen=True)
 class Halves:
     """Cavity and core around the part, in the mold frame: pull along +z [mm].
 
-    body : `moldgen.kernel.body.Body` of the part in the mold, shrink included, with every split of the parting line
+    body : `moldgen.kernel.body.Body` of the part in the mold, shrink included, with every split of the parting line;
+        where side actions form undercuts, these are filled in it
     cavity_side : (f,) bool, True where the cavity half forms the face, False where the core half does
     level : height of the parting plane
     low, high : (3,) corners of the closed block
     parting_line : closed polylines (k, 3), the outer one first
+    sides : steel that side actions carry; it is no longer in cavity and core
+    part : the real part where it differs from `body`
     """
 
     cavity: Solid
@@ -29,3 +47,10 @@ class Halves:
     low: np.ndarray
     high: np.ndarray
     parting_line: tuple[np.ndarray, ...]
+    sides: tuple[SideSteel, ...] = ()
+    part: Solid | None = None
+
+    @property
+    def real_part(self) -> Solid:
+        """The part as it is molded."""
+        return self.body.solid if self.part is None else self.part

@@ -24,7 +24,8 @@ class Front:
     kind : a slide leaves before the part is ejected; a lifter moves with the ejectors
     axis : unit vector along which the prism is straight. Of a slide: the way it leaves. Of a lifter: down into the core
     release : unit vector of its motion relative to the part; of a slide the axis, of a lifter square to the pull
-    outline : polygons (k, 2) [mm] in the plane across `axis` (see `across`): outer ones counterclockwise, holes clockwise
+    outline : polygons (k, 2) [mm] in the plane across `axis` (see `across`): outer ones counterclockwise, holes
+        clockwise
     near, far : where the prism starts and ends, as coordinates along `axis` [mm]; far lies clear of the part
     clear : coordinate along `axis` beyond which the prism holds no plastic, at most `far` [mm]
     travel : motion along `release` until nothing of it has plastic before it [mm], without clearance

@@ -26,7 +26,7 @@ from moldgen.kernel.topology import compound_of, only_solid
 from moldgen.model.part import MoldFrame
 from moldgen.release.kinds import FaceKinds, Kind
 from moldgen.release.place import part_point
-from moldgen.release.trapped import Trapped, TrapPiece
+from moldgen.release.trapped import TrapPiece
 
 MOSTLY = 0.5
 """A face with more of its area on the trapped piece goes with it."""
@@ -44,10 +44,20 @@ class _Plug:
     rung: str
 
 
-def fill_trapped(body: Body, kinds: FaceKinds, trapped: Trapped, frame: MoldFrame | None = None) -> tuple[Body, Notes]:
-    """Return the body with every trapped piece (rubs included) filled.
+ACCEPTED = "the spec accepts filled undercuts (parting.undercuts: fill)"
+"""Why a place is molded full."""
 
-    frame : the way back to part coordinates, for what is told
+
+def fill_trapped(
+    body: Body,
+    kinds: FaceKinds,
+    pieces: Sequence[TrapPiece],
+    frame: MoldFrame | None = None,
+    why: str = ACCEPTED,
+) -> tuple[Body, Notes]:
+    """Return the body with trapped pieces (rubs included, if given) filled.
+
+    frame : the way back to part coordinates, for what is told; why : the reason that is told
 
     Raises
     ------
@@ -57,17 +67,17 @@ def fill_trapped(body: Body, kinds: FaceKinds, trapped: Trapped, frame: MoldFram
     patches: list[Any] = []
     plugs: list[_Plug] = []
     decisions = []
-    for piece in trapped.pieces:
+    for piece in pieces:
         whole = _whole_faces(body, kinds, piece, gone)
         if isinstance(whole, str):
             plug, refused = _prism_plug(body, kinds, piece, frame)
             plugs.append(plug)
-            decisions.append(_decision(piece, frame, plug.rung, (f"whole faces: {whole}", *refused)))
+            decisions.append(_decision(piece, frame, plug.rung, why, (f"whole faces: {whole}", *refused)))
         else:
             faces, rims = whole
             gone |= faces
             patches += rims
-            decisions.append(_decision(piece, frame, "whole faces taken out", ()))
+            decisions.append(_decision(piece, frame, "whole faces taken out", why, ()))
     filled = _patched(body, gone, patches) if gone else body.solid
     if plugs:
         filled = _fused(filled, [s for p in plugs for s in p.solids])
@@ -182,12 +192,12 @@ def _fused(solid: Any, plugs: Sequence[Any]) -> Any:
     return result[0]
 
 
-def _decision(piece: TrapPiece, frame: MoldFrame | None, rung: str, refused: tuple[str, ...]) -> Decision:
+def _decision(piece: TrapPiece, frame: MoldFrame | None, rung: str, why: str, refused: tuple[str, ...]) -> Decision:
     x, y, z = part_point(piece.at, frame)
     return Decision(
         topic="undercut filled",
         choice=f"{piece.volume_mm3:.3f} mm^3 at {x:.2f}, {y:.2f}, {z:.2f} filled in the molded part",
-        why="the spec accepts filled undercuts (parting.undercuts: fill)",
+        why=why,
         rung=rung,
         refused=refused,
     )

@@ -123,7 +123,7 @@ def test_a_filled_part_has_the_volume_of_part_and_trapped_space(name):
     solid, gap = UNDERCUT[name]
     body, kinds, trapped = trapped_in(solid)
     assert len(trapped.pieces) == 1
-    filled, notes = fill_trapped(body, kinds, trapped)
+    filled, notes = fill_trapped(body, kinds, trapped.pieces)
     assert is_valid(filled.solid)
     assert volume(filled.solid) == pytest.approx(volume(solid) + gap, rel=1e-6)
     assert trapped_volume(filled, face_kinds(filled)).pieces == ()
@@ -135,14 +135,14 @@ def test_a_filled_part_has_the_volume_of_part_and_trapped_space(name):
 def test_two_undercuts_are_filled_one_by_one():
     solid = solids.cut(GROOVED, solids.box((15, 20, 6), (25, 31, 9)))
     body, kinds, trapped = trapped_in(solid)
-    filled, notes = fill_trapped(body, kinds, trapped)
+    filled, notes = fill_trapped(body, kinds, trapped.pieces)
     assert volume(filled.solid) == pytest.approx(40 * 30 * 20, rel=1e-9)
     assert len(notes.decisions) == 2
 
 
 def test_a_part_without_undercuts_stays_as_it_is():
     body, kinds, trapped = trapped_in(BLOCK)
-    filled, notes = fill_trapped(body, kinds, trapped)
+    filled, notes = fill_trapped(body, kinds, trapped.pieces)
     assert volume(filled.solid) == volume(BLOCK)
     assert notes.decisions == ()
 
@@ -153,6 +153,6 @@ def test_what_cannot_be_filled_is_named_by_its_place(monkeypatch):
     monkeypatch.setattr(fill, "common", lambda *_: [])
     monkeypatch.setattr(fill, "_whole_faces", lambda *_: "not now")
     with pytest.raises(PartError) as caught:
-        fill_trapped(body, kinds, trapped)
+        fill_trapped(body, kinds, trapped.pieces)
     assert caught.value.where.startswith("face at")
     assert "0 solids" in caught.value.what

@@ -1,0 +1,90 @@
+"""The part with the undercuts that side actions form filled: only the halves are made of it, then the fronts are taken
+out of these, so what it looks like inside the fronts does not matter.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+
+from moldgen.errors import KernelError, MoldgenError, PartError
+from moldgen.kernel.body import Body
+from moldgen.kernel.boolean import copied, fuse
+from moldgen.kernel.measure import is_valid, volume
+from moldgen.kernel.meshsolid import MeshSolid, mesh_solid, thick_pieces, thickness
+from moldgen.kernel.rehearse import made_apart
+from moldgen.kernel.side_prism import outline_prism
+from moldgen.model.part import MoldFrame
+from moldgen.model.side_action import Front, across
+from moldgen.parting.fill import fill_trapped
+from moldgen.release.kinds import FaceKinds
+from moldgen.release.trapped import Trapped
+from moldgen.tolerances import OPEN_OVERLAP
+
+WHY = "side actions form it; the halves are made of the part without it"
+
+SAME_VOLUME = 2e-3
+"""Relative difference of volume between a fused part and its mesh from which the kernel is not believed."""
+
+STUBS = (0.0, 1.0)
+"""mm: how far a front that is joined to the part as it is runs on beyond the plastic inside it."""
+
+
+@dataclass(frozen=True)
+class Filled:
+    """The part with its undercuts filled, and how."""
+
+    body: Body
+    rung: str
+
+
+def filled_candidates(
+    body: Body, kinds: FaceKinds, trapped: Trapped, fronts: Sequence[Front], frame: MoldFrame | None
+) -> Iterator[Filled | str]:
+    """Yield filled parts, best first, or why a rung gave none. All of what they gain lies inside the fronts."""
+    served = sorted({p for front in fronts for p in front.pieces if p >= 0})
+    part = mesh_solid(body.mesh)
+    for rung in ("trapped spaces filled", "fronts joined to the part", "fronts joined, run on by 1 mm"):
+        try:
+            if rung == "trapped spaces filled":
+                filled, _ = fill_trapped(body, kinds, [trapped.pieces[p] for p in served], frame, WHY)
+            else:
+                filled = _with_fronts(body, part, fronts, STUBS[1] if "run on" in rung else STUBS[0])
+            outside = _outside_fronts(filled, part, fronts)
+        except (PartError, KernelError) as error:
+            yield f"{rung}: {_told(error)}"
+            continue
+        if outside >= OPEN_OVERLAP:
+            yield f"{rung}: {outside:.3f} mm of it lie outside the fronts"
+            continue
+        yield Filled(filled, rung)
+
+
+def _told(error: MoldgenError) -> str:
+    return f"{error.where}: {error.what}" if error.where else error.what
+
+
+def _with_fronts(body: Body, part: MeshSolid, fronts: Sequence[Front], stub: float) -> Body:
+    """Return the part with the fronts, each as far as there is plastic inside it, joined to it."""
+    solids, expected = [], part
+    for front in fronts:
+        for solid in outline_prism(front.outline, across(front.axis), front.near, min(front.clear + stub, front.far)):
+            solids.append(solid)
+            expected = expected + mesh_solid(Body(solid).mesh)
+    wanted = float(expected.volume())
+    made = made_apart(lambda: fuse([copied(body.solid), *solids]))
+    if len(made) != 1:
+        raise PartError(f"the part and the fronts make {len(made)} solids")
+    got = volume(made[0])
+    if not is_valid(made[0]) or abs(got - wanted) > SAME_VOLUME * wanted:
+        raise PartError(f"joined they have {got:.2f} mm^3, by the mesh it should be {wanted:.2f} mm^3")
+    return body.like(made[0])
+
+
+def _outside_fronts(filled: Body, part: MeshSolid, fronts: Sequence[Front]) -> float:
+    """Return the thickness [mm] of the thickest piece that the filled part gained outside the fronts."""
+    gained = mesh_solid(filled.mesh) - part
+    for front in fronts:
+        for solid in outline_prism(front.outline, across(front.axis), front.near, front.far):
+            gained = gained - mesh_solid(Body(solid).mesh)
+    return max((thickness(p) for p in thick_pieces(gained)), default=0.0)
