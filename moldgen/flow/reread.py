@@ -11,7 +11,7 @@ from moldgen.errors import PartError, SpecError
 from moldgen.flow.folder import MANIFEST, MANIFEST_KEY
 from moldgen.kernel.step_read import read_assembly
 from moldgen.model.part import Vector
-from moldgen.model.tool import Motion, Role
+from moldgen.model.tool import Role
 from moldgen.proof.bodies import ProofBody
 from moldgen.proof.run import Claims
 
@@ -24,7 +24,7 @@ class Entry:
 
     name: str
     role: Role
-    motion: Motion
+    motion: str
     positions: tuple[Vector, ...]
     volume_mm3: float = 0.0
 
@@ -66,7 +66,7 @@ def read_listing(folder: Path) -> Listing:
             Entry(
                 str(c["name"]),
                 Role(c["role"]),
-                Motion(c["moves_with"]),
+                str(c["moves_with"]),
                 tuple((float(x), float(y), float(z)) for x, y, z in c["positions"]),
                 float(c["volume_mm3"]),
             )

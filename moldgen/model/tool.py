@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 from enum import StrEnum
 
+from moldgen.model.motion import Step
 from moldgen.model.part import Solid, Vector
 
 
@@ -17,10 +18,19 @@ class Role(StrEnum):
     CORE_PIN = "core_pin"
     EJECTOR_PIN = "ejector_pin"
     SPRUE = "sprue"  # the solidified feed system, plastic
+    SLIDE = "slide"  # steel that leaves the part sideways before it is ejected
+    LIFTER = "lifter"  # steel that leaves the part sideways while it is ejected
+    SIDE_CORE_PIN = "side_core_pin"  # a round core that a slide holds
+    ANGLED_PIN = "angled_pin"  # drives a slide out while the mold opens
+    LOCKING_BLOCK = "locking_block"  # holds a slide against the melt while the mold is closed
+    GUIDE = "guide"  # what a slide or a lifter runs along
 
 
 class Motion(StrEnum):
-    """With what a component moves when the mold opens along +z: the core half is the one that stands still."""
+    """The groups of every mold that opens along +z: the core half is the one that stands still.
+
+    A side action is a group of its own, named "slide 1", "lifter 2", ...
+    """
 
     CAVITY_HALF = "cavity half"
     CORE_HALF = "core half"
@@ -33,14 +43,15 @@ class Component:
     """One definition and every place where it stands in the mold.
 
     `solid` is in the definition's own frame; `positions` are the translations [mm] that put it into the mold (a
-    component built in place has the single position 0, 0, 0). Identical components share one definition.
+    component built in place has the single position 0, 0, 0). Identical components share one definition. `motion` is
+    the group that it moves with: a `Motion`, or the name of a side action.
     """
 
     name: str
     role: Role
     solid: Solid
     material: str
-    motion: Motion
+    motion: str
     positions: tuple[Vector, ...] = ((0.0, 0.0, 0.0),)
     note: str = ""
 
@@ -61,10 +72,11 @@ class Hole:
 
 @dataclass(frozen=True)
 class Tool:
-    """Everything that is exported, in mold coordinates (pull along +z) [mm]."""
+    """Everything that is exported, in mold coordinates (pull along +z) [mm], and the steps in which it opens."""
 
     components: tuple[Component, ...]
     holes: tuple[Hole, ...] = field(default=())
+    steps: tuple[Step, ...] = ()
 
     def by_role(self, role: Role) -> tuple[Component, ...]:
         """Return the components of one role, in order."""

@@ -4,7 +4,8 @@ Areas come from the "light" qualitative scheme, marks from "vibrant", "bright" a
 Schemes, technical note SRON/EPS/TN/09-002 [published: issue 3.2, 18 August 2021]. "Light" is made for areas that carry
 labels and keeps its members apart under normal and colour-blind vision; the marks are much darker than every area, so a
 line reads by lightness alone. Of the nine areas those were given to the roles that stay furthest apart under simulated
-protanopia and deuteranopia (checked by a test).
+protanopia and deuteranopia (checked by a test). The scheme has too few areas for the roles of side actions too: theirs
+are our choice, searched on a grid of colours for the largest least distance to all others and each other.
 """
 
 from __future__ import annotations
@@ -42,6 +43,12 @@ ROLES = MappingProxyType(
         "core_pin": Ink(rgb("99DDFF"), "core pin", "core pins"),  # light cyan
         "ejector_pin": Ink(rgb("EEDD88"), "ejector pin", "ejector pins"),  # light yellow
         "sprue": Ink(rgb("AAAA00"), "sprue and gate, plastic", "sprues and gates, plastic"),  # olive
+        "slide": Ink(rgb("7788FF"), "slide", "slides"),  # periwinkle
+        "lifter": Ink(rgb("EEEE44"), "lifter", "lifters"),  # yellow
+        "side_core_pin": Ink(rgb("DDEEBB"), "side core pin", "side core pins"),  # pale green
+        "angled_pin": Ink(rgb("996655"), "angled pin", "angled pins"),  # brown
+        "locking_block": Ink(rgb("2277BB"), "locking block", "locking blocks"),  # blue
+        "guide": Ink(rgb("7755FF"), "guide", "guides"),  # violet
     }
 )
 """Component roles, in the order of the legend."""

@@ -30,7 +30,7 @@ def parts_list_csv(tool: Tool, files: dict[str, str] | None = None) -> str:
             c.role.value,
             len(c.positions),
             c.material,
-            c.motion.value,
+            str(c.motion),
             (files or {}).get(c.name, ""),
             c.note,
         )

@@ -7,6 +7,7 @@ import numpy as np
 from moldgen.kernel.body import Body
 from moldgen.kernel.mesh import SurfaceMesh
 from moldgen.model.halves import Halves
+from moldgen.model.motion import total_displacement
 from moldgen.model.part import Vector
 from moldgen.model.tool import Component, Motion, Role, Tool
 from moldgen.output.scene import Scene, SceneBody
@@ -22,13 +23,13 @@ def tool_scene(tool: Tool, halves: Halves, title: tuple[str, str, str], gate: Ve
     """
     depth = float(halves.high[2] - halves.low[2])
     part_height = float(np.ptp(halves.body.mesh.vertices[:, 2]))
-    lift = {
+    lift: dict[str, float] = {
         Motion.CAVITY_HALF: max(1.1 * depth, 2.5 * part_height + stroke),
         Motion.CORE_HALF: 0.0,
         Motion.EJECTOR: stroke,
         Motion.PART: stroke,
     }
-    bodies = [b for c in tool.components for b in _bodies(c, halves, lift[c.motion])]
+    bodies = [b for c in tool.components for b in _bodies(c, halves, _offset(tool, c.motion, lift))]
     sides = {f: 1 if side else -1 for f, side in enumerate(halves.cavity_side.tolist())}
     name, resin, pull = title
     return Scene(name, resin, pull, tuple(bodies), halves.parting_line, gate, sides)
@@ -50,7 +51,12 @@ def feature_segments(mesh: SurfaceMesh) -> tuple[np.ndarray, ...]:
     return tuple(mesh.vertices[ends[pair[sharp]]])
 
 
-def _bodies(component: Component, halves: Halves, lift: float) -> list[SceneBody]:
+def _offset(tool: Tool, group: str, lift: dict[str, float]) -> Vector:
+    """Return where a group stands in the open mold: a side action where the steps of the opening leave it."""
+    return (0.0, 0.0, lift[group]) if group in lift else total_displacement(tool.steps, group)
+
+
+def _bodies(component: Component, halves: Halves, offset: Vector) -> list[SceneBody]:
     mesh = halves.body.mesh if component.role is Role.PART else Body(component.solid).mesh
     edges = feature_segments(mesh)
     found = []
@@ -64,7 +70,7 @@ def _bodies(component: Component, halves: Halves, lift: float) -> list[SceneBody
                 triangles=mesh.triangles,
                 feature_edges=tuple(e + shift for e in edges) if shift.any() else edges,
                 face_id=mesh.face,
-                offset_open=(0.0, 0.0, lift),
+                offset_open=offset,
             )
         )
     return found

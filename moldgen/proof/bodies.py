@@ -13,7 +13,7 @@ from moldgen.kernel.body import Body
 from moldgen.kernel.measure import volume, volume_adaptive
 from moldgen.kernel.meshsolid import MeshSolid, eroded, mesh_solid
 from moldgen.kernel.place import moved
-from moldgen.model.tool import Motion, Role
+from moldgen.model.tool import Role
 from moldgen.tolerances import PROOF_ANGLE, PROOF_DEFLECTION
 
 SAME_VOLUME = 1e-4
@@ -22,11 +22,11 @@ SAME_VOLUME = 1e-4
 
 @dataclass(frozen=True, eq=False)
 class ProofBody:
-    """One component where it stands in the closed mold, pull along +z [mm]."""
+    """One component where it stands in the closed mold, pull along +z [mm]; `motion` is the group it moves with."""
 
     name: str
     role: Role
-    motion: Motion
+    motion: str
     solid: Any
 
     @cached_property
@@ -65,9 +65,9 @@ class ProofBody:
 
 
 def placed_bodies(
-    components: list[tuple[str, Role, Motion, Any, tuple[tuple[float, float, float], ...]]],
+    components: list[tuple[str, Role, str, Any, tuple[tuple[float, float, float], ...]]],
 ) -> list[ProofBody]:
-    """Return one body for each position of each component (name, role, motion, solid, positions)."""
+    """Return one body for each position of each component (name, role, group, solid, positions)."""
     bodies = []
     for name, role, motion, solid, positions in components:
         for number, at in enumerate(positions, start=1):

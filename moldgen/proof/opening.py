@@ -79,9 +79,9 @@ def _box(solid: MeshSolid) -> tuple[np.ndarray, np.ndarray]:
     return bounds[:3], bounds[3:]
 
 
-def _moving(bodies: Sequence[ProofBody], motion: Motion) -> list[ProofBody]:
-    return [b for b in bodies if b.motion is motion]
+def _moving(bodies: Sequence[ProofBody], motion: str) -> list[ProofBody]:
+    return [b for b in bodies if b.motion == motion]
 
 
-def _others(bodies: Sequence[ProofBody], motion: Motion) -> list[ProofBody]:
-    return [b for b in bodies if b.motion is not motion]
+def _others(bodies: Sequence[ProofBody], motion: str) -> list[ProofBody]:
+    return [b for b in bodies if b.motion != motion]
