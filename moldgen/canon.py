@@ -8,7 +8,7 @@ import json
 import math
 from collections.abc import Mapping
 from enum import Enum
-from pathlib import PurePath
+from pathlib import Path, PurePath
 from typing import Any
 
 
@@ -52,6 +52,17 @@ def to_json(value: Any, *, indent: int | None = 2) -> str:
 def sha256_bytes(data: bytes) -> str:
     """Return the SHA-256 of `data` in hexadecimal."""
     return hashlib.sha256(data).hexdigest()
+
+
+def sha256_file(path: Path) -> str:
+    """Return the SHA-256 of a regular file in hexadecimal, "" if there is none or it cannot be read."""
+    try:
+        if not path.is_file():
+            return ""
+        with path.open("rb") as stream:
+            return hashlib.file_digest(stream, "sha256").hexdigest()
+    except (OSError, ValueError):
+        return ""
 
 
 def sha256_json(value: Any) -> str:

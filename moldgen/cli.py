@@ -7,6 +7,7 @@ import os
 import sys
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import partial
 from pathlib import Path
 from typing import Any
 
@@ -39,16 +40,17 @@ class _How:
         return Limits(self.time_limit, int(self.memory_limit * GIB))
 
 
-def _shared(command: Callable[..., None]) -> Callable[..., None]:
+_ONE_DOCUMENT = "Print one JSON document on stdout, and nothing else there."
+
+
+def _shared(command: Callable[..., None], json_help: str = _ONE_DOCUMENT) -> Callable[..., None]:
     """Give `command` the options of `_How`."""
     for option in (
         click.option("--memory-limit", type=click.FloatRange(min=1.0), default=8.0, show_default=True, metavar="GIB"),
         click.option(
             "--time-limit", type=click.FloatRange(min=1.0), default=120.0, show_default=True, metavar="SECONDS"
         ),
-        click.option(
-            "--json", "as_json", is_flag=True, help="Print one JSON document on stdout, and nothing else there."
-        ),
+        click.option("--json", "as_json", is_flag=True, help=json_help),
         click.option("--quiet", is_flag=True, help="Show no progress."),
     ):
         command = option(command)
@@ -111,6 +113,40 @@ def prove(folder: Path, **how: Any) -> None:
         what = "there is no manifest.json" if folder.is_dir() else "there is no such folder"
         raise SpecError(what, where=str(folder), remedy="name the output folder of 'moldgen build'")
     _finish(Job(JobKind.PROVE, folder), _How(**how))
+
+
+@cli.command()
+@click.argument("inputs", nargs=-1, required=True, type=Path, metavar="SPEC_OR_STEP...")
+@click.option("--output", type=Path, default=Path("out/batch"), show_default=True, help="The folder of the batch.")
+@click.option("--jobs", type=click.IntRange(min=1), help="Parts at once.  [default: the number of processors]")
+@click.option("--resin", default="", help="A resin of the catalog, for bare STEP files.  [default: ABS]")
+@click.option("--again", is_flag=True, help="Do every part, also those that are done with the same inputs.")
+@click.option("--check", "only_check", is_flag=True, help="Review the parts as 'check' does, without building steel.")
+@_allow_code
+@click.option("--no-pictures", is_flag=True, help="Leave out the pictures.")
+@partial(_shared, json_help="Print one JSON object a line on stdout for each finished part, and nothing else there.")
+def batch(inputs: tuple[Path, ...], output: Path, jobs: int | None, only_check: bool, again: bool, **how: Any) -> None:
+    """Build many parts at once: specs, STEP files without a spec, and folders that hold some.
+
+    A part that fails never stops the others. What is done already with the same inputs is not done again. The exit
+    code is that of the part that came off worst.
+    """
+    from moldgen.flow.batch import Batch, run_batch, steps_without_resin  # noqa: PLC0415  --help needs none of it
+    from moldgen.flow.batch_inputs import batch_inputs  # noqa: PLC0415
+    from moldgen.flow.batch_progress import batch_progress, show_summary  # noqa: PLC0415
+
+    options = Options(how.pop("allow_code"), not how.pop("no_pictures"), how.pop("resin"))
+    shared = _How(**how)
+    kind = JobKind.CHECK if only_check else JobKind.BUILD
+    parts = Batch(batch_inputs(inputs, output), output, kind, options, again)
+    note = steps_without_resin(parts)
+    if note and not shared.quiet:
+        click.echo(note, err=True)
+    with batch_progress(len(parts.inputs), quiet=shared.quiet, as_json=shared.as_json) as hear:
+        result = run_batch(parts, shared.limits(), jobs or len(os.sched_getaffinity(0)), hear)
+    if not shared.as_json and result.exit_code is not ExitCode.STOPPED:
+        show_summary(result)
+    raise click.exceptions.Exit(int(result.exit_code))
 
 
 @cli.command()

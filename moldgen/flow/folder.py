@@ -98,7 +98,7 @@ def check_replaceable(final: Path, inputs: Sequence[Path] = ()) -> None:
         if path.resolve().is_relative_to(whole):
             what = f"the output folder holds {path.name}, which this run reads, and would be replaced"
             raise SpecError(what, where=where, remedy=elsewhere)
-    if any(final.iterdir()) and not _is_ours(final):
+    if any(final.iterdir()) and not is_output(final):
         what = f"the folder is not empty and has no {MANIFEST} of moldgen: it is left alone"
         raise SpecError(what, where=where, remedy=f"{elsewhere}, or empty this one")
 
@@ -142,6 +142,22 @@ def write_new_file(path: Path, text: str) -> None:
             ) from error
         finally:
             Path(aside).unlink()
+
+
+def replace_file(path: Path, text: str) -> None:
+    """Write `text` to `path`, over an earlier file of ours; the file is the old one or the new one, never half of one.
+
+    Raises
+    ------
+    SpecError : the file cannot be written
+    """
+    aside = _aside(path, "new")
+    with _explained(path):
+        try:
+            aside.write_text(text, encoding="utf-8", newline="")
+            aside.replace(path)
+        finally:
+            aside.unlink(missing_ok=True)
 
 
 @contextmanager
@@ -193,7 +209,8 @@ def _aside(final: Path, what: str) -> Path:
     return final.with_name(f".{final.name}.{what}-{os.getpid()}")
 
 
-def _is_ours(folder: Path) -> bool:
+def is_output(folder: Path) -> bool:
+    """True if moldgen wrote this folder, so that it may be replaced."""
     try:
         manifest = json.loads((folder / MANIFEST).read_text(encoding="utf-8"))
     except (FileNotFoundError, ValueError):

@@ -35,7 +35,14 @@ class OutputPlanned:
     final: Path
 
 
-Message = StageStarted | StageFinished | OutputPlanned
+@dataclass(frozen=True)
+class InputsRead:
+    """What comes of the job depends on these files and nothing else; `files` is their SHA-256 by path, "" if absent."""
+
+    files: dict[str, str]
+
+
+Message = StageStarted | StageFinished | OutputPlanned | InputsRead
 
 
 class Stage:
@@ -67,6 +74,10 @@ class Tell:
     def output(self, final: Path) -> None:
         """Announce where the output will be. `fresh_folder(final, tell=tell)` calls this."""
         self._send(OutputPlanned(final))
+
+    def inputs(self, files: dict[str, str]) -> None:
+        """Announce all the files that the job depends on, with their SHA-256."""
+        self._send(InputsRead(files))
 
     @property
     def timings_s(self) -> tuple[tuple[str, float], ...]:

@@ -47,7 +47,14 @@ _BOOT = (
 _GONE = (psutil.NoSuchProcess, psutil.AccessDenied)
 
 
-def run_in_worker(job: Job, limits: Limits, hear: Callable[[Message], None], *, entry: str = ENTRY) -> JobResult:
+def run_in_worker(
+    job: Job,
+    limits: Limits,
+    hear: Callable[[Message], None],
+    *,
+    entry: str = ENTRY,
+    stop: threading.Event | None = None,
+) -> JobResult:
     """Do `job` in a child process and return what came of it.
 
     Parameters
@@ -56,20 +63,21 @@ def run_in_worker(job: Job, limits: Limits, hear: Callable[[Message], None], *, 
     limits : of time and memory
     hear : is told each message of the job as it comes
     entry : ``module:function`` that does the job in the child; tests name their own
+    stop : may be set by another thread to stop the run; signals reach only the main thread
 
     Raises
     ------
     MoldgenError : as the job raised it, with the place where its evidence is kept
     KernelError : the child crashed, or passed a limit; the message names the operation under way
     StageError : the child ended without a result
-    KeyboardInterrupt : SIGINT, SIGTERM or SIGHUP came; the child is gone and the earlier output is whole
+    KeyboardInterrupt : SIGINT, SIGTERM or SIGHUP came, or `stop`; the child is gone and the earlier output is whole
     """
     watch = _Watch(job, hear)
-    with _signals_stop(), _workspace() as space:
+    with signals_stop(), _workspace() as space:
         try:
             with _started(space) as child:
                 child.connection.send(Order(job, entry, space, limits.memory_bytes))
-                result = _listen(child, limits, watch)
+                result = _listen(child, limits, watch, stop or threading.Event())
         except MoldgenError as error:
             error.evidence = keep_failure(error, watch.output, space)
             raise
@@ -145,9 +153,11 @@ class _Watch:
         return f"stage '{self._stages[-1]}'" if self._stages else ""
 
 
-def _listen(child: _Child, limits: Limits, watch: _Watch) -> JobResult:
+def _listen(child: _Child, limits: Limits, watch: _Watch, stop: threading.Event) -> JobResult:
     start = looked = time.monotonic()
     while True:
+        if stop.is_set():
+            raise KeyboardInterrupt
         if child.connection.poll(LOOK_S):
             try:
                 message = child.connection.recv()
@@ -226,8 +236,11 @@ def _workspace() -> Iterator[Path]:
 
 
 @contextmanager
-def _signals_stop() -> Iterator[None]:
-    """Let SIGINT, SIGTERM and SIGHUP raise KeyboardInterrupt once; from then on they are ignored until we are done."""
+def signals_stop() -> Iterator[None]:
+    """Let SIGINT, SIGTERM and SIGHUP raise KeyboardInterrupt once; from then on they are ignored until we are done.
+
+    In the main thread only: no other is told of signals.
+    """
     if threading.current_thread() is not threading.main_thread():
         yield
         return

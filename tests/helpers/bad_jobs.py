@@ -12,6 +12,7 @@ import time
 from contextlib import contextmanager
 from pathlib import Path
 
+from moldgen.canon import sha256_file
 from moldgen.errors import ExitCode, KernelError, PartError
 from moldgen.finding import Decision, Finding, Severity
 from moldgen.flow.folder import fresh_folder
@@ -45,6 +46,32 @@ def good(job: Job, tell: Tell) -> JobResult:
         decisions=(Decision("pull", "+z", "least trapped area"),),
         first_pass=True,
     )
+
+
+def by_name(job: Job, tell: Tell) -> JobResult:
+    """The job of this file that the source is called after, as in hangs.yaml or good-2.yaml; each run is counted."""
+    with Path("runs").open("a", encoding="utf-8") as runs:
+        runs.write(f"{job.source.stem}\n")
+    tell.inputs({str(job.source): sha256_file(job.source)})
+    result: JobResult = globals()[job.source.stem.partition("-")[0]](job, tell)
+    return result
+
+
+def well(job: Job, tell: Tell) -> JobResult:
+    """All proofs passed, ten components, three of them alike, and two side actions of two bodies each."""
+    with fresh_folder(job.output or Path("out"), tell=tell) as folder:
+        groups = ["part", "cavity half", "core half", "slide 1", "slide 1", "lifter 1", "lifter 1"]
+        components = [{"moves_with": g, "positions": [[0, 0, 0]]} for g in groups]
+        components.append({"moves_with": "ejector", "positions": [[0, 0, 0]] * 3})
+        (folder / "manifest.json").write_text(json.dumps({"moldgen": "0", "components": components}), encoding="utf-8")
+    proof = Proof("volume balance", Verdict.PASSED, 1e-9, 1e-6, "")
+    rung = Decision("parting surface", "flat", "it is", "plane")
+    return JobResult(ExitCode.OK, "well", output=job.output, proofs=(proof, proof), decisions=(rung,), first_pass=True)
+
+
+def slowly(job: Job, tell: Tell) -> JobResult:
+    time.sleep(1.0)
+    return well(job, tell)
 
 
 def says_hello(job: Job, tell: Tell) -> JobResult:

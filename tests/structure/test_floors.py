@@ -11,6 +11,7 @@ from helpers.source import FLOORS, imported, modules, room
 
 KERNEL_LIBRARIES = {"cadquery", "OCP", "manifold3d", "trimesh", "embreex"}
 TERMINAL_LIBRARIES = {"click", "rich"}
+TALKERS = {"moldgen.cli", "moldgen.flow.progress", "moldgen.flow.batch_progress"}
 
 
 @pytest.mark.parametrize("module", modules())
@@ -34,7 +35,7 @@ def test_only_the_kernel_folder_imports_the_kernel(module: str) -> None:
     assert {name.partition(".")[0] for name in imported(module)} & KERNEL_LIBRARIES == set()
 
 
-@pytest.mark.parametrize("module", [m for m in modules() if m not in ("moldgen.cli", "moldgen.flow.progress")])
+@pytest.mark.parametrize("module", [m for m in modules() if m not in TALKERS])
 def test_only_the_command_line_and_the_progress_talk_to_the_terminal(module: str) -> None:
     assert {name.partition(".")[0] for name in imported(module)} & TERMINAL_LIBRARIES == set()
 
