@@ -77,7 +77,7 @@ def build_tool(loaded: LoadedSpec, folder: Path, options: Options, tell: Tell) -
         tool, bored, more = make_tool(halves, layout, _materials(reviewed))
         notes += more
         stage.detail = f"{len(tool.components)} components"
-    claims = Claims(float(np.prod(halves.high - halves.low)), bored.total_mm3, layout.stroke_mm)
+    claims = Claims(float(np.prod(halves.high - halves.low)), bored.total_mm3, layout.stroke_mm, tool.steps)
     built = Built(reviewed, halves, layout, tool, claims, _accepted(reviewed) + notes)
     with tell.stage("export") as stage:
         export_tool(tool, folder, loaded.spec.output.step)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import math
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -10,6 +11,7 @@ from typing import Any
 from moldgen.errors import PartError, SpecError
 from moldgen.flow.folder import MANIFEST, MANIFEST_KEY
 from moldgen.kernel.step_read import read_assembly
+from moldgen.model.motion import Step
 from moldgen.model.part import Vector
 from moldgen.model.tool import Role
 from moldgen.proof.bodies import ProofBody
@@ -72,12 +74,29 @@ def read_listing(folder: Path) -> Listing:
             )
             for c in record["components"]
         )
-        claims = Claims(**{key: float(record["claims"][key]) for key in ("block_mm3", "bored_mm3", "stroke_mm")})
+        claims = _claims(record["claims"])
         files = {str(path): str(digest) for path, digest in record["files"].items()}
         title = str(record["part"]["name"])
     except (KeyError, TypeError, ValueError, AttributeError) as error:
         raise SpecError(f"{MANIFEST} is damaged: {error!r}", where=str(path), remedy="build the tool again") from error
     return Listing(title, entries, claims, files)
+
+
+def _claims(record: dict[str, Any]) -> Claims:
+    """Return what the manifest claims. Raises KeyError, TypeError, ValueError when it is damaged."""
+    steps = tuple(
+        Step(str(s["name"]), tuple((str(group), _vector(way)) for group, way in s["moves"])) for s in record["steps"]
+    )
+    if not steps:
+        raise ValueError("it claims no steps of the opening")
+    return Claims(float(record["block_mm3"]), float(record["bored_mm3"]), float(record["stroke_mm"]), steps)
+
+
+def _vector(values: Any) -> Vector:
+    x, y, z = (float(v) for v in values)
+    if not all(map(math.isfinite, (x, y, z))):
+        raise ValueError("a motion is not finite")
+    return (x, y, z)
 
 
 def read_bodies(file: Path, entries: tuple[Entry, ...]) -> list[ProofBody]:

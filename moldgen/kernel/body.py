@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+from dataclasses import replace
 from functools import cached_property
+from typing import Any, Protocol
 
 import numpy as np
 from OCP.BRep import BRep_Tool
@@ -15,6 +18,26 @@ from moldgen.kernel.topology import edge_faces_map, edge_points, faces_of, same_
 from moldgen.tolerances import MESH_ANGLE, MESH_DEFLECTION
 
 EDGE_SAMPLES = 9
+
+
+class Meshed(Protocol):
+    """What sweeps along z need to know: a mesh by faces, and its box and areas."""
+
+    @property
+    def faces(self) -> Sequence[Any]:
+        """The faces, as many as the mesh numbers."""
+
+    @property
+    def mesh(self) -> SurfaceMesh:
+        """The mesh."""
+
+    @property
+    def box(self) -> tuple[np.ndarray, np.ndarray]:
+        """Lower and upper corner of the mesh [mm]."""
+
+    @property
+    def triangle_areas(self) -> np.ndarray:
+        """Area of each triangle of the mesh, (t,) [mm^2]."""
 
 
 class Body:
@@ -135,3 +158,13 @@ class Body:
         """Return the face nearest to a point and its distance [mm], measured on the mesh."""
         triangle, distance = nearest_triangle(self.mesh, np.asarray(point, dtype=float))
         return int(self.mesh.face[triangle]), distance
+
+
+class TurnedMesh:
+    """The mesh of a body in another frame, given by the rows x, y, z of a rotation, (3, 3)."""
+
+    def __init__(self, body: Body, rows: np.ndarray) -> None:
+        self.faces: Sequence[Any] = body.faces
+        self.mesh = replace(body.mesh, vertices=body.mesh.vertices @ rows.T, normals=body.mesh.normals @ rows.T)
+        self.box = self.mesh.vertices.min(axis=0), self.mesh.vertices.max(axis=0)
+        self.triangle_areas = body.triangle_areas

@@ -42,8 +42,11 @@ class Depth(NamedTuple):
         return f"at {x:.2f}, {y:.2f}, {z:.2f}{off}"
 
 
-def deepest(one: MeshSolid, mesh: SurfaceMesh, other: ProofBody) -> Depth:
-    """Return the deepest overlap of a solid (whose surface is `mesh`, or was swept from it) with a body."""
+def deepest(one: MeshSolid, mesh: SurfaceMesh, other: ProofBody, shift: np.ndarray | float = 0.0) -> Depth:
+    """Return the deepest overlap of a solid (whose surface is `mesh`, or was swept from it) with a body.
+
+    shift : how far the solid was moved from where `mesh` is, (3,) [mm]
+    """
     worst = Depth(0.0, (0.0, 0.0, 0.0), 0.0)
     common = one ^ other.thin
     if common.num_tri() == 0:
@@ -54,7 +57,8 @@ def deepest(one: MeshSolid, mesh: SurfaceMesh, other: ProofBody) -> Depth:
         depth, off = thickness(piece) + EROSION, 0.0
         if depth >= OPEN_OVERLAP:
             bounds = np.asarray(piece.bounding_box())
-            off = min(MOST_OFF, _excess_near(mesh, bounds) + _excess_near(other.body.mesh, bounds))
+            back = bounds - np.tile(shift * np.ones(3), 2)
+            off = min(MOST_OFF, _excess_near(mesh, back) + _excess_near(other.body.mesh, bounds))
             if depth - off >= OPEN_OVERLAP:
                 off = 0.0  # an overlap all the same: told in full
         if depth - off > worst.depth_mm:

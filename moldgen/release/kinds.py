@@ -7,7 +7,7 @@ from enum import IntEnum
 
 import numpy as np
 
-from moldgen.kernel.body import Body
+from moldgen.kernel.body import Meshed
 from moldgen.tolerances import SIGN_NOISE, VERTICAL_SINE
 
 
@@ -39,7 +39,7 @@ class FaceKinds:
         return np.flatnonzero(np.isin(self.kind, kinds))
 
 
-def face_kinds(body: Body) -> FaceKinds:
+def face_kinds(body: Meshed) -> FaceKinds:
     """Classify the faces of a body whose pull is +z.
 
     The judge is a distance, not an angle: a sign of n.d that costs less than `SIGN_NOISE` of overhang is noise of the
@@ -55,7 +55,7 @@ def face_kinds(body: Body) -> FaceKinds:
     return FaceKinds(overhang, kind.astype(np.int8), sine)
 
 
-def _overhang(body: Body, sine: np.ndarray, chosen: np.ndarray) -> np.ndarray:
+def _overhang(body: Meshed, sine: np.ndarray, chosen: np.ndarray) -> np.ndarray:
     """Return per face the projected area of the chosen triangles over the diagonal of their box, both along z."""
     mesh, count = body.mesh, len(body.faces)
     face = mesh.face[chosen]

@@ -8,7 +8,7 @@ import numpy as np
 from scipy.sparse import coo_matrix
 from scipy.sparse.csgraph import connected_components
 
-from moldgen.kernel.body import Body
+from moldgen.kernel.body import Meshed
 from moldgen.kernel.meshsolid import MeshSolid, make_solid, union
 from moldgen.release.contested import contested
 from moldgen.release.kinds import FaceKinds, Kind
@@ -26,7 +26,7 @@ FLAT_AREA = 1e-6
 """Relative difference between a patch's shadow and the sum of its triangles' shadows that shows an overlap."""
 
 
-def sweep_faces(body: Body, kinds: FaceKinds, up: bool, way: float | None = None) -> MeshSolid:
+def sweep_faces(body: Meshed, kinds: FaceKinds, up: bool, way: float | None = None) -> MeshSolid:
     """Return everything above the faces that look up, or below those that look down (the face itself included).
 
     The lower end of an up-sweep keeps the face numbers of the body; ends and walls have numbers from `CAP` on.
@@ -37,7 +37,7 @@ def sweep_faces(body: Body, kinds: FaceKinds, up: bool, way: float | None = None
     return facing.swept(facing.looking(up), up, way)
 
 
-def contested_sweeps(body: Body, kinds: FaceKinds) -> tuple[MeshSolid, MeshSolid]:
+def contested_sweeps(body: Meshed, kinds: FaceKinds) -> tuple[MeshSolid, MeshSolid]:
     """Return the sweeps up and down, without what cannot matter where the two meet.
 
     Faces above which nothing looks down are left out, and the other way round, so that the sweeps meet exactly where
@@ -53,7 +53,7 @@ def contested_sweeps(body: Body, kinds: FaceKinds) -> tuple[MeshSolid, MeshSolid
 class _Facing:
     """The triangles of a body by the way they look."""
 
-    def __init__(self, body: Body, kinds: FaceKinds) -> None:
+    def __init__(self, body: Meshed, kinds: FaceKinds) -> None:
         self._body = body
         self._kind = kinds.kind[body.mesh.face]
         corners = body.mesh.corners
@@ -73,13 +73,18 @@ class _Facing:
         mesh, box = self._body.mesh, self._body.box
         far = float(box[1][2] + OVERRUN if up else box[0][2] - OVERRUN)
         shift = None if way is None else (way if up else -way)
-        maker = _Maker(mesh.vertices, mesh.triangles, mesh.face, far, 0.5 * np.abs(self._rise), shift)
+        maker = PrismMaker(mesh.vertices, mesh.triangles, mesh.face, far, 0.5 * np.abs(self._rise), shift)
         return union(maker.prisms(chosen))
 
 
 @dataclass(frozen=True)
-class _Maker:
-    """Makes prisms of patches; the wider the patch, the fewer the prisms."""
+class PrismMaker:
+    """Makes prisms of patches; the wider the patch, the fewer the prisms.
+
+    vertices (n, 3), triangles (t, 3), face (t,) : the mesh [mm]
+    far, shift : the level to which patches are carried, or the way that each is carried instead [mm]
+    shadow : (t,) area of each triangle, seen along z
+    """
 
     vertices: np.ndarray
     triangles: np.ndarray

@@ -14,6 +14,7 @@ from moldgen.kernel.pins import faces_below
 from moldgen.kernel.turned import stepped_solid
 from moldgen.model.halves import Halves
 from moldgen.model.layout import Layout
+from moldgen.model.motion import straight_steps
 from moldgen.model.tool import Component, Hole, Motion, Role, Tool
 from moldgen.steel.bored import Bored, Materials, Removed
 from moldgen.steel.bores import OVERRUN, PinBore, pin_bores
@@ -63,7 +64,8 @@ def make_tool(halves: Halves, layout: Layout, materials: Materials) -> tuple[Too
     names = [*(b.name for b in bores), *(["sprue"] if feed.in_core is not None else [])]
     removed = [Removed("core", name, volume_adaptive(p, SURE)) for name, p in zip(names, core.plugs, strict=True)]
     removed += [Removed("cavity", "sprue", volume_adaptive(p, SURE)) for p in cavity.plugs]
-    tool = Tool(components, (*_pin_holes(bores), *feed.holes))
+    steps = straight_steps(layout.stroke_mm, float(halves.high[2] - halves.low[2]))
+    tool = Tool(components, (*_pin_holes(bores), *feed.holes), steps)
     return tool, Bored(tuple(removed)), notes + feed.notes + _refusals(core, cavity)
 
 

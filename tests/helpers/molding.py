@@ -8,10 +8,12 @@ from typing import Any
 import numpy as np
 
 from moldgen.kernel.body import Body
+from moldgen.model.motion import straight_steps
 from moldgen.model.proof import Proof
 from moldgen.model.tool import Motion, Role
 from moldgen.parting.halves import Parted, part_halves
 from moldgen.proof.bodies import ProofBody
+from moldgen.proof.motion import MovingTool
 from moldgen.proof.run import Claims, prove_tool
 from moldgen.release.imprint import imprint_silhouettes
 from moldgen.release.kinds import face_kinds
@@ -73,6 +75,11 @@ def mold(
 def with_pin(bodies: list[ProofBody], solid: Any, name: str = "ejector pin") -> list[ProofBody]:
     """Add an ejector pin to a tool."""
     return [*bodies, ProofBody(name, Role.EJECTOR_PIN, Motion.EJECTOR, solid)]
+
+
+def straight(bodies: list[ProofBody], stroke: float = 10.0) -> MovingTool:
+    """The bodies as a tool that opens straight along +z."""
+    return MovingTool(bodies, straight_steps(stroke, 100.0))
 
 
 def changed(bodies: list[ProofBody], role: Role, solid: Any) -> list[ProofBody]:

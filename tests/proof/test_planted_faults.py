@@ -7,15 +7,22 @@ from functools import cache
 import numpy as np
 import pytest
 from helpers import solids
-from helpers.molding import changed, mold, unproved, with_pin
+from helpers.molding import changed, mold, straight, unproved, with_pin
 
 from moldgen.errors import KernelError
 from moldgen.kernel.topology import compound_of
 from moldgen.model.proof import Proof, Verdict
 from moldgen.model.tool import Motion, Role
-from moldgen.proof import opening, rest
+from moldgen.proof import motion, rest
 from moldgen.proof.bodies import ProofBody, placed_bodies
-from moldgen.proof.opening import CAVITY_OPENS, EJECTORS_MOVE, PART_LEAVES, prove_cavity_half, prove_ejection
+from moldgen.proof.opening import (
+    CAVITY_OPENS,
+    EJECTORS_MOVE,
+    PART_LEAVES,
+    prove_cavity_half,
+    prove_ejection,
+    prove_part,
+)
 from moldgen.proof.rest import APART, FILLED, SOUND
 from moldgen.proof.run import prove_tool
 from moldgen.tolerances import BALANCE, OPEN_OVERLAP
@@ -158,20 +165,20 @@ def held_by(depth, height=2.0):
 
 
 def test_a_bead_of_a_twentieth_holds_the_cavity():
-    proof = prove_cavity_half(held_by(0.05))
+    proof = prove_cavity_half(straight(held_by(0.05)))
     assert proof.verdict is Verdict.FAILED
     # a bead 2 mm high and 0.05 deep: 2 V / A is just under its depth
     assert proof.figure == pytest.approx(0.05, rel=0.1)
 
 
 def test_a_rub_of_two_hundredths_passes():
-    assert prove_cavity_half(held_by(0.02)).passed
+    assert prove_cavity_half(straight(held_by(0.02))).passed
 
 
 @pytest.mark.parametrize("height", [0.05, 0.2, 6.0])
 def test_a_lip_however_thin_along_the_way_is_not_jumped_over(height):
     # samples 0.1, 1.0 or half the height apart would step over a lip of 0.05 mm; a sweep cannot
-    proof = prove_cavity_half(held_by(1.0, height))
+    proof = prove_cavity_half(straight(held_by(1.0, height)))
     assert proof.verdict is Verdict.FAILED
     assert proof.detail.startswith("cavity against part at 3")
 
@@ -193,8 +200,8 @@ def test_the_part_must_leave_the_core_too():
         replace(b, solid=solids.turned(b.solid, 180, about=(1, 0, 0)), motion=m)
         for b, m in zip(held_by(0.5), (Motion.PART, Motion.CORE_HALF, Motion.CAVITY_HALF), strict=True)
     ]
-    assert opening.prove_core_half(upside_down).verdict is Verdict.FAILED
-    assert opening.prove_core_half([part, cavity, core]).passed
+    assert prove_part(straight(upside_down)).verdict is Verdict.FAILED
+    assert prove_part(straight([part, cavity, core])).passed
 
 
 # --- proofs that do not run -----------------------------------------------------------------------------------------
@@ -224,7 +231,7 @@ def test_a_step_without_its_bodies_is_not_run(gone, not_run):
 
 @pytest.mark.parametrize("stroke", [0.0, -3.0, math.nan])
 def test_a_stroke_that_is_none_is_not_run(stroke):
-    proof = prove_ejection(tool()[0], stroke)
+    proof = prove_ejection(straight(tool()[0], stroke), stroke)
     assert (proof.verdict, proof.figure) == (Verdict.NOT_RUN, None)
 
 
@@ -236,7 +243,7 @@ def test_a_kernel_that_gives_up_on_one_question_leaves_the_others(monkeypatch):
         raise ForeignError("no")
 
     monkeypatch.setattr(rest, "balance", gives_up)
-    monkeypatch.setattr(opening, "sweep_faces", gives_up)
+    monkeypatch.setattr(motion, "sweep_faces", gives_up)
     bodies, claims = tool()
     proofs = {p.name: p for p in prove_tool(bodies, claims)}
     assert list(proofs) == NAMES

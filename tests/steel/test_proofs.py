@@ -3,12 +3,13 @@
 from dataclasses import replace
 
 import pytest
+from helpers.molding import straight
 
 from moldgen.kernel.pins import carried
 from moldgen.kernel.turned import turned_solid
 from moldgen.model.layout import GateKind
 from moldgen.model.tool import Motion, Role
-from moldgen.proof.opening import prove_cavity_half, prove_core_half, prove_ejection
+from moldgen.proof.opening import prove_cavity_half, prove_ejection, prove_part
 from moldgen.proof.rest import prove_balance, prove_rest, prove_sound
 
 from . import tools
@@ -31,13 +32,14 @@ def test_every_proof_passes(name):
     layout, part = TOOLS[name]
     made, bored, _ = tools.tool(layout, **part)
     bodies = tools.bodies(made.components)
+    moving = straight(bodies, layout.stroke_mm)
     proofs = [
         prove_sound(bodies),
         prove_balance(bodies, tools.BLOCK, bored.total_mm3),
         prove_rest(bodies),
-        prove_cavity_half(bodies),
-        prove_core_half(bodies),
-        prove_ejection(bodies, layout.stroke_mm),
+        prove_cavity_half(moving),
+        prove_part(moving),
+        prove_ejection(moving, layout.stroke_mm),
     ]
     assert [(p.name, p.figure, p.detail) for p in proofs if not p.passed] == []
 
@@ -76,16 +78,16 @@ def test_a_stroke_longer_than_the_room_drives_the_heads_into_the_core():
     made, _, _ = tools.tool()
     bodies = tools.bodies(made.components)
     room = 85.0 - 3.0 - 40.0  # from the heads' shoulders up to the bottom of the core
-    assert prove_ejection(bodies, room - 0.1).passed
-    assert not prove_ejection(bodies, room + 1.0).passed
+    assert prove_ejection(straight(bodies, room - 0.1), room - 0.1).passed
+    assert not prove_ejection(straight(bodies, room + 1.0), room + 1.0).passed
 
 
 def test_a_shoulder_that_runs_into_its_fit_is_seen():
     """Shoulder at 0, fit from 10 up, stroke 25: the shank meets the core on the way."""
     long = replace(SMALL, ejector_pins=tuple(replace(p, shank_length=85.0) for p in SMALL.ejector_pins))
     made, _, _ = tools.tool(long)
-    assert not prove_ejection(tools.bodies(made.components), long.stroke_mm).passed
-    assert prove_ejection(tools.bodies(made.components), 9.0).passed
+    assert not prove_ejection(straight(tools.bodies(made.components), long.stroke_mm), long.stroke_mm).passed
+    assert prove_ejection(straight(tools.bodies(made.components), 9.0), 9.0).passed
 
 
 def test_a_sprue_that_widens_upward_holds_the_cavity_half():
@@ -94,7 +96,7 @@ def test_a_sprue_that_widens_upward_holds_the_cavity_half():
     sprue = made.only(Role.SPRUE)
     assert sprue.motion is Motion.CAVITY_HALF
     stuck = [replace(c, motion=Motion.PART) if c.role is Role.SPRUE else c for c in made.components]
-    assert not prove_cavity_half(tools.bodies(stuck)).passed
+    assert not prove_cavity_half(straight(tools.bodies(stuck))).passed
 
 
 def test_a_pin_beside_its_bore_is_seen():
