@@ -56,6 +56,16 @@ from moldgen.rules.side_action import (
     lifter_travel_angled_face_pye,
     lifter_travel_pye,
 )
+from moldgen.rules.slide import (
+    angled_pin_bending_stress,
+    locking_axial_force,
+    locking_face_angle,
+    locking_normal_force,
+    self_locking_angle,
+    slide_guided_length,
+    slide_melt_force_kazmer,
+    slide_travel_practice,
+)
 
 ABS = (0.085, 235.0, 60.0, 95.0)
 FIT = (0.4, 1000.0, 0.006, 2.0, 40.0)
@@ -137,9 +147,25 @@ VALUES: list[tuple[str, float, float]] = [
     ("angled pin 18, length", angled_pin_length_pye(12, 0.5, 18), 40.53),
     ("angled pin 20, length", angled_pin_length_pye(12, 0.5, 20), 36.64),
     ("angled pin 25, length", angled_pin_length_pye(12, 0.5, 25), 29.70),
+    ("angled pin 15, opening", angled_pin_opening_pye(12, 15), 44.78),
+    ("angled pin 18, opening", angled_pin_opening_pye(12, 18), 36.93),
     ("angled pin 20, opening", angled_pin_opening_pye(12, 20), 32.97),
+    ("angled pin 25, opening", angled_pin_opening_pye(12, 25), 25.73),
+    ("angled pin 15, delay", angled_pin_delay_pye(0.5, 15), 1.93),
+    ("angled pin 18, delay", angled_pin_delay_pye(0.5, 18), 1.62),
     ("angled pin 20, delay", angled_pin_delay_pye(0.5, 20), 1.46),
+    ("angled pin 25, delay", angled_pin_delay_pye(0.5, 25), 1.18),
+    ("angled pin 16 x 30, 500 N", angled_pin_bending_stress(500, 30, 16), 37),
+    ("melt on a slide, kN", slide_melt_force_kazmer(40, 2000) / 1000, 80),
+    ("locking face 20, opens the mold, kN", locking_axial_force(80e3, 20) / 1000, 29.1),
+    ("locking face 22, square to it, kN", locking_normal_force(80e3, 22) / 1000, 86.3),
+    ("locking face that holds by friction", self_locking_angle(0.15), 8.5),
+    ("locking face for a pin of 20", locking_face_angle(20), 22),
+    ("travel for an undercut of 9.5", slide_travel_practice(9.5), 12),
+    ("guided length, 30 high", slide_guided_length(30, 12), 45),
+    ("guided length, 20 high", slide_guided_length(20, 12), 36),
     ("lifter 60, 5", lifter_travel_pye(60, 5), 5.25),
+    ("lifter 60, 8", lifter_travel_pye(60, 8), 8.43),
     ("lifter 60, 12", lifter_travel_pye(60, 12), 12.75),
     ("lifter 60, 10", lifter_travel_pye(60, 10), 10.58),
     ("lifter 60, 10, angled face", lifter_travel_angled_face_pye(60, 10), 10.26),

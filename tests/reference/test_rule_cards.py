@@ -72,7 +72,8 @@ def test_the_card_names_a_source(rule: Rule[Any]) -> None:
 
 def evaluate(formula: str, values: dict[str, Any]) -> float:
     words = {
-        name: getattr(math, name) for name in ("pi", "sqrt", "log", "sin", "cos", "tan", "tanh", "cosh", "radians")
+        name: getattr(math, name)
+        for name in ("pi", "sqrt", "log", "sin", "cos", "tan", "tanh", "cosh", "radians", "degrees", "atan")
     }
     words |= {"min": min, "max": max, "sum": sum}
     return float(eval(formula, {"__builtins__": {}, **words, **RULES, **values}))
