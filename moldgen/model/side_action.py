@@ -48,6 +48,40 @@ class Front:
 
 
 @dataclass(frozen=True)
+class SideGiven:
+    """What a user fixes of one side action. Checked, not trusted.
+
+    direction : unit vector along which it releases
+    point : a point that names the undercut: the trapped piece nearest to it [mm]
+    width, height : size of the outline about the point, square to the direction (height along the pull for a slide)
+        [mm]; None leaves it to moldgen
+    """
+
+    kind: SideKind
+    direction: Vector
+    point: Vector
+    width: float | None = None
+    height: float | None = None
+
+
+@dataclass(frozen=True)
+class SideOptions:
+    """What the search may use.
+
+    given : entries of the spec's `side_actions`, in its order
+    ejection_stroke : how far the ejectors push [mm]; None: the part's height and a little
+    lifters, inclined : whether lifters and slides that are not square to the pull may be used
+    add : whether more than the given ones may be planned
+    """
+
+    given: tuple[SideGiven, ...] = ()
+    ejection_stroke: float | None = None
+    lifters: bool = True
+    inclined: bool = True
+    add: bool = True
+
+
+@dataclass(frozen=True)
 class Unreleased:
     """A trapped piece that no side action was found for.
 

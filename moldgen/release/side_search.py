@@ -1,0 +1,190 @@
+"""The search: each trapped space gets the front that a toolmaker would like best, or is shared between several."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from functools import cached_property
+
+import numpy as np
+
+from moldgen.kernel.body import Body
+from moldgen.kernel.mesh_prism import box_of
+from moldgen.kernel.meshsolid import MeshSolid, union
+from moldgen.kernel.tracer import Tracer
+from moldgen.model.side_action import SideOptions
+from moldgen.release.side_choice import Candidates, as_vector, candidates, sample, shares
+from moldgen.release.side_front import Found, part_fronts, whole_front
+from moldgen.release.side_space import SideSpace, View
+from moldgen.release.trapped import TrapPiece
+
+CLEAR_SHARE, SOME_SHARE = 0.97, 0.15
+"""Share of rays that must be free before a direction is asked for a front for all, or for some, of a space."""
+
+OPENING_COST = 0.25
+"""What one more direction costs, in part diagonals of steel reaching over the part: our choice."""
+
+MOST_TRIED, MOST_PARTIAL, DEEPEST, MOST_SPLITS = 8, 4, 2, 24
+"""Bounds of the search: directions tried for all of a space, for some of it, how often a space is split again, and how
+many splits are followed in all for one piece."""
+
+
+@dataclass
+class Space:
+    """A trapped space to be released, of one trapped piece or what is left of it (mold frame)."""
+
+    piece: int
+    solid: MeshSolid
+    depth: int = 0
+    tried: list[str] = field(default_factory=list)
+
+    @cached_property
+    def points(self) -> np.ndarray:
+        """Points inside it, (k, 3) [mm]."""
+        return sample(self.solid)
+
+
+@dataclass(frozen=True)
+class Placed:
+    """A front, the numbers of the pieces that it was found for, and the space that it lets out (mold frame)."""
+
+    found: Found
+    pieces: tuple[int, ...]
+    covered: MeshSolid
+
+
+class Search:
+    """Finds fronts for spaces of one part, remembers what it knows of each direction."""
+
+    def __init__(self, body: Body, part: MeshSolid, pieces: list[TrapPiece], options: SideOptions) -> None:
+        self.options = options
+        self.shared = SideSpace.of(body, part)
+        self.directions: Candidates = candidates(body, pieces)
+        self.diagonal = body.diagonal
+        self._tracer = Tracer(body.mesh)
+        self._views: dict[tuple[float, ...], View] = {}
+        self._splits = 0
+        self.used: list[np.ndarray] = []
+
+    def view(self, direction: np.ndarray) -> View:
+        """Return the part seen along a direction, made once."""
+        key = tuple(np.round(direction, 9))
+        if key not in self._views:
+            self._views[key] = View(self.shared, as_vector(direction))
+        return self._views[key]
+
+    def free(self, space: Space, directions: np.ndarray) -> np.ndarray:
+        """Return the share of a space that each direction lets out, by rays, (k,)."""
+        return shares(self._tracer, space.points, directions)
+
+    def place(self, spaces: list[Space]) -> tuple[list[Placed], list[Space]]:
+        """Return fronts for the spaces, and the spaces that none was found for."""
+        level = self.directions.level
+        free = [self.free(s, level) for s in spaces]
+        popular = np.array([max(1, sum(f[k] >= CLEAR_SHARE for f in free)) for k in range(len(level))])
+        # those with the least choice first: the directions that they force are then in use for the others
+        order = sorted(range(len(spaces)), key=lambda i: (int((free[i] >= CLEAR_SHARE).sum()), i))
+        placed: list[Placed] = []
+        left: list[Space] = []
+        for i in order:
+            ways = self._ranked(spaces[i], level, free[i], popular)
+            found = self._whole(spaces[i], ways)
+            if found is None:
+                left.append(spaces[i])
+            else:
+                placed.append(_placed(found, spaces[i]))
+        still: list[Space] = []
+        for space in left:
+            self._splits = 0
+            several = self._shared_out(space)
+            if several is None:
+                still.append(space)
+            else:
+                placed += several
+                self._note(several)
+        return placed, still
+
+    def _note(self, placed: list[Placed]) -> None:
+        for p in placed:
+            way = np.asarray(p.found.view.direction)
+            if all(float(way @ u) < 0.99999 for u in self.used):
+                self.used.append(way)
+
+    def _ranked(self, space: Space, ways: np.ndarray, free: np.ndarray, popular: np.ndarray) -> list[np.ndarray]:
+        """Return the directions that seem to let all of a space out, cheapest first."""
+        costs = []
+        vertices = np.vstack(box_of(space.solid))
+        for k in np.flatnonzero(free >= CLEAR_SHARE):
+            way = ways[k]
+            corners = np.array(
+                [[vertices[i][0], vertices[j][1], vertices[m][2]] for i in (0, 1) for j in (0, 1) for m in (0, 1)]
+            )
+            reach = self.view(way).high - float((corners @ way).mean())
+            in_use = any(float(way @ u) > 0.99999 for u in self.used)
+            opening = 0.0 if in_use else OPENING_COST * self.diagonal / float(popular[k])
+            costs.append((round(opening + 2.0 * reach, 4), int(k)))
+        return [ways[k] for _, k in sorted(costs)]
+
+    def _whole(self, space: Space, ways: list[np.ndarray]) -> Found | None:
+        for way in ways[:MOST_TRIED]:
+            found = whole_front(self.view(way), space.solid)
+            if found is not None:
+                self._note([_placed(found, space)])
+                return found
+            space.tried.append(f"slide along {_words(way)}: no outline that can leave")
+        return None
+
+    def _shared_out(self, space: Space) -> list[Placed] | None:
+        """Return fronts that together let a space out, or None."""
+        level = self.directions.level
+        free = self.free(space, level)
+        in_use = np.array([any(float(way @ u) > 0.99999 for u in self.used) for way in level])
+        order = sorted(
+            (int(k) for k in np.flatnonzero(free >= SOME_SHARE)),
+            key=lambda k: (-round(float(free[k]) + 0.1 * float(in_use[k]), 3), k),
+        )
+        for k in order[:MOST_PARTIAL]:
+            for found in part_fronts(self.view(level[k]), space.solid):
+                self._splits += 1
+                if self._splits > MOST_SPLITS:
+                    return None
+                rest = self._rest(space, found)
+                if rest is not None:
+                    return [_placed(found, space), *rest]
+        return None
+
+    def _rest(self, space: Space, found: Found) -> list[Placed] | None:
+        """Return fronts for what a front leaves uncovered, or None if some of it stays trapped."""
+        covered = float(space.solid.volume()) - sum(float(r.volume()) for r in found.rest)
+        if covered < 0.05 * float(space.solid.volume()):
+            return None
+        placed: list[Placed] = []
+        for solid in found.rest:
+            part = Space(space.piece, solid, space.depth + 1)
+            level = self.directions.level
+            free = self.free(part, level)
+            ways = self._ranked(part, level, free, np.ones(len(level)))
+            whole = self._whole_quietly(part, ways)
+            if whole is not None:
+                placed.append(_placed(whole, part))
+                continue
+            several = self._shared_out(part) if part.depth < DEEPEST else None
+            if several is None:
+                return None
+            placed += several
+        return placed
+
+    def _whole_quietly(self, space: Space, ways: list[np.ndarray]) -> Found | None:
+        for way in ways[: MOST_TRIED // 2]:
+            found = whole_front(self.view(way), space.solid)
+            if found is not None:
+                return found
+        return None
+
+
+def _placed(found: Found, space: Space) -> Placed:
+    return Placed(found, (space.piece,), space.solid - union(list(found.rest)) if found.rest else space.solid)
+
+
+def _words(way: np.ndarray) -> str:
+    x, y, z = (round(float(c), 3) + 0.0 for c in way)
+    return f"{x:g}, {y:g}, {z:g}"
