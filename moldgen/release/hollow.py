@@ -30,8 +30,11 @@ class Hull:
     planes: np.ndarray
 
 
-def convex_hull(part: Body) -> Hull:
-    """Return the hull of the part's mesh; without planes if the part is flat."""
+def convex_hull(part: Body, frame: np.ndarray) -> Hull:
+    """Return the hull of the part's mesh; without planes if the part is flat.
+
+    frame : rows of a frame that turns with the part, (3, 3), in which the coarser hull is made
+    """
     vertices = part.mesh.vertices
     try:
         corners = vertices[ConvexHull(vertices).vertices]
@@ -39,23 +42,21 @@ def convex_hull(part: Body) -> Hull:
         height = 1.0 - (2.0 * turn + 1.0) / WAYS
         ring, angle = np.sqrt(1.0 - height**2), turn * 2.399963229728653  # golden angle: even over the sphere
         ways = np.stack([ring * np.cos(angle), ring * np.sin(angle), height])
-        outermost = np.unique(np.argmax(corners @ np.hstack([ways, np.eye(3), -np.eye(3)]), axis=0))
+        outward = frame.T @ np.hstack([ways, np.eye(3), -np.eye(3)])
+        outermost = np.unique(np.argmax(corners @ outward, axis=0))
         planes = np.unique(np.round(ConvexHull(corners[outermost]).equations, 9), axis=0)
     except QhullError:
         return Hull(vertices, np.zeros((0, 4)))
     return Hull(corners, planes)
 
 
-def hollows(part: Body, hull: Hull, tracer: Tracer, axis: np.ndarray) -> tuple[float, float]:
-    """Return the room inside the convex hull of a part that is open towards +axis and towards -axis [mm^3].
+def hollows(part: Body, hull: Hull, tracer: Tracer, frame: np.ndarray) -> tuple[float, float]:
+    """Return the room inside the convex hull of a part that is open towards +z and towards -z of a frame [mm^3].
 
-    Lines of sight that pass through the part without meeting it belong to neither side.
+    frame : rows x, y, z, (3, 3). Lines of sight that pass through the part without meeting it belong to neither side.
     """
     if len(hull.planes) == 0:
         return 0.0, 0.0
-    across = np.cross(axis, np.eye(3)[np.argmin(np.abs(axis))])
-    across = across / np.linalg.norm(across)
-    frame = np.stack([across, np.cross(axis, across), axis])
     local = part.mesh.vertices @ frame.T
     low, high = local.min(axis=0), local.max(axis=0)
     step = np.maximum(high[:2] - low[:2], 1e-9) / GRID
@@ -66,7 +67,7 @@ def hollows(part: Body, hull: Hull, tracer: Tracer, axis: np.ndarray) -> tuple[f
     found = []
     for sign, limit in ((1.0, top), (-1.0, bottom)):
         start = np.column_stack([places, np.full(len(places), high[2] + 1.0 if sign > 0 else low[2] - 1.0)])
-        hit = tracer.first_triangle(start @ frame, -sign * axis)
+        hit = tracer.first_triangle(start @ frame, -sign * frame[2])
         seen = hit >= 0
         height = _height_on(local[part.mesh.triangles[hit[seen]]], places[seen])
         found.append(cell * float(np.maximum(sign * (limit[seen] - height), 0.0).sum()))

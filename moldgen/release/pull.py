@@ -2,40 +2,53 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from moldgen.kernel.body import Body
-from moldgen.kernel.mesh import SurfaceMesh
 from moldgen.kernel.tracer import Tracer
 from moldgen.model.part import Vector
-from moldgen.release.candidates import pull_axes
+from moldgen.release.candidates import PartFrame, part_frame, pull_axes, same_axis
 from moldgen.release.hollow import Hull, convex_hull, hollows
+from moldgen.release.outline import unevenness
+from moldgen.release.reach import WALL_SINE, Samples, surface_samples, trapped_points, trapped_room
+from moldgen.release.side_estimate import SideEstimate, estimate_sides
+from moldgen.release.sphere import free_directions
 
-SAMPLES = 6000
-"""Points of the surface that are asked whether steel can reach them."""
+SAMPLES, ROUGH_SAMPLES = 12000, 1000
+"""Points of the surface that are asked whether steel can reach them: of the few best directions, and of all others."""
 
-WALL_SINE = 0.0087
-"""|n.d| below which a point lies on a wall that either half can form (half a degree)."""
+FINALISTS, LISTED = 12, 8
+"""Directions that are looked at closely, and of these the distinct ones that are returned. Our choice."""
+
+ALIKE = 0.9986
+"""Cosine (3 deg) from which the worse of two directions is not listed."""
 
 LOPSIDED = 0.02
 """Relative difference of the hollows of both sides from which it decides which way up the part lies."""
 
-OUTLINE_WAYS = 90
-"""Directions in which the outline of the part is looked at for the height of its parting line."""
-
-TRAPPED_WEIGHT, LEVEL_WEIGHT, DEPTH_WEIGHT, SHADOW_WEIGHT = 1.0, 0.05, 0.02, 0.01
+TRAPPED_WEIGHT, LEVEL_WEIGHT, DEPTH_WEIGHT, SHADOW_WEIGHT = 1.0, 0.1, 0.02, 0.01
 """What a trapped share of the surface, an uneven parting line (share of the diagonal), depth (share of the diagonal)
 and projected area (share of the surface) cost. Our choice: trapped surface needs slides and decides, an uneven parting
 line costs steel, depth and clamp force only break ties."""
+
+SIDE_WEIGHT, UNRELEASED_WEIGHT, ROOM_WEIGHT = 0.05, 3.0, 1.0
+"""What each side action costs, the share of the surface that no side action releases, besides being trapped, and the
+trapped room as a share of the part's volume. Our choice: one slide is worth a twentieth of the surface. Were slides
+merely counted, a tub with windows in three sides would be laid on its side with its whole inside for a slide."""
+
+ASKEW, NOT_DRAWN = 0.02, 0.01
+"""What it costs that none of the surface is square or parallel to the direction, and that no feature of the part points
+along it at all. Our choice: a direction between the part's own ones must free a hundredth of the surface more."""
 
 
 @dataclass(frozen=True)
 class PullCandidate:
     """One direction that was tried, in part coordinates; the cavity half leaves along it.
 
-    source : where the direction comes from ("axis z", "principal axis", "flat face")
+    source : where the direction comes from ("axis z", "flat face", "axis of round faces", "principal axis",
+        "along flat walls", "search")
     score : lower is better
     trapped_mm2 : area that no steel moving along the pull can reach, and its share of the surface
     unevenness_mm : mean distance of the outline from the best level parting plane
@@ -43,6 +56,11 @@ class PullCandidate:
     projected_mm2 : area seen along the pull, undercuts counted twice
     core_hollow_mm3, cavity_hollow_mm3 : room inside the convex hull that is open to the core and to the cavity side
     why : the reasons in words
+    level_mm : coordinate along `direction` of the level plane that suits the outline best
+    trapped_mm3 : room that no steel moving along the pull can leave, an estimate
+    side_actions : how many side actions it seems to need, an estimate
+    side_ways : the ways in which they would leave, unit vectors square to the pull
+    unreleased_mm2 : area that no straight way square to the pull seems to free
     """
 
     direction: Vector
@@ -56,6 +74,11 @@ class PullCandidate:
     core_hollow_mm3: float
     cavity_hollow_mm3: float
     why: str
+    level_mm: float = 0.0
+    trapped_mm3: float = 0.0
+    side_actions: int = 0
+    side_ways: tuple[Vector, ...] = ()
+    unreleased_mm2: float = 0.0
 
 
 @dataclass(frozen=True)
@@ -63,123 +86,152 @@ class _Figures:
     axis: np.ndarray
     source: str
     score: float
-    trapped: float
-    share: float
+    trapped: np.ndarray
     uneven: float
+    level: float
     depth: float
     projected: float
+    room: float = 0.0
+    sides: SideEstimate | None = None
+
+    @property
+    def share(self) -> float:
+        return float(self.trapped.mean())
+
+
+@dataclass(frozen=True)
+class _Scene:
+    """What every direction is asked about."""
+
+    part: Body
+    volume: float
+    frame: PartFrame
+    hull: Hull
+    tracer: Tracer
+    samples: Samples
+    rough: Samples
 
 
 def search_pull(part: Body, *, axes_only: bool = False) -> tuple[PullCandidate, ...]:
-    """Return the directions worth trying, best first, each turned so that the hollow side of the part faces the core.
+    """Return the distinct directions worth trying, best first, each with the hollow side of the part to the core.
+
+    Directions that the part itself suggests are tried, and the best that a search over the whole half-sphere finds
+    between them. All but the axes of coordinates turn with the part.
 
     Parameters
     ----------
     part : the part in its own coordinates
-    axes_only : try x, y and z only; else also the principal axes and the normals of the largest flat faces
+    axes_only : try x, y and z only
+
+    Raises
+    ------
+    KernelError : the part cannot be meshed
     """
-    points, normals, area = _surface_points(part.mesh, part.triangle_areas)
-    off = 0.02 + 1e-4 * part.diagonal
-    tracer, hull = Tracer(part.mesh), convex_hull(part)
-    found = []
-    for source, axis in pull_axes(part, axes_only=axes_only):
-        reach = _trapped_share(tracer, points + off * normals, normals, axis)
-        found.append(_figures(part, hull, source, axis, (reach, area)))
-    found.sort(key=lambda f: round(f.score, 9))  # stable: equal scores keep the order in which they were proposed
-    best = found[0]
-    return tuple(_candidate(part, hull, tracer, f, best) for f in found)
+    frame = part_frame(part)
+    samples, rough = surface_samples(part, SAMPLES), surface_samples(part, ROUGH_SAMPLES)
+    hull, volume = convex_hull(part, frame.rows), part.mesh.volume()
+    scene = _Scene(part, volume, frame, hull, Tracer(part.mesh), samples, rough)
+    proposed = pull_axes(frame, axes_only=axes_only)
+    if not axes_only:
+        proposed += [("search", axis) for axis in free_directions(scene.tracer, rough, frame)]
+    first = sorted((_figures(scene, rough, way) for way in proposed), key=_rank)[:FINALISTS]
+    close = sorted((_figures(scene, samples, (f.source, f.axis)) for f in first), key=_rank)
+    best = sorted((_with_sides(scene, f) for f in _distinct(close)), key=_rank)
+    return tuple(_candidate(scene, f, best[0]) for f in best)
 
 
-def _surface_points(mesh: SurfaceMesh, areas: np.ndarray) -> tuple[np.ndarray, np.ndarray, float]:
-    """Return points spread over the surface, each for the same area, their unit normals, and the area in all."""
-    total = np.cumsum(areas)
-    place = (np.arange(SAMPLES) + 0.5) * (total[-1] / SAMPLES)
-    triangle = np.searchsorted(total, place)
-    turn = np.arange(1, SAMPLES + 1)
-    u, v = (0.5 + 0.7548776662466927 * turn) % 1.0, (0.5 + 0.5698402909980532 * turn) % 1.0
-    fold = u + v > 1.0
-    u, v = np.where(fold, 1.0 - u, u)[:, None], np.where(fold, 1.0 - v, v)[:, None]
-    corners = mesh.corners[triangle]
-    points = corners[:, 0] + u * (corners[:, 1] - corners[:, 0]) + v * (corners[:, 2] - corners[:, 0])
-    normals = mesh.normals[triangle]
-    normals = normals / np.maximum(np.linalg.norm(normals, axis=1), 1e-30)[:, None]
-    return points, normals, float(total[-1])
+def _rank(figures: _Figures) -> float:
+    return round(figures.score, 6)  # sorting is stable: equal scores keep the order in which they were proposed
 
 
-def _trapped_share(tracer: Tracer, points: np.ndarray, normals: np.ndarray, axis: np.ndarray) -> float:
-    """Return the share of points that cannot be left along +axis or -axis, whichever way they look."""
-    sine = normals @ axis
-    trapped = np.ones(len(points), dtype=bool)
-    for sign in (1.0, -1.0):
-        asked = np.flatnonzero(sign * sine > -WALL_SINE)
-        asked = asked[trapped[asked]]
-        trapped[asked] = tracer.blocked(points[asked], sign * axis)
-    return float(trapped.mean())
+def _distinct(figures: list[_Figures]) -> list[_Figures]:
+    kept: list[_Figures] = []
+    for one in figures:
+        if all(not same_axis(one.axis, other.axis, ALIKE) for other in kept):
+            kept.append(one)
+    return kept[:LISTED]
 
 
-def _figures(part: Body, hull: Hull, source: str, axis: np.ndarray, reach: tuple[float, float]) -> _Figures:
-    share, area = reach
-    height = hull.corners @ axis
-    depth = float(np.ptp(height))
-    uneven = _unevenness(hull.corners, axis, height, part.diagonal)
-    corners = part.mesh.corners
-    facet = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
-    projected = 0.25 * float(np.abs(facet @ axis).sum())
+def _figures(scene: _Scene, samples: Samples, way: tuple[str, np.ndarray]) -> _Figures:
+    source, axis = way
+    part, corners = scene.part, scene.hull.corners
+    trapped = trapped_points(scene.tracer, samples, axis)
+    depth = float(np.ptp(corners @ axis))
+    uneven, level = unevenness(corners, axis, scene.frame.across(axis), part.diagonal)
+    sine = np.abs(scene.samples.normals @ axis)
+    square = float(((sine < WALL_SINE) | (sine > 1.0 - 0.5 * WALL_SINE**2)).mean())
+    area = samples.area_mm2
+    projected = 0.5 * float(sine.mean()) * area
     score = (
-        TRAPPED_WEIGHT * share
+        TRAPPED_WEIGHT * float(trapped.mean())
         + LEVEL_WEIGHT * uneven / part.diagonal
         + DEPTH_WEIGHT * depth / part.diagonal
         + SHADOW_WEIGHT * projected / area
+        + ASKEW * (1.0 - square)
+        + (NOT_DRAWN if source == "search" else 0.0)
     )
-    return _Figures(axis, source, score, share * area, share, uneven, depth, projected)
+    return _Figures(axis, source, score, trapped, uneven, level, depth, projected)
 
 
-def _unevenness(vertices: np.ndarray, axis: np.ndarray, height: np.ndarray, diagonal: float) -> float:
-    """Return the mean distance [mm] of the outline from the level plane that suits it best.
-
-    In each direction square to the axis the outermost vertices leave the parting line a range of heights; a plane
-    inside the range costs nothing there.
-    """
-    across = np.cross(axis, np.eye(3)[np.argmin(np.abs(axis))])
-    across /= np.linalg.norm(across)
-    angle = np.arange(OUTLINE_WAYS) * (2.0 * np.pi / OUTLINE_WAYS)
-    ways = np.outer(np.cos(angle), across) + np.outer(np.sin(angle), np.cross(axis, across))
-    reach = vertices @ ways.T
-    outer = reach > reach.max(axis=0) - 1e-3 * diagonal
-    low = np.where(outer, height[:, None], np.inf).min(axis=0)
-    high = np.where(outer, height[:, None], -np.inf).max(axis=0)
-    levels = np.unique(np.round(np.concatenate([low, high]), 6))
-    miss = np.maximum(low - levels[:, None], 0.0) + np.maximum(levels[:, None] - high, 0.0)
-    return float(miss.mean(axis=1).min())
+def _with_sides(scene: _Scene, figures: _Figures) -> _Figures:
+    pull = (figures.axis, figures.trapped)
+    sides = estimate_sides(scene.part, scene.frame, scene.tracer, scene.samples, pull)
+    left = sides.unreleased_mm2 / scene.samples.area_mm2
+    room = trapped_room(scene.part, scene.tracer, scene.samples, figures.axis)
+    cost = SIDE_WEIGHT * len(sides.directions) + UNRELEASED_WEIGHT * left + ROOM_WEIGHT * room / scene.volume
+    return replace(figures, sides=sides, room=room, score=figures.score + cost)
 
 
-def _candidate(part: Body, hull: Hull, tracer: Tracer, figures: _Figures, best: _Figures) -> PullCandidate:
+def _candidate(scene: _Scene, figures: _Figures, best: _Figures) -> PullCandidate:
     """Turn the axis so that the hollow side faces the core, and put the reasons into words."""
-    up, down = hollows(part, hull, tracer, figures.axis)
-    clear = abs(up - down) > LOPSIDED * max(up, down, part.diagonal**3 * 1e-4)
-    turned = clear and up > down
-    axis = -figures.axis if turned else figures.axis
+    axis, sides = figures.axis, figures.sides
+    assert sides is not None  # noqa: S101 - `_with_sides` made them
+    across = scene.frame.across(axis)
+    up, down = hollows(scene.part, scene.hull, scene.tracer, np.vstack([across, axis]))
+    clear = abs(up - down) > LOPSIDED * max(up, down, scene.part.diagonal**3 * 1e-4)
+    turned = up > down if clear else _stands_on_its_head(scene, axis)
     core, cavity = (up, down) if turned else (down, up)
-    x, y, z = (round(float(c), 12) + 0.0 for c in axis)
     return PullCandidate(
-        (x, y, z),
-        figures.source,
-        figures.score,
-        figures.trapped,
-        figures.share,
-        figures.uneven,
-        figures.depth,
-        figures.projected,
-        core,
-        cavity,
-        _why(figures, best, (core, cavity) if clear else None),
+        direction=_vector(-axis if turned else axis),
+        source=figures.source,
+        score=figures.score,
+        trapped_mm2=figures.share * scene.samples.area_mm2,
+        trapped_share=figures.share,
+        unevenness_mm=figures.uneven,
+        depth_mm=figures.depth,
+        projected_mm2=figures.projected,
+        core_hollow_mm3=core,
+        cavity_hollow_mm3=cavity,
+        why=_why(figures, sides, best, (core, cavity) if clear else None),
+        level_mm=-figures.level if turned else figures.level,
+        trapped_mm3=figures.room,
+        side_actions=len(sides.directions),
+        side_ways=tuple(_vector(way) for way in sides.directions),
+        unreleased_mm2=sides.unreleased_mm2,
     )
 
 
-def _why(figures: _Figures, best: _Figures, rooms: tuple[float, float] | None) -> str:
+def _stands_on_its_head(scene: _Scene, axis: np.ndarray) -> bool:
+    """Return whether more of the surface lies towards +axis, of a part that is no hollower on one side.
+
+    The wide side of a part faces the core, where ejector pins leave their marks; even parts follow the coordinates.
+    """
+    height = scene.samples.points @ axis
+    share = (height.mean() - height.min()) / max(float(np.ptp(height)), 1e-9)
+    if abs(share - 0.5) > LOPSIDED:
+        return bool(share > 0.5)
+    return bool(axis[int(np.argmax(np.round(np.abs(axis), 9)))] < 0.0)
+
+
+def _vector(axis: np.ndarray) -> Vector:
+    x, y, z = (round(float(c), 12) + 0.0 for c in axis)
+    return (x, y, z)
+
+
+def _why(figures: _Figures, sides: SideEstimate, best: _Figures, rooms: tuple[float, float] | None) -> str:
     trapped = (
         f"{100.0 * figures.share:.2g} % of the surface is out of reach along it"
-        if figures.trapped > 0.0
+        if figures.share > 0.0
         else "no surface is out of reach along it"
     )
     line = (
@@ -190,7 +242,20 @@ def _why(figures: _Figures, best: _Figures, rooms: tuple[float, float] | None) -
     side = (
         f"the hollow side ({rooms[0]:.3g} mm3 against {rooms[1]:.3g} mm3) faces the core, so that the part stays on it"
         if rooms
-        else "neither side is more hollow than the other, so the cavity is where the axis points"
+        else "neither side is more hollow than the other, so the wider one faces the core"
     )
     lead = "" if figures is best else f"costs {figures.score - best.score:.2g} more than the best: "
-    return f"{lead}{trapped}; {line}; {figures.depth:.3g} mm deep; {side}"
+    return f"{lead}{trapped}{_sides_text(figures, sides)}; {line}; {figures.depth:.3g} mm deep; {side}"
+
+
+def _sides_text(figures: _Figures, sides: SideEstimate) -> str:
+    if figures.share == 0.0:
+        return ""
+    count = len(sides.directions)
+    words = f", which {count} side action{'s' if count != 1 else ''} would reach" if count else ""
+    if not sides.places:
+        words = ", too little for a side action"
+    if sides.unreleased_mm2 > 0.0:
+        words += f"{' but for' if count else ', and'} {sides.unreleased_mm2:.3g} mm2"
+        words += " that no straight way square to it frees"
+    return words + " (estimate)"
