@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+from contextlib import suppress
 from dataclasses import dataclass, replace
 
 import numpy as np
 
 from moldgen.catalog import Resin, resin
-from moldgen.errors import PartError
+from moldgen.errors import KernelError, PartError
 from moldgen.finding import Decision, Notes
 from moldgen.flow.part_source import read_part
 from moldgen.flow.prepare import Prepared, prepare
@@ -17,6 +18,7 @@ from moldgen.kernel.body import Body
 from moldgen.kernel.extent import reach
 from moldgen.kernel.measure import bounding_box, volume_adaptive
 from moldgen.kernel.place import to_mold
+from moldgen.kernel.prepare import preparations
 from moldgen.model.part import Box, MoldFrame, Part, Pull, Vector
 from moldgen.proof.bodies import SAME_VOLUME
 from moldgen.release.contact import vertical_contact
@@ -34,7 +36,10 @@ MOST_NAMED = 8
 
 @dataclass(frozen=True)
 class Reviewed:
-    """What is known about the part before steel is built. Findings speak in part coordinates."""
+    """What is known about the part before steel is built. Findings speak in part coordinates.
+
+    candidates : the pulls that were tried, best first; empty when the pull was given
+    """
 
     loaded: LoadedSpec
     resin: Resin
@@ -44,6 +49,35 @@ class Reviewed:
     prepared: Prepared
     release: ReleaseReview
     notes: Notes
+    candidates: tuple[PullCandidate, ...] = ()
+
+
+@dataclass(frozen=True)
+class Source:
+    """The part as read, and the pulls worth trying, best first (one if it is given)."""
+
+    part: Part
+    pulls: tuple[Pull, ...]
+    tried: tuple[PullCandidate, ...]
+    notes: Notes
+
+
+def open_part(loaded: LoadedSpec, tell: Tell) -> Source:
+    """Read the part and find its pulls.
+
+    Raises
+    ------
+    PartError, SpecError, KernelError : the part cannot be read
+    """
+    notes = Notes(findings=loaded.findings)
+    with tell.stage("read the part") as stage:
+        part, more = read_part(loaded)
+        notes += more
+        stage.detail = f"{part.face_count} faces, {part.volume_mm3 / 1000:.2f} cm3"
+    with tell.stage("choose the pull") as stage:
+        pulls, candidates = _pulls(loaded, part)
+        stage.detail = direction_text(pulls[0].direction)
+    return Source(part, pulls, candidates, notes)
 
 
 def review(loaded: LoadedSpec, tell: Tell) -> Reviewed:
@@ -53,17 +87,21 @@ def review(loaded: LoadedSpec, tell: Tell) -> Reviewed:
     ------
     PartError, SpecError, KernelError : the part cannot be read or prepared
     """
-    spec = loaded.spec
+    return review_along(loaded, open_part(loaded, tell), 0, tell)
+
+
+def review_along(
+    loaded: LoadedSpec, source: Source, number: int, tell: Tell, refused: tuple[str, ...] = ()
+) -> Reviewed:
+    """See how every face releases along one of the pulls; `refused` is what became of better ones.
+
+    Raises
+    ------
+    PartError, SpecError, KernelError : the part cannot be prepared
+    """
+    spec, part, pull, candidates = loaded.spec, source.part, source.pulls[number], source.tried
     data = resin(spec.resin)
-    notes = Notes(findings=loaded.findings)
-    with tell.stage("read the part") as stage:
-        part, more = read_part(loaded)
-        notes += more
-        stage.detail = f"{part.face_count} faces, {part.volume_mm3 / 1000:.2f} cm3"
-    with tell.stage("choose the pull") as stage:
-        pull, candidates, more = _choose_pull(loaded, part)
-        notes += more
-        stage.detail = direction_text(pull.direction)
+    notes = source.notes + Notes(decisions=(_pull_decision(source, number, refused),))
     with tell.stage("prepare the part") as stage:
         box = _exact_box(part) if spec.shrink.fixed_point == "centre" else _NO_BOX
         frame, more = mold_frame(pull.direction, spec.shrink, spec.resin, box)
@@ -93,11 +131,10 @@ def review(loaded: LoadedSpec, tell: Tell) -> Reviewed:
             draft_required(*asked),
             contact=vertical_contact(prepared.body, prepared.kinds),
             frame=frame,
-            tried=candidates,
         )
         notes += more
         stage.detail = f"{release.draft.faces_below} faces below {release.draft.required_deg:.2g} deg"
-    return Reviewed(loaded, data, part, pull, frame, prepared, release, notes)
+    return Reviewed(loaded, data, part, pull, frame, prepared, release, notes, candidates)
 
 
 def _sure_volume(part: Part, prepared: Prepared, scale: float) -> float:
@@ -168,21 +205,52 @@ def _named(piece: TrappedPlace) -> str:
     )
 
 
-def _choose_pull(loaded: LoadedSpec, part: Part) -> tuple[Pull, tuple[PullCandidate, ...], Notes]:
+def _pulls(loaded: LoadedSpec, part: Part) -> tuple[tuple[Pull, ...], tuple[PullCandidate, ...]]:
     section = loaded.spec.pull
     given = section.direction
     if isinstance(given, FaceNormal):
         direction = _normal_at(loaded, part, given.point)
         why = f"normal of the flat face nearest to {point_text(given.point)}, given in the spec"
-        return Pull(direction, why), (), Notes(decisions=(Decision("pull", direction_text(direction), why),))
+        return (Pull(direction, why),), ()
     if given is not None:
-        why = "given in the spec"
-        return Pull(given, why), (), Notes(decisions=(Decision("pull", direction_text(given), why),))
+        return (Pull(given, "given in the spec"),), ()
     found = search_pull(Body(part.solid), axes_only=section.search == "axes")
-    best = found[0]
-    others = tuple(f"{direction_text(c.direction)} ({c.source}): {c.why}" for c in found[1:5])
-    chosen = Decision("pull", direction_text(best.direction), best.why, best.source, others)
-    return Pull(best.direction, best.why), found, Notes(decisions=(chosen,))
+    return tuple(Pull(c.direction, c.why) for c in found), found
+
+
+def _pull_decision(source: Source, number: int, refused: tuple[str, ...]) -> Decision:
+    pull, tried = source.pulls[number], source.tried
+    others = [f"{direction_text(c.direction)} ({c.source}): {c.why}" for c in tried[number + 1 : number + 5]]
+    rung = tried[number].source if tried else ""
+    return Decision("pull", direction_text(pull.direction), pull.how_chosen, rung, (*refused, *others))
+
+
+def _outlook(candidates: tuple[PullCandidate, ...]) -> str:
+    if not candidates:
+        return ", given"
+    best = candidates[0]
+    sides = f"{best.side_actions or 'no'} side action{'' if best.side_actions == 1 else 's'} by estimate"
+    return f", best of {len(candidates)} distinct pulls, {sides}"
+
+
+def _meshed(part: Part) -> Body:
+    """Return the first form of the part, as read or cut up as in the preparation, that can be meshed.
+
+    Raises
+    ------
+    KernelError : none can; what the mesher said of the part as read
+    """
+    body = Body(part.solid)
+    try:
+        _ = body.mesh
+    except KernelError as error:
+        for other in preparations(part.solid, part.volume_mm3):
+            with suppress(KernelError):
+                body = Body(other.solid)
+                _ = body.mesh
+                return body
+        raise error from None
+    return body
 
 
 def _normal_at(loaded: LoadedSpec, part: Part, point: Vector) -> Vector:

@@ -18,11 +18,14 @@ class SideSteel:
     name : "slide 1", "lifter 2", ...
     solid : of a slide it reaches from the front's near end to the side of the block, of a lifter to its bottom; a
         compound where the outline has several polygons that only the body outside joins
+    in_cavity : cavity steel lies under it, so that it cannot stay behind when the cavity half lifts: it moves with that
+        half, or leaves it sideways first
     """
 
     name: str
     front: Front
     solid: Solid
+    in_cavity: bool = False
 
 
 @dataclass(frozen=True)

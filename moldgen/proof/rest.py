@@ -14,7 +14,7 @@ from moldgen.proof.bodies import ProofBody
 from moldgen.proof.overlap import deepest
 from moldgen.tolerances import BALANCE, OPEN_OVERLAP
 
-IN_BLOCK = (Role.PART, Role.CAVITY, Role.CORE)
+IN_BLOCK = (Role.PART, Role.CAVITY, Role.CORE, Role.SLIDE, Role.LIFTER)
 """What fills the block before anything is bored."""
 
 

@@ -31,7 +31,8 @@ _WRITE_A_PULL: Final = 'write auto, "+z", [0, 0, 1] or "face at 10, 4, 3"'
 _FACE: Final = re.compile(r"face\s+at\s+(.+)", re.IGNORECASE)
 
 
-def _direction(value: object) -> Vector | FaceNormal | None:
+def read_direction(value: object) -> Vector | FaceNormal | None:
+    """Return what the user wrote as a unit vector, as the normal of a face, or as None for auto."""
     if value == AUTO:
         return None
     if isinstance(value, str):
@@ -61,19 +62,24 @@ def _unit_vector(v: Vector) -> Vector:
 
 
 _THREE: Final = {"type": "array", "items": {"type": ["number", "string"]}, "minItems": 3, "maxItems": 3}
-_WRITTEN_DIRECTION: Final = {
-    "anyOf": [
-        {"enum": [AUTO, *_AXES]},
-        _THREE,
-        {"type": "string", "pattern": "^[Ff]ace +at +.+,.+,"},
-    ]
-}
+_WRITTEN_FACE: Final = {"type": "string", "pattern": "^[Ff]ace +at +.+,.+,"}
+
+
+def written_direction(*, auto: bool = True) -> dict[str, Any]:
+    """Return the JSON Schema of a direction; `auto`: also as auto, or as the normal of a face."""
+    if auto:
+        return {"anyOf": [{"enum": [AUTO, *_AXES]}, _THREE, _WRITTEN_FACE]}
+    return {"anyOf": [{"enum": [*_AXES]}, _THREE]}
+
+
+_WRITTEN_DIRECTION: Final = written_direction()
+_Direction = Vector | FaceNormal | None
 
 
 class Pull(Section):
     """Direction along which the cavity half leaves the part."""
 
-    direction: Annotated[Vector | FaceNormal | None, PlainValidator(_direction), Written(_WRITTEN_DIRECTION)] = Field(
+    direction: Annotated[_Direction, PlainValidator(read_direction), Written(_WRITTEN_DIRECTION)] = Field(
         default=None,
         description='auto, an axis such as "+z", [x, y, z], or "face at x, y, z": the normal of the flat face nearest '
         "to that point of the part [mm]",

@@ -10,10 +10,10 @@ from moldgen.catalog import resin
 from moldgen.spec.fields import Section, Text, catalog_name, refuse, shown
 from moldgen.spec.pull import SHORT_PULL, SHORT_SHRINK, Pull, Shrink
 from moldgen.spec.sections import Blocks, CorePins, Draft, Ejection, Gate, Mark, Output, Parting
+from moldgen.spec.side_actions import SideActions
 from moldgen.spec.source import PartSource
 
 PLANNED: Final = {
-    "side_actions": "slides and lifters",
     "inserts": "components loaded before the shot",
     "cavities": "more than one cavity",
     "runner": "runners",
@@ -63,6 +63,9 @@ class Spec(Section):
     )
     draft: Draft = Field(default=Draft(), description="taper that lets the part slide out of the steel")
     parting: Parting = Field(default=Parting(), description="where the mold parts")
+    side_actions: SideActions = Field(
+        default=SideActions(), description="slides and lifters for what no straight pull releases"
+    )
     blocks: Blocks = Field(default=Blocks(), description="size and steel of the cavity and core blocks")
     core_pins: CorePins = Field(default=CorePins(), description="round cores made as pins of their own")
     gate: Gate = Field(default=Gate(), description="where the melt enters the cavity")

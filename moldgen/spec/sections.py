@@ -58,10 +58,11 @@ class Parting(Section):
     height: AutoCoordinate = Field(
         default=None, description="height of the flat parting surface: part coordinate along the pull [mm]"
     )
-    undercuts: Literal["refuse", "fill"] = Field(
-        default="refuse",
-        description="what a face that no straight pull can release means: refuse names it and stops; fill molds the "
-        "part with that space filled, and says what the part gains",
+    undercuts: Literal["release", "release_or_fill", "fill", "refuse"] = Field(
+        default="release",
+        description="what to do where no straight pull releases the part: release plans slides and lifters and stops "
+        "where none helps; fill molds the part with these places filled, and says what it gains; release_or_fill fills "
+        "what no side action releases; refuse names the places and stops",
     )
 
 

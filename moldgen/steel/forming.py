@@ -14,12 +14,14 @@ from moldgen.finding import Notes
 from moldgen.kernel.body import Body
 from moldgen.kernel.boolean import common, copied, cut
 from moldgen.kernel.measure import is_valid, volume
-from moldgen.kernel.meshsolid import MeshSolid, mesh_solid
+from moldgen.kernel.meshsolid import MeshSolid, mesh_solid, thick_pieces
 from moldgen.kernel.rehearse import made_apart
 from moldgen.kernel.side_prism import outline_prism
 from moldgen.kernel.topology import compound_of
 from moldgen.model.halves import Halves, SideSteel
 from moldgen.model.side_action import Front, SideKind, across
+from moldgen.release.kinds import face_kinds
+from moldgen.release.sweep import sweep_faces
 from moldgen.steel.adopt import Piece, adopt
 
 OUT = 1.0
@@ -77,11 +79,13 @@ def form_side_steel(halves: Halves, part: Body, fronts: Sequence[Front]) -> tupl
         pieces += [Piece(name, solid, solid is largest) for solid in left]
     bodies, notes = adopt(pieces, {t.name: t.front for t in tools}, part)
     sides = []
+    cavity = mesh_solid(Body(bodies["cavity"][0]).mesh)
     for tool in tools:
         own = bodies.get(tool.name, [])
         if not own:
             raise PartError(f"nothing of {tool.name} reaches the outside of the block")
-        sides.append(SideSteel(tool.name, tool.front, own[0] if len(own) == 1 else compound_of(own)))
+        solid = own[0] if len(own) == 1 else compound_of(own)
+        sides.append(SideSteel(tool.name, tool.front, solid, _over_cavity(tool, cavity, corners)))
     made = replace(
         halves, cavity=bodies["cavity"][0], core=bodies["core"][0], sides=tuple(sides), part=copied(part.solid)
     )
@@ -180,6 +184,17 @@ def _cut_in_turn(half: Any, groups: Sequence[Sequence[Any]]) -> list[Any]:
     for group in groups:
         left = [copied(s) for solid in left for s in cut(solid, group)]
     return left
+
+
+def _over_cavity(tool: _Tool, cavity: MeshSolid, corners: tuple[np.ndarray, np.ndarray]) -> bool:
+    """Return whether steel of the cavity half lies under a front, in the way when that half lifts."""
+    height = float(corners[1][2] - corners[0][2])
+    for solid in tool.solids:
+        body = Body(solid)
+        below = sweep_faces(body, face_kinds(body), up=False, way=height)
+        if thick_pieces(below ^ cavity):
+            return True
+    return False
 
 
 def _reaches_out(solid: Any, front: Front, corners: tuple[np.ndarray, np.ndarray]) -> bool:

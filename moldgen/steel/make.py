@@ -14,7 +14,6 @@ from moldgen.kernel.pins import faces_below
 from moldgen.kernel.turned import stepped_solid
 from moldgen.model.halves import Halves
 from moldgen.model.layout import Layout
-from moldgen.model.motion import straight_steps
 from moldgen.model.tool import Component, Hole, Motion, Role, Tool
 from moldgen.steel.bored import Bored, Materials, Removed
 from moldgen.steel.bores import OVERRUN, PinBore, pin_bores
@@ -22,6 +21,7 @@ from moldgen.steel.cutting import Cut, Wanted, cut_half
 from moldgen.steel.feed import Feed, make_feed
 from moldgen.steel.ground import Ground
 from moldgen.steel.pins import pin_components
+from moldgen.steel.plain_sides import plain_components, plain_steps
 
 SURE = 1e-7
 """Relative error of the volumes of what is taken out: the default integration errs by 1e-4 on some plugs (measured)."""
@@ -55,17 +55,18 @@ def make_tool(halves: Halves, layout: Layout, materials: Materials) -> tuple[Too
     pins, notes = pin_components(bores, core.plugs[: len(bores)], materials)
     sprue = _solidified(core.plugs[len(bores) :], cavity.plugs)
     components = (
-        Component("part", Role.PART, halves.body.solid, materials.part, Motion.PART),
+        Component("part", Role.PART, halves.real_part, materials.part, Motion.PART),
         Component("cavity", Role.CAVITY, cavity.half, materials.cavity, Motion.CAVITY_HALF),
         Component("core", Role.CORE, core.half, materials.core, Motion.CORE_HALF),
+        *plain_components(halves.sides, materials.cavity),
         *pins,
         Component("sprue", Role.SPRUE, sprue, materials.part, feed.motion, note=feed.note),
     )
     names = [*(b.name for b in bores), *(["sprue"] if feed.in_core is not None else [])]
     removed = [Removed("core", name, volume_adaptive(p, SURE)) for name, p in zip(names, core.plugs, strict=True)]
     removed += [Removed("cavity", "sprue", volume_adaptive(p, SURE)) for p in cavity.plugs]
-    steps = straight_steps(layout.stroke_mm, float(halves.high[2] - halves.low[2]))
-    tool = Tool(components, (*_pin_holes(bores), *feed.holes), steps)
+    depth = float(halves.high[2] - halves.low[2])
+    tool = Tool(components, (*_pin_holes(bores), *feed.holes), plain_steps(halves.sides, layout.stroke_mm, depth))
     return tool, Bored(tuple(removed)), notes + feed.notes + _refusals(core, cavity)
 
 

@@ -161,7 +161,7 @@ def test_very_many_mistakes_are_counted(mistakes):
     assert "and at least 170 more" in found[-1][1]
 
 
-PLANNED = ["side_actions", "inserts", "cavities", "runner", "cooling", "vents", "base", "press"]
+PLANNED = ["inserts", "cavities", "runner", "cooling", "vents", "base", "press"]
 
 
 @pytest.mark.parametrize("key", PLANNED)

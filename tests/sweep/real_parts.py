@@ -1,6 +1,6 @@
 """Build a tool for every real part and print what came of it: the table in DEVELOPERS.md.
 
-    python -m tests.sweep.real_parts [--undercuts refuse|fill] [--jobs 2] [NAME ...]
+    python -m tests.sweep.real_parts [--undercuts release|release_or_fill|fill|refuse] [--pull auto|axis] [--jobs 2] [NAME ...]
 
 The parts are those of the folder in MOLDGEN_PARTS, or ``../shared/parts`` beside the checkout; their best axis comes
 from the index that lies there. Each part is built through the command line, in its own process, as a user would.
@@ -61,12 +61,12 @@ def real_parts(folder: Path) -> list[RealPart]:
     return rows
 
 
-def build(part: RealPart, undercuts: str, work: Path) -> Outcome:
+def build(part: RealPart, undercuts: str, pull: str, work: Path) -> Outcome:
     """Build one part in a process of its own and read what it says."""
     spec = work / f"{part.name}.yaml"
     spec.write_text(
         f"name: {part.name}\npart: {{file: {json.dumps(str(part.path))}}}\nresin: ABS\n"
-        f'pull: "+{part.axis}"\nparting: {{undercuts: {undercuts}}}\n',
+        f'pull: "{"auto" if pull == "auto" else "+" + part.axis}"\nparting: {{undercuts: {undercuts}}}\n',
         encoding="utf-8",
     )
     command = [sys.executable, "-m", "moldgen", "build", str(spec), "--json", "--quiet", "--no-pictures"]
@@ -89,7 +89,7 @@ def _read(part: RealPart, code: int, said: dict[str, Any]) -> Outcome:
         first = said["errors"][0]
         verdict = {2: "spec refused", 3: "refused", 4: "kernel failed", 5: "BUG"}.get(code, "?")
         return Outcome(part, code, verdict, "", 0.0, f"{first['where']}: {first['what']}".replace("\n", " "))
-    topics = ("preparation", "parting surface", "shut-off", "undercut filled")
+    topics = ("preparation", "parting surface", "shut-off", "undercut filled", "side action")
     rungs = "; ".join(f"{d['rung'] or d['choice']}" for d in said["decisions"] if d["topic"] in topics)
     filled = [f for f in said["findings"] if f["code"] == "release.filled"]
     failed = [p for p in said["proofs"] if not p["passed"]]
@@ -107,7 +107,8 @@ def main(arguments: list[str]) -> int:
     """Print the table; the exit code is 1 if anything crashed, hung or left a traceback."""
     parser = argparse.ArgumentParser(description="Build a tool for every real part.")
     parser.add_argument("names", nargs="*", help="parts to build (default: all)")
-    parser.add_argument("--undercuts", choices=("refuse", "fill"), default="refuse")
+    parser.add_argument("--undercuts", choices=("release", "release_or_fill", "fill", "refuse"), default="release")
+    parser.add_argument("--pull", choices=("auto", "axis"), default="auto", help="axis: the best one of the index")
     parser.add_argument("--jobs", type=int, default=2)
     parser.add_argument("--csv", type=Path, help="also write the table here")
     options = parser.parse_args(arguments)
@@ -118,7 +119,7 @@ def main(arguments: list[str]) -> int:
     parts = [p for p in real_parts(folder) if not options.names or p.name in options.names]
     with tempfile.TemporaryDirectory() as work, ThreadPoolExecutor(options.jobs) as pool:
         outcomes = []
-        for o in pool.map(lambda p: build(p, options.undercuts, Path(work)), parts):
+        for o in pool.map(lambda p: build(p, options.undercuts, options.pull, Path(work)), parts):
             outcomes.append(o)
             print(
                 f"{o.part.name:20} {o.part.rough_class} {o.part.faces:4} {o.verdict:28} {o.seconds:6.1f} s  "

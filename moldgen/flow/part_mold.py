@@ -1,0 +1,225 @@
+"""From the prepared part to its halves: straight pull, undercuts filled, or undercuts formed by side actions."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from moldgen.errors import MoldgenError, PartError, SpecError
+from moldgen.finding import Finding, Notes, Severity
+from moldgen.flow.lay_out import marked_points
+from moldgen.flow.prepare import Prepared, ready
+from moldgen.flow.review import Reviewed, refuse_undercuts, undercut_error
+from moldgen.flow.side_plan import plan_sides
+from moldgen.flow.tell import Tell
+from moldgen.kernel.body import Body
+from moldgen.layout.blocks import size_blocks
+from moldgen.model.halves import Halves
+from moldgen.model.side_action import SidePlan
+from moldgen.parting.fill import fill_trapped
+from moldgen.parting.halves import Parted, part_halves
+from moldgen.parting.side_fill import filled_candidates
+from moldgen.parting.told import parting_line, told
+from moldgen.release.kinds import face_kinds
+from moldgen.release.trapped import TrapPiece, trapped_volume
+from moldgen.spec.sections import Blocks
+from moldgen.steel.forming import form_side_steel
+from moldgen.tolerances import ON_PLANE
+
+MOST_FILLED = 0.1
+"""Share of the part's volume that may be molded full: filling is for small undercuts (our choice)."""
+
+_REMEDY = "fill these places in the part, change them so that they taper along the pull, or give another pull"
+
+Corners = tuple[np.ndarray, np.ndarray]
+
+
+def part_mold(reviewed: Reviewed, tell: Tell) -> tuple[Halves, Notes]:
+    """Return the halves, with the forming steel of side actions where the part needs any.
+
+    Raises
+    ------
+    PartError : the part cannot be released as the spec asks; KernelError : see the stages
+    """
+    prepared, how = reviewed.prepared, reviewed.loaded.spec.parting.undercuts
+    if not prepared.trapped.pieces:
+        return _straight(reviewed, prepared, tell)
+    if how == "fill":
+        with tell.stage("fill the undercuts") as stage:
+            filled, notes = _filled(reviewed, prepared.trapped.pieces)
+            stage.detail = f"{len(prepared.trapped.pieces)} places"
+        halves, more = _straight(reviewed, filled, tell)
+        return halves, notes + more
+    if how == "refuse":
+        refuse_undercuts(reviewed)
+    if prepared.trapped.undercuts or reviewed.loaded.spec.side_actions.given:
+        return _released(reviewed, prepared, tell)
+    return _straight(reviewed, prepared, tell)
+
+
+def _released(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Halves, Notes]:
+    """Return halves and side actions; what no side action releases is filled if the spec allows it."""
+    notes = Notes()
+    with tell.stage("plan the side actions") as stage:
+        plan, more = plan_sides(reviewed, prepared)
+        stage.detail = _counted(plan)
+    if plan.left and reviewed.loaded.spec.parting.undercuts == "release_or_fill":
+        pieces = tuple(prepared.trapped.pieces[u.piece] for u in plan.left)
+        with tell.stage("fill what no side action releases") as stage:
+            prepared, notes = _filled(reviewed, pieces)
+            stage.detail = f"{len(pieces)} places"
+        if not prepared.trapped.undercuts:
+            halves, more = _straight(reviewed, prepared, tell)
+            return halves, notes + more
+        with tell.stage("plan the side actions") as stage:
+            plan, more = plan_sides(reviewed, prepared)
+            stage.detail = _counted(plan)
+    if plan.left:
+        raise _unreleased(reviewed, plan)
+    halves, also = _with_sides(reviewed, prepared, plan, tell)
+    return halves, notes + more + also
+
+
+def _counted(plan: SidePlan) -> str:
+    kinds = [f.kind for f in plan.fronts]
+    text = ", ".join(f"{kinds.count(k)} {k}{'s' if kinds.count(k) > 1 else ''}" for k in dict.fromkeys(kinds)) or "none"
+    return f"{text}; {len(plan.left)} places left" if plan.left else text
+
+
+def _unreleased(reviewed: Reviewed, plan: SidePlan) -> PartError:
+    left = [f"place {u.piece + 1}: {u.why}; {u.remedy}" for u in plan.left[:8]]
+    return undercut_error(reviewed, "; or accept small places filled with parting.undercuts: release_or_fill".lstrip(
+        "; "), "no side action releases:\n    " + "\n    ".join(left))  # fmt: skip
+
+
+def _with_sides(reviewed: Reviewed, prepared: Prepared, plan: SidePlan, tell: Tell) -> tuple[Halves, Notes]:
+    refused: list[str] = []
+    found = filled_candidates(prepared.body, prepared.kinds, prepared.trapped, plan.fronts, reviewed.frame)
+    for filled in found:
+        if isinstance(filled, str):
+            refused.append(filled)
+            continue
+        try:
+            body, _ = ready(filled.body, reviewed.frame)
+            kinds = face_kinds(body)
+            trapped = trapped_volume(body, kinds)
+            if trapped.undercuts:
+                refused.append(f"{filled.rung}: {len(trapped.undercuts)} places stay trapped")
+                continue
+            halves, notes = _straight(reviewed, Prepared(body, kinds, trapped), tell)
+            with tell.stage("form the side actions") as stage:
+                formed, more = form_side_steel(halves, prepared.body, plan.fronts)
+                stage.detail = f"{len(formed.sides)} side actions"
+        except MoldgenError as error:
+            if isinstance(error, SpecError):
+                raise
+            refused.append(f"{filled.rung}: {error.where}: {error.what}".replace(": : ", ": "))
+            continue
+        return formed, notes + more
+    raise PartError(
+        "side actions were planned, but no steel could be made for them: " + "; ".join(refused),
+        where=reviewed.loaded.locate("part"),
+        remedy="give another pull, give the side actions by hand, or change the undercuts",
+    )
+
+
+def _straight(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Halves, Notes]:
+    """Return the halves of a part that leaves by a straight pull."""
+    spec = reviewed.loaded.spec
+    level = None if spec.parting.height is None else _mold_level(reviewed, spec.parting.height, prepared.body)
+    fixed = spec.blocks.cavity_height is not None or spec.blocks.core_height is not None
+    # the plane is known only after parting, and given heights count from it: then the blocks are sized twice
+    section = spec.blocks
+    if fixed and level is None:
+        section = section.model_copy(update={"cavity_height": None, "core_height": None})
+    corners, more = _blocks(reviewed, prepared, section, level, tell)
+    parted = _parted(reviewed, prepared, corners, level, tell)
+    if fixed and abs(parted.level - (np.inf if level is None else level)) > ON_PLANE:
+        corners, more = _blocks(reviewed, prepared, spec.blocks, parted.level, tell)
+        parted = _parted(reviewed, prepared, corners, parted.level, tell)
+    return _halves(parted, *corners), more + told(parted, reviewed.frame)
+
+
+def _blocks(
+    reviewed: Reviewed, prepared: Prepared, section: Blocks, level: float | None, tell: Tell
+) -> tuple[Corners, Notes]:
+    with tell.stage("size the blocks") as stage:
+        blocks, notes = size_blocks(prepared.body, reviewed.resin, section, level)
+        low, high = np.asarray(blocks.low), np.asarray(blocks.high)
+        stage.detail = " x ".join(f"{v:.0f}" for v in high - low) + " mm"
+    return (low, high), notes
+
+
+def _parted(reviewed: Reviewed, prepared: Prepared, corners: Corners, level: float | None, tell: Tell) -> Parted:
+    with tell.stage("part the mold") as stage:
+        avoid = marked_points(reviewed, "no_parting_line")
+        part = prepared.trapped.part
+        try:
+            parted = part_halves(prepared.body, prepared.kinds, part, corners, level=level, avoid=avoid)
+        except PartError as error:
+            if prepared.trapped.pieces:  # rubs: thin, but they can keep the halves from closing around the part
+                remedy = "taper these faces along the pull, or accept them filled with parting.undercuts: fill"
+                raise undercut_error(reviewed, remedy, error.what) from error
+            raise
+        stage.detail = f"{len(parted.loops)} loops, {parted.sheet.outer.rung}"
+    return parted
+
+
+def _halves(parted: Parted, low: np.ndarray, high: np.ndarray) -> Halves:
+    return Halves(
+        cavity=parted.cavity,
+        core=parted.core,
+        body=parted.body,
+        cavity_side=parted.sides.cavity,
+        level=parted.level,
+        low=low,
+        high=high,
+        parting_line=parting_line(parted),
+    )
+
+
+def _filled(reviewed: Reviewed, pieces: tuple[TrapPiece, ...]) -> tuple[Prepared, Notes]:
+    """Return the part with places molded full."""
+    before = reviewed.prepared
+    gained = sum(p.volume_mm3 for p in pieces)
+    share = gained / float(before.trapped.part.volume())
+    if share > MOST_FILLED:
+        limit = f"{100 * share:.0f} % of the part's volume, more than the {100 * MOST_FILLED:.0f} % that makes sense"
+        raise undercut_error(reviewed, _REMEDY, f"they cannot be molded full: together they are {limit}")
+    try:
+        body, notes = fill_trapped(before.body, before.kinds, pieces, reviewed.frame)
+    except PartError as error:
+        why = f"{error.where}: {error.what}".removeprefix(": ")
+        raise undercut_error(reviewed, _REMEDY, f"they cannot be molded full: {why}") from error
+    body, more = ready(body, reviewed.frame)
+    kinds = face_kinds(body)
+    trapped = trapped_volume(body, kinds)
+    if trapped.undercuts and len(pieces) == len(before.trapped.pieces):
+        left = sum(p.volume_mm3 for p in trapped.undercuts)
+        why = f"filled, {len(trapped.undercuts)} places of {left:.3f} mm^3 stay trapped"
+        raise undercut_error(reviewed, _REMEDY, f"they cannot be molded full: {why}")
+    finding = Finding(
+        code="release.filled",
+        severity=Severity.WARNING,
+        message=f"{len(pieces)} trapped places are molded full: the molded part has "
+        f"{gained:.3f} mm^3 more than the drawn one",
+        where=reviewed.loaded.locate("parting.undercuts"),
+        value=gained,
+        limit=0.0,
+        unit="mm^3",
+        remedy="machine these places after molding, change the part, or plan side actions",
+    )
+    return Prepared(body, kinds, trapped), notes + more + Notes((finding,))
+
+
+def _mold_level(reviewed: Reviewed, height: float, body: Body) -> float:
+    """Return the mold z of a part coordinate along the pull, which must lie on the part."""
+    base, unit = (reviewed.frame.to_mold(tuple(c * h for c in reviewed.pull.direction))[2] for h in (0.0, 1.0))  # type: ignore[arg-type]
+    low, high = ((float(corner[2]) - base) / (unit - base) for corner in body.box)
+    if not low - ON_PLANE <= height <= high + ON_PLANE:
+        raise SpecError(
+            f"the parting height {height:g} mm does not lie on the part, which reaches from {low:g} to {high:g} mm "
+            "along the pull",
+            where=reviewed.loaded.locate("parting.height"),
+            remedy="give a height between these, or leave it out",
+        )
+    return base + height * (unit - base)
