@@ -20,6 +20,7 @@ from moldgen.flow.part_mold import part_mold
 from moldgen.flow.prove import proof_findings
 from moldgen.flow.record import component_files, component_record, file_record, notes_record, review_record
 from moldgen.flow.review import Reviewed, open_part, review_along
+from moldgen.flow.side_steel import make_sides
 from moldgen.flow.tell import Tell
 from moldgen.flow.words import direction_text
 from moldgen.model.halves import Halves
@@ -32,6 +33,7 @@ from moldgen.proof.run import Claims, prove_tool
 from moldgen.spec.load import LoadedSpec
 from moldgen.steel.bored import Materials
 from moldgen.steel.make import make_tool
+from moldgen.steel.side_motion import opening_steps
 
 
 @dataclass(frozen=True)
@@ -82,7 +84,9 @@ def _built(loaded: LoadedSpec, tell: Tell) -> Built:
 
 
 def _built_along(reviewed: Reviewed, tell: Tell) -> Built:
-    halves, notes = part_mold(reviewed, tell)
+    formed, notes = part_mold(reviewed, tell)
+    sides, side_layout, more = make_sides(formed, reviewed.resin, reviewed.loaded.spec.ejection, tell)
+    halves, notes = sides.halves, notes + more
     with tell.stage("lay out pins and gate") as stage:
         layout, more = lay_out(reviewed, halves)
         notes += more
@@ -90,8 +94,11 @@ def _built_along(reviewed: Reviewed, tell: Tell) -> Built:
             f"{len(layout.ejector_pins)} ejector pins, {len(layout.core_pins)} core pins, {layout.gate.kind} gate"
         )
     with tell.stage("cut the steel") as stage:
-        tool, bored, more = make_tool(halves, layout, _materials(reviewed))
+        tool, bored, more = make_tool(halves, layout, _materials(reviewed), sides)
         notes += more
+        depth = float(halves.high[2] - halves.low[2])
+        stroke = layout.stroke_mm
+        tool = replace(tool, steps=opening_steps(side_layout, 2.0 * depth + stroke, stroke, depth))
         stage.detail = f"{len(tool.components)} components"
     claims = Claims(float(np.prod(halves.high - halves.low)), bored.total_mm3, layout.stroke_mm, tool.steps)
     return Built(reviewed, halves, layout, tool, claims, _accepted(reviewed, halves) + notes)

@@ -10,9 +10,12 @@ from moldgen.flow.lay_out import marked_points
 from moldgen.flow.prepare import Prepared, ready
 from moldgen.flow.review import Reviewed, refuse_undercuts, undercut_error
 from moldgen.flow.side_plan import plan_sides
+from moldgen.flow.side_steel import Formed, with_room
 from moldgen.flow.tell import Tell
 from moldgen.kernel.body import Body
 from moldgen.layout.blocks import size_blocks
+from moldgen.layout.side_drive import drive_fronts
+from moldgen.layout.slide_body import SideTask
 from moldgen.model.halves import Halves
 from moldgen.model.side_action import SidePlan
 from moldgen.parting.fill import fill_trapped
@@ -33,7 +36,7 @@ _REMEDY = "fill these places in the part, change them so that they taper along t
 Corners = tuple[np.ndarray, np.ndarray]
 
 
-def part_mold(reviewed: Reviewed, tell: Tell) -> tuple[Halves, Notes]:
+def part_mold(reviewed: Reviewed, tell: Tell) -> tuple[Formed, Notes]:
     """Return the halves, with the forming steel of side actions where the part needs any.
 
     Raises
@@ -42,21 +45,26 @@ def part_mold(reviewed: Reviewed, tell: Tell) -> tuple[Halves, Notes]:
     """
     prepared, how = reviewed.prepared, reviewed.loaded.spec.parting.undercuts
     if not prepared.trapped.pieces:
-        return _straight(reviewed, prepared, tell)
+        return _plain(reviewed, prepared, tell)
     if how == "fill":
         with tell.stage("fill the undercuts") as stage:
             filled, notes = _filled(reviewed, prepared.trapped.pieces)
             stage.detail = f"{len(prepared.trapped.pieces)} places"
-        halves, more = _straight(reviewed, filled, tell)
-        return halves, notes + more
+        made, more = _plain(reviewed, filled, tell)
+        return made, notes + more
     if how == "refuse":
         refuse_undercuts(reviewed)
     if prepared.trapped.undercuts or reviewed.loaded.spec.side_actions.given:
         return _released(reviewed, prepared, tell)
-    return _straight(reviewed, prepared, tell)
+    return _plain(reviewed, prepared, tell)
 
 
-def _released(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Halves, Notes]:
+def _plain(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Formed, Notes]:
+    parted, notes = _straight(reviewed, prepared, tell)
+    return Formed(parted), notes
+
+
+def _released(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Formed, Notes]:
     """Return halves and side actions; what no side action releases is filled if the spec allows it."""
     notes = Notes()
     with tell.stage("plan the side actions") as stage:
@@ -68,15 +76,15 @@ def _released(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Halve
             prepared, notes = _filled(reviewed, pieces)
             stage.detail = f"{len(pieces)} places"
         if not prepared.trapped.undercuts:
-            halves, more = _straight(reviewed, prepared, tell)
-            return halves, notes + more
+            made, more = _plain(reviewed, prepared, tell)
+            return made, notes + more
         with tell.stage("plan the side actions") as stage:
             plan, more = plan_sides(reviewed, prepared)
             stage.detail = _counted(plan)
     if plan.left:
         raise _unreleased(reviewed, plan)
-    halves, also = _with_sides(reviewed, prepared, plan, tell)
-    return halves, notes + more + also
+    made, also = _with_sides(reviewed, prepared, plan, tell)
+    return made, notes + more + also
 
 
 def _counted(plan: SidePlan) -> str:
@@ -91,7 +99,7 @@ def _unreleased(reviewed: Reviewed, plan: SidePlan) -> PartError:
         "; "), "no side action releases:\n    " + "\n    ".join(left))  # fmt: skip
 
 
-def _with_sides(reviewed: Reviewed, prepared: Prepared, plan: SidePlan, tell: Tell) -> tuple[Halves, Notes]:
+def _with_sides(reviewed: Reviewed, prepared: Prepared, plan: SidePlan, tell: Tell) -> tuple[Formed, Notes]:
     refused: list[str] = []
     found = filled_candidates(prepared.body, prepared.kinds, prepared.trapped, plan.fronts, reviewed.frame)
     for filled in found:
@@ -105,21 +113,33 @@ def _with_sides(reviewed: Reviewed, prepared: Prepared, plan: SidePlan, tell: Te
             if trapped.undercuts:
                 refused.append(f"{filled.rung}: {len(trapped.undercuts)} places stay trapped")
                 continue
-            halves, notes = _straight(reviewed, Prepared(body, kinds, trapped), tell)
-            with tell.stage("form the side actions") as stage:
-                formed, more = form_side_steel(halves, prepared.body, plan.fronts)
-                stage.detail = f"{len(formed.sides)} side actions"
+            made, notes = _formed(reviewed, Prepared(body, kinds, trapped), prepared.body, plan, tell)
         except MoldgenError as error:
             if isinstance(error, SpecError):
                 raise
             refused.append(f"{filled.rung}: {error.where}: {error.what}".replace(": : ", ": "))
             continue
-        return formed, notes + more
+        return made, notes
     raise PartError(
         "side actions were planned, but no steel could be made for them: " + "; ".join(refused),
         where=reviewed.loaded.locate("part"),
         remedy="give another pull, give the side actions by hand, or change the undercuts",
     )
+
+
+def _formed(reviewed: Reviewed, filled: Prepared, part: Body, plan: SidePlan, tell: Tell) -> tuple[Formed, Notes]:
+    """Return the halves of the filled part without the fronts; the block grows where slides need room."""
+    halves, notes = _straight(reviewed, filled, tell)
+    task = SideTask(part, halves.level, reviewed.resin)
+    driven, more = drive_fronts(plan.fronts, part, halves.level)
+    wider = with_room((halves.low, halves.high), halves.level, driven, task, reviewed.loaded.spec.blocks)
+    if (wider[0] < halves.low - ON_PLANE).any() or (wider[1] > halves.high + ON_PLANE).any():
+        parted = _parted(reviewed, filled, wider, halves.level, tell)
+        halves, notes = _halves(parted, *wider), notes + told(parted, reviewed.frame)
+    with tell.stage("form the side actions") as stage:
+        formed, also = form_side_steel(halves, part, [d.front for d in driven])
+        stage.detail = f"{len(formed.sides)} side actions"
+    return Formed(formed, driven, part), notes + more + also
 
 
 def _straight(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Halves, Notes]:

@@ -11,8 +11,9 @@ from moldgen.catalog import Resin, ejector_pin_down, ejector_pin_series
 from moldgen.finding import Finding, Notes, Severity
 from moldgen.layout.balance import shares
 from moldgen.layout.ejection_checks import check_balance, check_given, check_stays
+from moldgen.layout.keep_out import STEEL
 from moldgen.layout.pin_kinds import Place, of_diameter, stack_up
-from moldgen.layout.pin_search import Task, search_pins, size_cap
+from moldgen.layout.pin_search import Task, search_pins, side_steel, size_cap
 from moldgen.layout.sites import Underside
 from moldgen.layout.sticking import Sticking, find_sticking, hold_of_cavity
 from moldgen.layout.view import PartView
@@ -64,7 +65,7 @@ def place_ejector_pins(
     """
     sticking, notes = find_sticking(view, resin)
     notes += check_stays(view, sticking, hold_of_cavity(view, resin))
-    stroke, more = _stroke(view, section)
+    stroke, more = ejector_stroke(view, section)
     notes += more
     task = Task(view, section, resin, Underside(view, no_pins), core_pins, sticking, stroke, no_pins)
     kept, more = _given(task, given or ())
@@ -78,8 +79,8 @@ def place_ejector_pins(
     return EjectionLayout(pins, sticking.force, stroke, sticking), notes
 
 
-def _stroke(view: PartView, section: Ejection) -> tuple[float, Notes]:
-    """Return the travel that frees the part: its depth on the core, and a margin."""
+def ejector_stroke(view: PartView, section: Ejection) -> tuple[float, Notes]:
+    """Return the travel [mm] that frees the part: its depth on the core, and a margin."""
     z = view.mesh.corners[view.core_side][:, :, 2]
     depth = float(max(z.max(), view.level) - min(z.min(), view.level)) if len(z) else 0.0
     needed = ejection_stroke_pye.line("ejector stroke", depth)
@@ -114,10 +115,11 @@ def _given(task: Task, given: tuple[GivenPin, ...]) -> tuple[list[Place], Notes]
         place = Place(float(spot[0]), float(spot[1]), kind, disc, Chooser.GIVEN)
         notes += check_given(task.under, place, number, kept, task.bores)
         notes += _marked(task.view, place, number, task.no_pins)
+        notes += _near_side_action(task, place, number)
         room, needed = task.under.exact_room(spot), diameter / 2 + task.section.edge_clearance
-        if disc.whole and disc.core_side and room < needed - 1e-6:
+        if disc.whole and disc.core_side and not disc.aside and room < needed - 1e-6:
             notes += Notes((_near_edge(task.view, place, number, room - diameter / 2, task.section.edge_clearance),))
-        if disc.faces and disc.core_side:
+        if disc.faces and disc.core_side and not disc.aside:
             kept.append(place)
     return kept, notes
 
@@ -146,6 +148,31 @@ def _marked(view: PartView, place: Place, number: int, no_pins: frozenset[int]) 
         where=f"ejection.pins[{number - 1}]",
         at=view.place((place.x, place.y, place.disc.high)),
         remedy="move the pin or delete the mark",
+    )
+    return Notes((finding,))
+
+
+def _near_side_action(task: Task, place: Place, number: int) -> Notes:
+    """Tell that a pin of the spec stands in the way of a side action, or too close to it."""
+    if not (task.view.halves.sides and place.disc.faces):
+        return Notes()
+    high = place.disc.high
+    near = side_steel(task, np.array([[place.x, place.y]]), place.kind, np.array([high]))
+    steel, limit = float(near.steel[0]), STEEL
+    if steel >= limit:
+        return Notes()
+    crossed = steel <= 0.0
+    how = f"stands in the way of {near.names[0]}" if crossed else f"leaves {steel:.2f} mm of steel to {near.names[0]}"
+    finding = Finding(
+        "ejector_pin.side_action",
+        Severity.FAILURE if crossed else Severity.WARNING,
+        f"pin {number} of the spec {how}: {task.view.keep_out.why}",
+        where=f"ejection.pins[{number - 1}]",
+        at=task.view.place((place.x, place.y, high)),
+        value=round(steel, 3),
+        limit=limit,
+        unit="mm",
+        remedy="move the pin, make it thinner, or let moldgen place it",
     )
     return Notes((finding,))
 

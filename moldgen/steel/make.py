@@ -21,17 +21,21 @@ from moldgen.steel.cutting import Cut, Wanted, cut_half
 from moldgen.steel.feed import Feed, make_feed
 from moldgen.steel.ground import Ground
 from moldgen.steel.pins import pin_components
-from moldgen.steel.plain_sides import plain_components, plain_steps
+from moldgen.steel.side_actions import SideCut
 
 SURE = 1e-7
 """Relative error of the volumes of what is taken out: the default integration errs by 1e-4 on some plugs (measured)."""
 
 
-def make_tool(halves: Halves, layout: Layout, materials: Materials) -> tuple[Tool, Bored, Notes]:
+def make_tool(
+    halves: Halves, layout: Layout, materials: Materials, sides: SideCut | None = None
+) -> tuple[Tool, Bored, Notes]:
     """Return the tool: part, cavity, core, core pins, ejector pins and the solidified feed.
 
     Everything is taken out of each half in one calculation, and what comes out becomes the pins' tips and the feed: the
     components fit each other exactly, without play; fits are told in the table of holes.
+
+    sides : the side actions, if any, already taken out of the halves
 
     Returns
     -------
@@ -58,15 +62,15 @@ def make_tool(halves: Halves, layout: Layout, materials: Materials) -> tuple[Too
         Component("part", Role.PART, halves.real_part, materials.part, Motion.PART),
         Component("cavity", Role.CAVITY, cavity.half, materials.cavity, Motion.CAVITY_HALF),
         Component("core", Role.CORE, core.half, materials.core, Motion.CORE_HALF),
-        *plain_components(halves.sides, materials.cavity),
+        *(sides.components if sides else ()),
         *pins,
         Component("sprue", Role.SPRUE, sprue, materials.part, feed.motion, note=feed.note),
     )
     names = [*(b.name for b in bores), *(["sprue"] if feed.in_core is not None else [])]
     removed = [Removed("core", name, volume_adaptive(p, SURE)) for name, p in zip(names, core.plugs, strict=True)]
     removed += [Removed("cavity", "sprue", volume_adaptive(p, SURE)) for p in cavity.plugs]
-    depth = float(halves.high[2] - halves.low[2])
-    tool = Tool(components, (*_pin_holes(bores), *feed.holes), plain_steps(halves.sides, layout.stroke_mm, depth))
+    removed += sides.removed if sides else ()
+    tool = Tool(components, (*_pin_holes(bores), *feed.holes, *(sides.holes if sides else ())))
     return tool, Bored(tuple(removed)), notes + feed.notes + _refusals(core, cavity)
 
 

@@ -15,6 +15,7 @@ from moldgen.kernel.boolean import common, copied, cut, fuse
 from moldgen.kernel.cells import lost_volume, take_out
 from moldgen.kernel.measure import centroid, is_valid, volume
 from moldgen.kernel.merge import merged_faces
+from moldgen.kernel.rehearse import made_apart
 from moldgen.kernel.topology import solids_of
 from moldgen.model.halves import Halves, SideSteel
 from moldgen.model.side_action import across
@@ -30,6 +31,9 @@ default integration errs by less on plane bodies, and a body that met the part w
 
 CRUMB = 1e-3
 """mm^3: pieces of less volume are noise of the boolean."""
+
+CUT_SECONDS = 20
+"""Processor time for one boolean."""
 
 PIN_STEEL = "1.2344"
 """Material of angled pins, hardened (common practice)."""
@@ -110,6 +114,7 @@ class _Pocket:
 
 
 def _pocket(half: Any, body: Any, name: str) -> _Pocket:
+    made_apart(lambda: take_out(half, [body], name).rest, CUT_SECONDS)  # a rehearsal: it could hang
     cells = take_out(half, [body], name)
     if len(cells.rest) != 1 or not is_valid(cells.rest[0]):
         raise KernelError(f"{name} leaves {len(cells.rest)} pieces, expected one sound solid")
@@ -161,7 +166,7 @@ def _lifter_hole(lifter: LifterLayout, steel: SideSteel, corners: Corners) -> Ho
 
 def _joined(solids: Sequence[Any], name: str) -> Any:
     """Return solids that touch or overlap as one, nothing of them lost."""
-    found = fuse([copied(s) for s in solids])
+    found = made_apart(lambda: fuse([copied(s) for s in solids]), CUT_SECONDS)
     if len(found) != 1 or not is_valid(found[0]):
         raise KernelError(f"{name}: {len(found)} pieces came out, expected one sound solid")
     before, after = sum(volume(s) for s in solids), volume(found[0])

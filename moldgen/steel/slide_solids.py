@@ -14,6 +14,7 @@ from moldgen.kernel.side_prism import outline_prism
 from moldgen.kernel.turned import turned_solid
 from moldgen.model.side_action import across
 from moldgen.model.slide import AngledPinLayout, SlideBody, SlideLayout
+from moldgen.rules.side_practice import UNDER_TIP
 
 OUT = 1.0
 """mm: how far a tool runs out of what it cuts."""
@@ -27,9 +28,6 @@ stopped (geometry; a round tip does the same)."""
 
 ROD_DIAMETER, ROD_DEPTH = 10.2, 25.0
 """mm: hole for the rod of a cylinder, thread M12 (common practice: depth two diameters)."""
-
-UNDER_TIP = 3.0
-"""mm: clearance bore under the tip of an angled pin (our choice)."""
 
 Corners = tuple[np.ndarray, np.ndarray]
 
@@ -134,7 +132,7 @@ def core_bore(pin: AngledPinLayout, body: SlideBody) -> tuple[float, float, floa
     slope = math.radians(pin.angle)
     (x0, y0), (x1, y1) = pin.at(body.bottom), pin.at(pin.tip_z)
     wide = pin.bore / math.cos(slope) + math.hypot(x1 - x0, y1 - y0)
-    return 0.5 * (x0 + x1), 0.5 * (y0 + y1), math.ceil(2 * wide) / 2, deepest - UNDER_TIP, body.bottom
+    return 0.5 * (x0 + x1), 0.5 * (y0 + y1), math.ceil(2 * wide) / 2, deepest - UNDER_TIP.default, body.bottom
 
 
 def core_bore_tool(place: tuple[float, float, float, float, float], seam: float) -> Any:

@@ -1,0 +1,127 @@
+"""Side actions from their fronts to components: drives, room in the block, bodies, and how the tool opens."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from moldgen.catalog import Resin, preferred_size_up
+from moldgen.errors import KernelError, PartError
+from moldgen.finding import Finding, Notes, Severity
+from moldgen.flow.tell import Tell
+from moldgen.kernel.body import Body
+from moldgen.layout.ejection import ejector_stroke
+from moldgen.layout.side_actions import lay_out_sides, room_needed
+from moldgen.layout.side_drive import Driven
+from moldgen.layout.slide_body import SideTask
+from moldgen.layout.view import PartView
+from moldgen.model.halves import Halves
+from moldgen.model.layout import BlockLayout
+from moldgen.model.side_action import SideKind
+from moldgen.model.slide import Drive, SideLayout, SlideLayout
+from moldgen.model.tool import Motion
+from moldgen.rules.slide import slide_travel_practice
+from moldgen.spec.sections import Blocks, Ejection
+from moldgen.steel.side_actions import SideCut, cut_side_actions
+
+Corners = tuple[np.ndarray, np.ndarray]
+
+
+@dataclass(frozen=True)
+class Formed:
+    """The halves, and the fronts of the side actions with their drives, in the order of `halves.sides`."""
+
+    halves: Halves
+    driven: tuple[Driven, ...] = ()
+    part: Body | None = None
+
+
+def with_room(corners: Corners, level: float, driven: Sequence[Driven], task: SideTask, section: Blocks) -> Corners:
+    """Return the corners of a block that also holds the slides; what the spec gives of its size stays."""
+    room = room_needed(driven, task)
+    if room is None:
+        return corners
+    low, high = np.minimum(corners[0], room.low), np.maximum(corners[1], room.high)
+    for axis, fixed in ((0, section.length), (1, section.width)):
+        if fixed is not None:
+            low[axis], high[axis] = corners[0][axis], corners[1][axis]
+            continue
+        more = preferred_size_up(float(high[axis] - low[axis]), "edge") - float(high[axis] - low[axis])
+        low[axis], high[axis] = low[axis] - more / 2, high[axis] + more / 2
+    if section.cavity_height is None:
+        high[2] = level + preferred_size_up(float(high[2]) - level, "thickness")
+    else:
+        high[2] = corners[1][2]
+    if section.core_height is None:
+        low[2] = level - preferred_size_up(level - float(low[2]), "thickness")
+    else:
+        low[2] = corners[0][2]
+    return low, high
+
+
+def make_sides(formed: Formed, resin: Resin, section: Ejection, tell: Tell) -> tuple[SideCut, SideLayout, Notes]:
+    """Return halves and components of the side actions.
+
+    Where bodies with guides find no room, the fronts run out of the block as they are, drawn by cylinders.
+
+    Raises
+    ------
+    KernelError, PartError : not even that can be made
+    """
+    halves = formed.halves
+    if not halves.sides or formed.part is None:
+        return SideCut(halves, (), (), (), Notes()), SideLayout(), Notes()
+    task = SideTask(formed.part, halves.level, resin)
+    block = BlockLayout(_corner(halves.low), _corner(halves.high))
+    names = [side.name for side in halves.sides]
+    with tell.stage("make the side actions") as stage:
+        stroke, _ = ejector_stroke(PartView(halves), section)
+        try:
+            layout, notes = lay_out_sides(formed.driven, names, task, block, stroke)
+            made = cut_side_actions(halves, layout, task.material)
+        except (PartError, KernelError) as error:
+            plain = [replace(d, drive=Drive.CYLINDER) for d in formed.driven]
+            layout, notes = lay_out_sides(
+                [d for d in plain if d.front.kind is SideKind.LIFTER],
+                [n for n, d in zip(names, plain, strict=True) if d.front.kind is SideKind.LIFTER],
+                task,
+                block,
+                stroke,
+            )
+            layout = replace(layout, slides=_plain_slides(formed))
+            made = cut_side_actions(halves, layout, task.material)
+            notes += Notes((_no_bodies(error),))
+        stage.detail = f"{len(layout.slides)} slides, {len(layout.lifters)} lifters"
+    return made, layout, notes + made.notes
+
+
+def _corner(corner: np.ndarray) -> tuple[float, float, float]:
+    x, y, z = (float(v) for v in corner)
+    return (x, y, z)
+
+
+def _plain_slides(formed: Formed) -> tuple[SlideLayout, ...]:
+    """Return slides that are nothing but their fronts, each in a bore of its own outline."""
+    slides = []
+    for side in formed.halves.sides:
+        if side.front.kind is SideKind.SLIDE:
+            carried = Motion.CAVITY_HALF if side.in_cavity else Motion.CORE_HALF
+            travel = slide_travel_practice(max(side.front.travel, 1.0))
+            slides.append(
+                SlideLayout(side.name, (side.name,), side.front.axis, Drive.CYLINDER, carried, None, travel, 0.0, 0.0)
+            )
+    return tuple(slides)
+
+
+def _no_bodies(error: PartError | KernelError) -> Finding:
+    where = error.where or "side_actions"
+    return Finding(
+        "side.no_body",
+        Severity.WARNING,
+        f"no slide bodies with guides and locking faces were made: {error.what}; the slides are drawn as straight "
+        "cores that cylinders pull before the mold opens, and nothing but the cylinders holds them against the melt",
+        where=where,
+        remedy="give a larger block or other side actions, or let the toolmaker design the bodies",
+    )
