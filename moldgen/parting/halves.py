@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass, replace
 from typing import Any
 
@@ -19,9 +20,10 @@ from moldgen.parting.accept import HalvesCheck, check_halves
 from moldgen.parting.level import LevelSearch, find_levels
 from moldgen.parting.refine import split_at_extremes, split_at_level, split_closed_edges, split_edges_at_level
 from moldgen.parting.sides import Sides, assign_sides
-from moldgen.parting.surface import Sheet, make_sheet, outer_loop
+from moldgen.parting.surface import Outside, Rung, Sheet, close_holes, closings, joined, outer_loop, with_angles
 from moldgen.release.contact import vertical_contact
 from moldgen.release.kinds import FaceKinds, face_kinds
+from moldgen.rules.practice import SHUT_OFF_ANGLE
 from moldgen.tolerances import ON_PLANE
 
 MOST_CHECKED = 6
@@ -187,28 +189,51 @@ def _assigned(
 
 
 def _halves(state: _Assigned, level: float, trial: _Trial, corners: tuple[np.ndarray, np.ndarray]) -> Parted:
-    body, cavity_side = state.body, state.sides.cavity
-    sheet = make_sheet(body, state.loops, state.outer, level, corners)
-    halves = []
-    for is_cavity, lid in ((True, corners[1][2]), (False, corners[0][2])):
-        own = [f for f, side in zip(body.faces, cavity_side, strict=True) if side == is_cavity]
-        result = solid_from_faces([*own, *sheet.faces, *block_outside(sheet.rim, float(lid))], drop_flat=True)
-        if result.gap:  # that every face is valid was checked when it was made
-            raise KernelError(f"the {'cavity' if is_cavity else 'core'} does not close: {result.gap}")
-        halves.append(result.solid)
-    cavity, core = halves
-    check = check_halves(cavity, core, body, float(np.prod(corners[1] - corners[0])))
-    return Parted(
-        body,
-        state.kinds,
-        state.sides,
-        state.loops,
-        state.outer,
-        level,
-        sheet,
-        cavity,
-        core,
-        check,
-        trial.deep,
-        (),
-    )
+    """Return the halves with the first surface around the part that is proved, else with the one that misses least."""
+    shut_offs = close_holes(state.body, state.loops, state.outer)
+    proved: list[Parted] = []
+    unproved: list[Parted] = []
+    for outside in _until_made(closings(state.loops[state.outer], level, corners), proved):
+        sheet = joined(outside, shut_offs)
+        cavity, core = (_half(state, sheet, corners, cavity=side) for side in (True, False))
+        check = check_halves(cavity, core, state.body, float(np.prod(corners[1] - corners[0])))
+        if check.proved:
+            sheet = with_angles(sheet)
+        found = (state.body, state.kinds, state.sides, state.loops, state.outer, level, sheet, cavity, core, check)
+        (proved if check.proved else unproved).append(Parted(*found, trial.deep, ()))
+        if check.proved and _steepness(proved[-1]) >= SHUT_OFF_ANGLE.default:
+            break
+    if proved:
+        return max(proved, key=_steepness)
+    return min(unproved, key=lambda p: p.check.worst)
+
+
+def _until_made(surfaces: Iterator[Outside], proved: list[Parted]) -> Iterator[Outside]:
+    """Yield surfaces; once one is proved, only those that could lean more against the pull, and none that fails."""
+    while True:
+        try:
+            outside = next(surfaces)
+        except StopIteration:
+            return
+        except KernelError:
+            if proved:
+                return
+            raise
+        if proved and outside.loop.rung is Rung.LEVEL_AND_CURTAINS:
+            return
+        yield outside
+
+
+def _steepness(parted: Parted) -> float:
+    """Return the least angle [deg] of the surface around the part against the pull, in whole degrees: less is noise."""
+    angle = parted.sheet.outer.angle
+    return 0.0 if angle is None else float(np.floor(angle.deg + 0.5))
+
+
+def _half(state: _Assigned, sheet: Sheet, corners: tuple[np.ndarray, np.ndarray], *, cavity: bool) -> Any:
+    own = [f for f, side in zip(state.body.faces, state.sides.cavity, strict=True) if side == cavity]
+    lid = float(corners[1 if cavity else 0][2])
+    result = solid_from_faces([*own, *sheet.faces, *block_outside(sheet.rim, lid)], drop_flat=True)
+    if result.gap:  # that every face is valid was checked when it was made
+        raise KernelError(f"the {'cavity' if cavity else 'core'} does not close: {result.gap}")
+    return result.solid

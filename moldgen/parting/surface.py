@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import dataclass
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass, replace
 from enum import StrEnum
 from typing import Any
 
@@ -12,26 +12,37 @@ import numpy as np
 from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
 from moldgen.kernel.build import backward, plane_face, plane_through, wire_of
-from moldgen.kernel.curtain import hang_curtain
+from moldgen.kernel.curtain import Curtain, hang_curtain
+from moldgen.kernel.land import level_land
 from moldgen.kernel.measure import is_valid
 from moldgen.kernel.patches import filled_patch, flat_patches, host_patch, loop_points, signed_area
 from moldgen.kernel.runoff import run_off
+from moldgen.kernel.shut_off import LeastAngle, least_angle
 from moldgen.kernel.slope import sine_range
 from moldgen.kernel.topology import directed_points
 from moldgen.kernel.walls import Rim, rectangle_rim
+from moldgen.rules.practice import SEALING_LAND, SHUT_OFF_ANGLE, SMALL_SEALING_LAND
 
 Face = Any
 Loop = Sequence[Any]
 
 
-LEAST_SHUT_OFF = float(np.sin(np.radians(5.0)))
-"""Sine of 5 deg: steel that closes on steel at less gap or gall (trade pages ask for 3 to 7 deg; common practice)."""
+LEAST_SHUT_OFF = float(np.sin(np.radians(SHUT_OFF_ANGLE.default)))
+"""Sine of the shut-off angle: steel that closes on steel at less will gape or gall."""
+
+LAND_WIDTHS = (SEALING_LAND.low, SMALL_SEALING_LAND.low)
+"""mm: the land that steel seals on, and the least one, that of a small insert."""
+
+WALL_LEAN = 15.0
+"""deg between the pull and the wall from the land to the flat plane: three times the shut-off angle, since there is
+room for it (our choice)."""
 
 
 class Rung(StrEnum):
     """How a loop was closed, from what a toolmaker likes best to what always works."""
 
     PLANE = "plane"
+    LAND = "level land, inclined wall and flat plane beyond"
     RUN_OFF = "carried level out to the sides of the block"
     LEVEL_AND_CURTAINS = "level plane with vertical curtains"
     HOST = "the neighbouring wall carried across the hole"
@@ -45,6 +56,9 @@ class ClosedLoop:
     edges : number of edges; off_plane : edges with a vertical face beside them
     at : a point of the loop [mm]; span : extent of the loop in x, y, z [mm]
     refused : the better rungs that failed, with the reason
+    faces : of the parting surface that close it
+    angle : the least between them and the pull, once it has been measured
+    land_mm : width of the level land around it, 0 where there is none of constant width
     """
 
     rung: Rung
@@ -53,6 +67,26 @@ class ClosedLoop:
     at: tuple[float, float, float]
     span: tuple[float, float, float]
     refused: tuple[str, ...] = ()
+    faces: tuple[Face, ...] = ()
+    angle: LeastAngle | None = None
+    land_mm: float = 0.0
+
+
+@dataclass(frozen=True)
+class ShutOffs:
+    """What closes the holes of the part: faces shared by both halves, and the loops that they close."""
+
+    faces: tuple[Face, ...]
+    loops: tuple[ClosedLoop, ...]
+
+
+@dataclass(frozen=True)
+class Outside:
+    """What closes the outer loop: faces from the part to the sides of the block, and where they end there."""
+
+    faces: tuple[Face, ...]
+    rim: Rim
+    loop: ClosedLoop
 
 
 @dataclass(frozen=True)
@@ -79,51 +113,87 @@ def outer_loop(loops: Sequence[Loop]) -> tuple[int, tuple[int, ...]]:
     return outer, tuple(alike)
 
 
-def make_sheet(
-    body: Body, loops: Sequence[Loop], outer: int, level: float, corners: tuple[np.ndarray, np.ndarray]
-) -> Sheet:
-    """Return the parting surface and all shut-offs of a part whose parting line is `loops`.
+def close_holes(body: Body, loops: Sequence[Loop], outer: int) -> ShutOffs:
+    """Return the shut-offs of every loop but the outer one.
 
     Raises
     ------
     KernelError : a loop cannot be closed by any rung
     """
-    faces, rim, closed_outer = _close_outside(loops[outer], level, corners)
     inner = [i for i in range(len(loops)) if i != outer]
-    shut_offs: list[ClosedLoop] = []
+    faces: list[Face] = []
+    closed: list[ClosedLoop] = []
     flat: set[int] = set()
     for patch in flat_patches([loops[i] for i in inner]):
         faces.append(patch.face)
         flat |= {inner[k] for k in patch.loops}
-        shut_offs += [_closed(Rung.PLANE, loops[inner[k]], 0) for k in patch.loops]
+        closed += [_closed(Rung.PLANE, loops[inner[k]], 0, [patch.face]) for k in patch.loops]
     for number in inner:
         if number not in flat:
-            made, closed = _close_hole(body, loops[number])
-            faces += made
-            shut_offs.append(closed)
-    return Sheet(tuple(faces), rim, closed_outer, tuple(shut_offs))
+            hole = _close_hole(body, loops[number])
+            faces += hole.faces
+            closed.append(hole)
+    return ShutOffs(tuple(faces), tuple(closed))
 
 
-def _close_outside(
-    loop: Loop, level: float, corners: tuple[np.ndarray, np.ndarray]
-) -> tuple[list[Face], Rim, ClosedLoop]:
-    """Return the surface from the outer loop to the sides of the block: plane, run-off, plane with curtains."""
-    curtain = hang_curtain(loop, level)
-    refused: list[str] = []
-    if curtain.faces:
-        try:
-            ran = run_off(_counter_clockwise(loop), *corners)
-        except KernelError as error:
-            refused.append(f"{Rung.RUN_OFF}: {error.what}")
-        else:
-            return list(ran.faces), ran.rim, _closed(Rung.RUN_OFF, loop, ran.upright)
+def closings(loop: Loop, level: float, corners: tuple[np.ndarray, np.ndarray]) -> Iterator[Outside]:
+    """Yield the surfaces from the outer loop to the sides of the block, from what a toolmaker likes best to what always
+    works: plane, level land, run-off, plane with curtains. A surface is made only when it is asked for.
+
+    Raises
+    ------
+    KernelError : when no more can be made
+    """
     rim = rectangle_rim(corners[0], corners[1], level)
-    around = plane_face(plane_through((0, 0, level), (0, 0, 1)), wire_of(rim.edges), [wire_of(curtain.foot).Reversed()])
+    curtain = hang_curtain(loop, level)
+    if not curtain.faces:
+        yield _with_curtain(loop, level, rim, curtain, ())
+        return
+    forward_loop = _counter_clockwise(loop)
+    refused: list[str] = []
+    for width in LAND_WIDTHS:
+        try:
+            land = level_land(forward_loop, level, corners, width, WALL_LEAN)
+        except KernelError as error:
+            refused.append(f"{Rung.LAND}: {error.what}")
+            continue
+        closed = _closed(Rung.LAND, loop, land.upright, land.faces, refused)
+        yield Outside(land.faces, land.rim, replace(closed, land_mm=width))
+        refused.append(
+            f"{Rung.LAND}: with it the halves do not fit, or close at less than {SHUT_OFF_ANGLE.default:g} deg"
+        )
+        break
+    try:
+        ran = run_off(forward_loop, *corners)
+    except KernelError as error:
+        refused.append(f"{Rung.RUN_OFF}: {error.what}")
+    else:
+        yield Outside(ran.faces, ran.rim, _closed(Rung.RUN_OFF, loop, ran.upright, ran.faces, refused))
+        refused.append(f"{Rung.RUN_OFF}: with it the halves do not fit")
+    yield _with_curtain(loop, level, rim, curtain, refused)
+
+
+def _with_curtain(loop: Loop, level: float, rim: Rim, curtain: Curtain, refused: Sequence[str]) -> Outside:
+    plane = plane_through((0, 0, level), (0, 0, 1))
+    around = plane_face(plane, wire_of(rim.edges), [wire_of(curtain.foot).Reversed()])
     bad = [f for f in (around, *curtain.faces) if not is_valid(f)]
     if bad:
-        raise KernelError(f"{len(bad)} faces of the parting surface at height {level:.3f} are invalid")
+        why = f"{len(bad)} faces of the parting surface at height {level:.3f} are invalid"
+        raise KernelError("; ".join([*refused, why]))
+    faces = (around, *curtain.faces)
     rung = Rung.LEVEL_AND_CURTAINS if curtain.faces else Rung.PLANE
-    return [around, *curtain.faces], rim, _closed(rung, loop, curtain.off_plane, refused)
+    return Outside(faces, rim, _closed(rung, loop, curtain.off_plane, faces, refused))
+
+
+def joined(outside: Outside, shut_offs: ShutOffs) -> Sheet:
+    """Return all faces between cavity and core."""
+    return Sheet((*outside.faces, *shut_offs.faces), outside.rim, outside.loop, shut_offs.loops)
+
+
+def with_angles(sheet: Sheet) -> Sheet:
+    """Return the sheet with the least angle to the pull of every loop; its faces must have been meshed."""
+    measured = [replace(c, angle=least_angle(c.faces)) for c in (sheet.outer, *sheet.shut_offs)]
+    return replace(sheet, outer=measured[0], shut_offs=tuple(measured[1:]))
 
 
 def _counter_clockwise(loop: Loop) -> list[Any]:
@@ -132,14 +202,14 @@ def _counter_clockwise(loop: Loop) -> list[Any]:
     return [backward(e) for e in reversed(loop)]
 
 
-def _close_hole(body: Body, loop: Loop) -> tuple[list[Face], ClosedLoop]:
+def _close_hole(body: Body, loop: Loop) -> ClosedLoop:
     """Close a hole whose rim is not flat: the neighbour's surface where it leans enough for steel on steel, level with
     curtains, the neighbour's surface as steep as it is, a filling.
     """
     refused = []
     host = host_patch(body, loop)
     if host is not None and _leans(host):
-        return [host], _closed(Rung.HOST, loop, 0)
+        return _closed(Rung.HOST, loop, 0, [host])
     for level in _levels_of(loop):
         try:
             curtain = hang_curtain(loop, level)
@@ -148,12 +218,12 @@ def _close_hole(body: Body, loop: Loop) -> tuple[list[Face], ClosedLoop]:
             refused.append(f"level {level:.3f}: {error.what}")
             continue
         if is_valid(lid) and all(is_valid(f) for f in curtain.faces):
-            return [lid, *curtain.faces], _closed(Rung.LEVEL_AND_CURTAINS, loop, curtain.off_plane, refused)
+            return _closed(Rung.LEVEL_AND_CURTAINS, loop, curtain.off_plane, [lid, *curtain.faces], refused)
         refused.append(f"level {level:.3f}: a face is invalid")
     if host is not None:
-        return [host], _closed(Rung.HOST, loop, 0, refused)
+        return _closed(Rung.HOST, loop, 0, [host], refused)
     refused.append("no neighbour holds the whole rim")
-    return [filled_patch(loop)], _closed(Rung.FILLED, loop, 0, refused)
+    return _closed(Rung.FILLED, loop, 0, [filled_patch(loop)], refused)
 
 
 def _leans(patch: Face) -> bool:
@@ -179,8 +249,8 @@ def _levels_of(loop: Loop) -> list[float]:
     return [*(exact[z] for z in level), float(heights.min()), float(heights.max())]
 
 
-def _closed(rung: Rung, loop: Loop, off_plane: int, refused: Sequence[str] = ()) -> ClosedLoop:
+def _closed(rung: Rung, loop: Loop, off_plane: int, faces: Sequence[Face], refused: Sequence[str] = ()) -> ClosedLoop:
     points = loop_points(loop, 4)
-    span = np.ptp(points, axis=0)
-    at = tuple(float(v) for v in points[0])
-    return ClosedLoop(rung, len(loop), off_plane, at, tuple(float(v) for v in span), tuple(refused))  # type: ignore[arg-type]
+    x, y, z = (float(v) for v in points[0])
+    wide, deep, high = (float(v) for v in np.ptp(points, axis=0))
+    return ClosedLoop(rung, len(loop), off_plane, (x, y, z), (wide, deep, high), tuple(refused), tuple(faces))

@@ -11,9 +11,11 @@ from moldgen.kernel.patches import loop_points
 from moldgen.model.part import MoldFrame
 from moldgen.parting.halves import Parted
 from moldgen.parting.surface import ClosedLoop, Rung
+from moldgen.rules.practice import SHUT_OFF_ANGLE
 
 _WHY = {
     Rung.PLANE: "the parting line is flat and level there",
+    Rung.LAND: "the parting line rises and falls; steel seals on a level band around the part and is flat beyond",
     Rung.RUN_OFF: "the parting line rises and falls, but never doubles back along a side of the block",
     Rung.LEVEL_AND_CURTAINS: "no surface without vertical steps holds this line",
     Rung.HOST: "the whole rim lies in the boundary of one wall",
@@ -43,14 +45,16 @@ def told(parted: Parted, frame: MoldFrame) -> Notes:
     """Return the decisions and findings about the parting, places in part coordinates."""
     line = _decision("parting line", f"{len(parted.loops)} loops, level {parted.level:.3f} mm (mold)", parted)
     outer = parted.sheet.outer
-    surface = Decision("parting surface", _shape(outer), _WHY[outer.rung], outer.rung.value, outer.refused)
+    surface = Decision("parting surface", _shape(outer), _why(outer), outer.rung.value, outer.refused)
     shut = Counter(s.rung for s in parted.sheet.shut_offs)
     shut_offs = tuple(
         Decision("shut-off", f"{count} of {len(parted.sheet.shut_offs)} holes", _WHY[rung], rung.value)
         for rung, count in sorted(shut.items(), key=lambda item: list(Rung).index(item[0]))
     )
     steep = [("parting surface", outer), *(("shut-off", s) for s in parted.sheet.shut_offs)]
-    findings = tuple(_upright(name, loop, frame) for name, loop in steep if loop.off_plane)
+    upright = tuple(_upright(name, loop, frame) for name, loop in steep if loop.off_plane)
+    leaning = tuple(f for name, loop in steep if not loop.off_plane for f in _steep(name, loop, frame))
+    findings = (*upright, *leaning, *_no_land(outer, frame))
     return Notes((*_moved(parted, frame), *findings, *_torn(parted, frame)), (line, surface, *shut_offs))
 
 
@@ -63,7 +67,61 @@ def _decision(topic: str, choice: str, parted: Parted) -> Decision:
 def _shape(loop: ClosedLoop) -> str:
     if loop.rung is Rung.PLANE:
         return "flat"
-    return "stepped or curved" if loop.rung is Rung.RUN_OFF else "flat with vertical steps at the part"
+    if loop.rung is Rung.LAND:
+        return f"level land {loop.land_mm:g} mm wide, then a wall to the flat plane{_leaning(loop)}"
+    if loop.rung is Rung.RUN_OFF:
+        return f"stepped or curved{_leaning(loop)}"
+    return "flat with vertical steps at the part"
+
+
+def _leaning(loop: ClosedLoop) -> str:
+    return "" if loop.angle is None else f", nowhere less than {loop.angle.deg:.1f} deg to the pull"
+
+
+def _why(loop: ClosedLoop) -> str:
+    if loop.rung is Rung.RUN_OFF and loop.refused:
+        return f"{_WHY[loop.rung]}; a level land of constant width is not possible (see refused)"
+    return _WHY[loop.rung]
+
+
+def _steep(name: str, loop: ClosedLoop, frame: MoldFrame) -> tuple[Finding, ...]:
+    """Tell of steel that closes on steel at less than the shut-off angle."""
+    if loop.angle is None or loop.angle.deg >= SHUT_OFF_ANGLE.default:
+        return ()
+    at = frame.to_part(loop.angle.at)
+    return (
+        Finding(
+            code="parting.steep",
+            severity=Severity.WARNING if loop.angle.deg < SHUT_OFF_ANGLE.low else Severity.CAUTION,
+            message=f"the {name} stands {loop.angle.deg:.1f} deg from the pull at its steepest place: steel that wipes "
+            "on steel so steeply will gape or gall",
+            where=f"{name} at {at[0]:.2f}, {at[1]:.2f}, {at[2]:.2f}",
+            at=at,
+            value=loop.angle.deg,
+            limit=SHUT_OFF_ANGLE.default,
+            unit="deg",
+            remedy=f"let the part's edge or wall there lean {SHUT_OFF_ANGLE.default:g} deg or more "
+            f"({SHUT_OFF_ANGLE.source})",
+        ),
+    )
+
+
+def _no_land(loop: ClosedLoop, frame: MoldFrame) -> tuple[Finding, ...]:
+    """Tell why the line has no level land of constant width around it, although it rises and falls."""
+    if loop.rung in (Rung.PLANE, Rung.LAND):
+        return ()
+    why = [r.removeprefix(f"{Rung.LAND}: ") for r in loop.refused if r.startswith(Rung.LAND)]
+    at = frame.to_part(loop.at)
+    return (
+        Finding(
+            code="parting.no_land",
+            severity=Severity.CAUTION,
+            message=f"no level land of constant width around the part: {why[-1] if why else 'it was not tried'}",
+            where=f"parting line at {at[0]:.2f}, {at[1]:.2f}, {at[2]:.2f}",
+            at=at,
+            remedy="widen inside corners and slots of the rim, or give larger blocks (blocks.wall)",
+        ),
+    )
 
 
 def _moved(parted: Parted, frame: MoldFrame) -> tuple[Finding, ...]:

@@ -54,10 +54,10 @@ PARTS = {
     "flat box": (solids.box((0, 0, 0), (40, 30, 10)), Rung.PLANE, []),
     "drafted disc": (solids.cone(20, 17, 12), Rung.PLANE, []),
     "cup": (hood(), Rung.PLANE, []),
-    "stepped rim": (hood(ramp(0, 6, 10)), Rung.RUN_OFF, []),
-    "rim with an upright step": (hood(ramp(-20, 6, 0.0)), Rung.LEVEL_AND_CURTAINS, []),
-    "free rim": (hood(WAVE), Rung.RUN_OFF, []),
-    "arch": (ARCH, Rung.RUN_OFF, []),
+    "stepped rim": (hood(ramp(0, 6, 10)), Rung.LAND, []),
+    "rim with an upright step": (hood(ramp(-20, 6, 0.0)), Rung.LAND, []),
+    "free rim": (hood(WAVE), Rung.LAND, []),
+    "arch": (ARCH, Rung.LAND, []),
     "cylinder on its side": (solids.cylinder(8, 40, along=(1, 0, 0)), Rung.PLANE, []),
     "ball": (solids.sphere(10), Rung.PLANE, []),
     "ring": (solids.torus(20, 6), Rung.PLANE, [Rung.PLANE]),
@@ -69,7 +69,7 @@ PARTS = {
     ),
     "holes in an arch": (
         solids.cut(ARCH, solids.cylinder(5, 40, at=(15, 0, 0)), solids.box((45, -3, 0), (52, 3, 40))),
-        Rung.RUN_OFF,
+        Rung.LAND,
         [Rung.LEVEL_AND_CURTAINS] * 2,
     ),
 }

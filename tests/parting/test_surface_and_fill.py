@@ -15,12 +15,16 @@ from moldgen.kernel.measure import area, is_valid, volume
 from moldgen.kernel.topology import directed_points
 from moldgen.parting import fill
 from moldgen.parting.fill import fill_trapped
-from moldgen.parting.surface import Rung, make_sheet, outer_loop
+from moldgen.parting.surface import Rung, close_holes, closings, joined, outer_loop
 from moldgen.release.imprint import imprint_silhouettes
 from moldgen.release.kinds import face_kinds
 from moldgen.release.trapped import trapped_volume
 
 BLOCK = solids.box((0, 0, 0), (40, 30, 20))
+
+
+def make_sheet(body, loops, outer, level, corners):
+    return joined(next(closings(loops[outer], level, corners)), close_holes(body, loops, outer))
 
 
 def round_faces(body, most_height):
