@@ -23,8 +23,11 @@ if TYPE_CHECKING:
 
 Hear = Callable[[Event], None]
 
-WIDE = 118
-"""Columns of a terminal from which the summary shows the rungs too (our choice)."""
+MORE_COLUMNS = {"gravest finding, or why not": 100, "rungs": 160}
+"""Columns of the summary that need room, and the width of the terminal that gives it (our choice)."""
+
+GAP = 2
+"""Columns that the drawn table takes besides each of its texts, at most."""
 
 LONG = 240
 """Characters of a reason on the terminal; the CSV has all of them (our choice)."""
@@ -136,22 +139,28 @@ def _finished(event: PartFinished) -> str:
 
 
 def _draw(rows: Sequence[tuple[Row, float | None]]) -> None:
+    """Draw one line a part, as much of its reason as fits; below, the whole reason of each that is not all well."""
     from rich import box  # noqa: PLC0415
     from rich.console import Console  # noqa: PLC0415
     from rich.table import Table  # noqa: PLC0415
     from rich.text import Text  # noqa: PLC0415
 
     console = Console()
-    wide = console.width >= WIDE
+    more = [title for title, least in MORE_COLUMNS.items() if console.width >= least]
     table = Table(box=box.SIMPLE_HEAD, padding=(0, 1, 0, 0), pad_edge=False)
+    lines = [["" if cell is None else str(cell) for cell in cells(row, seconds)] for row, seconds in rows]
+    taken = sum(max(map(len, column)) + GAP for column in zip(COLUMNS, *lines, strict=True))
     for title in COLUMNS:
         table.add_column(title, justify="left" if title in ("part", "result") else "right", overflow="fold")
-    for title in ("reason, or gravest finding", *(("rungs",) if wide else ())):
-        table.add_column(title, ratio=1 if title == "rungs" else 2, overflow="fold")
-    for row, seconds in rows:
-        texts = ["" if cell is None else str(cell) for cell in cells(row, seconds)]
-        reason = textwrap.shorten(row.reason, LONG, placeholder=" ...")
-        more = [row.rungs] if wide else []
+    for title in more:
+        room = (console.width - taken) // len(more) - GAP
+        table.add_column(title, width=max(room, len(title)), no_wrap=True, overflow="ellipsis")
+    for (row, _), line in zip(rows, lines, strict=True):
+        texts = [*line, *[row.reason, row.rungs][: len(more)]]
         style = "" if row.exit_code == ExitCode.OK else "bold" if row.exit_code >= ExitCode.KERNEL else "yellow"
-        table.add_row(*(Text(t, style if i == 1 else "") for i, t in enumerate([*texts, reason, *more])))
+        table.add_row(*(Text(text, style if i == 1 else "") for i, text in enumerate(texts)))
     console.print(table)
+    for row, _ in rows:
+        if row.exit_code != ExitCode.OK:
+            said = textwrap.shorten(f"{row.name}: {row.result}: {row.reason}", LONG, placeholder=" ...")
+            click.echo(textwrap.fill(said, console.width - 1, initial_indent="  ", subsequent_indent=" " * 6))

@@ -114,7 +114,7 @@ COLUMNS = ("part", "result", "exit", "comp.", "proofs", "sides", "s")
 def summary_table(rows: Sequence[tuple[Row, float | None]]) -> Table:
     """Return the rows with their seconds as a table of plain lines."""
     lines = tuple((*cells(row, s), textwrap.shorten(row.reason, SHORT_REASON, placeholder=" ...")) for row, s in rows)
-    return Table("summary", (*COLUMNS, "reason, or gravest finding"), lines)
+    return Table("summary", (*COLUMNS, "gravest finding, or why not"), lines)
 
 
 def summary_headline(rows: Sequence[tuple[Row, float | None]]) -> str:

@@ -311,7 +311,7 @@ def test_json_is_one_object_a_part(tmp_path: Path) -> None:
     assert [json.loads(line)["seconds"] for line in again] == [None, None]
 
 
-@pytest.mark.parametrize("columns", [80, 120])
+@pytest.mark.parametrize("columns", [80, 120, 180])
 def test_on_a_terminal_no_line_is_wider_than_it(columns: int, tmp_path: Path) -> None:
     command = moldgen_command("batch", *specs(tmp_path, "well", "good", "part_error"), job="by_name")
     ours, its = pty.openpty()
@@ -333,7 +333,9 @@ def test_on_a_terminal_no_line_is_wider_than_it(columns: int, tmp_path: Path) ->
     assert max(map(len, shown.splitlines())) <= columns
     for word in ("well", "proved", "part_error", "refused", "two solids", "written: out/batch/summary.csv"):
         assert word in shown
-    assert ("parting surface: plane" in " ".join(shown.split())) == (columns == 120)
+    assert re.search(r"^ ?well +proved +0 +10 +2/2 +2 +\d+\.\d", shown, re.MULTILINE)
+    assert ("gravest finding" in shown) == (columns >= 120)
+    assert ("parting surface: plane" in shown) == (columns == 180)
 
 
 def test_the_parent_loads_no_kernel(tmp_path: Path) -> None:
