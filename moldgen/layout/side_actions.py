@@ -29,6 +29,7 @@ from moldgen.rules.side_practice import (
     PIN_WALL,
     STEEL_OVER_SLIDE,
     STEEL_UNDER_SLIDE,
+    UNDER_TIP,
 )
 from moldgen.rules.slide import slide_travel_practice
 
@@ -44,7 +45,7 @@ def room_needed(driven: Sequence[Driven], task: SideTask) -> BlockLayout | None:
     corners = []
     for body in wanted_bodies(_level_slides(driven), task):
         frame = across((float(body.axis[0]), float(body.axis[1]), float(body.axis[2])))
-        low = body.window.low - STEEL_UNDER_SLIDE.default
+        low = body.window.low - _under(body)
         high = body.window.high + _over(body)
         for u in (body.left, body.right):
             for s, z in ((body.start, low), (body.start + body.length, high)):
@@ -109,6 +110,15 @@ def _over(body: WantedBody) -> float:
     return max(STEEL_OVER_SLIDE.default, held * math.cos(math.radians(pin.angle)))
 
 
+def _under(body: WantedBody) -> float:
+    """Return the core steel under a slide: the tip of its angled pin stands in it, too."""
+    if body.pin is None:
+        return STEEL_UNDER_SLIDE.default
+    pin, slope = body.pin, math.radians(body.pin.angle)
+    tip = pin.reach * math.cos(slope) + pin.diameter / 2 * math.sin(slope) - (body.window.high - body.window.low)
+    return max(STEEL_UNDER_SLIDE.default, tip + UNDER_TIP.default + PIN_WALL.default)
+
+
 def _head_depth(pin: PinChoice) -> float:
     """Return how far down the axis the lower face of the head lies, so that the head is whole at its thinner side."""
     return pin.blank.head_height + pin.blank.head_diameter / 2 * math.tan(math.radians(pin.angle))
@@ -142,11 +152,11 @@ def _slide(wanted: WantedBody, serves: tuple[str, ...], task: SideTask, block: B
 
 
 def _refuse_no_room(name: str, body: SlideBody, wanted: WantedBody, block: BlockLayout) -> None:
-    over, under = _over(wanted), STEEL_UNDER_SLIDE.default
+    over, under = _over(wanted), _under(wanted)
     short = (
         ("along its travel", 2 * PIN_WALL.default + wanted.foot + wanted.travel, body.length, "length or width"),
         ("over it", over, block.high[2] - body.top, "cavity_height"),
-        ("under it", under / 2, body.bottom - block.low[2], "core_height"),
+        ("under it", under, body.bottom - block.low[2], "core_height"),
     )
     for place, needed, found, key in short:
         if found < needed - NO_ROOM:

@@ -29,7 +29,7 @@ def refuse_meeting(slides: Sequence[SlideLayout]) -> None:
         if gap < needed:
             meet = f"their bodies overlap by {-gap:.1f} mm" if gap < 0.0 else f"only {gap:.1f} mm of steel lie between"
             raise PartError(
-                f"{one.name} and {other.name} meet: {meet}, at least {needed:g} mm are needed",
+                f"they meet: {meet}, at least {needed:g} mm are needed",
                 where=f"{one.name} and {other.name}",
                 remedy="move one of the undercuts along the part, let one direction serve both (side_actions in the "
                 "spec), or form one of them with a lifter",

@@ -13,7 +13,7 @@ from moldgen.catalog import Resin, steel
 from moldgen.kernel.body import Body
 from moldgen.kernel.side_window import Window, extent_in
 from moldgen.layout.side_drive import Driven
-from moldgen.layout.slide_pin import PinChoice, choose_pin
+from moldgen.layout.slide_pin import PinChoice, choose_pin, too_far_for_pin
 from moldgen.model.side_action import Front, across
 from moldgen.model.slide import Drive
 from moldgen.rules.cavity_wall import cavity_side_wall_thickness, parting_gap_limit
@@ -117,13 +117,14 @@ def _one_body(one: WantedBody, other: WantedBody) -> bool:
 def _wanted(group: Sequence[tuple[int, Driven]], task: SideTask) -> WantedBody:
     fronts = [d.front for _, d in group]
     frame = across(fronts[0].axis)
-    drive = Drive.CYLINDER if any(d.drive is Drive.CYLINDER for _, d in group) else Drive.ANGLED_PIN
     points = np.vstack([p for f in fronts for p in f.outline])
     window = _window(points, task.level, 0.0)
     start = _start(fronts, window, frame, task)
     travel = max(slide_travel_practice(max(f.travel, STEP)) for f in fronts)
     if any(d.caught for _, d in group):
         travel = max(travel, start - min(f.near for f in fronts) + CLEAR_OF_STEEL)
+    by_cylinder = any(d.drive is Drive.CYLINDER for _, d in group) or too_far_for_pin(travel)
+    drive = Drive.CYLINDER if by_cylinder else Drive.ANGLED_PIN
     area = sum(outline_area(f) for f in fronts)
     found = WantedBody(
         tuple(n for n, _ in group), frame[2], drive, window, start, travel, area, None, 0.0, 0.0, 0.0

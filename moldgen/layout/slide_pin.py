@@ -89,6 +89,15 @@ def choose_angle(travel: float) -> float:
     return next(fits, ANGLES[-1])
 
 
+def too_far_for_pin(travel: float) -> bool:
+    """Return whether even the steepest angled pin would want the mold to open too far.
+
+    >>> too_far_for_pin(37.0), too_far_for_pin(38.0)
+    (False, True)
+    """
+    return angled_pin_opening_pye(travel, ANGLES[-1]) > PIN_OPENING.high
+
+
 def choose_pin(
     fronts: Sequence[Front], travel: float, size: tuple[float, float, float], resin: Resin, part: Body
 ) -> PinChoice:

@@ -23,6 +23,7 @@ LOCKING_HEIGHT: Final = Practice(
 LOCKING_FOOT: Final = Practice("least steel behind a locking face, at its foot", 12.0, 10.0, 30.0, "mm")
 PIN_CLEARANCE: Final = Practice("clearance of an angled pin in the slide, per side", 0.5, 0.5, 1.0, "mm")
 PIN_TIP: Final = Practice("lead at the tip of an angled pin", 2.0, 1.5, 5.0, "mm")
+UNDER_TIP: Final = Practice("clearance under the tip of an angled pin", 3.0, 2.0, 10.0, "mm", "our choice")
 PIN_WALL: Final = Practice("steel round the bore of an angled pin", 5.0, 4.0, 10.0, "mm")
 PIN_HELD: Final = Practice("length of an angled pin in the cavity half by its diameter", 1.5, 1.5, 2.5, "1")
 PIN_STRESS: Final = Practice(

@@ -7,20 +7,29 @@ through its walls. Halves are those of the box with its windows filled, less the
 from __future__ import annotations
 
 from collections.abc import Sequence
-from functools import cache
+from dataclasses import dataclass
+from functools import cache, cached_property
 
 import numpy as np
 
-from helpers.solids import box, cut, fuse
+from helpers.solids import box, common, cut, extruded, fuse
 from moldgen.catalog import resin
+from moldgen.finding import Notes
 from moldgen.kernel.body import Body
 from moldgen.layout.side_actions import lay_out_sides, room_needed
 from moldgen.layout.side_drive import Driven, drive_fronts
 from moldgen.layout.slide_body import SideTask
 from moldgen.model.halves import Halves, SideSteel
 from moldgen.model.layout import BlockLayout
+from moldgen.model.motion import Step
 from moldgen.model.side_action import Front, SideKind, across
 from moldgen.model.slide import SideLayout
+from moldgen.model.tool import Motion, Role
+from moldgen.proof.bodies import ProofBody, placed_bodies
+from moldgen.proof.opening import EJECTORS_MOVE
+from moldgen.proof.run import Claims, prove_tool
+from moldgen.steel.side_actions import SideCut, cut_side_actions
+from moldgen.steel.side_motion import opening_steps
 
 LENGTH, WIDTH, TALL, WALL = 60.0, 40.0, 30.0, 2.0
 X, Y = (1.0, 0.0, 0.0), (0.0, 1.0, 0.0)
@@ -53,13 +62,11 @@ def window_front(opening: Opening) -> Front:
 
 
 def prism(front: Front, far: float, near: float | None = None):
-    """The solid of a front with a rectangular outline, up to a coordinate along its axis."""
-    frame = across(front.axis)
-    points = np.vstack(list(front.outline))
-    low, high = points.min(axis=0), points.max(axis=0)
-    start = front.near if near is None else near
-    corners = np.array([(*low, start), (*high, far)]) @ frame
-    return box(corners.min(axis=0), corners.max(axis=0))
+    """The solid of a front with one polygon, up to a coordinate along its axis."""
+    frame, start = across(front.axis), front.near if near is None else near
+    (polygon,) = front.outline
+    points = np.column_stack([polygon, np.full(len(polygon), start)]) @ frame
+    return extruded([tuple(p) for p in points.tolist()], tuple((frame[2] * (far - start)).tolist()))
 
 
 @cache
@@ -90,34 +97,85 @@ def block_of(fronts: Sequence[Driven], one: SideTask, wall: float = 30.0) -> Blo
     return BlockLayout(tuple(float(v) for v in low), tuple(float(v) for v in high))
 
 
-def side_names(fronts: Sequence[Driven]) -> list[str]:
-    """slide 1, slide 2, ..."""
-    return [f"slide {n}" for n in range(1, len(fronts) + 1)]
+@dataclass(frozen=True)
+class SideMold:
+    """Everything from fronts to halves of one box; `driven` may be replaced before the layout is asked for."""
+
+    openings: tuple[Opening, ...]
+    driven: tuple[Driven, ...]
+
+    @cached_property
+    def names(self) -> list[str]:
+        """slide 1, slide 2, ..."""
+        return [f"slide {n}" for n in range(1, len(self.driven) + 1)]
+
+    @cached_property
+    def block(self) -> BlockLayout:
+        """The closed block."""
+        return block_of(self.driven, task(self.openings))
+
+    @cached_property
+    def planned(self) -> tuple[SideLayout, Notes]:
+        """The layout of the slides."""
+        return lay_out_sides(self.driven, self.names, task(self.openings), self.block, 35.0)
+
+    @property
+    def layout(self) -> SideLayout:
+        """The layout of the slides, without its notes."""
+        return self.planned[0]
+
+    @cached_property
+    def halves(self) -> Halves:
+        """Halves of the filled box without the fronts, and the fronts' steel up to the side of the block."""
+        low, high = np.asarray(self.block.low), np.asarray(self.block.high)
+        outer = box((-LENGTH / 2, -WIDTH / 2, 0.0), (LENGTH / 2, WIDTH / 2, TALL))
+        plug = box((-LENGTH / 2 + WALL, -WIDTH / 2 + WALL, -1.0), (LENGTH / 2 - WALL, WIDTH / 2 - WALL, TALL - WALL))
+        cavity = cut(box((low[0], low[1], 0.0), high), outer)
+        core = fuse(box(low, (high[0], high[1], 0.0)), plug)
+        steels = []
+        for name, one in zip(self.names, self.driven, strict=True):
+            frame = across(one.front.axis)
+            far = float(np.abs(frame[2]) @ np.maximum(np.abs(low), np.abs(high)))
+            tool = prism(one.front, far)
+            tool = common(tool, box(low, high))
+            cavity = cut(cavity, tool)
+            steels.append(SideSteel(name, one.front, cut(tool, part(self.openings).solid)))
+        return Halves(cavity, core, Body(shell()), np.zeros(0, bool), 0.0, low, high, (), tuple(steels),
+                      part(self.openings).solid)  # fmt: skip
+
+    @cached_property
+    def made(self) -> SideCut:
+        """The side actions cut."""
+        return cut_side_actions(self.halves, self.layout, "1.2311")
+
+    @cached_property
+    def bodies(self) -> list[ProofBody]:
+        """Everything as the proofs see it."""
+        here = ((0.0, 0.0, 0.0),)
+        own = [
+            ("part", Role.PART, Motion.PART, self.halves.real_part, here),
+            ("cavity", Role.CAVITY, Motion.CAVITY_HALF, self.made.halves.cavity, here),
+            ("core", Role.CORE, Motion.CORE_HALF, self.made.halves.core, here),
+        ]
+        return placed_bodies([*own, *((c.name, c.role, c.motion, c.solid, c.positions) for c in self.made.components)])
 
 
 @cache
-def laid_out(openings: tuple[Opening, ...] = ONE) -> tuple[SideLayout, BlockLayout]:
-    """Slides of the box, and its block."""
-    fronts, one = driven(openings), task(openings)
-    block = block_of(fronts, one)
-    return lay_out_sides(fronts, side_names(fronts), one, block, 35.0)[0], block
+def side_mold(openings: tuple[Opening, ...] = ONE) -> SideMold:
+    """The mold of a box with windows, drives as moldgen finds them."""
+    return SideMold(openings, driven(openings))
 
 
-@cache
-def halves(openings: tuple[Opening, ...] = ONE) -> Halves:
-    """Halves of the filled box without the fronts, and the fronts' steel up to the side of the block."""
-    fronts, (_, block) = driven(openings), laid_out(openings)
-    low, high = np.asarray(block.low), np.asarray(block.high)
-    outer = box((-LENGTH / 2, -WIDTH / 2, 0.0), (LENGTH / 2, WIDTH / 2, TALL))
-    plug = box((-LENGTH / 2 + WALL, -WIDTH / 2 + WALL, -1.0), (LENGTH / 2 - WALL, WIDTH / 2 - WALL, TALL - WALL))
-    cavity = cut(box((low[0], low[1], 0.0), high), outer)
-    core = fuse(box(low, (high[0], high[1], 0.0)), plug)
-    steels = []
-    for name, one in zip(side_names(fronts), fronts, strict=True):
-        frame = across(one.front.axis)
-        far = float(max(frame[2] @ low, frame[2] @ high))
-        tool = prism(one.front, far)
-        cavity = cut(cavity, tool)
-        steels.append(SideSteel(name, one.front, cut(tool, part(openings).solid)))
-    return Halves(cavity, core, Body(shell()), np.zeros(0, bool), 0.0, low, high, (), tuple(steels),
-                  part(openings).solid)  # fmt: skip
+def claims(mold: SideMold, steps: Sequence[Step] | None = None) -> Claims:
+    """What a mold claims; steps other than its own plant a fault."""
+    block = float(np.prod(mold.halves.high - mold.halves.low))
+    bored = sum(r.volume_mm3 for r in mold.made.removed)
+    own = opening_steps(mold.layout, 80.0, 35.0, 40.0)
+    return Claims(block, bored, 35.0, own if steps is None else tuple(steps))
+
+
+def failed(mold: SideMold, steps: Sequence[Step] | None = None) -> set[str]:
+    """Names of the proofs that do not hold; a mold without ejectors has nothing to ask of them."""
+    proofs = prove_tool(mold.bodies, claims(mold, steps))
+    assert len(proofs) == 7
+    return {p.name for p in proofs if not p.passed and p.name != EJECTORS_MOVE}

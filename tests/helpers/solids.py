@@ -8,7 +8,7 @@ from itertools import pairwise
 from typing import Any
 
 from OCP.BRep import BRep_Builder
-from OCP.BRepAlgoAPI import BRepAlgoAPI_Cut, BRepAlgoAPI_Fuse
+from OCP.BRepAlgoAPI import BRepAlgoAPI_Common, BRepAlgoAPI_Cut, BRepAlgoAPI_Fuse
 from OCP.BRepBuilderAPI import (
     BRepBuilderAPI_MakeEdge,
     BRepBuilderAPI_MakeFace,
@@ -95,6 +95,11 @@ def fuse(solid: Any, *others: Any) -> Any:
     for other in others:
         solid = only_solid(BRepAlgoAPI_Fuse(solid, other).Shape())
     return solid
+
+
+def common(one: Any, other: Any) -> Any:
+    """What two solids share."""
+    return only_solid(BRepAlgoAPI_Common(one, other).Shape())
 
 
 def turned(solid: Any, degrees: float, about: Vector = Z) -> Any:
