@@ -3,7 +3,8 @@
 Of a pair only the motion of one body seen from the other counts. The space that a body passes through on a straight
 stretch is itself and the prisms over the faces that look along the way: it is swept as a whole, from the place where
 the stretch begins. So nothing can be jumped over between samples, however thin, and the steps together leave no gap:
-where one ends the next begins, and the first begins with the closed tool, which has a proof of its own.
+where one ends the next begins, and the first begins with the closed tool, which has a proof of its own. Left out are
+only faces whose shadow along the way is narrower than `SIGN_NOISE`: walls along the way, to the accuracy of meshes.
 """
 
 from __future__ import annotations

@@ -133,15 +133,34 @@ def test_a_missing_component_file_is_found_out(prove) -> None:
         (lambda r: r["claims"].update(block_mm3=r["claims"]["block_mm3"] * (1 + 1e-5)), PROOFS[1]),
         (lambda r: r["claims"].update(bored_mm3=r["claims"]["bored_mm3"] + 10.0), PROOFS[1]),
         (lambda r: r["claims"].update(stroke_mm=1000.0), PROOFS[5]),
+        (lambda r: r["claims"].update(stroke_mm=r["claims"]["stroke_mm"] - 0.1), PROOFS[5]),
+        (lambda r: r["claims"]["steps"].pop(1), PROOFS[5]),
+        (lambda r: r["claims"]["steps"][0]["moves"][0].__setitem__(1, [0.0, 60.0, 200.0]), PROOFS[3]),
         (lambda r: r["components"][1].update(volume_mm3=r["components"][1]["volume_mm3"] * 1.01), ""),
     ],
-    ids=["block", "bores", "stroke", "volume"],
+    ids=["block", "bores", "stroke", "shorter stroke", "no ejection", "opens askew", "volume"],
 )
 def test_an_edited_claim_is_found_out(prove, change: Callable[[dict[str, Any]], object], proof: str) -> None:
     code, result = prove(edit(change))
     assert code == 1
     assert failed(result) == ([proof] if proof else [])
     assert result["findings"]
+
+
+@pytest.mark.parametrize(
+    "change",
+    [
+        lambda c: c.update(steps=[]),
+        lambda c: c.pop("steps"),
+        lambda c: c["steps"][0].update(moves=[["cavity half", [0.0, 0.0]]]),
+        lambda c: c["steps"][0].update(moves=[["cavity half", [0.0, 0.0, float("nan")]]]),
+    ],
+    ids=["none", "missing", "flat", "nan"],
+)
+def test_steps_that_are_none_are_refused(prove, change: Callable[[dict[str, Any]], object]) -> None:
+    code, result = prove(edit(lambda r: change(r["claims"])))
+    assert code == 2
+    assert "is damaged" in result["errors"][0]["what"]
 
 
 def test_a_manifest_that_describes_no_tool_is_refused(prove) -> None:
