@@ -88,7 +88,7 @@ def _built_along(reviewed: Reviewed, tell: Tell) -> Built:
     sides, side_layout, more = make_sides(formed, reviewed.resin, reviewed.loaded.spec.ejection, tell)
     halves, notes = sides.halves, notes + more
     with tell.stage("lay out pins and gate") as stage:
-        layout, more = lay_out(reviewed, halves)
+        layout, more = lay_out(reviewed, halves, side_layout)
         notes += more
         stage.detail = (
             f"{len(layout.ejector_pins)} ejector pins, {len(layout.core_pins)} core pins, {layout.gate.kind} gate"
@@ -180,6 +180,8 @@ def _record(built: Built, notes: Notes, proofs: tuple[Proof, ...], volumes: dict
         "level_mm": built.halves.level,
         "loops": len(built.halves.parting_line),
         "block_mm": [built.halves.low.tolist(), built.halves.high.tolist()],
+        "least_shut_off_deg": min((c.least_deg for c in built.halves.contacts), default=None),
+        "contacts": built.halves.contacts,
     }
     record["layout"] = built.layout
     record["components"] = [component_record(c, files[c.name], volumes[c.name]) for c in built.tool.components]

@@ -11,10 +11,11 @@ from moldgen.layout.plan import Wishes, plan_layout
 from moldgen.layout.view import PartView
 from moldgen.model.halves import Halves
 from moldgen.model.layout import Layout
+from moldgen.model.slide import SideLayout
 
 
-def lay_out(reviewed: Reviewed, halves: Halves) -> tuple[Layout, Notes]:
-    """Return the layout of one cavity.
+def lay_out(reviewed: Reviewed, halves: Halves, sides: SideLayout | None = None) -> tuple[Layout, Notes]:
+    """Return the layout of one cavity; it keeps out of the way of the side actions `sides`.
 
     Raises
     ------
@@ -32,7 +33,7 @@ def lay_out(reviewed: Reviewed, halves: Halves) -> tuple[Layout, Notes]:
         no_pins=_marked(reviewed, halves, "no_pins"),
         no_gate=_marked(reviewed, halves, "no_gate"),
     )
-    return plan_layout(PartView(halves, frame), reviewed.resin, wishes)
+    return plan_layout(PartView(halves, frame, sides), reviewed.resin, wishes)
 
 
 def marked_points(reviewed: Reviewed, key: str) -> tuple[np.ndarray, ...]:

@@ -6,7 +6,10 @@ import math
 from dataclasses import dataclass
 from typing import Final
 
+import numpy as np
+
 from moldgen.finding import Finding, Notes, Severity
+from moldgen.layout.keep_out import STEEL
 from moldgen.layout.view import PartView
 from moldgen.model.layout import Chooser, CorePinLayout, EjectorPinLayout
 from moldgen.quantity import Provenance, Quantity
@@ -80,12 +83,28 @@ def check_clearances(
             findings.append(
                 _thin(view, bore, f"between {bore.name} and the side of the block", float(steel), STEEL_TO_EDGE.default)
             )
+    beside, more = _beside_sides(view, bores)
+    findings += more
     lines = []
+    if math.isfinite(beside):
+        lines.append(_line("least steel from a bore to the way of a slide or lifter", beside))
     if math.isfinite(between):
         lines.append(_line(f"least steel between two bores ({pair[0]}, {pair[1]})", between))
     if math.isfinite(edge):
         lines.append(_line("least steel from a bore to the side of the block", edge))
     return Notes(tuple(findings), quantities=tuple(lines))
+
+
+def _beside_sides(view: PartView, bores: list[Drilled]) -> tuple[float, list[Finding]]:
+    """Return the least steel from a bore to the way of a side action, inf without one [mm], and what is too thin."""
+    least, findings = math.inf, []
+    for bore in bores:
+        near = view.keep_out.upright(np.array([[bore.x, bore.y]]), bore.radius, bore.z_low, bore.z_high)
+        steel = float(near.steel[0])
+        least = min(least, steel)
+        if steel < STEEL - 1e-6 and not bore.given:
+            findings.append(_thin(view, bore, f"between {bore.name} and the way of {near.names[0]}", steel, STEEL))
+    return least, findings
 
 
 def _line(name: str, value: float) -> Quantity:

@@ -11,6 +11,7 @@ import numpy as np
 from moldgen.catalog import Pin, Resin, core_pin_blank
 from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.layout.core_pin_checks import check_strength
+from moldgen.layout.keep_out import STEEL
 from moldgen.layout.round_cores import RoundCore, find_round_cores, underside_ring, with_base
 from moldgen.layout.view import PartView
 from moldgen.model.layout import Chooser, CorePinLayout
@@ -156,6 +157,7 @@ def _seat(view: PartView, core: RoundCore) -> _Seat:
         trouble.append(("thin_steel", f"{steel:.2f} mm of steel to a deeper feature of the part", steel, limit))
     head = diameter if blank is None else blank.head_diameter
     trouble += _edge(view, core, head)
+    trouble += _side_action(view, core, diameter, head)
     return _Seat(core, blank, diameter, head, fit, tuple(trouble))
 
 
@@ -195,6 +197,21 @@ def _edge(view: PartView, core: RoundCore, head: float) -> list[tuple[str, str, 
     if left >= STEEL_TO_EDGE.default:
         return []
     return [("block_edge", f"{left:.1f} mm of steel to the side of the block", left, STEEL_TO_EDGE.default)]
+
+
+def _side_action(view: PartView, core: RoundCore, diameter: float, head: float) -> list[tuple[str, str, float, float]]:
+    """Return whether a slide or lifter comes too close to the bore, or meets the core itself in the part."""
+    place, keep_out = np.array([[core.x, core.y]]), view.keep_out
+    bore = keep_out.upright(place, max(head, diameter) / 2, float(view.low[2]), core.base_z)
+    # in the part there is plastic between the pin and a side action, however thin, unless they meet
+    tip = keep_out.upright(place, core.largest / 2, core.base_z, core.top_z)
+    found: list[tuple[str, str, float, float]] = []
+    for near, limit in ((bore, STEEL), (tip, FLAT)):
+        steel = float(near.steel[0])
+        if steel < limit and not found:
+            text = f"{max(steel, 0.0):.2f} mm to {near.names[0]}: {keep_out.why}"
+            found.append(("side_action", text, steel, limit))
+    return found
 
 
 def _neighbours(seats: list[_Seat], use: list[int]) -> list[_Seat]:

@@ -9,6 +9,7 @@ from typing import Final
 import numpy as np
 
 from moldgen.layout.gate_size import THICKEST
+from moldgen.layout.keep_out import STEEL, weighed
 from moldgen.layout.mouth import ACROSS, ENTRY, START, room_for_gates
 from moldgen.layout.view import PartView
 from moldgen.rules.layout_practice import EDGE_GATE_RUNNER, STEEL_TO_EDGE
@@ -32,6 +33,9 @@ LEAST: Final = 0.12
 
 BESIDE: Final = 1.0
 """mm: free room on both sides of the runner, and behind the sprue."""
+
+RUNNER_HALF: Final = 0.62
+"""Half of a runner's width at the parting plane by its depth: round bottom, flanks of 10 deg, and a little."""
 
 STEPS: Final = 7
 """Places along runner and sprue at which the plan is looked at."""
@@ -59,8 +63,8 @@ class EdgeSites:
 
     @property
     def troubles(self) -> np.ndarray:
-        """Number of rules that each place breaks, (k,)."""
-        return np.asarray(np.sum([broken for _, broken in self.reasons], axis=0))
+        """Number of rules that each place breaks, those about side actions counted manifold, (k,)."""
+        return weighed(self.reasons)
 
     @property
     def fullness(self) -> np.ndarray:
@@ -95,17 +99,16 @@ def find_edge_sites(view: PartView, need: Need) -> EdgeSites:
     wanted = need.wanted(wall)
     level = line.level(middle, wanted[:, 0], view.level)
     room, above = room_for_gates(view, places, inward, wanted, level)
-    runner = np.zeros(len(places))
-    for length in (EDGE_GATE_RUNNER.low, EDGE_GATE_RUNNER.default):
-        runner[_corridor(view, places, inward, need, length)] = length
+    runner, way, aside = _runners(view, places, inward, need, wanted)
     full = room >= wanted - 1e-9
     small = (room.min(axis=1) < SMALLEST) | (room.prod(axis=1) < LEAST * wanted.prod(axis=1))
     small |= (np.array(need.fixed) & ~full).any(axis=1)
     reasons = (
         ("the parting line is not level there", ~level[:, ACROSS // 2]),
         ("the side of the part is too low, too short or too curved for the mouth of the gate", small),
-        ("no straight way for runner and sprue beside the part inside the block", runner <= 0.0),
+        ("no straight way for runner and sprue beside the part inside the block", ~way),
         ("the face is marked no_gate", np.isin(faces, sorted(need.no_gate))),
+        *(((view.keep_out.why, aside),) if view.halves.sides else ()),
     )
     return EdgeSites(places, inward, wall, wanted, room, above, np.maximum(runner, EDGE_GATE_RUNNER.low), reasons)
 
@@ -183,6 +186,37 @@ def _wall_at(view: PartView, inside: np.ndarray, way: np.ndarray) -> np.ndarray:
     wall = np.min([reach[0] + reach[1], reach[2] + reach[3], reach[4] + reach[5]], axis=0)
     # outside the plastic a ray finds no end, or the far side of a gap: then the usual wall stands
     return np.where(np.isfinite(wall), np.minimum(wall, THICKEST), view.wall)
+
+
+def _runners(
+    view: PartView, places: np.ndarray, inward: np.ndarray, need: Need, wanted: np.ndarray
+) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Return the length of the runner, 0 without room [mm]; whether it has a way; whether a side action is in it."""
+    runner, way, aside = np.zeros(len(places)), np.zeros(len(places), bool), np.ones(len(places), bool)
+    for length in (EDGE_GATE_RUNNER.low, EDGE_GATE_RUNNER.default):
+        free = _corridor(view, places, inward, need, length)
+        clear = _side_steel(view, places, inward, need, length, wanted) >= STEEL
+        runner[free & clear] = length
+        way |= free
+        aside &= ~clear
+    return runner, way, aside | (way & (runner <= 0.0))
+
+
+def _side_steel(
+    view: PartView, places: np.ndarray, inward: np.ndarray, need: Need, length: float, wanted: np.ndarray
+) -> np.ndarray:
+    """Return the steel between gate, runner and sprue at each place and the ways of side actions, (k,) [mm]."""
+    if not view.halves.sides:
+        return np.full(len(places), np.inf)
+    keep_out, half = view.keep_out, RUNNER_HALF * need.runner
+    at, level = places[:, :2], view.level
+    side = 0.5 * wanted[:, :1] * np.column_stack([inward[:, 1], -inward[:, 0]])
+    mouth = keep_out.channel(at - side, at + side, 0.0, level - wanted[:, 1], level + wanted[:, 1])
+    sprue = at - (need.land + length) * inward
+    start = at - min(half, need.land + length) * inward  # its round end meets the part, it does not enter it
+    runner = keep_out.channel(start, sprue, half, level - need.runner, level + need.runner)
+    upright = keep_out.upright(sprue, need.foot / 2, level - need.runner, float(view.high[2]))
+    return np.asarray(np.minimum(np.minimum(mouth.steel, runner.steel), upright.steel))
 
 
 def _corridor(view: PartView, places: np.ndarray, inward: np.ndarray, need: Need, length: float) -> np.ndarray:

@@ -45,6 +45,9 @@ def check_given(
     elif not disc.core_side:
         text = "pushes on a face that the cavity half forms and is left out"
         found.append(("cavity_face", Severity.FAILURE, text, None, None, ""))
+    elif disc.aside:
+        text = "pushes on the steel of a slide or lifter instead of the part and is left out"
+        found.append(("side_face", Severity.FAILURE, text, None, None, ""))
     elif not disc.whole:
         text = "has the part over only a portion of its end face"
         found.append(("overhangs", Severity.FAILURE, text, None, None, ""))

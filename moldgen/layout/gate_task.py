@@ -11,6 +11,7 @@ from moldgen.catalog import Resin
 from moldgen.finding import Notes
 from moldgen.layout.flow_paths import FlowPaths
 from moldgen.layout.gate_size import Melt
+from moldgen.layout.keep_out import CANNOT_BE, is_side_rule
 from moldgen.layout.view import PartView
 from moldgen.model.layout import Chooser, GateLayout
 from moldgen.spec.sections import Gate
@@ -76,4 +77,5 @@ class Found:
     @property
     def badness(self) -> float:
         """How bad the place is: 0 when it keeps all rules; a mouth that misses the part is the worst."""
-        return len(self.broken) + (1.0 - self.open) + (100.0 if self.open <= 0.0 else 0.0)
+        rules = sum(CANNOT_BE if is_side_rule(text) else 1 for text in self.broken)
+        return rules + (1.0 - self.open) + (100.0 if self.open <= 0.0 else 0.0)

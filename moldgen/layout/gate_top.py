@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from typing import Final
 
 import numpy as np
@@ -43,9 +44,12 @@ def _of_size(task: Task, kind: GateKind, share: float) -> Found:
     height = float(view.high[2] - view.body.box[1][2])
     if kind is GateKind.PIN:
         diameter = size_pin(task.section, task.resin, task.melt, view.wall, share)[0].diameter
+        # its channel widens upward; from the parting plane it is longer than from any place of the part over it
+        widest = diameter + 2 * float(view.high[2] - view.level) * math.tan(math.radians(SPRUE_TAPER.default))
     else:
         diameter = size_sprue(task.section, task.resin, task.melt, view.wall, height)[0].diameter
-    sites, choice = _best(task, diameter)
+        widest = diameter
+    sites, choice = _best(task, diameter, widest)
     spot = tuple(float(v) for v in sites.places[choice])
     wall, height = float(sites.wall[choice]), float(view.high[2]) - spot[2]
     if kind is GateKind.PIN:
@@ -75,19 +79,19 @@ def _broken(sites: TopSites, choice: int) -> tuple[str, ...]:
     return tuple(text for text, broken in sites.reasons if broken[choice])
 
 
-def _best(task: Task, diameter: float) -> tuple[TopSites, int]:
+def _best(task: Task, diameter: float, widest: float) -> tuple[TopSites, int]:
     view = task.view
     if task.at is not None:
-        return find_top_sites(view, task.at[None, :2], diameter, task.no_gate), 0
+        return find_top_sites(view, task.at[None, :2], diameter, task.no_gate, widest), 0
     paths = task.paths
     up = ~view.core_side[paths.triangle] & (view.normals[paths.triangle, 2] > 0.9)
     plan = np.vstack([view.middle[None], paths.surface[up][:, :2]])
-    sites = find_top_sites(view, plan, diameter, task.no_gate)
+    sites = find_top_sites(view, plan, diameter, task.no_gate, widest)
     if sites.troubles.min() > 0:
         # narrow or round surfaces: seek the middle of each, and look at every place that is seen from above
         plan = np.vstack([plan, paths.surface[:, :2]])
         plan = centered(view, plan, diameter / 2 + BESIDE)
-        sites = find_top_sites(view, plan, diameter, task.no_gate)
+        sites = find_top_sites(view, plan, diameter, task.no_gate, widest)
     return sites, _cheapest(task, sites)
 
 

@@ -11,6 +11,7 @@ import numpy as np
 from moldgen.catalog import Resin, ejector_pin_series, shouldered_pin_series
 from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.layout.balance import shares
+from moldgen.layout.keep_out import Nearest
 from moldgen.layout.pin_choice import Choice, Counts, Load, gather, mirrors, units
 from moldgen.layout.pin_kinds import PinKind, Place, of_diameter, shouldered, stack_up, straight
 from moldgen.layout.sites import Underside
@@ -207,7 +208,8 @@ def _choose(
     task: Task, kind: PinKind, grid: tuple[np.ndarray, np.ndarray, list[np.ndarray]], load: Load, fixed: np.ndarray
 ) -> Choice | None:
     places, room, group = grid
-    spots = places[(room >= kind.room) & _clear(task, places, kind)]
+    spots = places[room >= kind.room]
+    spots = spots[_clear(task, spots, kind)]
     if len(spots) == 0:
         return None
     apart = kind.head_diameter + HEADS_APART
@@ -233,7 +235,7 @@ def _counts(task: Task, kind: PinKind) -> Counts:
 
 
 def _clear(task: Task, places: np.ndarray, kind: PinKind) -> np.ndarray:
-    """Return which places keep clear of core pins and of the sides of the block, (k,) bool."""
+    """Return which places keep clear of core pins, side actions and the sides of the block, (k,) bool."""
     bore = kind.bore / 2
     view, steel = task.view, STEEL_BETWEEN_BORES.default
     edge = np.minimum(places - view.low[:2], view.high[:2] - places).min(axis=1)
@@ -241,7 +243,25 @@ def _clear(task: Task, places: np.ndarray, kind: PinKind) -> np.ndarray:
     for other in task.bores:
         gap = np.linalg.norm(places - np.array([other.x, other.y]), axis=1)
         free &= gap >= bore + max(other.clearance_diameter, other.head_diameter + 0.5) / 2 + steel
+    if view.halves.sides and free.any():
+        rows = np.flatnonzero(free)
+        height, _ = view.underside(places[rows])
+        free[rows] = side_steel(task, places[rows], kind, height).steel >= steel
+        rows = np.flatnonzero(free)
+        # a face may belong to the part here and to a side action there
+        discs = task.under.discs(places[rows], np.full(len(rows), kind.diameter))
+        free[rows] = ~np.array([disc.aside for disc in discs], dtype=bool)
     return np.asarray(free)
+
+
+def side_steel(task: Task, places: np.ndarray, kind: PinKind, height: np.ndarray) -> Nearest:
+    """Return the steel between pins at places (k, 2), their ends at heights (k,) [mm], and the ways of side actions."""
+    keep_out, bottom = task.view.keep_out, float(task.view.low[2])
+    bore = keep_out.upright(places, kind.bore / 2, bottom, height)
+    seat = stack_up(kind, task.view, task.stroke, task.view.level, task.view.level).seat
+    below = keep_out.upright(places, kind.head_diameter / 2, seat, bottom)
+    names = (b if lower else a for a, b, lower in zip(bore.names, below.names, below.steel < bore.steel, strict=True))
+    return Nearest(np.minimum(bore.steel, below.steel), tuple(names))
 
 
 def _small(task: Task, found: list[Place], kind: PinKind) -> Notes:
@@ -274,7 +294,8 @@ def _no_room(task: Task, kept: list[Place]) -> Notes:
     elif widest < needed:
         reason = f"the widest place leaves {widest:.2f} mm from its middle to its edge, a pin needs {needed:.2f} mm"
     else:
-        reason = "core pins, given pins or the sides of the block are too close to every place"
+        aside = "slides and lifters, " if task.view.halves.sides else ""
+        reason = f"{aside}core pins, given pins or the sides of the block are too close to every place"
     finding = Finding(
         "ejection.no_room",
         Severity.CAUTION if kept else Severity.FAILURE,

@@ -35,6 +35,7 @@ class Disc:
 
     low, high : extent of the core's surface there [mm]; slope : steepest [deg]
     whole : the part lies over all of it; core_side : the core half forms all of it; faces : numbers met
+    aside : a side action forms some of it, or there is only its steel instead of the part
     """
 
     low: float
@@ -43,6 +44,7 @@ class Disc:
     whole: bool
     core_side: bool
     faces: tuple[int, ...]
+    aside: bool = False
 
 
 class Underside:
@@ -58,7 +60,7 @@ class Underside:
         slope = np.degrees(np.arccos(np.clip(-view.normals[:, 2], -1.0, 1.0)))
         marked = np.isin(view.mesh.face, sorted(no_pins))
         self.slope = slope
-        self.pushable: np.ndarray = view.core_side & (slope <= steepest) & ~marked
+        self.pushable: np.ndarray = view.core_side & (slope <= steepest) & ~marked & ~view.formed_aside
         """(t,) bool"""
 
     @cached_property
@@ -83,8 +85,9 @@ class Underside:
 
     def room(self, places: np.ndarray) -> np.ndarray:
         """Return the distance of places (k, 2) on the pushable area from its border, 0 off the area, (k,) [mm]."""
-        _, triangle = self.view.underside(places)
+        height, triangle = self.view.underside(places)
         on = (triangle >= 0) & self.pushable[np.maximum(triangle, 0)]
+        on[on] = ~self.view.aside(np.column_stack([places, height])[on], triangle[on])
         room = np.zeros(len(places))
         if on.any():
             # a sampled border is at most half a spacing from the nearest sample: what that hides is taken off
@@ -117,10 +120,13 @@ class Underside:
         pattern = np.vstack([[[0.0, 0.0]], 0.5 * rim[::2], 0.999 * rim])
         points = places[:, None] + 0.5 * diameters[:, None, None] * pattern
         height, triangle = self.view.underside(points.reshape(-1, 2))
-        height, triangle = height.reshape(len(places), -1), triangle.reshape(len(places), -1)
-        return [self._disc(h, t) for h, t in zip(height, triangle, strict=True)]
+        aside = self.view.aside(np.column_stack([points.reshape(-1, 2), height]), triangle)
+        shape = (len(places), -1)
+        any_aside = np.asarray(aside.reshape(shape).any(axis=1))
+        found = zip(height.reshape(shape), triangle.reshape(shape), any_aside, strict=True)
+        return [self._disc(h, t, bool(a)) for h, t, a in found]
 
-    def _disc(self, height: np.ndarray, triangle: np.ndarray) -> Disc:
+    def _disc(self, height: np.ndarray, triangle: np.ndarray, aside: bool) -> Disc:
         met = triangle[triangle >= 0]
         if len(met) == 0:
             return Disc(0.0, 0.0, 0.0, whole=False, core_side=False, faces=())
@@ -132,6 +138,7 @@ class Underside:
             whole=len(met) == len(triangle),
             core_side=bool(self.view.core_side[met].all()),
             faces=tuple(int(f) for f in np.unique(self.view.mesh.face[met])),
+            aside=aside,
         )
 
     def exact_room(self, place: np.ndarray) -> float:

@@ -7,6 +7,7 @@ from typing import Final
 
 import numpy as np
 
+from moldgen.layout.keep_out import STEEL, weighed
 from moldgen.layout.view import PartView
 from moldgen.rules.layout_practice import GATE_SLOPE
 
@@ -36,12 +37,17 @@ class TopSites:
 
     @property
     def troubles(self) -> np.ndarray:
-        """Number of rules that each place breaks, (k,)."""
-        return np.asarray(np.sum([broken for _, broken in self.reasons], axis=0))
+        """Number of rules that each place breaks, those about side actions counted manifold, (k,)."""
+        return weighed(self.reasons)
 
 
-def find_top_sites(view: PartView, plan: np.ndarray, diameter: float, no_gate: frozenset[int]) -> TopSites:
-    """Return what lies under a gate of a diameter [mm] that comes down at plan places (k, 2)."""
+def find_top_sites(
+    view: PartView, plan: np.ndarray, diameter: float, no_gate: frozenset[int], widest: float = 0.0
+) -> TopSites:
+    """Return what lies under a gate of a diameter [mm] that comes down at plan places (k, 2).
+
+    widest : largest diameter of the sprue over it [mm]
+    """
     height, triangle = view.topside(plan)
     turn = 2 * np.pi * np.arange(RING) / RING
     ring = (diameter / 2 + BESIDE) * np.column_stack([np.cos(turn), np.sin(turn)])
@@ -64,11 +70,22 @@ def find_top_sites(view: PartView, plan: np.ndarray, diameter: float, no_gate: f
         (f"the surface is steeper than {GATE_SLOPE.default:g} deg", on & (steep > GATE_SLOPE.default)),
         ("a step or an edge lies within the gate", on & step),
         ("the face is marked no_gate", np.isin(faces, sorted(no_gate))),
+        *_side_actions(view, places, np.where(on, triangle, -1), max(diameter, widest)),
     )
     depth = np.where(np.isfinite(depth), depth + 1e-3, view.wall)
     rim, _ = view.topside((plan[:, None] + diameter / 2 / (diameter / 2 + BESIDE) * ring).reshape(-1, 2))
     beside = np.abs(rim.reshape(len(plan), -1) - places[:, 2:]) < STEP  # the height beside the part is infinite
     return TopSites(places, np.minimum(depth, _across(view, places, depth)), on * beside.mean(axis=1), reasons)
+
+
+def _side_actions(
+    view: PartView, places: np.ndarray, triangle: np.ndarray, diameter: float
+) -> tuple[tuple[str, np.ndarray], ...]:
+    """Return the rules about slides and lifters: off the faces that they form, and out of their way."""
+    if not view.halves.sides:
+        return ()
+    way = view.keep_out.upright(places[:, :2], diameter / 2, places[:, 2], float(view.high[2])).steel < STEEL
+    return ("a slide or lifter forms the surface", view.aside(places, triangle)), (view.keep_out.why, way)
 
 
 def centered(view: PartView, plan: np.ndarray, radius: float) -> np.ndarray:

@@ -10,8 +10,10 @@ from moldgen.finding import Point
 from moldgen.kernel.body import Body
 from moldgen.kernel.mesh import SurfaceMesh
 from moldgen.kernel.probe import Probe
+from moldgen.layout.keep_out import KeepOut
 from moldgen.model.halves import Halves
 from moldgen.model.part import MoldFrame
+from moldgen.model.slide import SideLayout
 
 OFF = 1e-3
 """mm: how far inside its face a ray starts, so that it does not meet that face again."""
@@ -27,15 +29,17 @@ class PartView:
     """The part between its halves, read-only, in the mold frame [mm].
 
     frame : the way back to the part's own coordinates for findings; None leaves mold coordinates
+    sides : bodies, angled pins and lifters of side actions, if they are laid out already
     """
 
-    def __init__(self, halves: Halves, frame: MoldFrame | None = None) -> None:
+    def __init__(self, halves: Halves, frame: MoldFrame | None = None, sides: SideLayout | None = None) -> None:
         self.halves = halves
         self.body: Body = halves.body
         self.mesh: SurfaceMesh = self.body.mesh
         self.level = halves.level
         self.low, self.high = np.asarray(halves.low, float), np.asarray(halves.high, float)
         self._frame = frame
+        self._sides = sides
 
     def place(self, point: np.ndarray | Point) -> Point:
         """Return a mold point as a place to report, in part coordinates [mm]."""
@@ -52,6 +56,24 @@ class PartView:
     def core_side(self) -> np.ndarray:
         """Which triangles the core half forms, (t,) bool."""
         return np.asarray(~np.asarray(self.halves.cavity_side, bool)[self.mesh.face])
+
+    @cached_property
+    def keep_out(self) -> KeepOut:
+        """Where side actions leave."""
+        return KeepOut(self.halves, self._sides)
+
+    @cached_property
+    def formed_aside(self) -> np.ndarray:
+        """Which triangles a side action forms or takes the place of, (t,) bool."""
+        return self.keep_out.forms(self.centres, self.normals)
+
+    def aside(self, points: np.ndarray, triangles: np.ndarray) -> np.ndarray:
+        """Return whether a side action forms surface points (k, 3) on triangles (k,), -1 for none, (k,) bool."""
+        found = np.zeros(len(points), dtype=bool)
+        if self.halves.sides:
+            on = np.flatnonzero((triangles >= 0) & np.isfinite(points).all(axis=1))
+            found[on] = self.keep_out.forms(points[on], self.normals[triangles[on]])
+        return found
 
     @cached_property
     def centres(self) -> np.ndarray:
