@@ -17,11 +17,12 @@ from moldgen.layout.blocks import size_blocks
 from moldgen.layout.side_drive import drive_fronts
 from moldgen.layout.slide_body import SideTask
 from moldgen.model.halves import Halves
+from moldgen.model.part import MoldFrame
 from moldgen.model.side_action import SidePlan
 from moldgen.parting.fill import fill_trapped
 from moldgen.parting.halves import Parted, part_halves
 from moldgen.parting.side_fill import filled_candidates
-from moldgen.parting.told import parting_line, told
+from moldgen.parting.told import parting_line, steel_contacts, told
 from moldgen.release.kinds import face_kinds
 from moldgen.release.trapped import TrapPiece, trapped_volume
 from moldgen.spec.sections import Blocks
@@ -135,7 +136,7 @@ def _formed(reviewed: Reviewed, filled: Prepared, part: Body, plan: SidePlan, te
     wider = with_room((halves.low, halves.high), halves.level, driven, task, reviewed.loaded.spec.blocks)
     if (wider[0] < halves.low - ON_PLANE).any() or (wider[1] > halves.high + ON_PLANE).any():
         parted = _parted(reviewed, filled, wider, halves.level, tell)
-        halves, notes = _halves(parted, *wider), notes + told(parted, reviewed.frame)
+        halves, notes = _halves(parted, reviewed.frame, *wider), notes + told(parted, reviewed.frame)
     with tell.stage("form the side actions") as stage:
         formed, also = form_side_steel(halves, part, [d.front for d in driven])
         stage.detail = f"{len(formed.sides)} side actions"
@@ -156,7 +157,7 @@ def _straight(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Halve
     if fixed and abs(parted.level - (np.inf if level is None else level)) > ON_PLANE:
         corners, more = _blocks(reviewed, prepared, spec.blocks, parted.level, tell)
         parted = _parted(reviewed, prepared, corners, parted.level, tell)
-    return _halves(parted, *corners), more + told(parted, reviewed.frame)
+    return _halves(parted, reviewed.frame, *corners), more + told(parted, reviewed.frame)
 
 
 def _blocks(
@@ -184,7 +185,7 @@ def _parted(reviewed: Reviewed, prepared: Prepared, corners: Corners, level: flo
     return parted
 
 
-def _halves(parted: Parted, low: np.ndarray, high: np.ndarray) -> Halves:
+def _halves(parted: Parted, frame: MoldFrame, low: np.ndarray, high: np.ndarray) -> Halves:
     return Halves(
         cavity=parted.cavity,
         core=parted.core,
@@ -194,6 +195,7 @@ def _halves(parted: Parted, low: np.ndarray, high: np.ndarray) -> Halves:
         low=low,
         high=high,
         parting_line=parting_line(parted),
+        contacts=steel_contacts(parted, frame),
     )
 
 

@@ -29,6 +29,26 @@ class SideSteel:
 
 
 @dataclass(frozen=True)
+class SteelContact:
+    """Where the halves close on each other around the part, or in one of its holes.
+
+    name : "parting surface", "shut-off 1", ...
+    made_as : the kind of surface
+    at : the place where it is steepest, in part coordinates [mm]
+    least_deg : angle between surface and pull there, 0 for an upright face, 90 for a level one
+    upright_mm2 : area less than 1 deg from the pull
+    land_mm : width of the level land around the part, 0 where it has no constant width
+    """
+
+    name: str
+    made_as: str
+    at: tuple[float, float, float]
+    least_deg: float
+    upright_mm2: float
+    land_mm: float
+
+
+@dataclass(frozen=True)
 class Halves:
     """Cavity and core around the part, in the mold frame: pull along +z [mm].
 
@@ -40,6 +60,7 @@ class Halves:
     parting_line : closed polylines (k, 3), the outer one first
     sides : steel that side actions carry; it is no longer in cavity and core
     part : the real part where it differs from `body`
+    contacts : how steeply the halves close on each other, the surface around the part first
     """
 
     cavity: Solid
@@ -52,6 +73,7 @@ class Halves:
     parting_line: tuple[np.ndarray, ...]
     sides: tuple[SideSteel, ...] = ()
     part: Solid | None = None
+    contacts: tuple[SteelContact, ...] = ()
 
     @property
     def real_part(self) -> Solid:

@@ -8,6 +8,7 @@ import numpy as np
 
 from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.kernel.patches import loop_points
+from moldgen.model.halves import SteelContact
 from moldgen.model.part import MoldFrame
 from moldgen.parting.halves import Parted
 from moldgen.parting.surface import ClosedLoop, Rung
@@ -39,6 +40,22 @@ def parting_line(parted: Parted) -> tuple[np.ndarray, ...]:
         points = loop_points(parted.loops[number], POINTS_OF_AN_EDGE)
         lines.append(np.vstack([points, points[:1]]))
     return tuple(lines)
+
+
+def steel_contacts(parted: Parted, frame: MoldFrame) -> tuple[SteelContact, ...]:
+    """Return how steeply the halves close on each other, the surface around the part first.
+
+    Those of halves that were not proved have no angle, and are left out.
+    """
+    sheet = parted.sheet
+    named = [("parting surface", sheet.outer), *((f"shut-off {i}", s) for i, s in enumerate(sheet.shut_offs, start=1))]
+    return tuple(
+        SteelContact(
+            name, loop.rung.value, frame.to_part(loop.angle.at), loop.angle.deg, loop.angle.upright_mm2, loop.land_mm
+        )
+        for name, loop in named
+        if loop.angle is not None
+    )
 
 
 def told(parted: Parted, frame: MoldFrame) -> Notes:
