@@ -189,6 +189,7 @@ class _Sweeper:
 
     def __init__(self) -> None:
         self._swept: dict[tuple[ProofBody, Vector, float | None], MeshSolid] = {}
+        self._reach: dict[tuple[ProofBody, Vector], tuple[float, float]] = {}
         self._cost: dict[tuple[ProofBody, Vector], int] = {}
         self._turned: dict[tuple[ProofBody, Vector], TurnedMesh] = {}
 
@@ -209,19 +210,29 @@ class _Sweeper:
         body.mesh  # noqa: B018  raises for an open mesh: a missing face would sweep nothing, and hide what it meets
         direction = _direction(stretch.way)
         upright = float(np.hypot(direction[0], direction[1])) <= UPRIGHT
-        along = np.asarray(direction)
-        heights = body.body.mesh.vertices @ along
-        reach = float((other.body.mesh.vertices @ along).max() - stretch.start @ along)
-        clear = reach <= min(heights.min() + stretch.length, heights.max() + OVERRUN)
+        low, high = self._heights(body, direction)
+        reach = self._heights(other, direction)[1] - float(stretch.start @ np.asarray(direction))
+        clear = reach <= min(low + stretch.length, high + OVERRUN)
         length = None if clear else round(stretch.length, 9)
         key = (body, direction, length)
         if key not in self._swept:
             up = not upright or direction[2] > 0.0
             seen: Meshed = body.body if upright else self._along(body, direction)
             self._swept[key] = sweep_faces(seen, face_kinds(seen), up, length)
+            self._swept[key].num_tri()  # the union is made now: moved before, it would be made again at every place
+        if upright and not stretch.start.any():
+            return self._swept[key]
         turn = np.eye(3) if upright else across(direction).T
         placed: MeshSolid = self._swept[key].transform(np.column_stack([turn, stretch.start]))
         return placed
+
+    def _heights(self, body: ProofBody, direction: Vector) -> tuple[float, float]:
+        """Return where a body begins and ends along a direction [mm]."""
+        key = (body, direction)
+        if key not in self._reach:
+            heights = body.body.mesh.vertices @ np.asarray(direction)
+            self._reach[key] = float(heights.min()), float(heights.max())
+        return self._reach[key]
 
     def _along(self, body: ProofBody, direction: Vector) -> TurnedMesh:
         key = (body, direction)
