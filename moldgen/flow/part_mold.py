@@ -129,24 +129,41 @@ def _with_sides(reviewed: Reviewed, prepared: Prepared, plan: SidePlan, tell: Te
 
 
 def _formed(reviewed: Reviewed, filled: Prepared, part: Body, plan: SidePlan, tell: Tell) -> tuple[Formed, Notes]:
-    """Return the halves of the filled part without the fronts; the block grows where slides need room."""
-    halves, notes = _straight(reviewed, filled, tell)
-    task = SideTask(part, halves.level, reviewed.resin)
-    driven, more = drive_fronts(plan.fronts, part, halves.level)
-    wider = with_room((halves.low, halves.high), halves.level, driven, task, reviewed.loaded.spec.blocks)
-    if (wider[0] < halves.low - ON_PLANE).any() or (wider[1] > halves.high + ON_PLANE).any():
-        parted = _parted(reviewed, filled, wider, halves.level, tell)
-        halves, notes = _halves(parted, reviewed.frame, *wider), notes + told(parted, reviewed.frame)
+    """Return the halves of the filled part without the fronts; the block grows where slides need room.
+
+    What room they need depends on the height of the parting plane, which is known only after parting: the lower end of
+    the part is assumed first, and where that was wrong the mold is parted again.
+    """
+    section = reviewed.loaded.spec.blocks
+    given = _given_level(reviewed, filled)
+    guess = float(filled.body.box[0][2]) if given is None else given
+
+    def room(corners: Corners, level: float) -> Corners:
+        driven, _ = drive_fronts(plan.fronts, part, level)
+        return with_room(corners, level, driven, SideTask(part, level, reviewed.resin), section)
+
+    corners, notes = _blocks(reviewed, filled, section, guess, tell)
+    wide = room(corners, guess)
+    parted = _parted(reviewed, filled, wide, given, tell)
+    if abs(parted.level - guess) > ON_PLANE:
+        corners, notes = _blocks(reviewed, filled, section, parted.level, tell)
+        wide = room(corners, parted.level)
+        parted = _parted(reviewed, filled, wide, parted.level, tell)
+    driven, more = drive_fronts(plan.fronts, part, parted.level)
     with tell.stage("form the side actions") as stage:
-        formed, also = form_side_steel(halves, part, [d.front for d in driven])
+        formed, also = form_side_steel(_halves(parted, reviewed.frame, *wide), part, [d.front for d in driven])
         stage.detail = f"{len(formed.sides)} side actions"
-    return Formed(formed, driven, part), notes + more + also
+    return Formed(formed, driven, part), notes + more + also + told(parted, reviewed.frame)
+
+
+def _given_level(reviewed: Reviewed, prepared: Prepared) -> float | None:
+    height = reviewed.loaded.spec.parting.height
+    return None if height is None else _mold_level(reviewed, height, prepared.body)
 
 
 def _straight(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Halves, Notes]:
     """Return the halves of a part that leaves by a straight pull."""
-    spec = reviewed.loaded.spec
-    level = None if spec.parting.height is None else _mold_level(reviewed, spec.parting.height, prepared.body)
+    spec, level = reviewed.loaded.spec, _given_level(reviewed, prepared)
     fixed = spec.blocks.cavity_height is not None or spec.blocks.core_height is not None
     # the plane is known only after parting, and given heights count from it: then the blocks are sized twice
     section = spec.blocks
