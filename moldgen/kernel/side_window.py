@@ -19,6 +19,9 @@ sweeps, decides."""
 CORNER = 1e-6
 """mm: corners of an outline closer than this are one."""
 
+TOUCH = 1e-4
+"""mm: steel this close to the end of a prism reaches it."""
+
 
 @dataclass(frozen=True)
 class Window:
@@ -82,43 +85,74 @@ def outline_gain(outline: Sequence[np.ndarray], larger: Sequence[np.ndarray]) ->
     return float(areas[1] - areas[0])
 
 
+def joined_area(outlines: Sequence[Sequence[np.ndarray]]) -> float:
+    """Return the area that outlines cover together [mm^2]."""
+    sections = [manifold3d.CrossSection([np.asarray(p, float) for p in o], manifold3d.FillRule.Positive)
+                for o in outlines]  # fmt: skip
+    return float(manifold3d.CrossSection.batch_boolean(sections, manifold3d.OpType.Add).area())
+
+
 @dataclass(frozen=True)
 class Taken:
-    """The steel that a prism takes outside the part.
+    """The steel that a prism takes outside the part, where it reaches the prism's far end.
 
-    start : where it begins, along the axis [mm]; depth : how deep it would cut into the part on its way out [mm]
-    volume : [mm^3]
+    start : where it begins, along the axis [mm]; volume : [mm^3]
+    depth : how deep it would cut into the part on its way out [mm]
+    left : length of the steel before the prism that it leaves there, open toward it [mm]
     """
 
     start: float
-    depth: float
     volume: float
+    depth: float
+    left: float
 
 
-def steel_outside(
-    mesh: SurfaceMesh, outline: Sequence[np.ndarray], frame: np.ndarray, near: float, far: float
-) -> Taken | None:
-    """Return what a prism takes of the steel outside the part and how clear that is when it leaves along the axis.
+class Outside:
+    """Steel outside the part, in straight prisms of one outline.
 
-    Only pieces that reach `far` count: the others stay where they are, or go with another body. None: there are none.
+    own : an outline inside that one; what lies in it before a prism is taken anyhow
     """
-    part, thin = mesh_solid(mesh), eroded(mesh)
-    steel = outline_mesh(outline, frame, near, far) - part
-    pieces, start, depth, volume = [], far, 0.0, 0.0
-    for piece in thick_pieces(steel):
-        along = np.asarray(piece.to_mesh64().vert_properties)[:, :3] @ frame[2]
-        if along.max() > far - CORNER - 1e-4:
-            pieces.append(piece)
-            start = min(start, float(along.min()))
-    if not pieces:
-        return None
-    way = float((mesh.vertices @ frame[2]).max()) - start
-    steps = sorted({s for s in STEPS if s < way} | {way * k / 8 for k in range(1, 9)}) if way > 0.0 else []
-    for piece in pieces:
-        volume += float(piece.volume())
-        for step in steps:
-            if thin is not None:
-                depth = max(depth, overlap_depth(piece.translate([float(v) for v in frame[2] * step]), thin))
+
+    def __init__(
+        self, mesh: SurfaceMesh, outline: Sequence[np.ndarray], frame: np.ndarray, own: Sequence[np.ndarray]
+    ) -> None:
+        self._outline, self._frame, self._own = outline, frame, own
+        self._part, self._thin = mesh_solid(mesh), eroded(mesh)
+        self._far_end = float((mesh.vertices @ frame[2]).max())
+
+    def taken(self, first: float, near: float, far: float) -> Taken | None:
+        """Return what a prism from `near` to `far` takes, and what of the steel from `first` on it leaves.
+
+        Steel that does not reach `far` counts for nothing: it stays where it is, or goes with another body. None: there
+        is no other.
+        """
+        pieces = self._reaching(near, far)
+        if not pieces:
+            return None
+        start = min(self._along(p)[0] for p in pieces)
+        depth = max(self._depth(p, self._far_end - start) for p in pieces)
+        before = self._reaching(first, near, own=False) if near > first + CORNER else []
+        left = max((near - self._along(p)[0] for p in before), default=0.0)
+        return Taken(start, sum(float(p.volume()) for p in pieces), depth, left)
+
+    def _reaching(self, near: float, far: float, *, own: bool = True) -> list[MeshSolid]:
+        steel = outline_mesh(self._outline, self._frame, near, far) - self._part
+        if not own:
+            steel = steel - outline_mesh(self._own, self._frame, near, far)
+        return [p for p in thick_pieces(steel) if self._along(p)[1] > far - TOUCH]
+
+    def _along(self, piece: MeshSolid) -> tuple[float, float]:
+        along = np.asarray(piece.to_mesh64().vert_properties)[:, :3] @ self._frame[2]
+        return float(along.min()), float(along.max())
+
+    def _depth(self, piece: MeshSolid, way: float) -> float:
+        """Return how deep a piece cuts into the part on its way out, up to where the part ends."""
+        if way <= 0.0 or self._thin is None:
+            return 0.0
+        depth = 0.0
+        for step in sorted({s for s in STEPS if s < way} | {way * k / 8 for k in range(1, 9)}):
+            moved = piece.translate([float(v) for v in self._frame[2] * step])
+            depth = max(depth, overlap_depth(moved, self._thin))
             if depth > OPEN_OVERLAP:
                 break
-    return Taken(start, depth, volume)
+        return depth

@@ -11,7 +11,7 @@ import numpy as np
 
 from moldgen.catalog import Resin, steel
 from moldgen.kernel.body import Body
-from moldgen.kernel.side_window import Window, extent_in
+from moldgen.kernel.side_window import Window, extent_in, joined_area
 from moldgen.layout.side_drive import Driven
 from moldgen.layout.slide_pin import PinChoice, choose_pin, too_far_for_pin
 from moldgen.model.side_action import Front, across
@@ -125,7 +125,7 @@ def _wanted(group: Sequence[tuple[int, Driven]], task: SideTask) -> WantedBody:
         travel = max(travel, start - min(f.near for f in fronts) + CLEAR_OF_STEEL)
     by_cylinder = any(d.drive is Drive.CYLINDER for _, d in group) or too_far_for_pin(travel)
     drive = Drive.CYLINDER if by_cylinder else Drive.ANGLED_PIN
-    area = sum(outline_area(f) for f in fronts)
+    area = joined_area([f.outline for f in fronts])
     found = WantedBody(
         tuple(n for n, _ in group), frame[2], drive, window, start, travel, area, None, 0.0, 0.0, 0.0
     )  # fmt: skip
@@ -133,12 +133,14 @@ def _wanted(group: Sequence[tuple[int, Driven]], task: SideTask) -> WantedBody:
     length = slide_guided_length(height, travel)
     if drive is Drive.CYLINDER:
         return replace(found, length=_up(length))
-    return _with_pin(found, fronts, length, task)
+    return _with_pin(found, group, length, task)
 
 
-def _with_pin(found: WantedBody, fronts: Sequence[Front], length: float, task: SideTask) -> WantedBody:
+def _with_pin(found: WantedBody, group: Sequence[tuple[int, Driven]], length: float, task: SideTask) -> WantedBody:
+    fronts = [d.front for _, d in group]
+    gripped = [d.front for _, d in group if not d.under]
     window = found.window
-    pin = choose_pin(fronts, found.travel, (window.right - window.left, window.high - window.low, length), task.resin,
+    pin = choose_pin(gripped, found.travel, (window.right - window.left, window.high - window.low, length), task.resin,
                      task.part)  # fmt: skip
     if pin.width_needed > window.right - window.left:
         middle, half = 0.5 * (window.left + window.right), 0.5 * pin.width_needed
@@ -192,7 +194,7 @@ def _start(fronts: Sequence[Front], window: Window, frame: np.ndarray, task: Sid
     for one in (window, ledges):
         inside = extent_in(task.part.mesh, frame, one)
         reach = max(reach, -math.inf if inside is None else float(inside[:, 2].max()))
-    return reach + SLIDE_LAND.default
+    return float(reach + SLIDE_LAND.default)
 
 
 def _foot(area: float, width: float, rise: float, task: SideTask) -> float:
@@ -202,15 +204,6 @@ def _foot(area: float, width: float, rise: float, task: SideTask) -> float:
     modulus = steel(task.material).modulus.low
     needed = cavity_side_wall_thickness(force / (width * rise), rise, width, limit, modulus)
     return max(LOCKING_FOOT.default, math.ceil(2.0 * needed) / 2.0)
-
-
-def outline_area(front: Front) -> float:
-    """Return the area of a front seen along its axis [mm^2]."""
-    total = 0.0
-    for polygon in front.outline:
-        x, y = polygon[:, 0], polygon[:, 1]
-        total += float(0.5 * (x * np.roll(y, -1) - y * np.roll(x, -1)).sum())
-    return total
 
 
 def _up(length: float) -> float:

@@ -6,18 +6,22 @@ through its walls. Halves are those of the box with its windows filled, less the
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cache, cached_property
 
 import numpy as np
+from OCP.BRepAlgoAPI import BRepAlgoAPI_Cut
 
 from helpers.solids import box, common, cut, extruded, fuse
 from moldgen.catalog import resin
 from moldgen.finding import Notes
 from moldgen.kernel.body import Body
+from moldgen.kernel.measure import volume
+from moldgen.kernel.topology import solids_of
 from moldgen.layout.side_actions import lay_out_sides, room_needed
-from moldgen.layout.side_drive import Driven, drive_fronts
+from moldgen.layout.side_drive import Driven, drive_fronts, steel_names
 from moldgen.layout.slide_body import SideTask
 from moldgen.model.halves import Halves, SideSteel
 from moldgen.model.layout import BlockLayout
@@ -47,18 +51,38 @@ def outside(axis):
     return LENGTH / 2 if abs(axis[0]) > 0.5 else WIDTH / 2
 
 
-def shell():
+def outer_solid(lean: float = 0.0):
+    """The box without its inside; its walls to +x and -x lean inward by `lean` over the height."""
+    return _leaning(LENGTH / 2, WIDTH / 2, 0.0, TALL, lean)
+
+
+def inner_solid(lean: float = 0.0):
+    """The inside of the box, and 1 mm below it."""
+    return _leaning(LENGTH / 2 - WALL, WIDTH / 2 - WALL, -1.0, TALL - WALL, lean)
+
+
+def _leaning(half, wide, low, high, lean):
+    out, back = half - lean * low / TALL, half - lean * high / TALL
+    corners = [(-out, -wide, low), (out, -wide, low), (back, -wide, high), (-back, -wide, high)]
+    return extruded(corners, (0.0, 2 * wide, 0.0))
+
+
+def shell(lean: float = 0.0):
     """The box without windows."""
-    inner = box((-LENGTH / 2 + WALL, -WIDTH / 2 + WALL, -1.0), (LENGTH / 2 - WALL, WIDTH / 2 - WALL, TALL - WALL))
-    return cut(box((-LENGTH / 2, -WIDTH / 2, 0.0), (LENGTH / 2, WIDTH / 2, TALL)), inner)
+    return cut(outer_solid(lean), inner_solid(lean))
 
 
 def window_front(opening: Opening) -> Front:
-    """The front that fills one window."""
+    """The front that fills one window, straight across it or at an angle in plan."""
     axis, left, right, low, high = opening
-    rim = outside(axis)
+    rim, frame = outside(axis), across(axis)
+    wall = 0 if abs(axis[0]) > 0.5 else 1
     outline = np.array([(left, low), (right, low), (right, high), (left, high)])
-    return Front(SideKind.SLIDE, axis, axis, (outline,), rim - WALL, rim + 1.0, rim, WALL, (0,), "by hand")
+    way = abs(axis[wall])
+    sign = 1.0 if axis[wall] > 0 else -1.0
+    inner, outer = ([(sign * at - u * frame[0][wall]) * sign / way for u in (left, right)] for at in (rim - WALL, rim))
+    near, clear = min(inner), max(outer)
+    return Front(SideKind.SLIDE, axis, axis, (outline,), near, clear + 1.0, clear, clear - near, (0,), "by hand")
 
 
 def prism(front: Front, far: float, near: float | None = None):
@@ -69,16 +93,23 @@ def prism(front: Front, far: float, near: float | None = None):
     return extruded([tuple(p) for p in points.tolist()], tuple((frame[2] * (far - start)).tolist()))
 
 
+def largest(solid, *tools):
+    """The largest piece of what is left of a solid."""
+    for tool in tools:
+        solid = max(solids_of(BRepAlgoAPI_Cut(solid, tool).Shape()), key=volume)
+    return solid
+
+
 @cache
-def part(openings: tuple[Opening, ...] = ONE):
+def part(openings: tuple[Opening, ...] = ONE, lean: float = 0.0):
     """The box with its windows."""
     fronts = [window_front(o) for o in openings]
-    return Body(cut(shell(), *(prism(f, f.clear + 1.0, f.near - 1.0) for f in fronts)))
+    return Body(cut(shell(lean), *(prism(f, f.clear + 1.0, f.near - 1.0 - lean) for f in fronts)))
 
 
-def task(openings: tuple[Opening, ...] = ONE) -> SideTask:
+def task(openings: tuple[Opening, ...] = ONE, lean: float = 0.0) -> SideTask:
     """What the slides of the box share."""
-    return SideTask(part(openings), 0.0, resin("ABS"))
+    return SideTask(part(openings, lean), 0.0, resin("ABS"))
 
 
 @cache
@@ -103,21 +134,22 @@ class SideMold:
 
     openings: tuple[Opening, ...]
     driven: tuple[Driven, ...]
+    lean: float = 0.0
 
     @cached_property
     def names(self) -> list[str]:
-        """slide 1, slide 2, ..."""
-        return [f"slide {n}" for n in range(1, len(self.driven) + 1)]
+        """slide 1, slide 2, ..., in order."""
+        return steel_names(self.driven)
 
     @cached_property
     def block(self) -> BlockLayout:
         """The closed block."""
-        return block_of(self.driven, task(self.openings))
+        return block_of(self.driven, task(self.openings, self.lean))
 
     @cached_property
     def planned(self) -> tuple[SideLayout, Notes]:
         """The layout of the slides."""
-        return lay_out_sides(self.driven, self.names, task(self.openings), self.block, 35.0)
+        return lay_out_sides(self.driven, self.names, task(self.openings, self.lean), self.block, 35.0)
 
     @property
     def layout(self) -> SideLayout:
@@ -128,20 +160,19 @@ class SideMold:
     def halves(self) -> Halves:
         """Halves of the filled box without the fronts, and the fronts' steel up to the side of the block."""
         low, high = np.asarray(self.block.low), np.asarray(self.block.high)
-        outer = box((-LENGTH / 2, -WIDTH / 2, 0.0), (LENGTH / 2, WIDTH / 2, TALL))
-        plug = box((-LENGTH / 2 + WALL, -WIDTH / 2 + WALL, -1.0), (LENGTH / 2 - WALL, WIDTH / 2 - WALL, TALL - WALL))
-        cavity = cut(box((low[0], low[1], 0.0), high), outer)
-        core = fuse(box(low, (high[0], high[1], 0.0)), plug)
+        cavity = cut(box((low[0], low[1], 0.0), high), outer_solid(self.lean))
+        core = fuse(box(low, (high[0], high[1], 0.0)), inner_solid(self.lean))
         steels = []
         for name, one in zip(self.names, self.driven, strict=True):
             frame = across(one.front.axis)
             far = float(np.abs(frame[2]) @ np.maximum(np.abs(low), np.abs(high)))
             tool = prism(one.front, far)
             tool = common(tool, box(low, high))
-            cavity = cut(cavity, tool)
-            steels.append(SideSteel(name, one.front, cut(tool, part(self.openings).solid)))
-        return Halves(cavity, core, Body(shell()), np.zeros(0, bool), 0.0, low, high, (), tuple(steels),
-                      part(self.openings).solid)  # fmt: skip
+            cavity, core = cut(cavity, tool), cut(core, tool)
+            before = [prism(d.front, far) for d in self.driven[: len(steels)] if one.under]
+            steels.append(SideSteel(name, one.front, largest(tool, part(self.openings, self.lean).solid, *before)))
+        return Halves(cavity, core, Body(shell(self.lean)), np.zeros(0, bool), 0.0, low, high, (), tuple(steels),
+                      part(self.openings, self.lean).solid)  # fmt: skip
 
     @cached_property
     def made(self) -> SideCut:
@@ -179,3 +210,18 @@ def failed(mold: SideMold, steps: Sequence[Step] | None = None) -> set[str]:
     proofs = prove_tool(mold.bodies, claims(mold, steps))
     assert len(proofs) == 7
     return {p.name for p in proofs if not p.passed and p.name != EJECTORS_MOVE}
+
+
+def leaning_mold() -> SideMold:
+    """A window in a wall that leans 2 mm over 30: the core's wall under the window stands further out than its top."""
+    lean = 2.0
+    inner, outer = LENGTH / 2 - WALL - 18.0 * lean / TALL, LENGTH / 2 - 10.0 * lean / TALL
+    front = replace(window_front(ONE[0]), near=inner, clear=outer, travel=LENGTH / 2 - inner)
+    return SideMold(ONE, drive_fronts([front], part(ONE, lean), 0.0)[0], lean)
+
+
+def oblique(degrees: float) -> tuple[Opening, ...]:
+    """A window through the wall to +x whose slide leaves at an angle in plan."""
+    turn = math.radians(degrees)
+    middle = -(LENGTH / 2 - WALL / 2) * math.sin(turn)
+    return (((math.cos(turn), math.sin(turn), 0.0), middle - 5.0, middle + 5.0, 10.0, 18.0),)

@@ -15,6 +15,7 @@ from helpers.side_molds import (
     SideMold,
     X,
     Y,
+    leaning_mold,
     part,
     shell,
     side_mold,
@@ -29,7 +30,7 @@ from moldgen.kernel.body import Body
 from moldgen.layout.lifters import lay_out_lifter
 from moldgen.layout.side_actions import lay_out_sides, room_needed
 from moldgen.layout.side_checks import check_slide
-from moldgen.layout.side_drive import Driven, drive_fronts
+from moldgen.layout.side_drive import Driven, drive_fronts, steel_names
 from moldgen.layout.side_neighbors import plan_gap, refuse_meeting
 from moldgen.layout.slide_body import wanted_bodies
 from moldgen.model.layout import BlockLayout
@@ -87,6 +88,17 @@ def test_steel_behind_a_lip_cannot_go_along() -> None:
     found = drive_of(window_cut(fuse(flanged, box((33.0, -20.0, 0.0), (34.0, 20.0, 8.0)))))
     assert (found.drive, found.caught) == (Drive.CYLINDER, True)
     assert found.front.outline[0].tolist() == window_front(ONE[0]).outline[0].tolist()
+
+
+def test_under_a_drafted_wall_the_steel_begins_outside_the_core() -> None:
+    """The core's wall stands at 28 under the window, its top at 26.8: the steel that goes along begins between."""
+    own, under = leaning_mold().driven
+    assert (own.under, under.under) == (False, True)
+    assert own.front.outline[0].tolist() == window_front(ONE[0]).outline[0].tolist()
+    assert LENGTH / 2 - WALL < under.front.near < LENGTH / 2 - 10.0 * 2.0 / 30.0
+    assert steel_names(leaning_mold().driven) == ["slide 1", "slide 1, under it"]
+    (slide,) = leaning_mold().layout.slides
+    assert slide.serves == ("slide 1", "slide 1, under it")
 
 
 def test_an_inclined_front_is_drawn_by_a_cylinder() -> None:

@@ -6,7 +6,20 @@ import math
 from dataclasses import replace
 
 import pytest
-from helpers.side_molds import LENGTH, MINUS_X, ONE, WALL, SideMold, X, Y, failed, side_mold, window_front
+from helpers.side_molds import (
+    LENGTH,
+    MINUS_X,
+    ONE,
+    WALL,
+    SideMold,
+    X,
+    Y,
+    failed,
+    leaning_mold,
+    oblique,
+    side_mold,
+    window_front,
+)
 
 from moldgen.errors import KernelError
 from moldgen.kernel.measure import volume
@@ -31,6 +44,9 @@ MOLDS = {
     "along y": side_mold(((Y, -10.0, 10.0, 3.0, 25.0),)),
     "deep": DEEP,
     "by cylinder": BY_CYLINDER,
+    "at 20 deg in plan": side_mold(oblique(20.0)),
+    "at -45 deg in plan": side_mold(oblique(-45.0)),
+    "in a wall with draft": leaning_mold(),
 }
 
 
