@@ -10,11 +10,14 @@ from moldgen.flow.job import JobResult, Table, verdict_code
 from moldgen.flow.record import notes_record, review_record
 from moldgen.flow.review import Reviewed, review
 from moldgen.flow.tell import Tell
-from moldgen.flow.words import direction_text, point_text
+from moldgen.flow.words import point_text, spec_direction
 from moldgen.spec.load import LoadedSpec
 
 MOST_ROWS = 20
 """Rows of a table on the terminal; the manifest has all of them."""
+
+MOST_PULLS = 5
+"""Pulls on the terminal; the manifest has the others, with the reasons."""
 
 
 def check_part(loaded: LoadedSpec, folder: Path, tell: Tell) -> JobResult:
@@ -42,18 +45,22 @@ def review_tables(reviewed: Reviewed) -> tuple[Table, ...]:
 def _pulls(reviewed: Reviewed) -> Table:
     rows = tuple(
         (
-            direction_text(c.direction),
+            spec_direction(c.direction),
             c.source,
-            round(c.score, 4),
-            round(c.trapped_mm2, 2),
+            round(c.score, 3),
+            round(100.0 * c.trapped_share, 2),
+            c.side_actions,
+            round(c.unreleased_mm2, 1),
             round(c.unevenness_mm, 2),
+            round(c.level_mm, 2),
             round(c.depth_mm, 1),
             round(c.projected_mm2 / 100, 2),
         )
-        for c in reviewed.release.pull_tried[:6]
+        for c in reviewed.candidates[:MOST_PULLS]
     )
-    columns = ("direction", "from", "score", "trapped [mm2]", "uneven line [mm]", "depth [mm]", "projected [cm2]")
-    return Table("pulls tried, best first", columns, rows)
+    reach = ("pull:", "from", "score", "out of reach [%]", "side actions", "not freed [mm2]")
+    columns = (*reach, "uneven line [mm]", "line at [mm]", "depth [mm]", "projected [cm2]")
+    return Table("pulls tried, best first (side actions and what they do not free: estimates)", columns, rows)
 
 
 def _faces(reviewed: Reviewed) -> Table:

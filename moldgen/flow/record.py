@@ -11,6 +11,7 @@ from moldgen.canon import plain, sha256_bytes
 from moldgen.finding import Notes
 from moldgen.flow.report import CAUTIONS, sorted_findings
 from moldgen.flow.review import Reviewed
+from moldgen.flow.words import spec_direction
 from moldgen.model.proof import Proof
 from moldgen.model.tool import Component, Tool
 
@@ -41,6 +42,9 @@ def review_record(reviewed: Reviewed) -> dict[str, Any]:
             "direction": reviewed.pull.direction,
             "how_chosen": reviewed.pull.how_chosen,
             "part_to_mold_rotation": frame.rotation,
+            "candidates": [
+                {"write_as": f"pull: {spec_direction(c.direction)}", **plain(c)} for c in reviewed.candidates
+            ],
         },
         "release": reviewed.release,
     }

@@ -76,7 +76,7 @@ def open_part(loaded: LoadedSpec, tell: Tell) -> Source:
         stage.detail = f"{part.face_count} faces, {part.volume_mm3 / 1000:.2f} cm3"
     with tell.stage("choose the pull") as stage:
         pulls, candidates = _pulls(loaded, part)
-        stage.detail = direction_text(pulls[0].direction)
+        stage.detail = direction_text(pulls[0].direction) + _outlook(candidates)
     return Source(part, pulls, candidates, notes)
 
 
@@ -214,7 +214,7 @@ def _pulls(loaded: LoadedSpec, part: Part) -> tuple[tuple[Pull, ...], tuple[Pull
         return (Pull(direction, why),), ()
     if given is not None:
         return (Pull(given, "given in the spec"),), ()
-    found = search_pull(Body(part.solid), axes_only=section.search == "axes")
+    found = search_pull(_meshed(part), axes_only=section.search == "axes")
     return tuple(Pull(c.direction, c.why) for c in found), found
 
 

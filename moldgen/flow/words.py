@@ -22,6 +22,16 @@ def direction_text(direction: Sequence[float]) -> str:
     return ", ".join(f"{round(v, 4) + 0.0:g}" for v in direction)
 
 
+def spec_direction(direction: Sequence[float]) -> str:
+    """Return a direction exactly as it can be pasted behind ``pull:``, good to 1e-6.
+
+    >>> spec_direction((0.0, 0.0, -1.0)), spec_direction((0.6, 0.0, 0.8))
+    ('-z', '[0.6, 0, 0.8]')
+    """
+    text = direction_text(direction)
+    return text if len(text) == 2 else f"[{', '.join(f'{round(v, 6) + 0.0:.6g}' for v in direction)}]"
+
+
 def told_note(note: str) -> str:
     """Return the note of a component with the names of its equals shortened to their numbers.
 

@@ -16,7 +16,10 @@ FLAT_FACES, ROUND_FACES = 10, 8
 """How many directions of flat faces, and of axes of round and extruded faces, are tried. Our choice."""
 
 WALLS = 6
-"""Of so many directions of flat faces each two are taken as walls, and the line along both of them is tried."""
+"""Of so many directions of flat walls each two are taken together, and the line along both of them is tried."""
+
+DRAFTED = 0.9945
+"""Cosine (6 deg) up to which two flat directions are taken for walls drafted against each other: their mean counts."""
 
 SKEW = 0.1
 """Sine of the least angle between two directions that fix a frame, or a line along two walls."""
@@ -78,7 +81,7 @@ def pull_axes(frame: PartFrame, *, axes_only: bool = False) -> list[tuple[str, n
     named = [("axis z", np.eye(3)[2]), ("axis y", np.eye(3)[1]), ("axis x", np.eye(3)[0])]
     if axes_only:
         return named
-    walls = [axis for axis, _ in frame.flat[:WALLS]]
+    walls = _walls([axis for axis, _ in frame.flat])[:WALLS]
     along = [np.cross(a, b) for i, a in enumerate(walls) for b in walls[i + 1 :]]
     found = [
         *(("flat face", axis) for axis, _ in frame.flat[:FLAT_FACES]),
@@ -92,6 +95,20 @@ def pull_axes(frame: PartFrame, *, axes_only: bool = False) -> list[tuple[str, n
         if not any(same_axis(drawn[1], other) for _, other in kept):
             kept.append(drawn)
     return kept
+
+
+def _walls(normals: list[np.ndarray]) -> list[np.ndarray]:
+    """Return one direction for all flat walls that are drafted against each other, the largest first."""
+    groups: list[list[np.ndarray]] = []
+    for normal in normals:
+        for group in groups:
+            if same_axis(normal, group[0], DRAFTED):
+                group.append(normal if normal @ group[0] > 0.0 else -normal)
+                break
+        else:
+            groups.append([normal])
+    means = [np.sum(group, axis=0) for group in groups]
+    return [mean / np.linalg.norm(mean) for mean in means]
 
 
 def same_axis(one: np.ndarray, other: np.ndarray, cosine: float = SAME_AXIS) -> bool:

@@ -16,8 +16,9 @@ from moldgen.release.reach import WALL_SINE, Samples, surface_samples, trapped_p
 from moldgen.release.side_estimate import SideEstimate, estimate_sides
 from moldgen.release.sphere import free_directions
 
-SAMPLES, ROUGH_SAMPLES = 12000, 1000
-"""Points of the surface that are asked whether steel can reach them: of the few best directions, and of all others."""
+SAMPLES, FINE_SAMPLES, ROUGH_SAMPLES = 12000, 2500, 1000
+"""Points of the surface that are asked whether steel can reach them: of the few best directions, of those that the
+search refines, and of all others."""
 
 FINALISTS, LISTED = 12, 8
 """Directions that are looked at closely, and of these the distinct ones that are returned. Our choice."""
@@ -128,12 +129,14 @@ def search_pull(part: Body, *, axes_only: bool = False) -> tuple[PullCandidate, 
     KernelError : the part cannot be meshed
     """
     frame = part_frame(part)
-    samples, rough = surface_samples(part, SAMPLES), surface_samples(part, ROUGH_SAMPLES)
+    tracer = Tracer(part.mesh)
+    samples, rough = surface_samples(part, tracer, SAMPLES), surface_samples(part, tracer, ROUGH_SAMPLES)
     hull, volume = convex_hull(part, frame.rows), part.mesh.volume()
-    scene = _Scene(part, volume, frame, hull, Tracer(part.mesh), samples, rough)
+    scene = _Scene(part, volume, frame, hull, tracer, samples, rough)
     proposed = pull_axes(frame, axes_only=axes_only)
     if not axes_only:
-        proposed += [("search", axis) for axis in free_directions(scene.tracer, rough, frame)]
+        fine = surface_samples(part, tracer, FINE_SAMPLES)
+        proposed += [("search", axis) for axis in free_directions(tracer, rough, fine, frame)]
     first = sorted((_figures(scene, rough, way) for way in proposed), key=_rank)[:FINALISTS]
     close = sorted((_figures(scene, samples, (f.source, f.axis)) for f in first), key=_rank)
     best = sorted((_with_sides(scene, f) for f in _distinct(close)), key=_rank)

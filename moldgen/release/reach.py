@@ -16,7 +16,11 @@ LEAN = 0.2
 """Sine (11.5 deg) of the lean that costs as much as being out of reach, see `lean_cost`. Our choice: wider than the
 distance between neighbors of the coarse grid, so that some grid direction lies in the funnel of every good pull."""
 
-TAPER_WEIGHT = 0.02
+STEP = 0.25
+"""What a point that leans the wrong way costs at once; the rest grows with its lean. Our choice: most of the cost must
+lead the search, but one point out of reach must outweigh the taper of all others."""
+
+TAPER_WEIGHT = 0.001
 """What taper is worth in `lean_cost`: enough to center a direction in the play that drafted walls leave it."""
 
 
@@ -25,12 +29,14 @@ class Samples:
     """Points spread over the surface, each for the same area.
 
     points : (n, 3) [mm], lifted off the surface a little; normals : (n, 3) unit; face : (n,) face numbers
+    faced : (n,) bool, whether plastic stands before the point, as on the walls of a pocket
     area_mm2 : of the whole surface
     """
 
     points: np.ndarray
     normals: np.ndarray
     face: np.ndarray
+    faced: np.ndarray
     area_mm2: float
 
     @property
@@ -39,7 +45,7 @@ class Samples:
         return float(np.sqrt(self.area_mm2 / len(self.points)))
 
 
-def surface_samples(part: Body, count: int) -> Samples:
+def surface_samples(part: Body, tracer: Tracer, count: int) -> Samples:
     """Return `count` points spread evenly over the surface of a part; they turn with its mesh."""
     total = np.cumsum(part.triangle_areas)
     place = (np.arange(count) + 0.5) * (total[-1] / count)
@@ -53,7 +59,8 @@ def surface_samples(part: Body, count: int) -> Samples:
     normals = part.mesh.normals[triangle]
     normals = normals / np.maximum(np.linalg.norm(normals, axis=1), 1e-30)[:, None]
     lift = 0.02 + 1e-4 * part.diagonal
-    return Samples(points + lift * normals, normals, part.mesh.face[triangle], float(total[-1]))
+    points = points + lift * normals
+    return Samples(points, normals, part.mesh.face[triangle], tracer.blocked(points, normals), float(total[-1]))
 
 
 def trapped_points(tracer: Tracer, samples: Samples, axis: np.ndarray) -> np.ndarray:
@@ -92,16 +99,20 @@ def lean_cost(tracer: Tracer, samples: Samples, axis: np.ndarray) -> float:
 
     A wall without draft is out of reach as soon as the pull leans off it, so the trapped share itself has narrow
     valleys between flat plateaus. Here a point that could be left the other way, if only its wall did not lean, costs
-    in proportion to the lean. Walls that taper earn a little, with decreasing returns: best in the middle of the play.
+    in proportion to the lean. Walls of pockets that taper earn a little, with decreasing returns: best in the middle
+    of the play. Outer walls may taper as they like.
     """
     sine = samples.normals @ axis
     lean = np.clip(np.abs(sine) / LEAN, 0.0, 1.0)
     way = np.where(sine >= 0.0, 1.0, -1.0)[:, None] * axis
     shut = tracer.blocked(samples.points, way)
     asked = np.flatnonzero(shut & (lean < 1.0))
+    upright = (np.abs(sine[asked]) < WALL_SINE)[:, None]
     along = -way[asked] + np.abs(sine[asked])[:, None] * samples.normals[asked]  # back, along the wall
     along = along / np.linalg.norm(along, axis=1)[:, None] + WALL_SINE * samples.normals[asked]
+    along = np.where(upright, -way[asked], along)
     cost = shut.astype(float)
     free = ~tracer.blocked(samples.points[asked], along)
-    cost[asked[free]] = lean[asked[free]]
-    return float(cost.mean() - TAPER_WEIGHT * np.where(shut, 0.0, np.sqrt(lean)).mean())
+    cost[asked[free]] = np.where(upright[:, 0], 0.0, STEP + (1.0 - STEP) * lean[asked])[free]
+    taper = np.sqrt(np.maximum(lean - WALL_SINE / LEAN, 0.0))
+    return float(cost.mean() - TAPER_WEIGHT * np.where(shut | ~samples.faced, 0.0, taper).mean())

@@ -12,7 +12,6 @@ from moldgen.model.part import MoldFrame
 from moldgen.release.draft import FaceDraft, Half, draft_findings, draft_table
 from moldgen.release.kinds import FaceKinds, Kind
 from moldgen.release.place import face_at, face_place, part_point
-from moldgen.release.pull import PullCandidate
 from moldgen.release.trapped import Grip, Trapped, TrapPiece
 
 
@@ -61,13 +60,12 @@ class DraftSummary:
 
 @dataclass(frozen=True)
 class ReleaseReview:
-    """How the part leaves the steel along its pull; `pull_tried` is empty when the pull was given."""
+    """How the part leaves the steel along its pull."""
 
     faces: tuple[KindCount, ...]
     halves: tuple[KindCount, ...]
     draft: DraftSummary
     trapped: tuple[TrappedPlace, ...]
-    pull_tried: tuple[PullCandidate, ...] = ()
 
     @property
     def releases(self) -> bool:
@@ -83,7 +81,6 @@ def review_release(
     *,
     contact: np.ndarray | None = None,
     frame: MoldFrame | None = None,
-    tried: tuple[PullCandidate, ...] = (),
 ) -> tuple[ReleaseReview, Notes]:
     """Return the review of a body that stands in the mold frame, and its findings with points in part coordinates.
 
@@ -92,7 +89,6 @@ def review_release(
     kinds, trapped, contact : what `face_kinds`, `trapped_volume` and `vertical_contact` found on this body
     required_deg : draft asked for, texture allowance included
     frame : how part points became mold points; None if the body stands in its own coordinates
-    tried : the candidates of the pull search, best first
     """
     rows = tuple(_in_part(row, frame) for row in draft_table(body, kinds, required_deg, contact))
     short = draft_findings(rows, required_deg)
@@ -108,7 +104,6 @@ def review_release(
             rows,
         ),
         trapped=places,
-        pull_tried=tried,
     )
     return review, Notes(trapped_findings(body, trapped, frame) + short)
 

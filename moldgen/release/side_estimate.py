@@ -29,6 +29,10 @@ FEWEST = 3
 WHOLE = 0.95
 """Share of a place's points that a direction must free to count as freeing the place: rays graze at its rims."""
 
+LONG_WAY = 0.25
+"""Share of the part's diagonal by which a side action may travel farther for a place than by the shortest way out.
+Our choice: a window is opened from its own side, not through the opposite one."""
+
 FEW = 0.02
 """Share of all trapped points that a direction must free to be worth a side action of its own."""
 
@@ -68,7 +72,7 @@ def estimate_sides(
         return SideEstimate(np.zeros((0, 3)), 0, 0.0)
     ways = _ways(frame, axis)
     freed = np.stack([_freed(tracer, samples, chosen, way) for way in ways], axis=1)
-    used, left = _cover(freed, place)
+    used, left = _cover(freed, place, _opened(part, ways, samples.points[chosen], freed, place))
     each = samples.area_mm2 / len(samples.points) * step
     return SideEstimate(ways[used], len(np.unique(place)), float(left.sum()) * each)
 
@@ -106,7 +110,18 @@ def _freed(tracer: Tracer, samples: Samples, chosen: np.ndarray, way: np.ndarray
     return free
 
 
-def _cover(freed: np.ndarray, place: np.ndarray) -> tuple[list[int], np.ndarray]:
+def _opened(part: Body, ways: np.ndarray, points: np.ndarray, freed: np.ndarray, place: np.ndarray) -> np.ndarray:
+    """Return which places are opened by which directions without a detour, (places, ways) bool."""
+    size = np.bincount(place)
+    share = np.stack([np.bincount(place, column, len(size)) for column in freed.T], axis=1)
+    whole = share >= WHOLE * size[:, None]
+    innermost = np.full(share.shape, np.inf)
+    np.minimum.at(innermost, place, points @ ways.T)
+    travel = np.where(whole, (part.mesh.vertices @ ways.T).max(axis=0) - innermost, np.inf)
+    return np.asarray(whole & (travel <= travel.min(axis=1)[:, None] + LONG_WAY * part.diagonal))
+
+
+def _cover(freed: np.ndarray, place: np.ndarray, opened: np.ndarray) -> tuple[list[int], np.ndarray]:
     """Return the directions taken, and which points are left.
 
     Whole places first, since one slide that opens a place is worth more than two that each open a part of two; then
@@ -115,9 +130,10 @@ def _cover(freed: np.ndarray, place: np.ndarray) -> tuple[list[int], np.ndarray]
     used: list[int] = []
     left = np.ones(len(place), dtype=bool)
     size = np.bincount(place)
-    share = np.stack([np.bincount(place, column, len(size)) for column in freed.T], axis=1)
-    opened = (share >= WHOLE * size[:, None])[place]  # the few points of such a place that graze are freed with it
-    for gain, fewest in ((opened, FEWEST), (freed, max(FEWEST, FEW * len(place)))):
+    # the few points of an opened place that graze are freed with it
+    for gain, fewest in ((opened[place], FEWEST), (freed, max(FEWEST, FEW * len(place)))):
+        for way in used:  # what a side action of a whole place opens by the way
+            left &= ~freed[:, way]
         while True:
             count = (gain & left[:, None]).sum(axis=0)
             best = int(np.argmax(count))
@@ -125,7 +141,5 @@ def _cover(freed: np.ndarray, place: np.ndarray) -> tuple[list[int], np.ndarray]
                 break
             used.append(best)
             left &= ~gain[:, best]
-        for way in used:  # what a side action opens by the way
-            left &= ~freed[:, way]
     stray = np.bincount(place[left], minlength=len(size)) < np.maximum(FEWEST, (1.0 - WHOLE) * size)
     return used, left & ~stray[place]

@@ -24,32 +24,31 @@ RING, MOST_STEPS = 6, 24
 """Directions on the rim of a cap; moves and shrinkings after which a start is left as it is."""
 
 
-def free_directions(tracer: Tracer, samples: Samples, frame: PartFrame) -> list[np.ndarray]:
+def free_directions(tracer: Tracer, rough: Samples, fine: Samples, frame: PartFrame) -> list[np.ndarray]:
     """Return directions, best first, along which locally the least of the surface is out of reach.
 
-    The grid stands in the frame of the part, so that it turns with the part.
+    The grid stands in the frame of the part, so that it turns with the part. It is judged by the `rough` samples, what
+    is refined by the `fine` ones.
     """
     turn = np.arange(GRID)
     height = (turn + 0.5) / GRID
     ring, angle = np.sqrt(1.0 - height**2), turn * 2.399963229728653  # golden angle: even over the sphere
     grid = np.stack([ring * np.cos(angle), ring * np.sin(angle), height], axis=1) @ frame.rows
-    costs = [lean_cost(tracer, samples, axis) for axis in grid]
+    costs = [lean_cost(tracer, rough, axis) for axis in grid]
     starts: list[int] = []
     for place in sorted(range(GRID), key=lambda i: (round(costs[i], 9), i)):
         if all(not same_axis(grid[place], grid[other], APART) for other in starts):
             starts.append(place)
         if len(starts) == STARTS:
             break
-    refined = [_refined(tracer, samples, frame, (grid[i], costs[i])) for i in starts]
+    refined = [_refined(tracer, fine, frame, grid[i]) for i in starts]
     refined.sort(key=lambda found: round(found[1], 9))
     return [axis for axis, _ in refined]
 
 
-def _refined(
-    tracer: Tracer, samples: Samples, frame: PartFrame, start: tuple[np.ndarray, float]
-) -> tuple[np.ndarray, float]:
+def _refined(tracer: Tracer, samples: Samples, frame: PartFrame, start: np.ndarray) -> tuple[np.ndarray, float]:
     """Move to the best direction on the rim of a cap, or shrink the cap when none is better."""
-    axis, cost = start
+    axis, cost = start, lean_cost(tracer, samples, start)
     radius = FIRST_CAP
     turn = 0.0
     for _ in range(MOST_STEPS):
