@@ -57,6 +57,11 @@ def grown(shape: Region, by: float, smooth: float = 0.0) -> Region:
     return wider.simplify(smooth) if smooth > 0.0 else wider
 
 
+def shifted(shape: Region, by: np.ndarray) -> Region:
+    """Return the region moved by a vector (2,)."""
+    return shape.translate((float(by[0]), float(by[1])))
+
+
 def polygons(shape: Region) -> tuple[np.ndarray, ...]:
     """Return the polygons of a region, largest area first."""
     found = [np.asarray(p, dtype=float) for p in shape.to_polygons()]

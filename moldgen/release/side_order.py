@@ -6,6 +6,7 @@ from moldgen.kernel.mesh_prism import bounds as region_bounds
 from moldgen.kernel.mesh_prism import box_of, grown, hull, rectangle, shadow
 from moldgen.kernel.meshsolid import MeshSolid, thick_pieces, union
 from moldgen.release.side_front import Found, obstacles, settled
+from moldgen.release.side_lifter import Lifted
 from moldgen.release.side_outline import LANDS, Outline, is_free
 from moldgen.release.side_search import Placed
 from moldgen.release.side_space import SideSpace
@@ -40,15 +41,18 @@ def merged(placed: list[Placed]) -> list[Placed]:
     return kept
 
 
-def _same_way(one: Found, other: Found) -> bool:
+def _same_way(one: Found | Lifted, other: Found | Lifted) -> bool:
+    if isinstance(one, Lifted) or isinstance(other, Lifted):
+        return False
     return one.view is other.view and abs(one.near - other.near) <= SAME_NEAR
 
 
 def _joined(one: Placed, other: Placed) -> Placed | None:
     """Return one front that covers what two cover, or None."""
-    if not _same_way(one.found, other.found):
+    first, second = one.found, other.found
+    if isinstance(first, Lifted) or isinstance(second, Lifted) or not _same_way(first, second):
         return None
-    view, near = one.found.view, min(one.found.start, other.found.start)
+    view, near = first.view, min(first.start, second.start)
     seen = view.seen(union([one.covered, other.covered]))
     need = shadow(seen)
     forbidden = obstacles(view, need, near)
@@ -64,11 +68,13 @@ def _joined(one: Placed, other: Placed) -> Placed | None:
 
 
 def ordered(placed: list[Placed], space: SideSpace) -> list[Placed]:
-    """Return the fronts in an order in which each can leave: the earlier takes the steel where two overlap.
+    """Return slides in an order in which each can leave, then lifters. Where two overlap the earlier takes the steel.
 
     A front may not follow one that would cut its inner end off from its outer one.
     """
-    steel = [p.found.steel() - space.part for p in placed]
+    lifters = [p for p in placed if isinstance(p.found, Lifted)]
+    placed = [p for p in placed if not isinstance(p.found, Lifted)]
+    steel = [p.found.steel() - space.part for p in placed if isinstance(p.found, Found)]
     after: dict[int, set[int]] = {i: set() for i in range(len(placed))}
     for i in range(len(placed)):
         for j in range(i + 1, len(placed)):
@@ -84,7 +90,7 @@ def ordered(placed: list[Placed], space: SideSpace) -> list[Placed]:
         ready = next((i for i in waiting if not after[i] & set(waiting)), waiting[0])
         order.append(ready)
         waiting.remove(ready)
-    return [placed[i] for i in order]
+    return [*(placed[i] for i in order), *lifters]
 
 
 def _held(placed: Placed, left: MeshSolid) -> bool:

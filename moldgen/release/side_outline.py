@@ -60,7 +60,12 @@ def is_free(shape: Region, forbidden: Region) -> bool:
 def carved(need: Region, forbidden: Region) -> Region:
     """Return what may be covered of a need with a land, without what blocks it and without narrow necks."""
     low, high = bounds(need)
-    left = rectangle(low - LANDS[2], high + LANDS[2]) - grown(forbidden, GAP, SMOOTH)
+    return carved_from(rectangle(low - LANDS[2], high + LANDS[2]), need, forbidden)
+
+
+def carved_from(shape: Region, need: Region, forbidden: Region) -> Region:
+    """Return what is left of a shape without what blocks it and without narrow necks, where it serves the need."""
+    left = shape - grown(forbidden, GAP, SMOOTH)
     opened = grown(grown(left, -0.5 * LEAST_WIDTH), 0.5 * LEAST_WIDTH, SMOOTH) ^ left
     kept = [p for p in opened.decompose() if (p ^ need).area() > 1e-3]
     joined = region([])

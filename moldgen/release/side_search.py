@@ -9,11 +9,12 @@ import numpy as np
 
 from moldgen.kernel.body import Body
 from moldgen.kernel.mesh_prism import box_of
-from moldgen.kernel.meshsolid import MeshSolid, union
+from moldgen.kernel.meshsolid import MeshSolid, thick_pieces, union
 from moldgen.kernel.tracer import Tracer
 from moldgen.model.side_action import SideOptions
 from moldgen.release.side_choice import Candidates, as_vector, candidates, sample, shares
 from moldgen.release.side_front import Found, part_fronts, whole_front
+from moldgen.release.side_lifter import Lifted, Lifting, collide
 from moldgen.release.side_space import SideSpace, View
 from moldgen.release.trapped import TrapPiece
 
@@ -23,9 +24,12 @@ CLEAR_SHARE, SOME_SHARE = 0.97, 0.15
 OPENING_COST = 0.25
 """What one more direction costs, in part diagonals of steel reaching over the part: our choice."""
 
-MOST_TRIED, MOST_PARTIAL, DEEPEST, MOST_SPLITS = 8, 4, 2, 24
-"""Bounds of the search: directions tried for all of a space, for some of it, how often a space is split again, and how
-many splits are followed in all for one piece."""
+MOST_TRIED, MOST_LIFTERS, MOST_PARTIAL, DEEPEST, MOST_SPLITS = 8, 3, 4, 2, 10
+"""Bounds of the search: directions tried for all of a space, for a lifter, for some of a space, how often a space is
+split again, and how many splits are followed in all for one piece."""
+
+FREE_OF_CORE = 10.0
+"""How far [mm] the ejectors lift the part clear of the core if the spec does not give their stroke: our choice."""
 
 
 @dataclass
@@ -47,7 +51,7 @@ class Space:
 class Placed:
     """A front, the numbers of the pieces that it was found for, and the space that it lets out (mold frame)."""
 
-    found: Found
+    found: Found | Lifted
     pieces: tuple[int, ...]
     covered: MeshSolid
 
@@ -63,6 +67,11 @@ class Search:
         self._tracer = Tracer(body.mesh)
         self._views: dict[tuple[float, ...], View] = {}
         self._splits = 0
+        self._lifters: list[Lifted] = []
+        self._slides: list[MeshSolid] = []
+        height = float(body.box[1][2] - body.box[0][2])
+        stroke = options.ejection_stroke or height + FREE_OF_CORE
+        self.lifting = Lifting(self.shared, stroke, self._tracer)
         self.used: list[np.ndarray] = []
 
     def view(self, direction: np.ndarray) -> View:
@@ -94,8 +103,7 @@ class Search:
                 placed.append(_placed(found, spaces[i]))
         still: list[Space] = []
         for space in left:
-            self._splits = 0
-            several = self._shared_out(space)
+            several = self._otherwise(space)
             if several is None:
                 still.append(space)
             else:
@@ -103,8 +111,49 @@ class Search:
                 self._note(several)
         return placed, still
 
+    def _otherwise(self, space: Space) -> list[Placed] | None:
+        """Return what lets a space out that no slide square to the pull lets out whole: the next rungs, best first."""
+        lifted = self._lifted(space) if self.options.lifters else None
+        if lifted is not None:
+            return [lifted]
+        self._splits = 0
+        several = self._shared_out(space)
+        if several is None and self.options.inclined:
+            free = self.free(space, self.directions.inclined)
+            found = self._whole(space, self._ranked(space, self.directions.inclined, free, np.ones(len(free))))
+            several = [_placed(found, space)] if found is not None else None
+        return several
+
+    def _lifted(self, space: Space) -> Placed | None:
+        """Return a lifter for a space that meets no steel placed before it, or None."""
+        ways = []
+        for k, way in enumerate(self.directions.level):
+            need = self.lifting.need(space.points, way)
+            if need is not None:
+                ways.append((round(need, 4), k))
+        if not ways:
+            space.tried.append("lifter: no level way within the stroke frees it")
+        for need, k in sorted(ways)[:MOST_LIFTERS]:
+            made = self.lifting.lifter(space.solid, self.directions.level[k], need)
+            if isinstance(made, str):
+                space.tried.append(f"lifter along {_words(self.directions.level[k])}: {made}")
+            elif any(collide(made, other) for other in self._lifters) or self._on_slides(made):
+                space.tried.append(
+                    f"lifter along {_words(self.directions.level[k])}: in the way of another side action"
+                )
+            else:
+                self._lifters.append(made)
+                return Placed(made, (space.piece,), space.solid)
+        return None
+
+    def _on_slides(self, made: Lifted) -> bool:
+        return any(thick_pieces(made.steel ^ body) for body in self._slides)
+
     def _note(self, placed: list[Placed]) -> None:
         for p in placed:
+            if isinstance(p.found, Lifted):
+                continue
+            self._slides.append(p.found.steel())
             way = np.asarray(p.found.view.direction)
             if all(float(way @ u) < 0.99999 for u in self.used):
                 self.used.append(way)
@@ -181,8 +230,9 @@ class Search:
         return None
 
 
-def _placed(found: Found, space: Space) -> Placed:
-    return Placed(found, (space.piece,), space.solid - union(list(found.rest)) if found.rest else space.solid)
+def _placed(found: Found | Lifted, space: Space) -> Placed:
+    rest = union(list(found.rest)) if isinstance(found, Found) and found.rest else None
+    return Placed(found, (space.piece,), space.solid if rest is None else space.solid - rest)
 
 
 def _words(way: np.ndarray) -> str:

@@ -9,7 +9,7 @@ import numpy as np
 
 from moldgen.kernel.body import Body
 from moldgen.kernel.mesh_prism import Region, prism, rectangle, triangles_region, turned
-from moldgen.kernel.meshsolid import MeshSolid
+from moldgen.kernel.meshsolid import MeshSolid, eroded
 from moldgen.model.part import Vector
 from moldgen.model.side_action import across
 from moldgen.tolerances import NOISE_THICKNESS
@@ -26,15 +26,20 @@ CLEAR_OF_PART = 10.0
 
 @dataclass(frozen=True)
 class SideSpace:
-    """What every search on one part shares: the part as a mesh solid, and its corners, (t, 3, 3) [mm]."""
+    """What every search on one part shares.
+
+    part : the part as a mesh solid; shrunk : with every face moved inward by the erosion of proofs
+    corners : of its triangles, (t, 3, 3) [mm]
+    """
 
     part: MeshSolid
+    shrunk: MeshSolid
     corners: np.ndarray
 
     @classmethod
     def of(cls, body: Body, part: MeshSolid) -> SideSpace:
         """Return the space around a body."""
-        return cls(part, body.mesh.corners)
+        return cls(part, eroded(body.mesh) or part, body.mesh.corners)
 
 
 class View:
