@@ -248,8 +248,8 @@ def _clear(task: Task, places: np.ndarray, kind: PinKind) -> np.ndarray:
         height, _ = view.underside(places[rows])
         free[rows] = side_steel(task, places[rows], kind, height).steel >= steel
         rows = np.flatnonzero(free)
-        # a face may belong to the part here and to a side action there
-        discs = task.under.discs(places[rows], np.full(len(rows), kind.diameter))
+        # one face may belong to the part here and to a side action there, without an edge between
+        discs = task.under.discs(places[rows], np.full(len(rows), kind.diameter + 2 * kind.edge))
         free[rows] = ~np.array([disc.aside for disc in discs], dtype=bool)
     return np.asarray(free)
 

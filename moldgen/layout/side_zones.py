@@ -29,6 +29,9 @@ BANDS: Final = 8
 ALIKE: Final = 0.05
 """mm: bands whose widths differ by less are one."""
 
+TOUCH: Final = 1e-6
+"""mm: heights that differ by less are one."""
+
 STRETCH: Final = 4.0
 """mm: length into which a prism that is neither level nor upright is cut; each stretch is taken as its hull in plan."""
 
@@ -96,7 +99,8 @@ def _level_front(name: str, front: Front, far: float) -> list[Zone]:
     zones: list[Zone] = []
     for polygon in outer_polygons(front):
         edges = np.linspace(polygon[:, 1].min(), polygon[:, 1].max(), BANDS + 1)
-        bands = [(*_width(polygon, a, b), a, b) for a, b in pairwise(edges)]
+        # a step that lies in the border of two bands belongs to the one that it widens
+        bands = [(*_width(polygon, a + TOUCH, b - TOUCH), a, b) for a, b in pairwise(edges)]
         joined = [bands[0]]
         for left, right, low, high in bands[1:]:
             last = joined[-1]

@@ -121,7 +121,7 @@ class Underside:
         points = places[:, None] + 0.5 * diameters[:, None, None] * pattern
         height, triangle = self.view.underside(points.reshape(-1, 2))
         aside = self.view.aside(np.column_stack([points.reshape(-1, 2), height]), triangle)
-        shape = (len(places), -1)
+        shape = (len(places), len(pattern))
         any_aside = np.asarray(aside.reshape(shape).any(axis=1))
         found = zip(height.reshape(shape), triangle.reshape(shape), any_aside, strict=True)
         return [self._disc(h, t, bool(a)) for h, t, a in found]

@@ -21,6 +21,9 @@ OFF = 1e-3
 LEVEL = 0.02
 """mm: what lies this close to the parting plane is on it."""
 
+TO_CENTRE = 0.1
+"""Way from a triangle's corner to its centre at which its corner is looked at."""
+
 THICKEST = 1e3
 """mm: stands for a wall that a ray does not leave (a hole in the mesh)."""
 
@@ -64,8 +67,14 @@ class PartView:
 
     @cached_property
     def formed_aside(self) -> np.ndarray:
-        """Which triangles a side action forms or takes the place of, (t,) bool."""
-        return self.keep_out.forms(self.centres, self.normals)
+        """Which triangles a side action forms or takes the place of, wholly as far as four points tell, (t,) bool."""
+        found = self.keep_out.forms(self.centres, self.normals)
+        for corner in range(3):
+            rows = np.flatnonzero(found)
+            points = self.mesh.corners[rows, corner]
+            points = points + TO_CENTRE * (self.centres[rows] - points)
+            found[rows] = self.keep_out.forms(points, self.normals[rows])
+        return found
 
     def aside(self, points: np.ndarray, triangles: np.ndarray) -> np.ndarray:
         """Return whether a side action forms surface points (k, 3) on triangles (k,), -1 for none, (k,) bool."""
