@@ -12,6 +12,7 @@ from moldgen.errors import PartError
 from moldgen.finding import Decision, Notes
 from moldgen.layout.lifters import lay_out_lifter
 from moldgen.layout.side_checks import check_slide
+from moldgen.layout.side_core_pins import core_pin_of
 from moldgen.layout.side_drive import Driven, is_level
 from moldgen.layout.side_neighbors import refuse_meeting
 from moldgen.layout.slide_body import SideTask, WantedBody, wanted_bodies
@@ -19,7 +20,7 @@ from moldgen.layout.slide_pin import PinChoice
 from moldgen.model.layout import BlockLayout
 from moldgen.model.part import Vector
 from moldgen.model.side_action import Front, SideKind, across
-from moldgen.model.slide import AngledPinLayout, Drive, SideLayout, SlideBody, SlideLayout
+from moldgen.model.slide import AngledPinLayout, Drive, SideCorePinLayout, SideLayout, SlideBody, SlideLayout
 from moldgen.model.tool import Motion
 from moldgen.rules.side_practice import (
     LEDGE_HEIGHT,
@@ -77,7 +78,7 @@ def lay_out_sides(
     slides, notes = [], Notes()
     for wanted in wanted_bodies(_level_slides(driven), task):
         serves = tuple(names[n] for n in wanted.members)
-        slide = _slide(wanted, serves, task, block)
+        slide = _slide(wanted, serves, task, block, _core_pins(wanted.members, driven, names))
         slides.append(slide)
         notes += check_slide(slide, wanted, task) + _told(slide)
     for number, one in enumerate(driven):
@@ -136,7 +137,20 @@ def _exit(window: tuple[float, float], frame: np.ndarray, block: BlockLayout) ->
     return min(exits)
 
 
-def _slide(wanted: WantedBody, serves: tuple[str, ...], task: SideTask, block: BlockLayout) -> SlideLayout:
+def _core_pins(members: Sequence[int], driven: Sequence[Driven], names: Sequence[str]) -> tuple[SideCorePinLayout, ...]:
+    """Return the fronts that become pins of their own: round, long, and with no steel under them in their way."""
+    with_saddle = {n - 1 for n, d in enumerate(driven) if d.under}
+    own = (core_pin_of(driven[n].front, names[n]) for n in members if n not in with_saddle and not driven[n].under)
+    return tuple(pin for pin in own if pin is not None)
+
+
+def _slide(
+    wanted: WantedBody,
+    serves: tuple[str, ...],
+    task: SideTask,
+    block: BlockLayout,
+    core_pins: tuple[SideCorePinLayout, ...],
+) -> SlideLayout:
     axis: Vector = (float(wanted.axis[0]), float(wanted.axis[1]), 0.0)
     frame, window, wide = across(axis), wanted.window, LEDGE_WIDTH.default
     side = _exit((window.left - wide, window.right + wide), frame, block)
@@ -145,10 +159,11 @@ def _slide(wanted: WantedBody, serves: tuple[str, ...], task: SideTask, block: B
     name = serves[0]
     _refuse_no_room(name, body, wanted, block)
     if wanted.pin is None:
-        return SlideLayout(name, serves, axis, wanted.drive, Motion.CORE_HALF, body, wanted.travel, 0.0, 0.0)
-    pins = _pins(name, body, wanted, wanted.pin, block)
+        return SlideLayout(name, serves, axis, wanted.drive, Motion.CORE_HALF, body, wanted.travel, 0.0, 0.0,
+                           core_pins=core_pins)  # fmt: skip
+    pins = _pins(name, body, wanted, wanted.pin, block, core_pins)
     return SlideLayout(name, serves, axis, Drive.ANGLED_PIN, Motion.CORE_HALF, body, wanted.travel,
-                       wanted.pin.delay, wanted.pin.opening, pins)  # fmt: skip
+                       wanted.pin.delay, wanted.pin.opening, pins, core_pins)  # fmt: skip
 
 
 def _refuse_no_room(name: str, body: SlideBody, wanted: WantedBody, block: BlockLayout) -> None:
@@ -168,11 +183,16 @@ def _refuse_no_room(name: str, body: SlideBody, wanted: WantedBody, block: Block
 
 
 def _pins(
-    name: str, body: SlideBody, wanted: WantedBody, pin: PinChoice, block: BlockLayout
+    name: str,
+    body: SlideBody,
+    wanted: WantedBody,
+    pin: PinChoice,
+    block: BlockLayout,
+    core_pins: Sequence[SideCorePinLayout],
 ) -> tuple[AngledPinLayout, ...]:
     frame, slope = across((float(wanted.axis[0]), float(wanted.axis[1]), 0.0)), math.radians(pin.angle)
     hole = pin.hole_half + PIN_WALL.default
-    first = max(body.start + hole, wanted.part_reach)
+    first = max(body.start + max((p.depth for p in core_pins), default=0.0) + hole, wanted.part_reach)
     last = min(body.locking_top, body.side - body.height * math.tan(slope)) - hole
     if last < first - NO_ROOM:
         raise PartError(

@@ -12,6 +12,7 @@ from moldgen.layout.slide_body import SideTask, WantedBody
 from moldgen.layout.slide_pin import PinChoice
 from moldgen.model.slide import Drive, SlideBody, SlideLayout
 from moldgen.quantity import Quantity
+from moldgen.rules.core_pin import core_pin_slenderness_limit
 from moldgen.rules.sheet import measured
 from moldgen.rules.side_action import angled_pin_delay_pye, angled_pin_length_pye, angled_pin_opening_pye
 from moldgen.rules.side_practice import PIN_STRESS, SLIDE_FRICTION
@@ -37,7 +38,7 @@ def check_slide(slide: SlideLayout, wanted: WantedBody | None, task: SideTask) -
     notes = Notes(tuple(_cautions(slide)))
     if slide.body is None or wanted is None:
         return notes
-    notes += _guide(slide, slide.body)
+    notes += _guide(slide, slide.body) + _core_pins(slide)
     force = slide_melt_force_kazmer.line(f"locking of {slide.name}", task.pressure, wanted.area)
     area = measured("area of the forming faces along the travel", wanted.area, "mm^2", f"locking of {slide.name}")
     notes += Notes(quantities=(area, force))
@@ -61,6 +62,27 @@ def _guide(slide: SlideLayout, body: SlideBody) -> Notes:
         remedy="give a larger block, or leave its length and width (section blocks) to moldgen",
     )
     return Notes((finding,), quantities=(line,))
+
+
+def _core_pins(slide: SlideLayout) -> Notes:
+    """A side core pin is free at its tip, unless it stands against the core there."""
+    notes = Notes()
+    for pin in slide.core_pins:
+        limit = core_pin_slenderness_limit.line(f"length of {pin.name}", pin.diameter, tip_supported=False)
+        notes += Notes(quantities=(limit,))
+        if pin.slenderness > limit.value:
+            finding = Finding(
+                "side.slender_core_pin",
+                Severity.WARNING,
+                f"{pin.name} is {pin.slenderness:.1f} times as long as thick: the melt may bend it",
+                where=pin.name,
+                value=round(pin.slenderness, 2),
+                limit=limit.value,
+                unit="1",
+                remedy="let its tip into a bore of the core, or gate so that the melt comes from both sides",
+            )
+            notes += Notes((finding,))
+    return notes
 
 
 def _locking(slide: SlideLayout, body: SlideBody, force: float, task: SideTask) -> Notes:

@@ -12,6 +12,7 @@ import numpy as np
 from moldgen.catalog import Resin, steel
 from moldgen.kernel.body import Body
 from moldgen.kernel.side_window import Window, extent_in, joined_area
+from moldgen.layout.side_core_pins import round_front
 from moldgen.layout.side_drive import Driven
 from moldgen.layout.slide_pin import PinChoice, choose_pin, too_far_for_pin
 from moldgen.model.side_action import Front, across
@@ -152,7 +153,8 @@ def _with_pin(found: WantedBody, group: Sequence[tuple[int, Driven]], length: fl
     foot = _foot(found.area, window.right - window.left, rise, task)
     reach = _part_over(found, pin, task)
     hole = pin.hole_half
-    first = max(found.start + PIN_WALL.default + hole, reach)
+    seats = [pin.depth for pin in (round_front(f) for f in fronts) if pin is not None]
+    first = max(found.start + max(seats, default=0.0) + PIN_WALL.default + hole, reach)
     behind = PIN_WALL.default + hole
     top_length = first - found.start + behind + foot + rise * math.tan(math.radians(locking))
     lean = (window.high - window.low) * math.tan(math.radians(pin.angle))

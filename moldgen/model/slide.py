@@ -113,6 +113,23 @@ class SlideBody:
 
 
 @dataclass(frozen=True)
+class SideCorePinLayout:
+    """A long round front as a pin of its own, let into the slide from its front end and held there by a dowel.
+
+    front : name of its forming steel; u, z : of its axis, in the frame across the travel; diameter : of the shank in
+    the slide; depth : of its bore there; slenderness : length before the slide over the diameter of the front
+    """
+
+    name: str
+    front: str
+    u: float
+    z: float
+    diameter: float
+    depth: float
+    slenderness: float
+
+
+@dataclass(frozen=True)
 class SlideLayout:
     """One slide.
 
@@ -132,6 +149,7 @@ class SlideLayout:
     delay: float
     opening: float
     pins: tuple[AngledPinLayout, ...] = ()
+    core_pins: tuple[SideCorePinLayout, ...] = ()
 
     def footprint(self) -> np.ndarray:
         """Return the corners of body and ledges in plan, counterclockwise, (4, 2) [mm]; (0, 2) without a body."""

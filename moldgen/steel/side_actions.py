@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from functools import partial
 from typing import Any
 
 import numpy as np
@@ -13,17 +14,18 @@ from moldgen.errors import KernelError
 from moldgen.finding import Notes
 from moldgen.kernel.boolean import common, copied, cut, fuse
 from moldgen.kernel.cells import lost_volume, take_out
-from moldgen.kernel.measure import centroid, is_valid, volume
+from moldgen.kernel.measure import centroid, is_valid, volume, volume_adaptive
 from moldgen.kernel.merge import merged_faces
 from moldgen.kernel.rehearse import made_apart
 from moldgen.kernel.topology import solids_of
 from moldgen.model.halves import Halves, SideSteel
 from moldgen.model.side_action import across
-from moldgen.model.slide import LifterLayout, SideLayout, SlideBody, SlideLayout
+from moldgen.model.slide import LifterLayout, SideCorePinLayout, SideLayout, SlideBody, SlideLayout
 from moldgen.model.tool import Component, Hole, Motion, Role
 from moldgen.steel.bored import Removed
-from moldgen.steel.slide_bores import SideWork, bore_slide
-from moldgen.steel.slide_solids import Corners, before_start, body_solid, pin_solid
+from moldgen.steel.cutting import Wanted, cut_half
+from moldgen.steel.slide_bores import SURE, SideWork, bore_slide
+from moldgen.steel.slide_solids import Corners, before_start, body_solid, core_pin_seat, pin_solid
 
 SAME_VOLUME = 1e-5
 """Relative difference between a body and the steel that it is made of from which the kernel is not believed: the
@@ -90,10 +92,12 @@ def _whole_slide(work: SideWork, slide: SlideLayout, fronts: Sequence[SideSteel]
         return _one([s for front in fronts for s in solids_of(front.solid)], slide.name)
     body = body_solid(slide, work.corners)
     room = before_start(slide, work.corners)
-    inner, outer = [], []
+    own: dict[str, list[Any]] = {pin.front: [] for pin in slide.core_pins}
+    inner: list[Any] = []
+    outer: list[Any] = []
     for front in fronts:
         for solid in solids_of(front.solid):
-            inner += _thick(common(copied(solid), room))
+            own.get(front.name, inner).extend(_thick(common(copied(solid), room)))
             outer += _thick(cut(copied(solid), [room]))
     beyond = [s for solid in outer for s in _thick(cut(copied(solid), [body]))]
     from_cavity = _pocket(work.cavity, body, f"room for {slide.name} in the cavity")
@@ -104,7 +108,20 @@ def _whole_slide(work: SideWork, slide: SlideLayout, fronts: Sequence[SideSteel]
     for piece in beyond:  # a front that runs on past its body gives back what the halves need
         _give_back(work, slide.body, piece, slide.name)
     whole = _joined([*inner, body], f"join {slide.name}")
-    return bore_slide(work, slide, slide.body, merged_faces(whole))
+    whole = bore_slide(work, slide, slide.body, merged_faces(whole))
+    for pin in slide.core_pins:
+        whole = _core_pin(work, slide, pin, own[pin.front], whole)
+    return whole
+
+
+def _core_pin(work: SideWork, slide: SlideLayout, pin: SideCorePinLayout, front: list[Any], whole: Any) -> Any:
+    """Return the slide with the seat of a side core pin, which becomes a component: its front and the seat's plug."""
+    seat = cut_half(whole, [Wanted(pin.name, partial(core_pin_seat, slide, pin))], slide.name)
+    solid = _joined([*front, seat.plugs[0]], f"join {pin.name}")
+    note = f"shank {pin.diameter:g} mm, {pin.depth:g} mm deep in {slide.name}, held by a dowel (to be bought)"
+    work.components.append(Component(pin.name, Role.SIDE_CORE_PIN, solid, work.material, slide.name, note=note))
+    work.removed.append(Removed(slide.name, pin.name, volume_adaptive(solid, SURE)))
+    return copied(seat.half)
 
 
 @dataclass(frozen=True)

@@ -13,7 +13,7 @@ from moldgen.kernel.inclined import inclined_solid
 from moldgen.kernel.side_prism import outline_prism
 from moldgen.kernel.turned import turned_solid
 from moldgen.model.side_action import across
-from moldgen.model.slide import AngledPinLayout, SlideBody, SlideLayout
+from moldgen.model.slide import AngledPinLayout, SideCorePinLayout, SlideBody, SlideLayout
 from moldgen.rules.side_practice import UNDER_TIP
 
 OUT = 1.0
@@ -139,6 +139,14 @@ def core_bore_tool(place: tuple[float, float, float, float, float], seam: float)
     """Return the tool of the upright bore; it ends above the floor of the slide's guide, in the open."""
     x, y, diameter, low, high = place
     return turned_solid((x, y), [(diameter / 2, low), (diameter / 2, high + OUT)], seam)
+
+
+def core_pin_seat(slide: SlideLayout, pin: SideCorePinLayout, seam: float) -> Any:
+    """Return the shank of a side core pin in its slide, from the slide's front end."""
+    body, frame = _body(slide), across(slide.axis)
+    x, y, z = (float(v) for v in pin.u * frame[0] + pin.z * frame[1] + body.start * frame[2])
+    along = (float(frame[2][0]), float(frame[2][1]), float(frame[2][2]))
+    return inclined_solid((x, y, z), along, [(pin.diameter / 2, 0.0), (pin.diameter / 2, pin.depth)], seam)
 
 
 def rod_tool(slide: SlideLayout, corners: Corners, seam: float) -> Any:
