@@ -17,3 +17,13 @@ def real_parts() -> Path:
     if not any(folder.glob("*.step")):
         pytest.skip(f"no real parts: set MOLDGEN_PARTS to a folder of STEP files (looked in {folder.name})")
     return folder
+
+
+def pytest_collection_modifyitems(config: pytest.Config, items: list[pytest.Item]) -> None:
+    """Leave out the long sweeps unless the marker is asked for: whatever else ``-m`` says, they are not meant."""
+    if "sweep" in config.option.markexpr:
+        return
+    long = [item for item in items if item.get_closest_marker("sweep")]
+    if long:
+        config.hook.pytest_deselected(items=long)
+        items[:] = [item for item in items if not item.get_closest_marker("sweep")]
