@@ -55,6 +55,12 @@ def parameter_range(edge: TopoDS_Edge) -> tuple[float, float]:
     return float(curve.FirstParameter()), float(curve.LastParameter())
 
 
+def place_on(edge: TopoDS_Edge, parameters: Sequence[float]) -> np.ndarray:
+    """Return the places on an edge's curve at parameters of it, (n, 3) [mm]."""
+    curve = BRepAdaptor_Curve(edge)
+    return np.array([curve.Value(float(t)).Coord() for t in parameters]).reshape(-1, 3)
+
+
 def _rebuilt(body: Body, face: TopoDS_Face, chains: Mapping[int, list[TopoDS_Edge]]) -> TopoDS_Face:
     """Return the face on its own surface with wires in which the chains stand for their edges, in running order."""
     builder = BRep_Builder()

@@ -12,9 +12,9 @@ from dataclasses import dataclass
 
 import numpy as np
 from OCP.BRepAdaptor import BRepAdaptor_Curve
-from OCP.gp import gp_Pnt, gp_Vec
+from OCP.gp import gp_Pln, gp_Pnt, gp_Vec
 from OCP.TopExp import TopExp
-from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Vertex
+from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Vertex, TopoDS_Wire
 
 from moldgen.errors import KernelError
 from moldgen.kernel.build import line_edge, plane_face, plane_through, vertex_at, wire_of
@@ -33,6 +33,9 @@ UPRIGHT = 1e-5
 
 STEEP = 0.2
 """A straight edge with less plan length than this share of its rise (11 deg to the pull) counts as a step."""
+
+LOW_STEP = 0.05
+"""mm: an upright step this low is within what spotting the halves against each other evens out (our choice)."""
 
 FLAT_LEFT = 2.0
 """mm of flat parting plane that must remain beyond the wall (our choice)."""
@@ -69,6 +72,18 @@ def level_land(loop: Loop, level: float, corners: tuple[np.ndarray, np.ndarray],
     return _Lander(loop, level, width, lean_deg).lay(corners)
 
 
+def level_lid(loop: Loop, level: float, width: float, lean_deg: float) -> tuple[TopoDS_Face, ...]:
+    """Return the faces that close a hole: a level land inward from its loop, a wall, and a flat lid at z = level [mm].
+
+    loop : clockwise seen along -z, so that the hole lies on its right; width, lean_deg : as of `level_land`
+
+    Raises
+    ------
+    KernelError : the hole is too narrow, or the kernel cannot make a face
+    """
+    return _Lander(loop, level, width, lean_deg).cover()
+
+
 def plan_edge(edge: TopoDS_Edge, level: float) -> PlanEdge:
     """Return how one edge of the line lies, and its places and directions in plan."""
     straight = is_straight(edge)
@@ -83,6 +98,12 @@ def plan_edge(edge: TopoDS_Edge, level: float) -> PlanEdge:
     if across < UPRIGHT:
         return PlanEdge(lie, points[[0, -1]], np.array([1.0, 0.0]), np.array([1.0, 0.0]))
     return PlanEdge(lie, points, *_end_tangents(edge, points))
+
+
+def _is_upright(edge: PlanEdge) -> bool:
+    """True for an edge along the pull that is high enough to matter."""
+    across, rise = np.ptp(edge.points[:, :2], axis=0).max(), np.ptp(edge.points[:, 2])
+    return bool(edge.lie is Lie.STEP and across < UPRIGHT and rise > LOW_STEP)
 
 
 def _end_tangents(edge: TopoDS_Edge, points: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
@@ -114,16 +135,30 @@ class _Lander:
 
     def lay(self, corners: tuple[np.ndarray, np.ndarray]) -> Land:
         self._refuse_room(corners)
+        foot = self._foot()
+        self._refuse_overhang(corners)
+        rim = rectangle_rim(*corners, self.level)
+        around = plane_face(self._plane(), wire_of(rim.edges), [TopoDS.Wire_s(foot.Reversed())])
+        return Land(self._sound(around), rim, self.width, self.run, sum(map(_is_upright, self.edges)))
+
+    def cover(self) -> tuple[TopoDS_Face, ...]:
+        foot = self._foot()
+        return self._sound(plane_face(self._plane(), foot))
+
+    def _plane(self) -> gp_Pln:
+        return plane_through((0, 0, self.level), (0, 0, 1))
+
+    def _foot(self) -> TopoDS_Wire:
+        """Make all land and wall; return the closed line in which they meet the flat plane."""
         self.plan = plan_land(self.edges, self.width, self.run)
         feet = [self._patch(p) for p in self.plan.patches]
-        foot = wire_of([*feet, *(self.loop[k] for k in self.plan.plain), *self._legs_on_plane()])
-        rim = rectangle_rim(*corners, self.level)
-        plane = plane_through((0, 0, self.level), (0, 0, 1))
-        around = plane_face(plane, wire_of(rim.edges), [TopoDS.Wire_s(foot.Reversed())])
-        if not is_valid(around) or any(not is_valid(f) for f in self.faces):
+        return wire_of([*feet, *(self.loop[k] for k in self.plan.plain), *self._legs_on_plane()])
+
+    def _sound(self, plane: TopoDS_Face) -> tuple[TopoDS_Face, ...]:
+        faces = (plane, *self.faces)
+        if any(not is_valid(f) for f in faces):
             raise KernelError("a face of the land is invalid")
-        upright = sum(e.lie is Lie.STEP for e in self.edges)
-        return Land((around, *self.faces), rim, self.width, self.run, upright)
+        return faces
 
     def _refuse_room(self, corners: tuple[np.ndarray, np.ndarray]) -> None:
         outline = np.vstack([e.points[:, :2] for e in self.edges if e.lie is not Lie.LEVEL])
@@ -135,6 +170,15 @@ class _Lander:
                 f"a land {self.width:g} mm wide, its wall and {FLAT_LEFT:g} mm of flat plane take {needed:.1f} mm, the "
                 f"block has {room:.1f} mm beside the part"
             )
+
+    def _refuse_overhang(self, corners: tuple[np.ndarray, np.ndarray]) -> None:
+        """Refuse a wall that leaves the block: round a sharp corner it reaches out further than elsewhere."""
+        low, high = (np.asarray(c)[:2] for c in corners)
+        for patch in self.plan.patches:
+            left = np.minimum(patch.foot - low, high - patch.foot).min(axis=1)
+            if left.min() < 0.5 * FLAT_LEFT:
+                x, y = patch.foot[int(np.argmin(left))]
+                raise KernelError(f"a land {self.width:g} mm wide and its wall leave the block near {x:.2f}, {y:.2f}")
 
     def _patch(self, patch: Patch) -> TopoDS_Edge:
         """Make the land and the wall of one piece; return the edge at the foot of the wall."""

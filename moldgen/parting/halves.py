@@ -18,7 +18,7 @@ from moldgen.kernel.shells import solid_from_faces
 from moldgen.kernel.walls import block_outside
 from moldgen.parting.accept import HalvesCheck, check_halves
 from moldgen.parting.level import LevelSearch, find_levels
-from moldgen.parting.refine import split_at_extremes, split_at_level, split_closed_edges, split_edges_at_level
+from moldgen.parting.refine import split_at_level, split_for_line
 from moldgen.parting.sides import Sides, assign_sides
 from moldgen.parting.surface import Outside, Rung, Sheet, close_holes, closings, joined, outer_loop, with_angles
 from moldgen.release.contact import vertical_contact
@@ -137,17 +137,9 @@ def _part_at(task: _Task, trial: _Trial) -> Parted:
     split = split_at_level(task.body, task.kinds, task.contact, task.search, level, all_faces=trial.deep)
     state = _assigned(split, level, task.avoid, (task.kinds, task.contact) if split is task.body else None)
     level = _own_level(state, level)
-    crossing = [split.edge_index.FindIndex(e) - 1 for e in state.loops[state.outer]]
-    cut = split_edges_at_level(split, crossing, level)
-    if cut is not split:
-        state = _assigned(cut, level, task.avoid, None)
-    if not _is_level(state, level):
-        cornered = split_at_extremes(state.body, state.loops[state.outer])
-        if cornered is not state.body:
-            state = _assigned(cornered, level, task.avoid, None)
-    opened = split_closed_edges(state.body, state.loops)
-    if opened is not state.body:
-        state = _assigned(opened, level, task.avoid, None)
+    ready = split_for_line(split, state.loops, state.outer, level)
+    if ready is not split:
+        state = _assigned(ready, level, task.avoid, None)
     if state.alike and not trial.deep:
         raise KernelError(f"{len(state.alike) + 1} loops run as the outer one does")
     return _halves(state, level, trial, task.corners)
@@ -160,10 +152,6 @@ def _own_level(state: _Assigned, level: float) -> float:
     """
     heights = loop_points(state.loops[state.outer], 8)[:, 2]
     return float(heights.mean()) if np.ptp(heights) < ON_PLANE and abs(heights.mean() - level) > ON_PLANE else level
-
-
-def _is_level(state: _Assigned, level: float) -> bool:
-    return bool(np.abs(loop_points(state.loops[state.outer], 8)[:, 2] - level).max() < ON_PLANE)
 
 
 @dataclass(frozen=True)

@@ -8,7 +8,7 @@ import numpy as np
 
 from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
-from moldgen.kernel.edge_split import parameter_range, split_edges
+from moldgen.kernel.edge_split import parameter_range, place_on, split_edges
 from moldgen.kernel.level_faces import split_vertical_faces
 from moldgen.kernel.level_split import level_curves, level_parameters, upright_lines
 from moldgen.kernel.patches import loop_points
@@ -17,7 +17,7 @@ from moldgen.kernel.runoff import extreme_parameters
 from moldgen.kernel.split import split_faces
 from moldgen.parting.level import LevelSearch
 from moldgen.release.kinds import FaceKinds, Kind
-from moldgen.tolerances import ON_PLANE
+from moldgen.tolerances import ON_PLANE, SHORT_EDGE
 
 ABOVE_BELOW = 1e-3
 """mm: a face must reach this far to both sides of the level to be split there."""
@@ -61,23 +61,37 @@ def split_at_level(
     return split_faces(body, faces, tools)
 
 
-def split_at_extremes(body: Body, loop: list[Any]) -> Body:
-    """Return the body with a vertex at each diagonal extreme of a loop, where its run-off turns a corner."""
+def split_for_line(body: Body, loops: list[list[Any]], outer: int, level: float) -> Body:
+    """Return the body with every vertex that the parting line needs, all made in one go.
+
+    The outer loop gets one where it passes through z = level, and where its run-off turns a corner if it is not flat; a
+    loop of one closed edge that is not flat gets two.
+    """
+    places = level_places(body, [body.edge_index.FindIndex(e) - 1 for e in loops[outer]], level)
+    if np.abs(loop_points(loops[outer], 8)[:, 2] - level).max() >= ON_PLANE:
+        for number, found in extreme_places(body, loops[outer]).items():
+            places[number] = _apart(body.edges[number], [*places.get(number, []), *found])
+    for number, found in closed_places(body, loops).items():
+        places.setdefault(number, found)
+    return split_edges(body, places) if places else body
+
+
+def extreme_places(body: Body, loop: list[Any]) -> dict[int, list[float]]:
+    """Return the curve parameters, by edge, of the diagonal extremes of a loop, where its run-off turns a corner."""
     places: dict[int, list[float]] = {}
     for number, parameter in extreme_parameters(loop):
         places.setdefault(body.edge_index.FindIndex(loop[number]) - 1, []).append(parameter)
-    return split_edges(body, places) if places else body
+    return places
 
 
-def split_edges_at_level(body: Body, edges: list[int], level: float) -> Body:
-    """Return the body with a vertex wherever one of the given edges passes through z = level."""
+def level_places(body: Body, edges: list[int], level: float) -> dict[int, list[float]]:
+    """Return the curve parameters, by edge, at which the given edges pass through z = level."""
     places = {number: level_parameters(body.edges[number], level) for number in edges}
-    places = {number: found for number, found in places.items() if found}
-    return split_edges(body, places) if places else body
+    return {number: found for number, found in places.items() if found}
 
 
-def split_closed_edges(body: Body, loops: list[list[Any]]) -> Body:
-    """Return the body with two vertices on each closed edge that makes a loop of the parting line which is not flat.
+def closed_places(body: Body, loops: list[list[Any]]) -> dict[int, list[float]]:
+    """Return two curve parameters on each closed edge that makes a loop of the parting line which is not flat.
 
     A curtain under one closed edge would close on itself along a seam, and the kernel copies edges there.
     """
@@ -86,4 +100,14 @@ def split_closed_edges(body: Body, loops: list[list[Any]]) -> Body:
         if len(loop) == 1 and np.ptp(loop_points(loop, 8)[:, 2]) > ON_PLANE:
             first, last = parameter_range(loop[0])
             places[body.edge_index.FindIndex(loop[0]) - 1] = [(2 * first + last) / 3, (first + 2 * last) / 3]
-    return split_edges(body, places) if places else body
+    return places
+
+
+def _apart(edge: Any, parameters: list[float]) -> list[float]:
+    """Return the parameters in order, without those whose places fall together with the one before."""
+    curve_points = place_on(edge, sorted(parameters))
+    kept: list[int] = []
+    for k in range(len(curve_points)):
+        if not kept or np.linalg.norm(curve_points[k] - curve_points[kept[-1]]) > SHORT_EDGE:
+            kept.append(k)
+    return [sorted(parameters)[k] for k in kept]

@@ -13,7 +13,7 @@ from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
 from moldgen.kernel.build import backward, plane_face, plane_through, wire_of
 from moldgen.kernel.curtain import Curtain, hang_curtain
-from moldgen.kernel.land import level_land
+from moldgen.kernel.land import level_land, level_lid
 from moldgen.kernel.measure import is_valid
 from moldgen.kernel.patches import filled_patch, flat_patches, host_patch, loop_points, signed_area
 from moldgen.kernel.runoff import run_off
@@ -33,6 +33,12 @@ LEAST_SHUT_OFF = float(np.sin(np.radians(SHUT_OFF_ANGLE.default)))
 LAND_WIDTHS = (SEALING_LAND.low, SMALL_SEALING_LAND.low)
 """mm: the land that steel seals on, and the least one, that of a small insert."""
 
+LID_WIDTHS = (2.0, 1.0, 0.5)
+"""mm: the land inside a hole, where there is less room (our choice)."""
+
+MOSTLY_LEVEL = 0.3
+"""Share of a rim that must lie at one height for the lid to lie there; else it lies half way up (our choice)."""
+
 WALL_LEAN = 15.0
 """deg between the pull and the wall from the land to the flat plane: three times the shut-off angle, since there is
 room for it (our choice)."""
@@ -45,6 +51,7 @@ class Rung(StrEnum):
     LAND = "level land, inclined wall and flat plane beyond"
     RUN_OFF = "carried level out to the sides of the block"
     LEVEL_AND_CURTAINS = "level plane with vertical curtains"
+    LID = "level land inward, inclined wall and flat lid"
     HOST = "the neighbouring wall carried across the hole"
     FILLED = "filled surface"
 
@@ -152,6 +159,8 @@ def closings(loop: Loop, level: float, corners: tuple[np.ndarray, np.ndarray]) -
     forward_loop = _counter_clockwise(loop)
     refused: list[str] = []
     for width in LAND_WIDTHS:
+        if refused and not refused[-1].startswith(f"{Rung.LAND}: a land {LAND_WIDTHS[0]:g} mm"):
+            break  # whatever the width
         try:
             land = level_land(forward_loop, level, corners, width, WALL_LEAN)
         except KernelError as error:
@@ -203,27 +212,45 @@ def _counter_clockwise(loop: Loop) -> list[Any]:
 
 
 def _close_hole(body: Body, loop: Loop) -> ClosedLoop:
-    """Close a hole whose rim is not flat: the neighbour's surface where it leans enough for steel on steel, level with
-    curtains, the neighbour's surface as steep as it is, a filling.
+    """Close a hole whose rim is not flat: the neighbour's surface where it leans enough for steel on steel, level land
+    and lid, level with curtains, the neighbour's surface as steep as it is, a filling.
     """
-    refused = []
+    refused: list[str] = []
     host = host_patch(body, loop)
     if host is not None and _leans(host):
         return _closed(Rung.HOST, loop, 0, [host])
-    for level in _levels_of(loop):
+    lid = _lid(loop, refused)
+    if lid is not None:
+        return lid
+    for level in _level_shares(loop)[0]:
         try:
             curtain = hang_curtain(loop, level)
-            lid = plane_face(plane_through((0, 0, level), (0, 0, 1)), wire_of(curtain.foot))
+            flat = plane_face(plane_through((0, 0, level), (0, 0, 1)), wire_of(curtain.foot))
         except KernelError as error:
             refused.append(f"level {level:.3f}: {error.what}")
             continue
-        if is_valid(lid) and all(is_valid(f) for f in curtain.faces):
-            return _closed(Rung.LEVEL_AND_CURTAINS, loop, curtain.off_plane, [lid, *curtain.faces], refused)
+        if is_valid(flat) and all(is_valid(f) for f in curtain.faces):
+            return _closed(Rung.LEVEL_AND_CURTAINS, loop, curtain.off_plane, [flat, *curtain.faces], refused)
         refused.append(f"level {level:.3f}: a face is invalid")
     if host is not None:
         return _closed(Rung.HOST, loop, 0, [host], refused)
     refused.append("no neighbour holds the whole rim")
     return _closed(Rung.FILLED, loop, 0, [filled_patch(loop)], refused)
+
+
+def _lid(loop: Loop, refused: list[str]) -> ClosedLoop | None:
+    """Return the hole closed by a lid; when none fits, None, and why in `refused`."""
+    heights, shares = _level_shares(loop)
+    level = heights[0] if shares[0] > MOSTLY_LEVEL else 0.5 * (heights[-2] + heights[-1])
+    clockwise = [backward(e) for e in reversed(_counter_clockwise(loop))]
+    for width in LID_WIDTHS:
+        try:
+            faces = level_lid(clockwise, level, width, WALL_LEAN)
+        except KernelError as error:
+            refused.append(f"{Rung.LID}: {error.what}")
+        else:
+            return _closed(Rung.LID, loop, 0, faces)
+    return None
 
 
 def _leans(patch: Face) -> bool:
@@ -232,21 +259,27 @@ def _leans(patch: Face) -> bool:
     return sines is not None and sines[0] * sines[1] > 0 and min(map(abs, sines)) >= LEAST_SHUT_OFF
 
 
-def _levels_of(loop: Loop) -> list[float]:
-    """Return heights at which to close a hole: where most of its rim is level, then its lowest and highest point."""
+def _level_shares(loop: Loop) -> tuple[list[float], list[float]]:
+    """Return heights at which to close a hole, where most of its rim is level first, then its lowest and highest point;
+    and the share of the rim (seen along the pull) that is level there.
+    """
     run: dict[float, float] = {}
     exact: dict[float, float] = {}
     every = []
+    total = 0.0
     for edge in loop:
         points = directed_points(edge, 5)
         every.append(points[:, 2])
+        length = float(np.linalg.norm(np.diff(points[:, :2], axis=0), axis=1).sum())
+        total += length
         if np.ptp(points[:, 2]) < 1e-5:
             height = round(float(points[2, 2]), 4)
             exact.setdefault(height, float(points[2, 2]))
-            run[height] = run.get(height, 0.0) + float(np.linalg.norm(np.diff(points[:, :2], axis=0), axis=1).sum())
+            run[height] = run.get(height, 0.0) + length
     heights = np.concatenate(every)
     level = sorted(run, key=lambda z: (-run[z], z))
-    return [*(exact[z] for z in level), float(heights.min()), float(heights.max())]
+    found = [*(exact[z] for z in level), float(heights.min()), float(heights.max())]
+    return found, [*(run[z] / max(total, 1e-12) for z in level), 0.0, 0.0]
 
 
 def _closed(rung: Rung, loop: Loop, off_plane: int, faces: Sequence[Face], refused: Sequence[str] = ()) -> ClosedLoop:

@@ -19,6 +19,7 @@ _WHY = {
     Rung.LAND: "the parting line rises and falls; steel seals on a level band around the part and is flat beyond",
     Rung.RUN_OFF: "the parting line rises and falls, but never doubles back along a side of the block",
     Rung.LEVEL_AND_CURTAINS: "no surface without vertical steps holds this line",
+    Rung.LID: "the rim rises and falls, and there is room for steel that leans against the pull",
     Rung.HOST: "the whole rim lies in the boundary of one wall",
     Rung.FILLED: "the rim lies on no plane, no level and no single wall",
 }

@@ -70,7 +70,7 @@ PARTS = {
     "holes in an arch": (
         solids.cut(ARCH, solids.cylinder(5, 40, at=(15, 0, 0)), solids.box((45, -3, 0), (52, 3, 40))),
         Rung.LAND,
-        [Rung.LEVEL_AND_CURTAINS] * 2,
+        [Rung.LID] * 2,
     ),
 }
 
@@ -154,10 +154,20 @@ def test_shut_offs_of_a_drafted_hole_lie_at_its_narrow_end():
 
 
 def test_upright_steps_are_told_with_their_height_and_leaning_ones_are_not():
-    (finding,) = told(molded("rim with an upright step").parted, STILL).findings
+    corners = [(0, 0, 0), (30, 0, 0), (30, 0, 6), (60, 0, 6), (60, 0, 9), (27, 0, 9), (27, 0, 3), (0, 0, 3)]
+    (finding,) = told(mold(solids.extruded(corners, (0, 30, 0))).parted, STILL).findings
     assert finding.code == "parting.no_draft"
-    assert "6.00 mm high" in finding.message
+    assert "3.00 mm high" in finding.message  # from the top of the low flange to the bottom of the high one
     assert told(molded("stepped rim").parted, STILL).findings == ()
+
+
+def test_a_steep_step_is_told_with_its_angle_and_place():
+    # the wall of the hood leans 9 deg: its edge at the step rises as steeply, and the land begins upright there
+    (finding,) = told(molded("rim with an upright step").parted, STILL).findings
+    assert (finding.code, finding.unit, finding.limit) == ("parting.steep", "deg", 5.0)
+    assert finding.value < 5.0
+    assert finding.at[0] == pytest.approx(0.0, abs=3.0)  # the step lies at x = 0
+    assert 25.0 < abs(finding.at[1]) < 40.0  # on the wall or the land beside it
 
 
 def test_what_was_decided_is_told_with_its_rung():

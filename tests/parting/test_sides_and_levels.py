@@ -5,12 +5,13 @@ import pytest
 from helpers import solids
 
 from moldgen.kernel.body import Body
+from moldgen.kernel.edge_split import split_edges
 from moldgen.kernel.loops import boundary_loops
 from moldgen.kernel.measure import is_valid, volume
 from moldgen.kernel.meshsolid import mesh_solid
 from moldgen.kernel.patches import loop_points
 from moldgen.parting.level import edges_on_outline, find_levels
-from moldgen.parting.refine import split_at_extremes, split_at_level, split_closed_edges, split_edges_at_level
+from moldgen.parting.refine import closed_places, extreme_places, level_places, split_at_level, split_for_line
 from moldgen.parting.sides import assign_sides
 from moldgen.release.contact import vertical_contact
 from moldgen.release.kinds import Kind, face_kinds
@@ -149,21 +150,27 @@ def test_closed_edges_are_split_only_where_their_loop_is_not_flat():
     low = np.ptp(bored.face_heights, axis=1) < 7
     rounded = np.array([bored.surface_kind(f) == "cylinder" for f in range(len(bored.faces))])
     loops = boundary_loops(bored, low & rounded)
-    split = split_closed_edges(bored, loops)
+    split = split_edges(bored, closed_places(bored, loops))
     assert len(split.edges) == len(bored.edges) + 2 * sum(len(loop) == 1 for loop in loops)
     flat = Body(solids.cylinder(5, 3))
     rims = boundary_loops(flat, np.array([flat.surface_kind(f) == "cylinder" for f in range(3)]))
-    assert split_closed_edges(flat, rims) is flat
+    assert closed_places(flat, rims) == {}
 
 
 def test_extremes_and_crossings_become_vertices():
     body = Body(solids.turned(solids.cylinder(10, 4), 20, about=(1, 0, 0)))
     (loop,) = boundary_loops(body, np.arange(3) == int(np.argmax(body.face_centres[:, 2])))
-    cornered = split_at_extremes(body, loop)
+    cornered = split_edges(body, extreme_places(body, loop))
     (loop,) = boundary_loops(cornered, np.arange(3) == int(np.argmax(cornered.face_centres[:, 2])))
     assert len(loop) == 4 + 1  # and where the circle began
     level = float(loop_points(loop, 8)[:, 2].mean()) + 1.0
     numbers = [cornered.edge_index.FindIndex(e) - 1 for e in loop]
-    cut = split_edges_at_level(cornered, numbers, level)
+    cut = split_edges(cornered, level_places(cornered, numbers, level))
     assert len(cut.edges) == len(cornered.edges) + 2
-    assert split_edges_at_level(cut, list(range(len(cut.edges))), 1000.0) is cut
+    assert level_places(cut, list(range(len(cut.edges))), 1000.0) == {}
+    # both at once, from the whole circle: four corners, two crossings, and where the circle began
+    (loop,) = boundary_loops(body, np.arange(3) == int(np.argmax(body.face_centres[:, 2])))
+    assert len(split_for_line(body, [loop], 0, level).edges) == len(cut.edges)
+    block = Body(solids.box((0, 0, 0), (40, 30, 10)))
+    flat = boundary_loops(block, np.arange(6) == int(np.argmax(block.face_centres[:, 2])))
+    assert split_for_line(block, flat, 0, 10.0) is block
