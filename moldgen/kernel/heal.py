@@ -18,15 +18,18 @@ from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Shape, TopoDS_So
 
 from moldgen.errors import PartError
 from moldgen.kernel.guard import operation
+from moldgen.kernel.heal_doubles import without_doubles
 from moldgen.kernel.measure import bounding_box, is_valid, volume
 from moldgen.kernel.sew import close, open_edges
-from moldgen.kernel.topology import edge_points, edges_of, explore, faces_of, solids_of, vertex_point
+from moldgen.kernel.topology import compound_of, edge_points, edges_of, explore, faces_of, solids_of, vertex_point, walk
 from moldgen.model.part import HealNote
 from moldgen.tolerances import HEAL_VOLUME, MAX_EDGE_TOLERANCE, SHORT_EDGE
 
 _REPAIR: Final = "repair the part in the CAD and export it again"
 
 _EDGE_SAMPLES: Final = 5
+
+_MOST_NAMED: Final = 5
 
 
 class Healed(NamedTuple):
@@ -74,12 +77,18 @@ def _measured(solid: TopoDS_Solid) -> float:
 
 def _closed(shape: TopoDS_Shape) -> Healed:
     solids = solids_of(shape)
-    if len(solids) == 1 and not open_edges(solids[0]):
+    faces = faces_of(shape)
+    given = sum(1 for _ in walk(shape, TopAbs_FACE))
+    if len(solids) == 1 and given == len(faces) and not open_edges(solids[0]):
         solid = TopoDS.Solid_s(solids[0])
         return Healed(solid, _measured(solid), ())
-    solid, gap = close(shape)
-    what = f"open shell closed by sewing, gaps up to {gap:g} mm"
-    return Healed(solid, _measured(solid), (HealNote(what, len(faces_of(solid)), 0.0),))
+    with operation("look for faces given twice", operands=(shape,)):
+        single = without_doubles(faces)
+    solid, gap = close(compound_of(single))
+    notes = [HealNote(f"open shell closed by sewing, gaps up to {gap:g} mm", len(faces_of(solid)), 0.0)]
+    if given > len(single):
+        notes.insert(0, HealNote("faces given twice, each kept once", given - len(single), 0.0))
+    return Healed(solid, _measured(solid), tuple(notes))
 
 
 def _outward(state: Healed) -> Healed:
@@ -154,11 +163,14 @@ def _without_voids(state: Healed) -> Healed:
         )
     hollow = -sum(v for v, _ in others)
     if hollow > HEAL_VOLUME * whole:
+        spaces = "; ".join(f"{-v:.6g} mm^3 at {_place(s)}" for v, s in others[:_MOST_NAMED])
+        more = f" and {len(others) - _MOST_NAMED} more" if len(others) > _MOST_NAMED else ""
         raise PartError(
-            f"closed hollow spaces inside the part: {len(others)}, of {hollow:.6g} mm^3 in all, more than the "
-            f"{HEAL_VOLUME * whole:.3g} mm^3 that may be filled without asking: no steel can reach them",
-            where="; ".join(_place(s) for _, s in others[:5]),
-            remedy="open them or fill them in the CAD",
+            f"the part is hollow: closed hollow spaces inside it: {len(others)}, of {hollow:.6g} mm^3 in all, more "
+            f"than the {HEAL_VOLUME * whole:.3g} mm^3 that may be filled without asking ({spaces}{more}). No core "
+            "reaches a closed space: it cannot be molded in one piece",
+            where="; ".join(_place(s) for _, s in others[:_MOST_NAMED]),
+            remedy="fill the space in the CAD, open it to one side for a core, or split the part and join the halves",
         )
     with operation("fill hollow spaces", operands=(solid,)):
         filled = BRepBuilderAPI_MakeSolid(outer).Solid()

@@ -21,6 +21,7 @@ from scipy.sparse import coo_matrix
 from scipy.sparse.csgraph import connected_components
 
 from moldgen.errors import KernelError
+from moldgen.kernel.heal_mesh import is_torn, remesh
 from moldgen.kernel.topology import walk
 from moldgen.tolerances import MESH_ANGLE, MESH_DEFLECTION
 
@@ -90,12 +91,34 @@ def surface_mesh(faces: list[TopoDS_Face]) -> SurfaceMesh:
     """Return the welded mesh of already tessellated faces.
 
     Faces are joined through the nodes of their common edges and vertices, never by rounding coordinates: real parts
-    have features smaller than any rounding that would close the gaps.
+    have features smaller than any rounding that would close the gaps. Faces that the kernel left without a mesh, or
+    with a torn one, are meshed again.
 
     Raises
     ------
     KernelError : a face has no triangles
     """
+    location = TopLoc_Location()
+    missing = [f for f in faces if BRep_Tool.Triangulation_s(f, location) is None]
+    if missing:
+        remesh(faces, missing)
+    mesh = _welded(faces)
+    torn = [f for f in (faces[i] for i in _at_open_sides(mesh)) if is_torn(f)]
+    if not torn:
+        return mesh
+    remesh(faces, torn)
+    return _welded(faces)
+
+
+def _at_open_sides(mesh: SurfaceMesh) -> list[int]:
+    """Return the numbers of the faces with a side of a triangle that no other triangle runs the other way."""
+    t, count = mesh.triangles.astype(np.int64), len(mesh.vertices)
+    start, end = t.ravel(), np.roll(t, -1, axis=1).ravel()
+    alone = ~np.isin(start * count + end, end * count + start)
+    return [int(i) for i in np.unique(np.repeat(mesh.face, 3)[alone])]
+
+
+def _welded(faces: list[TopoDS_Face]) -> SurfaceMesh:
     raw = _read_triangulations(faces)
     label = _weld(faces, raw)
     first = np.full(label.max() + 1, -1)

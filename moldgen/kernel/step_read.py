@@ -21,6 +21,7 @@ from OCP.TDataStd import TDataStd_Name
 from OCP.TDF import TDF_Label, TDF_LabelSequence
 from OCP.TDocStd import TDocStd_Document
 from OCP.TopAbs import TopAbs_FACE, TopAbs_SOLID
+from OCP.TopExp import TopExp_Explorer
 from OCP.TopLoc import TopLoc_Location
 from OCP.TopoDS import TopoDS_Shape, TopoDS_Solid
 from OCP.XCAFDoc import XCAFDoc_DocumentTool, XCAFDoc_ShapeTool
@@ -113,6 +114,10 @@ def read_step(path: Path, choose: int | str | None = None, *, find_crossings: bo
     notes = healed.notes
     if content.missing:
         notes = (HealNote("references to entities that the file does not contain", content.missing, 0.0), *notes)
+    if content.solids and content.loose:
+        x, y, z = bounding_box(compound_of(content.loose))[0]
+        what = f"loose surfaces beside the solid, left out: faces, the lowest corner at {x:.3f}, {y:.3f}, {z:.3f}"
+        notes = (HealNote(what, len(content.loose), 0.0), *notes)
     listed = listed or (ListedSolid(1, name, healed.volume_mm3),)
     return ReadResult(
         healed.solid, healed.volume_mm3, name or path.stem, text.sha256, listed, text.schema, content.unit, notes
@@ -217,8 +222,10 @@ def _collect(
         if len(solids) > 1 or not name:
             name = _entity_name(reader, solid) or name
         found.append((name, solid.Moved(place)))
-    if not solids:
-        loose.extend(f.Moved(place) for f in walk(shape, TopAbs_FACE))
+    sheets = TopExp_Explorer(shape, TopAbs_FACE, TopAbs_SOLID)  # faces that are not part of a solid
+    while sheets.More():
+        loose.append(sheets.Current().Moved(place))
+        sheets.Next()
 
 
 def _name(label: TDF_Label) -> str:
