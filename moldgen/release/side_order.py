@@ -52,6 +52,8 @@ def _joined(one: Placed, other: Placed) -> Placed | None:
     first, second = one.found, other.found
     if isinstance(first, Lifted) or isinstance(second, Lifted) or not _same_way(first, second):
         return None
+    if one.given >= 0 or other.given >= 0:
+        return None
     view, near = first.view, min(first.start, second.start)
     seen = view.seen(union([one.covered, other.covered]))
     need = shadow(seen)

@@ -5,8 +5,10 @@ from __future__ import annotations
 from moldgen.kernel.body import Body
 from moldgen.model.side_action import SideOptions, SidePlan, Unreleased
 from moldgen.release.kinds import FaceKinds
+from moldgen.release.side_given import answer
 from moldgen.release.side_order import merged, ordered
-from moldgen.release.side_search import Search, Space
+from moldgen.release.side_refusal import refusal, ring_count
+from moldgen.release.side_search import Placed, Search, Space
 from moldgen.release.trapped import Grip, Trapped
 
 
@@ -25,8 +27,19 @@ def plan_side_actions(body: Body, kinds: FaceKinds, trapped: Trapped, options: S
     undercuts = [(i, p) for i, p in enumerate(trapped.pieces) if p.grip is Grip.UNDERCUT]
     if not undercuts:
         return SidePlan()
-    search = Search(body, trapped.part, [p for _, p in undercuts], options or SideOptions())
-    placed, left = search.place([Space(i, p.solid) for i, p in undercuts])
-    placed = ordered(merged(placed), search.shared)
-    fronts = tuple(p.found.front(p.pieces) for p in placed)
-    return SidePlan(fronts, tuple(Unreleased(s.piece, "no direction", "", tuple(s.tried)) for s in left))
+    options = options or SideOptions()
+    search = Search(body, trapped.part, [p for _, p in undercuts], options)
+    spaces = [Space(i, p.solid) for i, p in undercuts]
+    placed: list[Placed] = []
+    left: list[Unreleased] = []
+    for number, given in enumerate(options.given):
+        said = answer(search, given, number, spaces)
+        placed += [said.placed] if said.placed is not None else []
+        left += [said.refused] if said.refused is not None else []
+        spaces += said.rest
+    found, still = search.place(spaces)
+    placed = ordered(merged([*placed, *found]), search.shared)
+    rings = ring_count([p for _, p in undercuts])
+    left += [refusal(search, s, trapped.pieces[s.piece], rings) for s in still]
+    fronts = tuple(p.found.front(p.pieces, p.given) for p in placed)
+    return SidePlan(fronts, tuple(left))

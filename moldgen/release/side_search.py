@@ -24,7 +24,7 @@ CLEAR_SHARE, SOME_SHARE = 0.97, 0.15
 OPENING_COST = 0.25
 """What one more direction costs, in part diagonals of steel reaching over the part: our choice."""
 
-MOST_TRIED, MOST_LIFTERS, MOST_PARTIAL, DEEPEST, MOST_SPLITS = 8, 3, 4, 2, 10
+MOST_TRIED, MOST_LIFTERS, MOST_PARTIAL, DEEPEST, MOST_SPLITS = 8, 3, 4, 2, 16
 """Bounds of the search: directions tried for all of a space, for a lifter, for some of a space, how often a space is
 split again, and how many splits are followed in all for one piece."""
 
@@ -54,6 +54,7 @@ class Placed:
     found: Found | Lifted
     pieces: tuple[int, ...]
     covered: MeshSolid
+    given: int = -1
 
 
 class Search:
@@ -64,14 +65,14 @@ class Search:
         self.shared = SideSpace.of(body, part)
         self.directions: Candidates = candidates(body, pieces)
         self.diagonal = body.diagonal
-        self._tracer = Tracer(body.mesh)
+        self.tracer = Tracer(body.mesh)
         self._views: dict[tuple[float, ...], View] = {}
         self._splits = 0
         self._lifters: list[Lifted] = []
         self._slides: list[MeshSolid] = []
         height = float(body.box[1][2] - body.box[0][2])
         stroke = options.ejection_stroke or height + FREE_OF_CORE
-        self.lifting = Lifting(self.shared, stroke, self._tracer)
+        self.lifting = Lifting(self.shared, stroke, self.tracer)
         self.used: list[np.ndarray] = []
 
     def view(self, direction: np.ndarray) -> View:
@@ -83,7 +84,7 @@ class Search:
 
     def free(self, space: Space, directions: np.ndarray) -> np.ndarray:
         """Return the share of a space that each direction lets out, by rays, (k,)."""
-        return shares(self._tracer, space.points, directions)
+        return shares(self.tracer, space.points, directions)
 
     def place(self, spaces: list[Space]) -> tuple[list[Placed], list[Space]]:
         """Return fronts for the spaces, and the spaces that none was found for."""
@@ -100,7 +101,7 @@ class Search:
             if found is None:
                 left.append(spaces[i])
             else:
-                placed.append(_placed(found, spaces[i]))
+                placed.append(of_space(found, spaces[i]))
         still: list[Space] = []
         for space in left:
             several = self._otherwise(space)
@@ -108,7 +109,8 @@ class Search:
                 still.append(space)
             else:
                 placed += several
-                self._note(several)
+                for front in several:
+                    self.note(front)
         return placed, still
 
     def _otherwise(self, space: Space) -> list[Placed] | None:
@@ -121,7 +123,7 @@ class Search:
         if several is None and self.options.inclined:
             free = self.free(space, self.directions.inclined)
             found = self._whole(space, self._ranked(space, self.directions.inclined, free, np.ones(len(free))))
-            several = [_placed(found, space)] if found is not None else None
+            several = [of_space(found, space)] if found is not None else None
         return several
 
     def _lifted(self, space: Space) -> Placed | None:
@@ -137,26 +139,29 @@ class Search:
             made = self.lifting.lifter(space.solid, self.directions.level[k], need)
             if isinstance(made, str):
                 space.tried.append(f"lifter along {_words(self.directions.level[k])}: {made}")
-            elif any(collide(made, other) for other in self._lifters) or self._on_slides(made):
+            elif self.meets(made):
                 space.tried.append(
                     f"lifter along {_words(self.directions.level[k])}: in the way of another side action"
                 )
             else:
-                self._lifters.append(made)
                 return Placed(made, (space.piece,), space.solid)
         return None
 
-    def _on_slides(self, made: Lifted) -> bool:
+    def meets(self, made: Lifted) -> bool:
+        """Return whether a lifter meets steel that was placed before it."""
+        if any(collide(made, other) for other in self._lifters):
+            return True
         return any(thick_pieces(made.steel ^ body) for body in self._slides)
 
-    def _note(self, placed: list[Placed]) -> None:
-        for p in placed:
-            if isinstance(p.found, Lifted):
-                continue
-            self._slides.append(p.found.steel())
-            way = np.asarray(p.found.view.direction)
-            if all(float(way @ u) < 0.99999 for u in self.used):
-                self.used.append(way)
+    def note(self, placed: Placed) -> None:
+        """Remember a front: its direction is in use, its steel in the way of lifters."""
+        if isinstance(placed.found, Lifted):
+            self._lifters.append(placed.found)
+            return
+        self._slides.append(placed.found.steel())
+        way = np.asarray(placed.found.view.direction)
+        if all(float(way @ u) < 0.99999 for u in self.used):
+            self.used.append(way)
 
     def _ranked(self, space: Space, ways: np.ndarray, free: np.ndarray, popular: np.ndarray) -> list[np.ndarray]:
         """Return the directions that seem to let all of a space out, cheapest first."""
@@ -177,7 +182,7 @@ class Search:
         for way in ways[:MOST_TRIED]:
             found = whole_front(self.view(way), space.solid)
             if found is not None:
-                self._note([_placed(found, space)])
+                self.note(of_space(found, space))
                 return found
             space.tried.append(f"slide along {_words(way)}: no outline that can leave")
         return None
@@ -192,13 +197,14 @@ class Search:
             key=lambda k: (-round(float(free[k]) + 0.1 * float(in_use[k]), 3), k),
         )
         for k in order[:MOST_PARTIAL]:
+            self._splits += 1
             for found in part_fronts(self.view(level[k]), space.solid):
                 self._splits += 1
                 if self._splits > MOST_SPLITS:
                     return None
                 rest = self._rest(space, found)
                 if rest is not None:
-                    return [_placed(found, space), *rest]
+                    return [of_space(found, space), *rest]
         return None
 
     def _rest(self, space: Space, found: Found) -> list[Placed] | None:
@@ -214,7 +220,7 @@ class Search:
             ways = self._ranked(part, level, free, np.ones(len(level)))
             whole = self._whole_quietly(part, ways)
             if whole is not None:
-                placed.append(_placed(whole, part))
+                placed.append(of_space(whole, part))
                 continue
             several = self._shared_out(part) if part.depth < DEEPEST else None
             if several is None:
@@ -230,9 +236,10 @@ class Search:
         return None
 
 
-def _placed(found: Found | Lifted, space: Space) -> Placed:
+def of_space(found: Found | Lifted, space: Space, given: int = -1) -> Placed:
+    """Return a front as that of a space; `given` is the number of its entry in the spec, -1 for none."""
     rest = union(list(found.rest)) if isinstance(found, Found) and found.rest else None
-    return Placed(found, (space.piece,), space.solid if rest is None else space.solid - rest)
+    return Placed(found, (space.piece,), space.solid if rest is None else space.solid - rest, given)
 
 
 def _words(way: np.ndarray) -> str:
