@@ -25,8 +25,8 @@ from moldgen.kernel.topology import directed_points, is_reversed, vertex_point
 from moldgen.kernel.walls import Rim, rectangle_rim
 from moldgen.tolerances import ON_PLANE
 
-SAMPLES = 33
-"""Places along a curved edge at which its land is laid out."""
+SAMPLES = ((5.0, 9), (20.0, 17), (math.inf, 33))
+"""Places along a curved edge at which its land is laid out, by the length [mm] of the edge."""
 
 UPRIGHT = 1e-5
 """mm: an edge that covers no more than this, seen along the pull, is upright."""
@@ -87,7 +87,7 @@ def level_lid(loop: Loop, level: float, width: float, lean_deg: float) -> tuple[
 def plan_edge(edge: TopoDS_Edge, level: float) -> PlanEdge:
     """Return how one edge of the line lies, and its places and directions in plan."""
     straight = is_straight(edge)
-    points = directed_points(edge, 2 if straight else SAMPLES)
+    points = directed_points(edge, 2 if straight else _samples(edge))
     across, rise = float(np.linalg.norm(np.ptp(points[:, :2], axis=0))), float(np.ptp(points[:, 2]))
     if np.abs(points[:, 2] - level).max() < ON_PLANE:
         lie = Lie.LEVEL
@@ -98,6 +98,11 @@ def plan_edge(edge: TopoDS_Edge, level: float) -> PlanEdge:
     if across < UPRIGHT:
         return PlanEdge(lie, points[[0, -1]], np.array([1.0, 0.0]), np.array([1.0, 0.0]))
     return PlanEdge(lie, points, *_end_tangents(edge, points))
+
+
+def _samples(edge: TopoDS_Edge) -> int:
+    length = float(np.linalg.norm(np.diff(directed_points(edge, 9), axis=0), axis=1).sum())
+    return next(count for longest, count in SAMPLES if length <= longest)
 
 
 def _is_upright(edge: PlanEdge) -> bool:

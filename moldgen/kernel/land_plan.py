@@ -38,6 +38,9 @@ CRUMB = 0.3
 CRUMB_LEAN = math.tan(math.radians(15.0))
 """Run over rise of that piece of rim where the line is higher on one side of the corner than on the other."""
 
+ROWS = 256
+"""Sides of a polygon that are compared with all others at a time: memory, nothing else."""
+
 MOST_ROUNDS = 12
 """Times that inside corners are widened until nothing folds."""
 
@@ -321,14 +324,20 @@ def outline_of(edges: Sequence[PlanEdge], plan: LandPlan, *, foot: bool) -> np.n
 def self_crossing(polygon: np.ndarray) -> np.ndarray | None:
     """Return a place where two sides of a closed plan polygon (n, 2) cross each other, None if none do."""
     start, end = polygon, np.roll(polygon, -1, axis=0)
-    along = end - start
+    low, high = np.minimum(start, end), np.maximum(start, end)
+    for first in range(0, len(polygon), ROWS):
+        rows = slice(first, first + ROWS)
+        near = (low[rows, None] <= high[None]).all(axis=2) & (high[rows, None] >= low[None]).all(axis=2)
+        i, j = np.nonzero(near)
+        i = i + first
+        parted = [_side(start[a], end[a], start[b]) * _side(start[a], end[a], end[b]) for a, b in ((i, j), (j, i))]
+        found = np.flatnonzero((parted[0] < -1e-12) & (parted[1] < -1e-12))
+        if len(found):
+            return np.asarray(start[i[found[0]]])
+    return None
 
-    def side(of: np.ndarray) -> np.ndarray:
-        """Return for sides i (rows) and points j (columns) on which side of i the point lies."""
-        offset = of[None] - start[:, None]
-        return np.asarray(along[:, None, 0] * offset[..., 1] - along[:, None, 1] * offset[..., 0])
 
-    begins, ends = side(start), side(end)
-    parted = begins * ends < -1e-12
-    found = np.argwhere(parted & parted.T)
-    return None if len(found) == 0 else np.asarray(start[found[0][0]])
+def _side(start: np.ndarray, end: np.ndarray, place: np.ndarray) -> np.ndarray:
+    """Return on which side of the line from start to end each place lies, (n,): positive on its left."""
+    along, offset = end - start, place - start
+    return np.asarray(along[:, 0] * offset[:, 1] - along[:, 1] * offset[:, 0])
