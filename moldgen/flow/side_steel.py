@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import re
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -14,7 +15,7 @@ from moldgen.flow.tell import Tell
 from moldgen.kernel.body import Body
 from moldgen.layout.ejection import ejector_stroke
 from moldgen.layout.side_actions import lay_out_sides, room_needed
-from moldgen.layout.side_drive import Driven
+from moldgen.layout.side_drive import Driven, is_level
 from moldgen.layout.slide_body import SideTask
 from moldgen.layout.view import PartView
 from moldgen.model.halves import Halves
@@ -75,26 +76,55 @@ def make_sides(formed: Formed, resin: Resin, section: Ejection, tell: Tell) -> t
         return SideCut(halves, (), (), (), Notes()), SideLayout(), Notes()
     task = SideTask(formed.part, halves.level, resin)
     block = BlockLayout(_corner(halves.low), _corner(halves.high))
-    names = [side.name for side in halves.sides]
     with tell.stage("make the side actions") as stage:
         stroke, _ = ejector_stroke(PartView(halves), section)
-        try:
-            layout, notes = lay_out_sides(formed.driven, names, task, block, stroke)
-            made = cut_side_actions(halves, layout, task.material)
-        except (PartError, KernelError) as error:
-            plain = [replace(d, drive=Drive.CYLINDER) for d in formed.driven]
-            layout, notes = lay_out_sides(
-                [d for d in plain if d.front.kind is SideKind.LIFTER],
-                [n for n, d in zip(names, plain, strict=True) if d.front.kind is SideKind.LIFTER],
-                task,
-                block,
-                stroke,
-            )
-            layout = replace(layout, slides=_plain_slides(formed))
-            made = cut_side_actions(halves, layout, task.material)
-            notes += Notes((_no_bodies(error),))
+        plain: dict[str, PartError | KernelError] = {}
+        while True:
+            try:
+                layout, notes = _laid_out(formed, plain, task, block, stroke)
+                made = cut_side_actions(halves, layout, task.material)
+                break
+            except (PartError, KernelError) as error:
+                culprits = _culprits(error, formed, plain)
+                if not culprits:
+                    raise
+                plain |= dict.fromkeys(culprits, error)
+        notes += Notes(tuple(_no_body(name, error) for name, error in plain.items()))
         stage.detail = f"{len(layout.slides)} slides, {len(layout.lifters)} lifters"
     return made, layout, notes + made.notes
+
+
+def _laid_out(
+    formed: Formed, plain: Mapping[str, PartError | KernelError], task: SideTask, block: BlockLayout, stroke: float
+) -> tuple[SideLayout, Notes]:
+    """Return the layout; slides named in `plain` are nothing but their fronts, each in a bore of its own outline."""
+    named = [(s.name, d) for s, d in zip(formed.halves.sides, formed.driven, strict=True) if s.name not in plain]
+    layout, notes = lay_out_sides([d for _, d in named], [n for n, _ in named], task, block, stroke)
+    slides = list(layout.slides)
+    for side in formed.halves.sides:
+        if side.name in plain:
+            carried = Motion.CAVITY_HALF if side.in_cavity else Motion.CORE_HALF
+            travel = slide_travel_practice(max(side.front.travel, 1.0))
+            slides.append(
+                SlideLayout(side.name, (side.name,), side.front.axis, Drive.CYLINDER, carried, None, travel, 0.0, 0.0)
+            )
+    return replace(layout, slides=tuple(slides)), notes
+
+
+def _culprits(error: PartError | KernelError, formed: Formed, plain: Mapping[str, object]) -> list[str]:
+    """Return the level slides that an error names, or all of them where it names none; those made plain are left out.
+
+    A slide that leaves at an angle has no body in any case: what it fails on is no matter of room.
+    """
+    level = {
+        side.name
+        for side, one in zip(formed.halves.sides, formed.driven, strict=True)
+        if one.front.kind is SideKind.SLIDE and is_level(one.front) and side.name not in plain
+    }
+    told = f"{error.where} {error.what}"
+    named = [name for name in sorted(level) if re.search(rf"{re.escape(name)}(?!\d)", told)]
+    others = [s.name for s in formed.halves.sides if s.name not in level and re.search(rf"{s.name}(?!\d)", told)]
+    return named if named or others else sorted(level)
 
 
 def _corner(corner: np.ndarray) -> tuple[float, float, float]:
@@ -102,26 +132,12 @@ def _corner(corner: np.ndarray) -> tuple[float, float, float]:
     return (x, y, z)
 
 
-def _plain_slides(formed: Formed) -> tuple[SlideLayout, ...]:
-    """Return slides that are nothing but their fronts, each in a bore of its own outline."""
-    slides = []
-    for side in formed.halves.sides:
-        if side.front.kind is SideKind.SLIDE:
-            carried = Motion.CAVITY_HALF if side.in_cavity else Motion.CORE_HALF
-            travel = slide_travel_practice(max(side.front.travel, 1.0))
-            slides.append(
-                SlideLayout(side.name, (side.name,), side.front.axis, Drive.CYLINDER, carried, None, travel, 0.0, 0.0)
-            )
-    return tuple(slides)
-
-
-def _no_bodies(error: PartError | KernelError) -> Finding:
-    where = error.where or "side_actions"
+def _no_body(name: str, error: PartError | KernelError) -> Finding:
     return Finding(
         "side.no_body",
         Severity.WARNING,
-        f"no slide bodies with guides and locking faces were made: {error.what}; the slides are drawn as straight "
-        "cores that cylinders pull before the mold opens, and nothing but the cylinders holds them against the melt",
-        where=where,
+        f"{name} has no body with guides and locking face: {error.what}; it is drawn as a straight core that a "
+        "cylinder pulls before the mold opens, and nothing but the cylinder holds it against the melt",
+        where=name,
         remedy="give a larger block or other side actions, or let the toolmaker design the bodies",
     )
