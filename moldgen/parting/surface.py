@@ -248,8 +248,13 @@ def _lid(loop: Loop, refused: list[str]) -> ClosedLoop | None:
             faces = level_lid(clockwise, level, width, WALL_LEAN)
         except KernelError as error:
             refused.append(f"{Rung.LID}: {error.what}")
-        else:
+            continue
+        angle = least_angle(faces)
+        if angle.deg >= SHUT_OFF_ANGLE.low:
             return _closed(Rung.LID, loop, 0, faces)
+        # what stands upright in the rim stands upright in any surface; curtains are simpler
+        refused.append(f"{Rung.LID}: it would stand {angle.deg:.1f} deg from the pull")
+        break
     return None
 
 
