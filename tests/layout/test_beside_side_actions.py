@@ -186,3 +186,12 @@ def test_gate_from_above_keeps_off_a_slide():
     gate, notes = place_gate(with_sides(plate(LONG, WIDE, 3), over), Gate(kind="pin"), ABS)
     assert "gate.bad_place" not in codes(notes)
     assert gate.at[0] < -20.0 - STEEL or abs(gate.at[1]) > 10.0 + STEEL
+
+
+def test_gate_from_above_feeds_the_part_not_the_steel_of_a_slide():
+    # a pocket open above that a slide forms, level with the upper face: x from -20 to 60, y from -10 to 10
+    real = plate(LONG, WIDE, 3).cut(plate(80, 20, 2).translate((20, 0, 1)))
+    flush = slide(X, -10.0, 10.0, 1.0, 3.0, -20.0, 60.0)
+    gate, notes = place_gate(with_sides(plate(LONG, WIDE, 3), flush, real=real), Gate(kind="pin"), ABS)
+    assert "gate.bad_place" not in codes(notes)
+    assert gate.at[0] < -20.0 or abs(gate.at[1]) > 10.0
