@@ -87,7 +87,10 @@ class View:
         square = np.abs(self._normals[:, 2]) > 1.0 - LEVEL
         heights = self._corners[square][:, :, 2]
         flat = np.ptp(heights, axis=1) < LEVEL * 10.0 if len(heights) else np.zeros(0, dtype=bool)
-        return np.unique(np.round(heights[flat][:, 0], 5)) if flat.any() else np.zeros(0)
+        if not flat.any():
+            return np.zeros(0)
+        exact = heights[flat][:, 0]  # a rounded level would leave a sheet of steel as thin as the rounding
+        return np.asarray(exact[np.unique(np.round(exact, 5), return_index=True)[1]])
 
     @cached_property
     def _hooks(self) -> np.ndarray:
