@@ -36,8 +36,8 @@ BACKS = (4.0, 2.5, 1.5, 0.8)
 LANDS = (0.5, 0.2, 0.06, 0.0)
 """Land [mm] beside the undercut, and into the wall behind it."""
 
-WAYS, STRAY = 40, 0.02
-"""Ways that rays are asked for, and the share of rays that may stray."""
+WAYS, STRAY, BLOCKED = 40, 0.02, 0.05
+"""Ways that rays are asked for, and the shares of rays that may stray, or meet plastic, before it is tried in full."""
 
 MOMENTS = 9
 """Moments of the ejection stroke at which two lifters are held against each other; both move evenly and straight."""
@@ -89,15 +89,26 @@ class Lifting:
     tracer: Tracer
 
     def need(self, points: np.ndarray, release: np.ndarray) -> float | None:
-        """Return the level way [mm] after which points (k, 3) of a space have no plastic below them, None if none does.
+        """Return the level way [mm] after which points (k, 3) of a space have no plastic below them, None if
+        none does or plastic stands in that way.
 
         By rays: a proposal, of the ways that the stroke allows.
         """
         most = self.stroke * math.tan(math.radians(MOST_ANGLE)) - CLEARANCE
         for way in np.linspace(0.0, most, WAYS + 1)[1:]:
             if self.tracer.blocked(points + way * release, (0.0, 0.0, -1.0)).mean() < STRAY:
-                return float(way)
+                return float(way) if self._room(points, release, float(way)) else None
         return None
+
+    def _room(self, points: np.ndarray, release: np.ndarray, way: float) -> bool:
+        """Return whether the points can move a level way, and its clearance, without meeting plastic."""
+        hit = self.tracer.first_triangle(points, release)
+        met = hit >= 0
+        corners = self.space.corners[hit[met]]
+        normal = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
+        run = normal @ release
+        gap = ((corners[:, 0] - points[met]) * normal).sum(axis=1) / np.where(np.abs(run) < 1e-12, 1e-12, run)
+        return bool((gap < way + CLEARANCE).sum() <= BLOCKED * len(points))
 
     def lifter(self, space: MeshSolid, release: np.ndarray, least: float) -> Lifted | str:
         """Return a lifter that lets a space out along a level direction, or why there is none.

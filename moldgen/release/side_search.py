@@ -24,7 +24,7 @@ CLEAR_SHARE, SOME_SHARE = 0.97, 0.15
 OPENING_COST = 0.25
 """What one more direction costs, in part diagonals of steel reaching over the part: our choice."""
 
-MOST_TRIED, MOST_LIFTERS, MOST_PARTIAL, DEEPEST, MOST_SPLITS = 8, 3, 4, 2, 16
+MOST_TRIED, MOST_LIFTERS, MOST_PARTIAL, DEEPEST, MOST_SPLITS = 8, 2, 4, 2, 12
 """Bounds of the search: directions tried for all of a space, for a lifter, for some of a space, how often a space is
 split again, and how many splits are followed in all for one piece."""
 
