@@ -87,7 +87,7 @@ class Pull(Section):
     )
     search: Literal["axes", "full"] = Field(
         default="full",
-        description="what auto tries: axes (x, y, z, both ways) or full (also principal axes and large flat faces)",
+        description="what auto tries: axes (x, y, z, both ways) or full (also what the part itself suggests, and a search over all directions)",
     )
 
     @model_validator(mode="before")
