@@ -87,7 +87,8 @@ class Pull(Section):
     )
     search: Literal["axes", "full"] = Field(
         default="full",
-        description="what auto tries: axes (x, y, z, both ways) or full (also what the part itself suggests, and a search over all directions)",
+        description="what auto tries: axes (x, y, z, both ways) or full (also directions that the part "
+        "itself suggests, and a search over all others)",
     )
 
     @model_validator(mode="before")
