@@ -12,7 +12,7 @@ if __name__ == "__main__":
     for name in sys.argv[1:]:
         opinion = judge(Path(name))
         verdicts.append(opinion.passed)
-        print(f"{name}: {'passed' if opinion.passed else 'WRONG'}, worst {opinion.worst:.3f} mm")
+        sys.stdout.write(f"{name}: {'passed' if opinion.passed else 'WRONG'}, worst {opinion.worst:.3f} mm\n")
         for line in (*opinion.faults, *opinion.rest, *opinion.motion, *opinion.needed):
-            print(f"  {line}")
-    sys.exit(0 if all(verdicts) else 1)
+            sys.stdout.write(f"  {line}\n")
+    sys.exit(0 if verdicts and all(verdicts) else 1)

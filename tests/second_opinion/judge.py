@@ -11,6 +11,7 @@ from pathlib import Path
 import numpy as np
 from manifold3d import Error, Manifold
 
+from . import exact
 from .reading import Placed, read_tool
 from .solids import SHRINK, lift, shrunk, sweep_overlap, thickest
 
@@ -160,18 +161,29 @@ def _unsound(placed: Sequence[Placed]) -> list[str]:
     return faults
 
 
-def _asked(question: str, ask: Callable[[float], tuple[float, Sequence[float]]]) -> Figure:
-    """Ask how thick an overlap is; a doubtful one once more with finer meshes. SHRINK is given back."""
-    depth, at = ask(1.0)
+def _asked(
+    question: str,
+    ask: Callable[[float], tuple[float, np.ndarray]],
+    confirm: Callable[[np.ndarray], bool],
+) -> Figure:
+    """Ask how thick an overlap is. SHRINK is given back.
+
+    A doubtful one is asked for once more with finer meshes, and if it is still there, the surfaces themselves are asked
+    (`confirm`) at points of it; without a single one that says so it is one of meshes and not counted, but told.
+    """
+    depth, points = ask(1.0)
     if LIMIT <= depth + SHRINK < DOUBTFUL:
-        depth, at = ask(FINER)
+        depth, points = ask(FINER)
     depth = depth + SHRINK if depth > 0.0 else 0.0
-    x, y, z = (float(v) for v in at)
+    x, y, z = (float(v) for v in points[0])
+    if LIMIT <= depth < DOUBTFUL and not confirm(points):
+        return Figure(f"{question} (meshes overlap by {depth:.3f} mm, surfaces do not)", 0.0, (x, y, z))
     return Figure(question, depth, (x, y, z), depth >= LIMIT)
 
 
 def _at_rest(tool: Tool) -> list[Figure]:
     figures = []
+    still = np.zeros(3)
     for one, other in combinations(tool.placed, 2):
         a, b = (np.asarray(body.mesh().bounding_box()).reshape(2, 3) for body in (one, other))
         if (a[0] > b[1]).any() or (b[0] > a[1]).any():
@@ -179,9 +191,9 @@ def _at_rest(tool: Tool) -> list[Figure]:
         figure = _asked(
             f"{one.name} in {other.name} at rest",
             lambda fine, one=one, other=other: thickest(one.mesh(fine) ^ tool.thin(other, fine)),
+            lambda points, one=one, other=other: exact.overlap(points, [one], still, still, [other]),
         )
-        if figure.depth > 0.0:
-            figures.append(figure)
+        figures.append(figure)
     return figures
 
 
@@ -203,12 +215,14 @@ def _passing(tool: Tool, one: str, other: str, start: np.ndarray, way: np.ndarra
     if tool.mesh(other, 1.0).num_tri() < tool.mesh(one, 1.0).num_tri():
         one, other, start, way = other, one, -start, -way
 
-    def ask(fine: float) -> tuple[float, Sequence[float]]:
+    def ask(fine: float) -> tuple[float, np.ndarray]:
         mover = tool.mesh(one, fine).translate(tuple(start))
-        depth, at = sweep_overlap(mover, way, [tool.thin(b, fine) for b in tool.groups[other]])
-        return depth, [float(v) for v in at]
+        return sweep_overlap(mover, way, [tool.thin(b, fine) for b in tool.groups[other]])
 
-    return _asked(f"{one} past {other}, {step}", ask)
+    def confirm(points: np.ndarray) -> bool:
+        return exact.overlap(points, tool.groups[one], start, way, tool.groups[other])
+
+    return _asked(f"{one} past {other}, {step}", ask, confirm)
 
 
 def _freeing(tool: Tool) -> list[Step]:
@@ -224,7 +238,7 @@ def _freeing(tool: Tool) -> list[Step]:
     low, high = tool.box([PART]) + stands[PART]
     clear = max(0.0, max((tool.box([g]) + stands[g])[1, 2] for g in rest) - low[2]) + 1.0
     bottom = min((tool.box([g]) + stands[g])[0, 2] for g in riders)
-    top = max(high[2] + clear, max((tool.box([g]) + stands[g])[1, 2] for g in rest))
+    top = max(high[2] + clear, *((tool.box([g]) + stands[g])[1, 2] for g in rest))
     far = max(0.0, top - bottom) + 1.0
     return [
         Step("the cavity half is carried away", {g: lift(far) for g in riders}),
@@ -238,7 +252,9 @@ def _needed(tool: Tool) -> list[Figure]:
     height = float(np.ptp(tool.box(list(tool.groups))[:, 2]))
     figures = []
     for side in sides:
-        depth, at = sweep_overlap(tool.mesh(PART, 1.0), lift(height), [tool.thin(b, 1.0) for b in tool.groups[side]])
-        x, y, z = (float(v) for v in at)
+        depth, points = sweep_overlap(
+            tool.mesh(PART, 1.0), lift(height), [tool.thin(b, 1.0) for b in tool.groups[side]]
+        )
+        x, y, z = (float(v) for v in points[0])
         figures.append(Figure(f"the part pulled straight past {side}", depth + SHRINK if depth else 0.0, (x, y, z)))
     return figures

@@ -58,18 +58,25 @@ def shrunk(solid: Manifold, by: float = SHRINK) -> Manifold:
     return _made(points - by * step, triangles)
 
 
-def thickest(solid: Manifold) -> tuple[float, tuple[float, float, float]]:
-    """Return the thickness 2V/A of the thickest connected piece [mm] and a point of it; 0 for nothing but specks."""
-    worst, at = 0.0, (0.0, 0.0, 0.0)
+def thickest(solid: Manifold) -> tuple[float, np.ndarray]:
+    """Return the thickness 2V/A of the thickest connected piece [mm] and points inside it (n, 3); 0 for only specks."""
+    worst, best = 0.0, None
     for piece in solid.decompose() if solid.num_tri() else []:
         volume = piece.volume()
-        if volume <= SPECK:
-            continue
-        depth = 2.0 * volume / piece.surface_area()
-        if depth > worst:
-            box = piece.bounding_box()
-            worst, at = depth, tuple((box[i] + box[i + 3]) / 2.0 for i in range(3))
-    return worst, at
+        if volume > SPECK and 2.0 * volume / piece.surface_area() > worst:
+            worst, best = 2.0 * volume / piece.surface_area(), piece
+    return worst, np.zeros((1, 3)) if best is None else _within(best, worst)
+
+
+def _within(piece: Manifold, depth: float) -> np.ndarray:
+    """Return points below the middles of the largest triangles of a piece, a quarter and a half of its thickness in."""
+    points, triangles = arrays(piece)
+    corners = points[triangles]
+    normals = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
+    size = np.linalg.norm(normals, axis=1)
+    largest = np.argsort(-size, kind="stable")[:20]
+    middles, inward = corners[largest].mean(axis=1), normals[largest] / np.maximum(size[largest], 1e-300)[:, None]
+    return np.concatenate([middles - share * depth * inward for share in (0.25, 0.5)])
 
 
 class Way:
@@ -112,7 +119,7 @@ def loose(prisms: np.ndarray) -> Manifold:
 
 
 def sweep_overlap(mover: Manifold, way: np.ndarray, others: Sequence[Manifold]) -> tuple[float, np.ndarray]:
-    """Return the greatest thickness of what a body meets on a straight way [mm], 0 for nothing, and where.
+    """Return how thick what a body meets on a straight way is [mm], 0 for nothing, and points of it (n, 3).
 
     mover : where it starts; others : bodies that stand still, already shrunk. What the mover covers is the place where
     it ends and the prisms over its trailing triangles; where it starts is covered by them too, but for what already
@@ -123,7 +130,7 @@ def sweep_overlap(mover: Manifold, way: np.ndarray, others: Sequence[Manifold]) 
     boxes = [np.asarray(other.bounding_box()).reshape(2, 3) for other in others]
     others = [o for o, b in zip(others, boxes, strict=True) if (b[0] <= covers[1]).all() and (b[1] >= covers[0]).all()]
     if not others:
-        return 0.0, np.zeros(3)
+        return 0.0, np.zeros((1, 3))
     line = Way(way)
     body = line.turned(mover)
     box = np.asarray(body.bounding_box())
@@ -131,10 +138,10 @@ def sweep_overlap(mover: Manifold, way: np.ndarray, others: Sequence[Manifold]) 
     for other in others:
         turned = line.turned(other)
         low, high = np.split(np.asarray(turned.bounding_box()), 2)
-        if (low <= box[3:] + (0.0, 0.0, line.length)).all() and (high >= box[:3]).all():
+        if (low <= box[3:] + np.array([0.0, 0.0, line.length])).all() and (high >= box[:3]).all():
             still.append(turned)
     if not still:
-        return 0.0, np.zeros(3)
+        return 0.0, np.zeros((1, 3))
     obstacle = Manifold.compose(still)
     low, high = np.split(np.asarray(obstacle.bounding_box()), 2)
     pieces = [body.translate((0.0, 0.0, line.length)) ^ obstacle]

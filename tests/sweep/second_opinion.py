@@ -115,7 +115,7 @@ def main(arguments: list[str]) -> int:
             else:
                 agreed.append(row(name, folder))
     print(f"{sum(agreed)} of {len(agreed)} tools: both say the same")
-    return 0 if all(agreed) else 1
+    return 0 if agreed and all(agreed) else 1
 
 
 if __name__ == "__main__":
