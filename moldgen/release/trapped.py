@@ -10,7 +10,7 @@ from scipy.spatial import cKDTree
 
 from moldgen.finding import Point
 from moldgen.kernel.body import Body
-from moldgen.kernel.meshsolid import MeshSolid, PieceMesh, mesh_solid, piece_mesh, thick_pieces, thickness
+from moldgen.kernel.meshsolid import MeshSolid, PieceMesh, mesh_solid, piece_mesh, thick_pieces, thickness, without
 from moldgen.kernel.tracer import Tracer
 from moldgen.release.kinds import FaceKinds, Kind
 from moldgen.release.sweep import CAP, WALL, contested_sweeps
@@ -108,8 +108,12 @@ def trapped_between(body: Body, kinds: FaceKinds, part: MeshSolid, above: MeshSo
     """Return the trapped volume from sweeps that are already known, as those of the same body before a split are.
 
     The face numbers of `part` are taken for those of `body`; so are those of the sweeps for places where they differ.
+
+    Raises
+    ------
+    KernelError : the part cannot be taken out of the space between the sweeps
     """
-    inside = (above ^ below) - part
+    inside = without(above ^ below, part)
     thick = thick_pieces(inside, NOISE_THICKNESS)
     meshes, sides = _beside(body, [piece_mesh(piece) for piece in thick])
     found = [_measured(body, kinds, p, m, s) for p, m, s in zip(thick, meshes, sides, strict=True)]

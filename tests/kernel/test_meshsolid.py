@@ -1,6 +1,7 @@
 """Mesh solids: volumes, faces that survive booleans, erosion, and how deep one body reaches into another."""
 
 import math
+from typing import Any
 
 import numpy as np
 import pytest
@@ -19,6 +20,7 @@ from moldgen.kernel.meshsolid import (
     thick_pieces,
     thickness,
     union,
+    without,
 )
 from moldgen.tolerances import EROSION
 
@@ -135,3 +137,30 @@ def test_the_thickest_of_several_overlaps_counts():
 def test_a_part_as_thin_as_the_erosion_does_not_turn_into_a_body_of_its_own():
     leaf = eroded(mesh_of(solids.box((0, 0, 0), (20, 20, 0.02))))  # eroded from both sides by more than it has
     assert overlap_depth(solid_of(solids.box((-5, -5, -5), (25, 25, 5))), leaf) == 0.0
+
+
+def test_a_mesh_boolean_that_loses_volume_is_not_believed() -> None:
+    """A stand-in for the boolean that keeps too much at first, and then for ever."""
+    corners = (((0, 0, 0), (2, 2, 2)), ((1, 0, 0), (3, 2, 2)))
+    one, other = (mesh_solid(Body(solids.box(*pair)).mesh) for pair in corners)
+    assert without(one, other).volume() == pytest.approx(4.0)
+    assert without(Faulty(one, 1), other).volume() == pytest.approx(4.0, rel=1e-6)
+    with pytest.raises(KernelError, match=r"by 4 mm\^3"):
+        without(Faulty(one, 99), other)
+
+
+class Faulty:
+    """A mesh solid whose difference takes nothing away, so many times."""
+
+    def __init__(self, solid: Any, times: int) -> None:
+        self._solid, self._times = solid, times
+
+    def volume(self) -> float:
+        return float(self._solid.volume())
+
+    def __sub__(self, other: Any) -> Any:
+        self._times -= 1
+        return self._solid if self._times >= 0 else self._solid - other
+
+    def __xor__(self, other: Any) -> Any:
+        return self._solid ^ other

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import zlib
 from functools import cache
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 import pytest
@@ -19,13 +19,13 @@ from OCP.BRepBuilderAPI import BRepBuilderAPI_Transform
 from OCP.gp import gp_Trsf
 
 from moldgen.kernel.body import Body
-from moldgen.kernel.measure import volume
+from moldgen.kernel.measure import volume_adaptive
 from moldgen.model.proof import Verdict
 from moldgen.release.frame import rotation_to_z
 from moldgen.release.imprint import imprint_silhouettes
 from moldgen.release.kinds import face_kinds
 from moldgen.release.trapped import trapped_volume
-from moldgen.tolerances import BALANCE
+from moldgen.tolerances import BALANCE, MESH_DEFLECTION
 
 from .synthetic import PARTS, STRAIGHT
 
@@ -33,9 +33,9 @@ PULLS = 6
 FACTOR = 1.7
 WITHOUT_EJECTORS = {"the ejectors move through their stroke": Verdict.NOT_RUN}
 
-SAME_SHARE = 1e-5
-"""Relative difference of halves under a motion: where a free curve turns over is known to 1e-4 mm, and the parting line
-with it. What one half gains the other loses; their sum is held against `BALANCE`."""
+SAME_SHARE = 5e-5
+"""Relative difference of halves under a motion: the skin that closes a hole in a curved wall is free to bulge, by some
+0.05 mm on these parts. What one half gains the other loses: their sum is held against `BALANCE`."""
 
 
 def some(names: Any, pulls: int = 1) -> list[Any]:
@@ -81,23 +81,39 @@ def moved(solid: Any, matrix: np.ndarray) -> Any:
     return BRepBuilderAPI_Transform(solid, move, True).Shape()
 
 
-def trapped_mm3(solid: Any, direction: np.ndarray) -> tuple[float, int]:
-    """The trapped volume along a pull, and in how many pieces."""
+class Found(NamedTuple):
+    """The trapped volume along a pull, in how many undercuts, and what the mesh leaves open of it [mm3].
+
+    The mesh lies off curved faces by its sag, which does not scale with the part; and a face is upper, lower or
+    vertical by a distance, which does not either. So the volume is known to the sag times the area that is touched.
+    """
+
+    mm3: float
+    undercuts: int
+    play: float
+
+
+def trapped_mm3(solid: Any, direction: np.ndarray) -> Found:
+    """What is trapped along a pull; sheets that are thinner than the noise of the mesh are left out."""
     stood = moved(solid, np.array(rotation_to_z(tuple(float(c) for c in direction))))
     body = Body(stood)
     body, _ = imprint_silhouettes(body, face_kinds(body))
     found = trapped_volume(body, face_kinds(body))
-    return sum(p.volume_mm3 for p in found.pieces) + found.noise_mm3, len(found.undercuts)
+    touched = sum(p.area_mm2 for p in found.pieces)
+    curved = any(body.surface_kind(f) != "plane" for f in range(len(body.faces)))
+    play = MESH_DEFLECTION * touched if curved else 1e-6 * touched
+    return Found(sum(p.volume_mm3 for p in found.pieces), len(found.undercuts), play + found.noise_mm3)
 
 
 @cache
-def trapped_here(name: str, number: int) -> tuple[float, int]:
+def trapped_here(name: str, number: int) -> Found:
     return trapped_mm3(part(name), pull(name, number))
 
 
-def alike(name: str) -> Any:
-    """How closely two trapped volumes agree: the meshes of a turned part differ by their sag."""
-    return {"rel": 2e-3, "abs": 1e-5 * volume(part(name)) + 0.02}
+def assert_alike(one: Found, other: Found, scale: float = 1.0) -> None:
+    """The same volume within what the meshes leave open; `other` belongs to a part that much larger."""
+    play = 1e-6 + one.play + other.play / scale**3
+    assert other.mm3 / scale**3 == pytest.approx(one.mm3, rel=1e-6, abs=play)
 
 
 def trapped_by_rays(solid: Any, direction: np.ndarray) -> float:
@@ -135,35 +151,41 @@ def columns(corners: np.ndarray, low: np.ndarray, step: np.ndarray) -> float:
 @pytest.mark.parametrize(("name", "number"), some(PARTS, PULLS))
 def test_trapped_volume_is_what_lines_along_the_pull_enclose(name: str, number: int) -> None:
     """Law: trapped is what lies between two faces of the plastic along the pull, counted here on a grid of lines."""
-    found, _ = trapped_here(name, number)
-    assert found == pytest.approx(trapped_by_rays(part(name), pull(name, number)), rel=0.02, abs=2.0)
+    assert trapped_here(name, number).mm3 == pytest.approx(
+        trapped_by_rays(part(name), pull(name, number)), rel=0.02, abs=2.0
+    )
 
 
 @pytest.mark.parametrize(("name", "number"), some(PARTS, PULLS))
 def test_turning_part_and_pull_traps_the_same(name: str, number: int) -> None:
     matrix = turn(number)
     there = trapped_mm3(moved(part(name), matrix), matrix @ pull(name, number))
-    assert there[0] == pytest.approx(trapped_here(name, number)[0], **alike(name))
+    assert_alike(trapped_here(name, number), there)
 
 
 @pytest.mark.parametrize(("name", "number"), some(PARTS, PULLS))
 def test_a_mirrored_part_traps_the_same(name: str, number: int) -> None:
     mirror = np.diag([-1.0, 1.0, 1.0])
     there = trapped_mm3(moved(part(name), mirror), mirror @ pull(name, number))
-    assert there[0] == pytest.approx(trapped_here(name, number)[0], **alike(name))
+    assert_alike(trapped_here(name, number), there)
 
 
 @pytest.mark.parametrize(("name", "number"), some(PARTS, PULLS))
 def test_the_pull_turned_round_traps_the_same(name: str, number: int) -> None:
     there = trapped_mm3(part(name), -pull(name, number))
-    assert there[0] == pytest.approx(trapped_here(name, number)[0], **alike(name))
+    assert_alike(trapped_here(name, number), there)
 
 
 @pytest.mark.parametrize(("name", "number"), some(PARTS, PULLS))
 def test_scaling_scales_the_trapped_volume(name: str, number: int) -> None:
     there = trapped_mm3(moved(part(name), FACTOR * np.eye(3)), pull(name, number))
-    expected = trapped_here(name, number)[0]
-    assert there[0] / FACTOR**3 == pytest.approx(expected, **alike(name))
+    assert_alike(trapped_here(name, number), there, FACTOR)
+
+
+def test_a_pull_whose_sheets_coincide_loses_nothing() -> None:
+    """The mesh boolean once dropped 137 mm3 of this space, one way round only."""
+    here, there = trapped_here("window 3", 1), trapped_mm3(part("window 3"), -pull("window 3", 1))
+    assert there.mm3 == pytest.approx(here.mm3, rel=1e-6)
 
 
 # --- halves ---------------------------------------------------------------------------------------------------------
@@ -175,19 +197,19 @@ def molded(name: str) -> Molded:
 
 
 def halves(made: Molded) -> tuple[float, float]:
-    return volume(made.parted.cavity), volume(made.parted.core)
+    return volume_adaptive(made.parted.cavity, 1e-8), volume_adaptive(made.parted.core, 1e-8)
 
 
 @pytest.mark.parametrize("name", [n for n in PARTS if n not in STRAIGHT])
 def test_the_others_do_trap_steel(name: str) -> None:
-    assert trapped_mm3(part(name), np.array([0.0, 0.0, 1.0]))[1] > 0
+    assert trapped_mm3(part(name), np.array([0.0, 0.0, 1.0])).undercuts > 0
 
 
 @pytest.mark.parametrize("name", some(STRAIGHT))
 def test_halves_balance_and_open(name: str) -> None:
     made = molded(name)
     block = block_mm3(made.corners)
-    assert abs(sum(halves(made)) + volume(part(name)) - block) / block < BALANCE
+    assert abs(sum(halves(made)) + volume_adaptive(part(name), 1e-8) - block) / block < BALANCE
     left = unproved(made.bodies, made.claims)
     assert {name: p.verdict for name, p in left.items()} in ({}, WITHOUT_EJECTORS)
 
@@ -202,7 +224,7 @@ def test_a_part_turned_and_pulled_along_gives_the_same_halves(name: str) -> None
     areas = [m.parted.body.face_areas[m.parted.sides.cavity].sum() for m in (molded(name), there)]
     assert areas[0] == pytest.approx(areas[1], rel=1e-3)
     block = block_mm3(there.corners)
-    assert abs(sum(halves(there)) + volume(part(name)) - block) / block < BALANCE
+    assert abs(sum(halves(there)) + volume_adaptive(part(name), 1e-8) - block) / block < BALANCE
 
 
 @pytest.mark.parametrize("name", some(STRAIGHT))
@@ -211,6 +233,7 @@ def test_a_mirrored_part_gives_the_mirrored_halves(name: str) -> None:
     low[0], high[0] = -high[0], -low[0]
     there = mold(moved(part(name), np.diag([-1.0, 1.0, 1.0])), corners=(low, high))
     assert halves(there) == pytest.approx(halves(molded(name)), rel=SAME_SHARE)
+    assert sum(halves(there)) == pytest.approx(sum(halves(molded(name))), rel=BALANCE)
 
 
 @pytest.mark.parametrize("name", some(STRAIGHT))
@@ -219,3 +242,4 @@ def test_a_scaled_part_gives_the_scaled_halves(name: str) -> None:
     there = mold(moved(part(name), FACTOR * np.eye(3)), corners=(FACTOR * low, FACTOR * high))
     expected = tuple(FACTOR**3 * mm3 for mm3 in halves(molded(name)))
     assert halves(there) == pytest.approx(expected, rel=SAME_SHARE)
+    assert sum(halves(there)) == pytest.approx(sum(expected), rel=BALANCE)
