@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 
-from moldgen.errors import MoldgenError, PartError, SpecError
-from moldgen.finding import Finding, Notes, Severity
+from moldgen.errors import KernelError, MoldgenError, PartError, SpecError
+from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.flow.lay_out import marked_points
 from moldgen.flow.prepare import Prepared, ready
 from moldgen.flow.review import Reviewed, refuse_undercuts, undercut_error
@@ -13,24 +15,28 @@ from moldgen.flow.side_plan import plan_sides
 from moldgen.flow.side_steel import Formed, with_room
 from moldgen.flow.tell import Tell
 from moldgen.kernel.body import Body
+from moldgen.kernel.meshsolid import mesh_solid
 from moldgen.layout.blocks import size_blocks
 from moldgen.layout.side_drive import drive_fronts
 from moldgen.layout.slide_body import SideTask
 from moldgen.model.halves import Halves
 from moldgen.model.part import MoldFrame
-from moldgen.model.side_action import SidePlan
+from moldgen.model.side_action import Front, SidePlan
 from moldgen.parting.fill import fill_trapped
 from moldgen.parting.halves import Parted, part_halves
-from moldgen.parting.side_fill import filled_candidates
+from moldgen.parting.side_fill import filled_candidates, outside_fronts
 from moldgen.parting.told import parting_line, steel_contacts, told
 from moldgen.release.kinds import face_kinds
 from moldgen.release.trapped import TrapPiece, trapped_volume
 from moldgen.spec.sections import Blocks
-from moldgen.steel.forming import form_side_steel
-from moldgen.tolerances import ON_PLANE
+from moldgen.steel.forming import form_side_steel, narrowed
+from moldgen.tolerances import ON_PLANE, OPEN_OVERLAP
 
 MOST_FILLED = 0.1
 """Share of the part's volume that may be molded full: filling is for small undercuts (our choice)."""
+
+NARROWER = (0.0, 0.06, 0.11)
+"""mm: by how much the outlines of fronts are drawn in when the kernel cannot cut them as planned (our choice)."""
 
 _REMEDY = "fill these places in the part, change them so that they taper along the pull, or give another pull"
 
@@ -49,7 +55,7 @@ def part_mold(reviewed: Reviewed, tell: Tell) -> tuple[Formed, Notes]:
         return _plain(reviewed, prepared, tell)
     if how == "fill":
         with tell.stage("fill the undercuts") as stage:
-            filled, notes = _filled(reviewed, prepared.trapped.pieces)
+            filled, notes = _filled(reviewed, prepared, prepared.trapped.pieces)
             stage.detail = f"{len(prepared.trapped.pieces)} places"
         made, more = _plain(reviewed, filled, tell)
         return made, notes + more
@@ -67,25 +73,44 @@ def _plain(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Formed, 
 
 def _released(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Formed, Notes]:
     """Return halves and side actions; what no side action releases is filled if the spec allows it."""
-    notes = Notes()
-    with tell.stage("plan the side actions") as stage:
-        plan, more = plan_sides(reviewed, prepared)
-        stage.detail = _counted(plan)
-    if plan.left and reviewed.loaded.spec.parting.undercuts == "release_or_fill":
-        pieces = tuple(prepared.trapped.pieces[u.piece] for u in plan.left)
+    notes, fills = Notes(), reviewed.loaded.spec.parting.undercuts == "release_or_fill"
+    if fills and prepared.trapped.rubs:
+        prepared, notes = _with_rubs_filled(reviewed, prepared, tell)
+    plan, more = _planned(reviewed, prepared, tell)
+    if plan.left and fills:
+        pieces = tuple(prepared.trapped.pieces[u.piece] for u in plan.left if u.piece >= 0)
         with tell.stage("fill what no side action releases") as stage:
-            prepared, notes = _filled(reviewed, pieces)
+            prepared, also = _filled(reviewed, prepared, pieces)
+            notes += also
             stage.detail = f"{len(pieces)} places"
         if not prepared.trapped.undercuts:
-            made, more = _plain(reviewed, prepared, tell)
-            return made, notes + more
-        with tell.stage("plan the side actions") as stage:
-            plan, more = plan_sides(reviewed, prepared)
-            stage.detail = _counted(plan)
+            made, also = _plain(reviewed, prepared, tell)
+            return made, notes + also
+        plan, more = _planned(reviewed, prepared, tell)
     if plan.left:
         raise _unreleased(reviewed, plan)
     made, also = _with_sides(reviewed, prepared, plan, tell)
     return made, notes + more + also
+
+
+def _planned(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[SidePlan, Notes]:
+    with tell.stage("plan the side actions") as stage:
+        plan, notes = plan_sides(reviewed, prepared)
+        stage.detail = _counted(plan)
+    return plan, notes
+
+
+def _with_rubs_filled(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Prepared, Notes]:
+    """Return the part with its rubs filled, as it is where that cannot be done."""
+    with tell.stage("fill what rubs") as stage:
+        try:
+            filled, notes = _filled(reviewed, prepared, prepared.trapped.rubs)
+        except PartError as error:
+            stage.detail = "none: it cannot be done"
+            why = error.what.split("\n")[0]
+            return prepared, Notes(decisions=(Decision("rubs", "left as they are", why),))
+        stage.detail = f"{len(prepared.trapped.rubs)} places"
+    return filled, notes
 
 
 def _counted(plan: SidePlan) -> str:
@@ -149,11 +174,33 @@ def _formed(reviewed: Reviewed, filled: Prepared, part: Body, plan: SidePlan, te
         corners, notes = _blocks(reviewed, filled, section, parted.level, tell)
         wide = room(corners, parted.level)
         parted = _parted(reviewed, filled, wide, parted.level, tell)
-    driven, more = drive_fronts(plan.fronts, part, parted.level)
+    halves = _halves(parted, reviewed.frame, *wide)
     with tell.stage("form the side actions") as stage:
-        formed, also = form_side_steel(_halves(parted, reviewed.frame, *wide), part, [d.front for d in driven])
-        stage.detail = f"{len(formed.sides)} side actions"
-    return Formed(formed, driven, part), notes + more + also + told(parted, reviewed.frame)
+        formed, more = _cut(halves, filled.body, part, plan.fronts)
+        stage.detail = f"{len(formed.halves.sides)} side actions"
+    return formed, notes + more + told(parted, reviewed.frame)
+
+
+def _cut(halves: Halves, filled: Body, part: Body, fronts: Sequence[Front]) -> tuple[Formed, Notes]:
+    """Return the fronts cut; where the kernel fails, with their outlines a little narrower.
+
+    A wall of a front that only just touches a round face of the part leaves steel without thickness there.
+    """
+    refused: list[str] = []
+    for by in NARROWER:
+        own = [narrowed(front, by) for front in fronts] if by else list(fronts)
+        uncovered = outside_fronts(filled, mesh_solid(part.mesh), own) if by else 0.0
+        if uncovered >= OPEN_OVERLAP:
+            refused.append(f"{by:g} mm narrower: {uncovered:.3f} mm of the undercuts would lie beside the fronts")
+            continue
+        driven, notes = drive_fronts(own, part, halves.level)
+        try:
+            formed, more = form_side_steel(halves, part, [d.front for d in driven])
+        except KernelError as error:
+            refused.append(f"{by:g} mm narrower: {error.what}" if by else error.what)
+            continue
+        return Formed(formed, driven, part), notes + more
+    raise KernelError("; ".join(refused))
 
 
 def _given_level(reviewed: Reviewed, prepared: Prepared) -> float | None:
@@ -216,9 +263,8 @@ def _halves(parted: Parted, frame: MoldFrame, low: np.ndarray, high: np.ndarray)
     )
 
 
-def _filled(reviewed: Reviewed, pieces: tuple[TrapPiece, ...]) -> tuple[Prepared, Notes]:
+def _filled(reviewed: Reviewed, before: Prepared, pieces: tuple[TrapPiece, ...]) -> tuple[Prepared, Notes]:
     """Return the part with places molded full."""
-    before = reviewed.prepared
     gained = sum(p.volume_mm3 for p in pieces)
     share = gained / float(before.trapped.part.volume())
     if share > MOST_FILLED:

@@ -74,6 +74,11 @@ def signed_area(polygon: np.ndarray) -> float:
     return 0.5 * float((x * np.roll(y, -1) - y * np.roll(x, -1)).sum())
 
 
+def level_section(solid: MeshSolid, level: float) -> Region:
+    """Return the section of a solid at a level."""
+    return solid.slice(level)
+
+
 def bounds(shape: Region) -> tuple[np.ndarray, np.ndarray]:
     """Return the lower and upper corner of a region, (2,) each."""
     left, bottom, right, top = shape.bounds()

@@ -50,7 +50,7 @@ def filled_candidates(
                 filled, _ = fill_trapped(body, kinds, [trapped.pieces[p] for p in served], frame, WHY)
             else:
                 filled = _with_fronts(body, part, fronts, STUBS[1] if "run on" in rung else STUBS[0])
-            outside = _outside_fronts(filled, part, fronts)
+            outside = outside_fronts(filled, part, fronts)
         except (PartError, KernelError) as error:
             yield f"{rung}: {_told(error)}"
             continue
@@ -81,8 +81,8 @@ def _with_fronts(body: Body, part: MeshSolid, fronts: Sequence[Front], stub: flo
     return body.like(made[0])
 
 
-def _outside_fronts(filled: Body, part: MeshSolid, fronts: Sequence[Front]) -> float:
-    """Return the thickness [mm] of the thickest piece that the filled part gained outside the fronts."""
+def outside_fronts(filled: Body, part: MeshSolid, fronts: Sequence[Front]) -> float:
+    """Return the thickness [mm] of the thickest piece that a filled part has more than the part, outside fronts."""
     gained = mesh_solid(filled.mesh) - part
     for front in fronts:
         for solid in outline_prism(front.outline, across(front.axis), front.near, front.far):

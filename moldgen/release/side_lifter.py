@@ -12,7 +12,19 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from moldgen.kernel.mesh_prism import Region, bounds, box_of, grown, hull, prism, rectangle, shadow, shifted, turned
+from moldgen.kernel.mesh_prism import (
+    Region,
+    bounds,
+    box_of,
+    grown,
+    hull,
+    level_section,
+    prism,
+    rectangle,
+    shadow,
+    shifted,
+    turned,
+)
 from moldgen.kernel.meshsolid import MeshSolid, piece_mesh, thick_pieces, union
 from moldgen.kernel.tracer import Tracer
 from moldgen.model.side_action import Front, SideKind, across
@@ -41,6 +53,12 @@ WAYS, STRAY, BLOCKED = 40, 0.02, 0.05
 
 MOMENTS = 9
 """Moments of the ejection stroke at which two lifters are held against each other; both move evenly and straight."""
+
+TOP_STEP, HIGHEST = 0.1, 60.0
+"""Steps [mm] in which plastic is looked for over the head of a lifter, and how far."""
+
+BARE = 0.002
+"""Area [mm^2] of a lifter's head that plastic need not cover."""
 
 REACHED = 0.1
 """A piece of a lifter that ends this near [mm] to its foot is held by it."""
@@ -157,11 +175,25 @@ class _Trial:
         shapes = [*_shapes(need, toward), *_carved_shapes(need, toward, forbidden)]
         why = "no outline whose steel holds together"
         for outline in shapes:
-            if is_free(outline.shape, forbidden):
-                made = self._settled(seen, outline, near, far)
-                if made is not None:
-                    return made
+            if not is_free(outline.shape, forbidden):
+                continue
+            top = self._top(outline.shape, near)
+            if top < near and not is_free(outline.shape, self._forbidden(need, toward, top)):
+                continue
+            made = self._settled(seen, outline, top, far)
+            if made is not None:
+                return made
         return why
+
+    def _top(self, shape: Region, near: float) -> float:
+        """Return where the head of a lifter ends: inside the plastic over it, so that no steel of the core stands in
+        its way up; at `near` where no plastic covers it.
+        """
+        highest = float(box_of(self.view.part)[0][2])
+        for level in np.arange(near, max(highest, near - HIGHEST), -TOP_STEP):
+            if (shape - level_section(self.view.part, float(level))).area() < BARE:
+                return float(level)
+        return near
 
     def _settled(self, seen: MeshSolid, outline: Outline, near: float, far: float) -> Lifted | None:
         body = prism(outline.shape, near, far)

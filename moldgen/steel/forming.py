@@ -14,15 +14,18 @@ from moldgen.finding import Notes
 from moldgen.kernel.body import Body
 from moldgen.kernel.boolean import common, copied, cut
 from moldgen.kernel.measure import is_valid, volume
+from moldgen.kernel.mesh_prism import grown, polygons, region
 from moldgen.kernel.meshsolid import MeshSolid, mesh_solid, thick_pieces
 from moldgen.kernel.rehearse import made_apart
 from moldgen.kernel.side_prism import outline_prism
+from moldgen.kernel.step_trip import read_back
 from moldgen.kernel.topology import compound_of
 from moldgen.model.halves import Halves, SideSteel
 from moldgen.model.side_action import Front, SideKind, across
 from moldgen.release.kinds import face_kinds
 from moldgen.release.sweep import sweep_faces
 from moldgen.steel.adopt import Piece, adopt
+from moldgen.tolerances import PROOF_ANGLE, PROOF_DEFLECTION
 
 OUT = 1.0
 """mm: how far a front's tool runs out of the block, so that no two planes coincide there."""
@@ -152,7 +155,16 @@ def _steel_of(tool: _Tool, part: Body, mold_part: MeshSolid, before: Sequence[_T
     bad = [s for s in found if not is_valid(s)]
     if bad:
         raise KernelError(f"{len(bad)} pieces of {tool.name} are no valid solids")
+    for solid in found:  # where steel runs out to nothing, the mesh of what is read back does not close
+        mesh_solid(Body(read_back(solid), PROOF_DEFLECTION, PROOF_ANGLE).mesh)
     return [s for s in found if volume(s) > 0.0]
+
+
+def narrowed(front: Front, by: float) -> Front:
+    """Return a front with its outline drawn in on all sides [mm]; the head of a lifter reaches farther up instead."""
+    outline = polygons(grown(region(front.outline), -by))
+    near = front.near - by if front.kind is SideKind.LIFTER else front.near
+    return replace(front, outline=outline, near=near, rung=f"{front.rung}, {by:g} mm narrower")
 
 
 def _without(half: Any, tools: Sequence[_Tool], name: str) -> list[Any]:
