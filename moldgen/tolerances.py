@@ -59,5 +59,9 @@ MAX_EDGE_TOLERANCE: Final = 2e-2
 BALANCE: Final = 1e-6
 """Relative volume balance cavity + core + part = block that a proof accepts."""
 
+SAME_SURFACE: Final = 1e-4
+"""A spline that keeps this close to a plane, cylinder, cone, sphere or torus all over is read as that (our choice: a
+hundredth of the 0.01 mm that two writings of one shell may differ by, and the smallest gap that sewing closes)."""
+
 HEAL_VOLUME: Final = 2e-4
 """Relative volume change that healing may cause before it is refused."""

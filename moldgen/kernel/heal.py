@@ -19,6 +19,7 @@ from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Shape, TopoDS_So
 from moldgen.errors import PartError
 from moldgen.kernel.guard import operation
 from moldgen.kernel.heal_doubles import without_doubles
+from moldgen.kernel.heal_splines import recognized
 from moldgen.kernel.measure import bounding_box, is_valid, volume
 from moldgen.kernel.sew import close, open_edges
 from moldgen.kernel.topology import compound_of, edge_points, edges_of, explore, faces_of, solids_of, vertex_point, walk
@@ -67,7 +68,8 @@ def heal(shape: TopoDS_Shape) -> Healed:
             where=_place(solid),
             remedy=_REPAIR,
         )
-    return Healed(solid, after, (*notes, *_remarks(solid)))
+    solid, after, plain = recognized(solid, after)
+    return Healed(solid, after, (*notes, *plain, *_remarks(solid)))
 
 
 def _measured(solid: TopoDS_Solid) -> float:
