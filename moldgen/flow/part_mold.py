@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 
@@ -17,11 +18,12 @@ from moldgen.flow.tell import Tell
 from moldgen.kernel.body import Body
 from moldgen.kernel.meshsolid import mesh_solid
 from moldgen.layout.blocks import size_blocks
-from moldgen.layout.side_drive import drive_fronts
+from moldgen.layout.side_drive import Driven, drive_fronts
 from moldgen.layout.slide_body import SideTask
 from moldgen.model.halves import Halves
 from moldgen.model.part import MoldFrame
-from moldgen.model.side_action import Front, SidePlan
+from moldgen.model.side_action import Front, SideKind, SidePlan
+from moldgen.model.slide import Drive
 from moldgen.parting.fill import fill_trapped
 from moldgen.parting.halves import Parted, part_halves
 from moldgen.parting.side_fill import filled_candidates, outside_fronts
@@ -29,7 +31,7 @@ from moldgen.parting.told import parting_line, steel_contacts, told
 from moldgen.release.kinds import face_kinds
 from moldgen.release.trapped import TrapPiece, trapped_volume
 from moldgen.spec.sections import Blocks
-from moldgen.steel.forming import form_side_steel, narrowed
+from moldgen.steel.forming import form_side_steel, meeting_fronts, narrowed
 from moldgen.tolerances import ON_PLANE, OPEN_OVERLAP
 
 MOST_FILLED = 0.1
@@ -195,12 +197,22 @@ def _cut(halves: Halves, filled: Body, part: Body, fronts: Sequence[Front]) -> t
             continue
         driven, notes = drive_fronts(own, part, halves.level)
         try:
+            driven = _in_turn(driven, (halves.low, halves.high))
             formed, more = form_side_steel(halves, part, [d.front for d in driven])
         except KernelError as error:
             refused.append(f"{by:g} mm narrower: {error.what}" if by else error.what)
             continue
         return Formed(formed, driven, part), notes + more
     raise KernelError("; ".join(refused))
+
+
+def _in_turn(driven: tuple[Driven, ...], corners: Corners) -> tuple[Driven, ...]:
+    """Return the fronts with those slides drawn by cylinders that share steel: these must move one after the other."""
+    meeting = meeting_fronts([d.front for d in driven], corners)
+    return tuple(
+        replace(d, drive=Drive.CYLINDER) if i in meeting and d.front.kind is SideKind.SLIDE else d
+        for i, d in enumerate(driven)
+    )
 
 
 def _given_level(reviewed: Reviewed, prepared: Prepared) -> float | None:

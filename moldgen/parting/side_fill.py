@@ -13,7 +13,7 @@ from moldgen.kernel.boolean import copied, fuse
 from moldgen.kernel.measure import is_valid, volume
 from moldgen.kernel.meshsolid import MeshSolid, mesh_solid, thick_pieces, thickness
 from moldgen.kernel.rehearse import made_apart
-from moldgen.kernel.side_prism import outline_prism
+from moldgen.kernel.side_prism import SHORTEST, outline_prism
 from moldgen.model.part import MoldFrame
 from moldgen.model.side_action import Front, across
 from moldgen.parting.fill import fill_trapped
@@ -68,7 +68,10 @@ def _with_fronts(body: Body, part: MeshSolid, fronts: Sequence[Front], stub: flo
     """Return the part with the fronts, each as far as there is plastic inside it, joined to it."""
     solids, expected = [], part
     for front in fronts:
-        for solid in outline_prism(front.outline, across(front.axis), front.near, min(front.clear + stub, front.far)):
+        end = min(front.clear + stub, front.far)
+        if end - front.near < SHORTEST:  # it forms an undercut that lies open beside the part
+            continue
+        for solid in outline_prism(front.outline, across(front.axis), front.near, end):
             solids.append(solid)
             expected = expected + mesh_solid(Body(solid).mesh)
     wanted = float(expected.volume())

@@ -95,6 +95,13 @@ def form_side_steel(halves: Halves, part: Body, fronts: Sequence[Front]) -> tupl
     return made, notes
 
 
+def meeting_fronts(fronts: Sequence[Front], corners: tuple[np.ndarray, np.ndarray]) -> set[int]:
+    """Return the places of fronts that share steel with one that moves another way: they must move in turn."""
+    tools = [_tool(name, front, corners) for name, front in zip(side_names(fronts), fronts, strict=True)]
+    pairs = [(i, j) for j in range(len(tools)) for i in range(j) if fronts[i].axis != fronts[j].axis]
+    return {place for i, j in pairs if _meet(tools[i], tools[j]) for place in (i, j)}
+
+
 def side_names(fronts: Sequence[Front]) -> list[str]:
     """Return "slide 1", "slide 2", "lifter 1", ... for fronts in order."""
     count: dict[SideKind, int] = {}
