@@ -23,6 +23,7 @@ from moldgen.flow.review import Reviewed, open_part, review_along
 from moldgen.flow.side_steel import make_sides
 from moldgen.flow.tell import Tell
 from moldgen.flow.words import direction_text
+from moldgen.kernel.beside import Beside
 from moldgen.model.halves import Halves
 from moldgen.model.layout import Layout
 from moldgen.model.proof import Proof
@@ -61,9 +62,12 @@ def build_tool(loaded: LoadedSpec, folder: Path, options: Options, tell: Tell) -
     """
     built = _built(loaded, tell)
     with tell.stage("export") as stage:
-        export_tool(built.tool, folder, loaded.spec.output.step)
+        files = export_tool(built.tool, folder, loaded.spec.output.step)
         stage.detail = "STEP files and tables"
-    return _prove_and_record(built, folder, options, tell)
+    try:
+        return _prove_and_record(built, files, folder, options, tell)
+    finally:
+        files.stop()
 
 
 def _built(loaded: LoadedSpec, tell: Tell) -> Built:
@@ -126,7 +130,7 @@ def _materials(reviewed: Reviewed) -> Materials:
     )
 
 
-def _prove_and_record(built: Built, folder: Path, options: Options, tell: Tell) -> JobResult:
+def _prove_and_record(built: Built, files: Beside[None], folder: Path, options: Options, tell: Tell) -> JobResult:
     """Prove the exported files while the pictures are drawn in a process of their own, then write the manifest."""
     pictures = _start_pictures(built, folder, options)
     try:
@@ -143,6 +147,7 @@ def _prove_and_record(built: Built, folder: Path, options: Options, tell: Tell) 
     finally:
         if pictures is not None:
             pictures.stop()
+    files.result()
     record = {**_record(built, notes, proofs, exported_volumes(built.tool, bodies)), "files": file_record(folder)}
     (folder / MANIFEST).write_text(to_json(record), encoding="utf-8")
     return _result(built, notes, proofs)

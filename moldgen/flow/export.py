@@ -8,6 +8,7 @@ from pathlib import Path
 
 from moldgen.flow.record import component_files
 from moldgen.flow.reread import TOOL_FILE, Entry, read_bodies
+from moldgen.kernel.beside import Beside
 from moldgen.kernel.step_write import Looks, StepExport
 from moldgen.model.tool import Tool
 from moldgen.output.palette import ROLES
@@ -18,8 +19,10 @@ CLEAR_ROLES = {"cavity": 0.55}
 """Share of light that passes a role in the STEP file: one looks through the cavity half at the part."""
 
 
-def export_tool(tool: Tool, folder: Path, schema: str) -> None:
-    """Write the assembly, one STEP file a component, the parts list and the hole table.
+def export_tool(tool: Tool, folder: Path, schema: str) -> Beside[None]:
+    """Write the assembly, the parts list and the hole table.
+
+    One STEP file a component is written by a process beside this one: they are there when its result is asked for.
 
     Raises
     ------
@@ -31,11 +34,15 @@ def export_tool(tool: Tool, folder: Path, schema: str) -> None:
     export = StepExport(tool.components, looks, schema)
     export.write_assembly(folder / TOOL_FILE)
     (folder / "step").mkdir()
-    for component in tool.components:
-        export.write_component(component.name, folder / files[component.name])
+
+    def write_components() -> None:
+        for component in tool.components:
+            export.write_component(component.name, folder / files[component.name])
+
     listed = {name: path.as_posix() for name, path in files.items()}
     (folder / "parts_list.csv").write_bytes(parts_list_csv(tool, listed).encode())
     (folder / "holes.csv").write_bytes(holes_csv(tool).encode())
+    return Beside(write_components)
 
 
 def reread_bodies(tool: Tool, folder: Path) -> list[ProofBody]:

@@ -14,7 +14,7 @@ from moldgen.kernel.step_read import read_assembly
 from moldgen.model.motion import Step
 from moldgen.model.part import Vector
 from moldgen.model.tool import Role
-from moldgen.proof.bodies import ProofBody
+from moldgen.proof.bodies import ProofBody, asked_beside
 from moldgen.proof.run import Claims
 
 TOOL_FILE = "tool.step"
@@ -115,10 +115,12 @@ def read_bodies(file: Path, entries: tuple[Entry, ...]) -> list[ProofBody]:
             where=str(file),
             remedy="build the tool again",
         )
-    return [
-        ProofBody(e.name if e.count == 1 else f"{e.name} {n}", e.role, e.motion, solid)
-        for (e, n), (_, solid) in zip(wanted, found, strict=True)
-    ]
+    return asked_beside(
+        [
+            ProofBody(e.name if e.count == 1 else f"{e.name} {n}", e.role, e.motion, solid)
+            for (e, n), (_, solid) in zip(wanted, found, strict=True)
+        ]
+    )
 
 
 def _named(names: Any) -> str:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
+from typing import NamedTuple
 
 import numpy as np
 from OCP.Bnd import Bnd_Box
@@ -13,9 +14,10 @@ from OCP.BRepGProp import BRepGProp
 from OCP.GeomAbs import GeomAbs_Plane
 from OCP.GProp import GProp_GProps
 from OCP.TopAbs import TopAbs_FACE, TopAbs_REVERSED
+from OCP.TopLoc import TopLoc_Location
 from OCP.TopoDS import TopoDS, TopoDS_Shape
 
-from moldgen.kernel.topology import compound_of, walk
+from moldgen.kernel.topology import compound_of, same_order, walk
 
 
 def volume(shape: TopoDS_Shape) -> float:
@@ -56,14 +58,22 @@ def joint_volume_fine(shapes: Sequence[TopoDS_Shape], relative: float = 1e-9) ->
 
 
 def balance(
-    shapes: Sequence[TopoDS_Shape], expected: float, limit: float, known: Callable[[], float] | None = None
+    shapes: Sequence[TopoDS_Shape],
+    expected: float,
+    limit: float,
+    known: Callable[[], float] | None = None,
+    quick: float | None = None,
 ) -> float:
     """Return |sum of volumes - expected| / |expected| of solids that fill a block.
 
     The ways to the sum are tried from cheap to exact until one is below `limit`; the last one's figure stands. `known`
-    is one more way, asked before the adaptive integration, which can take seconds.
+    is one more way, asked before the adaptive integration, which can take seconds; `quick` is the sum of their volumes
+    by default integration, all about the origin, if known already.
     """
-    ways: list[Callable[[], float]] = [lambda: joint_volume(shapes), lambda: joint_volume_fine(shapes)]
+    ways: list[Callable[[], float]] = [
+        lambda: joint_volume(shapes) if quick is None else quick,
+        lambda: joint_volume_fine(shapes),
+    ]
     ways += [known] if known is not None else []
     ways.append(lambda: volume_adaptive(compound_of(shapes), 1e-7))
     found = float("inf")
@@ -106,3 +116,18 @@ def bounding_box(shape: TopoDS_Shape) -> tuple[np.ndarray, np.ndarray]:
 def is_valid(shape: TopoDS_Shape) -> bool:
     """True when the kernel finds nothing wrong. It does not see faces that cross: never the only check."""
     return bool(BRepCheck_Analyzer(shape).IsValid())
+
+
+class Answers(NamedTuple):
+    """What the kernel says of a solid: is it valid, and its volume by default integration [mm^3]."""
+
+    valid: bool
+    volume_mm3: float
+
+
+def kernel_answers(solids: Sequence[TopoDS_Shape]) -> list[Answers]:
+    """Return the kernel's answers for each of some solids; copies of one at several places are checked once."""
+    bare = [solid.Located(TopLoc_Location()) for solid in solids]
+    known = same_order(bare)
+    valid = {n: is_valid(known.FindKey(n)) for n in range(1, known.Extent() + 1)}
+    return [Answers(valid[known.FindIndex(b)], volume(s)) for s, b in zip(solids, bare, strict=True)]

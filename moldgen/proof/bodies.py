@@ -2,15 +2,17 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from functools import cached_property
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass, replace
+from functools import cached_property, partial
 from typing import Any
 
 import numpy as np
 
 from moldgen.errors import KernelError
+from moldgen.kernel.beside import Beside
 from moldgen.kernel.body import Body
-from moldgen.kernel.measure import volume, volume_adaptive
+from moldgen.kernel.measure import Answers, kernel_answers, volume_adaptive
 from moldgen.kernel.meshsolid import MeshSolid, eroded, mesh_solid
 from moldgen.kernel.place import moved
 from moldgen.model.tool import Role
@@ -22,12 +24,21 @@ SAME_VOLUME = 1e-4
 
 @dataclass(frozen=True, eq=False)
 class ProofBody:
-    """One component where it stands in the closed mold, pull along +z [mm]; `motion` is the group it moves with."""
+    """One component where it stands in the closed mold, pull along +z [mm]; `motion` is the group it moves with.
+
+    asked : returns the kernel's answers about the solid, where they are being found already (see `asked_beside`)
+    """
 
     name: str
     role: Role
     motion: str
     solid: Any
+    asked: Callable[[], Answers] | None = None
+
+    @cached_property
+    def answers(self) -> Answers:
+        """What the kernel says of the solid, to be asked before it is meshed: it would judge the mesh as well."""
+        return kernel_answers([self.solid])[0] if self.asked is None else self.asked()
 
     @cached_property
     def body(self) -> Body:
@@ -46,7 +57,7 @@ class ProofBody:
         The kernel's default integration was up to 9e-3 off on trimmed spline faces; where it disagrees with the mesh,
         the adaptive one decides. Raises KernelError when there is no mesh to check it by.
         """
-        quick, checked = volume(self.solid), self.body.mesh.volume()
+        quick, checked = self.answers.volume_mm3, self.body.mesh.volume()
         return quick if abs(quick - checked) < SAME_VOLUME * abs(checked) else volume_adaptive(self.solid, 1e-7)
 
     @cached_property
@@ -62,6 +73,17 @@ class ProofBody:
         low, high = self.body.box
         other_low, other_high = other.body.box
         return bool((low <= other_high + slack).all() and (other_low <= high + slack).all())
+
+
+def asked_beside(bodies: Sequence[ProofBody]) -> list[ProofBody]:
+    """Return the same bodies, about which a process beside this one asks the kernel while this one meshes them."""
+    solids = [body.solid for body in bodies]
+    beside = Beside(lambda: kernel_answers(solids))
+
+    def answer(number: int) -> Answers:
+        return beside.result()[number]
+
+    return [replace(body, asked=partial(answer, number)) for number, body in enumerate(bodies)]
 
 
 def placed_bodies(

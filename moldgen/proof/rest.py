@@ -6,7 +6,7 @@ from collections.abc import Sequence
 from itertools import combinations
 
 from moldgen.errors import KernelError
-from moldgen.kernel.measure import balance, is_valid
+from moldgen.kernel.measure import balance
 from moldgen.kernel.topology import solids_of
 from moldgen.model.proof import Proof, Verdict
 from moldgen.model.tool import Role
@@ -25,7 +25,11 @@ APART = "nothing overlaps in the closed tool"
 
 def prove_sound(bodies: Sequence[ProofBody]) -> Proof:
     """Every component is one solid, valid for the kernel, whose mesh closes and looks outward."""
-    bad = [f"{body.name}: {fault}" for body in bodies if (fault := _fault(body))]
+    for body in bodies:
+        if body.asked is None:
+            body.answers  # noqa: B018  asked before it is meshed
+    meshes = [_mesh_fault(body) for body in bodies]  # first: meanwhile the kernel is asked, see `asked_beside`
+    bad = [f"{b.name}: {f}" for b, of_mesh in zip(bodies, meshes, strict=True) if (f := _fault(b) or of_mesh)]
     if not bodies:
         bad.append("there is no component")
     verdict = Verdict.FAILED if bad else Verdict.PASSED
@@ -36,8 +40,12 @@ def _fault(body: ProofBody) -> str:
     count = len(solids_of(body.solid))
     if count != 1:
         return f"{count} solids instead of one"
-    if not is_valid(body.solid):
-        return "the kernel calls it invalid"
+    return "" if body.answers.valid else "the kernel calls it invalid"
+
+
+def _mesh_fault(body: ProofBody) -> str:
+    if len(solids_of(body.solid)) != 1:
+        return ""  # there may be nothing to mesh
     try:
         # overlaps with a solid turned inside out would come out empty, and pass
         return "" if body.mesh.volume() > 0.0 else "it is inside out"
@@ -52,7 +60,13 @@ def prove_balance(bodies: Sequence[ProofBody], block_mm3: float, bored_mm3: floa
     """
     filling = [b for b in bodies if b.role in IN_BLOCK]
     solids = [b.solid for b in filling]
-    missing = balance(solids, block_mm3 - bored_mm3, BALANCE, lambda: sum(_mesh_volume(b) for b in filling))
+    missing = balance(
+        solids,
+        block_mm3 - bored_mm3,
+        BALANCE,
+        lambda: sum(_mesh_volume(b) for b in filling),
+        sum(b.answers.volume_mm3 for b in filling),
+    )
     verdict = Verdict.PASSED if missing < BALANCE else Verdict.FAILED
     detail = f"{len(solids)} solids and {bored_mm3:.3f} mm^3 of bores in a block of {block_mm3:.3f} mm^3"
     return Proof(FILLED, verdict, missing, BALANCE, "of the block", detail)
