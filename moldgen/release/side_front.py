@@ -10,6 +10,7 @@ from moldgen.kernel.mesh_prism import Region, bounds, box_of, grown, prism, shad
 from moldgen.kernel.meshsolid import MeshSolid, thick_pieces
 from moldgen.model.part import Vector
 from moldgen.model.side_action import Front, SideKind
+from moldgen.release.side_held import held_back, leaves_with_halves, steel_within
 from moldgen.release.side_outline import LANDS, MOVE, MOVES, Outline, carved, is_free, outlines, polygons_of
 from moldgen.release.side_space import View
 
@@ -32,6 +33,7 @@ class Found:
 
     start : where the space that it serves starts; near may lie deeper, in solid plastic
     rest : spaces of the need that are left to others, in the mold frame
+    loose : steel of the prism that the plastic parts from its outer end, for the halves to carry, in the mold frame
     """
 
     view: View
@@ -41,6 +43,7 @@ class Found:
     clear: float
     travel: float
     rest: tuple[MeshSolid, ...] = ()
+    loose: tuple[MeshSolid, ...] = ()
 
     def front(self, pieces: tuple[int, ...], given: int = -1) -> Front:
         """Return the front as the model tells it."""
@@ -65,18 +68,42 @@ class Found:
         return self.view.back(prism(self.outline.shape, self.near, self.view.far))
 
 
-def whole_front(view: View, space: MeshSolid) -> Found | None:
-    """Return a front that lets all of a space out along the view's direction, or None."""
+def whole_front(view: View, space: MeshSolid, near: float | None = None) -> Found | None:
+    """Return a front that lets all of a space out along the view's direction, or None.
+
+    near : where it ends, along the direction; None: at the space's own end or the level face of the part beside it
+    """
     seen = view.seen(space)
-    near = flush(view, float(box_of(seen)[0][2]))
+    near = flush(view, float(box_of(seen)[0][2])) if near is None else near
     need = shadow(seen)
     forbidden = obstacles(view, need, near)
-    if not is_free(need, forbidden):
+    if is_free(need, forbidden):
+        for outline in outlines(need, view, near):
+            found = settled(view, seen, outline, near) if is_free(outline.shape, forbidden) else None
+            if found is not None and not found.rest:
+                return found
         return None
-    for outline in outlines(need, view, near):
-        found = settled(view, seen, outline, near) if is_free(outline.shape, forbidden) else None
-        if found is not None and not found.rest:
-            return found
+    return _through_front(view, seen, near)
+
+
+def _through_front(view: View, seen: MeshSolid, near: float) -> Found | None:
+    """Return a front for all of a space whose steel also stands beyond a wall, where the halves carry it, or None.
+
+    Steel beyond the wall must not run round the wall's end to the front, so narrower windows are tried as well.
+    """
+    need = shadow(seen)
+    low, high = bounds(need)
+    for window in (WINDOW, LANDS[1] + 0.1, LANDS[2] + 0.05):
+        forbidden = held_back(view, need, near, window)
+        if not is_free(need, forbidden):
+            continue
+        for outline in outlines(need, view, near):
+            least, most = bounds(outline.shape)
+            if (least < low - window).any() or (most > high + window).any() or not is_free(outline.shape, forbidden):
+                continue
+            found = settled(view, seen, Outline(outline.shape, f"through a wall, {outline.rung}"), near, parted=True)
+            if found is not None and not found.rest:
+                return found
     return None
 
 
@@ -138,8 +165,11 @@ def _carved_front(view: View, seen: MeshSolid, level: float) -> Found | None:
     return settled(view, seen, Outline(shape, "carved around what blocks it"), level)
 
 
-def settled(view: View, seen: MeshSolid, outline: Outline, near: float) -> Found | None:
-    """Return the front with this outline and inner end, or None if its steel could not leave."""
+def settled(view: View, seen: MeshSolid, outline: Outline, near: float, parted: bool = False) -> Found | None:
+    """Return the front with this outline and inner end, or None if its steel could not leave.
+
+    parted : the plastic may part some of its steel from its outer end, where it can leave with the halves
+    """
     shape = outline.shape
     if shape.is_empty():
         return None
@@ -147,8 +177,13 @@ def settled(view: View, seen: MeshSolid, outline: Outline, near: float) -> Found
     inner = near - next((deeper for deeper in INTO_WALL if _is_full(plastic, shape, near - deeper, near)), 0.0)
     clear = max(float(box_of(plastic)[1][2]) if plastic.num_tri() else near, near)
     rest = thick_pieces(seen - prism(shape, near - OVER, view.far))
+    _, loose = steel_within(view, shape, inner) if parted else ([], [])
+    rest += [r for piece in loose for r in thick_pieces(seen ^ piece)]
+    loose = [view.back(piece) for piece in loose]
+    if not leaves_with_halves(view.tracer, loose):
+        return None
     travel = clear - max(float(box_of(seen)[0][2]), near)
-    return Found(view, outline, inner, near, clear, travel, tuple(view.back(r) for r in rest))
+    return Found(view, outline, inner, near, clear, travel, tuple(view.back(r) for r in rest), tuple(loose))
 
 
 def flush(view: View, low: float) -> float:

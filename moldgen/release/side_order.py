@@ -5,7 +5,8 @@ from __future__ import annotations
 from moldgen.kernel.mesh_prism import bounds as region_bounds
 from moldgen.kernel.mesh_prism import box_of, grown, hull, rectangle, shadow
 from moldgen.kernel.meshsolid import MeshSolid, thick_pieces, union
-from moldgen.release.side_front import Found, obstacles, settled
+from moldgen.release.side_front import WINDOW, Found, obstacles, settled
+from moldgen.release.side_held import REACHED, held_back
 from moldgen.release.side_lifter import Lifted
 from moldgen.release.side_outline import LANDS, Outline, is_free
 from moldgen.release.side_search import Placed
@@ -16,9 +17,6 @@ SAME_NEAR = 0.5
 
 MOST_MERGES = 200
 """Bound on the pairs of fronts for which a common outline is tried."""
-
-REACHED = 0.1
-"""A piece of steel that ends this near [mm] to the far end of its front is held there."""
 
 
 def merged(placed: list[Placed]) -> list[Placed]:
@@ -57,45 +55,45 @@ def _joined(one: Placed, other: Placed) -> Placed | None:
     view, near = first.view, min(first.start, second.start)
     seen = view.seen(union([one.covered, other.covered]))
     need = shadow(seen)
-    forbidden = obstacles(view, need, near)
+    parted = bool(first.loose or second.loose)
+    forbidden = held_back(view, need, near, WINDOW) if parted else obstacles(view, need, near)
     low, high = region_bounds(need)
+    wall = "through a wall, " if parted else ""
     for land in LANDS:
-        box = Outline(rectangle(low - land, high + land), f"rectangle, land {land:g} mm")
-        for outline in (box, Outline(grown(hull(need), land, 0.05), f"hull, land {land:g} mm")):
-            found = settled(view, seen, outline, near) if is_free(outline.shape, forbidden) else None
+        box = Outline(rectangle(low - land, high + land), f"{wall}rectangle, land {land:g} mm")
+        for outline in (box, Outline(grown(hull(need), land, 0.05), f"{wall}hull, land {land:g} mm")):
+            found = settled(view, seen, outline, near, parted) if is_free(outline.shape, forbidden) else None
             if found is not None and not found.rest:
                 pieces = tuple(sorted({*one.pieces, *other.pieces}))
                 return Placed(found, pieces, union([one.covered, other.covered]))
     return None
 
 
-def ordered(placed: list[Placed], space: SideSpace) -> list[Placed]:
-    """Return slides in an order in which each can leave, then lifters. Where two overlap the earlier takes the steel.
+def ordered(placed: list[Placed], space: SideSpace) -> tuple[list[Placed], list[Placed]]:
+    """Return slides in an order in which each can leave, then lifters, and slides for which there is no order.
 
-    A front may not follow one that would cut its inner end off from its outer one.
+    Where two overlap the earlier takes the steel: a front may not follow one that would cut its inner end off.
     """
     lifters = [p for p in placed if isinstance(p.found, Lifted)]
-    placed = [p for p in placed if not isinstance(p.found, Lifted)]
-    steel = [p.found.steel() - space.part for p in placed if isinstance(p.found, Found)]
-    after: dict[int, set[int]] = {i: set() for i in range(len(placed))}
-    for i in range(len(placed)):
-        for j in range(i + 1, len(placed)):
-            if not thick_pieces(steel[i] ^ steel[j]):
-                continue
-            if not _held(placed[j], steel[j] - steel[i]):
-                after[i].add(j)
-            elif not _held(placed[i], steel[i] - steel[j]):
-                after[j].add(i)
+    slides = [(p, p.found) for p in placed if isinstance(p.found, Found)]
+    steel = [found.steel() - union([space.part, *found.loose]) for _, found in slides]
+    before: dict[int, set[int]] = {i: set() for i in range(len(slides))}
+    for i in range(len(slides)):
+        for j in range(i + 1, len(slides)):
+            if thick_pieces(steel[i] ^ steel[j]):
+                if not _held(slides[j][1], steel[j] - steel[i]):
+                    before[i].add(j)
+                if not _held(slides[i][1], steel[i] - steel[j]):
+                    before[j].add(i)
     order: list[int] = []
-    waiting = list(range(len(placed)))
-    while waiting:
-        ready = next((i for i in waiting if not after[i] & set(waiting)), waiting[0])
-        order.append(ready)
-        waiting.remove(ready)
-    return [*(placed[i] for i in order), *lifters]
+    waiting = list(range(len(slides)))
+    while ready := [i for i in waiting if not before[i] & set(waiting)]:
+        order.append(ready[0])
+        waiting.remove(ready[0])
+    return [*(slides[i][0] for i in order), *lifters], [slides[i][0] for i in waiting]
 
 
-def _held(placed: Placed, left: MeshSolid) -> bool:
+def _held(found: Found, left: MeshSolid) -> bool:
     """Return whether all of the steel left of a front still reaches its far end."""
-    view = placed.found.view
+    view = found.view
     return all(float(box_of(view.seen(p))[1][2]) > view.far - REACHED for p in thick_pieces(left))

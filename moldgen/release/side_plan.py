@@ -38,8 +38,14 @@ def plan_side_actions(body: Body, kinds: FaceKinds, trapped: Trapped, options: S
         left += [said.refused] if said.refused is not None else []
         spaces += said.rest
     found, still = search.place(spaces)
-    placed = ordered(merged([*placed, *found]), search.shared)
+    placed, circular = ordered(merged([*placed, *found]), search.shared)
     rings = ring_count([p for _, p in undercuts])
     left += [refusal(search, s, trapped.pieces[s.piece], rings) for s in still]
+    left += [_circular(piece) for piece in sorted({n for p in circular for n in p.pieces})]
     fronts = tuple(p.found.front(p.pieces, p.given) for p in placed)
     return SidePlan(fronts, tuple(left))
+
+
+def _circular(piece: int) -> Unreleased:
+    why = "its slides cross others so that whichever opens first cuts off the inner end of the next"
+    return Unreleased(piece, why, "give the side actions by hand, or move one of the undercuts out of the other's way")

@@ -10,16 +10,19 @@ import numpy as np
 from moldgen.kernel.body import Body
 from moldgen.kernel.mesh_prism import box_of
 from moldgen.kernel.meshsolid import MeshSolid, thick_pieces, union
-from moldgen.kernel.tracer import Tracer
 from moldgen.model.side_action import SideOptions
 from moldgen.release.side_choice import Candidates, as_vector, candidates, sample, shares
 from moldgen.release.side_front import Found, part_fronts, whole_front
 from moldgen.release.side_lifter import Lifted, Lifting, collide
 from moldgen.release.side_space import SideSpace, View
+from moldgen.release.side_split import apart, middles_of, split_fronts, splits
 from moldgen.release.trapped import TrapPiece
 
 CLEAR_SHARE, SOME_SHARE = 0.97, 0.15
 """Share of rays that must be free before a direction is asked for a front for all, or for some, of a space."""
+
+ALIKE = 0.04
+"""Ways whose shares of free rays differ by less count as alike, and the axes are tried first."""
 
 OPENING_COST = 0.25
 """What one more direction costs, in part diagonals of steel reaching over the part: our choice."""
@@ -64,8 +67,8 @@ class Search:
         self.options = options
         self.shared = SideSpace.of(body, part)
         self.directions: Candidates = candidates(body, pieces)
-        self.diagonal = body.diagonal
-        self.tracer = Tracer(body.mesh)
+        self.diagonal, self.middles = body.diagonal, middles_of(body, pieces)
+        self.tracer = self.shared.tracer
         self._views: dict[tuple[float, ...], View] = {}
         self._splits = 0
         self._lifters: list[Lifted] = []
@@ -118,13 +121,27 @@ class Search:
         lifted = self._lifted(space) if self.options.lifters else None
         if lifted is not None:
             return [lifted]
-        self._splits = 0
-        several = self._shared_out(space)
+        several = self._split(space)
+        if several is None:
+            self._splits = 0
+            several = self._shared_out(space)
         if several is None and self.options.inclined:
             free = self.free(space, self.directions.inclined)
             found = self._whole(space, self._ranked(space, self.directions.inclined, free, np.ones(len(free))))
             several = [of_space(found, space)] if found is not None else None
         return several
+
+    def _split(self, space: Space) -> list[Placed] | None:
+        """Return two slides that leave opposite ways and part along a plane through a space, or None."""
+        for split in splits(space.points, self.middles, self.directions.level, self.tracer.blocked):
+            ahead, behind = self.view(split.way), self.view(0.0 - split.way)
+            for trial in (split, apart(ahead, split)):
+                made, between = ([], []) if trial is None else split_fronts(ahead, behind, space.solid, trial)
+                rest = self._all_whole(space, between) if made else None
+                if rest is not None:
+                    return [*(Placed(front, (space.piece,), half) for front, half in made), *rest]
+            space.tried.append(f"split slides along {_words(split.way)} and back: no outline that can leave")
+        return None
 
     def _lifted(self, space: Space) -> Placed | None:
         """Return a lifter for a space that meets no steel placed before it, or None."""
@@ -194,7 +211,7 @@ class Search:
         in_use = np.array([any(float(way @ u) > 0.99999 for u in self.used) for way in level])
         order = sorted(
             (int(k) for k in np.flatnonzero(free >= SOME_SHARE)),
-            key=lambda k: (-round(float(free[k]) + 0.1 * float(in_use[k]), 3), k),
+            key=lambda k: (-round((float(free[k]) + 0.1 * float(in_use[k])) / ALIKE), k),
         )
         for k in order[:MOST_PARTIAL]:
             self._splits += 1
@@ -222,10 +239,25 @@ class Search:
             if whole is not None:
                 placed.append(of_space(whole, part))
                 continue
-            several = self._shared_out(part) if part.depth < DEEPEST else None
+            several = self._split(part)
+            if several is None and part.depth < DEEPEST:
+                several = self._shared_out(part)
             if several is None:
                 return None
             placed += several
+        return placed
+
+    def _all_whole(self, space: Space, solids: list[MeshSolid]) -> list[Placed] | None:
+        """Return a slide for each of some remains of a space, or None if one of them has none."""
+        placed: list[Placed] = []
+        for solid in solids:
+            part = Space(space.piece, solid, space.depth + 1)
+            level = self.directions.level
+            ways = self._ranked(part, level, self.free(part, level), np.ones(len(level)))
+            found = self._whole_quietly(part, ways)
+            if found is None:
+                return None
+            placed.append(of_space(found, part))
         return placed
 
     def _whole_quietly(self, space: Space, ways: list[np.ndarray]) -> Found | None:

@@ -10,6 +10,7 @@ import numpy as np
 from moldgen.kernel.body import Body
 from moldgen.kernel.mesh_prism import Region, prism, rectangle, triangles_region, turned
 from moldgen.kernel.meshsolid import MeshSolid, eroded
+from moldgen.kernel.tracer import Tracer
 from moldgen.model.part import Vector
 from moldgen.model.side_action import across
 from moldgen.tolerances import NOISE_THICKNESS
@@ -29,17 +30,18 @@ class SideSpace:
     """What every search on one part shares.
 
     part : the part as a mesh solid; shrunk : with every face moved inward by the erosion of proofs
-    corners : of its triangles, (t, 3, 3) [mm]
+    corners : of its triangles, (t, 3, 3) [mm]; tracer : rays against it
     """
 
     part: MeshSolid
     shrunk: MeshSolid
     corners: np.ndarray
+    tracer: Tracer
 
     @classmethod
     def of(cls, body: Body, part: MeshSolid) -> SideSpace:
         """Return the space around a body."""
-        return cls(part, eroded(body.mesh) or part, body.mesh.corners)
+        return cls(part, eroded(body.mesh) or part, body.mesh.corners, Tracer(body.mesh))
 
 
 class View:
@@ -50,6 +52,11 @@ class View:
         self.rows = across(direction)
         self._space = space
         self._known: dict[tuple[float, ...], Region] = {}
+
+    @property
+    def tracer(self) -> Tracer:
+        """Rays against the part, in the mold frame."""
+        return self._space.tracer
 
     @cached_property
     def part(self) -> MeshSolid:
