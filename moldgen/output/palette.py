@@ -5,7 +5,8 @@ Schemes, technical note SRON/EPS/TN/09-002 [published: issue 3.2, 18 August 2021
 labels and keeps its members apart under normal and colour-blind vision; the marks are much darker than every area, so a
 line reads by lightness alone. Of the nine areas those were given to the roles that stay furthest apart under simulated
 protanopia and deuteranopia (checked by a test). The scheme has too few areas for the roles of side actions too: theirs
-are our choice, searched on a grid of colours for the largest least distance to all others and each other.
+are our choice, searched on a grid of colours for the largest least distance to all others and each other, the slide
+among those farthest from the cavity half that it stands in.
 """
 
 from __future__ import annotations
@@ -43,12 +44,12 @@ ROLES = MappingProxyType(
         "core_pin": Ink(rgb("99DDFF"), "core pin", "core pins"),  # light cyan
         "ejector_pin": Ink(rgb("EEDD88"), "ejector pin", "ejector pins"),  # light yellow
         "sprue": Ink(rgb("AAAA00"), "sprue and gate, plastic", "sprues and gates, plastic"),  # olive
-        "slide": Ink(rgb("7788FF"), "slide", "slides"),  # periwinkle
-        "lifter": Ink(rgb("EEEE44"), "lifter", "lifters"),  # yellow
+        "slide": Ink(rgb("FFDD11"), "slide", "slides"),  # gold
+        "lifter": Ink(rgb("CC55FF"), "lifter", "lifters"),  # orchid
         "side_core_pin": Ink(rgb("DDEEBB"), "side core pin", "side core pins"),  # pale green
         "angled_pin": Ink(rgb("996655"), "angled pin", "angled pins"),  # brown
         "locking_block": Ink(rgb("2277BB"), "locking block", "locking blocks"),  # blue
-        "guide": Ink(rgb("7755FF"), "guide", "guides"),  # violet
+        "guide": Ink(rgb("442255"), "guide", "guides"),  # plum
     }
 )
 """Component roles, in the order of the legend."""
@@ -57,6 +58,8 @@ OTHER = Ink(rgb("DDDDDD"), "other component", "other components")  # pale grey
 
 CAVITY_SIDE = Ink(ROLES["cavity"].colour, "formed by the cavity half", "formed by the cavity half")
 CORE_SIDE = Ink(ROLES["core"].colour, "formed by the core half", "formed by the core half")
+SLIDE_SIDE = Ink(ROLES["slide"].colour, "formed by a slide", "formed by slides")
+LIFTER_SIDE = Ink(ROLES["lifter"].colour, "formed by a lifter", "formed by lifters")
 NO_SIDE = Ink(OTHER.colour, "formed by no half yet", "formed by no half yet")
 
 PARTING_LINE = Ink(rgb("CC3311"), "parting line", "parting lines")  # vibrant red

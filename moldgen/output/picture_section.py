@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import replace
+from types import MappingProxyType
 
 import numpy as np
 
@@ -14,14 +15,51 @@ from moldgen.output.picture_geometry import Cut, Rect, View, choose_cut, cut_mes
 from moldgen.output.picture_panels import common_scale, flat_bounds, make_panels, role_marks, show_body
 from moldgen.output.scene import Points, Scene, SceneBody
 
+HATCH = MappingProxyType({"cavity": 0.25 * np.pi, "core": 0.75 * np.pi, "slide": 0.0, "lifter": 0.0})
+"""Direction of the hatching of what is cut, by role [rad]."""
+
 FILL = 0.93
 """Share of the field that the tool takes."""
 
 
 def draw_section(scene: Scene, canvas: Canvas) -> None:
     """Draw the closed tool cut by a vertical plane, with a small plan that shows where the plane lies."""
-    pins = [b for b in scene.bodies if b.role.endswith("_pin")]
+    pins = [b for b in scene.bodies if b.role in ("core_pin", "ejector_pin")]
     cut = choose_cut(scene.of_role("part"), pins, scene.gate)
+    _draw_cut(scene, canvas, cut, _words(cut))
+
+
+def draw_side_section(scene: Scene, canvas: Canvas) -> None:
+    """Draw the closed tool cut along the way of its first slide, or lifter, through the angled pin if there is one.
+
+    The tool is turned about the pull so that the steel leaves to the right.
+    """
+    body = scene.side_actions[0]
+    way = np.array(body.offset_open[:2])
+    turned = _turned(scene, np.arctan2(way[1], way[0]))
+    body = turned.side_actions[0]
+    pins = [
+        b for b in turned.bodies if b.role in ("angled_pin", "side_core_pin") and b.name.endswith(f" of {body.name}")
+    ]
+    low, high = (pins or [body])[0].vertices[:, 1].min(), (pins or [body])[0].vertices[:, 1].max()
+    through = f", through its {pins[0].role.replace('_', ' ')}" if pins else ""
+    turn = round(float(np.degrees(np.arctan2(way[1], way[0]))), 1) + 0.0
+    words = f"section along the way of {body.name}{through}; it leaves to the right, {turn:g} deg from x"
+    _draw_cut(turned, canvas, Cut(1, float(low + high) / 2.0, body.name), words)
+
+
+def _turned(scene: Scene, angle: float) -> Scene:
+    """Return the scene turned about the pull by minus an angle [rad]."""
+    c, s = np.cos(angle), np.sin(angle)
+    rows = np.array([[c, s, 0.0], [-s, c, 0.0], [0.0, 0.0, 1.0]])
+    bodies = tuple(
+        replace(b, vertices=b.vertices @ rows.T, feature_edges=tuple(e @ rows.T for e in b.feature_edges))
+        for b in scene.bodies
+    )
+    return replace(scene, bodies=bodies)
+
+
+def _draw_cut(scene: Scene, canvas: Canvas, cut: Cut, words: str) -> None:
     view = look_from((0.0, -1.0, 0.0) if cut.axis == 1 else (1.0, 0.0, 0.0))
     content = [b.vertices for b in scene.bodies]
     scale = common_scale([(FIELD, view)], [content], FILL)
@@ -36,7 +74,7 @@ def draw_section(scene: Scene, canvas: Canvas) -> None:
         _draw_step(canvas, _turn_pixel(cut, float(middle[0]), scale))
     shown = [b for b in scene.bodies if float((b.vertices @ view.toward).min()) < max(depths)]
     _key_plan(canvas, scene, cut)
-    draw_frame(canvas, scene, _words(cut), role_marks(shown, counted=False), scale)
+    draw_frame(canvas, scene, words, role_marks(shown, counted=False), scale)
 
 
 def _strips(cut: Cut, middle: float, scale: float) -> Iterator[tuple[Rect, Cut]]:
@@ -65,7 +103,7 @@ def _show_cut(panel: Panel, scene: Scene, cut: Cut) -> float:
     depth = cut.at * float(panel.view.toward[cut.axis])
     for body in scene.bodies:
         show_body(panel, body, share=0.45)
-    for body in sorted(scene.bodies, key=lambda b: b.role not in ("cavity", "core")):  # small things over blocks
+    for body in sorted(scene.bodies, key=lambda b: b.role not in HATCH):  # small things over blocks
         _fill_cut(panel, body, cut, depth)
     panel.close(cut=depth)
     return depth
@@ -93,7 +131,7 @@ def _place(value: float) -> str:
 
 
 def _fill_cut(panel: Panel, body: SceneBody, cut: Cut, depth: float) -> None:
-    """Fill what the plane cuts of one body: blocks are hatched, each half its own way; pins and plastic are plain."""
+    """Fill what the plane cuts of one body: blocks are hatched, each in its own way; pins and plastic are plain."""
     segments = cut_mesh(body, cut.axis, cut.at)
     if not len(segments):
         return
@@ -105,7 +143,7 @@ def _fill_cut(panel: Panel, body: SceneBody, cut: Cut, depth: float) -> None:
     colour = palette.role_ink(body.role).colour
     place = _in_space(panel.view, corners.reshape(-1, 2), depth)
     panel.surface(place, np.arange(len(place)).reshape(-1, 4), colour, front=True)
-    angle = {"cavity": 0.25 * np.pi, "core": 0.75 * np.pi}.get(body.role)
+    angle = HATCH.get(body.role)
     if angle is not None:
         strokes = hatch(flat, 11.0 / panel.px_per_mm, angle)
         ink = palette.darken(colour, 0.22)

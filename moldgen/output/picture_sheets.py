@@ -1,8 +1,8 @@
-"""The four pictures: what each shows, and from where."""
+"""The pictures: what each shows, and from where."""
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from pathlib import Path
 from types import MappingProxyType
 
@@ -13,8 +13,8 @@ from moldgen.output.picture_canvas import Canvas, Panel
 from moldgen.output.picture_frame import FIELD, Mark, draw_arrow_head, draw_frame
 from moldgen.output.picture_geometry import View, is_hidden, look_from, shade
 from moldgen.output.picture_panels import common_scale, flat_bounds, halves, make_panels, role_marks, show_body
-from moldgen.output.picture_section import draw_section
-from moldgen.output.scene import Points, Scene, SceneBody, Vector
+from moldgen.output.picture_section import draw_section, draw_side_section
+from moldgen.output.scene import BY_LIFTER, BY_SLIDE, Points, Scene, SceneBody, Vector
 
 FROM_ABOVE: Vector = (0.62, -0.80, 0.56)
 FROM_BELOW: Vector = (0.62, -0.80, -0.56)
@@ -25,8 +25,22 @@ TRANSLUCENT = MappingProxyType({"core": 0.30, "cavity": 0.16})
 LIFTED = ("part", "sprue")
 """What is lifted clear of the open core half."""
 
-UNDER_PART = ("core", "core_pin", "ejector_pin")
+UNDER_PART = ("core", "core_pin", "ejector_pin", "lifter")
 """What a part that has just been ejected hides from above."""
+
+FAR_OPEN = 0.6
+"""Share of the height of the halves from which the cavity half is left out of the half open tool, being far above."""
+
+SIDE_INKS = MappingProxyType(
+    {
+        1: palette.CAVITY_SIDE,
+        -1: palette.CORE_SIDE,
+        BY_SLIDE: palette.SLIDE_SIDE,
+        BY_LIFTER: palette.LIFTER_SIDE,
+        0: palette.NO_SIDE,
+    }
+)
+"""What forms a face of the part, in the order of the legend."""
 
 
 def draw_part(scene: Scene, canvas: Canvas) -> None:
@@ -50,16 +64,13 @@ def draw_part(scene: Scene, canvas: Canvas) -> None:
         _mark_gate(canvas, panel, scene)
     _draw_pull(canvas, panels[0])
     sides_used = {scene.face_sides.get(int(f), 0) for b in part for f in np.unique(b.face_id)}
-    marks = [
-        Mark(ink.colour, ink.label)
-        for side, ink in ((1, palette.CAVITY_SIDE), (-1, palette.CORE_SIDE), (0, palette.NO_SIDE))
-        if side in sides_used
-    ]
+    marks = [Mark(ink.colour, ink.label) for side, ink in SIDE_INKS.items() if side in sides_used]
     if scene.parting_lines:
         marks.append(Mark(palette.PARTING_LINE.colour, palette.PARTING_LINE.label, "line"))
     marks += _gate_marks(scene)
     marks.append(Mark(palette.PULL.colour, palette.PULL.label, "line"))
-    draw_frame(canvas, scene, "plastic part: which half forms which face", marks, panels[0].px_per_mm)
+    what = "which steel forms which face" if scene.side_actions else "which half forms which face"
+    draw_frame(canvas, scene, f"plastic part: {what}", marks, panels[0].px_per_mm)
 
 
 def draw_closed(scene: Scene, canvas: Canvas) -> None:
@@ -76,24 +87,70 @@ def draw_closed(scene: Scene, canvas: Canvas) -> None:
 
 
 def draw_open(scene: Scene, canvas: Canvas) -> None:
-    """Draw the open tool like a book: core half with the part lifted clear, beside it the cavity half from below."""
+    """Draw the open tool like a book: core half with the part lifted clear, beside it the cavity half from below.
+
+    Slides and lifters stand where the opening leaves them, on the half that they ride on.
+    """
     views = (look_from(FROM_ABOVE), look_from(FROM_BELOW))
-    away = {body.offset_open for body in scene.of_role("cavity")}
-    left = [b for b in scene.bodies if b.offset_open not in away]
-    right = [b for b in scene.bodies if b.offset_open in away]
+    away = {body.offset_open[2] for body in scene.of_role("cavity")}
+    left = [b for b in scene.bodies if b.offset_open[2] not in away]
+    right = [b for b in scene.bodies if b.offset_open[2] in away]
     lift = _clear_lift(scene, views[0])
-    offset = {b.name: (0.0, 0.0, b.offset_open[2] + (lift if b.role in LIFTED else 0.0)) for b in left}
-    shown = [[b.vertices + np.array(offset[b.name]) for b in left], [b.vertices for b in right]]
+    places: list[Sequence[Vector]] = [
+        [_raised(b.offset_open, lift if b.role in LIFTED else 0.0) for b in left],
+        [_raised(b.offset_open, -b.offset_open[2]) for b in right],
+    ]
+    shown = [
+        [b.vertices + np.array(at) for b, at in zip(bodies, there, strict=True)]
+        for bodies, there in zip((left, right), places, strict=True)
+    ]
     panels = make_panels(canvas, list(zip(halves(FIELD, 0.55), views, strict=True)), shown, 0.90)
-    for body in left:
-        show_body(panels[0], body, offset=offset[body.name])
-    for body in right:
-        show_body(panels[1], body)
-    captions = ("core half, ejectors forward, part lifted clear", "cavity half, seen from below")
+    for panel, bodies, there in zip(panels, (left, right), places, strict=True):
+        for body, at in zip(bodies, there, strict=True):
+            show_body(panel, body, offset=at)
+    captions = (_core_caption(left), "cavity half, seen from below")
     for panel, points, caption in zip(panels, shown, captions, strict=True):
         panel.close()
         _caption(canvas, panel, points, caption)
     draw_frame(canvas, scene, "tool open", role_marks(scene.bodies), panels[0].px_per_mm)
+
+
+def draw_half_open(scene: Scene, canvas: Canvas) -> None:
+    """Draw the tool in the middle of the way of its slides, or of its lifters, both halves translucent."""
+    cavity = scene.of_role("cavity")
+    height = float(np.ptp(np.concatenate([b.vertices[:, 2] for b in scene.bodies if b.role in TRANSLUCENT])))
+    opening = max((b.offset_half[2] for b in cavity), default=0.0)
+    above = {b.offset_half[2] for b in cavity} if opening > FAR_OPEN * height else set()
+    shown = [b for b in scene.bodies if b.offset_half[2] not in above]
+    places = [b.vertices + np.array(b.offset_half) for b in shown]
+    (panel,) = make_panels(canvas, [(FIELD, look_from(FROM_ABOVE))], [places], 0.90)
+    for body in shown:
+        if body.role not in TRANSLUCENT:
+            show_body(panel, body, offset=body.offset_half)
+    for role, opacity in TRANSLUCENT.items():
+        for body in [b for b in shown if b.role == role]:
+            show_body(panel, body, opacity=opacity, offset=body.offset_half)
+    panel.close()
+    draw_frame(canvas, scene, _half_words(opening, bool(above)), role_marks(shown), panel.px_per_mm)
+
+
+def _half_words(opening: float, without_cavity: bool) -> str:
+    if without_cavity:
+        return "lifters half way, the cavity half far above is left out"
+    if opening <= 0.0:
+        return "tool still closed, cylinders have drawn the slides half way"
+    return f"tool open by {opening:.0f} mm, slides half way"
+
+
+def _raised(offset: Vector, by: float) -> Vector:
+    return (offset[0], offset[1], offset[2] + by)
+
+
+def _core_caption(bodies: Sequence[SceneBody]) -> str:
+    """Return what the core half of the open tool shows, in words."""
+    roles = {b.role for b in bodies}
+    out = ["slides out"] * ("slide" in roles) + ["lifters aside"] * ("lifter" in roles)
+    return ", ".join(["core half", *out, "ejectors forward", "part lifted clear"])
 
 
 def _clear_lift(scene: Scene, view: View) -> float:
@@ -108,13 +165,17 @@ def _clear_lift(scene: Scene, view: View) -> float:
     return max(0.0, float(gap / view.up[2]))
 
 
-PICTURES: tuple[tuple[str, Callable[[Scene, Canvas], None]], ...] = (
-    ("part.png", draw_part),
-    ("closed.png", draw_closed),
-    ("open.png", draw_open),
-    ("section.png", draw_section),
+PICTURES: Mapping[str, Callable[[Scene, Canvas], None]] = MappingProxyType(
+    {
+        "part.png": draw_part,
+        "closed.png": draw_closed,
+        "open.png": draw_open,
+        "section.png": draw_section,
+        "half_open.png": draw_half_open,
+        "section_side.png": draw_side_section,
+    }
 )
-"""Every picture and how it is drawn, in order."""
+"""Every picture and how it is drawn."""
 
 
 def draw_picture(scene: Scene, canvas: Canvas, draw: Callable[[Scene, Canvas], None], path: Path) -> None:
@@ -125,11 +186,10 @@ def draw_picture(scene: Scene, canvas: Canvas, draw: Callable[[Scene, Canvas], N
 
 
 def _side_colours(body: SceneBody, sides: np.ndarray) -> np.ndarray:
-    """Return the colour (n, 3) of each shaded point by the half that forms its face."""
+    """Return the colour (n, 3) of each shaded point by what forms its face."""
     faces = shade(body).face_of_point
     by_face = dict(zip(body.face_id.tolist(), sides.tolist(), strict=True))
-    inks = {1: palette.CAVITY_SIDE, -1: palette.CORE_SIDE, 0: palette.NO_SIDE}
-    return np.array([inks[by_face[f]].colour for f in faces.tolist()], dtype=np.uint8)
+    return np.array([SIDE_INKS[by_face[f]].colour for f in faces.tolist()], dtype=np.uint8)
 
 
 def _mark_gate(canvas: Canvas, panel: Panel, scene: Scene) -> None:

@@ -1,4 +1,4 @@
-"""The `pictures/` folder: part, tool closed, tool open, section; drawn in a child process of their own.
+"""The `pictures/` folder: part, tool closed, half open, open, sections; drawn in a child process of their own.
 
 Two reasons for the child. On a machine without a display and without EGL or OSMesa the renderer does not refuse, it
 crashes, and that must not take the build along. And the pictures need nothing from the proofs, so both can run at once.
@@ -26,6 +26,9 @@ from moldgen.output.scene import Scene, read_scene, write_scene
 
 FILES = ("part.png", "closed.png", "open.png", "section.png")
 """The pictures of a build, in order."""
+
+SIDE_FILES = ("half_open.png", "section_side.png")
+"""The pictures more of a tool with side actions, drawn last."""
 
 WINDOW_READY = "window ready"
 """What the child says once an empty window came out right: from here on a failure is ours, not the machine's."""
@@ -58,8 +61,8 @@ class PictureResult:
 class PictureJob:
     """Pictures on their way: drawn by a child process while the caller does something else."""
 
-    def __init__(self, process: subprocess.Popen[str], folder: Path, workplace: Path) -> None:
-        self._process, self._folder, self._workplace = process, folder, workplace
+    def __init__(self, process: subprocess.Popen[str], names: Sequence[str], folder: Path, workplace: Path) -> None:
+        self._process, self._names, self._folder, self._workplace = process, names, folder, workplace
 
     def finish(self, timeout_s: float = 120.0) -> PictureResult:
         """Wait for the child at most `timeout_s` [s], and tell what came of it. Never raises for the child's sake."""
@@ -72,14 +75,14 @@ class PictureJob:
             said, complaint = self._process.communicate()
         finally:
             self.stop()
-        files = tuple(self._folder / name for name in FILES if f"wrote {name}" in said.splitlines())
-        if len(files) == len(FILES):
+        files = tuple(self._folder / name for name in self._names if f"wrote {name}" in said.splitlines())
+        if len(files) == len(self._names):
             return PictureResult(files, "")
         if late:
             reason = f"drawing took longer than {timeout_s:g} s and was stopped"
         else:
             reason = _reason(self._process.returncode, WINDOW_READY in said, complaint)
-        lacking = ", ".join(name for name in FILES if self._folder / name not in files)
+        lacking = ", ".join(name for name in self._names if self._folder / name not in files)
         return PictureResult(files, f"not drawn: {lacking}; {reason}")
 
     def stop(self) -> None:
@@ -88,8 +91,13 @@ class PictureJob:
             self._process.kill()
             self._process.communicate()
         shutil.rmtree(self._workplace, ignore_errors=True)
-        for name in FILES:
+        for name in self._names:
             _aside(self._folder, name).unlink(missing_ok=True)
+
+
+def file_names(scene: Scene) -> tuple[str, ...]:
+    """Return the pictures that a scene gets, in order."""
+    return FILES + SIDE_FILES if scene.side_actions else FILES
 
 
 def start_pictures(scene: Scene, folder: Path, *, command: Sequence[str] | None = None) -> PictureJob:
@@ -118,7 +126,7 @@ def start_pictures(scene: Scene, folder: Path, *, command: Sequence[str] | None 
         errors="replace",
         env=_environment(),
     )
-    return PictureJob(process, folder, workplace)
+    return PictureJob(process, file_names(scene), folder, workplace)
 
 
 def render_pictures(scene: Scene, folder: Path, *, command: Sequence[str] | None = None) -> PictureResult:
@@ -179,9 +187,9 @@ def main(arguments: Sequence[str]) -> int:
         return NO_WINDOW
     sys.stdout.write(WINDOW_READY + "\n")
     sys.stdout.flush()
-    for name, draw in PICTURES:
+    for name in file_names(scene):
         aside = _aside(folder, name)
-        draw_picture(scene, canvas, draw, aside)
+        draw_picture(scene, canvas, PICTURES[name], aside)
         aside.replace(folder / name)
         sys.stdout.write(f"wrote {name}\n")
         sys.stdout.flush()

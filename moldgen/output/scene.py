@@ -16,6 +16,9 @@ Points = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.int64]
 Vector = tuple[float, float, float]
 
+BY_SLIDE, BY_LIFTER = 2, 3
+"""What forms a face of the part, beside the halves, which are +1 and -1."""
+
 WELD_MM = 1e-6
 """Vertices closer than this are one point: the kernel meshes the two faces of an edge on the same points."""
 
@@ -33,6 +36,7 @@ class SceneBody:
     feature_edges : polylines (k, 3) float [mm], the edges to be drawn
     face_id : (m,) the face each triangle belongs to
     offset_open : how far the body stands from its closed place when the mold is open [mm]
+    offset_half : the same in the middle of the way of the slides, or of the lifters where there are no slides [mm]
     """
 
     name: str
@@ -42,6 +46,7 @@ class SceneBody:
     feature_edges: tuple[Points, ...]
     face_id: Indices
     offset_open: Vector = (0.0, 0.0, 0.0)
+    offset_half: Vector = (0.0, 0.0, 0.0)
 
     @cached_property
     def welded(self) -> tuple[Points, Indices]:
@@ -59,7 +64,8 @@ class SceneBody:
 class Scene:
     """The tool and its part, mold coordinates [mm], and the words of the title line.
 
-    `face_sides` says for each `face_id` of the part which half forms it: +1 cavity, -1 core, 0 or absent neither.
+    `face_sides` says for each `face_id` of the part what forms it: +1 cavity, -1 core, `BY_SLIDE`, `BY_LIFTER`, 0 or
+    absent nothing yet.
     """
 
     name: str
@@ -69,6 +75,11 @@ class Scene:
     parting_lines: tuple[Points, ...] = ()
     gate: Vector | None = None
     face_sides: Mapping[int, int] = field(default_factory=dict)
+
+    @property
+    def side_actions(self) -> tuple[SceneBody, ...]:
+        """The slides, then the lifters."""
+        return self.of_role("slide") + self.of_role("lifter")
 
     def of_role(self, role: str) -> tuple[SceneBody, ...]:
         """Return the bodies of one role, in order."""
@@ -83,7 +94,15 @@ def write_scene(scene: Scene, path: Path) -> None:
         "resin": scene.resin,
         "pull": scene.pull,
         "gate": scene.gate,
-        "bodies": [{"name": b.name, "role": b.role, "offset_open": list(b.offset_open)} for b in scene.bodies],
+        "bodies": [
+            {
+                "name": b.name,
+                "role": b.role,
+                "offset_open": list(b.offset_open),
+                "offset_half": list(b.offset_half),
+            }
+            for b in scene.bodies
+        ],
     }
     for i, body in enumerate(scene.bodies):
         arrays[f"vertices_{i}"] = np.asarray(body.vertices, dtype=np.float64).reshape(-1, 3)
@@ -116,6 +135,7 @@ def read_scene(path: Path) -> Scene:
                 feature_edges=_parted(arrays[f"edges_{i}"], arrays[f"edge_ends_{i}"]),
                 face_id=arrays[f"face_id_{i}"],
                 offset_open=tuple(words["offset_open"]),
+                offset_half=tuple(words["offset_half"]),
             )
             for i, words in enumerate(head["bodies"])
         )

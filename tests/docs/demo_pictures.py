@@ -18,11 +18,16 @@ from helpers.png import halved, pixels  # noqa: E402
 
 from moldgen.output.picture_canvas import encode_png  # noqa: E402
 
-KEPT = {"part.png": "part.png", "tool.png": "closed.png"}
-"""File beside the spec, and the picture of the build that it comes from."""
+KEPT = {"part.png": ("part.png",), "tool.png": ("half_open.png", "closed.png")}
+"""File beside the spec, and the picture of the build that it comes from: the first that there is."""
 
 SHADES = 4
 """Steps between the shades that are kept: the eye does not see it, and the file gets smaller by a quarter."""
+
+
+def source_of(name: str, built: Path) -> Path | None:
+    """Return the picture of a build that a kept one comes from, None if it has none."""
+    return next((p for p in (built / "pictures" / source for source in KEPT[name]) if p.is_file()), None)
 
 
 def kept_picture(path: Path) -> np.ndarray:
@@ -40,9 +45,9 @@ def main(names: list[str]) -> int:
             done = moldgen("build", "--quiet", spec, folder=Path(folder), timeout=600)
             sys.stdout.write(done.stdout.partition("\n\ncomponents")[0] + done.stderr + "\n")
             failed |= done.returncode != 0
-            for name, source in KEPT.items():
-                picture = Path(folder) / "out" / spec.parent.name / "pictures" / source
-                if picture.is_file():
+            for name in KEPT:
+                picture = source_of(name, Path(folder) / "out" / spec.parent.name)
+                if picture is not None:
                     (spec.parent / name).write_bytes(encode_png(kept_picture(picture)))
     return int(failed)
 

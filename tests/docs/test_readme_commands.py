@@ -13,7 +13,7 @@ from helpers.command import moldgen
 from helpers.png import pixels
 from helpers.source import CHECKOUT
 
-from tests.docs.demo_pictures import KEPT, kept_picture
+from tests.docs.demo_pictures import KEPT, kept_picture, source_of
 from tests.docs.test_readme_tables import README, chapter, rows
 
 pytestmark = pytest.mark.slow
@@ -53,7 +53,9 @@ def test_the_output_folder_holds_what_its_table_names(clone: Path) -> None:
 
 
 def test_the_kept_pictures_are_those_of_a_build(clone: Path) -> None:
-    for name, source in KEPT.items():
-        built = kept_picture(clone / "out" / "rain-funnel" / "pictures" / source).astype(int)
+    for name in KEPT:
+        source = source_of(name, clone / "out" / "rain-funnel")
+        assert source is not None
+        built = kept_picture(source).astype(int)
         kept = pixels(clone / "specs" / "rain-funnel" / name).astype(int)
         assert np.abs(built - kept).mean() < STALE, "run tests/docs/demo_pictures.py"

@@ -19,7 +19,20 @@ from moldgen.output.palette import ROLES
 
 DEMOS = sorted(path.parent.name for path in TESTS.parent.glob("specs/*/spec.yaml"))
 
-PICTURES = {f"pictures/{name}.png" for name in ("part", "closed", "open", "section")}
+SIDE_ROLES = {"slide", "lifter", "side_core_pin", "angled_pin", "locking_block", "guide"}
+
+
+def pictures(record: dict) -> set[str]:
+    """The pictures that a tool of this manifest must have."""
+    sides = any(c["role"] in SIDE_ROLES for c in record["components"])
+    names = ("part", "closed", "open", "section", *(("half_open", "section_side") if sides else ()))
+    return {f"pictures/{name}.png" for name in names}
+
+
+def proofs(record: dict) -> list[str]:
+    """The proofs that a tool of this manifest must have."""
+    return PROOFS + ["the side actions move"] * any(c["role"] in SIDE_ROLES for c in record["components"])
+
 
 pytestmark = [pytest.mark.slow, pytest.mark.parametrize("name", DEMOS)]
 
@@ -36,9 +49,9 @@ def test_the_folder_and_the_manifest_keep_the_contract(demo, name: str) -> None:
     folder = demo(name).folder
     record, files = manifest(folder), snapshot(folder)
     parts = {f"step/{c['name'].replace(' ', '_')}.step" for c in record["components"]}
-    expected = {"tool.step", "manifest.json", "parts_list.csv", "holes.csv", *parts, *PICTURES}
+    expected = {"tool.step", "manifest.json", "parts_list.csv", "holes.csv", *parts, *pictures(record)}
     assert {path for path, data in files.items() if data is not None} == expected
-    assert all(files[path].startswith(b"\x89PNG\r\n\x1a\n") and len(files[path]) > 10_000 for path in PICTURES)
+    assert all(files[path].startswith(b"\x89PNG\r\n\x1a\n") and len(files[path]) > 10_000 for path in pictures(record))
     assert record["spec"]["path"] == "spec.yaml"
     assert record["part"].keys() >= {"name", "source_sha256", "volume_mm3", "area_mm2", "bounding_box_mm", "faces"}
     assert record["part"]["name"] == name
@@ -48,10 +61,10 @@ def test_the_folder_and_the_manifest_keep_the_contract(demo, name: str) -> None:
     keys = {"name", "role", "file", "material", "volume_mm3", "position"}
     assert all(c.keys() >= keys and c["material"] and c["volume_mm3"] > 0 for c in record["components"])
     roles = Counter(c["role"] for c in record["components"])
-    assert roles.keys() <= {"part", "cavity", "core", "core_pin", "ejector_pin", "sprue"}
+    assert roles.keys() <= {"part", "cavity", "core", "core_pin", "ejector_pin", "sprue"} | SIDE_ROLES
     assert [roles[role] for role in ("part", "cavity", "core", "sprue")] == [1, 1, 1, 1]
     assert roles["ejector_pin"] >= 1
-    assert [p["name"] for p in record["proofs"]] == PROOFS
+    assert [p["name"] for p in record["proofs"]] == proofs(record)
     assert all(p.keys() >= {"name", "passed", "figure", "limit", "unit"} for p in record["proofs"])
     fields = {"code", "severity", "message", "where", "value", "limit", "remedy"}
     assert all(f.keys() >= fields for f in record["findings"])
@@ -136,4 +149,6 @@ def test_the_folder_alone_proves_itself_again_in_a_fresh_process(demo, name: str
     done = moldgen("prove", "sent on", "--json", "--quiet", folder=tmp_path, timeout=180)
     result = json.loads(done.stdout)
     assert (done.returncode, result["findings"]) == (0, [])
-    assert [(p["name"], p["passed"]) for p in result["proofs"]] == [(proof, True) for proof in PROOFS]
+    assert [(p["name"], p["passed"]) for p in result["proofs"]] == [
+        (proof, True) for proof in proofs(manifest(demo(name).folder))
+    ]
