@@ -22,7 +22,7 @@ from moldgen.layout.side_drive import Driven, drive_fronts
 from moldgen.layout.slide_body import SideTask
 from moldgen.model.halves import Halves
 from moldgen.model.part import MoldFrame
-from moldgen.model.side_action import Front, SideKind, SidePlan
+from moldgen.model.side_action import Front, SidePlan
 from moldgen.model.slide import Drive
 from moldgen.parting.fill import fill_trapped
 from moldgen.parting.halves import Parted, part_halves
@@ -31,7 +31,7 @@ from moldgen.parting.told import parting_line, steel_contacts, told
 from moldgen.release.kinds import face_kinds
 from moldgen.release.trapped import TrapPiece, trapped_volume
 from moldgen.spec.sections import Blocks
-from moldgen.steel.forming import form_side_steel, meeting_fronts, narrowed
+from moldgen.steel.forming import form_side_steel, narrowed, ways_in_turn
 from moldgen.tolerances import ON_PLANE, OPEN_OVERLAP
 
 MOST_FILLED = 0.1
@@ -208,9 +208,9 @@ def _cut(halves: Halves, filled: Body, part: Body, fronts: Sequence[Front]) -> t
 
 def _in_turn(driven: tuple[Driven, ...], corners: Corners) -> tuple[Driven, ...]:
     """Return the fronts with those slides drawn by cylinders that share steel: these must move one after the other."""
-    meeting = meeting_fronts([d.front for d in driven], corners)
+    ways = ways_in_turn([d.front for d in driven], corners)
     return tuple(
-        replace(d, drive=Drive.CYLINDER) if i in meeting and d.front.kind is SideKind.SLIDE else d
+        replace(d, front=replace(d.front, travel=ways[i]), drive=Drive.CYLINDER) if i in ways else d
         for i, d in enumerate(driven)
     )
 

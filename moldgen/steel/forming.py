@@ -15,7 +15,7 @@ from moldgen.kernel.body import Body
 from moldgen.kernel.boolean import common, copied, cut
 from moldgen.kernel.measure import is_valid, volume
 from moldgen.kernel.mesh_prism import grown, polygons, region
-from moldgen.kernel.meshsolid import MeshSolid, mesh_solid, thick_pieces
+from moldgen.kernel.meshsolid import MeshSolid, mesh_solid, piece_mesh, thick_pieces
 from moldgen.kernel.rehearse import made_apart
 from moldgen.kernel.side_prism import outline_prism
 from moldgen.kernel.step_trip import read_back
@@ -95,11 +95,23 @@ def form_side_steel(halves: Halves, part: Body, fronts: Sequence[Front]) -> tupl
     return made, notes
 
 
-def meeting_fronts(fronts: Sequence[Front], corners: tuple[np.ndarray, np.ndarray]) -> set[int]:
-    """Return the places of fronts that share steel with one that moves another way: they must move in turn."""
+def ways_in_turn(fronts: Sequence[Front], corners: tuple[np.ndarray, np.ndarray]) -> dict[int, float]:
+    """Return the fronts that share steel with one that moves another way, by place, and how far each must move [mm].
+
+    They move one after the other, in the order given: the earlier must leave all of the way of the later.
+    """
     tools = [_tool(name, front, corners) for name, front in zip(side_names(fronts), fronts, strict=True)]
-    pairs = [(i, j) for j in range(len(tools)) for i in range(j) if fronts[i].axis != fronts[j].axis]
-    return {place for i, j in pairs if _meet(tools[i], tools[j]) for place in (i, j)}
+    ways: dict[int, float] = {}
+    for j, later in enumerate(fronts):
+        for i, earlier in enumerate(fronts[:j]):
+            if SideKind.LIFTER in (earlier.kind, later.kind) or earlier.axis == later.axis:
+                continue
+            if not _meet(tools[i], tools[j]):
+                continue
+            shared = piece_mesh(tools[i].mesh ^ tools[j].mesh).vertices @ np.asarray(earlier.axis)
+            ways[i] = max(ways.get(i, earlier.travel), float(shared.max()) - earlier.near)
+            ways.setdefault(j, later.travel)
+    return ways
 
 
 def side_names(fronts: Sequence[Front]) -> list[str]:
