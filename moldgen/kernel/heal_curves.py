@@ -96,7 +96,7 @@ def flat_curve(
     return curve, float(np.linalg.norm(points_at(surface, found) - points, axis=1).max())
 
 
-def _straight(surface: Geom_Surface, uv: np.ndarray, parameters: np.ndarray, points: np.ndarray) -> Geom2d_Curve | None:
+def _straight(surface: Geom_Surface, uv: np.ndarray, parameters: np.ndarray) -> Geom2d_Curve | None:
     span = parameters[-1] - parameters[0]
     way = (uv[-1] - uv[0]) / span
     way[np.abs(way) < UNIT_SPEED * np.abs(way).max()] = 0.0  # lines along the parameter plane are meant exactly so

@@ -150,16 +150,12 @@ def _unwrapped(angle: np.ndarray, lost: np.ndarray) -> np.ndarray | None:
     if lost[1:-1, 1:-1].any():
         return None
     angle = angle.copy()
-    for side, beside in (
-        ((0,), (1,)),
-        ((-1,), (-2,)),
-        ((slice(None), 0), (slice(None), 1)),
-        ((slice(None), -1), (slice(None), -2)),
-    ):
-        angle[side] = np.where(lost[side], angle[beside], angle[side])
-    rows = np.unwrap(angle, axis=1)
-    first = np.unwrap(rows[:, 0])
-    whole = rows + (first - rows[:, 0])[:, None]
+    for rows, gone in ((angle, lost), (angle.T, lost.T)):
+        for side, beside in ((0, 1), (-1, -2)):
+            rows[side] = np.where(gone[side], rows[beside], rows[side])
+    along = np.unwrap(angle, axis=1)
+    first = np.unwrap(along[:, 0])
+    whole = along + (first - along[:, 0])[:, None]
     steps = max(float(np.abs(np.diff(whole, axis=k)).max()) for k in (0, 1))
     return whole if steps < LARGEST_TURN else None
 

@@ -14,6 +14,7 @@ from OCP.TopAbs import TopAbs_EDGE, TopAbs_FORWARD
 from OCP.TopExp import TopExp
 from OCP.TopLoc import TopLoc_Location
 from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Solid, TopoDS_Wire
+from OCP.TopTools import TopTools_IndexedMapOfShape
 
 from moldgen.kernel.build import forward
 from moldgen.kernel.elementary import from_axis, goes_round, is_elementary, parameters_of
@@ -135,7 +136,9 @@ def _bare_face(surface: Geom_Surface) -> TopoDS_Face:
     return face
 
 
-def _new_face(work: _Rewriting, number: int, edge_index: object, users: dict[int, list[int]]) -> TopoDS_Face:
+def _new_face(
+    work: _Rewriting, number: int, edge_index: TopTools_IndexedMapOfShape, users: dict[int, list[int]]
+) -> TopoDS_Face:
     """Return a face on its new or old surface whose wires use the new edges in the old order."""
     builder = BRep_Builder()
     old = work.faces[number]
@@ -146,7 +149,7 @@ def _new_face(work: _Rewriting, number: int, edge_index: object, users: dict[int
         loop = TopoDS_Wire()
         builder.MakeWire(loop)
         for edge in parts_of(wire.Oriented(TopAbs_FORWARD)):
-            place = edge_index.FindIndex(edge)  # type: ignore[attr-defined]
+            place = edge_index.FindIndex(edge)
             made = work.made.get(place)
             if made is not None:
                 builder.Add(loop, made.Oriented(edge.Orientation()))

@@ -35,7 +35,7 @@ from moldgen.tolerances import SAME_SURFACE
 from tests.kernel_io.test_step_read import block, write_raw
 
 SOLIDS = {
-    "block": (lambda: block(), 6000.0),
+    "block": (block, 6000.0),
     "cylinder": (lambda: BRepPrimAPI_MakeCylinder(5, 20).Solid(), 500 * math.pi),
     "half cylinder": (lambda: BRepPrimAPI_MakeCylinder(5, 20, math.pi).Solid(), 250 * math.pi),
     "cone with its tip": (lambda: BRepPrimAPI_MakeCone(5, 0, 12).Solid(), 100 * math.pi),
