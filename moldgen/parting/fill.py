@@ -20,7 +20,7 @@ from moldgen.kernel.loops import boundary_loops
 from moldgen.kernel.measure import is_valid, volume
 from moldgen.kernel.meshsolid import piece_mesh
 from moldgen.kernel.patches import flat_patches
-from moldgen.kernel.rehearse import made_apart
+from moldgen.kernel.rehearse import LIMIT_S, made_apart
 from moldgen.kernel.shells import shells_from_faces, solid_from_faces
 from moldgen.kernel.topology import compound_of, only_solid
 from moldgen.model.part import MoldFrame
@@ -54,10 +54,13 @@ def fill_trapped(
     pieces: Sequence[TrapPiece],
     frame: MoldFrame | None = None,
     why: str = ACCEPTED,
+    *,
+    seconds: int = LIMIT_S,
 ) -> tuple[Body, Notes]:
     """Return the body with trapped pieces (rubs included, if given) filled.
 
     frame : the way back to part coordinates, for what is told; why : the reason that is told
+    seconds : processor time that a rung may take for one piece
 
     Raises
     ------
@@ -70,7 +73,7 @@ def fill_trapped(
     for piece in pieces:
         whole = _whole_faces(body, kinds, piece, gone)
         if isinstance(whole, str):
-            plug, refused = _prism_plug(body, kinds, piece, frame)
+            plug, refused = _prism_plug(body, kinds, piece, frame, seconds)
             plugs.append(plug)
             decisions.append(_decision(piece, frame, plug.rung, why, (f"whole faces: {whole}", *refused)))
         else:
@@ -118,7 +121,7 @@ def _patched(body: Body, gone: set[int], patches: Sequence[Any]) -> Any:
 
 
 def _prism_plug(
-    body: Body, kinds: FaceKinds, piece: TrapPiece, frame: MoldFrame | None
+    body: Body, kinds: FaceKinds, piece: TrapPiece, frame: MoldFrame | None, seconds: int
 ) -> tuple[_Plug, tuple[str, ...]]:
     mesh = piece_mesh(piece.solid)
     low, high = mesh.vertices.min(axis=0), mesh.vertices.max(axis=0)
@@ -139,7 +142,7 @@ def _prism_plug(
     refused = []
     for name, make in rungs:
         try:
-            solids = [s for s in made_apart(make) if abs(volume(s)) > 1e-7 and inside_box(s, low, high)]
+            solids = [s for s in made_apart(make, seconds) if abs(volume(s)) > 1e-7 and inside_box(s, low, high)]
         except KernelError as error:
             refused.append(f"{name}: {error.what}")
             continue

@@ -47,7 +47,7 @@ def filled_candidates(
     for rung in ("trapped spaces filled", "fronts joined to the part", "fronts joined, run on by 1 mm"):
         try:
             if rung == "trapped spaces filled":
-                filled, _ = fill_trapped(body, kinds, [trapped.pieces[p] for p in served], frame, WHY)
+                filled, _ = fill_trapped(body, kinds, [trapped.pieces[p] for p in served], frame, WHY, seconds=3)
             else:
                 filled = _with_fronts(body, part, fronts, STUBS[1] if "run on" in rung else STUBS[0])
             outside = outside_fronts(filled, part, fronts)
