@@ -52,3 +52,39 @@ def _wall(face) -> RoundWall | None:
         return None
     low, high = bounding_box(face)
     return RoundWall(axis.Location().X(), axis.Location().Y(), radius, taper, float(low[2]), float(high[2]))
+
+
+@dataclass(frozen=True)
+class LeaningWall:
+    """A cylinder whose axis leans: a point of the axis, its direction upward (unit vector), diameter [mm]."""
+
+    at: tuple[float, float, float]
+    along: tuple[float, float, float]
+    diameter: float
+
+    def place(self, z: float) -> tuple[float, float]:
+        """Where the axis crosses the height z."""
+        way = (z - self.at[2]) / self.along[2]
+        return self.at[0] + way * self.along[0], self.at[1] + way * self.along[1]
+
+    @property
+    def lean_deg(self) -> float:
+        """Angle between the axis and the pull."""
+        return math.degrees(math.acos(self.along[2]))
+
+
+def leaning_walls(path: Path) -> list[LeaningWall]:
+    """Return the cylinders of the one solid in a file whose axis is neither upright nor level."""
+    ((_, solid),) = read_assembly(path)
+    found = []
+    for face in faces_of(solid):
+        surface = BRepAdaptor_Surface(face)
+        if surface.GetType() != GeomAbs_Cylinder:
+            continue
+        shape = surface.Cylinder()
+        at, way = shape.Axis().Location(), shape.Axis().Direction()
+        if 0.01 < abs(way.Z()) < 0.999999:
+            up = math.copysign(1.0, way.Z())
+            along = (up * way.X(), up * way.Y(), up * way.Z())
+            found.append(LeaningWall((at.X(), at.Y(), at.Z()), along, 2 * shape.Radius()))
+    return found
