@@ -128,7 +128,6 @@ def test_a_tool_with_a_slide_is_right_to_both(both) -> None:
         pytest.param(slide_goes(0.0), "slide 1 past part", id="slide left in place"),
         pytest.param(slide_goes(turn=True), "slide 1 past part", id="slide goes aside"),
         pytest.param(steps(cavity_drifts), "part past cavity half", id="cavity half opens askew"),
-        pytest.param(steps(lambda all_steps: all_steps.insert(0, all_steps.pop())), "part", id="part leaves first"),
         pytest.param(component("slide 1", shifted(-0.1, 0, 0)), "slide 1 at rest", id="slide set in too far"),
         pytest.param(component("slide 1", longer_nose), "slide 1 at rest", id="slide too long"),
     ],
@@ -141,7 +140,7 @@ def test_a_planted_fault_is_wrong_to_both(both, change: Callable[[Path], None], 
 
 
 def test_a_straight_demo_is_right_to_both(demo) -> None:
-    built = demo("sensor-lid")
+    built = demo("thumb-knob")
     assert built.done.returncode == 0, built.done.stderr
     second = judge(built.folder)
     assert second.wrong() == []
@@ -162,19 +161,25 @@ def test_a_missing_component_and_steps_that_move_nothing_are_told(notched: Path,
 
 
 @pytest.mark.parametrize("way", [(10.0, 0.0, 0.0), (3.0, 4.0, 7.0), (0.0, 0.0, 2.0)])
-def test_the_sweep_is_the_union_of_the_hulls_of_all_triangles(way: tuple[float, float, float]) -> None:
-    """The definition of a swept mesh, against the trailing triangles and the end."""
+def test_the_sweep_is_both_ends_and_the_prisms_over_all_triangles(way: tuple[float, float, float]) -> None:
+    """The definition of a swept mesh, against the trailing triangles and where it ends.
+
+    Prisms, not `Manifold.hull_points`: its hulls of needles are short of the prism by up to 7e-5 of the whole here.
+    """
     body = Manifold.sphere(5.0, 32) - Manifold.cylinder(20.0, 2.0, 2.0, 24).translate((0.0, 0.0, -10.0))
     line = Way(np.array(way))
     turned = line.turned(body)
     up = np.array([0.0, 0.0, line.length])
-    points, triangles = arrays(turned)
-    hulls = [Manifold.hull_points(np.vstack([points[t], points[t] + up])) for t in triangles]
     ends = [turned, turned.translate(tuple(up))]
+    points, triangles = arrays(turned)
+    corners = points[triangles]
+    shadow = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])[:, 2]
+    corners[shadow > 0.0] = corners[shadow > 0.0][:, ::-1]
+    every = [loose(np.concatenate([c, c + up])[None]) for c in corners[np.abs(shadow) > 1e-12]]
     prisms = trailing_prisms(turned, line.length, np.full(3, -100.0), np.full(3, 100.0))
-    assert 0 < len(prisms) < len(triangles)
+    assert 0 < len(prisms) < len(every)
     swept = Manifold.batch_boolean([ends[1], *(loose(p[None]) for p in prisms)], OpType.Add)
-    assert swept.volume() == pytest.approx(Manifold.batch_boolean([*hulls, *ends], OpType.Add).volume(), rel=1e-5)
+    assert swept.volume() == pytest.approx(Manifold.batch_boolean([*every, *ends], OpType.Add).volume(), rel=1e-9)
 
 
 @pytest.mark.parametrize("thickness", [0.03, 0.1])

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import hashlib
+import math
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
@@ -13,6 +14,7 @@ from OCP.BRep import BRep_Tool
 from OCP.BRepMesh import BRepMesh_IncrementalMesh
 from OCP.BRepTools import BRepTools
 from OCP.IFSelect import IFSelect_RetDone
+from OCP.ShapeUpgrade import ShapeUpgrade_ShapeDivideAngle
 from OCP.STEPCAFControl import STEPCAFControl_Reader
 from OCP.TCollection import TCollection_ExtendedString
 from OCP.TDataStd import TDataStd_Name
@@ -29,9 +31,6 @@ from scipy.sparse.csgraph import connected_components
 
 SAG, ANGLE = 0.01, 0.15
 """mm, rad: how far the triangles may lie from the surface. Half of what moldgen proves with."""
-
-FINER_STILL = (1.0, 0.7, 0.45)
-"""Shares of sag and angle that are tried until the mesh closes: the kernel left faces of a real part without one."""
 
 WELDS = (1e-7, 1e-6, 1e-5, 1e-4, 1e-3)
 """mm: how far apart the rims of neighboring faces may lie to be one; the first that closes the mesh is taken."""
@@ -52,10 +51,12 @@ class Product:
     def mesh(self, fineness: float = 1.0) -> manifold3d.Manifold:
         """Its triangles as a solid, `fineness` times as fine as usual; its `status` says if they do not close."""
         if fineness not in self.meshes:
-            for share in FINER_STILL:
-                mesh = _meshed(self.shape, share * SAG / fineness, share * ANGLE / fineness**0.5)
-                if mesh.status() == manifold3d.Error.NoError and mesh.num_tri():
-                    break
+            mesh = _meshed(self.shape, SAG / fineness, ANGLE / fineness**0.5)
+            if mesh.status() != manifold3d.Error.NoError:
+                # The kernel left a whole cone of a real part without triangles; in two halves it has them.
+                halves = ShapeUpgrade_ShapeDivideAngle(math.pi, self.shape)
+                halves.Perform()
+                mesh = _meshed(halves.Result(), SAG / fineness, ANGLE / fineness**0.5)
             self.meshes[fineness] = mesh
         return self.meshes[fineness]
 
