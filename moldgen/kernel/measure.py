@@ -62,16 +62,16 @@ def balance(
     expected: float,
     limit: float,
     known: Callable[[], float] | None = None,
-    quick: float | None = None,
+    quick: Callable[[], float] | None = None,
 ) -> float:
     """Return |sum of volumes - expected| / |expected| of solids that fill a block.
 
     The ways to the sum are tried from cheap to exact until one is below `limit`; the last one's figure stands. `known`
-    is one more way, asked before the adaptive integration, which can take seconds; `quick` is the sum of their volumes
-    by default integration, all about the origin, if known already.
+    is one more way, asked before the adaptive integration, which can take seconds; `quick` returns
+    their `joint_volume` where that is being found elsewhere.
     """
     ways: list[Callable[[], float]] = [
-        lambda: joint_volume(shapes) if quick is None else quick,
+        quick or (lambda: joint_volume(shapes)),
         lambda: joint_volume_fine(shapes),
     ]
     ways += [known] if known is not None else []

@@ -7,6 +7,7 @@ from dataclasses import dataclass, replace
 from functools import partial
 
 from moldgen.errors import KernelError
+from moldgen.kernel.beside import Beside
 from moldgen.kernel.guard import operation
 from moldgen.model.motion import Step, straight_steps
 from moldgen.model.proof import Proof, Verdict
@@ -24,7 +25,7 @@ from moldgen.proof.opening import (
     prove_side_actions,
     side_groups,
 )
-from moldgen.proof.rest import APART, FILLED, SOUND, prove_balance, prove_rest, prove_sound
+from moldgen.proof.rest import APART, FILLED, SOUND, filling_volume, prove_balance, prove_rest, prove_sound
 from moldgen.tolerances import BALANCE
 
 
@@ -43,11 +44,19 @@ class Claims:
 
 def prove_tool(bodies: Sequence[ProofBody], claims: Claims) -> tuple[Proof, ...]:
     """Return every proof; one that could not run says why and does not count as passed."""
+    together = Beside(lambda: filling_volume(bodies))
+    try:
+        return _proved(bodies, claims, together.result)
+    finally:
+        together.stop()
+
+
+def _proved(bodies: Sequence[ProofBody], claims: Claims, together: Callable[[], float]) -> tuple[Proof, ...]:
     return (
         _asked(Proof(SOUND, Verdict.NOT_RUN, None, 0.0, "faults"), lambda: prove_sound(bodies)),
         _asked(
             Proof(FILLED, Verdict.NOT_RUN, None, BALANCE, "of the block"),
-            lambda: prove_balance(bodies, claims.block_mm3, claims.bored_mm3),
+            lambda: prove_balance(bodies, claims.block_mm3, claims.bored_mm3, together),
         ),
         _asked(not_run(APART, ""), lambda: prove_rest(bodies)),
         *_opening_proofs(bodies, claims),
