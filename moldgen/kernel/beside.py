@@ -8,13 +8,18 @@ nothing; the work is then done here, when its answer is asked for, and fails as 
 from __future__ import annotations
 
 import contextlib
+import io
 import os
 import pickle
 import signal
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from typing import Generic, TypeVar
 
+from OCP.BinTools import BinTools
+from OCP.TopoDS import TopoDS_Shape
+
 from moldgen.kernel.guard import use_evidence_folder
+from moldgen.kernel.topology import compound_of, parts_of
 from moldgen.tether import die_with_parent
 
 T = TypeVar("T")
@@ -54,6 +59,20 @@ class Beside(Generic[T]):
             os.kill(self._child, signal.SIGKILL)
             os.waitpid(self._child, 0)
             self._child = 0
+
+
+def packed(shapes: Sequence[TopoDS_Shape]) -> bytes:
+    """Return shapes as bytes that can be pickled, exact to the last digit."""
+    stream = io.BytesIO()
+    BinTools.Write_s(compound_of(shapes), stream)
+    return stream.getvalue()
+
+
+def unpacked(data: bytes) -> list[TopoDS_Shape]:
+    """Return the shapes that were packed, in order; they share nothing with shapes of this process."""
+    shape = TopoDS_Shape()
+    BinTools.Read_s(shape, io.BytesIO(data))
+    return parts_of(shape)
 
 
 def _work_and_leave(work: Callable[[], object], pipe: int, parent: int) -> None:

@@ -6,7 +6,6 @@ ladder that would hang is refused instead of ending the whole run.
 
 from __future__ import annotations
 
-import io
 import os
 import resource
 import select
@@ -14,11 +13,10 @@ import signal
 import time
 from collections.abc import Callable, Sequence
 
-from OCP.BinTools import BinTools
 from OCP.TopoDS import TopoDS_Shape
 
 from moldgen.errors import KernelError
-from moldgen.kernel.topology import compound_of, parts_of
+from moldgen.kernel.beside import packed, unpacked
 
 LIMIT_S = 8
 """A rung that takes more processor time is refused. The slowest of use on real parts took 2 s (measured)."""
@@ -56,9 +54,7 @@ def made_apart(work: Callable[[], Sequence[TopoDS_Shape]], seconds: int = LIMIT_
         raise KernelError(answer[1:].decode("utf-8", "replace"))
     if answer[:1] != _SHAPES:
         raise KernelError("the kernel crashed")
-    shape = TopoDS_Shape()
-    BinTools.Read_s(shape, io.BytesIO(answer[1:]))
-    return parts_of(shape)
+    return unpacked(answer[1:])
 
 
 def survives(work: Callable[[], object], seconds: int = LIMIT_S) -> bool:
@@ -97,9 +93,7 @@ def _work_and_leave(work: Callable[[], Sequence[TopoDS_Shape]], pipe: int, secon
         signal.signal(signal.SIGINT, signal.SIG_IGN)
         resource.setrlimit(resource.RLIMIT_CPU, (seconds, seconds + 1))
         try:
-            stream = io.BytesIO()
-            BinTools.Write_s(compound_of(work()), stream)
-            answer = _SHAPES + stream.getvalue()
+            answer = _SHAPES + packed(work())
         except KernelError as error:
             answer = _ERROR + error.what.encode()
         with os.fdopen(pipe, "wb") as out:

@@ -13,18 +13,15 @@ from moldgen.kernel.measure import volume_adaptive
 from moldgen.kernel.pins import faces_below
 from moldgen.kernel.turned import stepped_solid
 from moldgen.model.halves import Halves
-from moldgen.model.layout import Layout
+from moldgen.model.layout import GateLayout, Layout
 from moldgen.model.tool import Component, Hole, Motion, Role, Tool
 from moldgen.steel.bored import Bored, Materials, Removed
 from moldgen.steel.bores import OVERRUN, PinBore, pin_bores
 from moldgen.steel.cutting import Cut, Wanted, cut_half
-from moldgen.steel.feed import Feed, make_feed
+from moldgen.steel.fed_cavity import SURE, FedCavityBeside, of_feed
 from moldgen.steel.ground import Ground
 from moldgen.steel.pins import pin_components
 from moldgen.steel.side_actions import SideCut
-
-SURE = 1e-7
-"""Relative error of the volumes of what is taken out: the default integration errs by 1e-4 on some plugs (measured)."""
 
 
 def make_tool(
@@ -49,14 +46,17 @@ def make_tool(
     """
     ground = Ground(halves)
     bores = pin_bores(halves, layout, ground)
-    feed = make_feed(halves, layout.gate, ground)
-    wanted = [Wanted(b.name, partial(_bore_tool, halves, b), b.lower_mm3 + b.expected_upper_mm3) for b in bores]
-    if feed.in_core is not None:
-        wanted.append(_of_feed(halves, layout, ground, "in_core", feed))
-    core = cut_half(halves.core, wanted, "core")
-    cavity = cut_half(halves.cavity, [_of_feed(halves, layout, ground, "in_cavity", feed)], "cavity")
-    _check_lower(bores, core.plugs[: len(bores)])
-    pins, notes = pin_components(bores, core.plugs[: len(bores)], materials)
+    making = FedCavityBeside(halves, layout.gate, ground, apart=bool(bores))
+    try:
+        core = _bored_core(halves, layout.gate, ground, bores, making)
+        _check_lower(bores, core.plugs[: len(bores)])
+        pins, notes = pin_components(bores, core.plugs[: len(bores)], materials)
+        names = [*(b.name for b in bores), "sprue"]  # the last one only if the core takes part of it
+        removed = [Removed("core", name, volume_adaptive(p, SURE)) for name, p in zip(names, core.plugs, strict=False)]
+        fed = making.result()
+    finally:
+        making.stop()
+    cavity, feed = fed.cut, fed.feed
     sprue = _solidified(core.plugs[len(bores) :], cavity.plugs)
     components = (
         Component("part", Role.PART, halves.real_part, materials.part, Motion.PART),
@@ -66,21 +66,19 @@ def make_tool(
         *pins,
         Component("sprue", Role.SPRUE, sprue, materials.part, feed.motion, note=feed.note),
     )
-    names = [*(b.name for b in bores), *(["sprue"] if feed.in_core is not None else [])]
-    removed = [Removed("core", name, volume_adaptive(p, SURE)) for name, p in zip(names, core.plugs, strict=True)]
-    removed += [Removed("cavity", "sprue", volume_adaptive(p, SURE)) for p in cavity.plugs]
+    removed += [Removed("cavity", "sprue", mm3) for mm3 in fed.plugs_mm3]
     removed += sides.removed if sides else ()
     tool = Tool(components, (*_pin_holes(bores), *feed.holes, *(sides.holes if sides else ())))
     return tool, Bored(tuple(removed)), notes + feed.notes + _refusals(core, cavity)
 
 
-def _of_feed(halves: Halves, layout: Layout, ground: Ground, which: str, feed: Feed) -> Wanted:
-    """Return the feed in one half, `in_cavity` or `in_core`; with its seams turned it is made again."""
-
-    def make(seam: float) -> Any:
-        return getattr(feed if seam == 0.0 else make_feed(halves, layout.gate, ground, seam), which)
-
-    return Wanted("sprue", make)
+def _bored_core(
+    halves: Halves, gate: GateLayout, ground: Ground, bores: Sequence[PinBore], making: FedCavityBeside
+) -> Cut:
+    wanted = [Wanted(b.name, partial(_bore_tool, halves, b), b.lower_mm3 + b.expected_upper_mm3) for b in bores]
+    if making.in_core:
+        wanted.append(of_feed(halves, gate, ground, "in_core", making.result().feed))
+    return cut_half(halves.core, wanted, "core")
 
 
 def _bore_tool(halves: Halves, bore: PinBore, seam: float) -> Any:

@@ -8,9 +8,11 @@ import time
 from pathlib import Path
 
 import pytest
+from helpers import solids
 
 from moldgen.errors import KernelError
-from moldgen.kernel.beside import Beside
+from moldgen.kernel.beside import Beside, packed, unpacked
+from moldgen.kernel.measure import volume
 
 
 def test_the_answer_comes_from_another_process() -> None:
@@ -52,3 +54,10 @@ def test_a_child_that_is_stopped_ends(tmp_path: Path) -> None:
     with pytest.raises(ChildProcessError):
         os.waitpid(-1, os.WNOHANG)
     assert not (tmp_path / "late").exists()
+
+
+def test_packed_shapes_come_back_in_order_with_their_volumes() -> None:
+    made = [solids.box((0, 0, 0), (1, 2, 3)), solids.sphere(2)]
+    back = unpacked(packed(made))
+    assert [volume(s) for s in back] == [volume(s) for s in made]
+    assert not any(s.IsSame(t) for s, t in zip(back, made, strict=True))
