@@ -39,7 +39,9 @@ def split_edges(body: Body, places: Mapping[int, Sequence[float]]) -> Body:
     chains = {}
     for number, found in places.items():
         if found:
-            chains[number] = _chain(forward(body.edges[number]), sorted(found), _stray(body, number))
+            edge = forward(body.edges[number])
+            beside = [body.faces[i] for i in body.edge_faces[number]]
+            chains[number] = chain_of(edge, sorted(found), stray(edge, beside))
     touched = {int(f) for number in chains for f in body.edge_faces[number]}
     faces = [_rebuilt(body, face, chains) if i in touched else face for i, face in enumerate(body.faces)]
     result = solid_from_faces(faces)
@@ -82,19 +84,18 @@ def _rebuilt(body: Body, face: TopoDS_Face, chains: Mapping[int, list[TopoDS_Edg
     return TopoDS.Face_s(new.Oriented(face.Orientation()))
 
 
-def _stray(body: Body, number: int) -> float:
-    """Return a tolerance that holds for every piece of an edge.
+def stray(edge: TopoDS_Edge, faces: Sequence[TopoDS_Face]) -> float:
+    """Return a tolerance [mm] that holds for every piece of an edge between these faces.
 
     The kernel judges an edge by 23 samples of its curve in space against its curve on each face; pieces are sampled
     elsewhere and may stray further than the whole did.
     """
-    edge = body.edges[number]
     curve = BRepAdaptor_Curve(edge)
     parameters = np.linspace(curve.FirstParameter(), curve.LastParameter(), STRAY_SAMPLES)
     worst = BRep_Tool.Tolerance_s(edge)
-    for face in body.edge_faces[number]:
-        surface = BRepAdaptor_Surface(body.faces[face])
-        flat = BRep_Tool.CurveOnSurface_s(edge, body.faces[face], 0.0, 0.0)
+    for face in faces:
+        surface = BRepAdaptor_Surface(face)
+        flat = BRep_Tool.CurveOnSurface_s(edge, face, 0.0, 0.0)
         if flat is None:
             continue
         for t in parameters:
@@ -103,7 +104,8 @@ def _stray(body: Body, number: int) -> float:
     return STRAY * float(worst)
 
 
-def _chain(edge: TopoDS_Edge, parameters: list[float], tolerance: float) -> list[TopoDS_Edge]:
+def chain_of(edge: TopoDS_Edge, parameters: Sequence[float], tolerance: float) -> list[TopoDS_Edge]:
+    """Return the pieces of an edge between its ends and new vertices at ascending parameters of its curve."""
     curve = BRepAdaptor_Curve(edge)
     stations: list[tuple[float, TopoDS_Vertex]] = [(curve.FirstParameter(), TopExp.FirstVertex_s(edge))]
     builder = BRep_Builder()

@@ -7,6 +7,7 @@ every point is then found on the surface itself.
 from __future__ import annotations
 
 import math
+from typing import NamedTuple
 
 import numpy as np
 from OCP.BRep import BRep_Tool
@@ -30,21 +31,42 @@ OVERSHOOT = 0.1
 """How far [mm] a curve runs past the mesh of its face, which may lie this much inside the true boundary."""
 
 
+class Chain(NamedTuple):
+    """A level curve as the triangles of a face see it.
+
+    points : (k, 2) roots of the slope on the sides of the triangles, in surface parameters; a ring repeats its first
+    closed : whether it is a ring
+    ends : the two mesh nodes (counted from 0) of the side on which the chain begins, and of that on which it ends
+    """
+
+    points: np.ndarray
+    closed: bool
+    ends: tuple[tuple[int, int], tuple[int, int]]
+
+
 def level_curves(face: TopoDS_Face, slope: Slope) -> list[Geom2d_Curve]:
     """Return the curves n.d = sine of a tessellated face in the parameters of its surface.
 
     They reach the boundary of the face or run a little past it; clipping is the caller's.
     """
     curves = []
-    for chain, closed in _chains(face, slope):
-        points = _exact(slope, chain, closed)
+    for chain in level_chains(face, slope):
+        points = _exact(slope, chain.points, chain.closed)
         if points is not None:
-            curves.append(_interpolated(points, closed))
+            curves.append(interpolated(points, chain.closed))
     return curves
 
 
-def _chains(face: TopoDS_Face, slope: Slope) -> list[tuple[np.ndarray, bool]]:
-    """Return polylines in (u, v) through the roots on the mesh edges, and whether each closes on itself."""
+def curve_through(slope: Slope, points: np.ndarray, closed: bool) -> np.ndarray | None:
+    """Return exact points of the level curve along a chain whose two ends stay where they are, None if too short.
+
+    points : (k, 2) in surface parameters
+    """
+    return _exact(slope, points, closed, lead=False)
+
+
+def level_chains(face: TopoDS_Face, slope: Slope) -> list[Chain]:
+    """Return the chains of mesh sides that the level curves of a tessellated face cross."""
     mesh = BRep_Tool.Triangulation_s(face, TopLoc_Location())
     if mesh is None or not mesh.HasUVNodes():
         return []
@@ -84,29 +106,33 @@ def _walk(links: dict[int, list[int]]) -> list[list[int]]:
     return chains
 
 
-def _rooted(slope: Slope, uv: np.ndarray, chain: list[int]) -> tuple[np.ndarray, bool]:
+def _rooted(slope: Slope, uv: np.ndarray, chain: list[int]) -> Chain:
     points = []
     for key in chain:
         one, other = uv[key // len(uv)], uv[key % len(uv)]
         points.append(one + slope.along(one, other) * (other - one))
-    return np.array(points), len(chain) > 2 and chain[0] == chain[-1]
+    ends = tuple((key // len(uv), key % len(uv)) for key in (chain[0], chain[-1]))
+    return Chain(np.array(points), len(chain) > 2 and chain[0] == chain[-1], (ends[0], ends[1]))
 
 
-def _exact(slope: Slope, chain: np.ndarray, closed: bool) -> np.ndarray | None:
+def _exact(slope: Slope, chain: np.ndarray, closed: bool, lead: bool = True) -> np.ndarray | None:
     """Return points on the curve dense enough for a spline through them to keep to it, or None if it is too short."""
     scale = _scale(slope, chain)
     chain = chain / scale
     length = float(np.linalg.norm(np.diff(chain, axis=0), axis=1).sum())
     if length < SHORT_EDGE:
         return None
-    if not closed:
+    if lead and not closed:
         chain = _extended(slope, chain, scale)
     count = max(5, min(MOST_POINTS, int(np.ceil(length / max(length / 12.0, 0.05))) + 1))
+    last = np.inf
     while True:
         points = _resampled(slope, chain, scale, count)
-        if count >= MOST_POINTS or _strays(slope, points, closed, scale) < CURVE_ERROR:
+        error = _strays(slope, points, closed, scale)
+        # an end that was moved onto a vertex strays however many points there are
+        if count >= MOST_POINTS or error < CURVE_ERROR or (not lead and error > 0.8 * last):
             return points
-        count = min(MOST_POINTS, 2 * count - 1)
+        last, count = error, min(MOST_POINTS, 2 * count - 1)
 
 
 def _scale(slope: Slope, chain: np.ndarray) -> np.ndarray:
@@ -182,7 +208,7 @@ def _strays(slope: Slope, points: np.ndarray, closed: bool, scale: np.ndarray) -
     """Return the largest distance [mm] of the spline through the points from the curve, half way between them."""
     if len(points) < 3:
         return 0.0
-    curve = _interpolated(points, closed)
+    curve = interpolated(points, closed)
     knots = np.array([curve.Knot(i) for i in range(1, curve.NbKnots() + 1)])
     worst, step = 0.0, 1e-4
     for t in 0.5 * (knots[1:] + knots[:-1]):
@@ -194,7 +220,8 @@ def _strays(slope: Slope, points: np.ndarray, closed: bool, scale: np.ndarray) -
     return worst
 
 
-def _interpolated(points: np.ndarray, closed: bool) -> Geom2d_Curve:
+def interpolated(points: np.ndarray, closed: bool) -> Geom2d_Curve:
+    """Return the spline through points in surface parameters, (k, 2); of a ring the first is repeated as the last."""
     kept = points[:-1] if closed else points
     array = TColgp_HArray1OfPnt2d(1, len(kept))
     for number, (u, v) in enumerate(kept, start=1):

@@ -72,7 +72,7 @@ def test_untouched_faces_survive_a_split():
     kept = [f for f in before.faces if after.face_index.FindIndex(f) > 0]
     assert len(after.faces) > len(before.faces)
     assert len(kept) >= 1
-    assert "curves" in notes.decisions[0].choice
+    assert "faces split" in notes.decisions[0].choice
 
 
 def test_trapped_volume_is_the_same_before_and_after():
