@@ -102,7 +102,10 @@ class Choice:
         gap = cdist(places, load.places)
         self._reach = np.min([gap[column] for column in sets.T], axis=0)
         self._middles = (places[sets] * first[:, :, None]).sum(axis=1)
-        self._apart = apart
+        # distances are compared as "less than": a place exactly `apart` away is free
+        self._tree, self._within = cKDTree(places) if len(places) else None, float(np.nextafter(apart, 0.0))
+        self._beside_fixed = self._beside(fixed)
+        self._beside_unit: dict[int, np.ndarray] = {}
         self.chosen: list[int] = []
 
     def result(self) -> np.ndarray:
@@ -177,11 +180,19 @@ class Choice:
         """Return which units keep their distance from the chosen ones and do not make too many, (u,) bool."""
         size = len(self._fixed) + int(self._sizes[chosen].sum())
         free = size + self._sizes <= counts.most
-        taken = np.vstack([self._places[self._sets[chosen].ravel()], self._fixed])
-        if len(taken):
-            near = cKDTree(taken).query(self._places, distance_upper_bound=self._apart)[0] < self._apart
-            free &= ~near[self._sets].any(axis=1)
-        return np.asarray(free)
+        near = self._beside_fixed.copy()
+        for unit in chosen:
+            if unit not in self._beside_unit:
+                self._beside_unit[unit] = self._beside(self._places[np.unique(self._sets[unit])])
+            near |= self._beside_unit[unit]
+        return np.asarray(free & ~near[self._sets].any(axis=1))
+
+    def _beside(self, taken: np.ndarray) -> np.ndarray:
+        """Return which places are too near to one of those taken (t, 2), (k,) bool."""
+        near = np.zeros(len(self._places), dtype=bool)
+        if self._tree is not None and len(taken):
+            near[np.concatenate([np.asarray(n, int) for n in self._tree.query_ball_point(taken, self._within)])] = True
+        return near
 
     def _costs(self, chosen: list[int], reach: np.ndarray, sizes: np.ndarray, middles: np.ndarray) -> np.ndarray:
         """Return the cost of the chosen units together with each of the given ones."""
