@@ -23,7 +23,8 @@ EDGE_ON = 1e-7
 """|n.d| of a facet below which it sweeps nothing."""
 
 FLAT_AREA = 1e-6
-"""Relative difference between a patch's shadow and the sum of its triangles' shadows that shows an overlap."""
+"""Relative difference between a patch's shadow and the sum of its triangles' shadows that shows an overlap; and between
+the volume of its prism and the sum of theirs."""
 
 
 def sweep_faces(body: Meshed, kinds: FaceKinds, up: bool, way: float | None = None) -> MeshSolid:
@@ -120,12 +121,22 @@ class PrismMaker:
         return [np.sort(patch[order[:half]]), np.sort(patch[order[half:]])]
 
     def _injective(self, patch: np.ndarray) -> MeshSolid | None:
-        """Return the prism of a patch if no two of its points lie on one line along the pull."""
+        """Return the prism of a patch if no two of its points lie on one line along the pull, and it is whole."""
         prism = self._prism(patch)
         if prism is None or len(patch) == 1:
             return prism
         total = float(self.shadow[patch].sum())
-        return prism if abs(prism.project().area() - total) <= FLAT_AREA * total + 1e-9 else None
+        if abs(prism.project().area() - total) > FLAT_AREA * total + 1e-9:
+            return None
+        # walls over a vertex where the patch touches itself can be joined crosswise: same shadow, other volume
+        size = float((self.shadow[patch] * self._ways(patch)).sum())
+        return prism if abs(float(prism.volume()) - size) <= FLAT_AREA * size + 1e-9 else None
+
+    def _ways(self, patch: np.ndarray) -> np.ndarray:
+        """Return how far each triangle is carried, from its middle [mm]."""
+        if self.shift is not None:
+            return np.full(len(patch), abs(self.shift))
+        return np.asarray(np.abs(self.far - self.vertices[self.triangles[patch], 2].mean(axis=1)))
 
     def _prism(self, patch: np.ndarray) -> MeshSolid | None:
         """Return the patch carried to the far level as a closed mesh, or None if that bounds no solid."""

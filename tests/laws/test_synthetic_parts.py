@@ -24,6 +24,7 @@ from moldgen.model.proof import Verdict
 from moldgen.release.frame import rotation_to_z
 from moldgen.release.imprint import imprint_silhouettes
 from moldgen.release.kinds import face_kinds
+from moldgen.release.sweep import contested_sweeps, sweep_faces
 from moldgen.release.trapped import trapped_volume
 from moldgen.tolerances import BALANCE, MESH_DEFLECTION
 
@@ -186,6 +187,17 @@ def test_a_pull_whose_sheets_coincide_loses_nothing() -> None:
     """The mesh boolean once dropped 137 mm3 of this space, one way round only."""
     here, there = trapped_here("window 3", 1), trapped_mm3(part("window 3"), -pull("window 3", 1))
     assert there.mm3 == pytest.approx(here.mm3, rel=1e-6)
+
+
+@pytest.mark.parametrize("number", [4, 5])
+def test_a_patch_that_touches_itself_is_swept_whole(number: int) -> None:
+    """What cannot matter is left out of the sweeps; what is left of a face may then touch itself at a corner."""
+    solid = moved(part("window 3"), np.array(rotation_to_z(tuple(float(c) for c in pull("window 3", number)))))
+    body = Body(solid)
+    kinds = face_kinds(body)
+    whole = sweep_faces(body, kinds, True) ^ sweep_faces(body, kinds, False)
+    above, below = contested_sweeps(body, kinds)
+    assert (above ^ below).volume() == pytest.approx(whole.volume(), rel=1e-9)
 
 
 # --- halves ---------------------------------------------------------------------------------------------------------
