@@ -176,7 +176,8 @@ def refuse_undercuts(reviewed: Reviewed) -> None:
         raise undercut_error(
             reviewed,
             "give another pull (moldgen check lists the best), change these faces so that they taper along the pull, "
-            "open a slot under them, or accept them filled with parting.undercuts: fill",
+            "open a slot under them, let side actions form them with parting.undercuts: release, or accept them filled "
+            "with parting.undercuts: fill",
         )
 
 

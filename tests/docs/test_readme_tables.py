@@ -9,7 +9,7 @@ import pytest
 from helpers.png import pixels
 from helpers.source import CHECKOUT
 
-from moldgen.proof.opening import CAVITY_OPENS, EJECTORS_MOVE, PART_LEAVES
+from moldgen.proof.opening import CAVITY_OPENS, EJECTORS_MOVE, PART_LEAVES, SIDES_MOVE
 from moldgen.proof.rest import APART, FILLED, SOUND
 from moldgen.spec.describe import json_schema
 
@@ -42,6 +42,7 @@ def test_the_proofs() -> None:
         CAVITY_OPENS,
         PART_LEAVES,
         EJECTORS_MOVE,
+        SIDES_MOVE,
     ]
 
 

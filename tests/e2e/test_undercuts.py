@@ -23,6 +23,7 @@ FACES = sorted([3.1 * 10, 3.1 * 10, 10 * 4, 3.1 * 4, 3.1 * 4])
 """Floor, roof, back and both ends of the notch [mm^2]."""
 
 NO_SHRINK = "shrink: 0\n"
+TWO_HALVES = "parting: {undercuts: refuse}\n"
 
 
 def near(point: list[float], slack: float = 0.1) -> bool:
@@ -33,7 +34,7 @@ def near(point: list[float], slack: float = 0.1) -> bool:
 
 
 def test_a_build_refuses_and_names_place_area_and_depth(tmp_path: Path) -> None:
-    done = moldgen("build", spec(tmp_path, NOTCHED, NO_SHRINK), "--quiet", folder=tmp_path)
+    done = moldgen("build", spec(tmp_path, NOTCHED, NO_SHRINK, TWO_HALVES), "--quiet", folder=tmp_path)
     assert done.returncode == 3
     assert re.search(r"part\.yaml:2:\d+: 1 undercuts? hold", done.stderr)
     found = re.search(
@@ -91,3 +92,35 @@ def test_filling_builds_proves_and_warns(tmp_path: Path) -> None:
     assert record["part"]["volume_mm3"] == pytest.approx(30 * 24 * 16 - 124, rel=1e-9)
     assert molded == pytest.approx(30 * 24 * 16, rel=1e-9), "the notch is molded full"
     assert done.returncode == (1 if any(f["severity"] == "failure" for f in record["findings"]) else 0)
+
+
+def slide_of(folder: Path) -> tuple[dict[str, object], list[str]]:
+    """Return the one slide of a built tool, and the names of the proofs that passed."""
+    record = manifest(folder / "out" / "part")
+    (slide,) = [c for c in record["components"] if c["role"] == "slide"]
+    return slide, [p["name"] for p in record["proofs"] if p["passed"]]
+
+
+@pytest.mark.slow
+def test_a_side_action_given_by_hand_is_obeyed_and_proved(tmp_path: Path) -> None:
+    wish = 'side_actions: {given: [{at: [14, 2, 8], direction: "+x", width: 11.5, height: 5.5}], add: false}\n'
+    done = moldgen("build", spec(tmp_path, NOTCHED, NO_SHRINK, wish), "--quiet", "--no-pictures", folder=tmp_path)
+    assert done.returncode == 0, done.stderr
+    slide, passed = slide_of(tmp_path)
+    assert slide["moves_with"] == "slide 1"
+    assert len(passed) == 7
+    steps = manifest(tmp_path / "out" / "part")["claims"]["steps"]
+    ways = [move for step in steps for group, move in step["moves"] if group == "slide 1"]
+    way = [sum(w[k] for w in ways) for k in range(3)]
+    assert way[0] >= 3.1, "out of the notch, which is 3.1 mm deep"
+    assert way[1:] == pytest.approx([0.0, 0.0], abs=1e-9)
+
+
+@pytest.mark.slow
+def test_a_side_action_given_the_wrong_way_is_refused_with_what_stands_in_its_way(tmp_path: Path) -> None:
+    wish = 'side_actions: {given: [{at: [14, 2, 8], direction: "-x"}], add: false}\n'
+    done = moldgen("build", spec(tmp_path, NOTCHED, NO_SHRINK, wish), "--quiet", "--no-pictures", folder=tmp_path)
+    assert done.returncode == 3, done.stderr
+    assert "1 undercut holds the part" in done.stderr
+    assert "no side action releases" in done.stderr
+    assert not list((tmp_path / "out").glob("part"))
