@@ -12,9 +12,10 @@ from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.flow.lay_out import marked_points
 from moldgen.flow.prepare import Prepared, ready
 from moldgen.flow.review import Reviewed, refuse_undercuts, undercut_error
-from moldgen.flow.side_plan import plan_sides
+from moldgen.flow.side_plan import plan_sides, turned_back
 from moldgen.flow.side_steel import Formed, with_room
 from moldgen.flow.tell import Tell
+from moldgen.flow.words import direction_text, point_text
 from moldgen.kernel.body import Body
 from moldgen.kernel.meshsolid import mesh_solid
 from moldgen.layout.blocks import size_blocks
@@ -122,9 +123,16 @@ def _counted(plan: SidePlan) -> str:
 
 
 def _unreleased(reviewed: Reviewed, plan: SidePlan) -> PartError:
-    left = [f"place {u.piece + 1}: {u.why}; {u.remedy}" for u in plan.left[:8]]
-    return undercut_error(reviewed, "; or accept small places filled with parting.undercuts: release_or_fill".lstrip(
-        "; "), "no side action releases:\n    " + "\n    ".join(left))  # fmt: skip
+    frame = reviewed.frame
+    left = []
+    for place in plan.left[:8]:
+        told = place.told(
+            lambda point: point_text(frame.to_part(point)), lambda way: direction_text(turned_back(frame, way))
+        )
+        left.append(f"place {place.piece + 1}: {'; '.join(told)}")
+    remedy = "change the part as said, give another pull or the side actions by hand, or accept small places filled "
+    remedy += "with parting.undercuts: release_or_fill"
+    return undercut_error(reviewed, remedy, "no side action releases:\n      " + "\n      ".join(left))
 
 
 def _with_sides(reviewed: Reviewed, prepared: Prepared, plan: SidePlan, tell: Tell) -> tuple[Formed, Notes]:

@@ -80,13 +80,14 @@ def place_ejector_pins(
 
 
 def ejector_stroke(view: PartView, section: Ejection) -> tuple[float, Notes]:
-    """Return the travel [mm] that frees the part: its depth on the core, and a margin."""
+    """Return the travel [mm] that frees the part: its depth on the core, and a margin; that of lifters if longer."""
     z = view.mesh.corners[view.core_side][:, :, 2]
     depth = float(max(z.max(), view.level) - min(z.min(), view.level)) if len(z) else 0.0
     needed = ejection_stroke_pye.line("ejector stroke", depth)
     lines: tuple[Quantity, ...] = (measured("depth of the part on the core", depth, "mm", "ejector stroke"), needed)
     if section.stroke is None:
-        return float(math.ceil(needed.value)), Notes(quantities=lines)
+        lifters = max((side.front.stroke for side in view.halves.sides), default=0.0)
+        return max(float(math.ceil(needed.value)), lifters), Notes(quantities=lines)
     lines += (given_line("ejector stroke", section.stroke, "mm", "ejector stroke", where="ejection.stroke"),)
     if section.stroke >= needed.value - 1e-9:
         return section.stroke, Notes(quantities=lines)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from enum import StrEnum
 
@@ -32,6 +33,7 @@ class Front:
     pieces : numbers of the trapped pieces that it serves
     rung : how it was found, in words
     given : the number of its entry in the spec's `side_actions`, -1 if moldgen placed it
+    stroke : of a lifter the ejection stroke that it was made for [mm]: another one ends somewhere else; 0 of a slide
     """
 
     kind: SideKind
@@ -45,6 +47,7 @@ class Front:
     pieces: tuple[int, ...]
     rung: str
     given: int = -1
+    stroke: float = 0.0
 
 
 @dataclass(frozen=True)
@@ -69,7 +72,7 @@ class SideOptions:
     """What the search may use.
 
     given : entries of the spec's `side_actions`, in its order
-    ejection_stroke : how far the ejectors push [mm]; None: the part's height and a little
+    ejection_stroke : how far the ejectors push [mm]; None: what frees a part as deep on the core as it is high
     lifters, inclined : whether lifters and slides that are not square to the pull may be used
     add : whether more than the given ones may be planned
     """
@@ -89,12 +92,30 @@ class Unreleased:
     why : the reason in the trade's words ("closed undercut", "thread", "a collapsing core would be needed", ...)
     remedy : the smallest change of the part that would help
     tried : what was tried, and how each failed
+    at, way, change_at : the place [mm], the direction and the place of the change [mm] for which "{at}", "{way}" and
+        "{change_at}" stand in the texts, None where no text has one. In the mold frame: the reader's are others
     """
 
     piece: int
     why: str
     remedy: str
     tried: tuple[str, ...] = ()
+    at: Vector | None = None
+    way: Vector | None = None
+    change_at: Vector | None = None
+
+    def told(self, point_words: Callable[[Vector], str], way_words: Callable[[Vector], str]) -> tuple[str, str]:
+        """Return reason and remedy with places and directions in the words that two functions find for them."""
+        values = (
+            ("{at}", self.at, point_words),
+            ("{way}", self.way, way_words),
+            ("{change_at}", self.change_at, point_words),
+        )
+        why, remedy = self.why, self.remedy
+        for key, value, words in values:
+            if value is not None:
+                why, remedy = why.replace(key, words(value)), remedy.replace(key, words(value))
+        return why, remedy
 
 
 @dataclass(frozen=True)

@@ -27,6 +27,7 @@ from moldgen.kernel.mesh_prism import (
 )
 from moldgen.kernel.meshsolid import MeshSolid, piece_mesh, thick_pieces, union
 from moldgen.kernel.tracer import Tracer
+from moldgen.model.part import Vector
 from moldgen.model.side_action import Front, SideKind, across
 from moldgen.release.side_choice import as_vector
 from moldgen.release.side_outline import Outline, carved_from, is_free, polygons_of
@@ -68,7 +69,7 @@ REACHED = 0.1
 class Lifted:
     """A lifter: its view looks down along its axis.
 
-    way : level motion, (3,) [mm], over the whole ejection stroke
+    way : level motion, (3,) [mm], over the whole ejection stroke; stroke : that stroke [mm]
     """
 
     view: View
@@ -79,6 +80,7 @@ class Lifted:
     travel: float
     way: np.ndarray
     steel: MeshSolid
+    stroke: float
 
     def front(self, pieces: tuple[int, ...], given: int = -1) -> Front:
         """Return the lifter as the model tells it."""
@@ -95,6 +97,7 @@ class Lifted:
             pieces=pieces,
             rung=self.outline.rung,
             given=given,
+            stroke=self.stroke,
         )
 
 
@@ -106,27 +109,49 @@ class Lifting:
     stroke: float
     tracer: Tracer
 
+    @property
+    def most(self) -> float:
+        """The farthest level way [mm] that the stroke gives."""
+        return self.stroke * math.tan(math.radians(MOST_ANGLE))
+
     def need(self, points: np.ndarray, release: np.ndarray) -> float | None:
         """Return the level way [mm] after which points (k, 3) of a space have no plastic below them, None if
         none does or plastic stands in that way.
 
         By rays: a proposal, of the ways that the stroke allows.
         """
-        most = self.stroke * math.tan(math.radians(MOST_ANGLE)) - CLEARANCE
+        way = self.wanted(points, release)
+        return way if way is not None and self.gap(points, release) >= way + CLEARANCE else None
+
+    def wanted(self, points: np.ndarray, release: np.ndarray) -> float | None:
+        """Return the same way [mm], whatever stands in it."""
+        most = self.most - CLEARANCE
         for way in np.linspace(0.0, most, WAYS + 1)[1:]:
             if self.tracer.blocked(points + way * release, (0.0, 0.0, -1.0)).mean() < STRAY:
-                return float(way) if self._room(points, release, float(way)) else None
+                return float(way)
         return None
 
-    def _room(self, points: np.ndarray, release: np.ndarray, way: float) -> bool:
-        """Return whether the points can move a level way, and its clearance, without meeting plastic."""
+    def gap(self, points: np.ndarray, release: np.ndarray) -> float:
+        """Return how far [mm] points can move a level way before they meet plastic, but for a share of `BLOCKED`."""
+        gaps = self._before(points, release)
+        return float(np.sort(gaps)[int(BLOCKED * len(gaps))])
+
+    def stop(self, points: np.ndarray, release: np.ndarray) -> Vector:
+        """Return where the plastic is that ends the gap along a level way (mold frame)."""
+        gaps = self._before(points, release)
+        nearest = int(np.argsort(gaps, kind="stable")[int(BLOCKED * len(gaps))])
+        return as_vector(points[nearest] + gaps[nearest] * release)
+
+    def _before(self, points: np.ndarray, release: np.ndarray) -> np.ndarray:
+        """Return the distance to plastic along a way for each point, infinite where there is none, (k,) [mm]."""
         hit = self.tracer.first_triangle(points, release)
         met = hit >= 0
         corners = self.space.corners[hit[met]]
         normal = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
         run = normal @ release
-        gap = ((corners[:, 0] - points[met]) * normal).sum(axis=1) / np.where(np.abs(run) < 1e-12, 1e-12, run)
-        return bool((gap < way + CLEARANCE).sum() <= BLOCKED * len(points))
+        gaps = np.full(len(points), np.inf)
+        gaps[met] = ((corners[:, 0] - points[met]) * normal).sum(axis=1) / np.where(np.abs(run) < 1e-12, 1e-12, run)
+        return gaps
 
     def lifter(self, space: MeshSolid, release: np.ndarray, least: float) -> Lifted | str:
         """Return a lifter that lets a space out along a level direction, or why there is none.
@@ -144,7 +169,9 @@ class Lifting:
         axis = -(math.sin(lean) * release + math.cos(lean) * np.array([0.0, 0.0, 1.0]))
         view = View(self.space, as_vector(np.round(axis / np.linalg.norm(axis), 12) + 0.0))
         for spare in (SPARE, 0.0):
-            found = _Trial(self.space, view, space, way * release, way + spare, need_way - CLEARANCE).best()
+            found = _Trial(
+                self.space, view, space, way * release, way + spare, need_way - CLEARANCE, self.stroke
+            ).best()
             if isinstance(found, Lifted):
                 return found
         return found
@@ -160,6 +187,7 @@ class _Trial:
     way: np.ndarray
     free: float
     travel: float
+    stroke: float
 
     def best(self) -> Lifted | str:
         """Return the lifter of the best outline that works."""
@@ -204,7 +232,7 @@ class _Trial:
             return None
         plastic = self.view.part ^ body
         clear = float(box_of(plastic)[1][2]) if plastic.num_tri() else near
-        return Lifted(self.view, outline, near, far, clear, self.travel, self.way, self.view.back(steel))
+        return Lifted(self.view, outline, near, far, clear, self.travel, self.way, self.view.back(steel), self.stroke)
 
     def _forbidden(self, need: Region, toward: np.ndarray, near: float) -> Region:
         """Return where steel of the widest outline would meet plastic on its way, seen along the axis."""

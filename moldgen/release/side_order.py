@@ -29,6 +29,8 @@ def merged(placed: list[Placed]) -> list[Placed]:
         while other < len(kept) and tries < MOST_MERGES:
             tries += _same_way(kept[start].found, kept[other].found)
             joined = _joined(kept[start], kept[other])
+            if joined is not None and _in_the_way(joined.found, kept):
+                joined = None
             if joined is None:
                 other += 1
             else:
@@ -43,6 +45,12 @@ def _same_way(one: Found | Lifted, other: Found | Lifted) -> bool:
     if isinstance(one, Lifted) or isinstance(other, Lifted):
         return False
     return one.view is other.view and abs(one.near - other.near) <= SAME_NEAR
+
+
+def _in_the_way(found: Found | Lifted, placed: list[Placed]) -> bool:
+    """Return whether steel of a slide meets a lifter's, which was placed where it met none of the single slides."""
+    lifters = [p.found.steel for p in placed if isinstance(p.found, Lifted)]
+    return isinstance(found, Found) and any(thick_pieces(found.steel() ^ steel) for steel in lifters)
 
 
 def _joined(one: Placed, other: Placed) -> Placed | None:

@@ -7,7 +7,7 @@ from moldgen.model.side_action import SideOptions, SidePlan, Unreleased
 from moldgen.release.kinds import FaceKinds
 from moldgen.release.side_given import answer
 from moldgen.release.side_order import merged, ordered
-from moldgen.release.side_refusal import refusal, ring_count
+from moldgen.release.side_refusal import refusal
 from moldgen.release.side_search import Placed, Search, Space
 from moldgen.release.trapped import Grip, Trapped
 
@@ -39,8 +39,7 @@ def plan_side_actions(body: Body, kinds: FaceKinds, trapped: Trapped, options: S
         spaces += said.rest
     found, still = search.place(spaces)
     placed, circular = ordered(merged([*placed, *found]), search.shared)
-    rings = ring_count([p for _, p in undercuts])
-    left += [refusal(search, s, trapped.pieces[s.piece], rings) for s in still]
+    left += [refusal(search, s, trapped.pieces[s.piece], body) for s in still]
     left += [_circular(piece) for piece in sorted({n for p in circular for n in p.pieces})]
     fronts = tuple(p.found.front(p.pieces, p.given) for p in placed)
     return SidePlan(fronts, tuple(left))

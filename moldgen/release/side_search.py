@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, field
 from functools import cached_property
 
@@ -17,6 +18,7 @@ from moldgen.release.side_lifter import Lifted, Lifting, collide
 from moldgen.release.side_space import SideSpace, View
 from moldgen.release.side_split import apart, middles_of, split_fronts, splits
 from moldgen.release.trapped import TrapPiece
+from moldgen.rules.pushing import ejection_stroke_pye
 
 CLEAR_SHARE, SOME_SHARE = 0.97, 0.15
 """Share of rays that must be free before a direction is asked for a front for all, or for some, of a space."""
@@ -31,8 +33,10 @@ MOST_TRIED, MOST_LIFTERS, MOST_PARTIAL, DEEPEST, MOST_SPLITS = 8, 2, 4, 2, 12
 """Bounds of the search: directions tried for all of a space, for a lifter, for some of a space, how often a space is
 split again, and how many splits are followed in all for one piece."""
 
-FREE_OF_CORE = 10.0
-"""How far [mm] the ejectors lift the part clear of the core if the spec does not give their stroke: our choice."""
+
+PUSHED_ON = 10.0
+"""How far [mm] the ejectors push on when the part is clear of the core, if the spec gives no stroke: the most that is
+common practice (5 to 10 mm), since lifters then reach farther. Layout makes the stroke that lifters were made for."""
 
 
 @dataclass
@@ -74,7 +78,7 @@ class Search:
         self._lifters: list[Lifted] = []
         self._slides: list[MeshSolid] = []
         height = float(body.box[1][2] - body.box[0][2])
-        stroke = options.ejection_stroke or height + FREE_OF_CORE
+        stroke = options.ejection_stroke or float(math.ceil(ejection_stroke_pye(height, PUSHED_ON)))
         self.lifting = Lifting(self.shared, stroke, self.tracer)
         self.used: list[np.ndarray] = []
 
@@ -242,6 +246,9 @@ class Search:
             several = self._split(part)
             if several is None and part.depth < DEEPEST:
                 several = self._shared_out(part)
+            if several is None and self.options.lifters:
+                lifted = self._lifted(part)
+                several = [lifted] if lifted is not None else None
             if several is None:
                 return None
             placed += several
