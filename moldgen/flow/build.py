@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import shutil
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
@@ -52,39 +53,84 @@ class Built:
 MOST_PULLS = 3
 """How many pulls of an automatic choice are tried before the part is refused (our choice: each takes seconds)."""
 
+ASIDE = ".first"
+"""Folder inside the output for the files of a tool that was built but not proved, while another pull is tried."""
+
 
 def build_tool(loaded: LoadedSpec, folder: Path, options: Options, tell: Tell) -> JobResult:
     """Build, export and prove the tool of a spec into `folder`.
+
+    Where the pull is auto, the next pull is tried when one gives no tool or none that is proved. If none is proved, the
+    first tool stands; if none gives a tool, the best pull's refusal.
 
     Raises
     ------
     PartError : the part cannot be molded as asked; SpecError, KernelError : see the stages
     """
-    built = _built(loaded, tell)
+    source = open_part(loaded, tell)
+    errors: list[PartError | KernelError] = []
+    refused: list[str] = []
+    first: JobResult | None = None
+    for number, pull in enumerate(source.pulls[:MOST_PULLS]):
+        try:
+            built = _built_along(review_along(loaded, source, number, tell, tuple(refused)), tell)
+            result = _written(built, folder, options, tell)
+        except (PartError, KernelError) as error:
+            errors.append(error)
+            short = error.what.split("\n")[0].rstrip(":")
+            refused.append(f"{direction_text(pull.direction)}: {short}")
+            _empty(folder)
+            continue
+        if all(p.passed for p in result.proofs) or len(source.pulls) == 1:
+            shutil.rmtree(folder / ASIDE, ignore_errors=True)
+            return result
+        failed = ", ".join(p.name for p in result.proofs if not p.passed)
+        refused.append(f"{direction_text(pull.direction)}: a tool, but not proved: {failed}")
+        if first is None:
+            first = result
+            _set_aside(folder)
+        _empty(folder)
+    if first is not None:
+        _bring_back(folder)
+        return first
+    if len(refused) > 1:
+        errors[0].what += "\n  other pulls that were tried:\n    " + "\n    ".join(refused[1:])
+    raise errors[0]
+
+
+def _empty(folder: Path) -> None:
+    """Delete what is in a folder, except what was set aside."""
+    for path in folder.iterdir():
+        if path.name == ASIDE:
+            continue
+        if path.is_dir():
+            shutil.rmtree(path)
+        else:
+            path.unlink()
+
+
+def _set_aside(folder: Path) -> None:
+    found = sorted(folder.iterdir())
+    (folder / ASIDE).mkdir()
+    for path in found:
+        path.rename(folder / ASIDE / path.name)
+
+
+def _bring_back(folder: Path) -> None:
+    _empty(folder)
+    for path in sorted((folder / ASIDE).iterdir()):
+        path.rename(folder / path.name)
+    (folder / ASIDE).rmdir()
+
+
+def _written(built: Built, folder: Path, options: Options, tell: Tell) -> JobResult:
     with tell.stage("export") as stage:
-        files = export_tool(built.tool, folder, loaded.spec.output.step)
+        files = export_tool(built.tool, folder, built.reviewed.loaded.spec.output.step)
         stage.detail = "STEP files and tables"
     try:
         return _prove_and_record(built, files, folder, options, tell)
     finally:
         files.stop()
-
-
-def _built(loaded: LoadedSpec, tell: Tell) -> Built:
-    """Return the tool along the best pull that gives one; if none does, the best one's refusal stands."""
-    source = open_part(loaded, tell)
-    errors: list[PartError | KernelError] = []
-    refused: list[str] = []
-    for number, pull in enumerate(source.pulls[:MOST_PULLS]):
-        try:
-            return _built_along(review_along(loaded, source, number, tell, tuple(refused)), tell)
-        except (PartError, KernelError) as error:
-            errors.append(error)
-            short = error.what.split("\n")[0].rstrip(":")
-            refused.append(f"{direction_text(pull.direction)}: {short}")
-    if len(refused) > 1:
-        errors[0].what += "\n  other pulls that were tried:\n    " + "\n    ".join(refused[1:])
-    raise errors[0]
 
 
 def _built_along(reviewed: Reviewed, tell: Tell) -> Built:

@@ -216,13 +216,18 @@ def _pulls(loaded: LoadedSpec, part: Part) -> tuple[tuple[Pull, ...], tuple[Pull
     if given is not None:
         return (Pull(given, "given in the spec"),), ()
     found = search_pull(_meshed(part), axes_only=section.search == "axes")
-    return tuple(Pull(c.direction, c.why) for c in found), found
+    best, *others = (Pull(c.direction, c.why) for c in found)
+    x, y, z = (0.0 - c for c in best.direction)
+    # which half is the core decides where lifters and pins can be: the best line is worth trying both ways
+    turned = Pull((x, y, z), f"the best line the other way round: {best.how_chosen}")
+    return (best, turned, *others), found
 
 
 def _pull_decision(source: Source, number: int, refused: tuple[str, ...]) -> Decision:
     pull, tried = source.pulls[number], source.tried
-    others = [f"{direction_text(c.direction)} ({c.source}): {c.why}" for c in tried[number + 1 : number + 5]]
-    rung = tried[number].source if tried else ""
+    place = max(number - 1, 0)  # the best of those tried stands twice among the pulls
+    others = [f"{direction_text(c.direction)} ({c.source}): {c.why}" for c in tried[place + 1 : place + 5]]
+    rung = tried[place].source if tried else ""
     return Decision("pull", direction_text(pull.direction), pull.how_chosen, rung, (*refused, *others))
 
 

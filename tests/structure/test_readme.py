@@ -36,8 +36,12 @@ def test_the_demo_of_the_first_command_exists() -> None:
 
 
 def test_the_example_is_a_spec(tmp_path: Path) -> None:
-    (example,) = re.findall(r"```yaml\n(.+?)```", README, re.DOTALL)
-    (tmp_path / "lid.yaml").write_text(example, encoding="utf-8")
+    example, sides = re.findall(r"```yaml\n(.+?)```", README, re.DOTALL)
+    (tmp_path / "lid.yaml").write_text(example + sides, encoding="utf-8")
     spec = load_spec(tmp_path / "lid.yaml").spec
     assert (spec.name, spec.resin) == ("lid", "ABS")
     assert spec.marks[0].face == (0.0, 0.0, 12.7)
+    assert [(s.kind, s.direction) for s in spec.side_actions.given] == [
+        ("slide", (1.0, 0.0, 0.0)),
+        ("lifter", (0.0, -1.0, 0.0)),
+    ]
