@@ -32,6 +32,9 @@ MOST_OF = 0.9
 NEARLY = 0.6
 """Share of a space that must be free along its best direction for the rest of it to be what is told (our choice)."""
 
+ALL_BUT_RIMS = 0.97
+"""Share of free rays from which only rays at its rims are blocked, and the rest of it is no place to be told."""
+
 OPEN_BEFORE = 0.1
 """Gap [mm] before a space along a way from which it is open that way: less is its own wall."""
 
@@ -84,6 +87,9 @@ def _in_the_way(search: Search, space: Space, way: np.ndarray, free: float) -> _
     if len(hit) == 0:
         return _Reason("hollow with a small mouth: steel that leaves it would need more room than its mouth gives")
     share = f"{100.0 * free:.0f} %"
+    if free > ALL_BUT_RIMS:
+        why = "rays leave it along {way}, but no outline of steel fits between the walls beside it"
+        return _Reason(why, None, as_vector(way))
     if free >= NEARLY:
         middle, size = _behind(search, space, way)
         why = f"along {{way}} steel leaves {share} of it; the rest, {size} about {{at}}, is behind the part's own wall"

@@ -23,6 +23,9 @@ from moldgen.rules.pushing import ejection_stroke_pye
 CLEAR_SHARE, SOME_SHARE = 0.97, 0.15
 """Share of rays that must be free before a direction is asked for a front for all, or for some, of a space."""
 
+MOST_REST_LIFTERS = 2
+"""Bound on the remains of one piece for which lifters are tried: each takes as long as several splits."""
+
 ALIKE = 0.04
 """Ways whose shares of free rays differ by less count as alike, and the axes are tried first."""
 
@@ -74,7 +77,7 @@ class Search:
         self.diagonal, self.middles = body.diagonal, middles_of(body, pieces)
         self.tracer = self.shared.tracer
         self._views: dict[tuple[float, ...], View] = {}
-        self._splits = 0
+        self._splits = self._rest_lifters = 0
         self._lifters: list[Lifted] = []
         self._slides: list[MeshSolid] = []
         height = float(body.box[1][2] - body.box[0][2])
@@ -127,7 +130,7 @@ class Search:
             return [lifted]
         several = self._split(space)
         if several is None:
-            self._splits = 0
+            self._splits = self._rest_lifters = 0
             several = self._shared_out(space)
         if several is None and self.options.inclined:
             free = self.free(space, self.directions.inclined)
@@ -246,7 +249,8 @@ class Search:
             several = self._split(part)
             if several is None and part.depth < DEEPEST:
                 several = self._shared_out(part)
-            if several is None and self.options.lifters:
+            if several is None and self.options.lifters and self._rest_lifters < MOST_REST_LIFTERS:
+                self._rest_lifters += 1
                 lifted = self._lifted(part)
                 several = [lifted] if lifted is not None else None
             if several is None:
