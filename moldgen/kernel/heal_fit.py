@@ -11,7 +11,6 @@ from OCP.BRepTools import BRepTools
 from OCP.Geom import Geom_BSplineSurface, Geom_SphericalSurface, Geom_Surface
 from OCP.GeomConvert import GeomConvert_SurfToAnaSurf
 from OCP.TopoDS import TopoDS_Face
-from scipy.interpolate import RegularGridInterpolator
 
 from moldgen.kernel.elementary import (
     TURN,
@@ -42,22 +41,32 @@ class Fit:
     """An elementary surface in the place of a face's own.
 
     surface : u counts from where the face begins, so no face crosses the seam
-    chart : the parameters of the new surface over those of the old one, angles unwrapped
+    chart : stations of the old u (a,) and v (b,), and the parameters of the new surface there, (a, b, 2), unwrapped
     flipped : the normals of both surfaces are opposite
     off_mm : the largest distance between both
     mean_off_mm : how far the new one lies along the normal of the old one, on average
     """
 
     surface: Geom_Surface
-    chart: RegularGridInterpolator
+    chart: tuple[np.ndarray, np.ndarray, np.ndarray]
     flipped: bool
     off_mm: float
     mean_off_mm: float
 
     def near(self, uv: np.ndarray) -> np.ndarray:
         """Return roughly where places of the old surface (n, 2) lie on the new one, (n, 2)."""
-        low, high = (np.array([g[i] for g in self.chart.grid]) for i in (0, -1))
-        return np.asarray(self.chart(np.clip(uv, low, high)))
+        stations_u, stations_v, new = self.chart
+        i, s = _cell(stations_u, uv[:, 0])
+        j, t = _cell(stations_v, uv[:, 1])
+        low, high = ((1.0 - t) * new[k, j] + t * new[k, j + 1] for k in (i, i + 1))
+        return np.asarray((1.0 - s) * low + s * high)
+
+
+def _cell(stations: np.ndarray, values: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Return the number of the station below each value, (n,), and the share of the way to the next one, (n, 1)."""
+    place = np.clip(np.searchsorted(stations, values, side="right") - 1, 0, len(stations) - 2)
+    share = (values - stations[place]) / (stations[place + 1] - stations[place])
+    return place, np.clip(share, 0.0, 1.0)[:, None]
 
 
 def elementary_fit(face: TopoDS_Face) -> Fit | None:
@@ -131,8 +140,7 @@ def _charted(surface: Geom_Surface, u: np.ndarray, v: np.ndarray, points: np.nda
     signs = _turning(uv)
     if np.any(signs > 0.0) and np.any(signs < 0.0):
         return None
-    chart = RegularGridInterpolator((u, v), uv)
-    return Fit(surface, chart, bool(signs.sum() < 0.0), off, _mean_off(surface, flat, u, v))
+    return Fit(surface, (u, v, uv), bool(signs.sum() < 0.0), off, _mean_off(surface, flat, u, v))
 
 
 def _turning(uv: np.ndarray) -> np.ndarray:
