@@ -30,6 +30,10 @@ STEEL_DENSITY: Final = 7.85e-3
 """g/mm^3."""
 
 
+OUT_EARLY: Final = 1.0
+"""mm: taken off the pin: of the 2 mm that a slide travels beyond need, the last 0.4 are not driven (our choice)."""
+
+
 @dataclass(frozen=True)
 class PinChoice:
     """Angled pins for one slide [mm, N, MPa].
@@ -75,8 +79,12 @@ class PinChoice:
 
     @property
     def reach(self) -> float:
-        """Length down the axis from the top of the slide to the end of the tip."""
-        return self.working + self.diameter / 2 * math.tan(math.radians(self.angle)) + PIN_TIP.default
+        """Length down the axis from the top of the slide to the end of the tip.
+
+        A little shorter than what just moves the slide home: the pin must be out of it when it stops, since from there
+        on the pin rises without it.
+        """
+        return self.working + self.diameter / 2 * math.tan(math.radians(self.angle)) + PIN_TIP.default - OUT_EARLY
 
 
 def choose_angle(travel: float) -> float:

@@ -11,6 +11,7 @@ from moldgen.errors import KernelError, MoldgenError, PartError
 from moldgen.kernel.body import Body
 from moldgen.kernel.boolean import copied, fuse
 from moldgen.kernel.measure import is_valid, volume
+from moldgen.kernel.merge import merged_faces
 from moldgen.kernel.meshsolid import MeshSolid, mesh_solid, thick_pieces, thickness
 from moldgen.kernel.rehearse import made_apart
 from moldgen.kernel.side_prism import SHORTEST, outline_prism
@@ -25,6 +26,9 @@ WHY = "side actions form it; the halves are made of the part without it"
 
 SAME_VOLUME = 2e-3
 """Relative difference of volume between a fused part and its mesh from which the kernel is not believed."""
+
+ROUND_BORES = 0.03
+"""Share of what the fronts add by which meshes of round walls may be wrong: sag over radius, twice."""
 
 STUBS = (0.0, 1.0)
 """mm: how far a front that is joined to the part as it is runs on beyond the plastic inside it."""
@@ -57,7 +61,8 @@ def filled_candidates(
         if outside >= OPEN_OVERLAP:
             yield f"{rung}: {outside:.3f} mm of it lie outside the fronts"
             continue
-        yield Filled(filled, rung)
+        # a filled bore leaves a disc in its ring: the parting line may have to cross both, and they are one face
+        yield Filled(filled.like(merged_faces(filled.solid)), rung)
 
 
 def _told(error: MoldgenError) -> str:
@@ -78,8 +83,9 @@ def _with_fronts(body: Body, part: MeshSolid, fronts: Sequence[Front], stub: flo
     made = made_apart(lambda: fuse([copied(body.solid), *solids]))
     if len(made) != 1:
         raise PartError(f"the part and the fronts make {len(made)} solids")
-    got = volume(made[0])
-    if not is_valid(made[0]) or abs(got - wanted) > SAME_VOLUME * wanted:
+    got, gained = volume(made[0]), wanted - float(part.volume())
+    # the mesh of a bore is up to 3 % narrower than the bore; a front that was lost shows in what stays trapped
+    if not is_valid(made[0]) or abs(got - wanted) > SAME_VOLUME * wanted + ROUND_BORES * gained:
         raise PartError(f"joined they have {got:.2f} mm^3, by the mesh it should be {wanted:.2f} mm^3")
     return body.like(made[0])
 
