@@ -107,7 +107,7 @@ def _with_inner_knots(surface: Geom_Surface) -> Geom_Surface:
     """Return the surface between two lines with knots inside it, shape unchanged; other surfaces as they are.
 
     The kernel meshes a twisted surface without inner knots by two triangles, over either diagonal: the meshes of two
-    halves that share it then seem to overlap by its whole twist (0.12 mm on a real part).
+    halves that share it then seem to overlap by its whole twist.
     """
     if not isinstance(surface, Geom_BSplineSurface) or surface.UDegree() > 1 or surface.VDegree() > 1:
         return surface

@@ -58,13 +58,6 @@ def spiral():
     return only_solid(cq.Workplane("XZ").center(20, 0).rect(8, 3).sweep(path).val().wrapped)
 
 
-def knuckles():
-    """A hinge: along its bore the material lies now above, now below the axis."""
-    bar = solids.cylinder(6, 40, along=(1, 0, 0))
-    halves = [solids.box((x, -9, 0 if x % 20 else -9), (x + 10, 9, 9 if x % 20 else 0)) for x in (0, 10, 20, 30)]
-    return solids.cut(bar, solids.cylinder(3, 42, at=(-1, 0, 0), along=(1, 0, 0)), *halves)
-
-
 L_RIM = [(0, 0), (60, 0), (60, 25), (25, 25), (25, 60), (0, 60)]
 U_RIM = [(0, 0), (60, 0), (60, 50), (42, 50), (42, 20), (18, 20), (18, 50), (0, 50)]
 
