@@ -20,6 +20,8 @@ from moldgen.errors import PartError
 from moldgen.kernel.guard import operation
 from moldgen.kernel.heal_doubles import without_doubles
 from moldgen.kernel.heal_splines import recognized
+from moldgen.kernel.heal_tolerance import tightened
+from moldgen.kernel.heal_touch import refuse_touching_itself, without_slits
 from moldgen.kernel.measure import bounding_box, is_valid, volume
 from moldgen.kernel.sew import close, open_edges
 from moldgen.kernel.topology import compound_of, edge_points, edges_of, explore, faces_of, solids_of, vertex_point, walk
@@ -56,7 +58,7 @@ def heal(shape: TopoDS_Shape) -> Healed:
     """
     state = _closed(shape)
     before = abs(state.volume_mm3)
-    for step in (_outward, _made_valid, _without_voids):
+    for step in (_outward, _without_slits, _made_valid, _without_voids):
         state = step(state)
     solid, after, notes = state
     if not after > 0.0:
@@ -68,6 +70,7 @@ def heal(shape: TopoDS_Shape) -> Healed:
             where=_place(solid),
             remedy=_REPAIR,
         )
+    refuse_touching_itself(solid)
     solid, after, plain = recognized(solid, after)
     return Healed(solid, after, (*notes, *plain, *_remarks(solid)))
 
@@ -108,6 +111,11 @@ def _outward(state: Healed) -> Healed:
     now = _measured(turned)
     note = HealNote("inside-out solid turned", 1, now + state.volume_mm3)
     return Healed(turned, now, (*state.notes, note))
+
+
+def _without_slits(state: Healed) -> Healed:
+    solid, notes = without_slits(state.solid, state.volume_mm3)
+    return Healed(solid, _measured(solid), (*state.notes, *notes)) if notes else state
 
 
 def _made_valid(state: Healed) -> Healed:
@@ -197,11 +205,18 @@ def _remarks(solid: TopoDS_Solid) -> tuple[HealNote, ...]:
     tiny = sum(_is_tiny(f) for f in faces_of(solid)) if short else 0
     if tiny:
         notes.append(HealNote(f"faces smaller than {SHORT_EDGE:g} mm, left as they are", tiny, 0.0))
-    loose = ShapeAnalysis_ShapeTolerance().OverTolerance(solid, MAX_EDGE_TOLERANCE)
-    if loose.Size():
+    stated = ShapeAnalysis_ShapeTolerance().Tolerance(solid, 1)
+    if stated <= MAX_EDGE_TOLERANCE:
+        return tuple(notes)
+    with operation("hold stated tolerances against true gaps", operands=(solid,)):
+        tight, loose = tightened(solid)
+    if tight:
+        what = f"tolerances stated as up to {stated:.3g} mm, tightened to the true gaps"
+        notes.append(HealNote(what, tight, 0.0))
+    if loose:
         worst = ShapeAnalysis_ShapeTolerance().Tolerance(solid, 1)
         what = f"faces, edges or vertices looser than {MAX_EDGE_TOLERANCE:g} mm, up to {worst:.3g} mm"
-        notes.append(HealNote(what, loose.Size(), 0.0))
+        notes.append(HealNote(what, loose, 0.0))
     return tuple(notes)
 
 

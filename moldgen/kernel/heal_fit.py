@@ -8,12 +8,21 @@ from typing import Final
 import numpy as np
 from OCP.BRep import BRep_Tool
 from OCP.BRepTools import BRepTools
-from OCP.Geom import Geom_BSplineSurface, Geom_SphericalSurface, Geom_Surface
-from OCP.GeomConvert import GeomConvert_SurfToAnaSurf
+from OCP.Geom import (
+    Geom_BezierSurface,
+    Geom_BSplineSurface,
+    Geom_RectangularTrimmedSurface,
+    Geom_SphericalSurface,
+    Geom_Surface,
+    Geom_SurfaceOfLinearExtrusion,
+    Geom_SurfaceOfRevolution,
+)
+from OCP.GeomConvert import GeomConvert, GeomConvert_SurfToAnaSurf
 from OCP.TopoDS import TopoDS_Face
 
 from moldgen.kernel.elementary import (
     TURN,
+    bare,
     from_axis,
     goes_round,
     is_elementary,
@@ -34,6 +43,14 @@ EDGE_PLACES: Final = 23
 
 LARGEST_TURN: Final = 0.75 * np.pi
 """Steps of an angle from one place of the grid to the next may not be larger: there is a pole between them."""
+
+_LOOKED_AT: Final = (
+    Geom_BSplineSurface,
+    Geom_BezierSurface,
+    Geom_SurfaceOfLinearExtrusion,
+    Geom_SurfaceOfRevolution,
+)
+"""The kernel throws when it is asked about offset surfaces (measured)."""
 
 
 @dataclass(frozen=True)
@@ -72,11 +89,11 @@ def _cell(stations: np.ndarray, values: np.ndarray) -> tuple[np.ndarray, np.ndar
 def elementary_fit(face: TopoDS_Face) -> Fit | None:
     """Return the elementary surface that a face keeps to within `SAME_SURFACE` all over, or None."""
     surface = BRep_Tool.Surface_s(face)
-    if is_elementary(surface):
+    if not isinstance(bare(surface), _LOOKED_AT):
         return None
     u, v = _stations(face, surface)
     points = _grid_points(surface, u, v)
-    found = _candidate(surface, points)
+    found = _candidate(_as_spline(surface, u, v), points)
     if found is None:
         return None
     flat = points.reshape(-1, 3)
@@ -98,9 +115,17 @@ def _grid_points(surface: Geom_Surface, u: np.ndarray, v: np.ndarray) -> np.ndar
     return np.array([[surface.Value(float(a), float(b)).Coord() for b in v] for a in u])
 
 
-def _candidate(surface: Geom_Surface, points: np.ndarray) -> Geom_Surface | None:
+def _as_spline(surface: Geom_Surface, u: np.ndarray, v: np.ndarray) -> Geom_BSplineSurface:
+    """Return the surface, or the piece of it that a face uses, as a spline: the kernel throws on trimmed ones."""
+    if isinstance(surface, Geom_BSplineSurface):
+        return surface
+    ends = (float(u[0]), float(u[-1]), float(v[0]), float(v[-1]))
+    return GeomConvert.SurfaceToBSplineSurface_s(Geom_RectangularTrimmedSurface(bare(surface), *ends))
+
+
+def _candidate(spline: Geom_BSplineSurface, points: np.ndarray) -> Geom_Surface | None:
     """Ask the kernel what the surface is, and lay the poles of a sphere where the surface has its own."""
-    found = GeomConvert_SurfToAnaSurf(surface).ConvertToAnalytical(SAME_SURFACE)
+    found = GeomConvert_SurfToAnaSurf(spline).ConvertToAnalytical(SAME_SURFACE)
     if found is None or not isinstance(found, Geom_Surface) or not is_elementary(found):
         return None
     if not isinstance(found, Geom_SphericalSurface):

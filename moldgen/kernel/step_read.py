@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Final
 
@@ -30,6 +30,7 @@ from moldgen.errors import PartError
 from moldgen.kernel.crossing import crossings
 from moldgen.kernel.guard import operation
 from moldgen.kernel.heal import heal
+from moldgen.kernel.heal_touch import joined
 from moldgen.kernel.measure import bounding_box, volume
 from moldgen.kernel.mesh import surface_mesh, tessellate
 from moldgen.kernel.quiet import quiet
@@ -75,9 +76,13 @@ class ReadResult:
 
 @dataclass(frozen=True)
 class _Content:
-    """Located solids with their names, faces that belong to no solid, and what the kernel says about the file."""
+    """Located solids with their names, faces that belong to no solid, and what the kernel says about the file.
+
+    `products` counts the places of products that hold the solids.
+    """
 
     solids: tuple[tuple[str, TopoDS_Shape], ...]
+    products: int
     loose: tuple[TopoDS_Shape, ...]
     unit: str
     missing: int
@@ -103,7 +108,8 @@ def read_step(path: Path, choose: int | str | None = None, *, find_crossings: bo
     try:
         with quiet():
             content = _transfer(path)
-            name, shape, listed = _pick(content, choose)
+            content, joints, apart = _joined(content) if choose is None else (content, (), "")
+            name, shape, listed = _pick(content, choose, apart)
             healed = heal(_bake(shape))
             check_size(healed.solid, f"check the length unit of the file (it says {content.unit or 'nothing'})")
             if find_crossings:
@@ -111,7 +117,7 @@ def read_step(path: Path, choose: int | str | None = None, *, find_crossings: bo
     except PartError as error:
         error.where = f"{path}: {error.where}" if error.where else str(path)
         raise
-    notes = healed.notes
+    notes = (*joints, *healed.notes)
     if content.missing:
         notes = (HealNote("references to entities that the file does not contain", content.missing, 0.0), *notes)
     if content.solids and content.loose:
@@ -193,9 +199,10 @@ def _transfer(path: Path) -> _Content:
         tool.GetFreeShapes(roots)
         found: list[tuple[str, TopoDS_Shape]] = []
         loose: list[TopoDS_Shape] = []
-        for i in range(1, roots.Length() + 1):
-            _collect(reader, roots.Value(i), TopLoc_Location(), found, loose)
-        return _Content(tuple(found), tuple(loose), _unit(reader), missing)
+        products = sum(
+            _collect(reader, roots.Value(i), TopLoc_Location(), found, loose) for i in range(1, roots.Length() + 1)
+        )
+        return _Content(tuple(found), products, tuple(loose), _unit(reader), missing)
 
 
 def _collect(
@@ -204,17 +211,20 @@ def _collect(
     place: TopLoc_Location,
     found: list[tuple[str, TopoDS_Shape]],
     loose: list[TopoDS_Shape],
-) -> None:
-    """Walk the product tree: every occurrence of a product with geometry gives its solids, moved to their place."""
+) -> int:
+    """Walk the product tree: every occurrence of a product with geometry gives its solids, moved to their place.
+
+    Returns how many occurrences hold solids.
+    """
     if XCAFDoc_ShapeTool.IsAssembly_s(label):
-        children = TDF_LabelSequence()
+        count, children = 0, TDF_LabelSequence()
         XCAFDoc_ShapeTool.GetComponents_s(label, children, False)
         for i in range(1, children.Length() + 1):
             product = TDF_Label()
             if XCAFDoc_ShapeTool.GetReferredShape_s(children.Value(i), product):
                 there = place.Multiplied(XCAFDoc_ShapeTool.GetLocation_s(children.Value(i)))
-                _collect(reader, product, there, found, loose)
-        return
+                count += _collect(reader, product, there, found, loose)
+        return count
     shape = XCAFDoc_ShapeTool.GetShape_s(label)
     solids = list(walk(shape, TopAbs_SOLID))
     for solid in solids:
@@ -226,6 +236,7 @@ def _collect(
     while sheets.More():
         loose.append(sheets.Current().Moved(place))
         sheets.Next()
+    return int(bool(solids))
 
 
 def _name(label: TDF_Label) -> str:
@@ -262,7 +273,20 @@ def _missing_references(reader: STEPCAFControl_Reader) -> int:
     return count
 
 
-def _pick(content: _Content, choose: int | str | None) -> tuple[str, TopoDS_Shape, tuple[ListedSolid, ...]]:
+def _joined(content: _Content) -> tuple[_Content, tuple[HealNote, ...], str]:
+    """Join the solids of one product where faces do it; else say why not. Solids of several products stay apart."""
+    if len(content.solids) < 2 or content.products > 1:
+        return content, (), ""
+    whole, apart = joined([shape for _, shape in content.solids])
+    if whole is None:
+        return content, (), apart
+    note = HealNote("bodies of one product that touch face to face joined", len(content.solids), 0.0)
+    return replace(content, solids=((content.solids[0][0], whole),)), (note,), ""
+
+
+def _pick(
+    content: _Content, choose: int | str | None, apart: str = ""
+) -> tuple[str, TopoDS_Shape, tuple[ListedSolid, ...]]:
     """Return name and shape of the chosen solid, and the list of all solids (empty if there is only one)."""
     if not content.solids:
         if not content.loose:
@@ -279,7 +303,7 @@ def _pick(content: _Content, choose: int | str | None) -> tuple[str, TopoDS_Shap
     hits = _hits(listed, choose)
     if len(hits) != 1:
         if choose is None:
-            what = f"the file holds {len(listed)} solids"
+            what = f"the file holds {len(listed)} solids{', and ' * bool(apart)}{apart}"
         else:
             what = f"{len(hits)} solids are called {choose!r}" if hits else f"no solid {choose!r} in the file"
         raise PartError(f"{what}: {_list(listed)}", remedy="choose one by number or name, such as solid: 1")

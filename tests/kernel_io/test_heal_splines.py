@@ -18,6 +18,7 @@ from OCP.Geom import (
     Geom_BSplineSurface,
     Geom_Circle,
     Geom_CylindricalSurface,
+    Geom_OffsetSurface,
     Geom_RectangularTrimmedSurface,
     Geom_SurfaceOfLinearExtrusion,
 )
@@ -101,13 +102,20 @@ def test_the_volume_effect_is_told_with_its_sign():
     assert -SAME_SURFACE < large.mean_off_mm < 0.0  # the dent pointed outward: the cylinder lies inside it
 
 
-def test_an_extruded_circle_is_a_cylinder():
+@pytest.mark.parametrize("trimmed", [False, True])
+def test_an_extruded_circle_is_a_cylinder(trimmed):
     circle = Geom_Circle(gp_Ax2(gp_Pnt(0, 0, 0), gp_Dir(0, 0, 1)), 5.0)
     extruded = Geom_SurfaceOfLinearExtrusion(circle, gp_Dir(0, 0, 1))
-    wall = BRepBuilderAPI_MakeFace(extruded, 0.5, 2.0, 0.0, 10.0, 1e-7).Face()
-    fit = elementary_fit(wall)
+    if trimmed:
+        extruded = Geom_RectangularTrimmedSurface(extruded, 0.4, 2.1, -1.0, 11.0)
+    fit = elementary_fit(BRepBuilderAPI_MakeFace(extruded, 0.5, 2.0, 0.0, 10.0, 1e-7).Face())
     assert fit is not None
     assert isinstance(fit.surface, Geom_CylindricalSurface)
+
+
+def test_an_offset_surface_is_left_alone():
+    offset = Geom_OffsetSurface(BRep_Tool.Surface_s(wavy(0.0)), 1.0)
+    assert elementary_fit(BRepBuilderAPI_MakeFace(offset, 1e-7).Face()) is None
 
 
 @pytest.mark.parametrize("name", ["cylinder", "frustum", "ball", "ring"])

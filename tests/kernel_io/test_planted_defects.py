@@ -4,11 +4,14 @@ from __future__ import annotations
 
 import math
 
+import numpy as np
 import pytest
+from OCP.BRep import BRep_Builder, BRep_Tool
 from OCP.BRepAlgoAPI import BRepAlgoAPI_Cut, BRepAlgoAPI_Fuse
 from OCP.BRepBuilderAPI import BRepBuilderAPI_Copy, BRepBuilderAPI_MakeFace, BRepBuilderAPI_MakeSolid
 from OCP.BRepPrimAPI import BRepPrimAPI_MakeCylinder
-from OCP.gp import gp_Dir, gp_Pln, gp_Pnt
+from OCP.gp import gp_Dir, gp_Pln, gp_Pnt, gp_Vec
+from OCP.ShapeAnalysis import ShapeAnalysis_ShapeTolerance
 from OCP.ShapeFix import ShapeFix_ShapeTolerance
 from OCP.ShapeUpgrade import ShapeUpgrade_ShapeDivideAngle
 
@@ -17,7 +20,7 @@ from moldgen.kernel.body import Body
 from moldgen.kernel.heal import heal
 from moldgen.kernel.meshsolid import mesh_solid
 from moldgen.kernel.step_read import read_step
-from moldgen.kernel.topology import compound_of, faces_of, only_solid
+from moldgen.kernel.topology import compound_of, edge_points, edges_of, faces_of, only_solid
 from tests.kernel_io.test_step_read import block, raw_solid, shell_of, write_raw
 
 
@@ -105,13 +108,49 @@ def test_a_cylinder_in_patches_keeps_its_volume(patches):
     sound(healed.solid, 500 * math.pi)
 
 
-def test_a_tolerance_of_0_015_is_taken_and_one_of_0_03_is_listed():
-    for tolerance, listed in ((0.015, 0), (0.03, 1)):
-        loose = block()
-        ShapeFix_ShapeTolerance().SetTolerance(loose, tolerance)
-        healed = heal(loose)
-        assert len(healed.notes) == listed
-        sound(healed.solid, 6000)
+def stated(solid, tolerance: float):
+    """The same solid with a tolerance written everywhere."""
+    ShapeFix_ShapeTolerance().SetTolerance(solid, tolerance)
+    return solid
+
+
+def with_true_gap(gap: float):
+    """A block of which one edge's curve runs beside both faces, by `gap`."""
+    solid = block()
+    edge = next(e for e in edges_of(solid) if np.ptp(edge_points(e, 2)[:, 2]) > 29)
+    curve, first, last = BRep_Tool.Curve_s(edge, 0.0, 0.0), *BRep_Tool.Range_s(edge)
+    moved = curve.Translated(gp_Vec(gap * math.sqrt(0.5), gap * math.sqrt(0.5), 0))
+    BRep_Builder().UpdateEdge(edge, moved, BRep_Tool.Tolerance_s(edge))
+    BRep_Builder().Range(edge, first, last)
+    return solid
+
+
+def worst_tolerance(solid) -> float:
+    return float(ShapeAnalysis_ShapeTolerance().Tolerance(solid, 1))
+
+
+def test_a_stated_tolerance_of_0_015_is_taken_as_it_is():
+    healed = heal(stated(block(), 0.015))
+    assert healed.notes == ()
+    assert worst_tolerance(healed.solid) == pytest.approx(0.015)
+
+
+@pytest.mark.parametrize("gap", [0.0, 0.001, 0.015])
+def test_a_tolerance_stated_far_above_the_true_gap_is_tightened_and_told(gap):
+    healed = heal(stated(with_true_gap(gap), 0.03))
+    assert [(n.what, n.volume_change_mm3) for n in healed.notes] == [
+        ("tolerances stated as up to 0.03 mm, tightened to the true gaps", 0.0)
+    ]
+    assert gap <= worst_tolerance(healed.solid) <= max(1.3 * gap, 1e-5)
+    sound(healed.solid, 6000)
+
+
+def test_a_true_gap_of_0_022_keeps_its_tolerance_and_is_told():
+    healed = heal(stated(with_true_gap(0.022), 0.03))
+    assert 0.022 <= worst_tolerance(healed.solid) <= 0.03
+    assert healed.notes[-1].what.startswith("faces, edges or vertices looser than 0.02 mm, up to 0.02")
+    assert healed.notes[-1].count == 3  # the edge and its two ends; all else was tightened
+    sound(healed.solid, 6000)
 
 
 def test_a_sheet_beside_the_solid_is_left_out_and_listed_with_its_place(tmp_path):
@@ -121,11 +160,3 @@ def test_a_sheet_beside_the_solid_is_left_out_and_listed_with_its_place(tmp_path
     assert [n.count for n in read.healed] == [1]
     assert "beside the solid" in read.healed[0].what
     assert "50.000, 0.000, 7.000" in read.healed[0].what
-
-
-def test_a_solid_that_touches_itself_along_an_edge_still_has_a_closed_mesh():
-    # a slab 20 x 20 x 10 less two diagonal quarters of its upper half: 3000 mm^3, touching along a middle edge
-    slab = BRepAlgoAPI_Cut(block(20, 20, 10), block(10, 10, 5, at=(0, 0, 5))).Shape()
-    healed = heal(only_solid(BRepAlgoAPI_Cut(slab, block(10, 10, 5, at=(10, 10, 5))).Shape()))
-    assert healed.volume_mm3 == pytest.approx(3000)
-    sound(healed.solid, 3000)
