@@ -11,6 +11,7 @@ from OCP.BinTools import BinTools, BinTools_FormatVersion
 from OCP.BRep import BRep_Builder, BRep_Tool
 from OCP.BRepLib import BRepLib_ToolTriangulatedShape
 from OCP.BRepMesh import BRepMesh_IncrementalMesh
+from OCP.BRepTools import BRepTools
 from OCP.Message import Message_ProgressRange
 from OCP.TopAbs import TopAbs_EDGE, TopAbs_REVERSED
 from OCP.TopExp import TopExp
@@ -22,8 +23,8 @@ from scipy.sparse.csgraph import connected_components
 
 from moldgen.errors import KernelError
 from moldgen.kernel.heal_mesh import is_torn, remesh
-from moldgen.kernel.topology import walk
-from moldgen.tolerances import MESH_ANGLE, MESH_DEFLECTION
+from moldgen.kernel.topology import compound_of, walk
+from moldgen.tolerances import MESH_ANGLE, MESH_DEFLECTION, PROOF_ANGLE, PROOF_DEFLECTION
 
 
 @dataclass(frozen=True)
@@ -92,7 +93,7 @@ def surface_mesh(faces: list[TopoDS_Face]) -> SurfaceMesh:
 
     Faces are joined through the nodes of their common edges and vertices, never by rounding coordinates: real parts
     have features smaller than any rounding that would close the gaps. Faces that the kernel left without a mesh, or
-    with a torn one, are meshed again.
+    with a torn one, are meshed again; so are all, as finely as proofs ask for, where two divide an edge unequally.
 
     Raises
     ------
@@ -103,11 +104,33 @@ def surface_mesh(faces: list[TopoDS_Face]) -> SurfaceMesh:
     if missing:
         remesh(faces, missing)
     mesh = _welded(faces)
-    torn = [f for f in (faces[i] for i in _at_open_sides(mesh)) if is_torn(f)]
-    if not torn:
+    beside = [faces[i] for i in _at_open_sides(mesh)]
+    torn = [f for f in beside if is_torn(f)]
+    if torn:
+        remesh(faces, torn)
+    elif _disagree(beside):
+        BRepTools.Clean_s(whole := compound_of(faces))
+        tessellate(whole, PROOF_DEFLECTION, PROOF_ANGLE)
+    else:
         return mesh
-    remesh(faces, torn)
     return _welded(faces)
+
+
+def _disagree(faces: list[TopoDS_Face]) -> bool:
+    """True when two faces divide a common edge into different numbers of pieces: both are whole, the mesh is not.
+
+    Seen on a real part (measured): a face that a silhouette was imprinted on is meshed anew while its neighbor keeps
+    the finer mesh it had.
+    """
+    index, counts = TopTools_IndexedMapOfShape(), dict[int, int]()
+    location = TopLoc_Location()
+    for face in faces:
+        mesh = BRep_Tool.Triangulation_s(face, location)
+        for edge in walk(face, TopAbs_EDGE):
+            polygon = BRep_Tool.PolygonOnTriangulation_s(TopoDS.Edge_s(edge), mesh, location)
+            if polygon is not None and counts.setdefault(index.Add(edge), polygon.NbNodes()) != polygon.NbNodes():
+                return True
+    return False
 
 
 def _at_open_sides(mesh: SurfaceMesh) -> list[int]:

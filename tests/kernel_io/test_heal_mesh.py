@@ -20,7 +20,7 @@ from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
 from moldgen.kernel.heal_mesh import is_torn, remesh
 from moldgen.kernel.heal_seams import straighten_seams
-from moldgen.kernel.mesh import surface_mesh, tessellate
+from moldgen.kernel.mesh import _welded, surface_mesh, tessellate
 from moldgen.kernel.meshsolid import mesh_solid
 from moldgen.kernel.topology import faces_of, only_solid, walk
 
@@ -103,3 +103,14 @@ def test_a_line_that_leans_on_purpose_is_left_alone():
         if isinstance(line, Geom2d_Line) and abs(line.Direction().X()) < 0.5:
             line.SetDirection(gp_Dir2d(1e-6, line.Direction().Y()))
     assert straighten_seams(cone) == 0
+
+
+def test_faces_that_divide_their_common_edge_unequally_are_meshed_again():
+    faces = faces_of(BRepPrimAPI_MakeCylinder(5, 20).Solid())
+    tessellate(faces[0], 0.001, 0.05)  # each alone, the wall finer than the ends: as splits leave them on real parts
+    for face in faces[1:]:
+        tessellate(face, 0.05, 0.3)
+    assert not any(is_torn(f) for f in faces)
+    with pytest.raises(KernelError, match="not closed"):
+        mesh_solid(_welded(faces))
+    assert mesh_solid(surface_mesh(faces)).volume() == pytest.approx(500 * math.pi, rel=5e-3)
