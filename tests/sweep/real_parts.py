@@ -1,6 +1,6 @@
 """Build a tool for every real part and print what came of it: the table in DEVELOPERS.md.
 
-    python -m tests.sweep.real_parts [--undercuts release|release_or_fill|fill|refuse] [--pull auto|axis] [--jobs 2] [NAME ...]
+    python -m tests.sweep.real_parts [--undercuts release|...] [--pull auto|axis] [--jobs 2] [--csv FILE] [NAME ...]
 
 The parts are those of the folder in MOLDGEN_PARTS, or ``../shared/parts`` beside the checkout; their best axis comes
 from the index that lies there. Each part is built through the command line, in its own process, as a user would.
