@@ -48,7 +48,7 @@ def _shared(command: Callable[..., None], json_help: str = _ONE_DOCUMENT) -> Cal
     for option in (
         click.option("--memory-limit", type=click.FloatRange(min=1.0), default=8.0, show_default=True, metavar="GIB"),
         click.option(
-            "--time-limit", type=click.FloatRange(min=1.0), default=120.0, show_default=True, metavar="SECONDS"
+            "--time-limit", type=click.FloatRange(min=1.0), default=300.0, show_default=True, metavar="SECONDS"
         ),
         click.option("--json", "as_json", is_flag=True, help=json_help),
         click.option("--quiet", is_flag=True, help="Show no progress."),

@@ -50,7 +50,7 @@ class Built:
     notes: Notes
 
 
-MOST_PULLS = 3
+MOST_PULLS = 4
 """How many pulls of an automatic choice are tried before the part is refused (our choice: each takes seconds)."""
 
 ASIDE = ".first"

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from contextlib import suppress
 from dataclasses import dataclass, replace
 
@@ -29,6 +30,9 @@ from moldgen.release.trapped import Grip
 from moldgen.rules.draft import draft_required
 from moldgen.spec.load import LoadedSpec
 from moldgen.spec.pull import FaceNormal
+
+ALIKE = 0.966
+"""Cosine (15 deg) from which a pull is tried after those that differ more from what was tried already."""
 
 MOST_NAMED = 8
 """Trapped places that an error message names one by one; the manifest has them all."""
@@ -216,19 +220,38 @@ def _pulls(loaded: LoadedSpec, part: Part) -> tuple[tuple[Pull, ...], tuple[Pull
     if given is not None:
         return (Pull(given, "given in the spec"),), ()
     found = search_pull(_meshed(part), axes_only=section.search == "axes")
-    best, *others = (Pull(c.direction, c.why) for c in found)
+    return tuple(_worth_trying(found)), found
+
+
+def _worth_trying(found: tuple[PullCandidate, ...]) -> Iterator[Pull]:
+    """Yield the pulls in the order in which they are tried.
+
+    The best line comes both ways, since which half is the core decides where lifters and pins can be; then the others,
+    those close to one that was tried already last.
+    """
+    best = found[0]
+    yield Pull(best.direction, best.why)
     x, y, z = (0.0 - c for c in best.direction)
-    # which half is the core decides where lifters and pins can be: the best line is worth trying both ways
-    turned = Pull((x, y, z), f"the best line the other way round: {best.how_chosen}")
-    return (best, turned, *others), found
+    yield Pull((x, y, z), f"the best line the other way round: {best.why}")
+    tried, close = [best], []
+    for one in found[1:]:
+        alike = any(abs(float(np.dot(one.direction, t.direction))) > ALIKE for t in tried)
+        if alike:
+            close.append(one)
+            continue
+        tried.append(one)
+        yield Pull(one.direction, one.why)
+    yield from (Pull(c.direction, c.why) for c in close)
 
 
 def _pull_decision(source: Source, number: int, refused: tuple[str, ...]) -> Decision:
     pull, tried = source.pulls[number], source.tried
-    place = max(number - 1, 0)  # the best of those tried stands twice among the pulls
-    others = [f"{direction_text(c.direction)} ({c.source}): {c.why}" for c in tried[place + 1 : place + 5]]
-    rung = tried[place].source if tried else ""
-    return Decision("pull", direction_text(pull.direction), pull.how_chosen, rung, (*refused, *others))
+    lines = [abs(float(np.dot(c.direction, pull.direction))) > 1.0 - 1e-9 for c in tried]
+    others = [
+        f"{direction_text(c.direction)} ({c.source}): {c.why}" for c, own in zip(tried, lines, strict=True) if not own
+    ]
+    rung = next((c.source for c, own in zip(tried, lines, strict=True) if own), "")
+    return Decision("pull", direction_text(pull.direction), pull.how_chosen, rung, (*refused, *others[:4]))
 
 
 def _outlook(candidates: tuple[PullCandidate, ...]) -> str:

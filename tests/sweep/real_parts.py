@@ -21,7 +21,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-TIME_LIMIT_S = 120
+TIME_LIMIT_S = 300
 KILL_AFTER_S = TIME_LIMIT_S + 30
 
 
