@@ -11,7 +11,7 @@ import numpy as np
 
 from moldgen.canon import to_json
 from moldgen.errors import KernelError, PartError
-from moldgen.finding import Finding, Notes, Severity
+from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.flow.build_tables import build_tables
 from moldgen.flow.export import export_tool, exported_volumes, reread_bodies
 from moldgen.flow.folder import MANIFEST
@@ -25,9 +25,11 @@ from moldgen.flow.side_steel import make_sides
 from moldgen.flow.tell import Tell
 from moldgen.flow.words import direction_text
 from moldgen.kernel.beside import Beside
+from moldgen.layout.side_drive import is_level
 from moldgen.model.halves import Halves
 from moldgen.model.layout import Layout
 from moldgen.model.proof import Proof
+from moldgen.model.side_action import SideKind
 from moldgen.model.tool import Tool
 from moldgen.output.pictures import PictureJob, start_pictures
 from moldgen.output.tool_scene import tool_scene
@@ -135,7 +137,16 @@ def _written(built: Built, folder: Path, options: Options, tell: Tell) -> JobRes
 
 def _built_along(reviewed: Reviewed, tell: Tell) -> Built:
     formed, notes = part_mold(reviewed, tell)
-    sides, side_layout, more = make_sides(formed, reviewed.resin, reviewed.loaded.spec.ejection, tell)
+    section = reviewed.loaded.spec.ejection
+    try:
+        sides, side_layout, more = make_sides(formed, reviewed.resin, section, tell)
+    except PartError as error:
+        if all(is_level(d.front) or d.front.kind is SideKind.LIFTER for d in formed.driven):
+            raise
+        # a slide that leaves at an angle finds no way out of the block: what it was to form is left to other means
+        formed, notes = part_mold(reviewed, tell, inclined=False)
+        notes += Notes(decisions=(Decision("side actions", "none that leave at an angle", error.what, error.where),))
+        sides, side_layout, more = make_sides(formed, reviewed.resin, section, tell)
     halves, notes = sides.halves, notes + more
     with tell.stage("lay out pins and gate") as stage:
         layout, more = lay_out(reviewed, halves, side_layout)

@@ -46,8 +46,10 @@ _REMEDY = "fill these places in the part, change them so that they taper along t
 Corners = tuple[np.ndarray, np.ndarray]
 
 
-def part_mold(reviewed: Reviewed, tell: Tell) -> tuple[Formed, Notes]:
+def part_mold(reviewed: Reviewed, tell: Tell, *, inclined: bool = True) -> tuple[Formed, Notes]:
     """Return the halves, with the forming steel of side actions where the part needs any.
+
+    inclined : whether slides may leave at an angle to the parting plane
 
     Raises
     ------
@@ -65,7 +67,7 @@ def part_mold(reviewed: Reviewed, tell: Tell) -> tuple[Formed, Notes]:
     if how == "refuse":
         refuse_undercuts(reviewed)
     if prepared.trapped.undercuts or reviewed.loaded.spec.side_actions.given:
-        return _released(reviewed, prepared, tell)
+        return _released(reviewed, prepared, tell, inclined)
     return _plain(reviewed, prepared, tell)
 
 
@@ -74,12 +76,12 @@ def _plain(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Formed, 
     return Formed(parted), notes
 
 
-def _released(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Formed, Notes]:
+def _released(reviewed: Reviewed, prepared: Prepared, tell: Tell, inclined: bool) -> tuple[Formed, Notes]:
     """Return halves and side actions; what no side action releases is filled if the spec allows it."""
     notes, fills = Notes(), reviewed.loaded.spec.parting.undercuts == "release_or_fill"
     if fills and prepared.trapped.rubs:
         prepared, notes = _with_rubs_filled(reviewed, prepared, tell)
-    plan, more = _planned(reviewed, prepared, tell)
+    plan, more = _planned(reviewed, prepared, tell, inclined)
     if plan.left and fills:
         pieces = tuple(prepared.trapped.pieces[u.piece] for u in plan.left if u.piece >= 0)
         with tell.stage("fill what no side action releases") as stage:
@@ -89,16 +91,16 @@ def _released(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Forme
         if not prepared.trapped.undercuts:
             made, also = _plain(reviewed, prepared, tell)
             return made, notes + also
-        plan, more = _planned(reviewed, prepared, tell)
+        plan, more = _planned(reviewed, prepared, tell, inclined)
     if plan.left:
         raise _unreleased(reviewed, plan)
     made, also = _with_sides(reviewed, prepared, plan, tell)
     return made, notes + more + also
 
 
-def _planned(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[SidePlan, Notes]:
+def _planned(reviewed: Reviewed, prepared: Prepared, tell: Tell, inclined: bool) -> tuple[SidePlan, Notes]:
     with tell.stage("plan the side actions") as stage:
-        plan, notes = plan_sides(reviewed, prepared)
+        plan, notes = plan_sides(reviewed, prepared, inclined=inclined)
         stage.detail = _counted(plan)
     return plan, notes
 

@@ -17,7 +17,7 @@ from moldgen.spec.side_actions import SideAction
 from moldgen.steel.forming import side_names
 
 
-def plan_sides(reviewed: Reviewed, prepared: Prepared) -> tuple[SidePlan, Notes]:
+def plan_sides(reviewed: Reviewed, prepared: Prepared, *, inclined: bool = True) -> tuple[SidePlan, Notes]:
     """Return the fronts that release the part, or what none releases."""
     spec, frame = reviewed.loaded.spec, reviewed.frame
     options = SideOptions(
@@ -25,6 +25,7 @@ def plan_sides(reviewed: Reviewed, prepared: Prepared) -> tuple[SidePlan, Notes]
         ejection_stroke=spec.ejection.stroke,
         lifters=spec.side_actions.lifters,
         add=spec.side_actions.add,
+        inclined=inclined,
     )
     plan = plan_side_actions(prepared.body, prepared.kinds, prepared.trapped, options)
     return plan, Notes(decisions=_decisions(plan.fronts, prepared, frame))

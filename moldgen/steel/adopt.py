@@ -13,10 +13,12 @@ from moldgen.finding import Decision, Notes
 from moldgen.kernel.body import Body
 from moldgen.kernel.boolean import copied, fuse
 from moldgen.kernel.measure import is_valid, volume
-from moldgen.kernel.meshsolid import MeshSolid, eroded, mesh_solid, overlap_depth
+from moldgen.kernel.meshsolid import MeshSolid, eroded, mesh_solid, overlap_depth, union
 from moldgen.kernel.rehearse import made_apart
 from moldgen.model.side_action import Front
 from moldgen.tolerances import OPEN_OVERLAP
+
+HALVES = ("cavity", "core")
 
 REACH = 0.04
 """mm: how far a piece is grown to find what it touches."""
@@ -52,6 +54,14 @@ class _Body:
     solids: list[Any]
     way: np.ndarray
     mesh: MeshSolid | None = None
+    thin: MeshSolid | None = None
+
+    def thinned(self) -> MeshSolid:
+        """Return the mesh of the body, eroded: it touches the pieces that were cut off from it."""
+        if self.thin is None:
+            found = [eroded(Body(solid).mesh) for solid in self.solids]
+            self.thin = union([solid for solid in found if solid is not None])
+        return self.thin
 
     def meshed(self) -> MeshSolid:
         if self.mesh is None:
@@ -100,15 +110,15 @@ def _placed(piece: Piece, bodies: dict[str, _Body], thin: MeshSolid) -> Decision
             touching.append((round(contact, 3), body))
     x, y, z = (float(v) for v in 0.5 * (mesh.vertices.min(axis=0) + mesh.vertices.max(axis=0)))
     for contact, body in sorted(touching, key=lambda pair: (-pair[0], pair[1].name)):
-        depth = _deepest_on_way(solid, body.way, thin)
-        if depth >= OPEN_OVERLAP:
-            reasons.append(f"{body.name} would push it {depth:.2f} mm into the part")
+        blocked = _blocked(solid, body, bodies, thin)
+        if blocked:
+            reasons.append(blocked)
             continue
         joined = _joined(body, piece.solid)
         if joined is None:
             reasons.append(f"the kernel cannot join it to {body.name}")
             continue
-        body.solids, body.mesh = joined, None
+        body.solids, body.mesh, body.thin = joined, None, None
         size = f"{volume(piece.solid):.2f} mm^3 at {x:.2f}, {y:.2f}, {z:.2f} in the mold"
         why = f"cut off from the {piece.owner}; {body.name} touches it on {contact:.2f} mm^2 and moves clear with it"
         return Decision("steel joined", f"{size} to {body.name}", why, "", tuple(reasons))
@@ -119,6 +129,20 @@ def _placed(piece: Piece, bodies: dict[str, _Body], thin: MeshSolid) -> Decision
         where=f"at {x:.2f}, {y:.2f}, {z:.2f} in the mold",
         remedy="give the side actions by hand, or open the undercuts beside it",
     )
+
+
+def _blocked(solid: MeshSolid, body: _Body, bodies: dict[str, _Body], thin: MeshSolid) -> str:
+    """Return what a piece would be pushed into that moves with a body; a side action also leaves both halves."""
+    depth = _deepest_on_way(solid, body.way, thin)
+    if depth >= OPEN_OVERLAP:
+        return f"{body.name} would push it {depth:.2f} mm into the part"
+    if body.name in HALVES:
+        return ""
+    for name in HALVES:
+        depth = _deepest_on_way(solid, body.way, bodies[name].thinned())
+        if depth >= OPEN_OVERLAP:
+            return f"{body.name} would push it {depth:.2f} mm into the {name}"
+    return ""
 
 
 def _deepest_on_way(solid: MeshSolid, way: np.ndarray, thin: MeshSolid) -> float:
