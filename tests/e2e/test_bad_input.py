@@ -31,7 +31,7 @@ BAD_SPECS = {
     "unknown key": (HEAD + "ejecton: {}\n", "part.yaml:3:1", "`ejection`"),
     "wrong unit": (HEAD + "gate: {land: 5 kg}\n", "part.yaml:3:14", '"5 kg" is not a length'),
     "YAML bomb": (BOMB, "part.yaml", "values"),
-    "planned section": (HEAD + "side_actions: auto\n", "part.yaml:3:1", "no effect"),
+    "planned section": (HEAD + "inserts: auto\n", "part.yaml:3:1", "no effect"),
     "code without the flag": ("resin: ABS\npart: {function: 'p.py:f'}\n", "part.yaml:2:8", "--allow-code"),
 }
 

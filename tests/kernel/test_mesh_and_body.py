@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 import trimesh
 from helpers import solids
+from OCP.BRepTools import BRepTools
 from OCP.gp import gp_Trsf, gp_Vec
 from OCP.TopAbs import TopAbs_SHELL
 from OCP.TopLoc import TopLoc_Location
@@ -16,7 +17,7 @@ from moldgen.errors import KernelError
 from moldgen.kernel.body import Body
 from moldgen.kernel.features import build_recipe
 from moldgen.kernel.measure import area, volume
-from moldgen.kernel.mesh import SurfaceMesh, surface_mesh
+from moldgen.kernel.mesh import SurfaceMesh, surface_mesh, tessellate
 from moldgen.kernel.nearest import nearest_triangle
 from moldgen.kernel.topology import compound_of, edges_of, explore, faces_of, only_solid, vertices_of
 from moldgen.spec.load import load_spec
@@ -114,9 +115,16 @@ def test_features_smaller_than_a_rounding_keep_the_mesh_closed():
 
 
 def test_a_face_without_triangles_is_named_by_its_place():
+    """A whole ball whose mesh was thrown away: it has no edges to be meshed from either."""
+    ball = solids.sphere(7.0, at=(40, 20, 10))
+    tessellate(ball)
+    BRepTools.Clean_s(ball)
     with pytest.raises(KernelError) as caught:
-        surface_mesh(faces_of(solids.box((40, 0, 0), (50, 5, 5))))
-    assert caught.value.where.startswith("face at 40.000")
+        surface_mesh(faces_of(ball))
+    where = caught.value.where
+    assert where.startswith("face at ")
+    place = [float(v) for v in where.removeprefix("face at ").split(", ")]
+    assert np.linalg.norm(np.array(place) - (40, 20, 10)) <= 7.1
 
 
 @pytest.mark.parametrize("name", ["cup", "ring", *DEMOS])
