@@ -139,6 +139,7 @@ def test_a_planted_fault_is_wrong_to_both(both, change: Callable[[Path], None], 
     assert any(words in line for line in second.wrong()), second.wrong()
 
 
+@pytest.mark.sweep
 def test_a_straight_demo_is_right_to_both(demo) -> None:
     built = demo("thumb-knob")
     assert built.done.returncode == 0, built.done.stderr
