@@ -66,7 +66,7 @@ def part_mold(reviewed: Reviewed, tell: Tell, *, inclined: bool = True) -> tuple
         return made, notes + more
     if how == "refuse":
         refuse_undercuts(reviewed)
-    if prepared.trapped.undercuts or reviewed.loaded.spec.side_actions.given:
+    if prepared.trapped.undercuts or reviewed.loaded.spec.side_actions.given or how == "release_or_fill":
         return _released(reviewed, prepared, tell, inclined)
     return _plain(reviewed, prepared, tell)
 
@@ -81,6 +81,9 @@ def _released(reviewed: Reviewed, prepared: Prepared, tell: Tell, inclined: bool
     notes, fills = Notes(), reviewed.loaded.spec.parting.undercuts == "release_or_fill"
     if fills and prepared.trapped.rubs:
         prepared, notes = _with_rubs_filled(reviewed, prepared, tell)
+    if not prepared.trapped.undercuts and not reviewed.loaded.spec.side_actions.given:
+        made, also = _plain(reviewed, prepared, tell)
+        return made, notes + also
     plan, more = _planned(reviewed, prepared, tell, inclined)
     if plan.left and fills:
         pieces = tuple(prepared.trapped.pieces[u.piece] for u in plan.left if u.piece >= 0)
