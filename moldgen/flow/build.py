@@ -13,13 +13,13 @@ from moldgen.canon import to_json
 from moldgen.errors import KernelError, PartError
 from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.flow.build_tables import build_tables
-from moldgen.flow.export import export_tool, exported_volumes, reread_bodies
+from moldgen.flow.export import export_tool, exported_volumes, file_record, reread_bodies
 from moldgen.flow.folder import MANIFEST
 from moldgen.flow.job import JobResult, Options, verdict_code
 from moldgen.flow.lay_out import lay_out
 from moldgen.flow.part_mold import part_mold
 from moldgen.flow.prove import proof_findings
-from moldgen.flow.record import component_files, component_record, file_record, notes_record, review_record
+from moldgen.flow.record import component_files, component_record, notes_record, review_record
 from moldgen.flow.review import Reviewed, open_part, review_along
 from moldgen.flow.side_steel import make_sides
 from moldgen.flow.tell import Tell
@@ -205,7 +205,10 @@ def _prove_and_record(built: Built, files: Beside[None], folder: Path, options: 
         if pictures is not None:
             pictures.stop()
     files.result()
-    record = {**_record(built, notes, proofs, exported_volumes(built.tool, bodies)), "files": file_record(folder)}
+    record = {
+        **_record(built, notes, proofs, exported_volumes(built.tool, bodies)),
+        "files": file_record(built.tool, folder),
+    }
     (folder / MANIFEST).write_text(to_json(record), encoding="utf-8")
     return _result(built, notes, proofs)
 

@@ -6,6 +6,7 @@ import itertools
 from collections.abc import Sequence
 from pathlib import Path
 
+from moldgen.canon import sha256_bytes
 from moldgen.flow.record import component_files
 from moldgen.flow.reread import TOOL_FILE, Entry, read_bodies
 from moldgen.kernel.beside import Beside
@@ -14,6 +15,8 @@ from moldgen.model.tool import Tool
 from moldgen.output.palette import ROLES
 from moldgen.output.tables import holes_csv, parts_list_csv
 from moldgen.proof.bodies import ProofBody
+
+PARTS_LIST, HOLES = "parts_list.csv", "holes.csv"
 
 CLEAR_ROLES = {"cavity": 0.55}
 """Share of light that passes a role in the STEP file: one looks through the cavity half at the part."""
@@ -40,9 +43,15 @@ def export_tool(tool: Tool, folder: Path, schema: str) -> Beside[None]:
             export.write_component(component.name, folder / files[component.name])
 
     listed = {name: path.as_posix() for name, path in files.items()}
-    (folder / "parts_list.csv").write_bytes(parts_list_csv(tool, listed).encode())
-    (folder / "holes.csv").write_bytes(holes_csv(tool).encode())
+    (folder / PARTS_LIST).write_bytes(parts_list_csv(tool, listed).encode())
+    (folder / HOLES).write_bytes(holes_csv(tool).encode())
     return Beside(write_components)
+
+
+def file_record(tool: Tool, folder: Path) -> dict[str, str]:
+    """Return the SHA-256 of each STEP file and table that was written of a tool, by its path in the output folder."""
+    paths = sorted([Path(TOOL_FILE), Path(PARTS_LIST), Path(HOLES), *component_files(tool).values()])
+    return {path.as_posix(): sha256_bytes((folder / path).read_bytes()) for path in paths}
 
 
 def reread_bodies(tool: Tool, folder: Path) -> list[ProofBody]:

@@ -7,7 +7,7 @@ from pathlib import Path
 from typing import Any
 
 from moldgen import __version__
-from moldgen.canon import plain, sha256_bytes
+from moldgen.canon import plain
 from moldgen.finding import Notes
 from moldgen.flow.report import CAUTIONS, sorted_findings
 from moldgen.flow.review import Reviewed
@@ -80,9 +80,3 @@ def component_record(component: Component, file: Path, volume_mm3: float) -> dic
 def component_files(tool: Tool) -> dict[str, Path]:
     """Return the file of each component inside the output folder."""
     return {c.name: Path("step") / f"{c.name.replace(' ', '_')}.step" for c in tool.components}
-
-
-def file_record(folder: Path) -> dict[str, str]:
-    """Return the SHA-256 of each STEP file and table below the output folder, by its path in it."""
-    paths = sorted(p for p in folder.rglob("*") if p.suffix in (".step", ".csv"))
-    return {p.relative_to(folder).as_posix(): sha256_bytes(p.read_bytes()) for p in paths}
