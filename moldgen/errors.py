@@ -64,8 +64,13 @@ class MoldgenError(Exception):
         self.remedy = remedy
         self.evidence = evidence
 
+    @property
+    def told(self) -> str:
+        """Place and failure, without the remedy."""
+        return f"{self.where}: {self.what}" if self.where else self.what
+
     def __str__(self) -> str:
-        lines = [f"{self.where}: {self.what}" if self.where else self.what]
+        lines = [self.told]
         if self.remedy:
             lines.append(f"  try: {self.remedy}")
         if self.evidence:

@@ -10,7 +10,7 @@ import numpy as np
 from moldgen.errors import KernelError, MoldgenError, PartError, SpecError
 from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.flow.lay_out import marked_points
-from moldgen.flow.prepare import Prepared, ready
+from moldgen.flow.prepare import Prepared, prepared_body
 from moldgen.flow.review import Reviewed, refuse_undercuts, undercut_error
 from moldgen.flow.side_plan import plan_sides, turned_back
 from moldgen.flow.side_steel import Formed, with_room
@@ -29,8 +29,7 @@ from moldgen.parting.fill import fill_trapped
 from moldgen.parting.halves import Parted, part_halves
 from moldgen.parting.side_fill import filled_candidates, outside_fronts
 from moldgen.parting.told import parting_line, steel_contacts, told
-from moldgen.release.kinds import face_kinds
-from moldgen.release.trapped import TrapPiece, trapped_volume
+from moldgen.release.trapped import TrapPiece
 from moldgen.spec.sections import Blocks
 from moldgen.steel.forming import form_side_steel, narrowed, ways_in_turn
 from moldgen.tolerances import ON_PLANE, OPEN_OVERLAP
@@ -148,17 +147,15 @@ def _with_sides(reviewed: Reviewed, prepared: Prepared, plan: SidePlan, tell: Te
             refused.append(filled)
             continue
         try:
-            body, _ = ready(filled.body, reviewed.frame)
-            kinds = face_kinds(body)
-            trapped = trapped_volume(body, kinds)
-            if trapped.undercuts:
-                refused.append(f"{filled.rung}: {len(trapped.undercuts)} places stay trapped")
+            whole, _ = prepared_body(filled.body, reviewed.frame)
+            if whole.trapped.undercuts:
+                refused.append(f"{filled.rung}: {len(whole.trapped.undercuts)} places stay trapped")
                 continue
-            made, notes = _formed(reviewed, Prepared(body, kinds, trapped), prepared.body, plan, tell)
+            made, notes = _formed(reviewed, whole, prepared.body, plan, tell)
         except MoldgenError as error:
             if isinstance(error, SpecError):
                 raise
-            refused.append(f"{filled.rung}: {error.where}: {error.what}".replace(": : ", ": "))
+            refused.append(f"{filled.rung}: {error.told}")
             continue
         return made, notes
     raise PartError(
@@ -298,11 +295,9 @@ def _filled(reviewed: Reviewed, before: Prepared, pieces: tuple[TrapPiece, ...])
     try:
         body, notes = fill_trapped(before.body, before.kinds, pieces, reviewed.frame)
     except PartError as error:
-        why = f"{error.where}: {error.what}".removeprefix(": ")
-        raise undercut_error(reviewed, _REMEDY, f"they cannot be molded full: {why}") from error
-    body, more = ready(body, reviewed.frame)
-    kinds = face_kinds(body)
-    trapped = trapped_volume(body, kinds)
+        raise undercut_error(reviewed, _REMEDY, f"they cannot be molded full: {error.told}") from error
+    filled, more = prepared_body(body, reviewed.frame)
+    trapped = filled.trapped
     if trapped.undercuts and len(pieces) == len(before.trapped.pieces):
         left = sum(p.volume_mm3 for p in trapped.undercuts)
         why = f"filled, {len(trapped.undercuts)} places of {left:.3f} mm^3 stay trapped"
@@ -318,7 +313,7 @@ def _filled(reviewed: Reviewed, before: Prepared, pieces: tuple[TrapPiece, ...])
         unit="mm^3",
         remedy="machine these places after molding, change the part, or plan side actions",
     )
-    return Prepared(body, kinds, trapped), notes + more + Notes((finding,))
+    return filled, notes + more + Notes((finding,))
 
 
 def _mold_level(reviewed: Reviewed, height: float, body: Body) -> float:

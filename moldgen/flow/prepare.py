@@ -41,13 +41,12 @@ def prepare(solid: Any, volume_mm3: float | None = None, frame: MoldFrame | None
     for candidate in preparations(solid, volume_mm3):
         refused = [*candidate.refused, *refused[len(candidate.refused) :]]
         try:
-            body, notes = ready(Body(candidate.solid), frame)
-            prepared = Prepared(body, kinds := face_kinds(body), trapped_volume(body, kinds))
+            prepared, notes = prepared_body(Body(candidate.solid), frame)
         except KernelError as error:
-            refused.append(f"{candidate.rung}: {error.where}: {error.what}".replace(": : ", ": "))
+            refused.append(f"{candidate.rung}: {error.told}")
             continue
-        _refuse_crossings(body, frame)
-        choice = f"{len(body.faces)} faces"
+        _refuse_crossings(prepared.body, frame)
+        choice = f"{len(prepared.body.faces)} faces"
         why = "every face meshes, the mesh is closed and the solid stays valid when split"
         return prepared, notes + Notes(
             decisions=(Decision("preparation", choice, why, candidate.rung, tuple(refused)),)
@@ -56,6 +55,18 @@ def prepare(solid: Any, volume_mm3: float | None = None, frame: MoldFrame | None
         "the part cannot be prepared for parting: " + "; ".join(refused),
         remedy="repair the part in the CAD system that wrote it, and export it again",
     )
+
+
+def prepared_body(body: Body, frame: MoldFrame | None = None) -> tuple[Prepared, Notes]:
+    """Return a body with every face looking one way, and what is trapped between its faces.
+
+    Raises
+    ------
+    KernelError : its mesh is not closed
+    """
+    body, notes = ready(body, frame)
+    kinds = face_kinds(body)
+    return Prepared(body, kinds, trapped_volume(body, kinds)), notes
 
 
 def ready(body: Body, frame: MoldFrame | None = None) -> tuple[Body, Notes]:

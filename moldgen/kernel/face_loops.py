@@ -15,6 +15,7 @@ from OCP.TopoDS import TopoDS, TopoDS_Edge, TopoDS_Face, TopoDS_Wire
 from OCP.TopTools import TopTools_IndexedMapOfShape
 
 from moldgen.errors import KernelError
+from moldgen.kernel.polygon import contains, signed_area
 from moldgen.kernel.topology import is_reversed, parts_of, walk
 
 SAMPLES = 24
@@ -157,32 +158,22 @@ def _nested(cycles: list[list[Piece]]) -> list[list[list[Piece]]]:
     around them.
     """
     polygons = [np.vstack([p.places[:-1] for p in cycle]) for cycle in cycles]
-    areas = [_area(polygon) for polygon in polygons]
+    areas = [signed_area(polygon) for polygon in polygons]
     outer = sorted((k for k, area in enumerate(areas) if area > 0.0), key=lambda k: areas[k])
     faces = {k: [cycles[k]] for k in outer}
     for k, area in enumerate(areas):
         if area > 0.0:
             continue
-        around = [o for o in outer if areas[o] > -area and _inside(polygons[o], polygons[k])]
+        around = [o for o in outer if areas[o] > -area and _holds(polygons[o], polygons[k])]
         if not around:
             raise KernelError("a loop of a cut-up face lies in none of its parts")
         faces[around[0]].append(cycles[k])
     return [faces[k] for k in sorted(faces)]
 
 
-def _area(polygon: np.ndarray) -> float:
-    after = np.roll(polygon, -1, axis=0)
-    return float(0.5 * (polygon[:, 0] * after[:, 1] - polygon[:, 1] * after[:, 0]).sum())
-
-
-def _inside(polygon: np.ndarray, places: np.ndarray) -> bool:
+def _holds(polygon: np.ndarray, places: np.ndarray) -> bool:
     """True when most of the places lie inside the polygon (loops may touch in a place)."""
-    one, two = polygon, np.roll(polygon, -1, axis=0)
-    x, y = places[:, :1], places[:, 1:]
-    spans = (one[:, 1] > y) != (two[:, 1] > y)
-    rise = np.where(two[:, 1] == one[:, 1], 1.0, two[:, 1] - one[:, 1])
-    beyond = one[:, 0] + (y - one[:, 1]) * (two[:, 0] - one[:, 0]) / rise > x
-    return bool(((spans & beyond).sum(axis=1) % 2).mean() > 0.5)
+    return bool(contains(polygon, places).mean() > 0.5)
 
 
 def face_of_loops(face: TopoDS_Face, loops: Sequence[Sequence[Piece]]) -> TopoDS_Face:

@@ -12,6 +12,7 @@ import manifold3d
 import numpy as np
 
 from moldgen.kernel.meshsolid import MeshSolid
+from moldgen.kernel.polygon import signed_area
 
 Region: TypeAlias = manifold3d.CrossSection
 """A flat region with holes; regions are united, cut and intersected with ``+``, ``-`` and ``^``."""
@@ -41,6 +42,11 @@ def triangles_region(triangles: Sequence[np.ndarray]) -> Region:
     return Region(ways, manifold3d.FillRule.Positive)
 
 
+def joined_regions(regions: Sequence[Region]) -> Region:
+    """Return what regions cover together."""
+    return Region.batch_boolean(list(regions), manifold3d.OpType.Add)
+
+
 def rectangle(low: np.ndarray, high: np.ndarray) -> Region:
     """Return the rectangle between two corners (2,)."""
     return region([np.array([low, [high[0], low[1]], high, [low[0], high[1]]])])
@@ -68,12 +74,6 @@ def polygons(shape: Region) -> tuple[np.ndarray, ...]:
     return tuple(sorted(found, key=lambda p: (-round(signed_area(p), 9), *np.round(p.min(axis=0), 9))))
 
 
-def signed_area(polygon: np.ndarray) -> float:
-    """Return the area of a polygon (k, 2), negative if it runs clockwise."""
-    x, y = polygon[:, 0], polygon[:, 1]
-    return 0.5 * float((x * np.roll(y, -1) - y * np.roll(x, -1)).sum())
-
-
 def level_section(solid: MeshSolid, level: float) -> Region:
     """Return the section of a solid at a level."""
     return solid.slice(level)
@@ -88,6 +88,12 @@ def bounds(shape: Region) -> tuple[np.ndarray, np.ndarray]:
 def prism(shape: Region, near: float, far: float) -> MeshSolid:
     """Return the region carried from one level to another."""
     return shape.extrude(far - near).translate((0.0, 0.0, near))
+
+
+def outline_mesh(outline: Sequence[np.ndarray], frame: np.ndarray, near: float, far: float) -> MeshSolid:
+    """Return a straight prism where it stands; rows of `frame` are x, y, z of its own frame, it runs along z."""
+    placed = np.column_stack([frame.T, frame[2] * near])
+    return region(outline).extrude(far - near).transform(placed)
 
 
 def split_level(solid: MeshSolid, level: float) -> tuple[MeshSolid, MeshSolid]:

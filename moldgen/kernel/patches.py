@@ -23,6 +23,7 @@ from moldgen.kernel.body import Body
 from moldgen.kernel.build import backward, forward, plane_face, plane_through, wire_of
 from moldgen.kernel.guard import operation
 from moldgen.kernel.measure import area, is_valid
+from moldgen.kernel.polygon import contains, signed_area
 from moldgen.kernel.topology import directed_points, edges_of, explore, same_order
 from moldgen.tolerances import MAX_EDGE_TOLERANCE
 
@@ -164,12 +165,6 @@ def loop_points(loop: Loop, count: int) -> np.ndarray:
     return np.vstack([directed_points(e, count + 1)[:-1] for e in loop])
 
 
-def signed_area(plan: np.ndarray) -> float:
-    """Return the signed area of a closed polygon (n, 2): positive when it runs counter-clockwise."""
-    x, y = plan[:, 0], plan[:, 1]
-    return float(0.5 * (x * np.roll(y, -1) - y * np.roll(x, -1)).sum())
-
-
 def _flat(number: int, loop: Loop) -> _Flat | None:
     points = np.vstack([directed_points(e, 9) for e in loop])
     centre = points.mean(axis=0)
@@ -223,16 +218,7 @@ def _nested(group: list[_Flat], loops: Sequence[Loop]) -> list[FlatPatch]:
 
 def _lies_within(points: np.ndarray, polygon: np.ndarray) -> bool:
     """True when two far-apart points of one loop lie inside another polygon."""
-    return all(_contains(polygon, points[k]) for k in (1, len(points) // 2))
-
-
-def _contains(polygon: np.ndarray, place: np.ndarray) -> bool:
-    x, y = place
-    x0, y0 = polygon[:, 0], polygon[:, 1]
-    x1, y1 = np.roll(x0, -1), np.roll(y0, -1)
-    crosses = (y0 > y) != (y1 > y)
-    rise = np.where(crosses, y1 - y0, 1.0)
-    return bool((crosses & (x < (x1 - x0) * (y - y0) / rise + x0)).sum() % 2)
+    return bool(contains(polygon, points[[1, len(points) // 2]]).all())
 
 
 def _turned(loop: Loop) -> list[TopoDS_Edge]:

@@ -13,6 +13,7 @@ from moldgen.errors import KernelError
 from moldgen.kernel.build import line_edge, plane_face, plane_through, vertex_at, wire_of
 from moldgen.kernel.guard import operation
 from moldgen.kernel.measure import is_valid, volume
+from moldgen.kernel.polygon import contains, signed_area
 
 SHORTEST = 1e-4
 """mm: a shorter prism is none."""
@@ -33,7 +34,7 @@ def outline_prism(outline: Sequence[np.ndarray], frame: np.ndarray, near: float,
     """
     if far - near < SHORTEST:
         raise KernelError(f"a side action's front is {far - near:.4f} mm long")
-    areas = [_area(p) for p in outline]
+    areas = [signed_area(p) for p in outline]
     outer = [p for p, a in zip(outline, areas, strict=True) if a > 0]
     holes = [p for p, a in zip(outline, areas, strict=True) if a < 0]
     if not outer:
@@ -47,12 +48,12 @@ def _solid(
     polygon: np.ndarray, holes: Sequence[np.ndarray], frame: np.ndarray, ends: tuple[float, float], along: np.ndarray
 ) -> TopoDS_Shape:
     near, far = ends
-    inside = [h for h in holes if _within(h[0], polygon)]
+    inside = [h for h in holes if contains(polygon, h[:1])[0]]
     plane = plane_through(frame[2] * near, frame[2])
     wires = [_wire(p, frame, near) for p in (polygon, *inside)]
     face = plane_face(plane, wires[0], wires[1:])
     solid = BRepPrimAPI_MakePrism(face, gp_Vec(*(float(v) for v in along))).Shape()
-    expected = (_area(polygon) + sum(_area(h) for h in inside)) * (far - near)
+    expected = (signed_area(polygon) + sum(signed_area(h) for h in inside)) * (far - near)
     found = volume(solid)
     if not is_valid(solid) or abs(abs(found) - expected) > SAME_VOLUME * expected:
         raise KernelError(f"the outline of a side action gives {abs(found):.4f} mm^3 instead of {expected:.4f}")
@@ -63,17 +64,3 @@ def _wire(polygon: np.ndarray, frame: np.ndarray, height: float) -> TopoDS_Wire:
     places = np.column_stack([polygon, np.full(len(polygon), height)]) @ frame
     corners = [vertex_at(p) for p in places]
     return wire_of([line_edge(a, b) for a, b in zip(corners, corners[1:] + corners[:1], strict=True)])
-
-
-def _area(polygon: np.ndarray) -> float:
-    x, y = polygon[:, 0], polygon[:, 1]
-    return float(0.5 * (x * np.roll(y, -1) - y * np.roll(x, -1)).sum())
-
-
-def _within(point: np.ndarray, polygon: np.ndarray) -> bool:
-    """Return whether a point lies inside a polygon, by counting crossings to its right."""
-    start, end = polygon, np.roll(polygon, -1, axis=0)
-    spans = (start[:, 1] > point[1]) != (end[:, 1] > point[1])
-    rise = np.where(spans, end[:, 1] - start[:, 1], 1.0)
-    cross = start[:, 0] + (point[1] - start[:, 1]) / rise * (end[:, 0] - start[:, 0])
-    return bool(np.count_nonzero(spans & (cross > point[0])) % 2)

@@ -5,10 +5,10 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-import manifold3d
 import numpy as np
 
 from moldgen.kernel.mesh import SurfaceMesh
+from moldgen.kernel.mesh_prism import joined_regions, outline_mesh, region
 from moldgen.kernel.meshsolid import MeshSolid, eroded, mesh_solid, overlap_depth, thick_pieces
 from moldgen.tolerances import OPEN_OVERLAP
 
@@ -55,17 +55,9 @@ def extent_in(mesh: SurfaceMesh, frame: np.ndarray, window: Window, high: float 
     return np.asarray(np.asarray(inside.to_mesh64().vert_properties)[:, :3] @ frame.T)
 
 
-def outline_mesh(outline: Sequence[np.ndarray], frame: np.ndarray, near: float, far: float) -> MeshSolid:
-    """Return a straight prism as a mesh solid; rows of `frame` are x, y, z of its own frame."""
-    section = manifold3d.CrossSection([np.asarray(p, float) for p in outline], manifold3d.FillRule.Positive)
-    placed = np.column_stack([frame.T, frame[2] * near])
-    return section.extrude(far - near).transform(placed)
-
-
 def lowered(outline: Sequence[np.ndarray], level: float) -> tuple[np.ndarray, ...]:
     """Return an outline together with everything between it and a height under it; y of the outline points up."""
-    polygons = [np.asarray(p, float) for p in outline]
-    section = manifold3d.CrossSection(polygons, manifold3d.FillRule.Positive)
+    section = region(outline)
     shadows = [section]
     for polygon in section.to_polygons():
         for start, end in zip(polygon, np.roll(polygon, -1, axis=0), strict=True):
@@ -73,23 +65,19 @@ def lowered(outline: Sequence[np.ndarray], level: float) -> tuple[np.ndarray, ..
                 continue
             foot = min(level, start[1], end[1])
             quad = np.array([[start[0], foot], [end[0], foot], end, start])
-            shadows.append(manifold3d.CrossSection([quad if end[0] > start[0] else quad[::-1]]))
-    joined = manifold3d.CrossSection.batch_boolean(shadows, manifold3d.OpType.Add).simplify(CORNER)
+            shadows.append(region([quad if end[0] > start[0] else quad[::-1]]))
+    joined = joined_regions(shadows).simplify(CORNER)
     return tuple(np.asarray(p, float) for p in joined.to_polygons())
 
 
 def outline_gain(outline: Sequence[np.ndarray], larger: Sequence[np.ndarray]) -> float:
     """Return by how much area one outline is larger than another [mm^2]."""
-    areas = [manifold3d.CrossSection([np.asarray(p, float) for p in o], manifold3d.FillRule.Positive).area()
-             for o in (outline, larger)]  # fmt: skip
-    return float(areas[1] - areas[0])
+    return float(region(larger).area() - region(outline).area())
 
 
 def joined_area(outlines: Sequence[Sequence[np.ndarray]]) -> float:
     """Return the area that outlines cover together [mm^2]."""
-    sections = [manifold3d.CrossSection([np.asarray(p, float) for p in o], manifold3d.FillRule.Positive)
-                for o in outlines]  # fmt: skip
-    return float(manifold3d.CrossSection.batch_boolean(sections, manifold3d.OpType.Add).area())
+    return float(joined_regions([region(o) for o in outlines]).area())
 
 
 @dataclass(frozen=True)

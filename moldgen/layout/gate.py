@@ -9,13 +9,14 @@ import numpy as np
 
 from moldgen.catalog import Resin
 from moldgen.finding import Decision, Finding, Notes, Severity
+from moldgen.kernel.polygon import signed_area
 from moldgen.layout.flow_paths import find_flow_paths
 from moldgen.layout.gate_edge import edge_gate
 from moldgen.layout.gate_size import check_flow, melt_of
 from moldgen.layout.gate_task import FAR, Found, Task
 from moldgen.layout.gate_top import top_gate, usual_top
 from moldgen.layout.top_sites import find_top_sites
-from moldgen.layout.view import PartView, plan_area
+from moldgen.layout.view import PartView
 from moldgen.model.layout import GateKind, GateLayout
 from moldgen.model.part import Vector
 from moldgen.spec.sections import Gate
@@ -97,7 +98,7 @@ def _first_kind(task: Task) -> tuple[GateKind | None, str]:
         return GateKind.EDGE, "the place asked for lies at the parting line"
     low, high = view.body.box
     loop = view.outline
-    area = plan_area(loop)
+    area = signed_area(loop)
     around = float(np.linalg.norm((loop - np.roll(loop, 1, axis=0))[:, :2], axis=1).sum())
     size = float((high - low)[:2].max())
     if (

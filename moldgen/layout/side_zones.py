@@ -10,6 +10,8 @@ from typing import Final
 import numpy as np
 from scipy.spatial import ConvexHull
 
+from moldgen.kernel.polygon import signed_area
+from moldgen.layout.side_drive import is_level
 from moldgen.model.halves import Halves
 from moldgen.model.side_action import Front, SideKind, across
 from moldgen.model.slide import AngledPinLayout, LifterLayout, SideLayout, SlideBody
@@ -66,7 +68,7 @@ def side_zones(halves: Halves, sides: SideLayout | None) -> tuple[Zone, ...]:
         front = side.front
         if front.kind is SideKind.LIFTER:
             zones += _lifter(side.name, front, low, lifters.get(side.name))
-        elif _is_level(front):
+        elif is_level(front):
             zones += _level_front(side.name, front, far)
             if sides is None:
                 zones.append(_usual_body(side.name, front, halves, far))
@@ -82,16 +84,7 @@ def side_zones(halves: Halves, sides: SideLayout | None) -> tuple[Zone, ...]:
 
 def outer_polygons(front: Front) -> list[np.ndarray]:
     """Return the polygons of an outline that are no holes."""
-    found = []
-    for polygon in front.outline:
-        x, y = polygon[:, 0], polygon[:, 1]
-        if float((x * np.roll(y, -1) - y * np.roll(x, -1)).sum()) > 0.0:
-            found.append(np.asarray(polygon, float))
-    return found
-
-
-def _is_level(front: Front) -> bool:
-    return abs(front.axis[2]) < 1e-6
+    return [np.asarray(polygon, float) for polygon in front.outline if signed_area(polygon) > 0.0]
 
 
 def _level_front(name: str, front: Front, far: float) -> list[Zone]:

@@ -11,6 +11,7 @@ import numpy as np
 
 from moldgen.catalog import Pin, Resin, ejector_pin_series
 from moldgen.kernel.body import Body
+from moldgen.kernel.polygon import signed_area
 from moldgen.model.side_action import Front
 from moldgen.rules.ejection import ejection_force_sleeve_menges
 from moldgen.rules.side_action import angled_pin_delay_pye, angled_pin_length_pye, angled_pin_opening_pye
@@ -145,14 +146,9 @@ def front_sticking(front: Front, resin: Resin, part: Body) -> float:
 
     Upper bound: a window is gripped on its rim only, by the mean wall of the part over the depth of the undercut.
     """
-    cores = sum(_turns_left(p) for p in front.outline)
+    cores = sum(signed_area(p) > 0.0 for p in front.outline)
     wall = 2.0 * part.mesh.volume() / max(float(part.mesh.areas().sum()), 1e-9)
     strain = min(resin.shrink_along.low, resin.shrink_across.low) / 100.0
     depth = max(front.travel, 0.1)
     one = ejection_force_sleeve_menges(resin.friction.mean, resin.ejection_modulus.mean, strain, wall, depth)
     return max(cores, 1) * one
-
-
-def _turns_left(polygon: np.ndarray) -> bool:
-    x, y = polygon[:, 0], polygon[:, 1]
-    return bool((x * np.roll(y, -1) - y * np.roll(x, -1)).sum() > 0.0)

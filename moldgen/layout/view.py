@@ -9,6 +9,7 @@ import numpy as np
 from moldgen.finding import Point
 from moldgen.kernel.body import Body
 from moldgen.kernel.mesh import SurfaceMesh
+from moldgen.kernel.polygon import signed_area
 from moldgen.kernel.probe import Probe
 from moldgen.layout.keep_out import KeepOut
 from moldgen.model.halves import Halves
@@ -139,8 +140,8 @@ class PartView:
         loops = [self.mesh.vertices[loop] for loop in _chained(start.tolist(), end.tolist())]
         if not loops:
             return np.asarray(self.halves.parting_line[0], float)
-        best = max(loops, key=lambda p: abs(plan_area(p)))
-        return best if plan_area(best) > 0.0 else best[::-1]
+        best = max(loops, key=lambda p: abs(signed_area(p)))
+        return best if signed_area(best) > 0.0 else best[::-1]
 
     @cached_property
     def _core(self) -> Probe | None:
@@ -174,12 +175,6 @@ class PartView:
         origins = np.column_stack([places, np.full(len(places), start)])
         distance, triangle = self.probe.first(origins, np.array([0.0, 0.0, -1.0]))
         return start - distance, triangle
-
-
-def plan_area(loop: np.ndarray) -> float:
-    """Return the signed area of a closed loop (n, 3) in plan, positive counter-clockwise [mm^2]."""
-    x, y = loop[:, 0], loop[:, 1]
-    return float(0.5 * (x * np.roll(y, -1) - y * np.roll(x, -1)).sum())
 
 
 def _chained(start: list[int], end: list[int]) -> list[list[int]]:

@@ -4,14 +4,16 @@ out of these, so what it looks like inside the fronts does not matter.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
+from typing import Any
 
-from moldgen.errors import KernelError, MoldgenError, PartError
+from moldgen.errors import KernelError, PartError
 from moldgen.kernel.body import Body
 from moldgen.kernel.boolean import copied, fuse
 from moldgen.kernel.measure import is_valid, volume
 from moldgen.kernel.merge import merged_faces
+from moldgen.kernel.mesh_prism import outline_mesh
 from moldgen.kernel.meshsolid import MeshSolid, mesh_solid, thick_pieces, thickness
 from moldgen.kernel.rehearse import made_apart
 from moldgen.kernel.side_prism import SHORTEST, outline_prism
@@ -30,8 +32,8 @@ SAME_VOLUME = 2e-3
 ROUND_BORES = 0.03
 """Share of what the fronts add by which meshes of round walls may be wrong: sag over radius, twice."""
 
-STUBS = (0.0, 1.0)
-"""mm: how far a front that is joined to the part as it is runs on beyond the plastic inside it."""
+STUB = 1.0
+"""mm: how far a front joined to the part runs on beyond the plastic inside it, where that helps (our choice)."""
 
 
 @dataclass(frozen=True)
@@ -48,15 +50,20 @@ def filled_candidates(
     """Yield filled parts, best first, or why a rung gave none. All of what they gain lies inside the fronts."""
     served = sorted({p for front in fronts for p in front.pieces if p >= 0})
     part = mesh_solid(body.mesh)
-    for rung in ("trapped spaces filled", "fronts joined to the part", "fronts joined, run on by 1 mm"):
+    rungs: tuple[tuple[str, Callable[[], Body]], ...] = (
+        (
+            "trapped spaces filled",
+            lambda: fill_trapped(body, kinds, [trapped.pieces[p] for p in served], frame, WHY, seconds=3)[0],
+        ),
+        ("fronts joined to the part", lambda: _with_fronts(body, part, fronts, 0.0)),
+        (f"fronts joined, run on by {STUB:g} mm", lambda: _with_fronts(body, part, fronts, STUB)),
+    )
+    for rung, make in rungs:
         try:
-            if rung == "trapped spaces filled":
-                filled, _ = fill_trapped(body, kinds, [trapped.pieces[p] for p in served], frame, WHY, seconds=3)
-            else:
-                filled = _with_fronts(body, part, fronts, STUBS[1] if "run on" in rung else STUBS[0])
+            filled = make()
             outside = outside_fronts(filled, part, fronts)
         except (PartError, KernelError) as error:
-            yield f"{rung}: {_told(error)}"
+            yield f"{rung}: {error.told}"
             continue
         if outside >= OPEN_OVERLAP:
             yield f"{rung}: {outside:.3f} mm of it lie outside the fronts"
@@ -65,20 +72,16 @@ def filled_candidates(
         yield Filled(filled.like(merged_faces(filled.solid)), rung)
 
 
-def _told(error: MoldgenError) -> str:
-    return f"{error.where}: {error.what}" if error.where else error.what
-
-
 def _with_fronts(body: Body, part: MeshSolid, fronts: Sequence[Front], stub: float) -> Body:
     """Return the part with the fronts, each as far as there is plastic inside it, joined to it."""
-    solids, expected = [], part
+    solids: list[Any] = []
+    expected = part
     for front in fronts:
         end = min(front.clear + stub, front.far)
         if end - front.near < SHORTEST:  # it forms an undercut that lies open beside the part
             continue
-        for solid in outline_prism(front.outline, across(front.axis), front.near, end):
-            solids.append(solid)
-            expected = expected + mesh_solid(Body(solid).mesh)
+        solids += outline_prism(front.outline, across(front.axis), front.near, end)
+        expected = expected + outline_mesh(front.outline, across(front.axis), front.near, end)
     wanted = float(expected.volume())
     made = made_apart(lambda: fuse([copied(body.solid), *solids]))
     if len(made) != 1:
@@ -94,6 +97,5 @@ def outside_fronts(filled: Body, part: MeshSolid, fronts: Sequence[Front]) -> fl
     """Return the thickness [mm] of the thickest piece that a filled part has more than the part, outside fronts."""
     gained = mesh_solid(filled.mesh) - part
     for front in fronts:
-        for solid in outline_prism(front.outline, across(front.axis), front.near, front.far):
-            gained = gained - mesh_solid(Body(solid).mesh)
+        gained = gained - outline_mesh(front.outline, across(front.axis), front.near, front.far)
     return max((thickness(p) for p in thick_pieces(gained)), default=0.0)

@@ -15,7 +15,8 @@ from moldgen.kernel.build import backward, plane_face, plane_through, wire_of
 from moldgen.kernel.curtain import Curtain, hang_curtain
 from moldgen.kernel.land import level_land, level_lid
 from moldgen.kernel.measure import is_valid
-from moldgen.kernel.patches import filled_patch, flat_patches, host_patch, loop_points, signed_area
+from moldgen.kernel.patches import filled_patch, flat_patches, host_patch, loop_points
+from moldgen.kernel.polygon import signed_area
 from moldgen.kernel.runoff import run_off
 from moldgen.kernel.shut_off import LeastAngle, least_angle
 from moldgen.kernel.slope import sine_range

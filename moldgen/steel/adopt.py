@@ -65,9 +65,7 @@ class _Body:
 
     def meshed(self) -> MeshSolid:
         if self.mesh is None:
-            self.mesh = mesh_solid(Body(self.solids[0]).mesh)
-            for solid in self.solids[1:]:
-                self.mesh = self.mesh + mesh_solid(Body(solid).mesh)
+            self.mesh = union([mesh_solid(Body(solid).mesh) for solid in self.solids])
         return self.mesh
 
 

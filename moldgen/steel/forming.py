@@ -14,7 +14,7 @@ from moldgen.finding import Notes
 from moldgen.kernel.body import Body
 from moldgen.kernel.boolean import common, copied, cut
 from moldgen.kernel.measure import is_valid, volume
-from moldgen.kernel.mesh_prism import grown, polygons, region
+from moldgen.kernel.mesh_prism import grown, outline_mesh, polygons, region
 from moldgen.kernel.meshsolid import MeshSolid, mesh_solid, piece_mesh, thick_pieces
 from moldgen.kernel.rehearse import made_apart
 from moldgen.kernel.side_prism import outline_prism
@@ -100,15 +100,16 @@ def ways_in_turn(fronts: Sequence[Front], corners: tuple[np.ndarray, np.ndarray]
 
     They move one after the other, in the order given: the earlier must leave all of the way of the later.
     """
-    tools = [_tool(name, front, corners) for name, front in zip(side_names(fronts), fronts, strict=True)]
+    meshes = [_within(front, corners) for front in fronts]
     ways: dict[int, float] = {}
     for j, later in enumerate(fronts):
         for i, earlier in enumerate(fronts[:j]):
             if SideKind.LIFTER in (earlier.kind, later.kind) or earlier.axis == later.axis:
                 continue
-            if not _meet(tools[i], tools[j]):
+            both = meshes[i] ^ meshes[j]
+            if both.volume() <= SLACK:
                 continue
-            shared = piece_mesh(tools[i].mesh ^ tools[j].mesh).vertices @ np.asarray(earlier.axis)
+            shared = piece_mesh(both).vertices @ np.asarray(earlier.axis)
             ways[i] = max(ways.get(i, earlier.travel), float(shared.max()) - earlier.near)
             ways.setdefault(j, later.travel)
     return ways
@@ -125,31 +126,36 @@ def side_names(fronts: Sequence[Front]) -> list[str]:
 
 
 def _tool(name: str, front: Front, corners: tuple[np.ndarray, np.ndarray]) -> _Tool:
-    low, high = corners
-    frame = across(front.axis)
-    block = np.array([[(low, high)[k][i] for i, k in enumerate(bits)] for bits in np.ndindex(2, 2, 2)])
-    far = float((block @ frame[2]).max())
+    frame, far = across(front.axis), _reach(front, corners)
     square = bool(np.max(np.abs(frame[2])) > 1.0 - ALONG_AXIS)
     prisms = outline_prism(front.outline, frame, front.near, far if square else far + OUT)
     inside = prisms if square else [s for prism in prisms for s in _trimmed(prism, corners)]
     if not inside:
         raise KernelError(f"{name} lies outside the block")
-    return _Tool(name, front, tuple(inside), _joined_mesh(inside))
+    return _Tool(name, front, tuple(inside), _within(front, corners))
+
+
+def _reach(front: Front, corners: tuple[np.ndarray, np.ndarray]) -> float:
+    """Return how far the block reaches along the axis of a front [mm]."""
+    block = np.array([[corners[k][i] for i, k in enumerate(bits)] for bits in np.ndindex(2, 2, 2)])
+    return float((block @ np.asarray(front.axis)).max())
+
+
+def _outline_of(corners: tuple[np.ndarray, np.ndarray]) -> np.ndarray:
+    """Return the block in plan, (4, 2) [mm]."""
+    low, high = corners
+    return np.array([[low[0], low[1]], [high[0], low[1]], [high[0], high[1]], [low[0], high[1]]])
 
 
 def _trimmed(prism: Any, corners: tuple[np.ndarray, np.ndarray]) -> list[Any]:
-    low, high = corners
-    rectangle = np.array([[low[0], low[1]], [high[0], low[1]], [high[0], high[1]], [low[0], high[1]]])
-    block = outline_prism([rectangle], np.eye(3), float(low[2]), float(high[2]))[0]
+    block = outline_prism([_outline_of(corners)], np.eye(3), float(corners[0][2]), float(corners[1][2]))[0]
     return common(prism, block)
 
 
-def _joined_mesh(solids: Sequence[Any]) -> MeshSolid:
-    meshes = [mesh_solid(Body(s).mesh) for s in solids]
-    total = meshes[0]
-    for mesh in meshes[1:]:
-        total = total + mesh
-    return total
+def _within(front: Front, corners: tuple[np.ndarray, np.ndarray]) -> MeshSolid:
+    """Return a front inside the block as a mesh, without asking the kernel: it is judged by this."""
+    block = outline_mesh([_outline_of(corners)], np.eye(3), float(corners[0][2]), float(corners[1][2]))
+    return outline_mesh(front.outline, across(front.axis), front.near, _reach(front, corners) + OUT) ^ block
 
 
 def _meet(one: _Tool, other: _Tool) -> bool:

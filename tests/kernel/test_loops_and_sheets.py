@@ -14,7 +14,8 @@ from moldgen.kernel.edge_split import split_edges
 from moldgen.kernel.loops import boundary_loops
 from moldgen.kernel.measure import area, is_valid, volume
 from moldgen.kernel.mesh import surface_mesh, tessellate
-from moldgen.kernel.patches import filled_patch, flat_patches, host_patch, loop_points, signed_area
+from moldgen.kernel.patches import filled_patch, flat_patches, host_patch, loop_points
+from moldgen.kernel.polygon import signed_area
 from moldgen.kernel.runoff import extreme_parameters, run_off
 from moldgen.kernel.shells import solid_from_faces
 from moldgen.kernel.topology import edge_points, edges_of, vertex_point, vertices_of

@@ -15,7 +15,8 @@ from moldgen.kernel.land_plan import self_crossing
 from moldgen.kernel.loops import boundary_loops
 from moldgen.kernel.measure import area, is_valid
 from moldgen.kernel.mesh import surface_mesh, tessellate
-from moldgen.kernel.patches import loop_points, signed_area
+from moldgen.kernel.patches import loop_points
+from moldgen.kernel.polygon import signed_area
 from moldgen.kernel.shut_off import least_angle
 
 CORNERS = np.array([-60.0, -60.0, -40.0]), np.array([60.0, 60.0, 40.0])
