@@ -172,7 +172,7 @@ def _accepted(reviewed: Reviewed, halves: Halves) -> Notes:
         if finding.code != "release.trapped":
             return finding
         if halves.sides:
-            return replace(finding, severity=Severity.NOTE, remedy="a side action forms it, see the decisions")
+            return replace(finding, severity=Severity.NOTE, remedy="nothing: a side action forms it, see the decisions")
         return replace(finding, severity=Severity.WARNING)
 
     return replace(reviewed.notes, findings=tuple(settled(f) for f in reviewed.notes.findings))

@@ -63,7 +63,7 @@ def _decisions(fronts: Sequence[Front], prepared: Prepared, frame: MoldFrame) ->
             Decision(
                 topic="side action",
                 choice=f"{name} along {way}, {front.travel:.2f} mm to clear",
-                why=f"forms {len(front.pieces)} undercuts at {places}{more}",
+                why=f"forms {len(front.pieces)} undercut{'s' if len(front.pieces) > 1 else ''} at {places}{more}",
                 rung=front.rung,
             )
         )

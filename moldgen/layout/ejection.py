@@ -86,8 +86,12 @@ def ejector_stroke(view: PartView, section: Ejection) -> tuple[float, Notes]:
     needed = ejection_stroke_pye.line("ejector stroke", depth)
     lines: tuple[Quantity, ...] = (measured("depth of the part on the core", depth, "mm", "ejector stroke"), needed)
     if section.stroke is None:
+        own = float(math.ceil(needed.value))
         lifters = max((side.front.stroke for side in view.halves.sides), default=0.0)
-        return max(float(math.ceil(needed.value)), lifters), Notes(quantities=lines)
+        if lifters > own:
+            how = "the whole height of the part, and 10 mm: the most that is common practice"
+            lines += (measured("stroke that the lifters are made for", lifters, "mm", "ejector stroke", how=how),)
+        return max(own, lifters), Notes(quantities=lines)
     lines += (given_line("ejector stroke", section.stroke, "mm", "ejector stroke", where="ejection.stroke"),)
     if section.stroke >= needed.value - 1e-9:
         return section.stroke, Notes(quantities=lines)

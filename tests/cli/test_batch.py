@@ -8,8 +8,6 @@ from __future__ import annotations
 import csv
 import io
 import json
-import os
-import pty
 import re
 import signal
 import subprocess
@@ -19,7 +17,7 @@ from pathlib import Path
 
 import psutil
 import pytest
-from helpers.command import environment, moldgen, moldgen_command
+from helpers.command import environment, moldgen, moldgen_command, on_terminal
 from helpers.outputs import table
 
 from moldgen.errors import ExitCode
@@ -314,18 +312,8 @@ def test_json_is_one_object_a_part(tmp_path: Path) -> None:
 @pytest.mark.parametrize("columns", [80, 120, 180])
 def test_on_a_terminal_no_line_is_wider_than_it(columns: int, tmp_path: Path) -> None:
     command = moldgen_command("batch", *specs(tmp_path, "well", "good", "part_error"), job="by_name")
-    ours, its = pty.openpty()
-    settings = environment() | {"TERM": "xterm", "COLUMNS": str(columns), "NO_COLOR": "1"}
-    with subprocess.Popen(command, cwd=tmp_path, env=settings, stdout=its, stderr=its) as process:
-        os.close(its)
-        seen = b""
-        try:
-            while block := os.read(ours, 4096):
-                seen += block
-        except OSError:  # how Linux says that the other end is closed
-            pass
-        os.close(ours)
-    assert process.returncode == 3
+    code, seen = on_terminal(command, tmp_path, COLUMNS=str(columns), NO_COLOR="1")
+    assert code == 3
     text = seen.decode("utf-8").replace("\r", "")
     assert "of 3 parts" in text
     assert "\x1b[" in text

@@ -4,14 +4,13 @@ from __future__ import annotations
 
 import json
 import os
-import pty
 import re
 import subprocess
 import sys
 from pathlib import Path
 
 import pytest
-from helpers.command import TESTS, environment, moldgen, moldgen_command
+from helpers.command import TESTS, environment, moldgen, moldgen_command, on_terminal
 
 from moldgen.errors import ExitCode
 
@@ -122,20 +121,9 @@ def test_progress_is_plain_lines_off_a_terminal_and_none_when_quiet(tmp_path: Pa
 
 def test_progress_on_a_terminal_is_live(tmp_path: Path) -> None:
     (tmp_path / "lid.yaml").touch()
-    ours, its = pty.openpty()
     command = moldgen_command("build", "lid.yaml", job="good")
-    with subprocess.Popen(
-        command, cwd=tmp_path, env=environment() | {"TERM": "xterm"}, stdout=subprocess.DEVNULL, stderr=its
-    ) as process:
-        os.close(its)
-        seen = b""
-        try:
-            while block := os.read(ours, 4096):
-                seen += block
-        except OSError:  # how Linux says that the other end is closed
-            pass
-        os.close(ours)
-    assert process.returncode == 1
+    code, seen = on_terminal(command, tmp_path, stdout=False)
+    assert code == 1
     assert b"split the faces: 12 faces (" in seen
     assert b"\x1b[" in seen
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import pty
 import subprocess
 import sys
 from pathlib import Path
@@ -20,6 +21,23 @@ def environment() -> dict[str, str]:
     """Our environment, with the checkout and its tests importable."""
     paths = [str(TESTS), str(TESTS.parent), os.environ.get("PYTHONPATH", "")]
     return os.environ | {"PYTHONPATH": os.pathsep.join(p for p in paths if p), "COLUMNS": "100"}
+
+
+def on_terminal(command: list[str], folder: Path, *, stdout: bool = True, **variables: str) -> tuple[int, bytes]:
+    """Run a command with a terminal at its stderr (and stdout); return its exit code and what the terminal got."""
+    ours, its = pty.openpty()
+    settings = environment() | {"TERM": "xterm"} | variables
+    out = its if stdout else subprocess.DEVNULL
+    with subprocess.Popen(command, cwd=folder, env=settings, stdout=out, stderr=its) as process:
+        os.close(its)
+        seen = b""
+        try:
+            while block := os.read(ours, 4096):
+                seen += block
+        except OSError:  # how Linux says that the other end is closed
+            pass
+        os.close(ours)
+    return process.returncode, seen
 
 
 def moldgen(
