@@ -71,6 +71,16 @@ class Body:
         self.edge_faces = np.array(pairs, dtype=int).reshape(-1, 2)
         """The two faces of each edge, (m, 2) int."""
 
+    def __getstate__(self) -> dict[str, Any]:
+        """Return what `moldgen.kernel.frozen` keeps: the rest follows from it, but another mesh could come out."""
+        return {"solid": self.solid, "fineness": (self._deflection, self._angle), "mesh": self.__dict__.get("mesh")}
+
+    def __setstate__(self, state: dict[str, Any]) -> None:
+        """Begin anew with the solid."""
+        self.__init__(state["solid"], *state["fineness"])  # type: ignore[misc]
+        if state["mesh"] is not None:
+            self.__dict__["mesh"] = state["mesh"]
+
     def like(self, solid: TopoDS_Shape) -> Body:
         """Return a body of another solid, meshed as finely as this one."""
         return Body(solid, self._deflection, self._angle)

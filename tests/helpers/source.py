@@ -11,7 +11,7 @@ CHECKOUT = Path(__file__).resolve().parents[2]
 PACKAGE = CHECKOUT / "moldgen"
 
 FLOORS: dict[str, int] = {
-    **dict.fromkeys(["", "errors", "units", "tolerances", "quantity", "finding", "canon", "tether"], 0),
+    **dict.fromkeys(["", "errors", "units", "tolerances", "quantity", "finding", "canon", "tether", "memory"], 0),
     **dict.fromkeys(["catalog", "rules", "model"], 1),
     "spec": 2,
     "kernel": 3,

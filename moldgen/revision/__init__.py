@@ -1,0 +1,1 @@
+"""Two versions of a part and its tool, laid onto each other."""
