@@ -65,7 +65,7 @@ class PartChange:
 
     feature : "boss d 8", "hole d 4", "rib 1.2 thick", "flat face", ...: for the reader
     old_faces, new_faces : numbers in the old and new part, in the kernel's order
-    at, box : a point on it and its box in the new part's coordinates [mm]; of the old feature, aligned, where it is gone
+    at, box : a point on it and its box in the new part's coordinates [mm]; where it is gone, of the old one, aligned
     shift : how far it moved [mm], for MOVED
     was, now : the size or draft that changed, with its unit, for the reader ("d 4 mm", "1.5 deg"); "" otherwise
     """
