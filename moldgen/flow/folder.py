@@ -110,7 +110,7 @@ def clear_leftovers(final: Path) -> None:
     pattern = re.compile(re.escape(f".{final.name}.") + r"(new|old)-(\d+)")
     for path in sorted(final.parent.iterdir()):
         match = pattern.fullmatch(path.name)
-        if match is None or _alive(int(match[2])):
+        if match is None or alive(int(match[2])):
             continue
         if match[1] == "old" and not os.path.lexists(final):
             path.rename(final)
@@ -218,7 +218,8 @@ def is_output(folder: Path) -> bool:
     return isinstance(manifest, dict) and MANIFEST_KEY in manifest
 
 
-def _alive(pid: int) -> bool:
+def alive(pid: int) -> bool:
+    """True if a process of that number lives, and is not this one."""
     if pid == os.getpid():
         return False  # an earlier process of the same number: we clear up before we make anything
     try:
