@@ -313,9 +313,8 @@ def _write(folder: Path, path: Path, key: str, data: bytes) -> None:
             stream.write(data)
         path.parent.mkdir(mode=0o700, parents=True, exist_ok=True)
         Path(name).replace(path)
-    except BaseException:
+    finally:
         _drop(Path(name))
-        raise
 
 
 def _read(path: Path, key: str) -> bytes | None:
