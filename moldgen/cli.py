@@ -150,6 +150,23 @@ def batch(inputs: tuple[Path, ...], output: Path, jobs: int | None, only_check: 
 
 
 @cli.command()
+@click.option("--clear", is_flag=True, help="Forget everything that is kept.")
+@click.option("--json", "as_json", is_flag=True, help=_ONE_DOCUMENT)
+def cache(clear: bool, as_json: bool) -> None:
+    """Show what is kept for later runs: where, how much, and at most how much.
+
+    Nothing of it is needed: what is cleared is made again when it is asked for.
+    """
+    from moldgen.flow.cache import cache_json, cache_lines, look_at_cache  # noqa: PLC0415  --help needs none of it
+
+    look = look_at_cache(clear=clear)
+    if as_json:
+        _echo_json(cache_json(look))
+    else:
+        click.echo("\n".join(cache_lines(look)))
+
+
+@cli.command()
 def schema() -> None:
     """Print the JSON Schema of a spec, for editors."""
     from moldgen.spec.describe import json_schema  # noqa: PLC0415  pydantic takes its time to import

@@ -26,7 +26,6 @@ from moldgen.canon import sha256_bytes
 from moldgen.errors import SpecError
 from moldgen.finding import Finding, Severity
 from moldgen.flow.folder import alive
-from moldgen.memory import Memory
 
 PLACE, SIZE = "MOLDGEN_CACHE", "MOLDGEN_CACHE_SIZE"
 """Environment variables: the folder of the cache, or ``off``; its limit [GiB]."""
@@ -189,14 +188,12 @@ class Store:
         size = sum(found.size for found in (*entries, *notes))
         return Summary(str(self.folder or ""), len(entries), len(notes), size, self.limit_bytes, self.why_not)
 
-    def clear(self) -> Summary:
-        """Forget everything, and return what was held. What another run is just writing stays."""
-        held = self.summary()
+    def clear(self) -> None:
+        """Forget everything. What another run is just writing stays."""
         for found in (*self._entries(), *self._notes()):
             _drop(found.path)
         self._drop_leftovers()
         self._size = None
-        return held
 
     def _entry(self, key: str) -> Path | None:
         if len(key) != 64 or not set(key) <= set("0123456789abcdef"):
@@ -245,30 +242,6 @@ class Store:
         return _files(self.folder / "aside") if self.folder is not None else iter(())
 
 
-class Shelf:
-    """A part of a memory whose keys also hang on `base`: versions of code and kernel, for those that know none.
-
-    recalled, missed : how often it was asked and had it, or had it not
-    """
-
-    def __init__(self, memory: Memory, base: str) -> None:
-        self._memory, self._base = memory, base
-        self.recalled, self.missed = 0, 0
-
-    def recall(self, key: str) -> bytes | None:
-        """Return what was kept under `key` on this shelf, None if nothing was, or if it is lost."""
-        data = self._memory.recall(self._key(key))
-        self.recalled, self.missed = self.recalled + (data is not None), self.missed + (data is None)
-        return data
-
-    def keep(self, key: str, data: bytes) -> None:
-        """Keep `data` under `key` on this shelf."""
-        self._memory.keep(self._key(key), data)
-
-    def _key(self, key: str) -> str:
-        return sha256_bytes(f"{self._base}\n{key}".encode())
-
-
 @dataclass(frozen=True)
 class _Found:
     """A file of a store, what it takes on disk [bytes], and when it was used last [ns]."""
@@ -305,13 +278,13 @@ def _blocks(size: int) -> int:
 def _write(folder: Path, path: Path, key: str, data: bytes) -> None:
     """Write a file of a store that is there whole or not at all. Raises OSError."""
     aside = folder / "aside"
-    aside.mkdir(mode=0o700, parents=True, exist_ok=True)
+    for place in (folder, aside, path.parents[1], path.parent):
+        place.mkdir(mode=0o700, exist_ok=True)
     handle, name = tempfile.mkstemp(prefix=f"{os.getpid()}-", dir=aside)  # unique also among threads and hosts
     try:
         with os.fdopen(handle, "wb") as stream:
             stream.write(_HEAD.pack(_MAGIC, bytes.fromhex(key), len(data), hashlib.sha256(data).digest()))
             stream.write(data)
-        path.parent.mkdir(mode=0o700, parents=True, exist_ok=True)
         Path(name).replace(path)
     finally:
         _drop(Path(name))
