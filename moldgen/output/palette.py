@@ -66,6 +66,12 @@ PARTING_LINE = Ink(rgb("CC3311"), "parting line", "parting lines")  # vibrant re
 GATE = Ink(rgb("AA3377"), "gate", "gates")  # bright purple
 PULL = Ink(rgb("332288"), "pull (cavity half opens)", "pull")  # muted indigo
 
+STEEL = Ink(rgb("B8BEC5"), "steel of the new tool", "steel of the new tool")  # grey
+CUT = Ink(rgb("D55E00"), "cut: steel that must go", "cut: steel that must go")  # vermilion
+WELD = Ink(rgb("2244CC"), "weld or insert: steel that is missing", "weld or insert: steel that is missing")  # blue
+"""The comparison of two tools. Our choice: orange against blue keeps apart for colour-blind readers, and both stand off
+from grey (checked by a test). They never meet the colours of the roles in one picture."""
+
 PAPER: Rgb = rgb("FCFCFD")
 TEXT: Rgb = rgb("22262B")
 QUIET_TEXT: Rgb = rgb("5E666F")

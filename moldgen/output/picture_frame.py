@@ -33,18 +33,28 @@ class Mark:
 
 def draw_frame(canvas: Canvas, scene: Scene, subject: str, marks: Sequence[Mark], px_per_mm: float) -> None:
     """Draw title line, legend, scale bar and caution around the panels."""
-    width, height = SIZE
-    canvas.text((24.0, height - 32.0), _short(scene.name, 36), 25, bold=True)
     facts = [f"resin {scene.resin}" if scene.resin else "", f"pull {scene.pull}" if scene.pull else ""]
-    canvas.text((24.0, height - 63.0), _short(", ".join(f for f in facts if f), 80), 15, colour=palette.QUIET_TEXT)
+    draw_title(canvas, scene.name, ", ".join(f for f in facts if f), subject)
+    draw_legend(canvas, marks)
+    draw_scale_bar(canvas, px_per_mm, (24.0, 24.0))
+    canvas.text((SIZE[0] - 24.0, 28.0), CAUTION, 14, colour=palette.QUIET_TEXT, align="right")
+
+
+def draw_title(canvas: Canvas, name: str, facts: str, subject: str) -> None:
+    """Draw the lines above the panels: a name with facts below it on the left, what the sheet shows on the right."""
+    width, height = SIZE
+    canvas.text((24.0, height - 32.0), _short(name, 36), 25, bold=True)
+    canvas.text((24.0, height - 63.0), _short(facts, 80), 15, colour=palette.QUIET_TEXT)
     canvas.text((width - 24.0, height - 34.0), _short(subject, 96), 17, align="right")
     canvas.line([(24.0, height - 84.0), (width - 24.0, height - 84.0)], palette.RULE, 1.0)
-    y = height - 116.0
+
+
+def draw_legend(canvas: Canvas, marks: Sequence[Mark]) -> None:
+    """Draw the legend in the column left of the panels."""
+    y = SIZE[1] - 116.0
     for mark in marks:
         _legend_row(canvas, mark, y)
         y -= 30.0
-    _scale_bar(canvas, px_per_mm)
-    canvas.text((width - 24.0, 28.0), CAUTION, 14, colour=palette.QUIET_TEXT, align="right")
 
 
 def _legend_row(canvas: Canvas, mark: Mark, y: float) -> None:
@@ -59,10 +69,10 @@ def _legend_row(canvas: Canvas, mark: Mark, y: float) -> None:
     canvas.text((x1 + 10.0, y), mark.words, 15)
 
 
-def _scale_bar(canvas: Canvas, px_per_mm: float) -> None:
-    """Draw a bar of a round length (1, 2 or 5 times a power of ten) between 70 and 200 px."""
-    length = scale_length(px_per_mm)
-    x0, y = 24.0, 24.0
+def draw_scale_bar(canvas: Canvas, px_per_mm: float, at: tuple[float, float], most_px: float = 200.0) -> None:
+    """Draw a bar of a round length (1, 2 or 5 times a power of ten) from `at` [px], at most `most_px` long."""
+    length = scale_length(px_per_mm, most_px)
+    x0, y = at
     x1 = x0 + length * px_per_mm
     canvas.rectangle((x0, y - 3.0, x1, y + 3.0), palette.TEXT)
     canvas.rectangle(((x0 + x1) / 2.0, y - 2.0, x1 - 1.0, y + 2.0), palette.PAPER)
@@ -71,9 +81,9 @@ def _scale_bar(canvas: Canvas, px_per_mm: float) -> None:
     canvas.text((x1 + 10.0, y), f"{length:g} mm", 15)
 
 
-def scale_length(px_per_mm: float) -> float:
-    """Return the largest of 1, 2, 5 times a power of ten [mm] that takes at most 200 px."""
-    room = 200.0 / px_per_mm
+def scale_length(px_per_mm: float, most_px: float = 200.0) -> float:
+    """Return the largest of 1, 2, 5 times a power of ten [mm] that takes at most `most_px`."""
+    room = most_px / px_per_mm
     power = 10.0 ** np.floor(np.log10(room))
     return float(max(step * power for step in (1.0, 2.0, 5.0) if step * power <= room * (1.0 + 1e-9)))
 

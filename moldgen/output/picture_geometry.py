@@ -16,6 +16,10 @@ SIZE = (1400, 1000)
 """Width and height of a picture [px]."""
 
 
+SHARP = np.cos(np.radians(20.0))
+"""Edges between faces whose facets turn by less are smooth, and not drawn."""
+
+
 @dataclass(frozen=True)
 class Shaded:
     """A mesh whose vertices are split along face borders, so that each face is shaded smoothly by itself.
@@ -99,6 +103,23 @@ def outline(body: SceneBody, view: View) -> Points:
     smooth = body.face_id[owner[pair]] == body.face_id[owner[pair + 1]]
     segments: Points = points[edges[pair[turns & smooth]]]
     return segments
+
+
+def sharp_edges(points: Points, triangles: Indices, face: Indices) -> tuple[Points, ...]:
+    """Return the edges between different faces that meet at an angle, each a segment (2, 3) [mm].
+
+    points : (n, 3), shared by triangles that touch; triangles : (m, 3); face : (m,) what each triangle belongs to
+    """
+    normal = _area_normals(points, triangles)
+    normal /= np.maximum(np.linalg.norm(normal, axis=1), 1e-300)[:, None]
+    ends = np.sort(np.vstack([triangles[:, [0, 1]], triangles[:, [1, 2]], triangles[:, [2, 0]]]), axis=1)
+    owner = np.tile(np.arange(len(triangles)), 3)
+    order = np.lexsort((ends[:, 1], ends[:, 0]))
+    ends, owner = ends[order], owner[order]
+    pair = np.flatnonzero((np.diff(ends, axis=0) == 0).all(axis=1))
+    a, b = owner[pair], owner[pair + 1]
+    sharp = (face[a] != face[b]) & ((normal[a] * normal[b]).sum(axis=1) < SHARP)
+    return tuple(points[ends[pair[sharp]]])
 
 
 def is_hidden(point: Vector, bodies: Sequence[SceneBody], view: View) -> bool:

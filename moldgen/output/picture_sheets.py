@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
-from pathlib import Path
 from types import MappingProxyType
 
 import numpy as np
@@ -176,13 +175,6 @@ PICTURES: Mapping[str, Callable[[Scene, Canvas], None]] = MappingProxyType(
     }
 )
 """Every picture and how it is drawn."""
-
-
-def draw_picture(scene: Scene, canvas: Canvas, draw: Callable[[Scene, Canvas], None], path: Path) -> None:
-    """Draw one picture on a cleared `canvas` and write it to `path`."""
-    canvas.clear()
-    draw(scene, canvas)
-    canvas.save(path)
 
 
 def _side_colours(body: SceneBody, sides: np.ndarray) -> np.ndarray:

@@ -17,12 +17,17 @@ import shutil
 import subprocess
 import sys
 import tempfile
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import partial
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from moldgen.errors import StageError
 from moldgen.output.scene import Scene, read_scene, write_scene
+
+if TYPE_CHECKING:
+    from moldgen.output.picture_canvas import Canvas
 
 FILES = ("part.png", "closed.png", "open.png", "section.png")
 """The pictures of a build, in order."""
@@ -112,11 +117,25 @@ def start_pictures(scene: Scene, folder: Path, *, command: Sequence[str] | None 
     """
     if not scene.of_role("part"):
         raise StageError("the scene for the pictures has no body with the role 'part'", where=scene.name)
+    painter = list(command) if command is not None else [sys.executable, "-m", "moldgen.output.pictures"]
+    return start_painter(painter, file_names(scene), folder, lambda file: write_scene(scene, file))
+
+
+def start_painter(
+    painter: Sequence[str], names: Sequence[str], folder: Path, write: Callable[[Path], None]
+) -> PictureJob:
+    """Start a painter of the pictures `names` in `folder` (made if absent) and return at once.
+
+    `write` writes what is to be drawn to the file that it is given; that file and the folder are appended to `painter`.
+
+    Raises
+    ------
+    OSError : the folder or the file cannot be written
+    """
     folder.mkdir(parents=True, exist_ok=True)
     workplace = Path(tempfile.mkdtemp(prefix="moldgen-pictures-"))
     scene_file = workplace / "scene.npz"
-    write_scene(scene, scene_file)
-    painter = list(command) if command is not None else [sys.executable, "-m", "moldgen.output.pictures"]
+    write(scene_file)
     process = subprocess.Popen(  # noqa: S603  (our own interpreter and module)
         [*painter, str(scene_file), str(folder)],
         stdin=subprocess.DEVNULL,
@@ -126,7 +145,7 @@ def start_pictures(scene: Scene, folder: Path, *, command: Sequence[str] | None 
         errors="replace",
         env=_environment(),
     )
-    return PictureJob(process, file_names(scene), folder, workplace)
+    return PictureJob(process, names, folder, workplace)
 
 
 def render_pictures(scene: Scene, folder: Path, *, command: Sequence[str] | None = None) -> PictureResult:
@@ -178,18 +197,27 @@ def main(arguments: Sequence[str]) -> int:
     if len(arguments) != 2:
         sys.stderr.write("usage: python -m moldgen.output.pictures SCENE FOLDER\n")
         return WRONG_ARGUMENTS
-    from moldgen.output.picture_canvas import Canvas  # noqa: PLC0415  (vtk, and only in the child)
-    from moldgen.output.picture_sheets import PICTURES, draw_picture  # noqa: PLC0415
+    from moldgen.output.picture_sheets import PICTURES  # noqa: PLC0415  (vtk, and only in the child)
 
-    scene, folder = read_scene(Path(arguments[0])), Path(arguments[1])
+    scene = read_scene(Path(arguments[0]))
+    sheets = [(name, partial(PICTURES[name], scene)) for name in file_names(scene)]
+    return paint(sheets, Path(arguments[1]))
+
+
+def paint(sheets: Sequence[tuple[str, Callable[[Canvas], None]]], folder: Path) -> int:
+    """Draw `sheets`, each a file name and what draws it, into `folder`: the child's part. Return the exit code."""
+    from moldgen.output.picture_canvas import Canvas  # noqa: PLC0415  (vtk, and only in the child)
+
     canvas = Canvas()
     if not canvas.draws():
         return NO_WINDOW
     sys.stdout.write(WINDOW_READY + "\n")
     sys.stdout.flush()
-    for name in file_names(scene):
+    for name, draw in sheets:
         aside = _aside(folder, name)
-        draw_picture(scene, canvas, PICTURES[name], aside)
+        canvas.clear()
+        draw(canvas)
+        canvas.save(aside)
         aside.replace(folder / name)
         sys.stdout.write(f"wrote {name}\n")
         sys.stdout.flush()

@@ -15,10 +15,8 @@ from moldgen.model.part import Vector
 from moldgen.model.side_action import SideKind
 from moldgen.model.tool import Component, Motion, Role, Tool
 from moldgen.output.formed_by import formed_by
+from moldgen.output.picture_geometry import sharp_edges
 from moldgen.output.scene import Scene, SceneBody
-
-SHARP = np.cos(np.radians(20.0))
-"""Edges between faces whose facets turn by less are smooth, and not drawn."""
 
 LEVEL = 1e-6
 """mm: heights closer than this are one."""
@@ -64,18 +62,7 @@ def tool_scene(tool: Tool, halves: Halves, title: tuple[str, str, str], gate: Ve
 
 def feature_segments(mesh: SurfaceMesh) -> tuple[np.ndarray, ...]:
     """Return the mesh edges between different faces that meet at an angle, each a segment (2, 3)."""
-    corners = mesh.corners
-    normal = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
-    normal /= np.maximum(np.linalg.norm(normal, axis=1), 1e-300)[:, None]
-    t = mesh.triangles
-    ends = np.sort(np.vstack([t[:, [0, 1]], t[:, [1, 2]], t[:, [2, 0]]]), axis=1)
-    owner = np.tile(np.arange(len(t)), 3)
-    order = np.lexsort((ends[:, 1], ends[:, 0]))
-    ends, owner = ends[order], owner[order]
-    pair = np.flatnonzero((np.diff(ends, axis=0) == 0).all(axis=1))
-    a, b = owner[pair], owner[pair + 1]
-    sharp = (mesh.face[a] != mesh.face[b]) & ((normal[a] * normal[b]).sum(axis=1) < SHARP)
-    return tuple(mesh.vertices[ends[pair[sharp]]])
+    return sharp_edges(mesh.vertices, mesh.triangles, mesh.face)
 
 
 def half_way(steps: Sequence[Step]) -> tuple[float, ...]:
