@@ -96,11 +96,15 @@ def check(spec: Path, output: Path | None, allow_code: bool, **how: Any) -> None
 @click.option("--output", type=Path, help="The output folder.  [default: as the spec says, else out/NAME]")
 @_allow_code
 @click.option("--no-pictures", is_flag=True, help="Leave out the pictures.")
+@click.option("--explain", is_flag=True, help="Say of each stage why it ran, or why it need not.")
 @_shared
-def build(spec: Path, output: Path | None, allow_code: bool, no_pictures: bool, **how: Any) -> None:
-    """Build and prove the tool of SPEC, and write it as STEP with its tables and pictures."""
+def build(spec: Path, output: Path | None, no_pictures: bool, explain: bool, **how: Any) -> None:
+    """Build and prove the tool of SPEC, and write it as STEP with its tables and pictures.
+
+    What has not changed since an earlier run is kept, and where nothing has, nothing is done.
+    """
     _existing(spec, "spec")
-    options = Options(allow_code=allow_code, pictures=not no_pictures)
+    options = Options(allow_code=how.pop("allow_code"), pictures=not no_pictures, explain=explain)
     _finish(Job(JobKind.BUILD, spec, output, options), _How(**how))
 
 

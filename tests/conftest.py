@@ -9,6 +9,8 @@ import pytest
 
 CHECKOUT = Path(__file__).resolve().parents[1]
 
+os.environ["MOLDGEN_CACHE"] = "off"  # tests see what is computed now; those of the cache name a folder of their own
+
 
 @pytest.fixture(scope="session")
 def real_parts() -> Path:

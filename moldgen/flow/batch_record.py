@@ -4,16 +4,16 @@ from __future__ import annotations
 
 import json
 from dataclasses import asdict, dataclass
-from functools import cache
 from pathlib import Path
 from typing import Any
 
 import moldgen
-from moldgen.canon import sha256_bytes, sha256_file, sha256_json, to_json
+from moldgen.canon import sha256_file, sha256_json, to_json
 from moldgen.errors import ExitCode, SpecError
 from moldgen.flow.batch_row import Row
 from moldgen.flow.folder import MANIFEST, replace_file
 from moldgen.flow.job import Job, Limits
+from moldgen.flow.versions import program_sha256
 
 RECORD = "batch.json"
 RECORD_KEY = "moldgen batch"
@@ -115,16 +115,9 @@ def job_key(job: Job) -> str:
             "source_sha256": sha256_file(job.source),
             "options": job.options,
             "moldgen": moldgen.__version__,
-            "program_sha256": _program(),
+            "program_sha256": program_sha256(),
         }
     )
-
-
-@cache
-def _program() -> str:
-    top = Path(moldgen.__file__).parent
-    files = sorted(p for p in top.rglob("*") if p.suffix in (".py", ".yaml"))
-    return sha256_json({p.relative_to(top).as_posix(): sha256_bytes(p.read_bytes()) for p in files})
 
 
 def _read(folder: Path) -> dict[str, Any]:

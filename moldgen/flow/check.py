@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from pathlib import Path
 
 from moldgen.canon import to_json
@@ -9,8 +10,9 @@ from moldgen.flow.folder import MANIFEST
 from moldgen.flow.job import JobResult, Table, verdict_code
 from moldgen.flow.record import notes_record, review_record
 from moldgen.flow.review import Reviewed, review
-from moldgen.flow.tell import Tell
+from moldgen.flow.stages import Stages
 from moldgen.flow.words import point_text, spec_direction
+from moldgen.spec.declared import located_notes
 from moldgen.spec.load import LoadedSpec
 
 MOST_ROWS = 20
@@ -20,9 +22,10 @@ MOST_PULLS = 5
 """Pulls on the terminal; the manifest has the others, with the reasons."""
 
 
-def check_part(loaded: LoadedSpec, folder: Path, tell: Tell) -> JobResult:
+def check_part(loaded: LoadedSpec, folder: Path, stages: Stages) -> JobResult:
     """Review the part and write the manifest of the review into `folder`."""
-    reviewed = review(loaded, tell)
+    reviewed = review(loaded, stages)
+    reviewed = replace(reviewed, notes=located_notes(reviewed.notes, loaded))
     record = {**review_record(reviewed), **notes_record(reviewed.notes)}
     (folder / MANIFEST).write_text(to_json(record), encoding="utf-8")
     code = verdict_code(reviewed.notes.findings)

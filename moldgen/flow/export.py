@@ -50,8 +50,13 @@ def export_tool(tool: Tool, folder: Path, schema: str) -> Beside[None]:
 
 def file_record(tool: Tool, folder: Path) -> dict[str, str]:
     """Return the SHA-256 of each STEP file and table that was written of a tool, by its path in the output folder."""
+    return {path: sha256_bytes((folder / path).read_bytes()) for path in exported_files(tool)}
+
+
+def exported_files(tool: Tool) -> list[str]:
+    """Return the STEP files and tables of a tool by their path in the output folder, sorted."""
     paths = sorted([Path(TOOL_FILE), Path(PARTS_LIST), Path(HOLES), *component_files(tool).values()])
-    return {path.as_posix(): sha256_bytes((folder / path).read_bytes()) for path in paths}
+    return [path.as_posix() for path in paths]
 
 
 def reread_bodies(tool: Tool, folder: Path) -> list[ProofBody]:

@@ -27,11 +27,16 @@ class JobKind(StrEnum):
 
 @dataclass(frozen=True)
 class Options:
-    """What the command line adds to a job. `resin` is for `new` only; "" leaves the choice to the starter spec."""
+    """What the command line adds to a job.
+
+    resin : for `new` only; "" leaves the choice to the starter spec
+    explain : whether the result says why each stage ran
+    """
 
     allow_code: bool = False
     pictures: bool = True
     resin: str = ""
+    explain: bool = False
 
 
 @dataclass(frozen=True)

@@ -7,10 +7,13 @@ from contextlib import contextmanager
 from dataclasses import replace
 from pathlib import Path
 
-from moldgen.errors import SpecError
+from moldgen.errors import MoldgenError, SpecError
 from moldgen.flow.folder import fresh_folder, write_new_file
-from moldgen.flow.job import Job, JobKind, JobResult
+from moldgen.flow.job import Job, JobKind, JobResult, Options, Table
+from moldgen.flow.store import Store, open_store
 from moldgen.flow.tell import Tell
+from moldgen.flow.unchanged import UNCHANGED, build_key, remember, stage_table, unchanged
+from moldgen.spec.declared import located
 from moldgen.spec.load import LoadedSpec, load_spec
 from moldgen.spec.schema import Spec
 
@@ -22,16 +25,34 @@ OUT = Path("out")
 
 
 def build(job: Job, tell: Tell) -> JobResult:
-    """From a spec to a proved tool in the output folder."""
+    """From a spec to a proved tool in the output folder; nothing is done where nothing has changed."""
     loaded, final = _loaded(job, "")
     tell.output(final)
+    store, options = open_store(), job.options
+    key = build_key(loaded, options)
+    same = unchanged(key, final, store)
+    if same is not None:
+        explained = stage_table({"all": f"kept: {UNCHANGED}"})
+        return _with_tables(replace(same, output=final), options, explained, store)
     with fresh_folder(final, inputs=_inputs(loaded), tell=tell) as aside:
         with tell.stage(LOADING):
             from moldgen.flow.build import build_tool  # noqa: PLC0415
+            from moldgen.flow.stages import Stages, reasons, runs_as_text, runs_from_text  # noqa: PLC0415
 
+        stages, last = Stages(store, tell), f"stages of {final.absolute()}"
+        before = runs_from_text(store.noted(last))
         with _located(loaded):
-            result = build_tool(loaded, aside, job.options, tell)
-    return replace(result, output=final)
+            result = build_tool(loaded, aside, options, stages)
+    remember(key, final, result, store)
+    store.note(last, runs_as_text(stages.runs))
+    explained = stage_table(reasons(stages.runs, before))
+    return _with_tables(replace(result, output=final), options, explained, store)
+
+
+def _with_tables(result: JobResult, options: Options, explained: Table, store: Store) -> JobResult:
+    """Return a result with what is for the reader of this run alone: why stages ran, and troubles of the store."""
+    tables = (*result.tables, explained) if options.explain else result.tables
+    return replace(result, tables=tables, findings=(*result.findings, *store.findings()))
 
 
 def check(job: Job, tell: Tell) -> JobResult:
@@ -41,9 +62,10 @@ def check(job: Job, tell: Tell) -> JobResult:
     with fresh_folder(final, inputs=_inputs(loaded), tell=tell) as aside:
         with tell.stage(LOADING):
             from moldgen.flow.check import check_part  # noqa: PLC0415
+            from moldgen.flow.stages import Stages  # noqa: PLC0415
 
         with _located(loaded):
-            result = check_part(loaded, aside, tell)
+            result = check_part(loaded, aside, Stages(open_store(), tell))
     return replace(result, output=final)
 
 
@@ -98,7 +120,10 @@ def _located(loaded: LoadedSpec) -> Iterator[None]:
     """Let a mistake that a stage finds in a key of the spec, such as ``blocks.length``, be told with its place."""
     try:
         yield
-    except SpecError as error:
+    except MoldgenError as error:
+        error.what, error.where = located(error.what, loaded), located(error.where, loaded)
+        if not isinstance(error, SpecError):
+            raise
         key = error.where.replace("[", ".").replace("]", "")
         if key.partition(".")[0] in Spec.model_fields:
             error.what = f"{error.where}: {error.what}"

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any
 
 from moldgen.errors import KernelError, PartError
@@ -24,7 +25,21 @@ class Prepared:
 
     body: Body
     kinds: FaceKinds
-    trapped: Trapped
+
+    @cached_property
+    def trapped(self) -> Trapped:
+        """What is trapped between its faces: mesh solids, which no store can hold, found again from the mesh."""
+        return trapped_volume(self.body, self.kinds)
+
+    def with_trapped(self, trapped: Trapped) -> Prepared:
+        """Return the same part where it is known already what is trapped."""
+        known = Prepared(self.body, self.kinds)
+        known.__dict__["trapped"] = trapped
+        return known
+
+    def __getstate__(self) -> dict[str, Any]:
+        """Return what `moldgen.kernel.frozen` keeps."""
+        return {"body": self.body, "kinds": self.kinds}
 
 
 def prepare(solid: Any, volume_mm3: float | None = None, frame: MoldFrame | None = None) -> tuple[Prepared, Notes]:
@@ -66,7 +81,9 @@ def prepared_body(body: Body, frame: MoldFrame | None = None) -> tuple[Prepared,
     """
     body, notes = ready(body, frame)
     kinds = face_kinds(body)
-    return Prepared(body, kinds, trapped_volume(body, kinds)), notes
+    prepared = Prepared(body, kinds)
+    _ = prepared.trapped  # what cannot be swept is no part to go on with
+    return prepared, notes
 
 
 def ready(body: Body, frame: MoldFrame | None = None) -> tuple[Body, Notes]:

@@ -2,37 +2,38 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-from contextlib import suppress
 from dataclasses import dataclass, replace
 
 import numpy as np
 
+from moldgen.canon import sha256_file
 from moldgen.catalog import Resin, resin
-from moldgen.errors import KernelError, PartError
+from moldgen.errors import PartError
 from moldgen.finding import Decision, Notes
 from moldgen.flow.part_source import read_part
 from moldgen.flow.prepare import Prepared, prepare
+from moldgen.flow.pulls import find_pulls
+from moldgen.flow.stages import Made, Stages
 from moldgen.flow.tell import Tell
 from moldgen.flow.words import direction_text, point_text
 from moldgen.kernel.body import Body
 from moldgen.kernel.extent import reach
 from moldgen.kernel.measure import bounding_box, volume_adaptive
 from moldgen.kernel.place import to_mold
-from moldgen.kernel.prepare import preparations
-from moldgen.model.part import Box, MoldFrame, Part, Pull, Vector
+from moldgen.model.part import Box, MoldFrame, Part, Pull
 from moldgen.proof.bodies import SAME_VOLUME
 from moldgen.release.contact import vertical_contact
 from moldgen.release.frame import mold_frame
-from moldgen.release.pull import PullCandidate, search_pull
+from moldgen.release.pull import PullCandidate
 from moldgen.release.review import ReleaseReview, TrappedPlace, review_release
-from moldgen.release.trapped import Grip
+from moldgen.release.trapped import Grip, Trapped
 from moldgen.rules.draft import draft_required
+from moldgen.spec.declared import key_values, narrowed
 from moldgen.spec.load import LoadedSpec
-from moldgen.spec.pull import FaceNormal
 
-ALIKE = 0.966
-"""Cosine (15 deg) from which a pull is tried after those that differ more from what was tried already."""
+READ_KEYS = ("part", "name")
+PULL_KEYS = ("pull",)
+"""The keys of the spec that reading the part and choosing the pull depend on."""
 
 MOST_NAMED = 8
 """Trapped places that an error message names one by one; the manifest has them all."""
@@ -43,6 +44,7 @@ class Reviewed:
     """What is known about the part before steel is built. Findings speak in part coordinates.
 
     candidates : the pulls that were tried, best first; empty when the pull was given
+    made : the stage that prepared the part
     """
 
     loaded: LoadedSpec
@@ -53,49 +55,75 @@ class Reviewed:
     prepared: Prepared
     release: ReleaseReview
     notes: Notes
-    candidates: tuple[PullCandidate, ...] = ()
+    candidates: tuple[PullCandidate, ...]
+    made: Made[tuple[Prepared, Part, Notes]]
 
 
 @dataclass(frozen=True)
 class Source:
     """The part as read, and the pulls worth trying, best first (one if it is given)."""
 
-    part: Part
+    made: Made[tuple[Part, Notes]]
     pulls: tuple[Pull, ...]
     tried: tuple[PullCandidate, ...]
     notes: Notes
 
+    @property
+    def part(self) -> Part:
+        """The part as read."""
+        return self.made.value[0]
 
-def open_part(loaded: LoadedSpec, tell: Tell) -> Source:
+
+def open_part(loaded: LoadedSpec, stages: Stages) -> Source:
     """Read the part and find its pulls.
 
     Raises
     ------
     PartError, SpecError, KernelError : the part cannot be read
     """
-    notes = Notes(findings=loaded.findings)
+    part = stages.make(
+        "read the part",
+        {
+            **key_values(loaded.spec, READ_KEYS),
+            "part file": "" if loaded.part_file is None else sha256_file(loaded.part_file),
+        },
+        lambda: _read(narrowed(loaded, READ_KEYS), stages.tell),
+        lasting=loaded.spec.part.function is None,  # nobody knows what a function reads
+    )
+    pulls = stages.make(
+        "choose the pull",
+        {**key_values(loaded.spec, PULL_KEYS), "part": part},
+        lambda: _chosen(narrowed(loaded, PULL_KEYS), part.value[0], stages.tell),
+    )
+    return Source(part, *pulls.value, Notes(findings=loaded.findings) + part.value[1])
+
+
+def _read(loaded: LoadedSpec, tell: Tell) -> tuple[Part, Notes]:
     with tell.stage("read the part") as stage:
-        part, more = read_part(loaded)
-        notes += more
+        part, notes = read_part(loaded)
         stage.detail = f"{part.face_count} faces, {part.volume_mm3 / 1000:.2f} cm3"
+    return part, notes
+
+
+def _chosen(loaded: LoadedSpec, part: Part, tell: Tell) -> tuple[tuple[Pull, ...], tuple[PullCandidate, ...]]:
     with tell.stage("choose the pull") as stage:
-        pulls, candidates = _pulls(loaded, part)
+        pulls, candidates = find_pulls(loaded, part)
         stage.detail = direction_text(pulls[0].direction) + _outlook(candidates)
-    return Source(part, pulls, candidates, notes)
+    return pulls, candidates
 
 
-def review(loaded: LoadedSpec, tell: Tell) -> Reviewed:
+def review(loaded: LoadedSpec, stages: Stages) -> Reviewed:
     """Read the part, choose the pull, and see how every face releases.
 
     Raises
     ------
     PartError, SpecError, KernelError : the part cannot be read or prepared
     """
-    return review_along(loaded, open_part(loaded, tell), 0, tell)
+    return review_along(loaded, open_part(loaded, stages), 0, stages)
 
 
 def review_along(
-    loaded: LoadedSpec, source: Source, number: int, tell: Tell, refused: tuple[str, ...] = ()
+    loaded: LoadedSpec, source: Source, number: int, stages: Stages, refused: tuple[str, ...] = ()
 ) -> Reviewed:
     """See how every face releases along one of the pulls; `refused` is what became of better ones.
 
@@ -103,29 +131,61 @@ def review_along(
     ------
     PartError, SpecError, KernelError : the part cannot be prepared
     """
-    spec, part, pull, candidates = loaded.spec, source.part, source.pulls[number], source.tried
+    spec, pull, candidates = loaded.spec, source.pulls[number], source.tried
     data = resin(spec.resin)
     notes = source.notes + Notes(decisions=(_pull_decision(source, number, refused),))
+    box = (
+        stages.make("measure the part", {"part": source.made}, lambda: _exact_box(source.part)).value
+        if (spec.shrink.fixed_point == "centre")
+        else _NO_BOX
+    )
+    frame, more = mold_frame(pull.direction, spec.shrink, spec.resin, box)
+    notes += more
+    found: list[Trapped] = []
+    made = stages.make(
+        "prepare the part",
+        {"part": source.made, "frame of the mold": frame},
+        lambda: _prepared(narrowed(loaded, ()), source.part, frame, found, stages.tell),
+    )
+    prepared, part, more = made.value
+    prepared = prepared.with_trapped(found[0]) if found else prepared
+    notes += more
+    section = spec.draft
+    least = data.draft_minimum.low if section.minimum is None else section.minimum
+    asked = (least, section.texture_depth, section.texture_slope)
+    release, more = stages.make(
+        "review the draft",
+        {"prepared part": made, "frame of the mold": frame, "draft asked": asked},
+        lambda: _released(prepared, asked, frame, stages.tell),
+    ).value
+    return Reviewed(loaded, data, part, pull, frame, prepared, release, notes + more, candidates, made)
+
+
+def _prepared(
+    loaded: LoadedSpec, part: Part, frame: MoldFrame, found: list[Trapped], tell: Tell
+) -> tuple[Prepared, Part, Notes]:
+    """Return the part in the mold, and what is known of it since. What is trapped in it goes to `found`."""
     with tell.stage("prepare the part") as stage:
-        box = _exact_box(part) if spec.shrink.fixed_point == "centre" else _NO_BOX
-        frame, more = mold_frame(pull.direction, spec.shrink, spec.resin, box)
-        notes += more
         scale = float(np.prod(frame.factors))
         try:
-            prepared, more = prepare(to_mold(part.solid, frame), part.volume_mm3 * scale, frame)
+            prepared, notes = prepare(to_mold(part.solid, frame), part.volume_mm3 * scale, frame)
         except PartError as error:
             error.where = f"{loaded.locate('part')}: {error.where}".removesuffix(": ")
             raise
-        notes += more
         part = replace(
             part, bounding_box_mm=part_box(prepared.body, frame), volume_mm3=_sure_volume(part, prepared, scale)
         )
+        found.append(prepared.trapped)
         stage.detail = f"{len(prepared.body.faces)} faces, {len(prepared.trapped.undercuts)} undercuts"
+    return prepared, part, notes
+
+
+def _released(
+    prepared: Prepared, asked: tuple[float, float, float], frame: MoldFrame, tell: Tell
+) -> tuple[ReleaseReview, Notes]:
+    """Return how every face releases; `asked`: least draft [deg], depth of the texture [mm], draft for it [deg]."""
     with tell.stage("review the draft") as stage:
-        section = spec.draft
-        least = data.draft_minimum.low if section.minimum is None else section.minimum
-        asked = (least, section.texture_depth, section.texture_slope)
-        notes += Notes(
+        notes = Notes(
             draft_required.outside(*asked), quantities=(draft_required.line("draft asked of every wall", *asked),)
         )
         release, more = review_release(
@@ -136,9 +196,8 @@ def review_along(
             contact=vertical_contact(prepared.body, prepared.kinds),
             frame=frame,
         )
-        notes += more
         stage.detail = f"{release.draft.faces_below} faces below {release.draft.required_deg:.2g} deg"
-    return Reviewed(loaded, data, part, pull, frame, prepared, release, notes, candidates)
+    return release, notes + more
 
 
 def _sure_volume(part: Part, prepared: Prepared, scale: float) -> float:
@@ -210,40 +269,6 @@ def _named(piece: TrappedPlace) -> str:
     )
 
 
-def _pulls(loaded: LoadedSpec, part: Part) -> tuple[tuple[Pull, ...], tuple[PullCandidate, ...]]:
-    section = loaded.spec.pull
-    given = section.direction
-    if isinstance(given, FaceNormal):
-        direction = _normal_at(loaded, part, given.point)
-        why = f"normal of the flat face nearest to {point_text(given.point)}, given in the spec"
-        return (Pull(direction, why),), ()
-    if given is not None:
-        return (Pull(given, "given in the spec"),), ()
-    found = search_pull(_meshed(part), axes_only=section.search == "axes")
-    return tuple(_worth_trying(found)), found
-
-
-def _worth_trying(found: tuple[PullCandidate, ...]) -> Iterator[Pull]:
-    """Yield the pulls in the order in which they are tried.
-
-    The best line comes both ways, since which half is the core decides where lifters and pins can be; then the others,
-    those close to one that was tried already last.
-    """
-    best = found[0]
-    yield Pull(best.direction, best.why)
-    x, y, z = (0.0 - c for c in best.direction)
-    yield Pull((x, y, z), f"the best line the other way round: {best.why}")
-    tried, close = [best], []
-    for one in found[1:]:
-        alike = any(abs(float(np.dot(one.direction, t.direction))) > ALIKE for t in tried)
-        if alike:
-            close.append(one)
-            continue
-        tried.append(one)
-        yield Pull(one.direction, one.why)
-    yield from (Pull(c.direction, c.why) for c in close)
-
-
 def _pull_decision(source: Source, number: int, refused: tuple[str, ...]) -> Decision:
     pull, tried = source.pulls[number], source.tried
     lines = [abs(float(np.dot(c.direction, pull.direction))) > 1.0 - 1e-9 for c in tried]
@@ -260,37 +285,3 @@ def _outlook(candidates: tuple[PullCandidate, ...]) -> str:
     best = candidates[0]
     sides = f"{best.side_actions or 'no'} side action{'' if best.side_actions == 1 else 's'} by estimate"
     return f", best of {len(candidates)} distinct pulls, {sides}"
-
-
-def _meshed(part: Part) -> Body:
-    """Return the first form of the part, as read or cut up as in the preparation, that can be meshed.
-
-    Raises
-    ------
-    KernelError : none can; what the mesher said of the part as read
-    """
-    body = Body(part.solid)
-    try:
-        _ = body.mesh
-    except KernelError as error:
-        for other in preparations(part.solid, part.volume_mm3):
-            with suppress(KernelError):
-                body = Body(other.solid)
-                _ = body.mesh
-                return body
-        raise error from None
-    return body
-
-
-def _normal_at(loaded: LoadedSpec, part: Part, point: Vector) -> Vector:
-    body = Body(part.solid)
-    number, _ = body.nearest_face(np.asarray(point))
-    if body.surface_kind(number) != "plane":
-        raise PartError(
-            f"the face nearest to {point_text(point)} is no plane but a {body.surface_kind(number)}",
-            where=loaded.locate("pull"),
-            remedy="give a point on a flat face, or a direction",
-        )
-    normal = body.mesh.normals[body.mesh.face == number][0]
-    x, y, z = (float(v) + 0.0 for v in normal / np.linalg.norm(normal))
-    return (x, y, z)

@@ -40,10 +40,12 @@ from moldgen.errors import MoldgenError
 from moldgen.flow.build import build_tool
 from moldgen.flow.job import Options
 from moldgen.flow.part_source import read_part
+from moldgen.flow.stages import Stages
 from moldgen.flow.tell import silent
 from moldgen.kernel.boolean import cut
 from moldgen.kernel.quiet import quiet
 from moldgen.kernel.topology import solids_of
+from moldgen.memory import Forgetful
 from moldgen.spec.load import load_spec
 from tests.sweep.real_parts import real_parts
 
@@ -105,7 +107,7 @@ def whole_build(spec: Path, work: Path, *, pictures: bool) -> dict[str, Any]:
     """Build a tool; return whether it is proved, and the seconds of its stages."""
     tell = silent()
     with tempfile.TemporaryDirectory(dir=work) as out:
-        result = build_tool(load_spec(spec), Path(out), Options(pictures=pictures), tell)
+        result = build_tool(load_spec(spec), Path(out), Options(pictures=pictures), Stages(Forgetful(), tell))
     stages: dict[str, float] = {}
     for stage, seconds in tell.timings_s:
         stages[stage] = stages.get(stage, 0.0) + seconds

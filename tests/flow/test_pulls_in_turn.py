@@ -10,9 +10,12 @@ import pytest
 from helpers.small_specs import NOTCHED, spec
 
 import moldgen.flow.build as build
+import moldgen.flow.write_tool as write_tool
 from moldgen.canon import sha256_bytes
 from moldgen.flow.job import JobResult, Options
+from moldgen.flow.stages import Stages
 from moldgen.flow.tell import silent
+from moldgen.memory import Forgetful
 from moldgen.model.proof import Verdict
 from moldgen.spec.load import load_spec
 
@@ -24,7 +27,7 @@ pytestmark = pytest.mark.slow
 
 def built(monkeypatch: pytest.MonkeyPatch, tmp_path: Path, proved: list[bool]) -> tuple[JobResult, Path]:
     """Build the block in this process; the first proof of each tool in turn passes as `proved` says."""
-    real, turn = build.prove_tool, iter(proved)
+    real, turn = write_tool.prove_tool, iter(proved)
     said = proved[-1]
 
     def judged(*asked: object) -> tuple[object, ...]:
@@ -33,11 +36,11 @@ def built(monkeypatch: pytest.MonkeyPatch, tmp_path: Path, proved: list[bool]) -
         first, *others = real(*asked)
         return (first if said else replace(first, verdict=Verdict.FAILED), *others)
 
-    monkeypatch.setattr(build, "prove_tool", judged)
+    monkeypatch.setattr(write_tool, "prove_tool", judged)
     folder = tmp_path / "out"
     folder.mkdir()
     loaded = load_spec(spec(tmp_path, PLAIN))
-    return build.build_tool(loaded, folder, Options(pictures=False), silent()), folder
+    return build.build_tool(loaded, folder, Options(pictures=False), Stages(Forgetful(), silent())), folder
 
 
 def found(folder: Path) -> dict[str, str]:
@@ -48,7 +51,7 @@ def found(folder: Path) -> dict[str, str]:
 
 def pull_of(folder: Path) -> dict[str, object]:
     """The decision about the pull in a manifest."""
-    (pull,) = [d for d in json.loads((folder / build.MANIFEST).read_text())["decisions"] if d["topic"] == "pull"]
+    (pull,) = [d for d in json.loads((folder / write_tool.MANIFEST).read_text())["decisions"] if d["topic"] == "pull"]
     return pull
 
 
@@ -57,7 +60,7 @@ def test_the_manifest_lists_the_files_that_are_there(
     monkeypatch: pytest.MonkeyPatch, tmp_path: Path, proved: list[bool]
 ) -> None:
     result, folder = built(monkeypatch, tmp_path, proved)
-    record = json.loads((folder / build.MANIFEST).read_text())
+    record = json.loads((folder / write_tool.MANIFEST).read_text())
     assert record["files"] == found(folder)
     assert "tool.step" in record["files"]
     assert not (folder / build.ASIDE).exists()
