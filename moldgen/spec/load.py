@@ -73,8 +73,8 @@ def load_spec(path: str | Path, *, allow_code: bool = False) -> LoadedSpec:
     SpecErrors : the spec has several mistakes
     """
     file = str(path)
-    data = _read_bytes(Path(path), file)
-    tree = read_tree(_decode(data, file), file)
+    data = read_bytes(Path(path), file)
+    tree = read_tree(decode(data, file), file)
     spec = _checked(tree, folder_name(Path(path).stem))
     if spec.part.function is not None and not allow_code:
         where = tree.where(("part", "function"))
@@ -83,7 +83,13 @@ def load_spec(path: str | Path, *, allow_code: bool = False) -> LoadedSpec:
 
 
 # --- the file --------------------------------------------------------------------------------------------------------
-def _read_bytes(path: Path, file: str) -> bytes:
+def read_bytes(path: Path, file: str) -> bytes:
+    """Return what is in a spec, at most `MAX_BYTES`; `file` is its name in messages.
+
+    Raises
+    ------
+    SpecError : it cannot be read, or cannot be a spec
+    """
     try:
         if path.is_dir():
             raise SpecError("this is a folder, not a spec", where=file, remedy="name the .yaml file in it")
@@ -112,7 +118,8 @@ def _near_file(path: Path) -> str:
     return f"did you mean {path.parent / near[0]}?" if near else _EXAMPLE
 
 
-def _decode(data: bytes, file: str) -> str:
+def decode(data: bytes, file: str) -> str:
+    """Return the text in UTF-8. Raises SpecError, with the place, if it is something else."""
     if b"\0" in data:
         raise SpecError("the file is binary, or text in UTF-16", where=file, remedy="save it as text in UTF-8")
     try:
@@ -133,9 +140,9 @@ def _checked(tree: Tree, name: str) -> Spec:
     try:
         spec = Spec.model_validate(_with_name(tree.data, name))
     except ValidationError as error:
-        _raise(tree.mistakes + plain_errors(error, tree), tree.file)
+        raise_all(tree.mistakes + plain_errors(error, tree), tree.file)
     if tree.mistakes:
-        _raise(tree.mistakes, tree.file)
+        raise_all(tree.mistakes, tree.file)
     return spec
 
 
@@ -143,7 +150,8 @@ def _with_name(data: Mapping[str, Any], name: str) -> Mapping[str, Any]:
     return data if data.get("name") is not None else {**data, "name": name}
 
 
-def _raise(mistakes: list[SpecError], file: str) -> NoReturn:
+def raise_all(mistakes: list[SpecError], file: str) -> NoReturn:
+    """Raise the mistakes of one file, one or several; after `MAX_REPORTED` the rest are counted."""
     if len(mistakes) == 1:
         raise mistakes[0]
     shown = mistakes[:MAX_REPORTED]

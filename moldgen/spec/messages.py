@@ -22,10 +22,13 @@ _Words = tuple[str, str]
 """What is wrong with the value, and the remedy."""
 
 
-def plain_errors(error: ValidationError, tree: Tree) -> list[SpecError]:
-    """Return the mistakes of `error`, at most `MAX_WORDED`, with their places in `tree`, in the order of the file."""
+def plain_errors(error: ValidationError, tree: Tree, top: type[BaseModel] = Spec) -> list[SpecError]:
+    """Return the mistakes of `error`, at most `MAX_WORDED`, with their places in `tree`, in the order of the file.
+
+    top : what the whole file was read as
+    """
     lines = error.errors(include_url=False)[:MAX_WORDED]
-    found = [_plain_error(line, tree) for line in lines if not _only_follows(line, lines)]
+    found = [_plain_error(line, tree, top) for line in lines if not _only_follows(line, lines)]
     unique = {(at, str(e)): e for at, e in found}
     return [unique[key] for key in sorted(unique)]
 
@@ -38,7 +41,7 @@ def _only_follows(line: Mapping[str, Any], lines: Sequence[Mapping[str, Any]]) -
     )
 
 
-def _plain_error(line: Mapping[str, Any], tree: Tree) -> tuple[tuple[int, int], SpecError]:
+def _plain_error(line: Mapping[str, Any], tree: Tree, top: type[BaseModel]) -> tuple[tuple[int, int], SpecError]:
     loc = tuple(line["loc"])
     path, value = _follow(tree.data, loc)
     kind = line["type"]
@@ -47,10 +50,10 @@ def _plain_error(line: Mapping[str, Any], tree: Tree) -> tuple[tuple[int, int], 
         remedy = remedy or _LOOK_IT_UP
         is_value = False
     elif kind == "extra_forbidden":
-        what, remedy = _unknown_key(path)
+        what, remedy = _unknown_key(path, top)
         is_value = False
     elif kind == "missing":
-        what, remedy = _missing_key(path, loc)
+        what, remedy = _missing_key(path, loc, top)
         is_value = not path
     else:
         words, remedy = _wrong_value(line, value)
@@ -82,32 +85,32 @@ def _follow(data: Any, loc: Path) -> tuple[Path, Any]:
 
 
 # --- keys ------------------------------------------------------------------------------------------------------------
-def _unknown_key(path: Path) -> _Words:
+def _unknown_key(path: Path, top: type[BaseModel]) -> _Words:
     key = str(path[-1])
-    if len(path) == 1 and key in PLANNED:
+    if top is Spec and len(path) == 1 and key in PLANNED:
         return f"this version does not build {PLANNED[key]} yet: `{key}` would have no effect", f"delete `{key}`"
-    known = sorted({name for model in _models_at(Spec, path[:-1]) for name in model.model_fields})
+    known = sorted({name for model in _models_at(top, path[:-1]) for name in model.model_fields})
     section = f" in {dotted(path[:-1])}" if len(path) > 1 else ""
     near = difflib.get_close_matches(key.lower(), known, n=1)
     if near:
         remedy = f"did you mean `{near[0]}`?"
     else:
-        owners = [name for name, model in _sections() if key in model.model_fields]
+        owners = [name for name, model in _sections(top) if key in model.model_fields]
         remedy = f"`{key}` is a key of {' and '.join(owners)}; " if owners and len(path) < 3 else ""
         remedy += f"known keys{section or ' here'}: {', '.join(known)}"
     return f"unknown key `{shown(key)}`{section}", remedy
 
 
-def _missing_key(path: Path, loc: Path) -> _Words:
+def _missing_key(path: Path, loc: Path, top: type[BaseModel]) -> _Words:
     key = loc[-1]
     section = f" in {dotted(path)}" if path else ""
-    descriptions = [m.model_fields[key].description for m in _models_at(Spec, path) if key in m.model_fields]
+    descriptions = [m.model_fields[key].description for m in _models_at(top, path) if key in m.model_fields]
     meaning = f" ({descriptions[0]})" if descriptions and descriptions[0] else ""
     return f"the key `{key}` is missing{section}", f"add `{key}:`{meaning}"
 
 
-def _sections() -> Iterator[tuple[str, type[BaseModel]]]:
-    for name, info in Spec.model_fields.items():
+def _sections(top: type[BaseModel]) -> Iterator[tuple[str, type[BaseModel]]]:
+    for name, info in top.model_fields.items():
         for model in _models_in(info.annotation):
             yield name, model
 
