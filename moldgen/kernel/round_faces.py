@@ -17,7 +17,7 @@ PARALLEL = 1e-6
 
 @dataclass(frozen=True)
 class RoundFace:
-    """One cylinder or cone face with its axis along z, whose plastic lies outside it: the wall of a round core [mm].
+    """One cylinder or cone face with its axis along z: the wall of a hole, or the outside of something round [mm].
 
     x, y : axis; radius_low, radius_high : at the lower and the upper end; z_low, z_high : its ends
     turn : angle that the face covers about the axis [rad], by its area
@@ -35,6 +35,15 @@ class RoundFace:
 
 def hollow_round_faces(body: Body) -> list[RoundFace]:
     """Return the faces of holes along z, cylindrical or conical, in the order of their numbers."""
+    return _round_faces(body, hollow=True)
+
+
+def standing_round_faces(body: Body) -> list[RoundFace]:
+    """Return the outer faces of bosses and pins along z, cylindrical or conical, in the order of their numbers."""
+    return _round_faces(body, hollow=False)
+
+
+def _round_faces(body: Body, *, hollow: bool) -> list[RoundFace]:
     found = []
     for number in range(len(body.faces)):
         surface = BRepAdaptor_Surface(body.faces[number])
@@ -52,17 +61,21 @@ def hollow_round_faces(body: Body) -> list[RoundFace]:
             continue
         place = axis.Location()
         growth = math.copysign(1.0, along.Z()) * growth
-        one = _face(body, number, np.array([place.X(), place.Y(), place.Z()]), base, growth)
+        one = _face(body, number, np.array([place.X(), place.Y(), place.Z()]), (base, growth), hollow=hollow)
         if one is not None:
             found.append(one)
     return found
 
 
-def _face(body: Body, number: int, place: np.ndarray, base: float, growth: float) -> RoundFace | None:
-    """Return the face, or None when its plastic lies inside or it is a part of a cone that ends in nothing."""
+def _face(body: Body, number: int, place: np.ndarray, slope: tuple[float, float], *, hollow: bool) -> RoundFace | None:
+    """Return the face, or None when its plastic lies on the other side or it is part of a cone that ends in nothing.
+
+    slope : radius at the height of `place` and its growth with the height
+    """
+    base, growth = slope
     own = body.mesh.face == number
     offset = body.mesh.corners[own].mean(axis=1)[:, :2] - place[:2]
-    if (offset * body.mesh.normals[own, :2]).sum() >= 0.0:
+    if ((offset * body.mesh.normals[own, :2]).sum() < 0.0) != hollow:
         return None
     low, high = (float(z) for z in body.face_heights[number])
     radii = (base + growth * (low - float(place[2])), base + growth * (high - float(place[2])))

@@ -63,15 +63,16 @@ def find_round_cores(view: PartView, largest: float) -> list[RoundCore]:
     faces = [f for f in hollow_round_faces(view.body) if not cavity_side[f.face]]
     thin = [f for f in faces if 2 * max(f.radius_low, f.radius_high) <= largest + 1e-9]
     found = []
-    for axis in _coaxial(thin):
-        for chain in _chains(axis):
+    for axis in coaxial(thin):
+        for chain in chains(axis):
             core = _core(view, chain)
             if core is not None:
                 found.append(core)
     return sorted(found, key=lambda c: (round(c.x, 3), round(c.y, 3), c.base_z))
 
 
-def _coaxial(faces: list[RoundFace]) -> list[list[RoundFace]]:
+def coaxial(faces: list[RoundFace]) -> list[list[RoundFace]]:
+    """Return the faces in groups that share an axis, by place."""
     groups: list[list[RoundFace]] = []
     for face in sorted(faces, key=lambda f: (f.x, f.y, f.z_low, f.face)):
         home = next((g for g in groups if math.hypot(g[0].x - face.x, g[0].y - face.y) < COAXIAL), None)
@@ -82,18 +83,18 @@ def _coaxial(faces: list[RoundFace]) -> list[list[RoundFace]]:
     return groups
 
 
-def _chains(faces: list[RoundFace]) -> list[list[RoundFace]]:
-    """Split coaxial faces where there is a gap along the axis."""
-    chains: list[list[RoundFace]] = []
+def chains(faces: list[RoundFace]) -> list[list[RoundFace]]:
+    """Return coaxial faces in groups, divided where there is a gap along the axis."""
+    found: list[list[RoundFace]] = []
     top = -math.inf
     for face in sorted(faces, key=lambda f: (f.z_low, f.face)):
         gap = JOINED * max(face.radius_low, face.radius_high)
-        if not chains or face.z_low > top + gap:
-            chains.append([])
+        if not found or face.z_low > top + gap:
+            found.append([])
             top = -math.inf
-        chains[-1].append(face)
+        found[-1].append(face)
         top = max(top, face.z_high)
-    return chains
+    return found
 
 
 def _core(view: PartView, steps: list[RoundFace]) -> RoundCore | None:

@@ -51,6 +51,11 @@ class PartView:
         spot = (x, y, z) if self._frame is None else self._frame.to_part((x, y, z))
         return (round(spot[0], 3), round(spot[1], 3), round(spot[2], 3))
 
+    @property
+    def sides(self) -> SideLayout | None:
+        """Bodies, angled pins and lifters of side actions, None if they are not laid out."""
+        return self._sides
+
     @cached_property
     def probe(self) -> Probe:
         """Rays against the part."""

@@ -12,6 +12,7 @@ from moldgen.spec.pull import SHORT_PULL, SHORT_SHRINK, Pull, Shrink
 from moldgen.spec.sections import Blocks, CorePins, Draft, Ejection, Gate, Mark, Output, Parting
 from moldgen.spec.side_actions import SideActions
 from moldgen.spec.source import PartSource
+from moldgen.spec.steel_safe import SteelSafe
 
 PLANNED: Final = {
     "inserts": "components loaded before the shot",
@@ -74,6 +75,9 @@ class Spec(Section):
         default=(),
         description="what must stay off the face nearest to a point: no_gate, no_pins, no_parting_line",
         examples=[[{"face": [0, 0, 10], "no_gate": True}]],
+    )
+    steel_safe: SteelSafe = Field(
+        default=SteelSafe(), description="dimensions that will be tuned, and how much steel to leave on for that"
     )
     output: Output = Field(default=Output(), description="what is written, and where")
 
