@@ -11,8 +11,10 @@ import pytest
 
 from moldgen.flow.build import build_tool
 from moldgen.flow.job import Options
+from moldgen.flow.stages import Stages
 from moldgen.flow.tell import silent
 from moldgen.kernel.features import build_recipe
+from moldgen.memory import Forgetful
 from moldgen.spec.load import load_spec
 from moldgen.spec.recipe import Recipe
 from tests.kernel_io.test_step_read import write_raw
@@ -40,7 +42,7 @@ def tool_of(tmp_path_factory: pytest.TempPathFactory) -> Callable[[Version], Pat
             spec.write_text(json.dumps(version.as_spec(part)), encoding="utf-8")
             out = folder / "cap"
             out.mkdir()
-            result = build_tool(load_spec(spec), out, Options(pictures=False), silent())
+            result = build_tool(load_spec(spec), out, Options(pictures=False), Stages(Forgetful(), silent()))
             assert [proof.name for proof in result.proofs if not proof.passed] == []
             made[name] = out
         return made[name]
