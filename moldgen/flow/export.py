@@ -11,6 +11,7 @@ from moldgen.flow.record import component_files
 from moldgen.flow.reread import TOOL_FILE, Entry, read_bodies
 from moldgen.kernel.beside import Beside
 from moldgen.kernel.step_write import Looks, StepExport
+from moldgen.memory import Memory
 from moldgen.model.tool import Tool
 from moldgen.output.palette import ROLES
 from moldgen.output.tables import holes_csv, parts_list_csv
@@ -59,10 +60,10 @@ def exported_files(tool: Tool) -> list[str]:
     return [path.as_posix() for path in paths]
 
 
-def reread_bodies(tool: Tool, folder: Path) -> list[ProofBody]:
-    """Return the tool as the exported assembly holds it, for the proofs."""
+def reread_bodies(tool: Tool, folder: Path, memory: Memory | None = None) -> list[ProofBody]:
+    """Return the tool as the exported assembly holds it, for the proofs; `memory` as `read_bodies` takes it."""
     entries = tuple(Entry(c.name, c.role, c.motion, c.positions) for c in tool.components)
-    return read_bodies(folder / TOOL_FILE, entries)
+    return read_bodies(folder / TOOL_FILE, entries, memory)
 
 
 def exported_volumes(tool: Tool, bodies: Sequence[ProofBody]) -> dict[str, float]:

@@ -11,6 +11,7 @@ from typing import Any
 from moldgen.errors import PartError, SpecError
 from moldgen.flow.folder import MANIFEST, MANIFEST_KEY
 from moldgen.kernel.step_read import read_assembly
+from moldgen.memory import Memory
 from moldgen.model.motion import Step
 from moldgen.model.part import Vector
 from moldgen.model.tool import Role
@@ -99,8 +100,10 @@ def _vector(values: Any) -> Vector:
     return (x, y, z)
 
 
-def read_bodies(file: Path, entries: tuple[Entry, ...]) -> list[ProofBody]:
+def read_bodies(file: Path, entries: tuple[Entry, ...], memory: Memory | None = None) -> list[ProofBody]:
     """Return the exported components where they stand, by the order and the names of the manifest.
+
+    memory : where answers about them are remembered, for the versions that run
 
     Raises
     ------
@@ -119,7 +122,8 @@ def read_bodies(file: Path, entries: tuple[Entry, ...]) -> list[ProofBody]:
         [
             ProofBody(e.name if e.count == 1 else f"{e.name} {n}", e.role, e.motion, solid)
             for (e, n), (_, solid) in zip(wanted, found, strict=True)
-        ]
+        ],
+        memory,
     )
 
 

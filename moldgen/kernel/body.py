@@ -81,6 +81,10 @@ class Body:
         if state["mesh"] is not None:
             self.__dict__["mesh"] = state["mesh"]
 
+    def take_mesh(self, mesh: SurfaceMesh) -> None:
+        """Use a mesh that was made of the same solid, as finely, before."""
+        self.__dict__["mesh"] = mesh
+
     def like(self, solid: TopoDS_Shape) -> Body:
         """Return a body of another solid, meshed as finely as this one."""
         return Body(solid, self._deflection, self._angle)

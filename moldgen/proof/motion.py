@@ -22,7 +22,8 @@ from moldgen.model.part import Vector
 from moldgen.model.side_action import across
 from moldgen.model.tool import Motion
 from moldgen.proof.bodies import ProofBody
-from moldgen.proof.overlap import deepest
+from moldgen.proof.overlap import NONE, NUMBERS, Depth, deepest
+from moldgen.proof.recall import answered, question
 from moldgen.release.kinds import face_kinds
 from moldgen.release.sweep import OVERRUN, sweep_faces
 
@@ -133,15 +134,21 @@ class MovingTool:
             return Meeting(0.0, "")
         if self._rather_other(one, other, stretch):
             one, other, stretch = other, one, Stretch(stretch.steps, -stretch.start, -stretch.way)
+        ways = (*stretch.start, *stretch.way)
+        asked = question("overlap on the way", [one.subject, other.subject], ways, NUMBERS)
+        found = Depth.of(answered(asked, lambda: self._overlap(one, other, stretch).numbers))
+        return Meeting(
+            found.depth_mm, f"{one.name} against {other.name} {found.told}, when {' and '.join(stretch.steps)}"
+        )
+
+    def _overlap(self, one: ProofBody, other: ProofBody, stretch: Stretch) -> Depth:
+        """Return the deepest overlap of the space that a body passes through with another. No more than these enter."""
         swept = self._sweeper.swept(one, stretch, other)
         bounds = np.asarray(swept.bounding_box()) if swept.num_tri() else np.zeros(6)
         low, high = other.body.box
         if not swept.num_tri() or (low > bounds[3:]).any() or (high < bounds[:3]).any():
-            return Meeting(0.0, "")
-        found = deepest(swept, one.body.mesh, other, stretch.start)
-        return Meeting(
-            found.depth_mm, f"{one.name} against {other.name} {found.told}, when {' and '.join(stretch.steps)}"
-        )
+            return NONE
+        return deepest(swept, one.body.mesh, other, stretch.start)
 
     def _rather_other(self, one: ProofBody, other: ProofBody, stretch: Stretch) -> bool:
         """True when the second of a pair is to be swept: it moves and the first does not, or it is much cheaper."""

@@ -8,6 +8,7 @@ an overlap is over its limit, what the two meshes sag right there beyond what wa
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import NamedTuple
 
 import numpy as np
@@ -23,6 +24,9 @@ MOST_OFF = 0.1
 SAG_ASKED = 1.15 * PROOF_DEFLECTION
 """mm: the kernel rounds to whole steps, and may sag a little more than asked for without meaning anything by it."""
 
+NUMBERS = 5
+"""How many numbers tell a depth, see `Depth.numbers`."""
+
 AROUND = 0.2
 """mm: triangles this close to an overlap count as its place."""
 
@@ -34,6 +38,17 @@ class Depth(NamedTuple):
     at: tuple[float, float, float]
     off_mm: float
 
+    @classmethod
+    def of(cls, numbers: Sequence[float]) -> Depth:
+        """Return a depth from its `numbers`."""
+        depth, x, y, z, off = numbers
+        return cls(depth, (x, y, z), off)
+
+    @property
+    def numbers(self) -> tuple[float, ...]:
+        """Depth, place and what was taken off, (5,) [mm]."""
+        return (self.depth_mm, *self.at, self.off_mm)
+
     @property
     def told(self) -> str:
         """The place, and what was taken off, in words."""
@@ -42,12 +57,16 @@ class Depth(NamedTuple):
         return f"at {x:.2f}, {y:.2f}, {z:.2f}{off}"
 
 
+NONE = Depth(0.0, (0.0, 0.0, 0.0), 0.0)
+"""No overlap."""
+
+
 def deepest(one: MeshSolid, mesh: SurfaceMesh, other: ProofBody, shift: np.ndarray | float = 0.0) -> Depth:
     """Return the deepest overlap of a solid (whose surface is `mesh`, or was swept from it) with a body.
 
     shift : how far the solid was moved from where `mesh` is, (3,) [mm]
     """
-    worst = Depth(0.0, (0.0, 0.0, 0.0), 0.0)
+    worst = NONE
     common = one ^ other.thin
     if common.num_tri() == 0:
         return worst

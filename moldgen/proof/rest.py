@@ -11,7 +11,8 @@ from moldgen.kernel.topology import solids_of
 from moldgen.model.proof import Proof, Verdict
 from moldgen.model.tool import Role
 from moldgen.proof.bodies import ProofBody
-from moldgen.proof.overlap import deepest
+from moldgen.proof.overlap import NUMBERS, Depth, deepest
+from moldgen.proof.recall import Question, answered, question
 from moldgen.tolerances import BALANCE, OPEN_OVERLAP
 
 IN_BLOCK = (Role.PART, Role.CAVITY, Role.CORE, Role.SLIDE, Role.LIFTER)
@@ -47,8 +48,9 @@ def _mesh_fault(body: ProofBody) -> str:
     if len(solids_of(body.solid)) != 1:
         return ""  # there may be nothing to mesh
     try:
+        inside = answered(question("volume of the mesh", [body.subject], (), 1), lambda: (float(body.mesh.volume()),))
         # overlaps with a solid turned inside out would come out empty, and pass
-        return "" if body.mesh.volume() > 0.0 else "it is inside out"
+        return "" if inside[0] > 0.0 else "it is inside out"
     except KernelError as error:
         return error.what
 
@@ -56,6 +58,12 @@ def _mesh_fault(body: ProofBody) -> str:
 def filling_volume(bodies: Sequence[ProofBody]) -> float:
     """Return the joint volume [mm^3] of what fills the block, by the kernel's default integration."""
     return joint_volume([b.solid for b in bodies if b.role in IN_BLOCK])
+
+
+def balance_question(bodies: Sequence[ProofBody], block_mm3: float, bored_mm3: float) -> Question | None:
+    """Return what `prove_balance` asks, None where bodies are not known by their content."""
+    filling = [b.subject for b in bodies if b.role in IN_BLOCK]
+    return question("part of the block that is missing", filling, (block_mm3, bored_mm3, BALANCE), 1)
 
 
 def prove_balance(
@@ -68,13 +76,12 @@ def prove_balance(
     """
     filling = [b for b in bodies if b.role in IN_BLOCK]
     solids = [b.solid for b in filling]
-    missing = balance(
-        solids,
-        block_mm3 - bored_mm3,
-        BALANCE,
-        lambda: sum(_mesh_volume(b) for b in filling),
-        quick,
-    )
+
+    def find() -> tuple[float]:
+        expected = block_mm3 - bored_mm3
+        return (balance(solids, expected, BALANCE, lambda: sum(_mesh_volume(b) for b in filling), quick),)
+
+    (missing,) = answered(balance_question(bodies, block_mm3, bored_mm3), find)
     verdict = Verdict.PASSED if missing < BALANCE else Verdict.FAILED
     detail = f"{len(solids)} solids and {bored_mm3:.3f} mm^3 of bores in a block of {block_mm3:.3f} mm^3"
     return Proof(FILLED, verdict, missing, BALANCE, "of the block", detail)
@@ -93,8 +100,13 @@ def prove_rest(bodies: Sequence[ProofBody]) -> Proof:
     worst, pair = 0.0, ""
     for one, other in combinations(bodies, 2):
         if one.may_meet(other):
-            found = deepest(one.mesh, one.body.mesh, other)
+            found = _overlap(one, other)
             if found.depth_mm > worst:
                 worst, pair = found.depth_mm, f"{one.name} and {other.name} {found.told}"
     verdict = Verdict.PASSED if worst < OPEN_OVERLAP else Verdict.FAILED
     return Proof(APART, verdict, worst, OPEN_OVERLAP, "mm", pair)
+
+
+def _overlap(one: ProofBody, other: ProofBody) -> Depth:
+    asked = question("overlap at rest", [one.subject, other.subject], (), NUMBERS)
+    return Depth.of(answered(asked, lambda: deepest(one.mesh, one.body.mesh, other).numbers))

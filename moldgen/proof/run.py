@@ -25,7 +25,16 @@ from moldgen.proof.opening import (
     prove_side_actions,
     side_groups,
 )
-from moldgen.proof.rest import APART, FILLED, SOUND, filling_volume, prove_balance, prove_rest, prove_sound
+from moldgen.proof.rest import (
+    APART,
+    FILLED,
+    SOUND,
+    balance_question,
+    filling_volume,
+    prove_balance,
+    prove_rest,
+    prove_sound,
+)
 from moldgen.tolerances import BALANCE
 
 
@@ -43,7 +52,13 @@ class Claims:
 
 
 def prove_tool(bodies: Sequence[ProofBody], claims: Claims) -> tuple[Proof, ...]:
-    """Return every proof; one that could not run says why and does not count as passed."""
+    """Return every proof; one that could not run says why and does not count as passed.
+
+    Answers about bodies that a memory was given for are recalled (see `moldgen.proof.bodies.asked_beside`).
+    """
+    asked = balance_question(bodies, claims.block_mm3, claims.bored_mm3)
+    if asked is not None and asked.recalled() is not None:
+        return _proved(bodies, claims, None)
     together = Beside(lambda: filling_volume(bodies))
     try:
         return _proved(bodies, claims, together.result)
@@ -51,7 +66,7 @@ def prove_tool(bodies: Sequence[ProofBody], claims: Claims) -> tuple[Proof, ...]
         together.stop()
 
 
-def _proved(bodies: Sequence[ProofBody], claims: Claims, together: Callable[[], float]) -> tuple[Proof, ...]:
+def _proved(bodies: Sequence[ProofBody], claims: Claims, together: Callable[[], float] | None) -> tuple[Proof, ...]:
     return (
         _asked(Proof(SOUND, Verdict.NOT_RUN, None, 0.0, "faults"), lambda: prove_sound(bodies)),
         _asked(
