@@ -10,8 +10,10 @@ import numpy as np
 
 from moldgen.catalog import Pin, Resin, core_pin_blank
 from moldgen.finding import Decision, Finding, Notes, Severity
+from moldgen.layout.carry_cores import KeptCores, in_the_way, match_cores, resized
 from moldgen.layout.core_pin_checks import check_strength
 from moldgen.layout.keep_out import STEEL
+from moldgen.layout.kept import KeptItem, Reason, dropped, free_name
 from moldgen.layout.round_cores import RoundCore, find_round_cores, underside_ring, with_base
 from moldgen.layout.view import PartView
 from moldgen.model.layout import Chooser, CorePinLayout
@@ -61,7 +63,11 @@ class _Seat:
 
 
 def find_core_pins(
-    view: PartView, section: CorePins, resin: Resin, at: tuple[Vector, ...] = ()
+    view: PartView,
+    section: CorePins,
+    resin: Resin,
+    at: tuple[Vector, ...] = (),
+    kept: KeptCores | None = None,
 ) -> tuple[tuple[CorePinLayout, ...], Notes]:
     """Return the core pins.
 
@@ -70,38 +76,67 @@ def find_core_pins(
     section : `core_pins` of the spec; its `at` is not read
     at : the same points in the mold frame [mm]; each must lie in a round core, which becomes a pin in any case that
         the steel allows
+    kept : round cores of an accepted layout: its pins stay pins where the steel allows, the others stay in the block
 
     What is worth a pin is common practice: up to 16 mm in diameter or longer than 1.5 diameters, and not shallow.
     """
-    wide = max(section.largest, 1.0)
-    cores = find_round_cores(view, wide)
+    cores = find_round_cores(view, max(section.largest, 1.0))
     wanted, notes = _wanted(view, cores, at)
-    auto = section.pick == "auto"
-    seats = [_seat(view, core) for core in cores]
-    use = [i for i, seat in enumerate(seats) if i in wanted or (auto and _pays(seat.core))]
+    match, more = match_cores(view, cores, kept or KeptCores())
+    notes += more
+    stay, auto = match.pins, section.pick == "auto"
+    seats = [_kept_seat(view, core, stay.get(i)) for i, core in enumerate(cores)]
+    use = [
+        i for i, c in enumerate(cores) if i in wanted or i in stay or (auto and _pays(c) and i not in match.in_block)
+    ]
     made = [i for i in use if i in wanted or not seats[i].trouble]
     seats = _neighbours(seats, made)
-    pins: list[CorePinLayout] = []
-    refused: list[str] = []
+    pins, refused = [], []
+    names = {item.name for item in stay.values()}
     for i in use:
-        seat = seats[i]
+        seat, item = seats[i], stay.get(i)
         if i in wanted:
             notes += Notes(tuple(_trouble(view, seat, *one) for one in seat.trouble))
-        elif seat.trouble:
-            x, y, _ = view.place((seat.core.x, seat.core.y, seat.core.base_z))
-            refused.append(f"core at {x:g}, {y:g}: {seat.trouble[0][1]}")
-            continue
+        else:
+            left, more = _left(view, seat, item, kept)
+            if left:
+                refused.append(left)
+                notes += more
+                continue
         if seat.blank is None or seat.fit < SHORTEST_FIT or not seat.core.closed:
             continue
-        chooser = Chooser.GIVEN if i in wanted else Chooser.MOLDGEN
-        pins.append(_pin(seat, f"core pin {len(pins) + 1}", chooser))
+        chooser = Chooser.GIVEN if i in wanted else Chooser.KEPT if item else Chooser.MOLDGEN
+        pins.append(_pin(seat, item.name if item else free_name("core pin", names), chooser))
         notes += check_strength(view, seat.core, pins[-1], resin)
+        notes += resized(view, seat.core, item, pins[-1].diameter) if item else Notes()
     if pins or refused:
         why = "round cores up to 16 mm or longer than 1.5 diameters, not shallow (common practice)"
         notes += Notes(
             decisions=(Decision("core pins", f"{len(pins)} of {len(cores)} round cores", why, "", tuple(refused)),)
         )
     return tuple(pins), notes
+
+
+def _left(view: PartView, seat: _Seat, item: KeptItem | None, kept: KeptCores | None) -> tuple[str, Notes]:
+    """Return why a core stays in the block, "" if nothing stands against its pin: its seat, or kept ejector pins."""
+    place = view.place((seat.core.x, seat.core.y, seat.core.base_z))
+    if seat.trouble:
+        code, text, value, limit = seat.trouble[0]
+        told = dropped(item.name, Reason(code, text, value, limit, "mm"), place) if item else Notes()
+    else:
+        wide = max(clearance_bore_diameter(seat.diameter), seat.head + 0.5)
+        text = in_the_way(seat.core, wide, kept.ejectors) if kept and not item else ""
+        told = Notes()
+    return (f"core at {place[0]:g}, {place[1]:g}: {text}" if text else ""), told
+
+
+def _kept_seat(view: PartView, core: RoundCore, item: KeptItem | None) -> _Seat:
+    """Return the seat of a core; an accepted pin keeps its diameter where that makes no trouble."""
+    if item is not None:
+        seat = _seat(view, core, item.diameter)
+        if not seat.trouble:
+            return seat
+    return _seat(view, core)
 
 
 def _wanted(view: PartView, cores: list[RoundCore], at: tuple[Vector, ...]) -> tuple[set[int], Notes]:
@@ -136,8 +171,8 @@ def _pays(core: RoundCore) -> bool:
     return small and ratio >= CORE_PIN_SHALLOW.default and core.length >= SHORTEST
 
 
-def _seat(view: PartView, core: RoundCore) -> _Seat:
-    diameter, base = _shank(view, core)
+def _seat(view: PartView, core: RoundCore, wanted: float = 0.0) -> _Seat:
+    diameter, base = _shank(view, core, wanted)
     core = with_base(core, base)
     blank = core_pin_blank(diameter)
     trouble: list[tuple[str, str, float, float]] = []
@@ -161,16 +196,17 @@ def _seat(view: PartView, core: RoundCore) -> _Seat:
     return _Seat(core, blank, diameter, head, fit, tuple(trouble))
 
 
-def _shank(view: PartView, core: RoundCore) -> tuple[float, float]:
+def _shank(view: PartView, core: RoundCore, wanted: float = 0.0) -> tuple[float, float]:
     """Return the diameter of the shank and the height of its foot: a stock size where the part is level round it.
 
     A thicker shank forms a ring of the surface round the hole. Where that is not level, the shank is ground to the
-    core's own diameter.
+    core's own diameter. The diameter `wanted` is tried first.
     """
     stock = core_pin_blank(core.largest)
     ground = math.ceil(core.largest / GROUND + 0.2) * GROUND
     steps = np.arange(0.0, WIDEST_FOOT, GROUND)
-    tries = ([stock.diameter] if stock is not None and stock.diameter > core.largest + 1e-6 else []) + [
+    tries = [wanted] if wanted >= core.largest - 1e-6 else []
+    tries += ([stock.diameter] if stock is not None and stock.diameter > core.largest + 1e-6 else []) + [
         round(float(ground + 2 * step), 3) for step in steps
     ]
     for diameter in tries:

@@ -19,6 +19,9 @@ SPACING: Final = 1.0
 
 MOST_PLACES: Final = 240
 
+NEAR_STEP: Final = 0.25
+"""mm: distance of the places tried round one that is asked for."""
+
 ON_LEVEL: Final = 0.01
 """mm: the parting line counts as level within this."""
 
@@ -90,10 +93,13 @@ class Need:
     no_gate: frozenset[int]
 
 
-def find_edge_sites(view: PartView, need: Need) -> EdgeSites:
-    """Return the places along the outer parting line."""
+def find_edge_sites(view: PartView, need: Need, near: np.ndarray | None = None, within: float = 0.0) -> EdgeSites:
+    """Return the places along the outer parting line.
+
+    near : (3,) only the place nearest to this point in plan, first, and those up to `within` from it on the line [mm]
+    """
     line = _Line(view)
-    middle = line.places(view.middle)
+    middle = line.places(view.middle) if near is None else line.around(near, within)
     places, inward = line.at(middle), line.inward(middle, need.width)
     wall, faces = _entry(view, places, inward)
     wanted = need.wanted(wall)
@@ -132,6 +138,17 @@ class _Line:
         count = int(min(max(self._total / SPACING, 12), MOST_PLACES))
         even = (np.arange(count) + 0.5) / count * self._total
         return np.unique(np.r_[even, _crossings(self._closed, self._way, middle)])
+
+    def around(self, point: np.ndarray, within: float) -> np.ndarray:
+        """Return the way where the line is nearest to a point in plan, and ways up to `within` from it, nearest first."""
+        start, along = self._closed[:-1, :2], np.diff(self._closed[:, :2], axis=0)
+        length = np.maximum((along**2).sum(axis=1), 1e-18)
+        share = np.clip(((point[:2] - start) * along).sum(axis=1) / length, 0.0, 1.0)
+        gap = np.linalg.norm(start + share[:, None] * along - point[:2], axis=1)
+        best = int(np.argmin(np.round(gap, 9)))
+        way = self._way[best] + share[best] * (self._way[best + 1] - self._way[best])
+        steps = np.arange(1, int(within / NEAR_STEP) + 1) * NEAR_STEP
+        return np.asarray(way + np.r_[0.0, np.column_stack([steps, -steps]).ravel()])
 
     def inward(self, way: np.ndarray, width: float) -> np.ndarray:
         """Return the way into the part, across the chord over a width, (k, 2)."""

@@ -4,14 +4,17 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from typing import Final
 
 import numpy as np
 
 from moldgen.catalog import Resin, ejector_pin_down, ejector_pin_series
 from moldgen.finding import Finding, Notes, Severity
 from moldgen.layout.balance import shares
+from moldgen.layout.carry_pins import carry_pins
 from moldgen.layout.ejection_checks import check_balance, check_given, check_stays
 from moldgen.layout.keep_out import STEEL
+from moldgen.layout.kept import Kept, free_name
 from moldgen.layout.pin_kinds import Place, of_diameter, stack_up
 from moldgen.layout.pin_search import Task, search_pins, side_steel, size_cap
 from moldgen.layout.sites import Underside
@@ -24,6 +27,8 @@ from moldgen.rules.pushing import ejection_stroke_pye
 from moldgen.rules.sheet import given as given_line
 from moldgen.rules.sheet import measured
 from moldgen.spec.sections import Ejection
+
+ROLE: Final = "ejector pin"
 
 
 @dataclass(frozen=True)
@@ -51,6 +56,7 @@ def place_ejector_pins(
     core_pins: tuple[CorePinLayout, ...] = (),
     given: tuple[GivenPin, ...] | None = None,
     no_pins: frozenset[int] = frozenset(),
+    kept: Kept | None = None,
 ) -> tuple[EjectionLayout, Notes]:
     """Return the ejector pins of a part.
 
@@ -60,27 +66,31 @@ def place_ejector_pins(
     core_pins : pins whose bores must be kept clear
     given : the user's pins in the mold frame, None for auto; they are kept, and checked
     no_pins : numbers of the faces that must stay free
+    kept : an accepted layout: its pins stay where they keep the rules, and others are added where they do not suffice
 
     A pin pushes only where the part lies over its whole end face. The force is that of `find_sticking`.
     """
     sticking, notes = find_sticking(view, resin)
     notes += check_stays(view, sticking, hold_of_cavity(view, resin))
-    stroke, more = ejector_stroke(view, section)
+    stroke, more = ejector_stroke(view, section, 0.0 if kept is None else kept.stroke)
     notes += more
     task = Task(view, section, resin, Underside(view, no_pins), core_pins, sticking, stroke, no_pins)
-    kept, more = _given(task, given or ())
+    fixed, more = _given(task, given or ())
     notes += more
     found: list[Place] = []
     if given is None or section.add:
-        found, more = search_pins(task, kept)
+        found, more = search_pins(task, fixed) if kept is None else carry_pins(task, kept, fixed)
         notes += more
-    pins, more = _pins(task, [*kept, *found])
+    pins, more = _pins(task, [*fixed, *found])
     notes += more + check_balance(view, pins, sticking, resin)
     return EjectionLayout(pins, sticking.force, stroke, sticking), notes
 
 
-def ejector_stroke(view: PartView, section: Ejection) -> tuple[float, Notes]:
-    """Return the travel [mm] that frees the part: its depth on the core, and a margin; that of lifters if longer."""
+def ejector_stroke(view: PartView, section: Ejection, kept: float = 0.0) -> tuple[float, Notes]:
+    """Return the travel [mm] that frees the part: its depth on the core, and a margin; that of lifters if longer.
+
+    kept : travel of an accepted layout, which stays where it is enough; lifters are made for one travel of their own
+    """
     z = view.mesh.corners[view.core_side][:, :, 2]
     depth = float(max(z.max(), view.level) - min(z.min(), view.level)) if len(z) else 0.0
     needed = ejection_stroke_pye.line("ejector stroke", depth)
@@ -91,6 +101,10 @@ def ejector_stroke(view: PartView, section: Ejection) -> tuple[float, Notes]:
         if lifters > own:
             how = "the whole height of the part, and 10 mm: the most that is common practice"
             lines += (measured("stroke that the lifters are made for", lifters, "mm", "ejector stroke", how=how),)
+        if kept > own and lifters == 0.0:
+            how = "the accepted layout"
+            lines += (measured("stroke that is kept", kept, "mm", "ejector stroke", how=how),)
+            own = kept
         return max(own, lifters), Notes(quantities=lines)
     lines += (given_line("ejector stroke", section.stroke, "mm", "ejector stroke", where="ejection.stroke"),)
     if section.stroke >= needed.value - 1e-9:
@@ -191,25 +205,46 @@ def _fitting(task: Task, spot: np.ndarray) -> float:
 
 def _pins(task: Task, places: list[Place]) -> tuple[tuple[EjectorPinLayout, ...], Notes]:
     """Return the pins in the order of their places, with their share of the force."""
-    order = sorted(places, key=lambda p: (p.chooser is not Chooser.GIVEN, round(p.x, 3), round(p.y, 3)))
+    order = sorted(places, key=_rank)
+    names = _names(order)
     spots = np.array([[p.x, p.y] for p in order]).reshape(-1, 2)
     areas = np.array([math.pi / 4 * p.diameter**2 for p in order])
     forces = shares(spots, areas, task.sticking.force, task.sticking.centre)
     pins, ground = [], []
-    for number, (place, force) in enumerate(zip(order, forces, strict=True), 1):
-        pin, cut = _pin(task, place, number, float(force))
+    for name, place, force in zip(names, order, forces, strict=True):
+        pin, cut = _pin(task, place, name, float(force))
         pins.append(pin)
         if cut > 0.0:
             ground.append((cut, pin))
     return tuple(pins), _ground(task.view, ground)
 
 
-def _pin(task: Task, place: Place, number: int, force: float) -> tuple[EjectorPinLayout, float]:
+def _rank(place: Place) -> tuple[int, float, float]:
+    """Return what pins are sorted by: those of the spec, those that are kept in their own order, moldgen's."""
+    if place.chooser is Chooser.KEPT:
+        return 1, 0.0, 0.0
+    return (0 if place.chooser is Chooser.GIVEN else 2), round(place.x, 3), round(place.y, 3)
+
+
+def _names(order: list[Place]) -> list[str]:
+    """Return a name for each pin; one that is kept keeps its own, so that no two pins ever share one."""
+    given = sum(p.chooser is Chooser.GIVEN for p in order)
+    names = [f"{ROLE} {number}" for number in range(1, given + 1)]
+    taken = {*names, *(p.name for p in order if p.name)}
+    used = set(names)
+    for place in order[given:]:
+        own = place.name and place.name not in used
+        names.append(place.name if own else free_name(ROLE, taken))
+        used.add(names[-1])
+    return names
+
+
+def _pin(task: Task, place: Place, name: str, force: float) -> tuple[EjectorPinLayout, float]:
     """Return one pin, and how much of its shank is ground down to the tip's diameter [mm]."""
     kind, disc = place.kind, place.disc
     stack = stack_up(kind, task.view, task.stroke, disc.high, disc.low)
     pin = EjectorPinLayout(
-        name=f"ejector pin {number}",
+        name=name,
         x=place.x,
         y=place.y,
         tip_z=disc.high,

@@ -62,7 +62,7 @@ def check_given(
     if not any(math.isclose(d, diameter) for d in series):
         text = f"has a diameter of {diameter:g} mm, which is not in the standard series"
         found.append(("not_standard", Severity.CAUTION, text, diameter, None, "mm"))
-    found += _steel(view, pin, others, core_pins)
+    found += steel_beside(view, pin, others, core_pins)
     return Notes(
         tuple(
             Finding(
@@ -81,9 +81,10 @@ def check_given(
     )
 
 
-def _steel(
+def steel_beside(
     view: PartView, pin: Place, others: list[Place], core_pins: tuple[CorePinLayout, ...]
 ) -> list[tuple[str, Severity, str, float | None, float | None, str]]:
+    """Return what stands too close to a pin, each as code, severity, words, value, limit and unit."""
     x, y = pin.x, pin.y
     bore, limit = pin.kind.bore / 2, STEEL_BETWEEN_BORES.default
     found: list[tuple[str, Severity, str, float | None, float | None, str]] = []

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 from typing import Final
 
 import numpy as np
@@ -10,14 +11,16 @@ import numpy as np
 from moldgen.catalog import Resin
 from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.kernel.polygon import signed_area
+from moldgen.layout.carry_gate import carry_gate, found_again, yields
 from moldgen.layout.flow_paths import find_flow_paths
 from moldgen.layout.gate_edge import edge_gate
 from moldgen.layout.gate_size import check_flow, melt_of
 from moldgen.layout.gate_task import FAR, Found, Task
 from moldgen.layout.gate_top import top_gate, usual_top
+from moldgen.layout.kept import Kept
 from moldgen.layout.top_sites import find_top_sites
 from moldgen.layout.view import PartView
-from moldgen.model.layout import GateKind, GateLayout
+from moldgen.model.layout import Chooser, GateKind, GateLayout
 from moldgen.model.part import Vector
 from moldgen.spec.sections import Gate
 
@@ -32,7 +35,12 @@ CENTRAL: Final = 0.05
 
 
 def place_gate(
-    view: PartView, section: Gate, resin: Resin, at: Vector | None = None, no_gate: frozenset[int] = frozenset()
+    view: PartView,
+    section: Gate,
+    resin: Resin,
+    at: Vector | None = None,
+    no_gate: frozenset[int] = frozenset(),
+    kept: Kept | None = None,
 ) -> tuple[GateLayout, Notes]:
     """Return the gate.
 
@@ -41,6 +49,7 @@ def place_gate(
     section : `gate` of the spec; its `at` is not read
     at : the place asked for, in the mold frame [mm]
     no_gate : numbers of the faces that the gate must stay off
+    kept : an accepted layout: its gate stays where it keeps the rules, unless the spec gives another place or kind
 
     The place is the one with the shortest longest flow, thick walls preferred (the melt should flow from thick to
     thin), whose whole mouth opens into the part. Without a kind: an edge gate on the outer parting line; from above, in
@@ -51,12 +60,37 @@ def place_gate(
     melt, notes = melt_of(view, resin)
     place = None if at is None else np.asarray(at, float)
     task = Task(view, section, resin, melt, find_flow_paths(view), place, no_gate)
+    found, more = _chosen(task, kept)
+    gate = found.gate
+    notes += found.notes + check_flow(view, resin, gate.flow_length, found.end) + more
+    return gate, notes + Notes(_judged(task, found))
+
+
+def _chosen(task: Task, kept: Kept | None) -> tuple[Found, Notes]:
+    """Return the gate that is kept, else the best that is found."""
+    asked = "" if kept is None or kept.gate is None else yields(task, kept.gate)
+    if kept is None or kept.gate is None or asked:
+        found, notes = _searched(task)
+        return found, notes + Notes(decisions=(Decision("gate kept", "no", asked),) if asked else ())
+    if kept.same_part:
+        found, notes = _searched(task)
+        if found_again(found.gate, kept.gate):
+            return replace(found, gate=replace(found.gate, chosen_by=Chooser.KEPT)), notes
+    stays, more = carry_gate(task, kept.gate)
+    if stays is not None:
+        return stays, more
+    found, notes = _searched(task)
+    return found, more + notes
+
+
+def _searched(task: Task) -> tuple[Found, Notes]:
+    """Return the best gate of the kinds that come into question, and why it is the one."""
     kinds, why = _kinds(task)
     found = _of_kind(task, kinds[0])
     refused = []
     for kind in kinds[1:]:
         # a kind that the spec names is left only when its mouth would miss the part
-        if not found.broken or (section.kind != "auto" and found.open > 0.0):
+        if not found.broken or (task.section.kind != "auto" and found.open > 0.0):
             break
         other = _of_kind(task, kind)
         worse, better = (found, other) if other.badness < found.badness else (other, found)
@@ -64,9 +98,8 @@ def place_gate(
         found = better
         why = "the usual kind has no free place" if found is other else why
     gate = found.gate
-    decision = Decision("gate", f"{gate.kind.value} gate at {_text(view.place(gate.at))}", why, "", tuple(refused))
-    notes += found.notes + check_flow(view, resin, gate.flow_length, found.end) + Notes(decisions=(decision,))
-    return gate, notes + Notes(_judged(task, found))
+    text = f"{gate.kind.value} gate at {_text(task.view.place(gate.at))}"
+    return found, Notes(decisions=(Decision("gate", text, why, "", tuple(refused)),))
 
 
 def _of_kind(task: Task, kind: GateKind) -> Found:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 from typing import Final
 
 import numpy as np
@@ -11,7 +12,7 @@ from moldgen.layout.edge_sites import EdgeSites, Need, find_edge_sites
 from moldgen.layout.gate_size import size_edge, wanted_edge
 from moldgen.layout.gate_task import ASIDE, FAR, MOST_WEIGHED, Found, Task
 from moldgen.layout.mouth import open_share
-from moldgen.model.layout import GateKind, GateLayout
+from moldgen.model.layout import Chooser, GateKind, GateLayout
 from moldgen.rules.practice import SPRUE_TAPER
 
 OBLIQUE: Final = 0.05
@@ -39,7 +40,28 @@ def edge_gate(task: Task) -> Found:
     share = _mouths(task, sites, order[:CHECKED], usual.land + usual.runner)
     whole = np.flatnonzero((share >= WHOLE) & (sites.troubles[order[:CHECKED]] == sites.troubles[order[0]]))
     first = int(whole[0]) if len(whole) else int(np.argmax(share))
-    choice = int(order[first])
+    return _made(task, sites, int(order[first]), float(share[first]))
+
+
+def edge_gate_near(task: Task, at: np.ndarray, within: float) -> Found:
+    """Return the edge gate nearest to a point on the parting line that keeps all rules, at most `within` away [mm].
+
+    Where none does, the one at the place itself, with the rules that it breaks.
+    """
+    view = task.view
+    height = float(view.high[2] - view.level)
+    usual, _ = size_edge(task.section, task.resin, task.melt, view.wall, height)
+    sites = find_edge_sites(view, _need(task, (usual.width, usual.land, usual.runner, usual.foot)), at, within)
+    share = _mouths(task, sites, np.arange(len(sites.places)), usual.land + usual.runner)
+    good = np.flatnonzero((share >= WHOLE) & (sites.troubles == 0))
+    choice = int(good[0]) if len(good) else 0
+    found = _made(task, sites, choice, float(share[choice]))
+    return replace(found, gate=replace(found.gate, chosen_by=Chooser.KEPT))
+
+
+def _made(task: Task, sites: EdgeSites, choice: int, share: float) -> Found:
+    view = task.view
+    height = float(view.high[2] - view.level)
     room = (float(sites.room[choice, 0]), float(sites.room[choice, 1])) if sites.fullness[choice] > 0.0 else None
     made, notes = size_edge(task.section, task.resin, task.melt, float(sites.wall[choice]), height, room)
     end, flow = task.flow_from(sites.places[choice])
@@ -61,9 +83,9 @@ def edge_gate(task: Task) -> Found:
         in_cavity=bool(sites.above[choice]),
     )
     broken = tuple(text for text, broken in sites.reasons if broken[choice])
-    if share[first] < WHOLE and not broken:
+    if share < WHOLE and not broken:
         broken = (NOT_WHOLE,)
-    return Found(gate, notes, broken, float(share[first]), end)
+    return Found(gate, notes, broken, share, end)
 
 
 def _need(task: Task, usual: tuple[float, float, float, float]) -> Need:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 from typing import Final
 
 import numpy as np
@@ -10,11 +11,17 @@ import numpy as np
 from moldgen.layout.gate_size import size_pin, size_sprue
 from moldgen.layout.gate_task import ASIDE, MOST_WEIGHED, Found, Task
 from moldgen.layout.top_sites import BESIDE, TopSites, centered, find_top_sites
-from moldgen.model.layout import GateKind, GateLayout
+from moldgen.model.layout import Chooser, GateKind, GateLayout
 from moldgen.rules.practice import SPRUE_TAPER
 
 SMALLER: Final = (1.0, 0.75, 0.5)
 """Shares of the usual diameter of a pin gate that are tried, the largest that finds room is taken."""
+
+NEAR_STEP: Final = 0.5
+"""mm: distance of the places tried round one that is asked for."""
+
+OPEN: Final = 0.999
+"""Share of a mouth from which it counts as wholly open."""
 
 PARTLY: Final = 5.0
 """Cost of a mouth that is not wholly open, by its closed share."""
@@ -39,7 +46,21 @@ def top_gate(task: Task, kind: GateKind) -> Found:
     return best
 
 
-def _of_size(task: Task, kind: GateKind, share: float) -> Found:
+def top_gate_near(task: Task, kind: GateKind, at: np.ndarray, within: float) -> Found:
+    """Return the gate from above nearest to a place that keeps all rules, at most `within` from it in plan [mm].
+
+    Where none does, the one at the place itself, with the rules that it breaks.
+    """
+    steps = NEAR_STEP * np.arange(-int(within / NEAR_STEP), int(within / NEAR_STEP) + 1)
+    ways = np.stack(np.meshgrid(steps, steps, indexing="ij"), axis=-1).reshape(-1, 2)
+    far = np.round(np.linalg.norm(ways, axis=1), 6)
+    order = np.lexsort((ways[:, 1], ways[:, 0], far))
+    found = _of_size(task, kind, 1.0, at[:2] + ways[order[far[order] <= within]])
+    return replace(found, gate=replace(found.gate, chosen_by=Chooser.KEPT))
+
+
+def _of_size(task: Task, kind: GateKind, share: float, near: np.ndarray | None = None) -> Found:
+    """Return the best gate of a size; near : (k, 2) only at the first of these places that keeps all rules."""
     view = task.view
     height = float(view.high[2] - view.body.box[1][2])
     if kind is GateKind.PIN:
@@ -49,7 +70,11 @@ def _of_size(task: Task, kind: GateKind, share: float) -> Found:
     else:
         diameter = size_sprue(task.section, task.resin, task.melt, view.wall, height)[0].diameter
         widest = diameter
-    sites, choice = _best(task, diameter, widest)
+    if near is None:
+        sites, choice = _best(task, diameter, widest)
+    else:
+        sites = find_top_sites(view, near, diameter, task.no_gate, widest)
+        choice = int(np.argmin((sites.troubles > 0) | (sites.open < OPEN)))
     spot = tuple(float(v) for v in sites.places[choice])
     wall, height = float(sites.wall[choice]), float(view.high[2]) - spot[2]
     if kind is GateKind.PIN:

@@ -52,13 +52,14 @@ class PinKind:
 
 @dataclass(frozen=True)
 class Place:
-    """One ejector pin: axis [mm] and size, what lies over its end face, who chose it."""
+    """One ejector pin: axis [mm] and size, what lies over its end face, who chose it; name : of one that is kept."""
 
     x: float
     y: float
     kind: PinKind
     disc: Disc
     chooser: Chooser
+    name: str = ""
 
     @property
     def diameter(self) -> float:

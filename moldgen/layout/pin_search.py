@@ -59,7 +59,11 @@ HEADS_APART: Final = 1.5
 
 @dataclass(frozen=True)
 class Task:
-    """What the search for places works on. bores : core pins whose bores must be kept clear; stroke : travel [mm]."""
+    """What the search for places works on.
+
+    bores : core pins whose bores must be kept clear; stroke : travel [mm]
+    most : how many pins there may be, with those that are kept, unless the force asks for more; 0 for `MOST_PINS`
+    """
 
     view: PartView
     section: Ejection
@@ -69,6 +73,7 @@ class Task:
     sticking: Sticking
     stroke: float
     no_pins: frozenset[int]
+    most: int = 0
 
 
 def size_cap(view: PartView) -> float:
@@ -104,7 +109,7 @@ def search_pins(task: Task, kept: list[Place]) -> tuple[list[Place], Notes]:
     best = _on_slopes(grounds, kept, load, _straight_kinds(task))
     why = "thickest standard pins whose places are hardly farther from what sticks than those of thinner ones"
     few = int(EJECTOR_FEWEST.default) - len(kept)
-    for edge in _small_edges(task):
+    for edge in small_edges(task):
         if best is not None and (best.enough or (len(best.places) >= few and not best.kind.stepped)):
             break
         other = _on_slopes(grounds, kept, load, _small_kinds(task, edge))
@@ -153,7 +158,7 @@ def _small_kinds(task: Task, edge: float) -> list[PinKind]:
     return [shouldered(p, edge) for p in series if wanted is None or math.isclose(p.diameter, wanted)]
 
 
-def _small_edges(task: Task) -> list[float]:
+def small_edges(task: Task) -> list[float]:
     """Return the edge clearances of shouldered pins, in the order tried; one that the spec gives is kept."""
     limit = task.section.edge_clearance
     if "edge_clearance" in task.section.model_fields_set:
@@ -184,8 +189,8 @@ def _size_and_places(task: Task, kept: list[Place], load: Load, kinds: list[PinK
         choice = _choose(task, kind, (places, room, group), load, fixed)
         if choice is None or choice.count() <= len(kept):
             continue
-        pressure = _highest_pressure(task, kept, choice.result(), kind.diameter)
-        enough = choice.count() >= _counts(task, kind).least and pressure <= task.resin.push_pressure
+        pressure = highest_pressure(task, kept, choice.result(), kind.diameter)
+        enough = choice.count() >= counts_of(task, kind).least and pressure <= task.resin.push_pressure
         tried.append(_Proposal(choice.result(), kind, pressure, enough, choice.cost()))
         if sum(p.enough for p in tried) >= SIZES_TRIED:
             break
@@ -197,7 +202,7 @@ def _size_and_places(task: Task, kept: list[Place], load: Load, kinds: list[PinK
     return min(tried, key=lambda p: (max(few - len(p.places), 0), p.pressure), default=None)
 
 
-def _highest_pressure(task: Task, kept: list[Place], places: np.ndarray, diameter: float) -> float:
+def highest_pressure(task: Task, kept: list[Place], places: np.ndarray, diameter: float) -> float:
     """Return the highest pressure of a pin on the part when these pins are added to the kept ones [MPa]."""
     spots = np.vstack([np.array([[p.x, p.y] for p in kept]).reshape(-1, 2), places])
     areas = math.pi / 4 * np.r_[[p.diameter**2 for p in kept], np.full(len(places), diameter**2)]
@@ -209,7 +214,7 @@ def _choose(
 ) -> Choice | None:
     places, room, group = grid
     spots = places[room >= kind.room]
-    spots = spots[_clear(task, spots, kind)]
+    spots = spots[clear_of_steel(task, spots, kind)]
     if len(spots) == 0:
         return None
     apart = kind.head_diameter + HEADS_APART
@@ -218,11 +223,11 @@ def _choose(
         sets = units(spots, group[:1], task.view.middle, apart)
     sets = sets[:: math.ceil(len(sets) / MOST_UNITS)]
     choice = Choice(spots, sets, load, apart, fixed)
-    choice.search(_counts(task, kind))
+    choice.search(counts_of(task, kind))
     return choice
 
 
-def _counts(task: Task, kind: PinKind) -> Counts:
+def counts_of(task: Task, kind: PinKind) -> Counts:
     """Return how many pins of a size the part and the pins themselves ask for."""
     force, limit = task.sticking.force, task.resin.push_pressure
     area = math.pi / 4 * kind.diameter**2
@@ -231,10 +236,10 @@ def _counts(task: Task, kind: PinKind) -> Counts:
     level = task.view.level
     hold = stack_up(kind, task.view, task.stroke, level, level).buckling / BUCKLING_SAFETY.default
     least = max(int(EJECTOR_FEWEST.default), math.ceil(max(by_pressure, by_punch, force / hold) - 1e-9))
-    return Counts(least, max(MOST_PINS, 2 * least))
+    return Counts(least, max(task.most, least) if task.most else max(MOST_PINS, 2 * least))
 
 
-def _clear(task: Task, places: np.ndarray, kind: PinKind) -> np.ndarray:
+def clear_of_steel(task: Task, places: np.ndarray, kind: PinKind) -> np.ndarray:
     """Return which places keep clear of core pins, side actions and the sides of the block, (k,) bool."""
     bore = kind.bore / 2
     view, steel = task.view, STEEL_BETWEEN_BORES.default
@@ -286,7 +291,7 @@ def _small(task: Task, found: list[Place], kind: PinKind) -> Notes:
 
 def _no_room(task: Task, kept: list[Place]) -> Notes:
     _, room = task.under.fine_grid
-    kinds = [*_straight_kinds(task), *(k for e in _small_edges(task) for k in _small_kinds(task, e))]
+    kinds = [*_straight_kinds(task), *(k for e in small_edges(task) for k in _small_kinds(task, e))]
     needed = min(kind.room for kind in kinds)
     widest = float(room.max()) if len(room) else 0.0
     if widest <= 0.0:

@@ -56,12 +56,11 @@ class AcceptedGate:
 
 @dataclass(frozen=True)
 class AcceptedSide:
-    """One side action. direction : unit vector along which it releases; at : where its component stands."""
+    """One side action. direction : unit vector along which it releases: of a lifter, square to the pull."""
 
     name: str
     kind: SideKind
     direction: Vector
-    at: Vector
 
 
 @dataclass(frozen=True)

@@ -13,6 +13,7 @@ class Chooser(StrEnum):
 
     GIVEN = "given in the spec"
     MOLDGEN = "placed by moldgen"
+    KEPT = "kept from the accepted layout"
 
 
 @dataclass(frozen=True)
@@ -123,10 +124,14 @@ class GateLayout:
 
 @dataclass(frozen=True)
 class Layout:
-    """Everything bored or cut into the halves."""
+    """Everything bored or cut into the halves.
+
+    cores_in_block : feet of the round cores that are part of the core block, on their axes
+    """
 
     core_pins: tuple[CorePinLayout, ...]
     ejector_pins: tuple[EjectorPinLayout, ...]
     gate: GateLayout
     stroke_mm: float
     ejection_force_n: float
+    cores_in_block: tuple[Vector, ...] = ()

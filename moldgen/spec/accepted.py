@@ -166,7 +166,6 @@ class _Side(Section):
     name: Text
     kind: Literal["slide", "lifter"]
     direction: _Unit
-    at: _Place
 
 
 class _Parting(Section):
@@ -207,5 +206,5 @@ class _File(Section):
             ejector_pins=tuple(AcceptedPin(p.name, p.at, p.diameter, p.length, p.feature) for p in self.ejection.pins),
             core_pins=tuple(AcceptedCore(c.name, c.at, c.diameter, c.feature) for c in self.core_pins),
             cores_in_block=tuple(AcceptedCore(c.name, c.at, 0.0, c.feature) for c in self.cores_in_block),
-            side_actions=tuple(AcceptedSide(s.name, SideKind(s.kind), s.direction, s.at) for s in self.side_actions),
+            side_actions=tuple(AcceptedSide(s.name, SideKind(s.kind), s.direction) for s in self.side_actions),
         )

@@ -6,7 +6,7 @@ from collections.abc import Iterable, Iterator, Mapping
 from typing import Any, Final
 
 from moldgen.canon import to_json
-from moldgen.model.accepted import FORMAT, Accepted, AcceptedCore
+from moldgen.model.accepted import FORMAT, Accepted, AcceptedCore, AcceptedSide
 from moldgen.model.face_sign import AXIS_DIGITS, DIGITS, FaceSign
 from moldgen.model.layout import GateKind
 
@@ -60,13 +60,8 @@ def _lines(accepted: Accepted) -> Iterator[str]:
     )
 
 
-def _side(side: Any) -> dict[str, str]:
-    return {
-        "name": _text(side.name),
-        "kind": side.kind.value,
-        "direction": _direction(side.direction),
-        "at": _point(side.at),
-    }
+def _side(side: AcceptedSide) -> dict[str, str]:
+    return {"name": _text(side.name), "kind": side.kind.value, "direction": _direction(side.direction)}
 
 
 def _core(core: AcceptedCore) -> dict[str, str]:

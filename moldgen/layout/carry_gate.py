@@ -1,0 +1,147 @@
+"""The gate of an accepted layout on the changed part: kept where it keeps the rules, else moved a little or left."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import replace
+from typing import Any, Final
+
+import numpy as np
+
+from moldgen.finding import Decision, Finding, Notes, Severity
+from moldgen.layout.gate_edge import edge_gate_near
+from moldgen.layout.gate_task import Found, Task
+from moldgen.layout.gate_top import top_gate_near
+from moldgen.layout.kept import MOST_MOVED, REMEDY, KeptGate, Reason, dropped, followed, moved
+from moldgen.model.layout import GateKind, GateLayout
+from moldgen.model.part import Vector
+from moldgen.rules.filling import round_shear_rate, slot_shear_rate
+
+ROUNDING: Final = 2e-6
+"""mm: an accepted layout is written with six decimals."""
+
+ON_LINE: Final = 0.05
+"""mm: a point this close to the parting line of the mesh lies on it: half the sag of the mesh on round walls."""
+
+SOURCE: Final = "the accepted layout"
+
+SIZES: Final = {
+    GateKind.EDGE: ("width", "depth", "land"),
+    GateKind.PIN: ("diameter", "land"),
+    GateKind.SPRUE: ("diameter",),
+}
+
+
+def yields(task: Task, kept: KeptGate) -> str:
+    """Return why the spec has the accepted gate forgotten, "" if it does not."""
+    if task.at is not None:
+        return "the spec gives the place"
+    if task.section.kind not in ("auto", kept.kind.value):
+        return f"the spec asks for a gate of kind {task.section.kind}, the accepted one is of kind {kept.kind.value}"
+    return ""
+
+
+def found_again(gate: GateLayout, kept: KeptGate) -> bool:
+    """Return whether a gate that was searched anew is the accepted one."""
+    sizes = (abs(getattr(gate, name) - getattr(kept, name)) for name in SIZES[kept.kind])
+    return (
+        gate.kind is kept.kind and max(*sizes, *(abs(a - b) for a, b in zip(gate.at, kept.at, strict=True))) < ROUNDING
+    )
+
+
+def carry_gate(task: Task, kept: KeptGate) -> tuple[Found | None, Notes]:
+    """Return the accepted gate as far as it can stay, None where it cannot, with the reason.
+
+    Its sizes stay too, those of the spec aside; where the mouth has no room for them or the melt would shear too much,
+    those of the rules are taken.
+    """
+    at = task.view.place(kept.at)
+    notes = followed("the gate", kept.shift, at)
+    sized, plain = _sized(task, kept), replace(task, section=task.section.model_copy(update={"kind": kept.kind.value}))
+    here, free = _at(sized, kept, 0.0), _at(plain, kept, 0.0)
+    size = _size_trouble(sized, plain, here, free)
+    if not here.broken and size is None:
+        return _as_accepted(task, here, kept), notes + _kept(task, here, "place and size")
+    if not free.broken:
+        reason = size or Reason("gate", "; ".join(here.broken))
+        return free, notes + _resized(task, free, kept, reason) + _kept(task, free, "place")
+    reason = Reason("gate", "; ".join(here.broken or free.broken))
+    if kept.gone:
+        reason = replace(reason, text=f"the face that it stood on is gone; {reason.text}")
+    for other in (_at(sized, kept, MOST_MOVED), _at(plain, kept, MOST_MOVED)):
+        if not other.broken:
+            off = math.dist(other.gate.at[:2], kept.at[:2])
+            return _as_accepted(task, other, kept), notes + moved("the gate", off, reason, at) + _kept(
+                task, other, "kind"
+            )
+    return None, dropped("the gate", reason, at)
+
+
+def _sized(task: Task, kept: KeptGate) -> Task:
+    """Return the task with the accepted sizes, as far as the spec gives none."""
+    update: dict[str, Any] = {"kind": kept.kind.value}
+    for name in SIZES[kept.kind]:
+        if getattr(task.section, name) is None and getattr(kept, name) > 0.0:
+            update[name] = getattr(kept, name)
+    return replace(task, section=task.section.model_copy(update=update))
+
+
+def _at(task: Task, kept: KeptGate, within: float) -> Found:
+    place = np.array(kept.at)
+    if kept.kind is not GateKind.EDGE:
+        return top_gate_near(task, kept.kind, place, within)
+    found = edge_gate_near(task, place, within)
+    off = math.dist(found.gate.at[:2], kept.at[:2])
+    if off < ON_LINE:
+        spot: Vector = (kept.at[0], kept.at[1], found.gate.at[2])
+        return replace(found, gate=replace(found.gate, at=spot))
+    if within == 0.0 or off > MOST_MOVED:
+        return replace(found, broken=(f"the parting line runs {off:.2f} mm beside it", *found.broken))
+    return found
+
+
+def _size_trouble(sized: Task, plain: Task, here: Found, free: Found) -> Reason | None:
+    """Return whether the accepted sizes shear the melt more than it bears, and the rules' sizes less."""
+    if here.broken or sized.section == plain.section:
+        return None
+    limit, own, other = sized.resin.shear_limit, _shear(sized, here.gate), _shear(plain, free.gate)
+    if own <= limit * (1.0 + 1e-6) or other >= own * 0.999:
+        return None
+    return Reason("shear", f"the melt would shear in it with {own:.0f} 1/s", own, limit, "1/s")
+
+
+def _shear(task: Task, gate: GateLayout) -> float:
+    if gate.kind is GateKind.EDGE:
+        return float(slot_shear_rate(task.melt.rate, gate.width, gate.depth))
+    return float(round_shear_rate(task.melt.rate, gate.diameter))
+
+
+def _as_accepted(task: Task, found: Found, kept: KeptGate) -> Found:
+    """Return the gate with the accepted sizes told as such: they were handed on as if the spec gave them."""
+    keys = {f"gate.{name}" for name in SIZES[kept.kind] if getattr(task.section, name) is None}
+    lines = tuple(replace(q, source=SOURCE) if q.source in keys else q for q in found.notes.quantities)
+    return replace(found, notes=replace(found.notes, quantities=lines))
+
+
+def _kept(task: Task, found: Found, what: str) -> Notes:
+    place = ", ".join(f"{v:g}" for v in task.view.place(found.gate.at))
+    text = f"{found.gate.kind.value} gate at {place}"
+    return Notes(decisions=(Decision("gate", text, f"{what} of the accepted layout keep the rules"),))
+
+
+def _resized(task: Task, found: Found, kept: KeptGate, reason: Reason) -> Notes:
+    def told(item: GateLayout | KeptGate) -> str:
+        return f"{item.width:g} x {item.depth:g}" if kept.kind is GateKind.EDGE else f"{item.diameter:g}"
+
+    finding = Finding(
+        "accepted.resized",
+        Severity.CAUTION,
+        f"the gate becomes {told(found.gate)} mm instead of {told(kept)} mm: {reason.text}",
+        where="gate",
+        at=task.view.place(found.gate.at),
+        value=reason.value,
+        limit=reason.limit,
+        unit=reason.unit,
+        remedy=REMEDY,
+    )
+    return Notes((finding,))

@@ -1,0 +1,128 @@
+"""What an accepted layout asks to keep, in the mold frame [mm], each item where its feature stands now."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Final
+
+from moldgen.finding import Finding, Notes, Point, Severity
+from moldgen.model.layout import GateKind
+from moldgen.model.part import Vector
+
+MOST_MOVED: Final = 5.0
+"""mm: how far a kept pin or gate is moved to a place that keeps the rules (our choice: about the head of a pin; what
+would have to go farther is another pin)."""
+
+REMEDY: Final = "accept the new layout with 'moldgen accept', or fix this item in the spec"
+
+
+@dataclass(frozen=True)
+class KeptItem:
+    """A pin or round core. shift : how far its feature moved, in part coordinates; gone : the feature is no more."""
+
+    name: str
+    at: Vector
+    diameter: float
+    shift: Vector = (0.0, 0.0, 0.0)
+    gone: bool = False
+
+
+@dataclass(frozen=True)
+class KeptGate:
+    """The gate. Sizes that its kind has not are 0."""
+
+    kind: GateKind
+    at: Vector
+    width: float = 0.0
+    depth: float = 0.0
+    land: float = 0.0
+    diameter: float = 0.0
+    shift: Vector = (0.0, 0.0, 0.0)
+    gone: bool = False
+
+
+@dataclass(frozen=True)
+class Kept:
+    """A whole layout.
+
+    same_part : it was made for this very part: then a layout that moldgen finds again is taken to the last digit
+    cores_in_block : round cores that are no pins
+    """
+
+    ejector_pins: tuple[KeptItem, ...] = ()
+    core_pins: tuple[KeptItem, ...] = ()
+    cores_in_block: tuple[KeptItem, ...] = ()
+    gate: KeptGate | None = None
+    stroke: float = 0.0
+    same_part: bool = False
+
+
+@dataclass(frozen=True)
+class Reason:
+    """A rule that a place breaks: code, words, value against limit."""
+
+    code: str
+    text: str
+    value: float | None = None
+    limit: float | None = None
+    unit: str = ""
+
+
+def followed(name: str, shift: Vector, at: Point) -> Notes:
+    """Return the note that an item moved with its feature, if it did."""
+    if max(map(abs, shift)) == 0.0:
+        return Notes()
+    way = ", ".join(f"{v:g}" for v in shift)
+    return Notes(
+        (
+            Finding(
+                "accepted.follows",
+                Severity.NOTE,
+                f"{name} follows the face that it belongs to, which moved by {way} mm",
+                at=at,
+            ),
+        )
+    )
+
+
+def still_held(name: str, at: Point) -> Notes:
+    """Return the note that an item stays although its feature is gone: what is there now bears it as well."""
+    text = f"the face that {name} belongs to is gone; what is there now bears it as well, so it stays where it was"
+    return Notes((Finding("accepted.face_gone", Severity.NOTE, text, at=at),))
+
+
+def moved(name: str, by: float, reason: Reason, at: Point) -> Notes:
+    """Return the finding that an item stands `by` mm from where it was accepted, and why."""
+    text = f"{name} of the accepted layout is moved by {by:.2f} mm: {reason.text}"
+    return Notes((_told("accepted.moved", text, reason, at),))
+
+
+def dropped(name: str, reason: Reason, at: Point) -> Notes:
+    """Return the finding that an item is not kept, and why."""
+    return Notes((_told("accepted.dropped", f"{name} of the accepted layout is not kept: {reason.text}", reason, at),))
+
+
+def _told(code: str, text: str, reason: Reason, at: Point) -> Finding:
+    return Finding(
+        code,
+        Severity.CAUTION,
+        text,
+        where=reason.code,
+        at=at,
+        value=None if reason.value is None else round(reason.value, 3),
+        limit=None if reason.limit is None else round(reason.limit, 3),
+        unit=reason.unit,
+        remedy=REMEDY,
+    )
+
+
+def free_name(role: str, taken: set[str]) -> str:
+    """Return the first numbered name of a role after all that are taken, and enter it there.
+
+    >>> free_name("core pin", {"core pin 1", "core pin 4"})
+    'core pin 5'
+    """
+    numbers = [int(t) for t in (name.removeprefix(f"{role} ") for name in taken) if t.isdecimal()]
+    name = f"{role} {max(numbers, default=0) + 1}"
+    taken.add(name)
+    return name
