@@ -23,9 +23,15 @@ def copied(shape: TopoDS_Shape) -> TopoDS_Shape:
     return BRepBuilderAPI_Copy(shape).Shape()
 
 
-def cut(shape: TopoDS_Shape, tools: Sequence[TopoDS_Shape]) -> list[TopoDS_Shape]:
-    """Return the solids left of `shape` when all tools are cut from it at once."""
-    return _run("cut", BRepAlgoAPI_Cut(), [shape], tools)
+def cut(shape: TopoDS_Shape, tools: Sequence[TopoDS_Shape], fuzzy: float = 0.0) -> list[TopoDS_Shape]:
+    """Return the solids left of `shape` when all tools are cut from it at once.
+
+    fuzzy : what lies this close [mm] is taken for one; 0 for the kernel's own tolerance
+    """
+    tool = BRepAlgoAPI_Cut()
+    if fuzzy:
+        tool.SetFuzzyValue(fuzzy)
+    return _run("cut", tool, [shape], tools)
 
 
 def fuse(shapes: Sequence[TopoDS_Shape]) -> list[TopoDS_Shape]:
