@@ -7,9 +7,13 @@ are elementary surfaces are read as those.
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from functools import cached_property
 
 import numpy as np
+from OCP.BRepBuilderAPI import BRepBuilderAPI_MakeVertex
+from OCP.BRepExtrema import BRepExtrema_DistShapeShape
 from OCP.BRepGProp import BRepGProp
+from OCP.gp import gp_Pnt
 from OCP.GProp import GProp_GProps
 from OCP.TopoDS import TopoDS_Shape
 from scipy.sparse import coo_matrix
@@ -41,10 +45,47 @@ class PartSigns:
         face, distance = self.body.nearest_face(np.asarray(point, dtype=float))
         return int(self.of_face[face]), distance
 
+    @cached_property
+    def links(self) -> tuple[frozenset[int], ...]:
+        """The signs that each sign touches along an edge."""
+        around: list[set[int]] = [set() for _ in self.signs]
+        for a, b in self.of_face[self.body.edge_faces]:
+            if a != b:
+                around[a].add(int(b))
+                around[b].add(int(a))
+        return tuple(frozenset(s) for s in around)
+
+    def samples(self, number: int, count: int) -> np.ndarray:
+        """Return middles of a face's largest triangles, at most `count`, (n, 3) [mm]: on round faces only near it."""
+        own = self._triangles(number)
+        order = np.lexsort((own, -self.body.triangle_areas[own]))[:count]
+        return np.asarray(self.body.mesh.corners[own[order]].mean(axis=1))
+
+    def vertices(self, number: int, count: int) -> np.ndarray:
+        """Return points that lie on a face exactly, at most `count`, (n, 3) [mm]."""
+        used = np.unique(self.body.mesh.triangles[self._triangles(number)])
+        chosen = np.unique(np.linspace(0, len(used) - 1, count).round().astype(int)) if len(used) else used
+        return np.asarray(self.body.mesh.vertices[used[chosen]])
+
+    def box(self, number: int) -> tuple[np.ndarray, np.ndarray]:
+        """Return the lower and upper corner of a face's mesh, (3,), (3,) [mm]."""
+        corners = self.body.mesh.corners[self._triangles(number)].reshape(-1, 3)
+        return corners.min(axis=0), corners.max(axis=0)
+
+    def _triangles(self, number: int) -> np.ndarray:
+        return np.flatnonzero(np.isin(self.body.mesh.face, self.signs[number].faces))
+
+    def exact_distance(self, number: int, point: np.ndarray) -> float:
+        """Return the distance of a point from the faces of one sign [mm], measured on the surfaces themselves."""
+        with operation("measure how far a point is from a face", operands=(self.body.solid,)):
+            vertex = BRepBuilderAPI_MakeVertex(gp_Pnt(*point.tolist())).Vertex()
+            faces = [self.body.faces[f] for f in self.signs[number].faces]
+            return min(float(BRepExtrema_DistShapeShape(vertex, face).Value()) for face in faces)
+
     def distance(self, number: int, point: Vector) -> float:
         """Return the distance of a point from the faces of one sign [mm], measured on the mesh."""
         mesh = self.body.mesh
-        own = np.isin(mesh.face, self.signs[number].faces)
+        own = self._triangles(number)
         parts = {name: getattr(mesh, name)[own] for name in ("triangles", "face", "normals", "bulge")}
         return nearest_triangle(replace(mesh, **parts), np.asarray(point, dtype=float))[1]
 

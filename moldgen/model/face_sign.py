@@ -86,6 +86,42 @@ class FaceSign:
             twins=tuple(point(t) for t in self.twins),
         )
 
+    def scaled(self, factor: float) -> FaceSign:
+        """Return the same face of the part grown by `factor` about the origin."""
+
+        def grown(p: Vector) -> Vector:
+            return p[0] * factor, p[1] * factor, p[2] * factor
+
+        return replace(
+            self,
+            area_mm2=self.area_mm2 * factor**2,
+            center=grown(self.center),
+            spread=tuple(v * factor**2 for v in self.spread),  # type: ignore[arg-type]
+            at=grown(self.at),
+            radius=self.radius * factor,
+            minor=self.minor * factor,
+            perimeter_mm=self.perimeter_mm * factor,
+            rim=grown(self.rim),
+            twins=tuple(grown(t) for t in self.twins),
+        )
+
+    def mirrored(self) -> FaceSign:
+        """Return the same face of the part mirrored in the plane x = 0."""
+
+        def other_side(p: Vector) -> Vector:
+            return 0.0 - p[0], p[1], p[2]
+
+        xx, yy, zz, xy, xz, yz = self.spread
+        return replace(
+            self,
+            center=other_side(self.center),
+            spread=(xx, yy, zz, 0.0 - xy, 0.0 - xz, yz),
+            axis=other_side(self.axis),
+            at=other_side(self.at),
+            rim=other_side(self.rim),
+            twins=tuple(other_side(t) for t in self.twins),
+        )
+
     def to_plain(self) -> dict[str, Any]:
         """Return what a text file may hold, rounded to 1e-6 mm; the numbers of faces mean nothing there."""
         return {

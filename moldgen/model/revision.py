@@ -38,6 +38,7 @@ class Alignment:
     how : "as drawn: ...", "moved by ...", "turned by ... about ...": for the reader
     matched, faces : how many of the old part's faces lie on faces of the new one then, of how many
     residual_mm : largest distance between faces that match
+    scale : how much larger the whole new part is; 1 unless it is the old one grown or shrunk
     """
 
     rotation: tuple[Vector, Vector, Vector]
@@ -46,6 +47,7 @@ class Alignment:
     matched: int
     faces: int
     residual_mm: float
+    scale: float = 1.0
 
 
 class PartChangeKind(StrEnum):
