@@ -109,6 +109,39 @@ def build(spec: Path, output: Path | None, no_pictures: bool, explain: bool, **h
 
 
 @cli.command()
+@click.argument("spec", type=Path)
+@click.option("--output", type=Path, help="The output folder.  [default: as the spec says, else out/NAME]")
+@_allow_code
+@click.option("--no-pictures", is_flag=True, help="Leave out the pictures.")
+@partial(_shared, json_help="Print one JSON object a line on stdout for each rebuild, and nothing else there.")
+def watch(spec: Path, output: Path | None, allow_code: bool, no_pictures: bool, **how: Any) -> None:
+    """Build SPEC now and again whenever it, its part or its accepted layout is saved; Ctrl-C ends.
+
+    Each rebuild gives one line that says what changed. While the spec is broken the earlier output stays.
+    """
+    from moldgen.flow.progress import progress  # noqa: PLC0415  --help needs none of it
+    from moldgen.flow.watch import watch_spec  # noqa: PLC0415
+
+    _existing(spec, "spec")
+    shared = _How(**how)
+    job = Job(JobKind.BUILD, spec, output, Options(allow_code=allow_code, pictures=not no_pictures))
+    try:
+        watch_spec(
+            job,
+            shared.limits(),
+            lambda made: click.echo(
+                to_json(made.as_json(), indent=None) if shared.as_json else made.line() + "\n", nl=False
+            ),
+            partial(progress, quiet=shared.quiet),
+        )
+    except KeyboardInterrupt:
+        if shared.as_json:
+            click.echo(to_json(stopped_json(), indent=None), nl=False)
+        click.echo(f"moldgen: {ExitCode.STOPPED.meaning}", err=True)
+        raise click.exceptions.Exit(int(ExitCode.STOPPED)) from None
+
+
+@cli.command()
 @click.argument("folder", type=Path)
 @_shared
 def prove(folder: Path, **how: Any) -> None:

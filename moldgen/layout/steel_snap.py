@@ -27,6 +27,9 @@ ROOM: Final = 1.5
 ONE_LIP: Final = 3.0
 """mm: catch faces closer than this belong to one lip (our choice)."""
 
+ALIKE: Final = 0.9
+"""Cosine from which two lips point the same way (our choice)."""
+
 FAR: Final = 1e3
 """mm: stands for a way that nothing ends."""
 
@@ -39,7 +42,7 @@ class SnapLip:
     """One lip [mm, mold frame].
 
     catch : a point of the catch face, (3,); up : its outward normal, (3,)
-    reach : from the root to the tip, along the catch face; thickness : of the lip under the catch face, along the pull
+    reach : from the root to the tip, level; thickness : of the lip under the catch face, along the pull
     tip : number of the face at the tip
     """
 
@@ -51,19 +54,29 @@ class SnapLip:
 
 
 def snap_lips(part: FormedPart, halves: Halves) -> list[SnapLip]:
-    """Return the lips of the part, by place: of each the catch face with the least plastic under it."""
+    """Return the lips of the part, by place: of each the catch face with the least reach."""
     steep = np.abs(part.normals[:, 2]) > FACES_PULL
     found = _on(part, steep & (part.by_side >= 0))
     for loop in halves.parting_line[1:]:
         plan = np.asarray(loop, float)[:, :2]
         through = _on(part, steep & (part.by_side < 0) & contains(plan, part.centres[:, :2]))
         found += [lip for lip in through if _leaves(part, lip, plan)]
-    found.sort(key=lambda lip: (round(lip.thickness.length, 3), lip.catch.round(3).tolist()))
+    found.sort(key=lambda lip: (*np.round([lip.reach.length, lip.thickness.length], 2), lip.catch.round(3).tolist()))
     kept: list[SnapLip] = []
     for lip in found:
-        if all(np.linalg.norm(lip.catch - other.catch) > ONE_LIP for other in kept):
+        if not any(_one_lip(lip, other) for other in kept):
             kept.append(lip)
     return sorted(kept, key=lambda lip: lip.catch.round(3).tolist())
+
+
+def _one_lip(lip: SnapLip, other: SnapLip) -> bool:
+    """Return whether two catch faces are of one lip, or look at each other across the gap over one: one is the lip."""
+    off = lip.catch - other.catch
+    if np.linalg.norm(off) <= ONE_LIP:
+        return True
+    one, two = (x.reach.other - x.reach.one for x in (lip, other))
+    alike = one @ two > ALIKE * np.linalg.norm(one) * np.linalg.norm(two)
+    return bool(alike and lip.up[2] * other.up[2] < 0.0 and np.linalg.norm(off[:2]) <= LIP_MOST.default)
 
 
 def _on(part: FormedPart, asked: np.ndarray) -> list[SnapLip]:
@@ -121,7 +134,8 @@ def _measured(part: FormedPart, point: np.ndarray, up: np.ndarray, outward: np.n
     (thick,), (below,) = part.probe.first(under, -pull)
     if not (np.isfinite(back) and np.isfinite(ahead) and np.isfinite(thick)):
         return None
-    reach = Ends(point - back * outward, point + ahead * outward, part.normals[root], part.normals[tip])
+    level = outward * np.array([1.0, 1.0, 0.0])  # a lip reaches as far as it stands out, however its catch face leans
+    reach = Ends(point - back * level, point + ahead * level, part.normals[root], part.normals[tip])
     thickness = Ends(point, point - (thick + SKIN / abs(up[2])) * pull, up, part.normals[below])
     fits = LIP_LEAST.default <= reach.length <= LIP_MOST.default and thickness.length <= LIP_THICK.default
     room = free >= ahead + ROOM * reach.length
