@@ -16,7 +16,7 @@ from moldgen.flow.make_tool import Built
 from moldgen.flow.prove import proof_findings
 from moldgen.flow.record import component_files, component_record, notes_record, review_record
 from moldgen.flow.reread import TOOL_FILE
-from moldgen.flow.stages import Asked, Stages
+from moldgen.flow.stages import Asked, Stages, Versioned
 from moldgen.flow.words import direction_text
 from moldgen.model.proof import Proof
 from moldgen.output.pictures import PictureJob, start_pictures
@@ -82,7 +82,7 @@ def _proved(built: Built, folder: Path, stages: Stages) -> tuple[tuple[Proof, ..
 
     def prove() -> tuple[tuple[Proof, ...], dict[str, float]]:
         with stages.tell.stage("prove the tool") as stage:
-            bodies = reread_bodies(built.tool, folder)
+            bodies = reread_bodies(built.tool, folder, Versioned(stages.memory))
             proofs = prove_tool(bodies, built.claims)
             stage.detail = f"{sum(p.passed for p in proofs)} of {len(proofs)} passed"
             return proofs, exported_volumes(built.tool, bodies)
