@@ -312,7 +312,8 @@ def _told(listed: tuple[SteelSafe, ...], dropped: list[SteelSafe], section: Stee
             )
     if not listed and section.find == "none":
         return Notes(tuple(findings))
-    choice = f"{len(listed)} dimensions to be tuned are listed; the steel itself is cut to size"
+    count = f"{len(listed)} dimension{'' if len(listed) == 1 else 's'} to be tuned"
+    choice = f"{count}; advice only: the steel itself is cut to size"
     more = tuple(f"{d.feature}, {d.dimension} {d.nominal_mm:.2f} mm" for d in dropped)
     why = DIRECTION if listed else "no snap fit, press fit or marked place was found"
     lines = [_practice(f) for f in dict.fromkeys(one.fit for one in listed)]

@@ -3,11 +3,13 @@
 from dataclasses import replace
 
 import cadquery as cq
+import numpy as np
 import pytest
 
 from moldgen.catalog import resin
 from moldgen.layout.core_pins import find_core_pins
 from moldgen.layout.steel_safe import steel_safe_advice
+from moldgen.layout.view import PartView
 from moldgen.model.layout import Layout
 from moldgen.model.part import MoldFrame
 from moldgen.model.steel_safe import Fit
@@ -51,7 +53,7 @@ def test_blind_holes_in_bosses_are_press_fits_formed_by_their_core_pins():
     assert one.steel_first_mm == pytest.approx(3.2 + 2 * PRESS_ALLOWANCE.default)
     assert "on core pin 1 and core pin 2 all round: the hole starts 0.20 mm larger" in one.steel_safe
     assert "unverified" in one.source
-    assert notes.decisions[0].choice.endswith("the steel itself is cut to size")
+    assert notes.decisions[0].choice == "1 dimension to be tuned; advice only: the steel itself is cut to size"
 
 
 def test_nominal_is_the_drawn_size_and_steel_the_shrunk_one():
@@ -144,6 +146,35 @@ def test_a_snap_that_a_point_names_is_listed_once_and_first():
     assert reach.allowance_mm == 0.3
     assert reach.source == "given in steel_safe.places[0].allowance"
     assert reach.steel_first_mm == pytest.approx(REACH - 0.3, abs=1e-3)
+
+
+def through(loop, body):
+    """The view of a part with one shut-off, whose line is given."""
+    view = with_sides(body)
+    lines = (*view.halves.parting_line, np.array([(x, y, 20.0) for x, y in loop]))
+    return with_halves(view, parting_line=lines)
+
+
+def with_halves(view, **more):
+    return PartView(replace(view.halves, **more), None)
+
+
+def test_a_lip_under_a_window_of_its_own_is_a_snap_fit_formed_by_the_cavity():
+    window = [(21.0, -4.5), (24.0, -4.5), (24.0, 4.5), (21.0, 4.5)]
+    body = hooked().cut(cq.Workplane(origin=(22.5, 0, 19)).rect(3, 9).extrude(6.0))
+    (reach, thickness), _ = advice(through(window, body))
+    assert reach.nominal_mm == pytest.approx(REACH, abs=1e-3)
+    assert thickness.formed_by == ("cavity",)
+    assert thickness.nominal_mm == pytest.approx(LIP, abs=1e-3)
+
+
+def test_a_step_in_a_hole_is_no_snap_fit():
+    """The step looks up, stands 2 mm in and has room before it; but its way ends in the same hole."""
+    body = plate(60, 40, 3).translate((0, 0, 20)).cut(cq.Workplane(origin=(0, 0, 22)).circle(4.0).extrude(2.0))
+    body = body.cut(cq.Workplane(origin=(0, 0, 19)).circle(2.0).extrude(6.0))
+    turn = np.radians(np.arange(0, 360, 10))
+    found, _ = advice(through(np.column_stack([4.0 * np.cos(turn), 4.0 * np.sin(turn)]), body))
+    assert found == ()
 
 
 # --- places that the spec names --------------------------------------------------------------------------------------
