@@ -136,15 +136,15 @@ figure {{ margin: .75rem 0; }}
 img {{ display: block; width: 100%; height: auto; border: 1px solid var(--rule); }}
 @page {{ size: A4; margin: 14mm 12mm; }}
 @media print {{
-  :root {{ {_LIGHT} }}
+  :root {{ {_LIGHT} --paper: #ffffff; }}
   body {{ max-width: none; padding: 0; font-size: 10pt; }}
-  h2, h3 {{ break-after: avoid; }}
+  h2, h3, h3 + p {{ break-after: avoid; }}
   figure, tr, .cautions {{ break-inside: avoid; }}
   thead {{ display: table-header-group; }}
-  img {{ max-height: 165mm; width: auto; max-width: 100%; }}
+  img {{ max-height: 118mm; width: auto; max-width: 100%; }}
   .wide {{ overflow: visible; }}
-  table {{ font-size: 8pt; width: 100%; }}
-  .place {{ white-space: normal; }}
+  table {{ font-size: 7.5pt; width: 100%; }}
+  th, td {{ padding-right: .5rem; }}
   .tag::before {{ -webkit-print-color-adjust: exact; print-color-adjust: exact; }}
 }}
 """
