@@ -25,6 +25,25 @@ def to_mold(solid: TopoDS_Shape, frame: MoldFrame) -> TopoDS_Shape:
         return present(BRepBuilderAPI_Transform(scaled, turn, True).Shape(), "turning the part")
 
 
+def to_part(solid: TopoDS_Shape, frame: MoldFrame) -> TopoDS_Shape:
+    """Return a solid of the mold in part coordinates: `to_mold` undone."""
+    (a, b, c), (d, e, f), (g, h, i) = frame.rotation
+    back = turned(solid, ((a, d, g), (b, e, h), (c, f, i)))
+    kx, ky, kz = frame.factors
+    upright = ((1.0, 0.0, 0.0), (0.0, 1.0, 0.0), (0.0, 0.0, 1.0))
+    with operation("bring the part out of the mold", operands=(solid,)):
+        return _scaled(back, MoldFrame((1.0 / kx, 1.0 / ky, 1.0 / kz), frame.fixed_point, upright))
+
+
+def turned(shape: TopoDS_Shape, rows: tuple[Vector, Vector, Vector], by: Vector = (0.0, 0.0, 0.0)) -> TopoDS_Shape:
+    """Return a copy of a shape, turned about the origin by a rotation given by its rows, then moved [mm]."""
+    motion = gp_Trsf()
+    (a, b, c), (d, e, f), (g, h, i) = rows
+    motion.SetValues(a, b, c, by[0], d, e, f, by[1], g, h, i, by[2])
+    with operation("turn a solid", operands=(shape,)):
+        return present(BRepBuilderAPI_Transform(shape, motion, True).Shape(), "turning a solid")
+
+
 def moved(shape: TopoDS_Shape, by: Vector) -> TopoDS_Shape:
     """Return a shape at another place; geometry is shared with the original."""
     shift = gp_Trsf()

@@ -1,0 +1,160 @@
+"""Pins, gate and block of a tool as single things with a place, a size and a box."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
+from typing import Any
+
+import numpy as np
+
+from moldgen.model.part import Box, Vector
+from moldgen.model.revision import ItemChange
+from moldgen.revision.placing import Placing
+from moldgen.revision.tool_record import ToolRecord
+
+SAME_PLACE = 1e-3
+"""mm: what stands this near to its old place did not move. Our choice, a fifth of a jig borer's 0.005 mm."""
+
+SAME_PIN = 0.05
+"""mm: pins whose axes are this near are one pin, whatever their sizes (our choice)."""
+
+MOST_MOVED = 15.0
+"""mm: a pin farther away is another pin, not this one moved (our choice: about the pitch of pins on a small part)."""
+
+
+@dataclass(frozen=True)
+class Item:
+    """One thing of a layout in the mold [mm]: a point of it, its sizes in words, the box of the steel it needs."""
+
+    kind: str
+    name: str
+    at: Vector
+    size: str
+    box: Box
+
+    def placed(self, placing: Placing) -> Item:
+        """Return the thing where the old tool stands in the new mold."""
+        return replace(self, at=placing.point(self.at), box=placing.box(self.box))
+
+
+@dataclass(frozen=True)
+class ItemPair:
+    """One thing in the old tool, placed, and in the new one; None where it has none."""
+
+    old: Item | None
+    new: Item | None
+
+    @property
+    def either(self) -> Item:
+        """The new one, else the old one."""
+        found = self.new or self.old
+        if found is None:
+            raise LookupError("a pair of nothing")
+        return found
+
+    @property
+    def shift(self) -> Vector | None:
+        """How far it moved [mm], None if it came or went."""
+        if self.old is None or self.new is None:
+            return None
+        x, y, z = (b - a for a, b in zip(self.old.at, self.new.at, strict=True))
+        return (x, y, z)
+
+    @property
+    def same(self) -> bool:
+        """True when neither place nor size changed."""
+        still = self.shift is not None and max(map(abs, self.shift)) <= SAME_PLACE
+        return still and self.old is not None and self.new is not None and self.old.size == self.new.size
+
+    def change(self) -> ItemChange:
+        """Return what is told of it."""
+        old, new, shift = self.old, self.new, self.shift
+        if shift is None:
+            note = "new" if old is None else "no longer there"
+        elif max(abs(shift[0]), abs(shift[1])) <= SAME_PLACE < abs(shift[2]):
+            note = f"its end is {abs(shift[2]):.3f} mm {'higher' if shift[2] > 0 else 'lower'}"
+        elif max(map(abs, shift)) > SAME_PLACE:
+            note = f"moved by {float(np.linalg.norm(shift)):.3f} mm"
+        else:
+            note = "other size"
+        return ItemChange(
+            self.either.kind,
+            self.either.name,
+            old.at if old else None,
+            new.at if new else None,
+            old.size if old else "",
+            new.size if new else "",
+            note,
+        )
+
+
+def items_of(tool: ToolRecord) -> tuple[Item, ...]:
+    """Return everything of a tool's layout that has a place."""
+    layout = tool.record["layout"]
+    low, high = tool.block
+    found = [_ejector_pin(p) for p in layout["ejector_pins"]]
+    found += [_core_pin(p, low[2]) for p in layout["core_pins"]]
+    found.append(_gate(layout["gate"], high[2]))
+    size = tuple(b - a for a, b in zip(low, high, strict=True))
+    middle = (0.5 * (low[0] + high[0]), 0.5 * (low[1] + high[1]), low[2])
+    words = "{:g} x {:g} x {:g} mm".format(*(round(v, 3) for v in size))
+    return (*found, Item("block", "closed block", middle, words, tool.block))
+
+
+def paired_items(old: ToolRecord, new: ToolRecord, placing: Placing) -> tuple[ItemPair, ...]:
+    """Return all things of both tools, those that are the same together: equal place first, then the nearest."""
+    before = [i.placed(placing) for i in items_of(old)]
+    after = list(items_of(new))
+    pairs: list[ItemPair] = []
+    for reach in (SAME_PIN, MOST_MOVED):
+        for gap, one, other in sorted(_gaps(before, after), key=lambda g: g[0]):
+            if one in before and other in after and (gap <= reach or one.kind in ("gate", "block")):
+                pairs.append(ItemPair(one, other))
+                before.remove(one)
+                after.remove(other)
+    pairs += [ItemPair(None, i) for i in after] + [ItemPair(i, None) for i in before]
+    order = {i.name: n for n, i in enumerate((*items_of(new), *items_of(old)))}
+    return tuple(sorted(pairs, key=lambda p: (p.new is None, order[p.either.name], p.either.at)))
+
+
+def _gaps(before: Sequence[Item], after: Sequence[Item]) -> list[tuple[float, Item, Item]]:
+    return [
+        (float(np.hypot(a.at[0] - b.at[0], a.at[1] - b.at[1])), a, b) for a in before for b in after if a.kind == b.kind
+    ]
+
+
+def _ejector_pin(pin: Mapping[str, Any]) -> Item:
+    x, y, diameter = float(pin["x"]), float(pin["y"]), float(pin["diameter"])
+    shank = float(pin.get("shank_diameter", 0.0))
+    size = f"d {diameter:g} mm" + (f", shank d {shank:g} mm" if shank else "")
+    at = (x, y, float(pin["tip_z"]))
+    return Item("ejector pin", str(pin["name"]), at, size, _round(pin, float(pin["seat_z"]), "tip_z"))
+
+
+def _core_pin(pin: Mapping[str, Any], foot: float) -> Item:
+    at = (float(pin["x"]), float(pin["y"]), float(pin["top_z"]))
+    return Item("core pin", str(pin["name"]), at, f"d {float(pin['diameter']):g} mm", _round(pin, foot, "top_z"))
+
+
+def _round(pin: Mapping[str, Any], foot: float, top: str) -> Box:
+    """Return the box round a pin with head and clearance."""
+    radius = 0.5 * max(float(pin[k]) for k in ("diameter", "clearance_diameter", "head_diameter")) + 0.3
+    x, y = float(pin["x"]), float(pin["y"])
+    return (x - radius, y - radius, foot), (x + radius, y + radius, float(pin[top]) + 0.1)
+
+
+def _gate(gate: Mapping[str, Any], top: float) -> Item:
+    x, y, z = (float(v) for v in gate["at"])
+    kind = str(gate["kind"])
+    if kind == "edge":
+        size = f"{gate['width']:g} x {gate['depth']:g} mm, runner d {gate['runner_diameter']:g} mm"
+    else:
+        size = f"d {gate['diameter']:g} mm"
+    back = float(gate["land"]) + float(gate["runner_length"])
+    end = (x - back * float(gate["inward"][0]), y - back * float(gate["inward"][1]))
+    foot = 0.5 * max(float(gate["sprue_foot_diameter"]), float(gate["runner_diameter"]), float(gate["diameter"])) + 1.0
+    deep = max(float(gate["runner_diameter"]), float(gate["depth"])) + 0.5
+    low = (min(x, end[0]) - foot, min(y, end[1]) - foot, z - deep)
+    high = (max(x, end[0]) + foot, max(y, end[1]) + foot, top + 0.1)
+    return Item("gate", f"{kind} gate", (x, y, z), size, (low, high))
