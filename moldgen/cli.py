@@ -146,10 +146,25 @@ def watch(spec: Path, output: Path | None, allow_code: bool, no_pictures: bool, 
 @_shared
 def prove(folder: Path, **how: Any) -> None:
     """Read FOLDER, the output of a build, and prove the tool in it again, without its spec."""
-    if not (folder / "manifest.json").is_file():
-        what = "there is no manifest.json" if folder.is_dir() else "there is no such folder"
-        raise SpecError(what, where=str(folder), remedy="name the output folder of 'moldgen build'")
+    _built(folder)
     _finish(Job(JobKind.PROVE, folder), _How(**how))
+
+
+@cli.command()
+@click.argument("old", type=Path)
+@click.argument("new", type=Path)
+@click.option("--output", type=Path, help="The folder to write.  [default: out/NAME-compare, NAME as the folder NEW]")
+@click.option("--no-pictures", is_flag=True, help="Leave out the pictures.")
+@_shared
+def compare(old: Path, new: Path, output: Path | None, no_pictures: bool, **how: Any) -> None:
+    """Say what of the tool in the folder OLD must change to become that in NEW; both are outputs of 'build'.
+
+    The pieces of steel to cut and to weld are written as STEP, with a page that shows them. That steel is missing is an
+    answer, not a failure: the exit code is 0.
+    """
+    _built(old)
+    _built(new)
+    _finish(Job(JobKind.COMPARE, old, output, Options(pictures=not no_pictures), new), _How(**how))
 
 
 @cli.command()
@@ -209,6 +224,13 @@ def schema() -> None:
     from moldgen.spec.describe import json_schema  # noqa: PLC0415  pydantic takes its time to import
 
     _echo_json(json_schema())
+
+
+def _built(folder: Path) -> None:
+    """Refuse a folder without a manifest here and now, without waiting for a worker."""
+    if not (folder / "manifest.json").is_file():
+        what = "there is no manifest.json" if folder.is_dir() else "there is no such folder"
+        raise SpecError(what, where=str(folder), remedy="name the output folder of 'moldgen build'")
 
 
 def _existing(path: Path, what: str) -> None:

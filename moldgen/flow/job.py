@@ -23,6 +23,7 @@ class JobKind(StrEnum):
     CHECK = "check"
     PROVE = "prove"
     NEW = "new"
+    COMPARE = "compare"
 
 
 @dataclass(frozen=True)
@@ -49,12 +50,14 @@ class Job:
     source : the spec (build, check), the STEP file (new) or the output folder of an earlier build (prove)
     output : the folder (build, check) or spec file (new) to write; `None`: as the spec says, else the default
     options : see `Options`
+    other : the second output folder (compare), whose tool is the new one; `source` is the old one's
     """
 
     kind: JobKind
     source: Path
     output: Path | None = None
     options: Options = field(default_factory=Options)
+    other: Path | None = None
 
 
 @dataclass(frozen=True)

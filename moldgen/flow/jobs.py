@@ -8,7 +8,7 @@ from dataclasses import replace
 from pathlib import Path
 
 from moldgen.errors import MoldgenError, SpecError
-from moldgen.flow.folder import fresh_folder, write_new_file
+from moldgen.flow.folder import MANIFEST, fresh_folder, write_new_file
 from moldgen.flow.job import Job, JobKind, JobResult, Options, Table
 from moldgen.flow.store import Store, open_store
 from moldgen.flow.tell import Tell
@@ -88,11 +88,24 @@ def new(job: Job, tell: Tell) -> JobResult:
     return replace(result, output=output)
 
 
+def compare(job: Job, tell: Tell) -> JobResult:
+    """Say what of the tool in one output folder must change to become that in another."""
+    old, new = job.source, job.other or job.source
+    final = job.output or OUT / f"{new.resolve().name}-compare"
+    with fresh_folder(final, inputs=[old / MANIFEST, new / MANIFEST], tell=tell) as aside:
+        with tell.stage(LOADING):
+            from moldgen.flow.compare import compare_folders  # noqa: PLC0415
+
+        result = compare_folders(old, new, aside, tell, pictures=job.options.pictures)
+    return replace(result, output=final)
+
+
 _JOBS: dict[JobKind, Callable[[Job, Tell], JobResult]] = {
     JobKind.BUILD: build,
     JobKind.CHECK: check,
     JobKind.PROVE: prove,
     JobKind.NEW: new,
+    JobKind.COMPARE: compare,
 }
 
 
