@@ -11,8 +11,8 @@ from moldgen.output import compare_words as words
 MOST_ROWS = 30
 """Rows of a table on the terminal; the page and the JSON have them all."""
 
-NAME, CAUSE, SHORT = 22, 32, 14
-"""Characters of a name, of a cause or note, and of a size."""
+NAME, CAUSE, SIZE, SHORT = 22, 32, 28, 14
+"""Characters of a name, of a cause or note, of a size, and what a name may take more where there is room."""
 
 
 def compare_headline(comparison: Comparison) -> str:
@@ -78,7 +78,7 @@ def _items(comparison: Comparison) -> Table:
             words.place(item.was_at),
             words.place(item.now_at),
             words.item_move(item),
-            _clip(item.was if item.was == item.now else f"{item.was or 'none'} -> {item.now or 'none'}", NAME),
+            _clip(item.was if item.was == item.now else f"{item.was or 'none'} -> {item.now or 'none'}", SIZE),
         )
         for item in comparison.items
     ]

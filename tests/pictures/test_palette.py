@@ -49,6 +49,13 @@ def test_marks_are_darker_than_every_area(sight: str) -> None:
             assert lab(area.colour, sight)[0] - lab(mark.colour, sight)[0] > 15.0, (mark.label, area.label)
 
 
+@pytest.mark.parametrize("sight", SIGHT)
+def test_cut_weld_and_steel_stay_far_apart(sight: str) -> None:
+    for a, b in combinations((palette.CUT, palette.WELD, palette.STEEL), 2):
+        assert np.linalg.norm(lab(a.colour, sight) - lab(b.colour, sight)) > 50.0, (a.label, b.label)
+
+
 def test_one_colour_has_one_meaning() -> None:
-    inks = [*palette.ROLES.values(), palette.OTHER, palette.PARTING_LINE, palette.GATE, palette.PULL]
+    marks = [palette.PARTING_LINE, palette.GATE, palette.PULL, palette.STEEL, palette.CUT, palette.WELD]
+    inks = [*palette.ROLES.values(), palette.OTHER, *marks]
     assert len({ink.colour for ink in inks}) == len(inks)

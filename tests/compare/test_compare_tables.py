@@ -1,0 +1,49 @@
+"""What `compare` shows on the terminal."""
+
+from __future__ import annotations
+
+from helpers.comparisons import boss_moved, hundreds, nothing_changed
+
+from moldgen.flow.compare_tables import MOST_ROWS, compare_headline, compare_tables
+from moldgen.flow.report import table_lines
+
+COLUMNS = 120
+
+
+def test_headline_says_which_tools_and_what_becomes_of_them() -> None:
+    headline = compare_headline(boss_moved())
+    assert headline.startswith("lid-1 -> lid-2: 1 component is cut, 1 needs welding or a new insert")
+    assert "33.25 mm3 of steel is missing" in headline
+    assert "137 of 139 faces" in headline
+    assert headline.isascii()
+
+
+def test_tables_list_what_changed_and_nothing_else() -> None:
+    tables = {table.title: table for table in compare_tables(boss_moved())}
+    components = tables["components, 1 unchanged ones left out"]
+    assert components.rows[0] == ("weld or new insert", "core", 33.25, 33.5, "")
+    assert "cavity" not in [row[1] for row in components.rows]
+    steel = tables["steel to weld and to cut"].rows
+    assert [row[:3] for row in steel] == [
+        ("core", "weld 1", "about 33.25"),
+        ("core", "cut 1", 33.5),
+        ("gate insert", "cut 1", 4.0),
+    ]
+    items = tables["pins, gates, lines and plates that changed"].rows
+    assert items[0] == ("ejector pin 3", "30.00, 18.00, -30.00", "28.00, 18.00, -30.00", "2.000", "d 3 mm")
+    assert items[2][-1] == "0.8 x 2 mm -> 0.9 x 2 mm"
+    assert tables["numbers that changed"].rows[0] == ("clamp force [kN]", 210.0, 214.2, "+2.0 %", "the rim grew")
+    assert tables["the part"].rows[0][3] == "-2.000, 0.000, 0.000"
+
+
+def test_equal_tools_have_no_table() -> None:
+    assert compare_tables(nothing_changed()) == ()
+
+
+def test_hundreds_of_changes_fit_the_terminal() -> None:
+    tables = compare_tables(hundreds())
+    assert len(tables) == 5
+    for table in tables:
+        assert len(table.rows) == MOST_ROWS
+        assert max(map(len, table_lines(table))) <= COLUMNS, table.title
+    assert tables[0].rows[-1][0] == f"and {150 - MOST_ROWS + 1} more"
