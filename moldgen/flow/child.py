@@ -14,15 +14,17 @@ import resource
 import signal
 import sys
 import traceback
+from contextlib import suppress
 from dataclasses import replace
 from multiprocessing.connection import Connection
 from pathlib import Path
 
 from moldgen.errors import KernelError, MoldgenError, StageError
 from moldgen.flow.job import JobResult
-from moldgen.flow.order import TRACEBACK, Order
+from moldgen.flow.order import TRACEBACK, Load, Order
 from moldgen.flow.syslibs import explain_import
 from moldgen.flow.tell import Tell
+from moldgen.flow.versions import program_sha256
 from moldgen.kernel.guard import use_evidence_folder
 from moldgen.tether import die_with_parent
 
@@ -40,12 +42,32 @@ def main(handle: int, parent: int) -> None:
     signal.signal(signal.SIGINT, signal.SIG_IGN)  # Ctrl-C reaches the parent, which ends us
     faulthandler.enable()
     connection: Connection = Connection(handle)
-    order = connection.recv()
+    order = _order(connection)
     outcome = _outcome(order, Tell(connection.send))
     connection.send_bytes(_packed(outcome, order))
     sys.stdout.flush()
     sys.stderr.flush()
     os._exit(0)  # the kernel's own tear-down has been seen to hang and to crash, and nothing waits for it
+
+
+def _order(connection: Connection) -> Order:
+    """Return the order; before it may come a request to load modules.
+
+    What went into memory is what `versions` names, so whoever changes the program meanwhile gets a new child: the order
+    still waits in the pipe.
+    """
+    message: Order | Load = connection.recv()
+    if isinstance(message, Order):
+        return message
+    loaded = program_sha256()
+    with suppress(Exception):  # it will fail again, and be explained, when there is an order
+        for module in message.modules:
+            importlib.import_module(module)
+    connection.poll(None)
+    program_sha256.cache_clear()
+    if program_sha256() != loaded:
+        os.execv(sys.executable, sys.orig_argv)  # noqa: S606  our own command, word for word
+    return _order(connection)
 
 
 def _outcome(order: Order, tell: Tell) -> JobResult | MoldgenError:

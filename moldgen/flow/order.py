@@ -12,6 +12,17 @@ TRACEBACK = "traceback.txt"
 ENTRY = "moldgen.flow.jobs:run_job"
 
 
+AHEAD = ("moldgen.flow.jobs", "moldgen.flow.build")
+"""What a worker that is started ahead loads while it waits: the kernel comes with it."""
+
+
+@dataclass(frozen=True)
+class Load:
+    """Sent before the order to a worker that is started ahead: the modules to load meanwhile."""
+
+    modules: tuple[str, ...]
+
+
 @dataclass(frozen=True)
 class Order:
     """One job, the function that does it (``module:name``), where evidence is kept, and the memory limit [bytes]."""

@@ -5,11 +5,15 @@ from __future__ import annotations
 from moldgen.flow.job import Job, JobResult, Limits
 from moldgen.flow.order import ENTRY
 from moldgen.flow.progress import progress
-from moldgen.flow.worker import run_in_worker
+from moldgen.flow.worker import Standby, run_in_worker
 
 
-def run(job: Job, limits: Limits, *, quiet: bool = False, entry: str = ENTRY) -> JobResult:
+def run(
+    job: Job, limits: Limits, *, quiet: bool = False, entry: str = ENTRY, ready: Standby | None = None
+) -> JobResult:
     """Do `job` in a worker process while its stages are shown on stderr (not if `quiet`), and return its result.
+
+    ready : a worker that was started ahead
 
     Raises
     ------
@@ -17,4 +21,4 @@ def run(job: Job, limits: Limits, *, quiet: bool = False, entry: str = ENTRY) ->
     KeyboardInterrupt : the user, or the system, stopped the run
     """
     with progress(quiet=quiet) as hear:
-        return run_in_worker(job, limits, hear, entry=entry)
+        return run_in_worker(job, limits, hear, entry=entry, ready=ready)

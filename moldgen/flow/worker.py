@@ -15,8 +15,8 @@ import sys
 import tempfile
 import threading
 import time
-from collections.abc import Callable, Iterator
-from contextlib import contextmanager, suppress
+from collections.abc import Callable, Iterator, Sequence
+from contextlib import contextmanager, nullcontext, suppress
 from dataclasses import dataclass
 from multiprocessing import Pipe
 from multiprocessing.connection import Connection
@@ -29,7 +29,7 @@ from moldgen.errors import ExitCode, KernelError, MoldgenError, SpecError, Stage
 from moldgen.flow.evidence import forget_failure, keep_failure
 from moldgen.flow.folder import clear_leftovers
 from moldgen.flow.job import Job, JobKind, JobResult, Limits
-from moldgen.flow.order import ENTRY, LOG, Order
+from moldgen.flow.order import AHEAD, ENTRY, LOG, Load, Order
 from moldgen.flow.tell import Message, OutputPlanned, StageFinished, StageStarted
 from moldgen.kernel.guard import interrupted
 
@@ -54,6 +54,7 @@ def run_in_worker(
     *,
     entry: str = ENTRY,
     stop: threading.Event | None = None,
+    ready: Standby | None = None,
 ) -> JobResult:
     """Do `job` in a child process and return what came of it.
 
@@ -64,6 +65,7 @@ def run_in_worker(
     hear : is told each message of the job as it comes
     entry : ``module:function`` that does the job in the child; tests name their own
     stop : may be set by another thread to stop the run; signals reach only the main thread
+    ready : a worker that was started ahead; if it is no longer there, one is started now
 
     Raises
     ------
@@ -73,10 +75,12 @@ def run_in_worker(
     KeyboardInterrupt : SIGINT, SIGTERM or SIGHUP came, or `stop`; the child is gone and the earlier output is whole
     """
     watch = _Watch(job, hear)
-    with signals_stop(), _workspace() as space:
+    waiting = None if ready is None else ready.taken(job, entry, limits)
+    with signals_stop(), _workspace() if waiting is None else nullcontext(waiting.space) as space:
         try:
-            with _started(space) as child:
-                child.connection.send(Order(job, entry, space, limits.memory_bytes))
+            with _started(space) if waiting is None else _ending(waiting) as child:
+                if waiting is None:
+                    child.connection.send(Order(job, entry, space, limits.memory_bytes))
                 result = _listen(child, limits, watch, stop or threading.Event())
         except MoldgenError as error:
             error.evidence = keep_failure(error, watch.output, space)
@@ -86,6 +90,40 @@ def run_in_worker(
                 clear_leftovers(watch.output)
         forget_failure(watch.output)
         return result
+
+
+@contextmanager
+def standby(modules: Sequence[str] = AHEAD) -> Iterator[Standby]:
+    """Start a worker that loads what jobs need and waits for one job, see `run_in_worker`; at the end it is killed.
+
+    The thread that starts it must live as long: the system ends a child with the thread that made it.
+
+    Raises
+    ------
+    SpecError : the temporary folder cannot be written
+    """
+    with _workspace() as space, _started(space) as child:
+        with suppress(OSError):  # it is gone already: that is found out when it is asked for
+            child.connection.send(Load(tuple(modules)))
+        yield Standby(child)
+
+
+class Standby:
+    """A worker that waits for one job; it costs nothing but its memory."""
+
+    def __init__(self, child: _Child) -> None:
+        self._child, self._waits = child, True
+
+    def taken(self, job: Job, entry: str, limits: Limits) -> _Child | None:
+        """Hand it the job and return it; None if it had one already, or is gone."""
+        waits, self._waits = self._waits and self._child.process.poll() is None, False
+        if not waits:
+            return None
+        try:
+            self._child.connection.send(Order(job, entry, self._child.space, limits.memory_bytes))
+        except OSError:  # it went this moment
+            return None
+        return self._child
 
 
 @dataclass(frozen=True)
@@ -215,11 +253,16 @@ def _started(space: Path) -> Iterator[_Child]:
                 # in the temporary folder goes with the workspace, also when they are killed
                 env={"PYTHONHASHSEED": "0", **os.environ, "TMPDIR": str(space)},
             )
-        child = _Child(process, ours, space)
-        try:
+        with _ending(_Child(process, ours, space)) as child:
             yield child
-        finally:
-            child.kill()
+
+
+@contextmanager
+def _ending(child: _Child) -> Iterator[_Child]:
+    try:
+        yield child
+    finally:
+        child.kill()
 
 
 @contextmanager
