@@ -21,6 +21,7 @@ from moldgen.kernel.face_signature import part_signs
 from moldgen.kernel.step_write import Looks, write_assembly, write_component
 from moldgen.model.revision import Alignment, Comparison, Fate, PartChange
 from moldgen.model.tool import Component, Motion, Role
+from moldgen.output import palette
 from moldgen.output.compare_page import write_compare_page
 from moldgen.output.compare_pictures import DrawnComparison, draw_comparison
 from moldgen.output.compare_scene import compare_picture
@@ -39,9 +40,6 @@ PIECES = "pieces.step"
 """All pieces of steel in one file, where they stand in the new mold, in the colours of what is done to them."""
 
 STEP_FOLDER = "step"
-
-CUT_COLOUR, WELD_COLOUR = (0, 119, 187), (238, 119, 51)
-"""Vibrant blue and orange of Paul Tol, Colour Schemes, technical note SRON/EPS/TN/09-002: apart for every reader."""
 
 DOUBTFUL = 0.5
 """With less than this share of the old part's faces on the new one, the alignment is told as doubtful (our choice)."""
@@ -205,7 +203,7 @@ def _steel_findings(components: Sequence[ComparedComponent]) -> tuple[Finding, .
 def _write(compared: Compared, tools: tuple[ToolRecord, ToolRecord], folder: Path) -> None:
     """Write the pieces as STEP files, the comparison, and a manifest that says whose output this is."""
     (folder / STEP_FOLDER).mkdir()
-    looks = Looks({Role.CORE.value: CUT_COLOUR, Role.CAVITY.value: WELD_COLOUR})
+    looks = Looks({Role.CORE.value: palette.CUT.colour, Role.CAVITY.value: palette.WELD.colour})  # as on the page
     listed: list[Component] = []
     for component in compared.components:
         for piece, body in zip(component.change.pieces, component.pieces, strict=True):
@@ -227,7 +225,9 @@ def _write(compared: Compared, tools: tuple[ToolRecord, ToolRecord], folder: Pat
 
 def _drawn(compared: Compared, folder: Path) -> DrawnComparison:
     pictures = [
-        compare_picture(c.change, c.steel.mesh, [b.mesh for b in c.pieces]) for c in compared.components if c.pieces
+        compare_picture(c.change, c.steel.mesh, [b.mesh for b in c.pieces])
+        for c in compared.components
+        if c.steel is not None
     ]
     if not pictures:
         return DrawnComparison()

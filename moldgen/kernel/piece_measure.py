@@ -47,12 +47,14 @@ def depth_from(piece: Body, steel: Body) -> float:
         return reach
     points = np.vstack([piece.mesh.vertices, _samples(piece.mesh.corners, MOST_SAMPLES // 4)])
     estimate, _ = cKDTree(np.vstack([near.vertices[np.unique(near.triangles)], _samples(near.corners)])).query(points)
+    low, high = near.corners.min(axis=1), near.corners.max(axis=1)
     best, chosen, face = -1.0, 0, 0
     for number in np.argsort(-estimate, kind="stable")[:MOST_TRIED]:
         if estimate[number] <= best + CLOSE_ENOUGH:
             break
-        around = _near(near, (points[number], points[number]), float(estimate[number]))
-        triangle, distance = nearest_triangle(around, points[number])
+        point, reach = points[number], float(estimate[number])
+        around = _some(near, ((low <= point + reach) & (high >= point - reach)).all(axis=1))
+        triangle, distance = nearest_triangle(around, point)
         if distance > best:
             best, chosen, face = distance, int(number), int(around.face[triangle])
     return _exact(points[chosen], steel, face, best)
@@ -75,7 +77,10 @@ def point_inside(piece: Body) -> np.ndarray:
 def _near(mesh: SurfaceMesh, box: tuple[np.ndarray, np.ndarray], reach: float) -> SurfaceMesh:
     """Return the triangles of a mesh whose boxes come within `reach` [mm] of a box."""
     low, high = mesh.corners.min(axis=1), mesh.corners.max(axis=1)
-    keep = ((low <= box[1] + reach) & (high >= box[0] - reach)).all(axis=1)
+    return _some(mesh, ((low <= box[1] + reach) & (high >= box[0] - reach)).all(axis=1))
+
+
+def _some(mesh: SurfaceMesh, keep: np.ndarray) -> SurfaceMesh:
     return SurfaceMesh(mesh.vertices, mesh.triangles[keep], mesh.face[keep], mesh.normals[keep], mesh.bulge[keep])
 
 

@@ -31,10 +31,10 @@ OFF_SIDE = 0.05
 
 @dataclass(frozen=True, eq=False)
 class ComparedComponent:
-    """One component with its solids: as it is to be (as it was where it is gone), and one body a piece."""
+    """One component; where steel is cut or welded, with its solids: as it is to be, and one body a piece."""
 
     change: ComponentChange
-    steel: Body
+    steel: Body | None = None
     pieces: tuple[Body, ...] = ()
 
 
@@ -51,13 +51,13 @@ def compare_steel(
     findings: list[Finding] = []
     for match in matched(old, new, placing):
         if not placing.upright and match.old is not None and match.new is not None:
-            found.append(_whole(match, Fate.NEW, placing, "the tools open along different axes: nothing fits"))
+            found.append(_whole(match, Fate.NEW, "the tools open along different axes: nothing fits"))
             continue
         try:
             found.append(_compared(match, (old, new), placing, causes))
         except KernelError as error:
             findings.append(_not_compared(match, error))
-            found.append(_whole(match, Fate.NEW, placing, f"could not be compared: {error.what}"))
+            found.append(_whole(match, Fate.NEW, f"could not be compared: {error.what}"))
     return found, tuple(findings)
 
 
@@ -65,11 +65,11 @@ def _compared(
     match: Match, tools: tuple[ToolRecord, ToolRecord], placing: Placing, causes: Causes
 ) -> ComparedComponent:
     if match.old is None or match.new is None:
-        return _whole(match, Fate.GONE if match.new is None else Fate.NEW, placing, "")
+        return _whole(match, Fate.GONE if match.new is None else Fate.NEW)
     shift = match.shift or (0.0, 0.0, 0.0)
     still = max(map(abs, shift)) <= STANDS_STILL
     if placing.rotation == Placing().rotation and match.old.digest == match.new.digest:
-        return _whole(match, Fate.UNCHANGED if still else Fate.MOVED, placing, "" if still else _moved_by(shift))
+        return _whole(match, Fate.UNCHANGED if still else Fate.MOVED, "" if still else _moved_by(shift))
     now = match.now[0]
     standing = moved(match.new.solid, now.at) if any(now.at) else match.new.solid
     before = placing.solid(moved(match.old.solid, match.old.positions[match.was[0].number - 1]))
@@ -81,10 +81,10 @@ def _compared(
     if not made.none and still and match.new.role not in BLOCKS:
         elsewhere = _moved_whole(was, steel)
         if elsewhere is not None:
-            return ComparedComponent(_change(match, Fate.MOVED, (), _moved_by(elsewhere), elsewhere), steel)
+            return _whole(match, Fate.MOVED, _moved_by(elsewhere), elsewhere)
     if made.none:
         fate, note = (Fate.UNCHANGED, outside) if still else (Fate.MOVED, _moved_by(shift))
-        return ComparedComponent(_change(match, fate, (), note), steel)
+        return _whole(match, fate, note)
     return _with_pieces(_Made(match, made, was, steel, still), causes, outside)
 
 
@@ -111,7 +111,7 @@ def _with_pieces(made: _Made, causes: Causes, outside: str) -> ComparedComponent
         other = f"{abs(longer):.3f} mm {'longer' if longer > 0 else 'shorter'}" if abs(longer) > STANDS_STILL else ""
         words = ", ".join(w for w in (other or "of another form", "" if made.still else note) if w)
         text = f"{words}: take another one, it is not worth welding"
-        return ComparedComponent(_change(match, Fate.NEW, (), text), made.steel)
+        return _whole(match, Fate.NEW, text)
     pieces: list[SteelPiece] = []
     bodies: list[Body] = []
     for work, found in ((Work.CUT, made.made.cut), (Work.WELD, made.made.weld)):
@@ -191,15 +191,9 @@ def _clip(
     return (clip_low, clip_high), note
 
 
-def _whole(match: Match, fate: Fate, placing: Placing, note: str) -> ComparedComponent:
-    """Return a component that needs no look at pieces."""
-    if match.new is not None:
-        at, solid = match.now[0].at, match.new.solid
-        body = Body(moved(solid, at) if any(at) else solid)
-    else:
-        part, number = match.was[0].part, match.was[0].number
-        body = Body(placing.solid(moved(part.solid, part.positions[number - 1])))
-    return ComparedComponent(_change(match, fate, (), note), body)
+def _whole(match: Match, fate: Fate, note: str = "", shift: Vector | None = None) -> ComparedComponent:
+    """Return a component without pieces."""
+    return ComparedComponent(_change(match, fate, (), note, shift))
 
 
 def _change(
