@@ -41,7 +41,7 @@ PIECES = "pieces.step"
 
 STEP_FOLDER = "step"
 
-DOUBTFUL = 0.5
+DOUBTFUL = 0.25
 """With less than this share of the old part's faces on the new one, the alignment is told as doubtful (our choice)."""
 
 RESIDUAL = 0.01

@@ -29,16 +29,15 @@ BLOCKS = frozenset({Role.CAVITY, Role.CORE})
 
 @dataclass(frozen=True)
 class Standing:
-    """One component at one of its places: `number` counts them; `at` is its position, placed in the new mold [mm]."""
+    """One component at one of its places: `number` counts them; `at` is its position, placed in the new mold [mm].
+
+    name : of this copy, such as "ejector pin 3"
+    """
 
     part: SteelPart
     number: int
     at: Vector
-
-    @property
-    def name(self) -> str:
-        """Its name, with its number where there are several."""
-        return self.part.name if len(self.part.positions) == 1 else f"{self.part.name} {self.number}"
+    name: str
 
 
 @dataclass(frozen=True)
@@ -49,6 +48,11 @@ class Match:
     new: SteelPart | None
     was: tuple[Standing, ...]
     now: tuple[Standing, ...]
+
+    @property
+    def names(self) -> tuple[str, str]:
+        """What to call them in the old and in the new tool: the component if all copies are meant, else these."""
+        return _called(self.old, self.was), _called(self.new, self.now)
 
     @property
     def shift(self) -> Vector | None:
@@ -65,8 +69,8 @@ def matched(old: ToolRecord, new: ToolRecord, placing: Placing) -> list[Match]:
     for role in Role:
         if role in PLASTIC:
             continue
-        before = [s for c in old.components if c.role is role for s in _standing(c, placing)]
-        after = [s for c in new.components if c.role is role for s in _standing(c, Placing())]
+        before = [s for c in old.components if c.role is role for s in _standing(old, c, placing)]
+        after = [s for c in new.components if c.role is role for s in _standing(new, c, Placing())]
         pairs += _pinned(before, after) if role in ROUND_PARTS else _built_in(before, after, placing)
     order = {c.name: n for n, c in enumerate((*new.components, *old.components))}
     groups: dict[tuple[object, ...], list[tuple[Standing | None, Standing | None]]] = {}
@@ -76,9 +80,15 @@ def matched(old: ToolRecord, new: ToolRecord, placing: Placing) -> list[Match]:
     return sorted(found, key=lambda m: (m.new is None, order[(m.new or m.old).name], m.was and m.was[0].at))  # type: ignore[union-attr]
 
 
-def _standing(part: SteelPart, placing: Placing) -> Iterator[Standing]:
+def _called(part: SteelPart | None, copies: Sequence[Standing]) -> str:
+    if part is None:
+        return ""
+    return part.name if len(copies) == len(part.positions) else ", ".join(c.name for c in copies)
+
+
+def _standing(tool: ToolRecord, part: SteelPart, placing: Placing) -> Iterator[Standing]:
     for number, at in enumerate(part.positions, start=1):
-        yield Standing(part, number, placing.point(at))
+        yield Standing(part, number, placing.point(at), tool.pin_at(part, number))
 
 
 def _group(was: Standing | None, now: Standing | None) -> tuple[object, ...]:

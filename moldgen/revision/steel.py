@@ -134,7 +134,7 @@ def _copies(
         here = body if not any(by) else fine_body(moved(piece.solid, by))
         low, high = bounding_box(here.solid)
         at, box = _vector(inside + by), (_vector(low), _vector(high))
-        name = copy.part.name
+        name = copy.name if len(copy.part.positions) > 1 else copy.part.name
         told = SteelPiece(
             component=name,
             work=work,
@@ -206,8 +206,8 @@ def _change(
     if match.old is not None and match.new is not None and was != part.material:
         note = "; ".join(n for n in (note, f"steel {part.material} instead of {was}") if n)
     return ComponentChange(
-        old=match.old.name if match.old else "",
-        new=match.new.name if match.new else "",
+        old=match.names[0],
+        new=match.names[1],
         role=part.role.value,
         fate=fate,
         pieces=pieces,

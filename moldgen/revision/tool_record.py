@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from functools import cached_property
@@ -14,6 +15,12 @@ from moldgen.kernel.place import to_part
 from moldgen.kernel.step_read import read_assembly
 from moldgen.model.part import Box, MoldFrame, Vector
 from moldgen.model.tool import Role
+
+SAME_AXIS = 1e-4
+"""mm: a pin of the layout whose axis is this near to a component is that component."""
+
+PIN_ROLES = ("ejector_pin", "core_pin")
+"""Roles whose copies have names of their own in the layout."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -55,6 +62,14 @@ class ToolRecord:
     frame: MoldFrame
     block: Box
     components: tuple[SteelPart, ...] = field(default=())
+
+    def pin_at(self, part: SteelPart, number: int) -> str:
+        """Return what the layout calls the copy of a component that stands at its place `number`, counted from 1."""
+        x, y, _ = part.positions[number - 1]
+        for pin in (*self.record["layout"]["ejector_pins"], *self.record["layout"]["core_pins"]):
+            if math.hypot(float(pin["x"]) - x, float(pin["y"]) - y) < SAME_AXIS and part.role.value in PIN_ROLES:
+                return str(pin["name"])
+        return part.name if len(part.positions) == 1 else f"{part.name} {number}"
 
     def part_solid(self) -> Any:
         """Return the plastic part in its own coordinates, before shrink.
