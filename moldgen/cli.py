@@ -97,14 +97,18 @@ def check(spec: Path, output: Path | None, allow_code: bool, **how: Any) -> None
 @_allow_code
 @click.option("--no-pictures", is_flag=True, help="Leave out the pictures.")
 @click.option("--explain", is_flag=True, help="Say of each stage why it ran, or why it need not.")
+@click.option("--fresh", is_flag=True, help="Ignore the accepted layout beside the spec.")
+@click.option("--accept", is_flag=True, help="Accept the layout once the tool is proved, as 'accept' does.")
 @_shared
-def build(spec: Path, output: Path | None, no_pictures: bool, explain: bool, **how: Any) -> None:
+def build(spec: Path, output: Path | None, no_pictures: bool, **how: Any) -> None:
     """Build and prove the tool of SPEC, and write it as STEP with its tables and pictures.
 
-    What has not changed since an earlier run is kept, and where nothing has, nothing is done.
+    What has not changed since an earlier run is kept, and where nothing has, nothing is done. What an accepted layout
+    beside the spec holds (see 'accept') stays wherever the part and the spec allow it.
     """
     _existing(spec, "spec")
-    options = Options(allow_code=how.pop("allow_code"), pictures=not no_pictures, explain=explain)
+    own = {name: how.pop(name) for name in ("allow_code", "explain", "fresh", "accept")}
+    options = Options(pictures=not no_pictures, **own)
     _finish(Job(JobKind.BUILD, spec, output, options), _How(**how))
 
 
@@ -139,6 +143,20 @@ def watch(spec: Path, output: Path | None, allow_code: bool, no_pictures: bool, 
             click.echo(to_json(stopped_json(), indent=None), nl=False)
         click.echo(f"moldgen: {ExitCode.STOPPED.meaning}", err=True)
         raise click.exceptions.Exit(int(ExitCode.STOPPED)) from None
+
+
+@cli.command()
+@click.argument("spec", type=Path)
+@click.option("--output", type=Path, help="The folder of the tool.  [default: as the spec says, else out/NAME]")
+@_allow_code
+@_shared
+def accept(spec: Path, output: Path | None, allow_code: bool, **how: Any) -> None:
+    """Accept the layout of the proved tool of SPEC: write it beside SPEC, as SPEC.accepted.yaml.
+
+    The next builds keep pull, parting, blocks, pins and gate as they are there wherever the part and the spec allow it.
+    """
+    _existing(spec, "spec")
+    _finish(Job(JobKind.ACCEPT, spec, output, Options(allow_code=allow_code)), _How(**how))
 
 
 @cli.command()

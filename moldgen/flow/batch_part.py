@@ -13,6 +13,7 @@ from moldgen.flow.folder import replace_file
 from moldgen.flow.job import Job, JobResult
 from moldgen.flow.jobs import run_job
 from moldgen.flow.tell import Tell
+from moldgen.spec.accepted import accepted_file
 from moldgen.spec.load import LoadedSpec, load_spec
 from moldgen.spec.starter import starter
 
@@ -45,7 +46,8 @@ def _run_spec(job: Job, tell: Tell) -> JobResult:
 
 
 def _files(loaded: LoadedSpec) -> list[Path]:
-    return [loaded.path] if loaded.part_file is None else [loaded.path, loaded.part_file]
+    own = [loaded.path, accepted_file(loaded.path)]  # where there is none, that is what the build depends on
+    return own if loaded.part_file is None else [*own, loaded.part_file]
 
 
 def _starter_spec(job: Job) -> Path:

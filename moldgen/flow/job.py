@@ -23,6 +23,7 @@ class JobKind(StrEnum):
     CHECK = "check"
     PROVE = "prove"
     NEW = "new"
+    ACCEPT = "accept"
     COMPARE = "compare"
 
 
@@ -32,12 +33,16 @@ class Options:
 
     resin : for `new` only; "" leaves the choice to the starter spec
     explain : whether the result says why each stage ran
+    fresh : whether the accepted layout is ignored
+    accept : whether the layout is accepted once the tool is proved
     """
 
     allow_code: bool = False
     pictures: bool = True
     resin: str = ""
     explain: bool = False
+    fresh: bool = False
+    accept: bool = False
 
 
 @dataclass(frozen=True)
@@ -47,8 +52,9 @@ class Job:
     Parameters
     ----------
     kind : which command
-    source : the spec (build, check), the STEP file (new) or the output folder of an earlier build (prove)
-    output : the folder (build, check) or spec file (new) to write; `None`: as the spec says, else the default
+    source : the spec (build, check, accept), the STEP file (new) or the output folder of an earlier build (prove)
+    output : the folder (build, check) or spec file (new) to write, or the folder whose layout is accepted; `None`: as
+        the spec says, else the default
     options : see `Options`
     other : the second output folder (compare), whose tool is the new one; `source` is the old one's
     """

@@ -8,11 +8,13 @@ from dataclasses import replace
 from pathlib import Path
 
 from moldgen.errors import MoldgenError, SpecError
+from moldgen.flow.accept import accept_layout, with_layout_accepted
 from moldgen.flow.folder import MANIFEST, fresh_folder, write_new_file
 from moldgen.flow.job import Job, JobKind, JobResult, Options, Table
 from moldgen.flow.store import Store, open_store
 from moldgen.flow.tell import Tell
 from moldgen.flow.unchanged import UNCHANGED, build_key, remember, stage_table, unchanged
+from moldgen.spec.accepted import load_accepted
 from moldgen.spec.declared import located
 from moldgen.spec.load import LoadedSpec, load_spec
 from moldgen.spec.schema import Spec
@@ -27,13 +29,15 @@ OUT = Path("out")
 def build(job: Job, tell: Tell) -> JobResult:
     """From a spec to a proved tool in the output folder; nothing is done where nothing has changed."""
     loaded, final = _loaded(job, "")
-    tell.output(final)
     store, options = open_store(), job.options
-    key = build_key(loaded, options)
+    loaded = replace(loaded, accepted=None if options.fresh else load_accepted(loaded.path))
+    tell.output(final)
+    key = build_key(loaded, options, loaded.accepted)
     same = unchanged(key, final, store)
     if same is not None:
         explained = stage_table({"all": f"kept: {UNCHANGED}"})
-        return _with_tables(replace(same, output=final), options, explained, store)
+        same = with_layout_accepted(replace(same, output=final), loaded, options, tell)
+        return _with_tables(same, options, explained, store)
     with fresh_folder(final, inputs=_inputs(loaded), tell=tell) as aside:
         with tell.stage(LOADING):
             from moldgen.flow.build import build_tool  # noqa: PLC0415
@@ -46,13 +50,20 @@ def build(job: Job, tell: Tell) -> JobResult:
     remember(key, final, result, store)
     store.note(last, runs_as_text(stages.runs))
     explained = stage_table(reasons(stages.runs, before))
-    return _with_tables(replace(result, output=final), options, explained, store)
+    result = with_layout_accepted(replace(result, output=final), loaded, options, tell)
+    return _with_tables(result, options, explained, store)
 
 
 def _with_tables(result: JobResult, options: Options, explained: Table, store: Store) -> JobResult:
     """Return a result with what is for the reader of this run alone: why stages ran, and troubles of the store."""
     tables = (*result.tables, explained) if options.explain else result.tables
     return replace(result, tables=tables, findings=(*result.findings, *store.findings()))
+
+
+def accept(job: Job, tell: Tell) -> JobResult:
+    """Write the layout of the last output of a spec beside it, for the next builds to keep."""
+    loaded, final = _loaded(job, "")
+    return accept_layout(loaded, final, tell)
 
 
 def check(job: Job, tell: Tell) -> JobResult:
@@ -105,6 +116,7 @@ _JOBS: dict[JobKind, Callable[[Job, Tell], JobResult]] = {
     JobKind.CHECK: check,
     JobKind.PROVE: prove,
     JobKind.NEW: new,
+    JobKind.ACCEPT: accept,
     JobKind.COMPARE: compare,
 }
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from moldgen.finding import Notes
+from moldgen.flow.carry import compare_sides, kept_layout
 from moldgen.flow.review import Reviewed
 from moldgen.layout.ejection import GivenPin
 from moldgen.layout.plan import Wishes, plan_layout
@@ -17,12 +18,15 @@ from moldgen.model.slide import SideLayout
 def lay_out(reviewed: Reviewed, halves: Halves, sides: SideLayout | None = None) -> tuple[Layout, Notes]:
     """Return the layout of one cavity; it keeps out of the way of the side actions `sides`.
 
+    An accepted layout stays where the changed part and the spec allow it.
+
     Raises
     ------
     SpecError : something that the spec fixes cannot be
     """
     spec, frame = reviewed.loaded.spec, reviewed.frame
     pins = spec.ejection.pins
+    kept, notes = kept_layout(reviewed)
     wishes = Wishes(
         core_pins=spec.core_pins,
         ejection=spec.ejection,
@@ -32,8 +36,10 @@ def lay_out(reviewed: Reviewed, halves: Halves, sides: SideLayout | None = None)
         gate_at=None if spec.gate.at is None else frame.to_mold(spec.gate.at),
         no_pins=_marked(reviewed, halves, "no_pins"),
         no_gate=_marked(reviewed, halves, "no_gate"),
+        kept=kept,
     )
-    return plan_layout(PartView(halves, frame, sides), reviewed.resin, wishes)
+    layout, more = plan_layout(PartView(halves, frame, sides), reviewed.resin, wishes)
+    return layout, notes + more + compare_sides(reviewed, halves)
 
 
 def marked_points(reviewed: Reviewed, key: str) -> tuple[np.ndarray, ...]:

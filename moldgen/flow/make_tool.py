@@ -8,6 +8,7 @@ import numpy as np
 
 from moldgen.errors import PartError
 from moldgen.finding import Decision, Finding, Notes, Severity
+from moldgen.flow.carry import block_of
 from moldgen.flow.lay_out import lay_out
 from moldgen.flow.part_mold import part_mold
 from moldgen.flow.review import Reviewed
@@ -91,12 +92,12 @@ def build_along(reviewed: Reviewed, stages: Stages) -> Built:
     spec, tell = reviewed.loaded.spec, stages.tell
     shaped: Made[Shaped] = stages.make(
         "part the mold",
-        {**key_values(spec, FORM_KEYS), **_given(reviewed)},
+        {**key_values(spec, FORM_KEYS), **_given(reviewed), "accepted block": block_of(reviewed.accepted)},
         lambda: _shaped(_narrow(reviewed, FORM_KEYS), tell),
     )
     layout, more = stages.make(
         "lay out pins and gate",
-        {**key_values(spec, LAYOUT_KEYS), **_given(reviewed), "halves": shaped},
+        {**key_values(spec, LAYOUT_KEYS), **_given(reviewed), "halves": shaped, "accepted layout": reviewed.accepted},
         lambda: _laid_out(_narrow(reviewed, LAYOUT_KEYS), shaped.value, tell),
     ).value
     materials = _materials(reviewed)

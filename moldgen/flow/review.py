@@ -10,6 +10,7 @@ from moldgen.canon import sha256_file
 from moldgen.catalog import Resin, resin
 from moldgen.errors import PartError
 from moldgen.finding import Decision, Notes
+from moldgen.flow.carry_pull import frame_as_accepted, pulls_as_accepted
 from moldgen.flow.part_source import read_part
 from moldgen.flow.prepare import Prepared, prepare
 from moldgen.flow.pulls import find_pulls
@@ -20,6 +21,7 @@ from moldgen.kernel.body import Body
 from moldgen.kernel.extent import reach
 from moldgen.kernel.measure import bounding_box, volume_adaptive
 from moldgen.kernel.place import to_mold
+from moldgen.model.accepted import Accepted
 from moldgen.model.part import Box, MoldFrame, Part, Pull
 from moldgen.proof.bodies import SAME_VOLUME
 from moldgen.release.contact import vertical_contact
@@ -45,6 +47,7 @@ class Reviewed:
 
     candidates : the pulls that were tried, best first; empty when the pull was given
     made : the stage that prepared the part
+    accepted : the layout to be kept where the part allows it, None for none
     """
 
     loaded: LoadedSpec
@@ -57,6 +60,7 @@ class Reviewed:
     notes: Notes
     candidates: tuple[PullCandidate, ...]
     made: Made[tuple[Prepared, Part, Notes]]
+    accepted: Accepted | None = None
 
 
 @dataclass(frozen=True)
@@ -75,7 +79,7 @@ class Source:
 
 
 def open_part(loaded: LoadedSpec, stages: Stages) -> Source:
-    """Read the part and find its pulls.
+    """Read the part and find its pulls; that of an accepted layout is the first of an automatic choice.
 
     Raises
     ------
@@ -95,7 +99,10 @@ def open_part(loaded: LoadedSpec, stages: Stages) -> Source:
         {**key_values(loaded.spec, PULL_KEYS), "part": part},
         lambda: _chosen(narrowed(loaded, PULL_KEYS), part.value[0], stages.tell),
     )
-    return Source(part, *pulls.value, Notes(findings=loaded.findings) + part.value[1])
+    found, tried = pulls.value
+    if loaded.spec.pull.direction is None:
+        found = pulls_as_accepted(found, loaded.accepted)
+    return Source(part, found, tried, Notes(findings=loaded.findings) + part.value[1])
 
 
 def _read(loaded: LoadedSpec, tell: Tell) -> tuple[Part, Notes]:
@@ -141,6 +148,9 @@ def review_along(
     )
     frame, more = mold_frame(pull.direction, spec.shrink, spec.resin, box)
     notes += more
+    if spec.shrink.fixed_point == "centre":
+        frame, more = frame_as_accepted(frame, loaded.accepted)
+        notes += more
     found: list[Trapped] = []
     made = stages.make(
         "prepare the part",
@@ -158,7 +168,7 @@ def review_along(
         {"prepared part": made, "frame of the mold": frame, "draft asked": asked},
         lambda: _released(prepared, asked, frame, stages.tell),
     ).value
-    return Reviewed(loaded, data, part, pull, frame, prepared, release, notes + more, candidates, made)
+    return Reviewed(loaded, data, part, pull, frame, prepared, release, notes + more, candidates, made, loaded.accepted)
 
 
 def _prepared(

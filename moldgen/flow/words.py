@@ -9,6 +9,9 @@ from itertools import groupby
 AXIS = 1.0 - 1e-9
 """Cosine from which a direction counts as an axis of the part."""
 
+BUILD_AGAIN = "build the tool again, then accept it"
+"""Remedy where an output folder and its spec have gone apart."""
+
 
 def direction_text(direction: Sequence[float]) -> str:
     """Return a direction as a spec would give it: the axis if it is one, else its components.

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 from dataclasses import dataclass
 
 from moldgen.catalog import Resin, core_pin_blank, preferred_size_up, steel
@@ -10,6 +9,7 @@ from moldgen.errors import SpecError
 from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.kernel.body import Body
 from moldgen.kernel.round_faces import hollow_round_faces
+from moldgen.layout.carry_block import KeptBlock, Least, found_again, keep_block, size_text
 from moldgen.model.layout import BlockLayout
 from moldgen.quantity import Quantity
 from moldgen.rules.cavity_floor import cavity_floor_thickness_rectangular
@@ -53,7 +53,9 @@ class _Span:
     given_size: float | None
 
 
-def size_blocks(body: Body, resin: Resin, blocks: Blocks, level: float | None = None) -> tuple[BlockLayout, Notes]:
+def size_blocks(
+    body: Body, resin: Resin, blocks: Blocks, level: float | None = None, kept: KeptBlock | None = None
+) -> tuple[BlockLayout, Notes]:
     """Return the closed block around a part that stands in the mold frame (pull along +z).
 
     Parameters
@@ -62,6 +64,8 @@ def size_blocks(body: Body, resin: Resin, blocks: Blocks, level: float | None = 
     blocks : section `blocks` of the spec; what is given there is kept and checked
     level : height of the parting plane [mm]; without it the lower end of the part is assumed, so that the cavity
         block holds the whole depth
+    kept : an accepted block: it stays as it stands where the rules' least walls allow it, and grows only at the sides
+        where they do not; what the spec gives comes first
 
     Raises
     ------
@@ -92,7 +96,11 @@ def size_blocks(body: Body, resin: Resin, blocks: Blocks, level: float | None = 
     middle = 0.5 * (low + high)
     corner = (float(middle[0]) - sizes[0] / 2, float(middle[1]) - sizes[1] / 2, plane - down)
     layout = BlockLayout(corner, (corner[0] + sizes[0], corner[1] + sizes[1], plane + up))
-    return layout, notes + _told(layout)
+    if kept is None or found_again(layout, kept):
+        return layout, notes + _told(layout)
+    walls = [s.wall if s.given_wall is None else s.given_wall for s in spans]
+    layout, more = keep_block(layout, kept, Least(walls[0], walls[1], _over(), under), body, blocks)
+    return layout, notes + more
 
 
 def _load(body: Body, resin: Resin, blocks: Blocks, plane: float) -> tuple[_Load, Notes]:
@@ -218,7 +226,5 @@ CORE_PIN_LARGEST_SEAT = 16.0
 
 
 def _told(layout: BlockLayout) -> Notes:
-    size = [b - a for a, b in zip(layout.low, layout.high, strict=True)]
-    text = " x ".join(f"{math.floor(v * 100 + 0.5) / 100:g}" for v in size)
     why = "part, walls against the melt pressure and steel behind it, rounded up to preferred sizes"
-    return Notes(decisions=(Decision("blocks", f"{text} mm closed", why),))
+    return Notes(decisions=(Decision("blocks", f"{size_text(layout)} mm closed", why),))

@@ -140,7 +140,7 @@ class _Line:
         return np.unique(np.r_[even, _crossings(self._closed, self._way, middle)])
 
     def around(self, point: np.ndarray, within: float) -> np.ndarray:
-        """Return the way where the line is nearest to a point in plan, and ways up to `within` from it, nearest first."""
+        """Return the way where the line is nearest to a point in plan, then ways up to `within` from it by distance."""
         start, along = self._closed[:-1, :2], np.diff(self._closed[:, :2], axis=0)
         length = np.maximum((along**2).sum(axis=1), 1e-18)
         share = np.clip(((point[:2] - start) * along).sum(axis=1) / length, 0.0, 1.0)

@@ -13,6 +13,7 @@ from pydantic import ValidationError
 from moldgen.canon import sha256_bytes
 from moldgen.errors import SpecError, SpecErrors
 from moldgen.finding import Finding
+from moldgen.model.accepted import Accepted
 from moldgen.spec.cautions import cautions
 from moldgen.spec.messages import plain_errors
 from moldgen.spec.schema import Spec, folder_name
@@ -30,13 +31,17 @@ _EXAMPLE: Final = "`moldgen new PART.step` writes a spec to start from"
 
 @dataclass(frozen=True)
 class LoadedSpec:
-    """A spec, the file it came from (as the user named it), and where each of its keys stands."""
+    """A spec, the file it came from (as the user named it), and where each of its keys stands.
+
+    accepted : the accepted layout beside it, for builds that keep it (see `moldgen.spec.accepted`)
+    """
 
     spec: Spec
     path: Path
     sha256: str
     findings: tuple[Finding, ...]
     _tree: Tree
+    accepted: Accepted | None = None
 
     def locate(self, key: str | tuple[str | int, ...]) -> str:
         """Return ``file:line:column`` of a key, given as ``"gate.at"`` or ``("marks", 0, "face")``.

@@ -1,0 +1,109 @@
+"""The block of an accepted layout on the changed part: it stays where it stands, and grows only where it must."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+from moldgen.catalog import preferred_size_up
+from moldgen.finding import Decision, Notes
+from moldgen.kernel.body import Body
+from moldgen.model.accepted import SNAP
+from moldgen.model.layout import BlockLayout
+from moldgen.model.part import Vector
+from moldgen.spec.sections import Blocks
+
+KEPT = "kept from the accepted layout"
+
+
+@dataclass(frozen=True)
+class KeptBlock:
+    """The block of an accepted layout. at : its middle in plan, at the accepted parting plane, in the mold frame."""
+
+    at: Vector
+    length: float
+    width: float
+    cavity_height: float
+    core_height: float
+
+    @property
+    def low(self) -> Vector:
+        """Lower corner."""
+        return (self.at[0] - self.length / 2, self.at[1] - self.width / 2, self.at[2] - self.core_height)
+
+    @property
+    def high(self) -> Vector:
+        """Upper corner."""
+        return (self.at[0] + self.length / 2, self.at[1] + self.width / 2, self.at[2] + self.cavity_height)
+
+
+@dataclass(frozen=True)
+class Least:
+    """Steel that the rules want: beside the part along x and along y, over it, under it [mm]."""
+
+    x: float
+    y: float
+    over: float
+    under: float
+
+
+def found_again(layout: BlockLayout, kept: KeptBlock) -> bool:
+    """Return whether a block that was sized anew is the accepted one, to the digits in which that is written."""
+    pairs = zip((*layout.low, *layout.high), (*kept.low, *kept.high), strict=True)
+    return max(abs(a - b) for a, b in pairs) <= SNAP
+
+
+def keep_block(
+    fresh: BlockLayout, kept: KeptBlock, least: Least, body: Body, blocks: Blocks
+) -> tuple[BlockLayout, Notes]:
+    """Return the accepted block, grown at the sides where the rules ask for more steel, and where that is.
+
+    fresh : the block without an accepted one: what the spec gives, and heights that must grow, are taken from it
+    """
+    part = [(float(a), float(b)) for a, b in zip(*body.box, strict=True)]
+    low, high, grown = list(kept.low), list(kept.high), list[str]()
+    for axis, wall, given in ((0, least.x, blocks.length), (1, least.y, blocks.width)):
+        if given is not None:
+            low[axis], high[axis] = fresh.low[axis], fresh.high[axis]
+            continue
+        left = (part[axis][0] - low[axis], high[axis] - part[axis][1])
+        by = _growth(high[axis] - low[axis], [wall - steel for steel in left])
+        low[axis], high[axis] = low[axis] - by[0], high[axis] + by[1]
+        for side, steel, more in zip("-+", left, by, strict=True):
+            if more:
+                grown.append(_told(f"{side}{'xy'[axis]} side", more, steel, wall, "beside"))
+    over, under = high[2] - part[2][1], part[2][0] - low[2]
+    if blocks.cavity_height is not None:
+        high[2] = fresh.high[2]
+    elif over < least.over - SNAP:
+        grown.append(_told("top", fresh.high[2] - high[2], over, least.over, "over"))
+        high[2] = fresh.high[2]
+    if blocks.core_height is not None:
+        low[2] = fresh.low[2]
+    elif under < least.under - SNAP:
+        grown.append(_told("bottom", low[2] - fresh.low[2], under, least.under, "under"))
+        low[2] = fresh.low[2]
+    layout = BlockLayout((low[0], low[1], low[2]), (high[0], high[1], high[2]))
+    why = f"{KEPT}, grown at the {'; at the '.join(grown)}" if grown else f"{KEPT}: the least walls of the rules fit"
+    return layout, Notes(decisions=(Decision("blocks", f"{size_text(layout)} mm closed", why),))
+
+
+def _growth(size: float, missing: list[float]) -> list[float]:
+    """Return by how much each end grows, so that nothing is missing and the size is a preferred one [mm]."""
+    missing = [m if m > SNAP else 0.0 for m in missing]
+    ends = sum(m > 0.0 for m in missing)
+    if not ends:
+        return missing
+    needed = size + sum(missing)
+    spare = (preferred_size_up(round(needed, 6), "edge") - needed) / ends
+    return [m + spare if m else 0.0 for m in missing]
+
+
+def _told(side: str, by: float, steel: float, needed: float, where: str) -> str:
+    return f"{side} by {by:.2f} mm: {steel:.2f} mm of steel {where} the part, {needed:.2f} mm are needed"
+
+
+def size_text(layout: BlockLayout) -> str:
+    """Return length, width and height of a block, such as ``100 x 80 x 63.5``."""
+    size = [b - a for a, b in zip(layout.low, layout.high, strict=True)]
+    return " x ".join(f"{math.floor(v * 100 + 0.5) / 100:g}" for v in size)
