@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 
 from moldgen.flow.job import Cell, Table
 from moldgen.model.revision import Comparison, Fate, Work
@@ -11,8 +11,11 @@ from moldgen.output import compare_words as words
 MOST_ROWS = 30
 """Rows of a table on the terminal; the page and the JSON have them all."""
 
-NAME, CAUSE, SIZE, SHORT = 22, 32, 28, 14
-"""Characters of a name, of a cause or note, of a size, and what a name may take more where there is room."""
+WIDTH = 118
+"""Characters of a row of a table, beside the two before it."""
+
+LEAST = 14
+"""Characters that every column may take."""
 
 
 def compare_headline(comparison: Comparison) -> str:
@@ -36,10 +39,10 @@ def _components(comparison: Comparison) -> Table:
     rows = [
         (
             change.fate.value,
-            _clip(words.component_name(change), NAME + SHORT),
+            words.component_name(change),
             _volume(change.weld_mm3),
             _volume(change.cut_mm3),
-            _clip(change.note, CAUSE),
+            change.note,
         )
         for change in changed
     ]
@@ -54,18 +57,16 @@ def _steel(comparison: Comparison) -> Table:
         for change in words.by_fate(comparison, Fate.WELD, Fate.CUT)
         for piece in sorted(change.pieces, key=lambda p: (p.work is not Work.WELD, p.number))
     ]
-    names = [_clip(piece.component, NAME) for piece in pieces]
-    room = CAUSE + NAME - max(map(len, names), default=0)  # short names leave room for causes
     rows = [
         (
-            name,
+            piece.component,
             words.piece_label(piece),
             _round(piece.volume_mm3) if piece.exact else words.piece_volume(piece),
             _round(piece.depth_mm),
             words.place(piece.at),
-            _clip(piece.cause, room),
+            piece.cause,
         )
-        for name, piece in zip(names, pieces, strict=True)
+        for piece in pieces
     ]
     columns = ("component", "piece", "volume [mm3]", "depth [mm]", "at x, y, z (mold)", "cause")
     return _table("steel to weld and to cut", columns, rows)
@@ -74,11 +75,11 @@ def _steel(comparison: Comparison) -> Table:
 def _items(comparison: Comparison) -> Table:
     rows = [
         (
-            _clip(item.name if item.name.startswith(item.kind) else f"{item.kind} {item.name}", NAME),
+            item.name if item.name.startswith(item.kind) else f"{item.kind} {item.name}",
             words.place(item.was_at),
             words.place(item.now_at),
             words.item_move(item),
-            _clip(item.was if item.was == item.now else f"{item.was or 'none'} -> {item.now or 'none'}", SIZE),
+            item.was if item.was == item.now else f"{item.was or 'none'} -> {item.now or 'none'}",
         )
         for item in comparison.items
     ]
@@ -89,11 +90,11 @@ def _items(comparison: Comparison) -> Table:
 def _numbers(comparison: Comparison) -> Table:
     rows = [
         (
-            _clip(f"{n.name} [{n.unit}]" if n.unit not in ("", "1") else n.name, NAME + SHORT),
+            f"{n.name} [{n.unit}]" if n.unit not in ("", "1") else n.name,
             None if n.was is None else _round(n.was),
             None if n.now is None else _round(n.now),
             words.change_words(n),
-            _clip(n.cause, CAUSE),
+            n.cause,
         )
         for n in comparison.numbers
     ]
@@ -104,10 +105,10 @@ def _part(comparison: Comparison) -> Table:
     rows = [
         (
             c.kind.value,
-            _clip(c.feature, NAME),
+            c.feature,
             words.place(c.at),
             words.place(c.shift, 3),
-            _clip(f"{c.was or 'none'} -> {c.now or 'none'}" if c.was or c.now else "", NAME),
+            f"{c.was or 'none'} -> {c.now or 'none'}" if c.was or c.now else "",
         )
         for c in comparison.part
     ]
@@ -115,12 +116,22 @@ def _part(comparison: Comparison) -> Table:
 
 
 def _table(title: str, columns: tuple[str, ...], rows: Sequence[tuple[Cell, ...]]) -> Table:
-    """Return a table of at most `MOST_ROWS` rows, and one that counts the others."""
+    """Return a table of at most `MOST_ROWS` rows, and one that counts the others, that fits the terminal."""
     shown = list(rows)
     if len(rows) > MOST_ROWS:
         rest = f"and {len(rows) - MOST_ROWS + 1} more"
         shown = [*rows[: MOST_ROWS - 1], (rest, *[None] * (len(columns) - 1))]
-    return Table(title, columns, tuple(shown))
+    return Table(title, columns, tuple(_fitted(columns, shown)))
+
+
+def _fitted(columns: tuple[str, ...], rows: Sequence[tuple[Cell, ...]]) -> Iterator[tuple[Cell, ...]]:
+    """Yield the rows with the longest texts cut short, column by column, until a row fits `WIDTH`."""
+    flat = [tuple(" ".join(c.split()) if isinstance(c, str) else c for c in row) for row in rows]
+    widths = [max(len(str(c)) for c in column) for column in zip(columns, *flat, strict=True)]
+    while sum(widths) + 2 * (len(widths) - 1) > WIDTH and max(widths) > LEAST:
+        widths[widths.index(max(widths))] -= 1
+    for row in flat:
+        yield tuple(_clip(c, most) if isinstance(c, str) else c for c, most in zip(row, widths, strict=True))
 
 
 def _volume(value: float) -> float | None:
@@ -132,7 +143,9 @@ def _round(value: float) -> float:
     return float(f"{value:.4g}")
 
 
-def _clip(long: str, most: int) -> str:
-    """Return text on one line, cut short at `most` characters."""
-    flat = " ".join(long.split())
-    return flat if len(flat) <= most else flat[: most - 3].rstrip() + "..."
+def _clip(text: str, most: int) -> str:
+    """Return text cut short in its middle: causes and names differ at their ends."""
+    if len(text) <= most:
+        return text
+    head = (most - 3) * 3 // 5
+    return f"{text[:head].rstrip()}...{text[len(text) - (most - 3 - head) :].lstrip()}"

@@ -88,7 +88,7 @@ class PartChange:
         x, y, z = self.at
         text = f"{self.feature} at {x:.2f}, {y:.2f}, {z:.2f}: {self.kind.value}"
         if self.shift is not None:
-            text += " by " + ", ".join(f"{v:.3f}" for v in self.shift) + " mm"
+            text += " by " + ", ".join(f"{round(v, 3) + 0.0:.3f}" for v in self.shift) + " mm"
         if self.was or self.now:
             text += f" from {self.was or 'nothing'} to {self.now or 'nothing'}"
         return text

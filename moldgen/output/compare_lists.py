@@ -34,7 +34,7 @@ def item_section(items: Sequence[ItemChange]) -> Markup:
             words.item_move(item),
             item.was,
             item.now,
-            item.note,
+            words.item_note(item),
         )
         for item in items
     ]
@@ -46,7 +46,7 @@ def number_section(numbers: Sequence[NumberChange]) -> Markup:
     """Return the table of numbers that changed beyond noise."""
     rows = [
         (
-            f"{number.name} [{number.unit}]" if number.unit not in ("", "1") else number.name,
+            number.name + words.unit_words(number.unit),
             "" if number.was is None else words.figure(number.was),
             "" if number.now is None else words.figure(number.now),
             words.change_words(number),

@@ -94,7 +94,7 @@ def _component(change: ComponentChange, anchor: str, pictures: DrawnComparison, 
     name = words.component_name(change)
     facts = [words.steel_facts(change), _material(change), _count(change), change.note]
     legend = [_tag("weld", "weld or new insert"), _tag("cut", "cut away"), _tag("steel", "steel of the new tool")]
-    drawn = pictures.of(change.new)
+    drawn = pictures.of(change)
     figures = [html.picture(file, _picture_words(change, k)) for k, file in enumerate(drawn)]
     return html.lines(
         [
@@ -160,7 +160,8 @@ def _list(changes: Sequence[ComponentChange]) -> Markup:
         return element("p", ", ".join(words.component_name(c) for c in changes))
     items = []
     for change in changes:
-        way = f"by {words.place(change.shift, 3)} mm" if change.shift and change.fate is Fate.MOVED else ""
+        moved = change.shift is not None and change.fate is Fate.MOVED and "moved by" not in change.note
+        way = f"moved by {words.place(change.shift, 3)} mm" if moved else ""
         facts = ", ".join(filter(None, (way, _material(change), _count(change), change.note)))
         items.append(element("li", words.component_name(change) + (f": {facts}" if facts else "")))
     return element("ul", *items)

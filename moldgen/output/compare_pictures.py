@@ -10,7 +10,9 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
+from moldgen.model.revision import ComponentChange, Work
 from moldgen.output.compare_scene import ComparePicture, read_pictures, write_pictures
+from moldgen.output.compare_words import picture_key
 from moldgen.output.pictures import WRONG_ARGUMENTS, paint, start_painter
 
 MOST_DRAWN = 24
@@ -22,9 +24,9 @@ FIRST_S, EACH_S = 60.0, 15.0
 
 @dataclass(frozen=True)
 class DrawnComponent:
-    """The sheets that were drawn of one component, in order."""
+    """The sheets that were drawn of one component, in order; `key` is that of its `ComparePicture`."""
 
-    component: str
+    key: str
     files: tuple[Path, ...]
 
 
@@ -35,9 +37,9 @@ class DrawnComparison:
     components: tuple[DrawnComponent, ...] = ()
     missing: str = ""
 
-    def of(self, component: str) -> tuple[Path, ...]:
+    def of(self, change: ComponentChange) -> tuple[Path, ...]:
         """Return the sheets of a component, none if it has none."""
-        return tuple(f for drawn in self.components if drawn.component == component for f in drawn.files)
+        return tuple(f for drawn in self.components if drawn.key == picture_key(change) for f in drawn.files)
 
 
 def draw_comparison(
@@ -45,14 +47,15 @@ def draw_comparison(
 ) -> DrawnComparison:
     """Draw `pictures` into `folder` (made if absent) and wait; never raises for the painter's sake.
 
-    Files are named by the place of the component in `pictures` and by the sheet: ``component_1_sheet_1.png``. Only the
-    first `MOST_DRAWN` components are drawn. `command` is the painter to run instead of this module's own.
+    Files are named by the place of the component and by the sheet: ``component_1_sheet_1.png``. Those with steel to
+    weld come first, and no more than `MOST_DRAWN` components are drawn. `command` is the painter to run instead of this
+    module's own.
 
     Raises
     ------
     OSError : the folder cannot be written
     """
-    drawn = list(pictures[:MOST_DRAWN])
+    drawn = sorted(pictures, key=lambda p: all(piece.role != Work.WELD for piece in p.pieces))[:MOST_DRAWN]
     if not drawn:
         return DrawnComparison()
     names = {k: [_file_name(k, sheet) for sheet in range(len(p.sheets))] for k, p in enumerate(drawn)}
@@ -62,9 +65,9 @@ def draw_comparison(
     result = job.finish(FIRST_S + EACH_S * len(drawn))
     missing = [result.missing] if result.missing else []
     if len(pictures) > MOST_DRAWN:
-        missing.append(f"only the first {MOST_DRAWN} of {len(pictures)} components with work on them are drawn")
+        missing.append(f"only {MOST_DRAWN} of {len(pictures)} components with work on them are drawn")
     components = tuple(
-        DrawnComponent(picture.component, tuple(folder / n for n in names[k] if folder / n in result.files))
+        DrawnComponent(picture.key, tuple(folder / n for n in names[k] if folder / n in result.files))
         for k, picture in enumerate(drawn)
     )
     return DrawnComparison(components, "; ".join(missing))

@@ -14,7 +14,7 @@ from typing import Protocol
 import numpy as np
 
 from moldgen.model.revision import ComponentChange, SteelPiece, Work
-from moldgen.output.compare_words import piece_label, piece_size, steel_facts
+from moldgen.output.compare_words import picture_key, piece_label, piece_size, steel_facts
 from moldgen.output.picture_geometry import sharp_edges
 from moldgen.output.scene import Indices, Points, Scene, SceneBody, read_scene, write_scene
 
@@ -64,11 +64,13 @@ class PlainFacets:
 class ComparePicture:
     """What is drawn of one component, in the mold frame of the new tool [mm].
 
+    key : tells it from others of the same name, see `picture_key`
     component : its name in the new tool; facts : what changes, in a few words
     steel : the component as it is to be; pieces : role "cut" or "weld", name as in `piece_label`
     captions : for each piece its size in words; close : names of the pieces that get a close-up, the first first
     """
 
+    key: str
     component: str
     facts: str
     steel: SceneBody
@@ -106,7 +108,7 @@ def compare_picture(change: ComponentChange, steel: Facets, pieces: Sequence[Fac
     body = steel_body(change.new, change.role, steel)
     whole = _reach(body)
     close = _close([p for p, drawn in zip(meshes, bodies, strict=True) if _reach(drawn) < FILLS * whole])
-    return ComparePicture(change.new, steel_facts(change), body, bodies, captions, close)
+    return ComparePicture(picture_key(change), change.new, steel_facts(change), body, bodies, captions, close)
 
 
 def steel_body(name: str, role: str, mesh: Facets) -> SceneBody:
@@ -138,7 +140,8 @@ def write_pictures(pictures: Sequence[ComparePicture], path: Path) -> None:
     words = []
     for number, picture in enumerate(pictures):
         write_scene(Scene(picture.component, "", "", (picture.steel, *picture.pieces)), path.parent / f"{number}.npz")
-        words.append({"facts": picture.facts, "captions": dict(picture.captions), "close": list(picture.close)})
+        captions, close = dict(picture.captions), list(picture.close)
+        words.append({"key": picture.key, "facts": picture.facts, "captions": captions, "close": close})
     path.write_text(json.dumps(words), encoding="utf-8")
 
 
@@ -153,7 +156,6 @@ def read_pictures(path: Path) -> tuple[ComparePicture, ...]:
     for number, words in enumerate(json.loads(path.read_text(encoding="utf-8"))):
         scene = read_scene(path.parent / f"{number}.npz")
         steel, *pieces = scene.bodies
-        found.append(
-            ComparePicture(scene.name, words["facts"], steel, tuple(pieces), words["captions"], tuple(words["close"]))
-        )
+        key, facts, captions, close = (words[name] for name in ("key", "facts", "captions", "close"))
+        found.append(ComparePicture(key, scene.name, facts, steel, tuple(pieces), captions, tuple(close)))
     return tuple(found)

@@ -33,6 +33,9 @@ HALO = 1.5
 LABEL_WIDTH, LABEL_STEP, STRIP = 76.0, 27.0, 34.0
 """px: width of a label, distance of labels in a column, height of the caption over a close-up."""
 
+BELOW_LEGEND = (24.0, 790.0)
+"""px: left border of the sheet, and the height that the legend leaves free."""
+
 Draw = Callable[[Canvas], None]
 
 
@@ -45,12 +48,13 @@ def sheets_of(picture: ComparePicture) -> list[Draw]:
 def _draw_overall(picture: ComparePicture, beside: Sequence[str], canvas: Canvas) -> None:
     sight = choose_sight(picture.steel, picture.pieces)
     rect, column = halves(FIELD, 0.62 if beside else 1.0)
-    rect = (rect[0], rect[1], rect[2] - 12.0, rect[3])
-    whole = [picture.steel, *picture.pieces]
-    low, high = flat_bounds(sight.view, [b.vertices for b in whole])
+    low, high = flat_bounds(sight.view, [b.vertices for b in (picture.steel, *picture.pieces)])
     size = np.maximum(high - low, 1e-6)
-    room = np.array([rect[2] - rect[0] - 2.0 * LABEL_WIDTH - 40.0, rect[3] - rect[1] - 60.0])
-    panel = canvas.panel(rect, sight.view, (low + high) / 2.0, float((room / size).min()))
+    # beside the legend or, where that shows a flat component larger, below it
+    places = [(left, rect[1], rect[2] - 12.0, top) for left, top in ((rect[0], rect[3]), BELOW_LEGEND)]
+    rooms = [np.array([x1 - x0 - 2.0 * LABEL_WIDTH - 40.0, y1 - y0 - 60.0]) for x0, y0, x1, y1 in places]
+    scale, rect = max((float((room / size).min()), place) for room, place in zip(rooms, places, strict=True))
+    panel = canvas.panel(rect, sight.view, (low + high) / 2.0, scale)
     _show(panel, picture, sight)
     panel.close()
     _labels(canvas, panel, picture, sight)

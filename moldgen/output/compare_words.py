@@ -29,6 +29,11 @@ CAUTIONS = (
 )
 """Own words; printed with every comparison."""
 
+SQUARED, CUBED = "\u00b2", "\u00b3"
+
+EQUAL = 1e-6
+"""mm: what is less apart lies on each other."""
+
 _ONE_MANY = (
     (Fate.CUT, "is cut", "are cut"),
     (Fate.WELD, "needs welding or a new insert", "need welding or a new insert"),
@@ -96,6 +101,11 @@ def piece_label(piece: SteelPiece) -> str:
     return f"{piece.work.value} {piece.number}"
 
 
+def picture_key(change: ComponentChange) -> str:
+    """Return what tells the pictures of one component from those of another of the same name: its first STEP file."""
+    return change.pieces[0].file if change.pieces and change.pieces[0].file else change.new
+
+
 def piece_volume(piece: SteelPiece) -> str:
     """Return the volume of a piece without unit; "about" says that its solid is made of facets."""
     return figure(piece.volume_mm3) if piece.exact else f"about {figure(piece.volume_mm3)}"
@@ -133,9 +143,13 @@ def count_words(change: ComponentChange) -> str:
 
 def alignment_words(alignment: Alignment) -> str:
     """Return how the old part was laid onto the new one, and how well it fits there."""
-    fits = f"{alignment.matched} of {alignment.faces} faces of the old part lie on the new one"
-    within = f" within {figure(alignment.residual_mm)} mm" if alignment.matched else ""
-    return f"{alignment.how}; {fits}{within}"
+    fits = f"{alignment.matched} of {alignment.faces} faces"
+    told = [alignment.how]
+    if fits not in alignment.how:
+        told.append(f"{fits} of the old part lie on the new one")
+    if alignment.residual_mm >= EQUAL:
+        told.append(f"they are up to {figure(alignment.residual_mm)} mm apart")
+    return "; ".join(told)
 
 
 def distance(was: Vector | None, now: Vector | None) -> float | None:
@@ -151,6 +165,17 @@ def item_move(item: ItemChange) -> str:
     if way is not None:
         return f"{way:.3f}" if way > 0.0 else "0"
     return "new" if item.now_at is not None else "gone" if item.was_at is not None else ""
+
+
+def item_note(item: ItemChange) -> str:
+    """Return the note of an item, unless it says no more than `item_move`."""
+    move = item_move(item)
+    return "" if item.note in (move, f"moved by {move} mm") else item.note
+
+
+def unit_words(unit: str) -> str:
+    """Return a unit in brackets with raised powers, " [mm3]"; "" for none."""
+    return "" if unit in ("", "1") else f" [{unit.replace('^2', SQUARED).replace('^3', CUBED)}]"
 
 
 def change_words(number: NumberChange) -> str:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 import subprocess
 import sys
 from pathlib import Path
@@ -53,7 +54,7 @@ def seen(picture: np.ndarray, work: Work) -> int:
 
 @pytest.fixture(scope="module")
 def drawn(tmp_path_factory: pytest.TempPathFactory) -> DrawnComparison:
-    pictures = (made(Work.CUT, Work.WELD), made(Work.CUT), made(Work.WELD))
+    pictures = (made(Work.CUT, Work.WELD), made(Work.WELD), made(Work.CUT))
     result = draw_comparison(pictures, tmp_path_factory.mktemp("pictures"))
     if "cannot draw" in result.missing or "is missing" in result.missing:
         pytest.skip(result.missing)
@@ -62,7 +63,7 @@ def drawn(tmp_path_factory: pytest.TempPathFactory) -> DrawnComparison:
 
 def test_pictures_show_both_works_in_their_colours(drawn: DrawnComparison) -> None:
     assert drawn.missing == ""
-    both, cut, weld = (pixels(component.files[0]) for component in drawn.components)
+    both, weld, cut = (pixels(component.files[0]) for component in drawn.components)
     assert both.shape == (1000, 1400, 3)
     # each piece is a plate of 12 x 16 mm on a block of 60 x 40 mm that takes some 450 px
     assert min(seen(both, Work.CUT), seen(both, Work.WELD)) > 3000
@@ -73,7 +74,7 @@ def test_pictures_show_both_works_in_their_colours(drawn: DrawnComparison) -> No
 
 
 def test_legend_names_only_what_is_there(drawn: DrawnComparison) -> None:
-    for component, works in zip(drawn.components, ("both", "cut", "weld"), strict=True):
+    for component, works in zip(drawn.components, ("both", "weld", "cut"), strict=True):
         legend = pixels(component.files[0])[95:420, 20:56]
         for word, ink in (("cut", palette.CUT), ("weld", palette.WELD)):
             swatch = (legend == np.array(ink.colour)).all(axis=2).sum()
@@ -162,7 +163,8 @@ def test_pictures_survive_the_trip_to_the_painter(tmp_path: Path) -> None:
     pictures = (made(Work.CUT, Work.WELD), made(Work.CUT))
     write_pictures(pictures, tmp_path / "scene")
     for ours, theirs in zip(pictures, read_pictures(tmp_path / "scene"), strict=True):
-        assert (ours.component, ours.facts, ours.captions, ours.close) == (
+        assert (ours.key, ours.component, ours.facts, ours.captions, ours.close) == (
+            theirs.key,
             theirs.component,
             theirs.facts,
             theirs.captions,
@@ -177,15 +179,17 @@ def test_pictures_survive_the_trip_to_the_painter(tmp_path: Path) -> None:
 def test_machine_that_cannot_draw_gives_no_picture_and_says_why(tmp_path: Path) -> None:
     crash = [sys.executable, "-c", "import os, signal; os.kill(os.getpid(), signal.SIGSEGV)"]
     result = draw_comparison([made(Work.CUT)], tmp_path, command=crash)
-    assert result.of("core") == ()
+    assert result.of(core(piece("core", Work.CUT, 1, 100.0))) == ()
     assert "component_1_sheet_1.png" in result.missing
     assert "cannot draw off screen" in result.missing
 
 
 def test_too_many_components_are_told(tmp_path: Path) -> None:
     nobody = [sys.executable, "-c", "pass"]
-    result = draw_comparison([made(Work.CUT)] * (MOST_DRAWN + 3), tmp_path, command=nobody)
-    assert f"only the first {MOST_DRAWN} of {MOST_DRAWN + 3}" in result.missing
+    welded = dataclasses.replace(made(Work.WELD), key="last")
+    result = draw_comparison([made(Work.CUT)] * (MOST_DRAWN + 2) + [welded], tmp_path, command=nobody)
+    assert result.components[0].key == "last"  # what must be welded is not the one left out
+    assert f"only {MOST_DRAWN} of {MOST_DRAWN + 3}" in result.missing
     assert draw_comparison([], tmp_path / "none") == DrawnComparison()
     assert not (tmp_path / "none").exists()
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import base64
 import dataclasses
 import json
 from html.parser import HTMLParser
@@ -94,7 +95,9 @@ def drawn(tmp_path: Path) -> DrawnComparison:
     files = (tmp_path / "1.png", tmp_path / "2.png")
     for file in files:
         file.write_bytes(PNG)
-    return DrawnComparison((DrawnComponent("core", files),), "not drawn: 3.png; the painter ended with exit code 1")
+    return DrawnComparison(
+        (DrawnComponent("steel/core_cut_1.step", files),), "not drawn: 3.png; the painter ended with exit code 1"
+    )
 
 
 def test_the_check_for_outside_references_finds_them(tmp_path: Path) -> None:
@@ -127,7 +130,7 @@ def test_page_says_what_becomes_of_the_steel(tmp_path: Path, drawn: DrawnCompari
     assert "painter ended with exit code 1" in page.text
     assert "New components (1) ejector pin 7: material 1.2210, quantity 4" in page.text
     assert "No longer used (1) ejector pin 5" in page.text
-    assert "Moved, steel unchanged (1) core pin 1: by -2.000, 0.000, 0.000 mm" in page.text
+    assert "Moved, steel unchanged (1) core pin 1: moved by -2.000, 0.000, 0.000 mm" in page.text
     assert "Unchanged (1) cavity" in page.text
 
 
@@ -171,6 +174,19 @@ def test_pictures_are_inside_the_page(tmp_path: Path, drawn: DrawnComparison) ->
         for file in component.files:
             file.unlink()
     assert page.tags.count("img") == 2
+
+
+def test_components_of_one_name_keep_their_own_pictures(tmp_path: Path) -> None:
+    changes, drawn = [], []
+    for number in (1, 2):
+        file = tmp_path / f"{number}.png"
+        file.write_bytes(PNG + bytes([number]))
+        changes.append(core(piece("pin", Work.CUT, 1, 10.0 - number, file=f"steel/{number}.step"), name="pin"))
+        drawn.append(DrawnComponent(f"steel/{number}.step", (file,)))
+    comparison = dataclasses.replace(nothing_changed(), components=tuple(changes))
+    page = written(comparison, tmp_path, DrawnComparison(tuple(drawn)))
+    shown = [base64.b64decode(r.partition(",")[2])[-1] for r in page.references if r.startswith("data:")]
+    assert shown == [1, 2]
 
 
 def test_names_cannot_become_markup(tmp_path: Path) -> None:
