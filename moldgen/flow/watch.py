@@ -10,9 +10,9 @@ from __future__ import annotations
 import json
 import threading
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from concurrent.futures import Future, ThreadPoolExecutor, wait
-from contextlib import AbstractContextManager
+from contextlib import AbstractContextManager, nullcontext
 from dataclasses import dataclass
 from functools import partial
 from pathlib import Path
@@ -23,11 +23,11 @@ from moldgen.errors import ExitCode, MoldgenError, SpecErrors
 from moldgen.flow.folder import MANIFEST
 from moldgen.flow.job import Job, JobResult, Limits
 from moldgen.flow.manifest_changes import ManifestChanges, manifest_changes
-from moldgen.flow.order import ENTRY
+from moldgen.flow.order import AHEAD, ENTRY
 from moldgen.flow.report import error_json
 from moldgen.flow.tell import Message, OutputPlanned
 from moldgen.flow.watched import Content, Watched
-from moldgen.flow.worker import run_in_worker, signals_stop
+from moldgen.flow.worker import run_in_worker, signals_stop, standby
 from moldgen.spec.accepted import accepted_file
 from moldgen.spec.load import LoadedSpec, load_spec
 
@@ -99,6 +99,7 @@ def watch_spec(
     progress: Callable[[], AbstractContextManager[Hear]],
     *,
     entry: str = ENTRY,
+    ahead: Sequence[str] = AHEAD,
 ) -> None:
     """Build the spec of `job` now and after each change, until a signal comes.
 
@@ -107,7 +108,7 @@ def watch_spec(
     job : a build; limits : of each build
     show : is told each round when it is finished
     progress : gives for each build what hears its messages, which come from another thread
-    entry : what the worker does; tests name their own
+    entry : what the worker does, and `ahead` : the modules that it loads before it is asked; tests name their own
 
     Raises
     ------
@@ -116,20 +117,33 @@ def watch_spec(
     files = Watched([job.source, accepted_file(job.source)])
     done: Content = {}
     output = _Output()
+    first = True
     with signals_stop():
         while True:
-            done = _next(files, done)
-            start = time.monotonic()
-            try:
-                loaded = load_spec(job.source, allow_code=job.options.allow_code)
-            except MoldgenError as error:  # the part of the spec that was good is watched on
-                show(Round(time.monotonic() - start, error=error))
-                continue
-            done = files.also(_files(job, loaded), done)
-            with progress() as hear:
-                made = _built(job, limits, hear, entry, output, partial(_current, files, done))
+            # the next worker loads the kernel while the files are at rest; the first build may not need the kernel
+            with nullcontext() if first else standby(ahead) as ready:
+                first = False
+                done, loaded = _good(job, files, done, show)
+                done = files.also(_files(job, loaded), done)
+                with progress() as hear:
+                    work = partial(run_in_worker, job, limits, entry=entry, ready=ready)
+                    made = _built(work, hear, output, partial(_current, files, done))
             if made is not None:
                 show(made)
+
+
+def _good(job: Job, files: Watched, done: Content, show: Callable[[Round], None]) -> tuple[Content, LoadedSpec]:
+    """Wait until the files hold something else than `done` and the spec is sound; what is wrong before is shown.
+
+    While the spec is wrong, the part file of the last sound one is watched on.
+    """
+    while True:
+        done = _next(files, done)
+        start = time.monotonic()
+        try:
+            return done, load_spec(job.source, allow_code=job.options.allow_code)
+        except MoldgenError as error:
+            show(Round(time.monotonic() - start, error=error))
 
 
 def _files(job: Job, loaded: LoadedSpec) -> list[Path]:
@@ -151,10 +165,8 @@ def _current(files: Watched, done: Content) -> bool:
     return files.look() in (None, done)
 
 
-def _built(
-    job: Job, limits: Limits, hear: Hear, entry: str, output: _Output, current: Callable[[], bool]
-) -> Round | None:
-    """Build once; return None if the build was stopped because it was no longer `current`."""
+def _built(work: Callable[..., JobResult], hear: Hear, output: _Output, current: Callable[[], bool]) -> Round | None:
+    """Build once by `work(hear, stop=...)`; return None if that was stopped because it was no longer `current`."""
     stop, start = threading.Event(), time.monotonic()
 
     def both(message: Message) -> None:
@@ -162,7 +174,7 @@ def _built(
         hear(message)
 
     with ThreadPoolExecutor(max_workers=1) as threads:
-        future: Future[JobResult] = threads.submit(run_in_worker, job, limits, both, entry=entry, stop=stop)
+        future: Future[JobResult] = threads.submit(work, both, stop=stop)
         try:
             while wait([future], LOOK_S).not_done:
                 if not current():

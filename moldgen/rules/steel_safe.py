@@ -29,7 +29,7 @@ BOSS_HOLE: Final = Practice(
 )
 PEG: Final = Practice("thickest free-standing pin that is looked at as a press fit", 8.0, 6.0, 12.0, "mm", "our choice")
 DEEP: Final = Practice("depth over diameter from which a hole or pin can hold a fit", 0.8, 0.5, 1.0, "1", "our choice")
-LIP_LEAST: Final = Practice("least reach of a snap lip", 0.2, 0.1, 0.3, "mm", "our choice")
+LIP_LEAST: Final = Practice("least reach of a snap lip", 0.3, 0.2, 0.5, "mm", "our choice")
 LIP_MOST: Final = Practice("largest reach of a snap lip", 4.0, 3.0, 5.0, "mm", "our choice")
 LIP_THICK: Final = Practice("thickest lip of a snap fit, along the pull", 8.0, 5.0, 10.0, "mm", "our choice")
 
