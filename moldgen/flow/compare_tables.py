@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator, Sequence
 
 from moldgen.flow.job import Cell, Table
@@ -13,6 +14,9 @@ MOST_ROWS = 30
 
 WIDTH = 118
 """Characters of a row of a table, beside the two before it."""
+
+_ZEROS = re.compile(r"(?<=\d)\.0+\b|(?<=\.\d)0+\b|(?<=\.\d\d)0+\b")
+"""Zeros at the end of decimals: causes are long, and a shift of 2.000, 0.000, 0.000 mm reads as well as 2, 0, 0 mm."""
 
 LEAST = 14
 """Characters that every column may take."""
@@ -64,7 +68,7 @@ def _steel(comparison: Comparison) -> Table:
             _round(piece.volume_mm3) if piece.exact else words.piece_volume(piece),
             _round(piece.depth_mm),
             words.place(piece.at),
-            piece.cause,
+            _ZEROS.sub("", piece.cause),
         )
         for piece in pieces
     ]
@@ -147,5 +151,5 @@ def _clip(text: str, most: int) -> str:
     """Return text cut short in its middle: causes and names differ at their ends."""
     if len(text) <= most:
         return text
-    head = (most - 3) * 3 // 5
+    head = (most - 3) // 2
     return f"{text[:head].rstrip()}...{text[len(text) - (most - 3 - head) :].lstrip()}"

@@ -127,7 +127,8 @@ def _reach(body: SceneBody) -> float:
 
 def _close(pieces: Sequence[SteelPiece]) -> tuple[str, ...]:
     """Return the pieces that get a close-up: the largest to weld, the largest to cut, then by volume."""
-    order = sorted(pieces, key=lambda p: (-p.volume_mm3, p.work.value, p.number))
+    # equal pieces on both sides of a part differ by the noise of the kernel: six digits, so that it does not sort them
+    order = sorted(pieces, key=lambda p: (-float(f"{p.volume_mm3:.6g}"), p.work.value, p.number))
     first = [next((p for p in order if p.work is work), None) for work in (Work.WELD, Work.CUT)]
     lead = [p for p in first if p is not None]
     least = LARGE * max((p.volume_mm3 for p in pieces), default=0.0)

@@ -107,7 +107,7 @@ def _show(panel: Panel, picture: ComparePicture, sight: Sight) -> None:
     edge = palette.tint(palette.EDGE, 0.45)
     _show_body(panel, picture.steel, palette.STEEL.colour, edge, opacity=opacity)
     solid = opacity == 1.0
-    nearer = HALO / panel.px_per_mm * sight.view.toward if solid else 0.0
+    nearer = HALO / panel.px_per_mm * sight.view.toward
     for piece in picture.pieces:
         ink = INKS[piece.role].colour
         _show_body(panel, piece, ink, palette.darken(ink, 0.45), nearer=nearer)

@@ -144,6 +144,8 @@ def test_close_ups_begin_with_the_largest_of_each_work_and_end_somewhere() -> No
     picture = compare_picture(core(*cuts, small, weld), facets(LOW, HIGH), meshes)
     assert picture.close == ("weld 1", *(f"cut {k}" for k in range(1, MOST_CLOSE)))
     assert picture.sheets == (picture.close[:2], picture.close[2:])
+    twins = [piece("core", Work.CUT, 1, 5.0), piece("core", Work.CUT, 2, 5.0 + 1e-9)]  # the noise of the kernel
+    assert compare_picture(core(*twins), facets(LOW, HIGH), meshes[:2]).close == ("cut 1", "cut 2")
     few = compare_picture(core(cuts[0], small), facets(LOW, HIGH), meshes[:2])
     assert few.close == ("cut 1",)  # cut 21 is small against it
     whole = compare_picture(core(cuts[0]), facets(LOW, HIGH), [facets(LOW, HIGH)])

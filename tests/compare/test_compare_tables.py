@@ -2,10 +2,13 @@
 
 from __future__ import annotations
 
-from helpers.comparisons import boss_moved, hundreds, nothing_changed
+import dataclasses
+
+from helpers.comparisons import boss_moved, core, hundreds, nothing_changed, piece
 
 from moldgen.flow.compare_tables import MOST_ROWS, compare_headline, compare_tables
 from moldgen.flow.report import table_lines
+from moldgen.model.revision import Work
 
 COLUMNS = 120
 
@@ -34,6 +37,15 @@ def test_tables_list_what_changed_and_nothing_else() -> None:
     assert items[2][-1] == "0.8 x 2 mm -> 0.9 x 2 mm"
     assert tables["numbers that changed"].rows[0] == ("clamp force [kN]", 210.0, 214.2, "+2.0 %", "the rim grew")
     assert tables["the part"].rows[0][3] == "-2.000, 0.000, 0.000"
+
+
+def test_long_causes_keep_what_and_how() -> None:
+    cause = "boss d 6.6 with hole d 2.9 at -27.64, -20.93, 13.40: moved by 2.000, 0.000, 10.250 mm"
+    one = dataclasses.replace(piece("core", Work.CUT, 1, 5.0), cause=cause)
+    tables = compare_tables(dataclasses.replace(nothing_changed(), components=(core(one),)))
+    table = next(t for t in tables if "weld" in t.title)
+    assert table.rows[0][-1].startswith("boss d 6.6 with hole")
+    assert table.rows[0][-1].endswith(": moved by 2, 0, 10.25 mm")
 
 
 def test_equal_tools_have_no_table() -> None:
