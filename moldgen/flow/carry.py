@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 
 import numpy as np
 
-from moldgen.errors import KernelError
-from moldgen.finding import Decision, Notes
+from moldgen.errors import KernelError, PartError
+from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.flow.carry_pull import SAME_WAY
 from moldgen.flow.review import Reviewed
 from moldgen.flow.side_plan import turned_back
@@ -15,12 +16,13 @@ from moldgen.flow.words import direction_text
 from moldgen.kernel.face_again import find_again
 from moldgen.kernel.face_signature import PartSigns, part_signs
 from moldgen.layout.carry_block import KeptBlock
-from moldgen.layout.kept import Kept, KeptGate, KeptItem
+from moldgen.layout.kept import REMEDY, Kept, KeptGate, KeptItem
 from moldgen.model.accepted import SNAP, Accepted, AcceptedBlocks, AcceptedCore, AcceptedGate, AcceptedPin
 from moldgen.model.face_sign import FaceSign
 from moldgen.model.halves import Halves
 from moldgen.model.part import MoldFrame, Vector
 from moldgen.model.side_action import SideKind
+from moldgen.parting.halves import Parted
 
 ALIKE = 0.985
 """Cosine (10 deg) from which a side action counts as an accepted one that turned (our choice)."""
@@ -123,9 +125,37 @@ def _height(frame: MoldFrame, pull: Vector, height: float) -> float:
     return base + height * (unit - base)
 
 
-def same_level(level: float, accepted: float | None) -> bool:
-    """Return whether a parting plane that was found is the accepted one, to the digits in which that is written."""
-    return accepted is not None and abs(level - accepted) <= SNAP
+def at_accepted_level(reviewed: Reviewed, free: Parted, part_at: Callable[[float], Parted]) -> tuple[Parted, Notes]:
+    """Return the halves parted at the accepted height where that works, else `free`, and why.
+
+    free : parted as the part alone suggests; part_at : parts at a height of the mold [mm]
+    """
+    level = accepted_level(reviewed)
+    if level is None or abs(free.level - level) <= SNAP:
+        return free, Notes()
+    try:
+        parted = part_at(level)
+    except (PartError, KernelError) as error:
+        why = error.what.split("\n")[0]
+    else:
+        off = abs(parted.level - level)
+        if off <= SNAP and (parted.check.proved or not free.check.proved):
+            text = "kept from the accepted layout"
+            return replace(parted, asked=None), Notes(
+                decisions=(Decision("parting height", f"{level:.3f} mm (mold)", text),)
+            )
+        why = f"the parting line settles {off:.3f} mm from it" if off > SNAP else parted.check.complaint
+    finding = Finding(
+        "accepted.parting_moved",
+        Severity.CAUTION,
+        f"the mold no longer parts at the accepted height, it parts {free.level - level:+.3f} mm from it: {why}",
+        where="parting.height",
+        value=round(free.level, 3),
+        limit=round(level, 3),
+        unit="mm",
+        remedy=REMEDY,
+    )
+    return free, Notes((finding,))
 
 
 def accepted_block(reviewed: Reviewed) -> KeptBlock | None:
@@ -164,4 +194,4 @@ def compare_sides(reviewed: Reviewed, halves: Halves) -> Notes:
         told.append(f"{text} {was}" + ("" if best.name == side.name else f" ({best.name})"))
     told += [f"{one.name} along {direction_text(one.direction)} is gone" for one in left]
     why = "side actions follow the undercuts of the part; by kind and direction"
-    return Notes(decisions=(Decision("side actions against the accepted layout", "; ".join(told), why),))
+    return Notes(decisions=(Decision("side actions kept", "; ".join(told), why),))

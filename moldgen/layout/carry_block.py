@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 from moldgen.catalog import preferred_size_up
@@ -45,6 +46,12 @@ class Least:
     y: float
     over: float
     under: float
+
+
+def block_between(low: Sequence[float], high: Sequence[float]) -> BlockLayout:
+    """Return the block between two corners [mm]."""
+    one, other = (tuple(float(v) for v in corner) for corner in (low, high))
+    return BlockLayout(one, other)  # type: ignore[arg-type]
 
 
 def found_again(layout: BlockLayout, kept: KeptBlock) -> bool:
