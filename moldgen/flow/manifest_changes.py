@@ -33,7 +33,7 @@ _SUMS: Final = (("stroke_mm", "ejection stroke", "mm"), ("ejection_force_n", "ej
 class ManifestChanges:
     """What changed, as phrases, each kind in an order of its own.
 
-    choices : resin, pull, shrink, block, stroke, force
+    choices : resin, pull, shrink, block, steels, stroke, force
     items : pins and gate that moved, came, went or changed their size
     recut, new, gone : names of components whose STEP file is another, that came, that went
     unchanged : how many components have the very same file
@@ -106,11 +106,20 @@ def _choices(old: Mapping[str, Any], new: Mapping[str, Any]) -> Iterator[str]:
     one, two = (_block(manifest) for manifest in (old, new))
     if one != two:
         yield f"block {one} -> {two} mm"
+    yield from _materials(old, new)
     before, after = (_map(manifest.get("layout")) for manifest in (old, new))
     for key, name, unit in _SUMS:
         was, now = before.get(key), after.get(key)
         if _differ(was, now, NOISE * abs(was) if isinstance(was, int | float) else 0.0):
             yield f"{name} {was:.4g} -> {now:.4g} {unit}"
+
+
+def _materials(old: Mapping[str, Any], new: Mapping[str, Any]) -> Iterator[str]:
+    """Yield components that are of another steel; that of the part is its resin, which is told already."""
+    was, now = ({c.get("name"): c.get("material") for c in _rows(m.get("components"))} for m in (old, new))
+    for name, material in now.items():
+        if name in was and was[name] != material and material != new.get("resin"):
+            yield f"{name} of {was[name]} -> {material}"
 
 
 def _block(manifest: Mapping[str, Any]) -> str:

@@ -21,7 +21,7 @@ class SteelSafe:
     """One dimension of the part that is likely to be tuned, or several equal ones.
 
     feature, dimension : "hole in a boss", "diameter"
-    places : of each of the equal ones, in part coordinates [mm]; formed_by : the component that forms each of them
+    places : of each of the equal ones, in part coordinates [mm]; formed_by : the components that form them
     nominal_mm : of the part as drawn
     allowance_mm : steel to leave on each face; faces : of the dimension on which it is left, 1 or 2
     steel_first_mm, steel_last_mm : the dimension in the steel, shrink included, as it starts and as it would end; the

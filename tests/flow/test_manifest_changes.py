@@ -27,7 +27,9 @@ OLD: dict[str, Any] = {
         "stroke_mm": 20.0,
         "ejection_force_n": 400.0,
     },
-    "components": [{"name": n, "file": f"step/{n}.step", "positions": [[0, 0, 0]]} for n in NAMES],
+    "components": [
+        {"name": n, "file": f"step/{n}.step", "material": "1.2311", "positions": [[0, 0, 0]]} for n in NAMES
+    ],
     "files": FILES,
     "proofs": [{"name": "the cavity half opens", "verdict": "passed"}],
     "findings": [{"code": "draft.too_small", "severity": "warning"}],
@@ -67,6 +69,7 @@ CASES: dict[str, tuple[list[tuple[str, Any]], str]] = {
         "ejector pin 1 diameter 3 -> 4 mm; 4 components unchanged",
     ),
     "a component gone": ([("components/3", None)], "ejector pin gone; 3 others unchanged"),
+    "a steel": ([("components/2/material", "1.2343")], "core of 1.2311 -> 1.2343; 4 components unchanged"),
     "the resin": ([("resin", "PP")], "resin ABS -> PP; 4 components unchanged"),
     "the pull": (
         [("pull/direction", [0, 0, -1])],
