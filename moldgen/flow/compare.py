@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -30,7 +30,7 @@ from moldgen.revision.align import align
 from moldgen.revision.causes import Causes
 from moldgen.revision.features import part_changes
 from moldgen.revision.items import paired_items
-from moldgen.revision.numbers import choice_changes, number_changes
+from moldgen.revision.numbers import choice_changes, number_changes, placed_record
 from moldgen.revision.placing import place_old
 from moldgen.revision.steel import ComparedComponent, compare_steel
 from moldgen.revision.tool_record import ToolRecord, tool_record
@@ -98,6 +98,7 @@ def compare_tools(old: ToolRecord, new: ToolRecord, tell: Tell, names: tuple[str
         alignment, part = _part_compared(old, new)
         stage.detail = alignment.how
     placing = place_old(old.frame, new.frame, alignment)
+    before = placed_record(old.record, alignment, placing)
     items = paired_items(old, new, placing)
     causes = Causes(new.frame, part, items, _whole(old, new))
     with tell.stage("compare the steel") as stage:
@@ -109,8 +110,8 @@ def compare_tools(old: ToolRecord, new: ToolRecord, tell: Tell, names: tuple[str
         part,
         tuple(c.change for c in components),
         tuple(p.change() for p in items if not p.same),
-        number_changes(old.record, new.record, part),
-        (*_alignment_findings(alignment), *_choices(old, new), *_steel_findings(components), *findings),
+        number_changes(before, new.record, part),
+        (*_alignment_findings(alignment), *_choices(before, new.record), *_steel_findings(components), *findings),
     )
     return Compared(comparison, tuple(components))
 
@@ -170,7 +171,7 @@ def _alignment_findings(alignment: Alignment) -> tuple[Finding, ...]:
     )
 
 
-def _choices(old: ToolRecord, new: ToolRecord) -> tuple[Finding, ...]:
+def _choices(old: Mapping[str, Any], new: Mapping[str, Any]) -> tuple[Finding, ...]:
     return tuple(
         Finding(
             code="compare.choice",
@@ -179,7 +180,7 @@ def _choices(old: ToolRecord, new: ToolRecord) -> tuple[Finding, ...]:
             where=c.topic,
             remedy="if that was not meant, fix it in the spec and build again",
         )
-        for c in choice_changes(old.record, new.record)
+        for c in choice_changes(old, new)
     )
 
 

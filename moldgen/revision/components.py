@@ -31,6 +31,8 @@ BLOCKS = frozenset({Role.CAVITY, Role.CORE})
 class Standing:
     """One component at one of its places: `number` counts them; `at` is its position, placed in the new mold [mm].
 
+    Of what is built where it stands, `at` stays the origin.
+
     name : of this copy, such as "ejector pin 3"
     """
 
@@ -88,7 +90,8 @@ def _called(part: SteelPart | None, copies: Sequence[Standing]) -> str:
 
 def _standing(tool: ToolRecord, part: SteelPart, placing: Placing) -> Iterator[Standing]:
     for number, at in enumerate(part.positions, start=1):
-        yield Standing(part, number, placing.point(at), tool.pin_at(part, number))
+        # the origin is the place of what is built where it stands: elsewhere it would feign that a half moved
+        yield Standing(part, number, placing.point(at) if any(at) else at, tool.pin_at(part, number))
 
 
 def _group(was: Standing | None, now: Standing | None) -> tuple[object, ...]:

@@ -22,6 +22,9 @@ SAME_PIN = 0.05
 MOST_MOVED = 15.0
 """mm: a pin farther away is another pin, not this one moved (our choice: about the pitch of pins on a small part)."""
 
+BLOCK = "block"
+"""Kind of the closed block: its size is told along the axes of the mold."""
+
 
 @dataclass(frozen=True)
 class Item:
@@ -35,7 +38,9 @@ class Item:
 
     def placed(self, placing: Placing) -> Item:
         """Return the thing where the old tool stands in the new mold."""
-        return replace(self, at=placing.point(self.at), box=placing.box(self.box))
+        box = placing.box(self.box)
+        size = _box_size(box) if self.kind == BLOCK and placing.square else self.size
+        return replace(self, at=placing.point(self.at), box=box, size=size)
 
 
 @dataclass(frozen=True)
@@ -96,10 +101,12 @@ def items_of(tool: ToolRecord) -> tuple[Item, ...]:
     found = [_ejector_pin(p) for p in layout["ejector_pins"]]
     found += [_core_pin(p, low[2]) for p in layout["core_pins"]]
     found.append(_gate(layout["gate"], high[2]))
-    size = tuple(b - a for a, b in zip(low, high, strict=True))
     middle = (0.5 * (low[0] + high[0]), 0.5 * (low[1] + high[1]), low[2])
-    words = "{:g} x {:g} x {:g} mm".format(*(round(v, 3) for v in size))
-    return (*found, Item("block", "closed block", middle, words, tool.block))
+    return (*found, Item(BLOCK, "closed block", middle, _box_size(tool.block), tool.block))
+
+
+def _box_size(box: Box) -> str:
+    return " x ".join(f"{round(b - a, 3):g}" for a, b in zip(*box, strict=True)) + " mm"
 
 
 def paired_items(old: ToolRecord, new: ToolRecord, placing: Placing) -> tuple[ItemPair, ...]:
@@ -109,7 +116,7 @@ def paired_items(old: ToolRecord, new: ToolRecord, placing: Placing) -> tuple[It
     pairs: list[ItemPair] = []
     for reach in (SAME_PIN, MOST_MOVED):
         for gap, one, other in sorted(_gaps(before, after), key=lambda g: g[0]):
-            if one in before and other in after and (gap <= reach or one.kind in ("gate", "block")):
+            if one in before and other in after and (gap <= reach or one.kind in ("gate", BLOCK)):
                 pairs.append(ItemPair(one, other))
                 before.remove(one)
                 after.remove(other)

@@ -7,10 +7,17 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
-from moldgen.model.revision import NumberChange, PartChange
+import numpy as np
+
+from moldgen.model.revision import Alignment, NumberChange, PartChange
+from moldgen.revision.placing import UPRIGHT, Placing
 
 NOISE = 1e-6
 """Relative change below which a number is the same (our choice: rounding to twelve digits leaves far less)."""
+
+NOISE_OF = {"flow length": 0.02}
+"""Relative change of numbers that are measured along the edges of a mesh: the same part with other faces, or turned in
+its file, differed by 0.6 % (measured on a small cap)."""
 
 LEAST = 1e-9
 """Absolute change below which a number is the same, in its unit."""
@@ -77,12 +84,36 @@ def number_changes(
     for name in dict.fromkeys((*after, *before)):
         (unit, was), (_, now) = before.get(name, ("", None)), after.get(name, ("", None))
         unit = unit or after.get(name, ("", None))[0]
-        if was is not None and now is not None and abs(now - was) <= max(NOISE * max(abs(was), abs(now)), LEAST):
+        if was is not None and now is not None and abs(now - was) <= _noise(name, was, now):
             continue
         if was is None and now is None:
             continue
         found.append(NumberChange(name, unit, was, now, causes.of(name)))
     return (*found, *_proofs(old, new))
+
+
+def _noise(name: str, was: float, now: float) -> float:
+    return max(NOISE_OF.get(name, NOISE) * max(abs(was), abs(now)), LEAST)
+
+
+def placed_record(record: Mapping[str, Any], alignment: Alignment, placing: Placing) -> dict[str, Any]:
+    """Return the old tool's manifest with what is told in coordinates as the new tool tells it.
+
+    These are the pull, the block and the height of the parting line; the last two only where both tools open alike and
+    stand square to each other. All else is the same wherever a part lies in its file.
+    """
+    if placing.still and alignment.rotation == UPRIGHT:
+        return dict(record)
+    way = np.array(alignment.rotation) @ np.array(record["pull"]["direction"])
+    placed: dict[str, Any] = {**record, "pull": {**record["pull"], "direction": [round(float(v), 9) for v in way]}}
+    if placing.upright and placing.square:
+        parting = record["parting"]
+        low, high = ((float(x), float(y), float(z)) for x, y, z in parting["block_mm"])
+        box = [list(corner) for corner in placing.box((low, high))]
+        placed["parting"] = {**parting, "block_mm": box}
+        if parting["level_mm"] is not None:
+            placed["parting"]["level_mm"] = placing.point((0.0, 0.0, float(parting["level_mm"])))[2]
+    return placed
 
 
 def choice_changes(old: Mapping[str, Any], new: Mapping[str, Any]) -> tuple[Choice, ...]:
@@ -183,7 +214,7 @@ def _text(record: Mapping[str, Any], key: str) -> str:
 
 
 def _way(record: Mapping[str, Any]) -> str:
-    return ", ".join(f"{v:.4f}" for v in record["pull"]["direction"])
+    return ", ".join(f"{float(v) + 0.0:.4f}" for v in record["pull"]["direction"])
 
 
 def _made(record: Mapping[str, Any]) -> str:
