@@ -172,8 +172,8 @@ class Steel:
 class Told:
     """What the comparison must say of the part: one feature that changed.
 
-    word : in the name of the feature; kinds : any of them; shift : how far it moved; by : by how much its size changed
-    at : somewhere near this point of the new part's coordinates [mm]
+    word : in the name of the feature; kinds : any of them; shift : how far it moved
+    by : how much larger its size is, or its draft [mm, deg]; at : its box holds this point of the new part [mm]
     """
 
     word: str

@@ -100,7 +100,7 @@ ROUND_CHANGES = (
         Version(),
         Version(changed(post=post(diameter=POST - 2 * tan(1.0), end=2.0))),
         {"core": Steel(cut=K3 * frustum(POST / 2 - tan(1.0), POST / 2, 1.0))},
-        told=(Told("boss", (Kind.RESIZED, Kind.RESHAPED, Kind.MOVED), at=(*POST_AT, 2.0)),),
+        told=(Told("boss", (Kind.MOVED,), shift=(0.0, 0.0, -1.0), at=(*POST_AT, 2.0)),),
     ),
     Change(
         "boss wider",
@@ -131,6 +131,6 @@ ROUND_CHANGES = (
         Version(STRAIGHT_POST),
         Version(changed(STRAIGHT_POST, soft={"feature": "fillet", "edges": "bottom of post", "radius": 0.5})),
         {"core": Steel(weld=K3 * rounded_off(POST / 2, 0.5))},
-        told=(Told("", (Kind.ADDED, Kind.RESHAPED), at=(*POST_AT, POST_END)),),
+        told=(Told("rounding", (Kind.ADDED,), at=(*POST_AT, POST_END + 0.2)),),
     ),
 )

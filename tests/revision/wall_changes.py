@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from typing import Any
 
 from OCP.BRepBuilderAPI import BRepBuilderAPI_NurbsConvert, BRepBuilderAPI_Transform
@@ -37,8 +38,8 @@ from tests.revision.part_changes import (
 )
 
 K = K3 ** (1 / 3)
-RESHAPES = (Kind.MOVED, Kind.RESIZED, Kind.RESHAPED)
-"""What a wall that takes another place may be called: its neighbors grow with it."""
+LEAN = math.cos(math.radians(DRAFT))
+"""The thickness of a wall is told square to it, and the walls lean."""
 
 
 def rib(thickness: float) -> Feature:
@@ -138,7 +139,7 @@ WALL_CHANGES = (
         Version(),
         Version(walls((LENGTH + 1, WIDTH + 1), (INNER_LENGTH, INNER_WIDTH))),
         {"cavity": Steel(cut=K3 * (block(LENGTH + 1, WIDTH + 1, HEIGHT, DRAFT) - OUTSIDE))},
-        told=(Told("", RESHAPES, at=(LENGTH / 2, 0.0, HEIGHT / 2)),),
+        told=(Told("wall", (Kind.RESIZED,), by=0.5 * LEAN, at=(LENGTH / 2, 0.0, HEIGHT / 2)),),
     ),
     # Each inner wall goes in by 0.3 mm: the core gets thinner.
     Change(
@@ -146,7 +147,7 @@ WALL_CHANGES = (
         Version(),
         Version(walls((LENGTH, WIDTH), (INNER_LENGTH - 0.6, INNER_WIDTH - 0.6))),
         {"core": Steel(cut=K3 * (INSIDE - block(INNER_LENGTH - 0.6, INNER_WIDTH - 0.6, CEILING, DRAFT)))},
-        told=(Told("", RESHAPES, at=(INNER_LENGTH / 2, 0.0, CEILING / 2)),),
+        told=(Told("", (Kind.RESIZED,), by=0.3 * LEAN, at=(INNER_LENGTH / 2 - 0.4, 0.0, CEILING / 2)),),
     ),
     # The ceiling comes down by 0.6 mm. Off the core goes a slab, less the post and, where pins stand, less their tips;
     # the pins get shorter; the stud of the vent gets longer, into what was core. The fit of each pin keeps its length,
@@ -161,7 +162,7 @@ WALL_CHANGES = (
             "cavity": Steel(weld=K3 * LONGER_STUD),
         },
         aside=Steel(cut=K3 * LONGER_STUD, weld=K3 * LONGER_STUD + wide_bores(0.6 * K)),
-        told=(Told("", RESHAPES, at=(0.0, 0.0, CEILING - 0.6)),),
+        told=(Told("", (Kind.RESIZED,), by=0.6, at=(0.0, 0.0, CEILING - 0.6)),),
     ),
     # The outer walls lean by 1 deg more about the rim: the cavity grows inward.
     Change(
@@ -169,7 +170,7 @@ WALL_CHANGES = (
         Version(),
         Version(changed(cap={"draft": DRAFT + 1})),
         {"cavity": Steel(weld=K3 * (OUTSIDE - block(LENGTH, WIDTH, HEIGHT, DRAFT + 1)))},
-        told=(Told("", (Kind.DRAFT,), by=1.0, at=(LENGTH / 2, 0.0, HEIGHT / 2)),),
+        told=(Told("wall", (Kind.DRAFT,), by=1.0, at=(LENGTH / 2, 0.0, HEIGHT / 2)),),
     ),
     # 2 mm longer, 1 mm at either end: the cavity gets longer by cutting, the core by welding.
     Change(
@@ -181,8 +182,8 @@ WALL_CHANGES = (
             "core": Steel(weld=K3 * (block(INNER_LENGTH + 2, INNER_WIDTH, CEILING, DRAFT) - INSIDE)),
         },
         told=(
-            Told("", RESHAPES, at=(LENGTH / 2 + 1, 0.0, HEIGHT / 2)),
-            Told("", RESHAPES, at=(-LENGTH / 2 - 1, 0.0, HEIGHT / 2)),
+            Told("wall", (Kind.MOVED,), shift=(1.0, 0.0, 0.0), at=(LENGTH / 2 + 1, 0.0, HEIGHT / 2)),
+            Told("wall", (Kind.MOVED,), shift=(-1.0, 0.0, 0.0), at=(-LENGTH / 2 - 1, 0.0, HEIGHT / 2)),
         ),
     ),
     # Both blocks of the cap are longer, wider and higher by 1 %, the rim stays in z = 0, so each holds the one before.
@@ -194,14 +195,14 @@ WALL_CHANGES = (
         Version(plain(1.01), ceiling=CEILING * 1.01, roof=HEIGHT * 1.01),
         grown(1.01),
         aside=Steel(cut=sprue(HEIGHT * K * 1.01) - sprue(HEIGHT * K) + wide_bores(0.01 * CEILING * K)),
-        told=(Told("", RESHAPES),),
+        told=(Told("whole part", (Kind.RESIZED,), by=0.01),),
     ),
     Change(
         "chamfer added",
         Version(),
         Version(changed(bevel={"feature": "chamfer", "edges": "outer top of cap", "distance": 0.8})),
         {"cavity": Steel(weld=K3 * beveled_off(LENGTH, WIDTH, HEIGHT, DRAFT, 0.8))},
-        told=(Told("", (Kind.ADDED, Kind.RESHAPED), at=(LENGTH / 2, 0.0, HEIGHT)),),
+        told=(Told("chamfer", (Kind.ADDED,), at=(LENGTH / 2 - 0.5, 0.0, HEIGHT - 0.4)),),
     ),
     # The stud that forms the recess gets 0.3 mm longer; its flanks go on.
     Change(
@@ -209,7 +210,7 @@ WALL_CHANGES = (
         Version(RECESSED),
         Version(changed(recess=recess(0.9))),
         {"cavity": Steel(weld=K3 * slab(5.0, 6.0, 5.0, 0.6, 0.9))},
-        told=(Told("", RESHAPES, at=(-8.0, 0.0, HEIGHT - 0.9)),),
+        told=(Told("", (Kind.RESIZED,), by=-0.3, at=(-8.0, 0.0, HEIGHT - 0.9)),),
     ),
     # A light window through the roof, 4 x 3 mm at the top, 3 deg: a stud in the cavity half.
     Change(
@@ -221,7 +222,7 @@ WALL_CHANGES = (
             )
         ),
         {"cavity": Steel(weld=K3 * block(4.0, 3.0, HEIGHT - CEILING, 3.0))},
-        told=(Told("", (Kind.ADDED,), at=(0.0, 5.0, 8.0)),),
+        told=(Told("opening", (Kind.ADDED,), at=(0.0, 5.0, 8.0)),),
     ),
 )
 
