@@ -79,7 +79,7 @@ def _steel(comparison: Comparison) -> Table:
 def _items(comparison: Comparison) -> Table:
     rows = [
         (
-            item.name if item.name.startswith(item.kind) else f"{item.kind} {item.name}",
+            item.name if item.kind in item.name else f"{item.kind} {item.name}",
             words.place(item.was_at),
             words.place(item.now_at),
             words.item_move(item),
