@@ -96,10 +96,11 @@ def small_changes(spec: Path, record: Data) -> dict[str, str]:
     moves = MOVED.get(data.get("name", ""))
     if moves is not None:
         changes["a feature of the part"] = lambda d: _move(d, moves)
-    return {"a comment": f"{text}\n# a comment\n"} | {name: _edited(text, change) for name, change in changes.items()}
+    return {"a comment": f"{text}\n# a comment\n"} | {name: edited(text, change) for name, change in changes.items()}
 
 
-def _edited(text: str, change: Callable[[Data], None]) -> str:
+def edited(text: str, change: Callable[[Data], None]) -> str:
+    """Return a spec as text with a change made to its data."""
     yaml = YAML()
     yaml.width = 10000
     data = yaml.load(text)
@@ -127,7 +128,7 @@ def pins_as_given(record: Data) -> list[Data]:
 
 def with_pins(spec: Path, record: Data) -> str:
     """Return the spec with all ejector pins given where moldgen put them."""
-    return _edited(spec.read_text(encoding="utf-8"), lambda d: _give_pins(d, pins_as_given(record)))
+    return edited(spec.read_text(encoding="utf-8"), lambda d: _give_pins(d, pins_as_given(record)))
 
 
 def _give_pins(data: Data, pins: list[Data]) -> None:
