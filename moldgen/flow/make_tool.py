@@ -16,10 +16,13 @@ from moldgen.flow.side_steel import make_sides
 from moldgen.flow.stages import Made, Stages
 from moldgen.flow.tell import Tell
 from moldgen.layout.side_drive import is_level
+from moldgen.layout.steel_safe import steel_safe_advice
+from moldgen.layout.view import PartView
 from moldgen.model.halves import Halves
 from moldgen.model.layout import Layout
 from moldgen.model.side_action import SideKind
 from moldgen.model.slide import SideLayout
+from moldgen.model.steel_safe import SteelSafe
 from moldgen.model.tool import Tool
 from moldgen.proof.run import Claims
 from moldgen.spec.declared import key_values, narrowed
@@ -30,7 +33,8 @@ from moldgen.steel.side_motion import opening_steps
 
 FORM_KEYS = ("parting", "side_actions", "blocks", "ejection.stroke", "marks")
 LAYOUT_KEYS = ("core_pins", "ejection", "gate", "marks")
-"""The keys of the spec that the halves and the layout depend on."""
+SAFE_KEYS = ("steel_safe",)
+"""The keys of the spec that the halves, the layout and the steel-safe advice depend on."""
 
 
 @dataclass(frozen=True)
@@ -58,12 +62,13 @@ class Steel:
 
 @dataclass(frozen=True)
 class Built:
-    """The tool with everything that was known on the way to it."""
+    """The tool with everything that was known on the way to it; `steel_safe` is where steel may be left on."""
 
     reviewed: Reviewed
     shaped: Made[Shaped]
     layout: Layout
     steel: Made[Steel]
+    steel_safe: tuple[SteelSafe, ...]
     notes: Notes
 
     @property
@@ -106,8 +111,13 @@ def build_along(reviewed: Reviewed, stages: Stages) -> Built:
         {"halves": shaped, "layout": layout, "materials": materials},
         lambda: _cut(shaped.value, layout, materials, tell),
     )
-    notes = _accepted(reviewed, shaped.value.halves) + shaped.value.notes + more + steel.value.notes
-    return Built(reviewed, shaped, layout, steel, notes)
+    advice, told = stages.make(
+        "look for dimensions to be tuned",
+        {**key_values(spec, SAFE_KEYS), **_given(reviewed), "halves": shaped, "layout": layout},
+        lambda: _advised(_narrow(reviewed, SAFE_KEYS), shaped.value, layout, tell),
+    ).value
+    notes = _settled(reviewed, shaped.value.halves) + shaped.value.notes + more + steel.value.notes + told
+    return Built(reviewed, shaped, layout, steel, advice, notes)
 
 
 def _given(reviewed: Reviewed) -> dict[str, object]:
@@ -153,7 +163,16 @@ def _cut(shaped: Shaped, layout: Layout, materials: Materials, tell: Tell) -> St
     return Steel(tool, Claims(float(np.prod(halves.high - halves.low)), bored.total_mm3, stroke, tool.steps), notes)
 
 
-def _accepted(reviewed: Reviewed, halves: Halves) -> Notes:
+def _advised(reviewed: Reviewed, shaped: Shaped, layout: Layout, tell: Tell) -> tuple[tuple[SteelSafe, ...], Notes]:
+    with tell.stage("look for dimensions to be tuned") as stage:
+        view = PartView(shaped.halves, reviewed.frame, shaped.side_layout)
+        section = reviewed.loaded.spec.steel_safe
+        advice, notes = steel_safe_advice(view, layout, section, reviewed.resin, reviewed.frame)
+        stage.detail = f"{len(advice)} found" if advice else "none"
+    return advice, notes
+
+
+def _settled(reviewed: Reviewed, halves: Halves) -> Notes:
     """Return the notes of the review; undercuts that side actions form, or that are molded full, fail no longer."""
 
     def settled(finding: Finding) -> Finding:

@@ -153,6 +153,7 @@ def _record(built: Built, notes: Notes, proofs: tuple[Proof, ...], volumes: dict
         "contacts": built.halves.contacts,
     }
     record["layout"] = built.layout
+    record["steel_safe"] = built.steel_safe
     record["components"] = [component_record(c, files[c.name], volumes[c.name]) for c in built.tool.components]
     record["claims"] = built.claims
     return {**record, **notes_record(notes, proofs)}
@@ -164,7 +165,7 @@ def _result(built: Built, notes: Notes, proofs: tuple[Proof, ...]) -> JobResult:
     return JobResult(
         exit_code=code,
         headline=f"{built.reviewed.part.name}: {len(built.tool.components)} components, {proved}",
-        tables=build_tables(built.tool, built.layout),
+        tables=build_tables(built.tool, built.layout, built.steel_safe),
         proofs=proofs,
         findings=notes.findings,
         decisions=notes.decisions,

@@ -18,6 +18,9 @@ from moldgen.spec.tree import Path, Tree
 _MARK = "\ufdd0"
 """Stands around a key whose place in the file is told later: a character that no text may hold."""
 
+_KEY = re.compile(r"[a-z_]+((\.[a-z_]+)|(\[\d+\]))+")
+"""A key inside a section: ``ejection.pins[0]``. The name of a section alone may mean something else: the part."""
+
 
 def narrowed(loaded: LoadedSpec, keys: Iterable[str]) -> LoadedSpec:
     """Return the spec with nothing but `keys` (``"blocks"``, ``"ejection.stroke"``); reading another is a StageError.
@@ -64,12 +67,15 @@ def _plain(value: Any) -> Any:
 
 
 def located_notes(notes: Notes, loaded: LoadedSpec) -> Notes:
-    """Return the notes of stages with their marks turned into places in the file of the spec."""
+    """Return the notes of stages with marks, and places that are keys the user wrote, told as places in his file."""
 
     def told(text: str) -> str:
         return located(text, loaded)
 
-    findings = (replace(f, where=told(f.where), message=told(f.message)) for f in notes.findings)
+    def place(where: str) -> str:
+        return f"{loaded.locate(where)} ({where})" if _KEY.fullmatch(where) and loaded.has(where) else told(where)
+
+    findings = (replace(f, where=place(f.where), message=told(f.message)) for f in notes.findings)
     decisions = (replace(d, why=told(d.why), refused=tuple(map(told, d.refused))) for d in notes.decisions)
     return replace(notes, findings=tuple(findings), decisions=tuple(decisions))
 

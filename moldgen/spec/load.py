@@ -48,8 +48,11 @@ class LoadedSpec:
 
         A key that the user did not write is located at its section, or at the top of the file.
         """
-        path = key if isinstance(key, tuple) else tuple(int(k) if k.isdecimal() else k for k in key.split("."))
-        return self._tree.where(path)
+        return self._tree.where(_path(key))
+
+    def has(self, key: str) -> bool:
+        """True if the user wrote this key."""
+        return _path(key) in self._tree.values
 
     @property
     def folder(self) -> Path:
@@ -65,6 +68,12 @@ class LoadedSpec:
         if source.function is not None:
             return self.folder / source.function.rpartition(":")[0]
         return None
+
+
+def _path(key: str | tuple[str | int, ...]) -> tuple[str | int, ...]:
+    if isinstance(key, tuple):
+        return key
+    return tuple(int(k) if k.isdecimal() else k for k in key.replace("[", ".").replace("]", "").split("."))
 
 
 def load_spec(path: str | Path, *, allow_code: bool = False) -> LoadedSpec:

@@ -10,13 +10,14 @@ import pytest
 from helpers.small_specs import CUP, spec
 
 from moldgen.errors import KernelError, PartError, StageError
+from moldgen.finding import Finding, Notes, Severity
 from moldgen.flow.build import build_tool
 from moldgen.flow.job import Options
 from moldgen.flow.stages import Stages, reasons, runs_as_text, runs_from_text
 from moldgen.flow.store import Store
 from moldgen.flow.tell import silent
 from moldgen.memory import Forgetful, Memory
-from moldgen.spec.declared import key_values, located, narrowed
+from moldgen.spec.declared import key_values, located, located_notes, narrowed
 from moldgen.spec.load import load_spec
 
 GIB = 2**30
@@ -206,3 +207,17 @@ def test_what_is_kept_leads_to_the_same_bytes(name: str, tmp_path: Path) -> None
     assert ran == must_run
     assert sorted(kept) == sorted(alone)
     assert [path for path in kept if kept[path] != alone[path]] == []
+
+
+def test_a_finding_about_a_key_names_its_place_in_the_file(tmp_path: Path) -> None:
+    loaded = load_spec(spec(tmp_path, CUP, "ejection:\n  pins:\n    - {at: [0, 0, 14]}\n"))
+    line = CUP.count("\n") + 3
+
+    def where(text: str) -> str:
+        notes = Notes((Finding("ejector.off", Severity.NOTE, "off", where=text),))
+        return located_notes(notes, loaded).findings[0].where
+
+    assert where("ejection.pins[0]") == f"{loaded.path}:{line}:7 (ejection.pins[0])"
+    assert where("ejection.stroke") == "ejection.stroke"  # not written: there is no place to name
+    assert where("part") == "part"
+    assert where("core pin 1") == "core pin 1"
