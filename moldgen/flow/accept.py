@@ -37,7 +37,7 @@ def accept_layout(loaded: LoadedSpec, folder: Path, tell: Tell) -> JobResult:
     with tell.stage("read the tool") as stage:
         record = read_record(folder)
         _check_tool(record, folder, loaded)
-        stage.detail = f"{len(record['components'])} components, proved"
+        stage.detail = f"{len(record['proofs'])} proofs passed"
     with tell.stage("load the kernel"):
         from moldgen.flow.accept_part import accepted_of  # noqa: PLC0415  only once the folder is good
 
