@@ -37,9 +37,8 @@ TRIED_INSIDE = 64
 def depth_from(piece: Body, steel: Body) -> float:
     """Return the largest distance of a point of a piece from the surface of a solid that it touches [mm].
 
-    The farthest point is found among samples of the piece's mesh; its distance is the kernel's, so that it errs only by
-    where the samples lie: by less than 1e-4 where the farthest point is a corner, by their spacing's square over the
-    distance elsewhere.
+    The farthest point is found among samples of the piece's mesh, and its distance is the kernel's: right to the sag of
+    that mesh.
     """
     reach = float(np.linalg.norm(piece.box[1] - piece.box[0]))
     near = _near(steel.mesh, piece.box, reach)
