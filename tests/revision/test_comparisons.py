@@ -4,14 +4,16 @@ from __future__ import annotations
 
 import re
 from collections.abc import Callable
+from dataclasses import replace
 from functools import cache
+from typing import Any
 
 import numpy as np
 import pytest
 
 from moldgen.flow.compare import compare_tools
 from moldgen.flow.tell import silent
-from moldgen.model.revision import Comparison, Fate, PartChange
+from moldgen.model.revision import Comparison, Fate, PartChange, PartChangeKind
 from moldgen.revision.tool_record import tool_record
 from tests.helpers.outputs import manifest
 from tests.revision.part_changes import Change, Steel, Told
@@ -81,6 +83,23 @@ def number(text: str) -> float:
     found = re.search(r"-?\d+(\.\d+)?", text)
     assert found is not None, f"no number in '{text}'"
     return float(found[0])
+
+
+@pytest.mark.parametrize(
+    "wrong",
+    [
+        {"shift": (0.0, 2.01, 0.0)},
+        {"word": "hole"},
+        {"kinds": (PartChangeKind.RESIZED,)},
+        {"at": (6.0, 2.0, 5.0)},
+    ],
+    ids=lambda wrong: next(iter(wrong)),
+)
+def test_a_wrong_name_would_be_seen(wrong: dict[str, Any], compared: Compared) -> None:
+    (change,) = [c for c in CHANGES if c.name == "boss moved by 2 mm"]
+    (found,), (told,) = compared(change).part, change.told
+    assert is_told(told, found)
+    assert not is_told(replace(told, **wrong), found)
 
 
 @named(CHANGES)
