@@ -123,12 +123,9 @@ def _tool(folder: Path) -> ToolRecord:
 
 
 def _names(old: Path, new: Path) -> tuple[str, str]:
-    """Return the names of two folders, with those above them as far as it takes to tell them apart."""
-    one, other = old.resolve().parts, new.resolve().parts
-    for count in range(1, min(len(one), len(other)) + 1):
-        if one[-count:] != other[-count:]:
-            return "/".join(one[-count:]), "/".join(other[-count:])
-    return one[-1], other[-1]
+    """Return the names of two folders, without what is above them: the answer must not depend on where they lie."""
+    one, other = old.resolve().name, new.resolve().name
+    return (one, other) if one != other else (f"{one} (old)", f"{other} (new)")
 
 
 def _part_compared(old: ToolRecord, new: ToolRecord) -> tuple[Alignment, tuple[PartChange, ...]]:

@@ -74,7 +74,8 @@ def matched(old: ToolRecord, new: ToolRecord, placing: Placing) -> list[Match]:
         before = [s for c in old.components if c.role is role for s in _standing(old, c, placing)]
         after = [s for c in new.components if c.role is role for s in _standing(new, c, Placing())]
         pairs += _pinned(before, after) if role in ROUND_PARTS else _built_in(before, after, placing)
-    order = {c.name: n for n, c in enumerate((*new.components, *old.components))}
+    names = dict.fromkeys(c.name for c in (*new.components, *old.components))
+    order = {name: n for n, name in enumerate(names)}
     groups: dict[tuple[object, ...], list[tuple[Standing | None, Standing | None]]] = {}
     for was, now in pairs:
         groups.setdefault(_group(was, now), []).append((was, now))

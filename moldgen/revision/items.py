@@ -121,7 +121,8 @@ def paired_items(old: ToolRecord, new: ToolRecord, placing: Placing) -> tuple[It
                 before.remove(one)
                 after.remove(other)
     pairs += [ItemPair(None, i) for i in after] + [ItemPair(i, None) for i in before]
-    order = {i.name: n for n, i in enumerate((*items_of(new), *items_of(old)))}
+    names = dict.fromkeys(i.name for i in (*items_of(new), *items_of(old)))
+    order = {name: n for n, name in enumerate(names)}
     return tuple(sorted(pairs, key=lambda p: (p.new is None, order[p.either.name], p.either.at)))
 
 
