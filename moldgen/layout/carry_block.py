@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Iterable
 from dataclasses import dataclass
 
 from moldgen.catalog import preferred_size_up
@@ -48,7 +48,7 @@ class Least:
     under: float
 
 
-def block_between(low: Sequence[float], high: Sequence[float]) -> BlockLayout:
+def block_between(low: Iterable[float], high: Iterable[float]) -> BlockLayout:
     """Return the block between two corners [mm]."""
     one, other = (tuple(float(v) for v in corner) for corner in (low, high))
     return BlockLayout(one, other)  # type: ignore[arg-type]
