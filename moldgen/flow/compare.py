@@ -111,7 +111,13 @@ def compare_tools(old: ToolRecord, new: ToolRecord, tell: Tell, names: tuple[str
         tuple(c.change for c in components),
         tuple(p.change() for p in items if not p.same),
         number_changes(before, new.record, part),
-        (*_alignment_findings(alignment), *_choices(before, new.record), *_steel_findings(components), *findings),
+        (
+            *_alignment_findings(alignment),
+            *(f for tool, name in zip((old, new), names, strict=True) for f in _not_as_built(tool, name)),
+            *_choices(before, new.record),
+            *_steel_findings(components),
+            *findings,
+        ),
     )
     return Compared(comparison, tuple(components))
 
@@ -164,6 +170,23 @@ def _alignment_findings(alignment: Alignment) -> tuple[Finding, ...]:
             limit=RESIDUAL if share >= DOUBTFUL else DOUBTFUL,
             unit="mm" if share >= DOUBTFUL else "of the faces",
             remedy="look at the pieces of steel: if they are everywhere, compare a version in between",
+        ),
+    )
+
+
+def _not_as_built(tool: ToolRecord, name: str) -> tuple[Finding, ...]:
+    """Return a warning if STEP files of a tool are not those that its manifest lists: they are compared as they are."""
+    listed = tool.record.get("files", {})
+    other = [c.name for c in tool.components if listed.get(f"step/{c.file.name}", c.digest) != c.digest]
+    if not other:
+        return ()
+    return (
+        Finding(
+            code="compare.not_as_built",
+            severity=Severity.WARNING,
+            message=f"{name}: STEP files were changed since the tool was built: {', '.join(other)}",
+            where=name,
+            remedy="numbers are those of the tool as built; build it again if the change was not meant",
         ),
     )
 

@@ -18,6 +18,7 @@ from moldgen.flow.job import JobResult
 from moldgen.flow.tell import silent
 from moldgen.kernel.measure import volume_adaptive
 from moldgen.kernel.step_read import read_assembly
+from tests.helpers.command import moldgen
 from tests.helpers.outputs import manifest, snapshot
 from tests.revision.part_changes import Version, changed, post
 
@@ -117,3 +118,40 @@ def test_a_damaged_or_missing_step_file_is_named(
     with pytest.raises(PartError) as caught:
         compare_folders(old, folders[1], tmp_path, silent(), pictures=False)
     assert name in str(caught.value)
+
+
+def test_steel_that_was_changed_by_hand_is_compared_as_it_is_and_told(folders: Folders, tmp_path: Path) -> None:
+    """The core of the new tool is put in the place of that of the old one: nothing is left to cut or to weld."""
+    old = copy(folders[0], tmp_path / "old")
+    shutil.copy(folders[1] / "step" / "core.step", old / "step" / "core.step")
+    result = compare_folders(old, folders[1], tmp_path, silent(), pictures=False)
+    assert [(f.code, f.severity, f.where) for f in result.findings] == [
+        ("compare.not_as_built", Severity.WARNING, "old")
+    ]
+    assert "core" in result.findings[0].message
+
+
+@pytest.mark.slow
+def test_the_command_answers_with_0_and_replaces_its_earlier_answer(folders: Folders, tmp_path: Path) -> None:
+    words = ("compare", *folders, "--output", "answer", "--json", "--quiet", "--no-pictures")
+    for _ in range(2):
+        done = moldgen(*words, folder=tmp_path, timeout=120)
+        assert (done.returncode, done.stderr) == (0, "")
+        document = json.loads(done.stdout)
+        assert (document["exit_code"], document["output"]) == (0, "answer")
+    assert (tmp_path / "answer" / "step" / "weld_core_1.step").is_file()
+
+
+def test_the_command_refuses_what_is_no_output_of_a_build(folders: Folders, tmp_path: Path) -> None:
+    for old, new in ((folders[0], tmp_path), (tmp_path / "nowhere", folders[1])):
+        done = moldgen("compare", old, new, "--quiet", folder=tmp_path)
+        assert done.returncode == int(ExitCode.SPEC)
+        assert "moldgen build" in done.stderr
+
+
+@pytest.mark.slow
+def test_the_answer_never_replaces_what_it_is_made_from(folders: Folders, tmp_path: Path) -> None:
+    old = copy(folders[0], tmp_path / "old")
+    done = moldgen("compare", old, folders[1], "--output", old, "--quiet", folder=tmp_path)
+    assert done.returncode == int(ExitCode.SPEC)
+    assert snapshot(old) == snapshot(folders[0])
