@@ -80,7 +80,14 @@ def matched(old: ToolRecord, new: ToolRecord, placing: Placing) -> list[Match]:
     for was, now in pairs:
         groups.setdefault(_group(was, now), []).append((was, now))
     found = [_match(members) for members in groups.values()]
-    return sorted(found, key=lambda m: (m.new is None, order[(m.new or m.old).name], m.was and m.was[0].at))  # type: ignore[union-attr]
+    return sorted(found, key=lambda m: (m.new is None, order[_either(m).name], (m.now or m.was)[0].number))
+
+
+def _either(match: Match) -> SteelPart:
+    part = match.new or match.old
+    if part is None:
+        raise LookupError("a match of nothing")
+    return part
 
 
 def _called(part: SteelPart | None, copies: Sequence[Standing]) -> str:
