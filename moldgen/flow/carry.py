@@ -89,12 +89,20 @@ def _moved(at: Vector, shift: Vector) -> Vector:
 
 def _item(item: AcceptedPin | AcceptedCore, frame: MoldFrame, find: _Find) -> KeptItem:
     shift, gone = find(item.feature, item.at)
-    return KeptItem(item.name, frame.to_mold(_moved(item.at, shift)), item.diameter, shift, gone)
+    at, shift = _placed(item.at, shift, frame)
+    return KeptItem(item.name, at, item.diameter, shift, gone)
+
+
+def _placed(at: Vector, shift: Vector, frame: MoldFrame) -> tuple[Vector, Vector]:
+    """Return where a place is in the mold now, and its shift as far as it counts: along the pull nothing moves."""
+    then, now = frame.to_mold(at), frame.to_mold(_moved(at, shift))
+    in_plan = max(abs(a - b) for a, b in zip(then[:2], now[:2], strict=True))
+    return now, shift if in_plan > SNAP else (0.0, 0.0, 0.0)
 
 
 def _gate(gate: AcceptedGate, frame: MoldFrame, find: _Find) -> KeptGate:
     shift, gone = find(gate.feature, gate.at)
-    at = frame.to_mold(_moved(gate.at, shift))
+    at, shift = _placed(gate.at, shift, frame)
     return KeptGate(gate.kind, at, gate.width, gate.depth, gate.land, gate.diameter, shift, gone)
 
 

@@ -64,7 +64,9 @@ def match_cores(view: PartView, cores: list[RoundCore], kept: KeptCores) -> tupl
         taken = {*pins, *in_block}
         found = _nearest(cores, item, taken, MOST_MOVED)
         off = min((_gap(c, item) for n, c in enumerate(cores) if n not in taken), default=None)
-        reason = Reason("gone", "its hole is no longer there", off, ON_AXIS, "mm")
+        reason = Reason(
+            "gone", "no round core stands there any more, this is the nearest that is free", off, ON_AXIS, "mm"
+        )
         if found is None:
             where = "there is none" if off is None else f"the nearest that is free is {off:.2f} mm away"
             text = f"the round core that it was is gone; {where}"

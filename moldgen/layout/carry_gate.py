@@ -124,9 +124,9 @@ def _as_accepted(task: Task, found: Found, kept: KeptGate) -> Found:
 
 
 def _kept(task: Task, found: Found, what: str) -> Notes:
-    place = ", ".join(f"{v:g}" for v in task.view.place(found.gate.at))
+    place = ", ".join(f"{v + 0.0:g}" for v in task.view.place(found.gate.at))
     text = f"{found.gate.kind.value} gate at {place}"
-    return Notes(decisions=(Decision("gate", text, f"{what} of the accepted layout keep the rules"),))
+    return Notes(decisions=(Decision("gate", text, f"kept from the accepted layout: {what}"),))
 
 
 def _resized(task: Task, found: Found, kept: KeptGate, reason: Reason) -> Notes:

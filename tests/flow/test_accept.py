@@ -227,6 +227,28 @@ def test_the_gate_keeps_place_and_size_when_the_part_gets_heavier(cup: Cup, firs
     assert gate.chosen_by is Chooser.KEPT
 
 
+def test_a_thicker_ceiling_moves_no_pin_and_says_nothing(cup: Cup, first: Laid) -> None:
+    thicker = cup.laid(CUP.replace("thickness: 2,", "thickness: 2.3,"))
+    assert all(near(thicker.pins[name][:2], at[:2]) for name, at in first.pins.items())
+    assert thicker.pins["ejector pin 1"][2] == pytest.approx(first.pins["ejector pin 1"][2] - 0.3, abs=1e-3)
+    assert thicker.told("accepted.follows") == []
+
+
+def test_of_a_part_scaled_in_plan_legal_pins_stay_and_each_change_is_told(cup: Cup, first: Laid) -> None:
+    scaled = {"72, 46, 16": "74, 47.3, 16", "[8, 4]": "[8.22, 4.11]", "diameter: 8": "diameter: 8.22"}
+    text = CUP
+    for old, new in scaled.items():
+        assert old in text
+        text = text.replace(old, new)
+    laid = cup.laid(text)
+    (core,) = laid.cores.values()
+    assert near(core[:2], (8.22, 4.11))
+    for name, at in first.pins.items():
+        told = [f.message for f in laid.notes.findings if f"{name} " in f.message]
+        stays = name in laid.pins and near(laid.pins[name][:2], at[:2])
+        assert stays or told
+
+
 def test_an_edited_accepted_layout_is_obeyed(cup: Cup) -> None:
     accepted = cup.accepted
     pin = accepted.ejector_pins[0]
