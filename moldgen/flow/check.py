@@ -12,7 +12,7 @@ from moldgen.flow.record import notes_record, review_record
 from moldgen.flow.review import Reviewed, review
 from moldgen.flow.stages import Stages
 from moldgen.flow.words import point_text, spec_direction
-from moldgen.spec.declared import located_notes
+from moldgen.spec.declared import located_notes, without_folder
 from moldgen.spec.load import LoadedSpec
 
 MOST_ROWS = 20
@@ -26,7 +26,7 @@ def check_part(loaded: LoadedSpec, folder: Path, stages: Stages) -> JobResult:
     """Review the part and write the manifest of the review into `folder`."""
     reviewed = review(loaded, stages)
     reviewed = replace(reviewed, notes=located_notes(reviewed.notes, loaded))
-    record = {**review_record(reviewed), **notes_record(reviewed.notes)}
+    record = {**review_record(reviewed), **notes_record(without_folder(reviewed.notes, loaded))}
     (folder / MANIFEST).write_text(to_json(record), encoding="utf-8")
     code = verdict_code(reviewed.notes.findings)
     undercuts = len(reviewed.prepared.trapped.undercuts)

@@ -22,7 +22,7 @@ from moldgen.model.proof import Proof
 from moldgen.output.pictures import PictureJob, start_pictures
 from moldgen.output.tool_scene import tool_scene
 from moldgen.proof.run import prove_tool
-from moldgen.spec.declared import located_notes
+from moldgen.spec.declared import located_notes, without_folder
 
 PICTURES = "pictures"
 
@@ -44,8 +44,12 @@ def write_tool(built: Built, folder: Path, options: Options, stages: Stages) -> 
     finally:
         written(stop=True)
         pictures.stop()
-    notes = located_notes(notes, built.reviewed.loaded)
-    record = {**_record(built, notes, proofs, volumes), "files": file_record(built.tool, folder)}
+    loaded = built.reviewed.loaded
+    notes = located_notes(notes, loaded)
+    record = {
+        **_record(built, without_folder(notes, loaded), proofs, volumes),
+        "files": file_record(built.tool, folder),
+    }
     (folder / MANIFEST).write_text(to_json(record), encoding="utf-8")
     return _result(built, notes, proofs)
 

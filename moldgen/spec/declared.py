@@ -80,6 +80,17 @@ def located_notes(notes: Notes, loaded: LoadedSpec) -> Notes:
     return replace(notes, findings=tuple(findings), decisions=tuple(decisions))
 
 
+def without_folder(notes: Notes, loaded: LoadedSpec) -> Notes:
+    """Return located notes with the spec named by its file alone: an output does not tell where it was made."""
+
+    def told(text: str) -> str:
+        return text.replace(f"{loaded.path}:", f"{loaded.path.name}:")
+
+    findings = (replace(f, where=told(f.where), message=told(f.message)) for f in notes.findings)
+    decisions = (replace(d, why=told(d.why), refused=tuple(map(told, d.refused))) for d in notes.decisions)
+    return replace(notes, findings=tuple(findings), decisions=tuple(decisions))
+
+
 class _Marks:
     """Answers for the tree of a spec where the places are not known yet."""
 

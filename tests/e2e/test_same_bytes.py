@@ -14,7 +14,7 @@ from pathlib import Path
 import pytest
 from helpers.command import TESTS
 from helpers.outputs import manifest, snapshot
-from helpers.small_specs import CUP, spec
+from helpers.small_specs import CUP, NOTCHED, spec
 
 from moldgen.flow.build import build_tool
 from moldgen.flow.job import Options
@@ -92,6 +92,16 @@ def built_here(work: Path, out: Path, cache: Path | str) -> None:
 
 def test_a_changed_spec_built_through_the_cache_has_the_bytes_of_a_build_without(tmp_path: Path) -> None:
     changes_through_the_cache(spec(tmp_path, "name: cup\n", CUP, "pull: +z\n"), tmp_path, built_here)
+
+
+def test_a_finding_about_a_key_of_the_spec_does_not_tell_its_folder(tmp_path: Path) -> None:
+    """A notch that is filled is told with file, line and column of the spec."""
+    for place in ("one", "other"):
+        (tmp_path / place).mkdir()
+        built_here(spec(tmp_path / place, NOTCHED, "parting: {undercuts: fill}\n"), tmp_path / place / "out", "off")
+    assert differing(tmp_path / "one" / "out", tmp_path / "other" / "out") == []
+    places = [f["where"] for f in manifest(tmp_path / "one" / "out")["findings"]]
+    assert any(place.startswith("part.yaml:") for place in places), places
 
 
 @pytest.mark.sweep

@@ -68,13 +68,14 @@ def differing(one: Path, other: Path) -> list[str]:
 
 
 def real_spec(name: str, parts: Path, folder: Path) -> Path:
-    """Write the spec of a real part, pulled along its best axis."""
+    """Write the spec of a real part, pulled along its best axis; small places that nothing releases are filled."""
     from tests.sweep.real_parts import real_parts  # noqa: PLC0415  the index is read for this alone
 
     (part,) = [p for p in real_parts(parts) if p.name == name]
     path = folder / f"{name}.yaml"
     path.write_text(
-        f"name: {name}\npart: {{file: {json.dumps(str(part.path))}}}\nresin: ABS\npull: '+{part.axis}'\n",
+        f"name: {name}\npart: {{file: {json.dumps(str(part.path))}}}\nresin: ABS\npull: '+{part.axis}'\n"
+        "parting: {undercuts: release_or_fill}\n",
         encoding="utf-8",
     )
     return path
