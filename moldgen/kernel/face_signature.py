@@ -64,16 +64,24 @@ class PartSigns:
     def vertices(self, number: int, count: int) -> np.ndarray:
         """Return points that lie on a face exactly, at most `count`, (n, 3) [mm]."""
         used = np.unique(self.body.mesh.triangles[self._triangles(number)])
-        chosen = np.unique(np.linspace(0, len(used) - 1, count).round().astype(int)) if len(used) else used
-        return np.asarray(self.body.mesh.vertices[used[chosen]])
+        if len(used) > count:
+            used = used[np.linspace(0, len(used) - 1, count).round().astype(int)]
+        return np.asarray(self.body.mesh.vertices[used])
 
     def box(self, number: int) -> tuple[np.ndarray, np.ndarray]:
         """Return the lower and upper corner of a face's mesh, (3,), (3,) [mm]."""
         corners = self.body.mesh.corners[self._triangles(number)].reshape(-1, 3)
         return corners.min(axis=0), corners.max(axis=0)
 
+    @cached_property
+    def _own(self) -> list[np.ndarray]:
+        """The triangles of each sign."""
+        owner = self.of_face[self.body.mesh.face]
+        order = np.argsort(owner, kind="stable")
+        return np.split(order, np.searchsorted(owner[order], np.arange(1, len(self.signs))))
+
     def _triangles(self, number: int) -> np.ndarray:
-        return np.flatnonzero(np.isin(self.body.mesh.face, self.signs[number].faces))
+        return self._own[number]
 
     def exact_distance(self, number: int, point: np.ndarray) -> float:
         """Return the distance of a point from the faces of one sign [mm], measured on the surfaces themselves."""

@@ -11,7 +11,7 @@ import numpy as np
 from moldgen.kernel.face_compare import SAME_PLACE, on_same_surface, same_form, surface_gap
 from moldgen.model.face_sign import FaceSign, Rows, SurfaceKind
 from moldgen.model.part import Vector
-from moldgen.revision.laid import Laid
+from moldgen.revision.laid import SAME_FREE, Laid
 from moldgen.revision.partners import Partner, partners
 
 SAME_SHIFT: Final = 2e-3
@@ -169,16 +169,21 @@ def _with_trimmed(laid: Laid, group: MovedFaces, old: set[int], new: set[int]) -
             there = laid.placed[k].placed(_UNTURNED, group.shift)
             if not _leaves_its_surface(laid.placed[k], group.shift):
                 continue
-            image = [n for n in sorted((near & new) - set(second)) if on_same_surface(there, laid.new.signs[n])]
-            if image:
+            image = [n for n in sorted(near & new | set(second)) if on_same_surface(there, laid.new.signs[n])]
+            if image:  # which may be there already: two old faces became one
                 first.append(k)
-                second += image
+                second += [n for n in image if n not in second]
     return MovedFaces(tuple(first), tuple(second), group.shift)
 
 
 def _leaves_its_surface(sign: FaceSign, shift: Vector) -> bool:
-    """True when a face that moves so does not only slide along its own surface."""
-    return sign.kind is SurfaceKind.FREE or surface_gap(sign, sign.placed(_UNTURNED, shift)) > SAME_PLACE
+    """True when a face that moves so does not only slide along its own surface.
+
+    Centers of free faces are integrated less well: what moved by less than `SAME_FREE` is looked at point by point.
+    """
+    if sign.kind is SurfaceKind.FREE:
+        return float(np.linalg.norm(shift)) > SAME_FREE
+    return surface_gap(sign, sign.placed(_UNTURNED, shift)) > SAME_PLACE
 
 
 def components(numbers: Iterable[int], links: Callable[[int], Iterable[int]]) -> list[set[int]]:

@@ -15,7 +15,7 @@ from moldgen.model.part import Box, Vector
 from moldgen.model.revision import Alignment, PartChange, PartChangeKind
 from moldgen.revision.face_fates import SAME_SHIFT, Fates, MovedFaces, components, face_fates
 from moldgen.revision.laid import Laid
-from moldgen.revision.naming import length, name_of, opposite, radius_at, told_at
+from moldgen.revision.naming import length, name_of, opposite, radius_at, side_name, told_at
 from moldgen.revision.partners import SAME_LEAN, Partner, Way
 
 BESIDE: Final = 3.0
@@ -204,9 +204,10 @@ def _size(laid: Laid, item: _Item) -> float:
 
 def _told(laid: Laid, item: _Item) -> PartChange:
     part, numbers = (laid.old, item.old) if item.old else (laid.new, item.new)
+    name = side_name if item.kind in (PartChangeKind.RESIZED, PartChangeKind.DRAFT) else name_of
     return PartChange(
         kind=item.kind,
-        feature=name_of(part, numbers),
+        feature=name(part, numbers),
         old_faces=_numbers(laid.old, item.old),
         new_faces=_numbers(laid.new, item.new),
         at=laid.place(item.old, item.new),

@@ -19,6 +19,9 @@ end of a slot, a quarter a rounding (our choice)."""
 THICKEST: Final = 8.0
 """mm: two faces further apart are no wall (our choice: molded walls are 1 to 4 mm, common practice)."""
 
+FEW: Final = 0.3
+"""Share of the area under which bosses and holes are told beside the wall that they are on (our choice)."""
+
 MOST_LEAN: Final = 10.0
 """deg: two sides of a wall or rib lean against each other by at most this, twice a generous draft (our choice)."""
 
@@ -33,6 +36,11 @@ def length(value: float) -> str:
 def name_of(part: PartSigns, numbers: Collection[int]) -> str:
     """Return the trade's word for some faces, by the numbers of their signs, with its leading size."""
     ordered = sorted(numbers)
+    whole = sum(part.signs[n].area_mm2 for n in ordered)
+    rounds = _with_ends(part, ordered)
+    if rounds and sum(part.signs[n].area_mm2 for n in rounds) < FEW * whole:
+        wall = _wall_name(part, ordered) or "faces"
+        return f"{wall} with {_round_name(part, ordered)}"
     for way in (_round_name, _end_name, _chamfer_name, _between_planes, _rounding_name, _wall_name):
         found = way(part, ordered)
         if found:
@@ -40,6 +48,13 @@ def name_of(part: PartSigns, numbers: Collection[int]) -> str:
     if all(part.signs[n].kind is SurfaceKind.PLANE for n in ordered):
         return "flat face" if len(ordered) == 1 else "flat faces"
     return "curved face" if len(ordered) == 1 else "faces"
+
+
+def side_name(part: PartSigns, numbers: Collection[int]) -> str:
+    """Return the trade's word for sides that got thicker or lean otherwise: a wall or rib is no opening for that."""
+    ordered = sorted(numbers)
+    name = name_of(part, ordered)
+    return _wall_name(part, ordered) or name if name in ("opening", "pocket") else name
 
 
 def turn(part: PartSigns, number: int) -> float:
@@ -112,6 +127,12 @@ def _round_name(part: PartSigns, numbers: Sequence[int]) -> str:
     main = min(holes, key=lambda n: (part.signs[n].radius, n))
     kind = "blind hole" if any(_closes(part, n, main) for n in part.links[main]) else "hole"
     return _several(part, holes, f"{kind} d {length(diameter(part, main))}", "holes")
+
+
+def _with_ends(part: PartSigns, numbers: Sequence[int]) -> set[int]:
+    """Return the faces of bosses and holes among some faces, with the planes that end them."""
+    rounds = {n for n in numbers if is_round(part, n)}
+    return rounds | {k for n in rounds for k in part.links[n] & set(numbers) if _closes(part, k, n)}
 
 
 def _several(part: PartSigns, rounds: Sequence[int], one: str, plural: str) -> str:
@@ -198,7 +219,7 @@ def _between_planes(part: PartSigns, numbers: Sequence[int]) -> str:
 
 
 def _has_back(part: PartSigns, a: int, b: int, thick: float) -> bool:
-    """True when a plane no wider than the plastic between two others joins them: the back of a rib, not a wall's rim."""
+    """True when a plane no wider than the plastic between two others joins them: a rib's back, not a wall's rim."""
     across = np.array(part.signs[a].axis) - np.array(part.signs[b].axis)
     across = across / np.linalg.norm(across)
     for n in part.links[a] & part.links[b]:
