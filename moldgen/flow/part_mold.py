@@ -9,6 +9,7 @@ import numpy as np
 
 from moldgen.errors import KernelError, MoldgenError, PartError, SpecError
 from moldgen.finding import Decision, Finding, Notes, Severity
+from moldgen.flow.carry import accepted_block, at_accepted_level
 from moldgen.flow.lay_out import marked_points
 from moldgen.flow.prepare import Prepared, prepared_body
 from moldgen.flow.review import Reviewed, refuse_undercuts, undercut_error
@@ -19,6 +20,7 @@ from moldgen.flow.words import direction_text, point_text
 from moldgen.kernel.body import Body
 from moldgen.kernel.meshsolid import mesh_solid
 from moldgen.layout.blocks import size_blocks
+from moldgen.layout.carry_block import block_between, found_again
 from moldgen.layout.side_drive import Driven, drive_fronts
 from moldgen.layout.slide_body import SideTask
 from moldgen.model.halves import Halves
@@ -179,13 +181,21 @@ def _formed(reviewed: Reviewed, filled: Prepared, part: Body, plan: SidePlan, te
         driven, _ = drive_fronts(plan.fronts, part, level)
         return with_room(corners, level, driven, SideTask(part, level, reviewed.resin), section)
 
-    corners, notes = _blocks(reviewed, filled, section, guess, tell)
-    wide = room(corners, guess)
+    def sized(level: float) -> tuple[Corners, Notes]:
+        corners, notes = _blocks(reviewed, filled, section, level, tell, accepted=False)
+        wide, kept = room(corners, level), accepted_block(reviewed)
+        if kept is None or found_again(block_between(*wide), kept):
+            return wide, notes
+        corners, notes = _blocks(reviewed, filled, section, level, tell)
+        return room(corners, level), notes
+
+    wide, notes = sized(guess)
     parted = _parted(reviewed, filled, wide, given, tell)
+    parted, more = at_accepted_level(reviewed, parted, lambda z: _parted(reviewed, filled, wide, z, tell))
     if abs(parted.level - guess) > ON_PLANE:
-        corners, notes = _blocks(reviewed, filled, section, parted.level, tell)
-        wide = room(corners, parted.level)
+        wide, notes = sized(parted.level)
         parted = _parted(reviewed, filled, wide, parted.level, tell)
+    notes += more
     halves = _halves(parted, reviewed.frame, *wide)
     with tell.stage("form the side actions") as stage:
         formed, more = _cut(halves, filled.body, part, plan.fronts)
@@ -240,17 +250,19 @@ def _straight(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Halve
         section = section.model_copy(update={"cavity_height": None, "core_height": None})
     corners, more = _blocks(reviewed, prepared, section, level, tell)
     parted = _parted(reviewed, prepared, corners, level, tell)
+    parted, also = at_accepted_level(reviewed, parted, lambda z: _parted(reviewed, prepared, corners, z, tell))
     if fixed and abs(parted.level - (np.inf if level is None else level)) > ON_PLANE:
         corners, more = _blocks(reviewed, prepared, spec.blocks, parted.level, tell)
         parted = _parted(reviewed, prepared, corners, parted.level, tell)
-    return _halves(parted, reviewed.frame, *corners), more + told(parted, reviewed.frame)
+    return _halves(parted, reviewed.frame, *corners), more + also + told(parted, reviewed.frame)
 
 
 def _blocks(
-    reviewed: Reviewed, prepared: Prepared, section: Blocks, level: float | None, tell: Tell
+    reviewed: Reviewed, prepared: Prepared, section: Blocks, level: float | None, tell: Tell, *, accepted: bool = True
 ) -> tuple[Corners, Notes]:
     with tell.stage("size the blocks") as stage:
-        blocks, notes = size_blocks(prepared.body, reviewed.resin, section, level)
+        kept = accepted_block(reviewed) if accepted else None
+        blocks, notes = size_blocks(prepared.body, reviewed.resin, section, level, kept)
         low, high = np.asarray(blocks.low), np.asarray(blocks.high)
         stage.detail = " x ".join(f"{v:.0f}" for v in high - low) + " mm"
     return (low, high), notes

@@ -49,14 +49,15 @@ def with_room(corners: Corners, level: float, driven: Sequence[Driven], task: Si
         if fixed is not None:
             low[axis], high[axis] = corners[0][axis], corners[1][axis]
             continue
-        more = preferred_size_up(float(high[axis] - low[axis]), "edge") - float(high[axis] - low[axis])
+        size = round(float(high[axis] - low[axis]), 6)  # an accepted block is known to six decimals
+        more = preferred_size_up(size, "edge") - size
         low[axis], high[axis] = low[axis] - more / 2, high[axis] + more / 2
     if section.cavity_height is None:
-        high[2] = level + preferred_size_up(float(high[2]) - level, "thickness")
+        high[2] = level + preferred_size_up(round(float(high[2]) - level, 5), "thickness")
     else:
         high[2] = corners[1][2]
     if section.core_height is None:
-        low[2] = level - preferred_size_up(level - float(low[2]), "thickness")
+        low[2] = level - preferred_size_up(round(level - float(low[2]), 5), "thickness")
     else:
         low[2] = corners[0][2]
     return low, high
