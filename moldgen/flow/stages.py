@@ -19,6 +19,7 @@ from moldgen.errors import PartError
 from moldgen.flow.tell import Tell
 from moldgen.flow.versions import versions
 from moldgen.kernel.frozen import freeze, thaw
+from moldgen.kernel.rehearse import times_given_up
 from moldgen.memory import Memory
 
 T = TypeVar("T")
@@ -63,6 +64,7 @@ class Asked(Generic[T]):
         self._key = sha256_json({"stage": name, "inputs": hashes, "versions": versions()})
         data = self._memory.recall(self._key) if lasting else None
         stages.runs.append(StageRun(stages.numbered(name), data is not None, hashes))
+        self._given_up = times_given_up()
         self.made: Made[T] | None = None
         if data is not None:
             with stages.tell.stage(name) as stage:
@@ -80,8 +82,8 @@ class Asked(Generic[T]):
         return self.made
 
     def refuse(self, error: PartError) -> None:
-        """Remember that the stage refused the part: limits and bugs may pass, this will not."""
-        if self._lasting:
+        """Remember that the stage refused the part, unless a limit of time had to do with it: that may pass."""
+        if self._lasting and times_given_up() == self._given_up:
             self._memory.keep(self._key, _REFUSED + pickle.dumps(error))
 
 

@@ -26,6 +26,14 @@ PATIENCE = 5
 
 _SHAPES, _ERROR = b"S", b"E"
 
+_given_up: list[int] = []
+"""Processes that were ended because of their time, in this process."""
+
+
+def times_given_up() -> int:
+    """Return how often work was ended because of its time: what follows from it may come out otherwise another time."""
+    return len(_given_up)
+
 
 def made_apart(work: Callable[[], Sequence[TopoDS_Shape]], seconds: int = LIMIT_S) -> list[TopoDS_Shape]:
     """Return the shapes that `work` makes in a child process; they share nothing with shapes of this process.
@@ -49,6 +57,7 @@ def made_apart(work: Callable[[], Sequence[TopoDS_Shape]], seconds: int = LIMIT_
         os.kill(child, signal.SIGKILL)
         _, status = os.waitpid(child, 0)
     if answer is None or (os.WIFSIGNALED(status) and os.WTERMSIG(status) == signal.SIGXCPU):
+        _given_up.append(child)
         raise KernelError(f"the kernel did not end within {seconds:g} s")
     if answer[:1] == _ERROR:
         raise KernelError(answer[1:].decode("utf-8", "replace"))

@@ -16,6 +16,7 @@ from moldgen.flow.job import Options
 from moldgen.flow.stages import Stages, reasons, runs_as_text, runs_from_text
 from moldgen.flow.store import Store
 from moldgen.flow.tell import silent
+from moldgen.kernel.rehearse import survives
 from moldgen.memory import Forgetful, Memory
 from moldgen.spec.declared import key_values, located, located_notes, narrowed
 from moldgen.spec.load import load_spec
@@ -88,6 +89,21 @@ def test_a_refused_part_is_refused_again_without_looking() -> None:
             Stages(memory, silent()).make("part", {"size": 1}, refuse)
         assert (caught.value.what, caught.value.remedy) == ("an undercut holds the part", "another pull")
     assert len(calls) == 1
+
+
+def test_a_part_refused_for_lack_of_time_is_tried_again() -> None:
+    calls: list[int] = []
+
+    def refuse() -> None:
+        calls.append(1)
+        assert not survives(lambda: [None for _ in iter(int, 1)], 1)
+        raise PartError("no steel could be made: the kernel did not end within 1 s")
+
+    memory = Kept()
+    for _ in range(2):
+        with pytest.raises(PartError):
+            Stages(memory, silent()).make("part", {"size": 1}, refuse)
+    assert len(calls) == 2
 
 
 def test_a_kernel_that_failed_is_tried_again() -> None:
