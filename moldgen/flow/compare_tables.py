@@ -95,8 +95,8 @@ def _numbers(comparison: Comparison) -> Table:
     rows = [
         (
             f"{n.name} [{n.unit}]" if n.unit not in ("", "1") else n.name,
-            None if n.was is None else _round(n.was),
-            None if n.now is None else _round(n.now),
+            None if n.was is None else _round(n.was, words.digits_apart(n)),
+            None if n.now is None else _round(n.now, words.digits_apart(n)),
             words.change_words(n),
             n.cause,
         )
@@ -142,9 +142,9 @@ def _volume(value: float) -> float | None:
     return _round(value) if value > 0.0 else None
 
 
-def _round(value: float) -> float:
+def _round(value: float, digits: int = words.FEW) -> float:
     """Return four digits: what a person compares."""
-    return float(f"{value:.4g}")
+    return float(f"{value:.{digits}g}")
 
 
 def _clip(text: str, most: int) -> str:

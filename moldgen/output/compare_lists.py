@@ -47,8 +47,8 @@ def number_section(numbers: Sequence[NumberChange]) -> Markup:
     rows = [
         (
             number.name + words.unit_words(number.unit),
-            "" if number.was is None else words.figure(number.was),
-            "" if number.now is None else words.figure(number.now),
+            "" if number.was is None else words.figure(number.was, words.digits_apart(number)),
+            "" if number.now is None else words.figure(number.now, words.digits_apart(number)),
             words.change_words(number),
             number.cause,
         )

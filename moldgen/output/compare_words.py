@@ -34,6 +34,9 @@ SQUARED, CUBED = "\u00b2", "\u00b3"
 EQUAL = 1e-6
 """mm: what is less apart lies on each other."""
 
+FEW, MANY = 4, 6
+"""Digits of a figure, and those of one that changed by so little that four read the same (our choice)."""
+
 _ONE_MANY = (
     (Fate.CUT, "is cut", "are cut"),
     (Fate.WELD, "needs welding or a new insert", "need welding or a new insert"),
@@ -184,14 +187,22 @@ def change_words(number: NumberChange) -> str:
         return "new" if number.was is None else "gone"
     if number.was == 0.0:
         return ""
-    return f"{100.0 * (number.now - number.was) / abs(number.was):+.1f} %"
+    percent = 100.0 * (number.now - number.was) / abs(number.was)
+    return f"{percent:+.1f} %" if abs(percent) >= 0.05 or percent == 0.0 else f"{percent:+.1g} %"
 
 
-def figure(value: float) -> str:
-    """Return a number as a person compares it: four digits, no exponent unless it is tiny, never -0."""
+def digits_apart(number: NumberChange) -> int:
+    """Return how many digits show that a number changed: four, more where it reads the same before and after."""
+    if number.was is None or number.now is None:
+        return FEW
+    return next((n for n in range(FEW, MANY) if f"{number.was:.{n}g}" != f"{number.now:.{n}g}"), MANY)
+
+
+def figure(value: float, digits: int = FEW) -> str:
+    """Return a number as a person compares it: few digits, no exponent unless it is tiny, never -0."""
     if value == 0.0:
         return "0"
-    text = f"{value:.4g}"
+    text = f"{value:.{digits}g}"
     return f"{value:.0f}" if "e+" in text else text
 
 

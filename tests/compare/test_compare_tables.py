@@ -8,7 +8,7 @@ from helpers.comparisons import boss_moved, core, hundreds, nothing_changed, pie
 
 from moldgen.flow.compare_tables import MOST_ROWS, compare_headline, compare_tables
 from moldgen.flow.report import table_lines
-from moldgen.model.revision import Work
+from moldgen.model.revision import NumberChange, Work
 
 COLUMNS = 120
 
@@ -59,3 +59,13 @@ def test_hundreds_of_changes_fit_the_terminal() -> None:
         assert len(table.rows) == MOST_ROWS
         assert max(map(len, table_lines(table))) <= COLUMNS, table.title
     assert tables[0].rows[-1][0] == f"and {150 - MOST_ROWS + 1} more"
+
+
+def test_small_changes_are_told_with_as_many_digits_as_tell_them_apart() -> None:
+    def row(was: float, now: float) -> tuple[object, ...]:
+        one = NumberChange("part volume", "mm^3", was, now, "")
+        return compare_tables(dataclasses.replace(nothing_changed(), numbers=(one,)))[0].rows[0][1:4]
+
+    assert row(643.8158, 643.8094) == (643.82, 643.81, "-0.001 %")
+    assert row(643.81, 650.39) == (643.8, 650.4, "+1.0 %")
+    assert row(90.0, 45.0) == (90.0, 45.0, "-50.0 %")

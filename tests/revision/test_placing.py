@@ -118,6 +118,14 @@ def test_numbers_beyond_noise_are_told_with_their_cause() -> None:
     assert [(c.topic, c.was, c.now) for c in choice_changes(old, new)] == [("resin", "ABS", "PP")]
 
 
+@pytest.mark.parametrize(("grown", "told"), [(1.0 + 1e-4, False), (1.01, True)])
+def test_what_is_measured_on_a_mesh_differs_by_more_before_it_is_told(grown: float, told: bool) -> None:
+    old, new = record(), record()
+    old["release"] = {"draft": {"area_below_mm2": 102.9}}
+    new["release"] = {"draft": {"area_below_mm2": 102.9 * grown}}
+    assert bool(number_changes(old, new)) is told
+
+
 def test_equal_manifests_have_no_number_to_tell() -> None:
     one = record(pin("a", 0, 0))
     assert number_changes(one, deepcopy(one)) == ()
