@@ -41,6 +41,12 @@ WHOLE: Final = 0.98
 OVERLAP: Final = 0.8
 """Share of the boxes of both parts that they have in common, from which they are taken as drawn (our choice)."""
 
+LITTLE: Final = 0.01
+"""Share of its size by which a changed part is not moved without a turn: its walls got thicker (our choice)."""
+
+NO_TURN: Final = 1e-4
+"""rad: a motion that turns by less only moves: 0.01 mm over 100 mm."""
+
 STILL: Final = 1e-6
 """mm: a motion that moves no corner further is none."""
 
@@ -72,7 +78,7 @@ def align(old: PartSigns, new: PartSigns) -> Alignment:
         _refuse_mirror(first, second, found)
         return _told(old, new, found)
     _refuse_mirror(first, second, found)
-    if _overlap(first, second) >= OVERLAP:
+    if _overlap(old, new) >= OVERLAP:
         return _told(old, new, _Fit(STAY, 0.0, TOLERANCES[0], note="most faces changed, but the boxes agree"))
     raise _nothing_fits(found)
 
@@ -96,13 +102,25 @@ def _rigid(old: Faces, new: Faces, tolerance: float) -> _Fit | None:
     stay = _fit(pairs, STAY)
     if stay.share >= MOST:
         return stay
-    motions = best_motions(pairs)
+    motions = _best(pairs)
     if not motions:
         return stay if stay.met else None
     best = motions[0]
     if stay.met >= FEWEST and stay.share >= 0.8 * best.share:  # as drawn unless another place explains clearly more
         return stay
+    if best.share < WHOLE and turn_of(best.motion.rotation)[0] < NO_TURN:
+        size = float(np.linalg.norm(np.ptp(old.corners, axis=0)))
+        if stay.met > 0 or moved_by(best.motion, old.corners) <= LITTLE * size:
+            return stay  # a taller part whose top moved up: even one face that did not move says where it was drawn
     return _fit(pairs, best.motion, note=_ties(motions))
+
+
+def _best(pairs: Pairs) -> list[Candidate]:
+    """Return the best motions by all faces; where many are equal, the search looks at the rare ones only."""
+    found = best_motions(pairs.rare())
+    judged = [replace(c, share=pairs.share(pairs.hits(c.motion))) for c in found]
+    best = max((c.share for c in judged), default=0.0)
+    return [c for c in judged if c.share >= best - 1e-9]
 
 
 def _ties(motions: Sequence[Candidate]) -> str:
@@ -115,6 +133,9 @@ def _ties(motions: Sequence[Candidate]) -> str:
 
 def _fit(pairs: Pairs, motion: Motion, note: str = "") -> _Fit:
     corners = pairs.old.corners
+    straight = Motion(np.eye(3), motion.of(corners.mean(axis=0)) - corners.mean(axis=0))
+    if np.abs(motion.of(corners) - straight.of(corners)).max() <= pairs.tolerance / 10.0:
+        motion = straight  # the turn is noise
     if moved_by(motion, corners) <= STILL:
         motion = STAY
     hits = pairs.hits(motion)
@@ -177,8 +198,8 @@ def _refuse_mirror(old: Faces, new: Faces, found: _Fit | None) -> None:
         )
 
 
-def _overlap(old: Faces, new: Faces) -> float:
-    low, high = (np.array([s.corners[k] for s in (old, new)]) for k in (0, -1))
+def _overlap(old: PartSigns, new: PartSigns) -> float:
+    low, high = (np.array([part.body.box[k] for part in (old, new)]) for k in (0, 1))
     common = float(np.prod(np.maximum(high.min(axis=0) - low.max(axis=0), 0.0)))
     each = np.prod(high - low, axis=1)
     return common / max(float(each.sum()) - common, 1e-300)

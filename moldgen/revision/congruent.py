@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Final
 
 import numpy as np
@@ -78,24 +78,33 @@ class Faces:
 
 @dataclass(frozen=True, eq=False)
 class Pairs:
-    """Faces of two parts that have the same form: first[k] of `old` and second[k] of `new`, (p,) int each."""
+    """Faces of two parts that have the same form: first[k] of `old` and second[k] of `new`, (p,) int each.
+
+    tolerance : in which forms agree and faces lie on each other [mm]; left_out : size of old faces not looked at [mm]
+    """
 
     old: Faces
     new: Faces
     first: np.ndarray
     second: np.ndarray
     tolerance: float
+    left_out: float = 0.0
 
     @classmethod
     def of(cls, old: Faces, new: Faces, tolerance: float) -> Pairs:
-        """Return the pairs of faces whose sizes agree within a tolerance [mm]."""
-        alike = same_form(old.signs, new.signs, tolerance)
-        counts = alike.sum(axis=1)
-        order = np.lexsort((-old.size, counts))
-        kept = order[np.cumsum(counts[order]) <= MOST_PAIRS]
-        alike[np.setdiff1d(order, kept)] = False
-        first, second = np.nonzero(alike)
+        """Return all pairs of faces whose sizes agree within a tolerance [mm]."""
+        first, second = np.nonzero(same_form(old.signs, new.signs, tolerance))
         return cls(old, new, first, second, tolerance)
+
+    def rare(self) -> Pairs:
+        """Return the pairs of the old faces with the fewest equals, `MOST_PAIRS` at most; all if they are no more."""
+        if len(self.first) <= MOST_PAIRS:
+            return self
+        counts = np.bincount(self.first, minlength=len(self.old.size))
+        order = np.lexsort((-self.old.size, counts))
+        out = order[np.cumsum(counts[order]) > MOST_PAIRS]
+        kept = ~np.isin(self.first, out)
+        return replace(self, first=self.first[kept], second=self.second[kept], left_out=float(self.old.size[out].sum()))
 
     def partners(self, face: int) -> np.ndarray:
         """Return the new faces of the same form as an old one."""
@@ -123,7 +132,8 @@ class Pairs:
         """Return how much of the smaller part the faces make up that lie on each other, by the root of their areas."""
         sides = ((self.old.size, self.first), (self.new.size, self.second))
         met = min(float(size[np.unique(own[hits])].sum()) for size, own in sides)
-        return met / min(float(self.old.size.sum()), float(self.new.size.sum()))
+        whole = min(float(self.old.size.sum()), float(self.new.size.sum())) - self.left_out
+        return met / max(whole, 1e-9)
 
     def refined(self, motion: Motion) -> Motion:
         """Return the motion that lays the pairs it meets onto each other best, by least squares."""

@@ -15,7 +15,7 @@ from moldgen.model.part import Box, Vector
 from moldgen.model.revision import Alignment, PartChange, PartChangeKind
 from moldgen.revision.face_fates import SAME_SHIFT, Fates, MovedFaces, components, face_fates
 from moldgen.revision.laid import Laid
-from moldgen.revision.naming import length, name_of, opposite, radius_at, side_name, told_at
+from moldgen.revision.naming import is_round, length, name_of, opposite, radius_at, side_name, told_at
 from moldgen.revision.partners import SAME_LEAN, Partner, Way
 
 BESIDE: Final = 3.0
@@ -134,9 +134,14 @@ def _sizes(laid: Laid, pair: Partner) -> tuple[str, str]:
         there = told_at(laid.old, pair.old) * laid.alignment.scale
         place = np.array(before.at) + there * np.array(before.axis)
         along = float((place - np.array(after.at)) @ np.array(after.axis))
-        return tuple(f"d {length(2.0 * r)} mm" for r in (radius_at(before, there), radius_at(after, along)))  # type: ignore[return-value]
+        radii = radius_at(before, there), radius_at(after, along)
+        if is_round(laid.old, pair.old):
+            return f"d {length(2.0 * radii[0])} mm", f"d {length(2.0 * radii[1])} mm"
+        return f"r {length(radii[0])} mm", f"r {length(radii[1])} mm"
     if before.kind is SurfaceKind.TORUS and abs(before.minor - after.minor) > SAME_SIZE:
         return f"r {length(before.minor)} mm", f"r {length(after.minor)} mm"
+    if before.kind is SurfaceKind.TORUS:
+        return f"ring r {length(before.radius)} mm", f"ring r {length(after.radius)} mm"
     return f"r {length(before.radius)} mm", f"r {length(after.radius)} mm"
 
 

@@ -46,6 +46,8 @@ def best_motions(pairs: Pairs) -> list[Candidate]:
     for seeds in _seed_pairs(pairs):
         for motion, free in _motions(pairs, *seeds):
             tried += 1
+            if tried > MOST_MOTIONS:
+                break
             if pairs.share(pairs.hits(motion, LOOSE)) < best - 1e-9:
                 continue
             exact = pairs.refined(motion)

@@ -145,6 +145,18 @@ def test_a_part_whose_faces_all_changed_a_little_stays_as_drawn():
     assert found.how.startswith("as drawn") and "the boxes agree" in found.how
 
 
+def test_a_taller_part_stays_as_drawn_although_more_faces_moved_up_than_stayed():
+    def cup(height: float) -> Any:
+        solid = cut(box((0, 0, 0), (60, 40, height)), box((5, 5, -1), (55, 35, height - 5)))
+        for x in (8.0, 20.0, 32.0, 44.0):
+            solid = fuse(solid, box((x, 10, height - 1), (x + 3, 30, height + 4)))
+        return fuse(solid, box((0, 0, 0), (2, -4, 6)), box((40, 0, 0), (44, -4, 5)))
+
+    found = laid(cup(20), cup(21))
+    assert found.how.startswith("as drawn") and found.translation == (0, 0, 0)
+    assert laid(cup(20), shifted(cup(20), 0, 0, 1)).translation == pytest.approx((0, 0, 1))
+
+
 @pytest.mark.parametrize(("rewritten", "unit", "_faces"), [w for w in WRITINGS if w.id != "other seams"])
 def test_another_writing_of_the_part_is_found_where_it_lies(tmp_path, rewritten, unit, _faces):
     new = read_step(write_raw(rewritten(away(notched())), tmp_path / "new.step", unit=unit)).solid
