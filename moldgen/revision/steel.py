@@ -25,6 +25,9 @@ from moldgen.revision.tool_record import ToolRecord
 STANDS_STILL = 1e-3
 """mm: a component that stands this near to its old place did not move (our choice)."""
 
+MUST_GROW = "the block must grow"
+"""How the note of a block begins for which the old one is too small."""
+
 OFF_SIDE = 0.05
 """mm of steel inside an outer side of a block that are left out where the sides of both blocks differ (our choice)."""
 
@@ -82,6 +85,8 @@ def _compared(
         elsewhere = _moved_whole(was, steel)
         if elsewhere is not None:
             return _whole(match, Fate.MOVED, _moved_by(elsewhere), elsewhere)
+    if made.none and outside.startswith(MUST_GROW):
+        return _whole(match, Fate.NEW, outside)  # its form stays, and yet the old block is too small for it
     if made.none:
         fate, note = (Fate.UNCHANGED, outside) if still else (Fate.MOVED, _moved_by(shift))
         return _whole(match, fate, note)
@@ -104,7 +109,7 @@ def _with_pieces(made: _Made, causes: Causes, outside: str) -> ComparedComponent
     match = made.match
     fate = Fate.WELD if made.made.weld else Fate.CUT
     note = outside or ("" if made.still else _moved_by(match.shift or (0.0, 0.0, 0.0)))
-    if outside.startswith("the block must grow"):
+    if outside.startswith(MUST_GROW):
         fate = Fate.NEW
     if match.new is not None and match.new.role in SMALL_PARTS and fate is Fate.WELD:
         longer = made.steel.box[1][2] - made.steel.box[0][2] - (made.was.box[1][2] - made.was.box[0][2])
@@ -182,7 +187,7 @@ def _clip(
     grown = (high - low) - (old_high - old_low)
     if (np.where(apart_low | apart_high, grown, 0.0) > STANDS_STILL).any():
         was, now = (" x ".join(f"{v:g}" for v in np.round(b - a, 3)) for a, b in ((old_low, old_high), (low, high)))
-        note = f"the block must grow from {was} to {now} mm, unless the spec keeps its size (blocks)"
+        note = f"{MUST_GROW} from {was} to {now} mm, unless the spec keeps its size (blocks)"
     elif (grown < -STANDS_STILL).any():
         note = "a smaller block would do: the old one can stay"
     else:
