@@ -13,13 +13,13 @@ from moldgen.finding import Finding, Severity
 from moldgen.kernel.body import Body
 from moldgen.kernel.measure import bounding_box
 from moldgen.kernel.piece_measure import depth_from, point_inside
-from moldgen.kernel.place import moved
+from moldgen.kernel.place import moved, turned
 from moldgen.kernel.solid_difference import DifferentPiece, SolidDifference, fine_body, solid_difference
 from moldgen.model.part import Vector
 from moldgen.model.revision import ComponentChange, Fate, SteelPiece, Work
 from moldgen.revision.causes import Causes
 from moldgen.revision.components import BLOCKS, SMALL_PARTS, Match, matched
-from moldgen.revision.placing import Placing
+from moldgen.revision.placing import UPRIGHT, Placing
 from moldgen.revision.tool_record import ToolRecord
 
 STANDS_STILL = 1e-3
@@ -136,7 +136,8 @@ def _copies(
     depth, inside = depth_from(body, made.was), point_inside(body)
     for number, copy in enumerate(now, start=before + 1):
         by = _difference(copy.at, now[0].at)
-        here = body if not any(by) else fine_body(moved(piece.solid, by))
+        # a copy with geometry of its own: STEP would hold shared geometry once only
+        here = body if not any(by) else fine_body(turned(piece.solid, UPRIGHT, by))
         low, high = bounding_box(here.solid)
         at, box = _vector(inside + by), (_vector(low), _vector(high))
         name = copy.name if len(copy.part.positions) > 1 else copy.part.name
