@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -106,7 +107,7 @@ def _accepted(record: dict[str, Any], places: _Places, name: str, sha256: str) -
         gate=_gate(layout["gate"], places),
         stroke=float(layout["stroke_mm"]),
         ejector_pins=tuple(_pin(p, places) for p in own),
-        core_pins=tuple(_core(c["name"], (c["x"], c["y"], c["base_z"]), c["diameter"], places) for c in pins),
+        core_pins=tuple(_core_pin(c, places) for c in pins),
         cores_in_block=tuple(_core("round core", at, 0.0, places) for at in layout["cores_in_block"]),
         side_actions=tuple(_sides(record, places)),
     )
@@ -114,7 +115,14 @@ def _accepted(record: dict[str, Any], places: _Places, name: str, sha256: str) -
 
 def _pin(pin: dict[str, Any], places: _Places) -> AcceptedPin:
     at = (pin["x"], pin["y"], pin["tip_z"])
-    return AcceptedPin(str(pin["name"]), places.part(at), float(pin["diameter"]), float(pin["length"]), places.face(at))
+    end = places.height(float(pin["tip_z"]) - float(pin["tip_drop"]) - float(pin["fit_length"]))
+    size = float(pin["diameter"]), float(pin["length"])
+    return AcceptedPin(str(pin["name"]), places.part(at), *size, places.face(at), end)
+
+
+def _core_pin(pin: dict[str, Any], places: _Places) -> AcceptedCore:
+    core = _core(pin["name"], (pin["x"], pin["y"], pin["base_z"]), pin["diameter"], places)
+    return replace(core, fit_end=places.height(float(pin["base_z"]) - float(pin["fit_length"])))
 
 
 def _core(name: Any, at: Any, diameter: Any, places: _Places) -> AcceptedCore:
@@ -126,7 +134,12 @@ def _gate(gate: dict[str, Any], places: _Places) -> AcceptedGate:
     off = OFF_LINE * float(gate["depth"]) if kind is GateKind.EDGE else 0.0
     face = places.face((x, y, z + off if gate["in_cavity"] else z - off))
     width, depth, land, diameter = (float(gate[key]) for key in ("width", "depth", "land", "diameter"))
-    return AcceptedGate(kind, places.part((x, y, z)), width, depth, land, diameter, face)
+    found = AcceptedGate(kind, places.part((x, y, z)), width, depth, land, diameter, face)
+    if kind is not GateKind.EDGE:
+        return found
+    keys = ("runner_diameter", "runner_length", "sprue_foot_diameter")
+    runner, length, foot = _finite([gate[key] for key in keys], 3)
+    return replace(found, runner_diameter=runner, runner_length=length, sprue_foot=foot)
 
 
 def _sides(record: dict[str, Any], places: _Places) -> list[AcceptedSide]:

@@ -16,8 +16,8 @@ from moldgen.flow.words import direction_text
 from moldgen.kernel.face_again import find_again
 from moldgen.kernel.face_signature import PartSigns, part_signs
 from moldgen.layout.carry_block import KeptBlock
-from moldgen.layout.kept import REMEDY, Kept, KeptGate, KeptItem
-from moldgen.model.accepted import SNAP, Accepted, AcceptedBlocks, AcceptedCore, AcceptedGate, AcceptedPin
+from moldgen.layout.kept import REMEDY, Kept, KeptFeed, KeptGate, KeptItem
+from moldgen.model.accepted import SNAP, Accepted, AcceptedBlocks, AcceptedCore, AcceptedPin
 from moldgen.model.face_sign import FaceSign
 from moldgen.model.halves import Halves
 from moldgen.model.part import MoldFrame, Vector
@@ -51,10 +51,10 @@ def kept_layout(reviewed: Reviewed) -> tuple[Kept | None, Notes]:
             notes += Notes(decisions=(Decision("accepted layout", "features are not followed", why),))
     frame = reviewed.frame
     kept = Kept(
-        ejector_pins=tuple(_item(p, frame, find) for p in accepted.ejector_pins),
-        core_pins=tuple(_item(c, frame, find) for c in accepted.core_pins),
-        cores_in_block=tuple(_item(c, frame, find) for c in accepted.cores_in_block),
-        gate=_gate(accepted.gate, frame, find),
+        ejector_pins=tuple(_item(p, accepted, frame, find) for p in accepted.ejector_pins),
+        core_pins=tuple(_item(c, accepted, frame, find) for c in accepted.core_pins),
+        cores_in_block=tuple(_item(c, accepted, frame, find) for c in accepted.cores_in_block),
+        gate=_gate(accepted, frame, find),
         stroke=accepted.stroke,
         same_part=same,
     )
@@ -87,10 +87,12 @@ def _moved(at: Vector, shift: Vector) -> Vector:
     return (x, y, z)
 
 
-def _item(item: AcceptedPin | AcceptedCore, frame: MoldFrame, find: _Find) -> KeptItem:
+def _item(item: AcceptedPin | AcceptedCore, accepted: Accepted, frame: MoldFrame, find: _Find) -> KeptItem:
     shift, gone = find(item.feature, item.at)
     at, shift = _placed(item.at, shift, frame)
-    return KeptItem(item.name, at, item.diameter, shift, gone)
+    end = None if item.fit_end is None else _height(frame, accepted.pull, item.fit_end)
+    length = item.length if isinstance(item, AcceptedPin) else 0.0
+    return KeptItem(item.name, at, item.diameter, shift, gone, end, length)
 
 
 def _placed(at: Vector, shift: Vector, frame: MoldFrame) -> tuple[Vector, Vector]:
@@ -100,10 +102,13 @@ def _placed(at: Vector, shift: Vector, frame: MoldFrame) -> tuple[Vector, Vector
     return now, shift if in_plan > SNAP else (0.0, 0.0, 0.0)
 
 
-def _gate(gate: AcceptedGate, frame: MoldFrame, find: _Find) -> KeptGate:
+def _gate(accepted: Accepted, frame: MoldFrame, find: _Find) -> KeptGate:
+    gate = accepted.gate
     shift, gone = find(gate.feature, gate.at)
+    stood = frame.to_mold(gate.at)[2]
     at, shift = _placed(gate.at, shift, frame)
-    return KeptGate(gate.kind, at, gate.width, gate.depth, gate.land, gate.diameter, shift, gone)
+    feed = KeptFeed(gate.runner_diameter, gate.runner_length, gate.sprue_foot or gate.diameter, stood)
+    return KeptGate(gate.kind, at, gate.width, gate.depth, gate.land, gate.diameter, shift, gone, feed)
 
 
 # --- parting, blocks, side actions -----------------------------------------------------------------------------------

@@ -63,7 +63,7 @@ def match_cores(view: PartView, cores: list[RoundCore], kept: KeptCores) -> tupl
     for item in rest:
         taken = {*pins, *in_block}
         found = _nearest(cores, item, taken, MOST_MOVED)
-        off = min((_gap(c, item) for n, c in enumerate(cores) if n not in taken), default=None)
+        off = min((gap(c, item) for n, c in enumerate(cores) if n not in taken), default=None)
         reason = Reason(
             "gone", "no round core stands there any more, this is the nearest that is free", off, ON_AXIS, "mm"
         )
@@ -73,17 +73,18 @@ def match_cores(view: PartView, cores: list[RoundCore], kept: KeptCores) -> tupl
             notes += dropped(item.name, Reason("gone", text, off, MOST_MOVED, "mm"), view.place(item.at))
             continue
         pins[found] = item
-        notes += moved(item.name, _gap(cores[found], item), reason, view.place(item.at))
+        notes += moved(item.name, gap(cores[found], item), reason, view.place(item.at))
     return Match(pins, frozenset(in_block)), notes
 
 
 def _nearest(cores: list[RoundCore], item: KeptItem, taken: set[int], within: float) -> int | None:
     """Return the free core nearest to an item, at most `within` from its axis [mm]; of equals the one at its height."""
-    free = [n for n, c in enumerate(cores) if n not in taken and _gap(c, item) <= within]
-    return min(free, key=lambda n: (round(_gap(cores[n], item), 3), abs(cores[n].base_z - item.at[2])), default=None)
+    free = [n for n, c in enumerate(cores) if n not in taken and gap(c, item) <= within]
+    return min(free, key=lambda n: (round(gap(cores[n], item), 3), abs(cores[n].base_z - item.at[2])), default=None)
 
 
-def _gap(core: RoundCore, item: KeptItem) -> float:
+def gap(core: RoundCore, item: KeptItem) -> float:
+    """Return how far the axis of a core is from that of an item [mm]."""
     return math.hypot(core.x - item.at[0], core.y - item.at[1])
 
 

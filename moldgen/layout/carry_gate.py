@@ -12,16 +12,24 @@ from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.layout.gate_edge import edge_gate_near
 from moldgen.layout.gate_task import Found, Task
 from moldgen.layout.gate_top import top_gate_near
-from moldgen.layout.kept import MOST_MOVED, REMEDY, KeptGate, Reason, dropped, followed, moved
+from moldgen.layout.kept import MOST_MOVED, REMEDY, KeptFeed, KeptGate, Reason, dropped, followed, moved
+from moldgen.model.accepted import SNAP
 from moldgen.model.layout import GateKind, GateLayout
 from moldgen.model.part import Vector
 from moldgen.rules.filling import round_shear_rate, slot_shear_rate
+from moldgen.rules.practice import SPRUE_TAPER
 
-ROUNDING: Final = 2e-6
-"""mm: an accepted layout is written with six decimals."""
+ROUNDING: Final = SNAP
+"""mm: what lies closer is the same: older accepted layouts have six decimals."""
 
 ON_LINE: Final = 0.05
 """mm: a point this close to the parting line of the mesh lies on it: half the sag of the mesh on round walls."""
+
+TAPER: Final = math.tan(math.radians(SPRUE_TAPER.default))
+"""How much a sprue widens on each side, by its length."""
+
+MOVED: Final = "kind"
+"""What is kept of a gate that is moved: its feed is another one."""
 
 SOURCE: Final = "the accepted layout"
 
@@ -43,10 +51,22 @@ def yields(task: Task, kept: KeptGate) -> str:
 
 def found_again(gate: GateLayout, kept: KeptGate) -> bool:
     """Return whether a gate that was searched anew is the accepted one."""
-    sizes = (abs(getattr(gate, name) - getattr(kept, name)) for name in SIZES[kept.kind])
+    sizes = [abs(getattr(gate, name) - getattr(kept, name)) for name in SIZES[kept.kind]]
+    sizes += [abs(now - then) for _, now, then in _feed(gate, kept.feed) if then > 0.0]
     return (
         gate.kind is kept.kind and max(*sizes, *(abs(a - b) for a, b in zip(gate.at, kept.at, strict=True))) < ROUNDING
     )
+
+
+def _feed(gate: GateLayout, feed: KeptFeed) -> list[tuple[str, float, float]]:
+    """Return what belongs to the feed of an edge gate: name, as it is, as it was accepted [mm]."""
+    if gate.kind is not GateKind.EDGE:
+        return []
+    return [
+        ("diameter of the runner", gate.runner_diameter, feed.runner),
+        ("length of the runner", gate.runner_length, feed.length),
+        ("foot of the sprue", gate.sprue_foot_diameter, feed.foot),
+    ]
 
 
 def carry_gate(task: Task, kept: KeptGate) -> tuple[Found | None, Notes]:
@@ -57,8 +77,10 @@ def carry_gate(task: Task, kept: KeptGate) -> tuple[Found | None, Notes]:
     """
     at = task.view.place(kept.at)
     notes = followed("the gate", kept.shift, at)
+    task = replace(task, feed=_foot_at(kept, task.view.level))
     sized, plain = _sized(task, kept), replace(task, section=task.section.model_copy(update={"kind": kept.kind.value}))
     here, free = _at(sized, kept, 0.0), _at(plain, kept, 0.0)
+    sized, here = _cone(task, kept, (sized, here))
     size = _size_trouble(sized, plain, here, free)
     if not here.broken and size is None:
         return _as_accepted(task, here, kept), notes + _kept(task, here, "place and size")
@@ -72,7 +94,7 @@ def carry_gate(task: Task, kept: KeptGate) -> tuple[Found | None, Notes]:
         if not other.broken:
             off = math.dist(other.gate.at[:2], kept.at[:2])
             return _as_accepted(task, other, kept), notes + moved("the gate", off, reason, at) + _kept(
-                task, other, "kind"
+                task, other, MOVED
             )
     return None, dropped("the gate", reason, at)
 
@@ -126,7 +148,54 @@ def _as_accepted(task: Task, found: Found, kept: KeptGate) -> Found:
 def _kept(task: Task, found: Found, what: str) -> Notes:
     place = ", ".join(f"{v + 0.0:g}" for v in task.view.place(found.gate.at))
     text = f"{found.gate.kind.value} gate at {place}"
-    return Notes(decisions=(Decision("gate", text, f"kept from the accepted layout: {what}"),))
+    here = () if task.feed is None or what == MOVED else _feed(found.gate, task.feed)
+    told = (_other_feed(task, found, *one) for one in here)
+    return Notes(
+        tuple(f for f in told if f is not None),
+        decisions=(Decision("gate", text, f"kept from the accepted layout: {what}"),),
+    )
+
+
+def _other_feed(task: Task, found: Found, name: str, now: float, then: float) -> Finding | None:
+    """Return the finding that a size of the feed is not what it was, None if it is or was not recorded."""
+    if then <= 0.0 or abs(now - then) <= SNAP:
+        return None
+    return Finding(
+        "accepted.resized",
+        Severity.CAUTION,
+        f"the {name} becomes {now:.2f} mm instead of {then:.2f} mm: "
+        + ("there is no room for it" if name.startswith("length") else "for this part and block the rules ask for it"),
+        where="gate",
+        at=task.view.place(found.gate.at),
+        value=round(then, 3),
+        limit=round(now, 3),
+        unit="mm",
+        remedy=REMEDY,
+    )
+
+
+def _foot_at(kept: KeptGate, level: float) -> KeptFeed:
+    """Return the feed with the diameter that its sprue, as it is cut, has at a height [mm]."""
+    feed = kept.feed
+    if feed.foot <= 0.0 or abs(level - feed.stood) <= SNAP:
+        return feed
+    return replace(feed, foot=feed.foot + 2 * (feed.stood - level) * TAPER, stood=level)
+
+
+def _cone(task: Task, kept: KeptGate, own: tuple[Task, Found]) -> tuple[Task, Found]:
+    """Return the task and gate of a direct sprue whose cone stays where the part now ends lower: its foot is wider.
+
+    own : with the accepted foot. A cone that would end in a narrower foot is cut wider instead: no steel is missing.
+    """
+    if kept.kind is not GateKind.SPRUE or task.section.diameter is not None or own[1].broken:
+        return own
+    foot = _foot_at(kept, own[1].gate.at[2]).foot
+    if foot <= kept.diameter + SNAP:
+        return own
+    sized = replace(own[0], section=own[0].section.model_copy(update={"diameter": foot}))
+    found = _at(sized, kept, 0.0)
+    worse = {f.code for f in found.notes.findings} - {f.code for f in own[1].notes.findings}
+    return own if found.broken or worse else (sized, found)
 
 
 def _resized(task: Task, found: Found, kept: KeptGate, reason: Reason) -> Notes:

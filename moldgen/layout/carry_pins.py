@@ -9,6 +9,7 @@ import numpy as np
 
 from moldgen.finding import Decision, Notes
 from moldgen.layout.balance import resultant
+from moldgen.layout.carry_fits import end_of
 from moldgen.layout.ejection_checks import OFF_CENTRE, steel_beside
 from moldgen.layout.keep_out import STEEL
 from moldgen.layout.kept import MOST_MOVED, Kept, KeptItem, Reason, dropped, followed, moved, still_held
@@ -23,6 +24,7 @@ from moldgen.layout.pin_search import (
     side_steel,
     small_edges,
 )
+from moldgen.model.accepted import SNAP
 from moldgen.model.layout import Chooser
 from moldgen.model.part import Vector
 from moldgen.rules.layout_practice import PIN_SLOPE
@@ -30,8 +32,8 @@ from moldgen.rules.layout_practice import PIN_SLOPE
 STEP: Final = 0.25
 """mm: distance of the places tried round one that breaks a rule (our choice)."""
 
-ROUNDING: Final = 2e-6
-"""mm: places of an accepted layout are written with six decimals."""
+ROUNDING: Final = SNAP
+"""mm: what lies closer is the same place: older accepted layouts have six decimals."""
 
 BETTER: Final = 0.8
 """Added pins are taken when they bring what is passed down to this share of itself (our choice, as in the search)."""
@@ -81,7 +83,10 @@ def _found_again(found: list[Place], items: tuple[KeptItem, ...]) -> list[Place]
         off = max(abs(place.x - item.at[0]), abs(place.y - item.at[1]), abs(place.diameter - item.diameter))
         if off > ROUNDING:
             return None
-    return [replace(p, chooser=Chooser.KEPT, name=i.name) for p, i in zip(order, items, strict=True)]
+    return [
+        replace(p, chooser=Chooser.KEPT, name=i.name, fit_end=i.fit_end, length=i.length)
+        for p, i in zip(order, items, strict=True)
+    ]
 
 
 def _added(task: Task, kept: list[Place], count: int) -> tuple[list[Place], Notes]:
@@ -135,7 +140,8 @@ def kind_of(task: Task, diameter: float) -> PinKind:
 
 def _place(task: Task, item: KeptItem, spot: np.ndarray, kind: PinKind) -> Place:
     disc = task.under.discs(spot[None], np.array([kind.diameter]))[0]
-    return Place(float(spot[0]), float(spot[1]), kind, disc, Chooser.KEPT, item.name)
+    end = end_of(item, kind.diameter, float(np.hypot(*(spot - np.array(item.at[:2])))))
+    return Place(float(spot[0]), float(spot[1]), kind, disc, Chooser.KEPT, item.name, end, item.length)
 
 
 def _with_gone(item: KeptItem, reason: Reason) -> Reason:

@@ -10,7 +10,8 @@ import numpy as np
 
 from moldgen.catalog import Pin, Resin, core_pin_blank
 from moldgen.finding import Decision, Finding, Notes, Severity
-from moldgen.layout.carry_cores import KeptCores, in_the_way, match_cores, resized
+from moldgen.layout.carry_cores import KeptCores, gap, in_the_way, match_cores, resized
+from moldgen.layout.carry_fits import Fit, end_of, fits_told, keep_fit, shortest_kept
 from moldgen.layout.core_pin_checks import check_strength
 from moldgen.layout.keep_out import STEEL
 from moldgen.layout.kept import KeptItem, Reason, dropped, free_name
@@ -58,7 +59,7 @@ class _Seat:
     blank: Pin | None
     diameter: float
     head: float
-    fit: float
+    fit: Fit
     trouble: tuple[tuple[str, str, float, float], ...] = ()
 
 
@@ -103,12 +104,12 @@ def find_core_pins(
                 refused.append(left)
                 notes += more
                 continue
-        if seat.blank is None or seat.fit < SHORTEST_FIT or not seat.core.closed:
+        if seat.blank is None or seat.fit.length < SHORTEST_FIT or not seat.core.closed:
             continue
         chooser = Chooser.GIVEN if i in wanted else Chooser.KEPT if item else Chooser.MOLDGEN
         pins.append(_pin(seat, item.name if item else free_name("core pin", names), chooser))
         notes += check_strength(view, seat.core, pins[-1], resin)
-        notes += resized(view, seat.core, item, pins[-1].diameter) if item else Notes()
+        notes += _as_kept(view, seat, item, pins[-1]) if item else Notes()
     if pins or refused:
         why = "round cores up to 16 mm or longer than 1.5 diameters, not shallow (common practice)"
         notes += Notes(
@@ -130,10 +131,16 @@ def _left(view: PartView, seat: _Seat, item: KeptItem | None, kept: KeptCores | 
     return (f"core at {place[0]:g}, {place[1]:g}: {text}" if text else ""), told
 
 
+def _as_kept(view: PartView, seat: _Seat, item: KeptItem, pin: CorePinLayout) -> Notes:
+    """Return what of an accepted pin does not stay as it was."""
+    place = view.place((pin.x, pin.y, pin.base_z))
+    return resized(view, seat.core, item, pin.diameter) + fits_told([(pin.name, place, seat.fit)])
+
+
 def _kept_seat(view: PartView, core: RoundCore, item: KeptItem | None) -> _Seat:
     """Return the seat of a core; an accepted pin keeps its diameter where that makes no trouble."""
     if item is not None:
-        seat = _seat(view, core, item.diameter)
+        seat = _seat(view, core, item.diameter, item)
         if not seat.trouble:
             return seat
     return _seat(view, core)
@@ -171,7 +178,7 @@ def _pays(core: RoundCore) -> bool:
     return small and ratio >= CORE_PIN_SHALLOW.default and core.length >= SHORTEST
 
 
-def _seat(view: PartView, core: RoundCore, wanted: float = 0.0) -> _Seat:
+def _seat(view: PartView, core: RoundCore, wanted: float = 0.0, item: KeptItem | None = None) -> _Seat:
     diameter, base = _shank(view, core, wanted)
     core = with_base(core, base)
     blank = core_pin_blank(diameter)
@@ -182,11 +189,12 @@ def _seat(view: PartView, core: RoundCore, wanted: float = 0.0) -> _Seat:
         trouble.append(("no_blank", f"no pin blank of {diameter:.2f} mm", diameter, 0.0))
     height = 0.0 if blank is None else blank.head_height
     room = core.base_z - float(view.low[2]) - height - STEEL_BEHIND_FIT.low
-    fit = min(guided_fit_length(diameter), room)
-    least = guided_fit_length(diameter, 2.0)
-    if fit < least - 1e-9:
-        text = f"the core block leaves {fit:.1f} mm for the fit, {least:.1f} mm are needed"
-        trouble.append(("short_fit", text, fit, least))
+    end = None if item is None else end_of(item, diameter, gap(core, item))
+    fit = keep_fit(diameter, min(guided_fit_length(diameter), room), core.base_z, core.base_z - room, end)
+    least = guided_fit_length(diameter, 2.0) if end is None else shortest_kept(diameter)
+    if fit.length < least - 1e-9:
+        text = f"the core block leaves {fit.length:.1f} mm for the fit, {least:.1f} mm are needed"
+        trouble.append(("short_fit", text, fit.length, least))
     steel, limit = _steel_beside(view, core, diameter), STEEL_TO_FEATURE.default
     if steel < limit:
         trouble.append(("thin_steel", f"{steel:.2f} mm of steel to a deeper feature of the part", steel, limit))
@@ -282,7 +290,7 @@ def _pin(seat: _Seat, name: str, chooser: Chooser) -> CorePinLayout:
         top_z=core.top_z,
         base_z=core.base_z,
         diameter=seat.diameter,
-        fit_length=seat.fit,
+        fit_length=seat.fit.length,
         clearance_diameter=clearance_bore_diameter(seat.diameter),
         head_diameter=seat.head,
         head_height=0.0 if seat.blank is None else seat.blank.head_height,

@@ -81,7 +81,7 @@ class Need:
 
     width, land, runner, foot : of the usual gate, its land, diameters of runner and sprue foot [mm]
     wanted : width and depth (k, 2) of the mouth into walls (k,) [mm]; fixed : whether the spec gives width and depth
-    no_gate : faces to keep off
+    no_gate : faces to keep off; kept : length of the runner of an accepted gate [mm], 0 for none
     """
 
     width: float
@@ -91,6 +91,13 @@ class Need:
     wanted: Callable[[np.ndarray], np.ndarray]
     fixed: tuple[bool, bool]
     no_gate: frozenset[int]
+    kept: float = 0.0
+
+    @property
+    def lengths(self) -> tuple[float, ...]:
+        """Lengths of the runner that are tried, the one that is wanted most comes last [mm]."""
+        usual = (EDGE_GATE_RUNNER.low, EDGE_GATE_RUNNER.default)
+        return (*usual, self.kept) if EDGE_GATE_RUNNER.low <= self.kept <= EDGE_GATE_RUNNER.high else usual
 
 
 def find_edge_sites(view: PartView, need: Need, near: np.ndarray | None = None, within: float = 0.0) -> EdgeSites:
@@ -210,7 +217,7 @@ def _runners(
 ) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """Return the length of the runner, 0 without room [mm]; whether it has a way; whether a side action is in it."""
     runner, way, aside = np.zeros(len(places)), np.zeros(len(places), bool), np.ones(len(places), bool)
-    for length in (EDGE_GATE_RUNNER.low, EDGE_GATE_RUNNER.default):
+    for length in need.lengths:
         free = _corridor(view, places, inward, need, length)
         clear = _side_steel(view, places, inward, need, length, wanted) >= STEEL
         runner[free & clear] = length

@@ -11,11 +11,12 @@ import numpy as np
 from moldgen.catalog import Resin, ejector_pin_down, ejector_pin_series
 from moldgen.finding import Finding, Notes, Severity
 from moldgen.layout.balance import shares
+from moldgen.layout.carry_fits import fits_told
 from moldgen.layout.carry_pins import carry_pins
 from moldgen.layout.ejection_checks import check_balance, check_given, check_stays
 from moldgen.layout.keep_out import STEEL
-from moldgen.layout.kept import Kept, free_name
-from moldgen.layout.pin_kinds import Place, of_diameter, stack_up
+from moldgen.layout.kept import REMEDY, Kept, free_name
+from moldgen.layout.pin_kinds import Place, fit_of, of_diameter, stack_up
 from moldgen.layout.pin_search import Task, search_pins, side_steel, size_cap
 from moldgen.layout.sites import Underside
 from moldgen.layout.sticking import Sticking, find_sticking, hold_of_cavity
@@ -101,11 +102,13 @@ def ejector_stroke(view: PartView, section: Ejection, kept: float = 0.0) -> tupl
         if lifters > own:
             how = "the whole height of the part, and 10 mm: the most that is common practice"
             lines += (measured("stroke that the lifters are made for", lifters, "mm", "ejector stroke", how=how),)
-        if kept > own and lifters == 0.0:
-            how = "the accepted layout"
-            lines += (measured("stroke that is kept", kept, "mm", "ejector stroke", how=how),)
-            own = kept
-        return max(own, lifters), Notes(quantities=lines)
+        if kept <= 0.0 or kept == own or lifters > 0.0:
+            return max(own, lifters), Notes(quantities=lines)
+        if kept < needed.value - 1e-9:
+            return own, Notes((_longer(kept, own, needed.value),), quantities=lines)
+        how = "the accepted layout"
+        lines += (measured("stroke that is kept", kept, "mm", "ejector stroke", how=how),)
+        return kept, Notes(quantities=lines)
     lines += (given_line("ejector stroke", section.stroke, "mm", "ejector stroke", where="ejection.stroke"),)
     if section.stroke >= needed.value - 1e-9:
         return section.stroke, Notes(quantities=lines)
@@ -120,6 +123,20 @@ def ejector_stroke(view: PartView, section: Ejection, kept: float = 0.0) -> tupl
         remedy=f"give at least {math.ceil(needed.value):g} mm, or leave it to moldgen",
     )
     return section.stroke, Notes((finding,), quantities=lines)
+
+
+def _longer(kept: float, own: float, needed: float) -> Finding:
+    return Finding(
+        "accepted.stroke",
+        Severity.CAUTION,
+        f"the ejectors travel {own:g} mm instead of {kept:g} mm, so each pin has another length: with the accepted "
+        f"stroke the part is not free, it needs {needed:.2f} mm",
+        where="ejection.stroke",
+        value=round(kept, 3),
+        limit=round(needed, 3),
+        unit="mm",
+        remedy=REMEDY,
+    )
 
 
 def _given(task: Task, given: tuple[GivenPin, ...]) -> tuple[list[Place], Notes]:
@@ -210,13 +227,15 @@ def _pins(task: Task, places: list[Place]) -> tuple[tuple[EjectorPinLayout, ...]
     spots = np.array([[p.x, p.y] for p in order]).reshape(-1, 2)
     areas = np.array([math.pi / 4 * p.diameter**2 for p in order])
     forces = shares(spots, areas, task.sticking.force, task.sticking.centre)
-    pins, ground = [], []
+    pins, ground, fits = [], [], []
     for name, place, force in zip(names, order, forces, strict=True):
         pin, cut = _pin(task, place, name, float(force))
         pins.append(pin)
         if cut > 0.0:
             ground.append((cut, pin))
-    return tuple(pins), _ground(task.view, ground)
+        fit = fit_of(place.kind, task.view, place.disc.low, place.fit_end)
+        fits.append((name, task.view.place((pin.x, pin.y, pin.tip_z)), fit))
+    return tuple(pins), _ground(task.view, ground) + fits_told(fits)
 
 
 def _rank(place: Place) -> tuple[int, float, float]:
@@ -242,7 +261,7 @@ def _names(order: list[Place]) -> list[str]:
 def _pin(task: Task, place: Place, name: str, force: float) -> tuple[EjectorPinLayout, float]:
     """Return one pin, and how much of its shank is ground down to the tip's diameter [mm]."""
     kind, disc = place.kind, place.disc
-    stack = stack_up(kind, task.view, task.stroke, disc.high, disc.low)
+    stack = stack_up(kind, task.view, task.stroke, disc.high, disc.low, place.fit_end, place.length)
     pin = EjectorPinLayout(
         name=name,
         x=place.x,

@@ -34,7 +34,7 @@ def edge_gate(task: Task) -> Found:
     """Return the best edge gate, with the rules that its place breaks."""
     view = task.view
     height = float(view.high[2] - view.level)
-    usual, _ = size_edge(task.section, task.resin, task.melt, view.wall, height)
+    usual, _ = size_edge(task.section, task.resin, task.melt, view.wall, height, None, task.feed)
     sites = find_edge_sites(view, _need(task, (usual.width, usual.land, usual.runner, usual.foot)))
     order = _order(task, sites)
     share = _mouths(task, sites, order[:CHECKED], usual.land + usual.runner)
@@ -50,7 +50,7 @@ def edge_gate_near(task: Task, at: np.ndarray, within: float) -> Found:
     """
     view = task.view
     height = float(view.high[2] - view.level)
-    usual, _ = size_edge(task.section, task.resin, task.melt, view.wall, height)
+    usual, _ = size_edge(task.section, task.resin, task.melt, view.wall, height, None, task.feed)
     sites = find_edge_sites(view, _need(task, (usual.width, usual.land, usual.runner, usual.foot)), at, within)
     share = _mouths(task, sites, np.arange(len(sites.places)), usual.land + usual.runner)
     good = np.flatnonzero((share >= WHOLE) & (sites.troubles == 0))
@@ -63,7 +63,7 @@ def _made(task: Task, sites: EdgeSites, choice: int, share: float) -> Found:
     view = task.view
     height = float(view.high[2] - view.level)
     room = (float(sites.room[choice, 0]), float(sites.room[choice, 1])) if sites.fullness[choice] > 0.0 else None
-    made, notes = size_edge(task.section, task.resin, task.melt, float(sites.wall[choice]), height, room)
+    made, notes = size_edge(task.section, task.resin, task.melt, float(sites.wall[choice]), height, room, task.feed)
     end, flow = task.flow_from(sites.places[choice])
     x, y = (float(v) for v in sites.places[choice, :2])
     gate = GateLayout(
@@ -92,9 +92,10 @@ def _need(task: Task, usual: tuple[float, float, float, float]) -> Need:
     section = task.section
 
     def wanted(walls: np.ndarray) -> np.ndarray:
-        return wanted_edge(section, task.resin, task.melt, walls)
+        return wanted_edge(section, task.resin, task.melt, walls, task.feed)
 
-    return Need(*usual, wanted, (section.width is not None, section.depth is not None), task.no_gate)
+    kept = 0.0 if task.feed is None else task.feed.length
+    return Need(*usual, wanted, (section.width is not None, section.depth is not None), task.no_gate, kept)
 
 
 def _order(task: Task, sites: EdgeSites) -> np.ndarray:

@@ -9,7 +9,9 @@ import numpy as np
 
 from moldgen.catalog import Resin
 from moldgen.finding import Finding, Notes, Severity
+from moldgen.layout.kept import KeptFeed
 from moldgen.layout.view import PartView
+from moldgen.model.accepted import SNAP
 from moldgen.quantity import Quantity
 from moldgen.rules.filling import fill_time, flow_length_limit, round_shear_rate, slot_shear_rate
 from moldgen.rules.gate import (
@@ -80,12 +82,12 @@ def sized(wall: float) -> float:
     return min(max(wall, THINNEST), THICKEST)
 
 
-def wanted_edge(section: Gate, resin: Resin, melt: Melt, walls: np.ndarray) -> np.ndarray:
+def wanted_edge(section: Gate, resin: Resin, melt: Melt, walls: np.ndarray, feed: KeptFeed | None = None) -> np.ndarray:
     """Return width and depth that an edge gate into walls (k,) [mm] wants: by the rules, as far as the runner feeds it.
 
-    (k, 2) [mm]; what the spec gives is kept.
+    (k, 2) [mm]; what the spec gives is kept. feed : of an accepted gate
     """
-    runner, _ = _runner(melt)
+    runner, _ = _runner(melt, feed)
     values, number = np.unique(np.round(np.clip(walls, THINNEST, THICKEST), 2), return_inverse=True)
     sizes = [_edge_size(section, resin, melt, float(wall), runner)[:2] for wall in values]
     return np.array(sizes).reshape(-1, 2)[number.ravel()]
@@ -104,7 +106,13 @@ def _edge_size(
 
 
 def size_edge(
-    section: Gate, resin: Resin, melt: Melt, wall: float, height: float, room: tuple[float, float] | None = None
+    section: Gate,
+    resin: Resin,
+    melt: Melt,
+    wall: float,
+    height: float,
+    room: tuple[float, float] | None = None,
+    feed: KeptFeed | None = None,
 ) -> tuple[GateSize, Notes]:
     """Return the sizes of an edge gate.
 
@@ -113,8 +121,9 @@ def size_edge(
     wall : of the part at the gate [mm]
     height : of the cavity's depth over the parting plane, from the plane to the nozzle [mm]
     room : width and depth of the mouth that the part has room for there [mm]; None for enough
+    feed : of an accepted gate: its runner and the foot of its sprue stay where they are wide enough
     """
-    runner, more = _runner(melt)
+    runner, more = _runner(melt, feed)
     width, depth, lines = _edge_size(section, resin, melt, sized(wall), runner)
     small: tuple[Finding, ...] = ()
     if room is not None and (width > room[0] + 1e-9 or depth > room[1] + 1e-9):
@@ -128,11 +137,19 @@ def size_edge(
         if v is not None
     ]
     shear = slot_shear_rate.line("shear of the melt in the gate", melt.rate, width, depth)
-    foot = max(SPRUE_ORIFICE.default + 2 * height * math.tan(math.radians(SPRUE_TAPER.default)), runner)
+    foot = _sprue_foot(height, runner, feed)
     lines += [GATE_OVER_RUNNER.line("width of the gate"), shear]
     notes = Notes((*small, *_sheared(shear, resin)), quantities=tuple(lines)) + more
     land, more = _land(section)
     return GateSize(width, depth, land, 0.0, runner, foot), notes + more
+
+
+def _sprue_foot(height: float, runner: float, feed: KeptFeed | None) -> float:
+    """Return the foot of a sprue `height` long [mm]; that of an accepted one while its orifice is a usual one."""
+    widens = 2 * height * math.tan(math.radians(SPRUE_TAPER.default))
+    usual, kept = max(SPRUE_ORIFICE.default + widens, runner), 0.0 if feed is None else feed.foot
+    enough = max(SPRUE_ORIFICE.low + widens, runner) - SNAP <= kept <= max(SPRUE_ORIFICE.high + widens, runner) + SNAP
+    return kept if enough and abs(kept - usual) > SNAP else usual
 
 
 def _smaller(width: float, depth: float, wanted: str) -> Finding:
@@ -216,10 +233,15 @@ def _land(section: Gate) -> tuple[float, Notes]:
     return section.land, Notes(quantities=(given("land of the gate", section.land, "mm", "gate", where="gate.land"),))
 
 
-def _runner(melt: Melt, length: float = 12.0) -> tuple[float, Notes]:
+def _runner(melt: Melt, feed: KeptFeed | None = None, length: float = 12.0) -> tuple[float, Notes]:
+    """Return the diameter of the runner; that of an accepted one while the rule asks for no more."""
     line = runner_diameter_pye.line("runner", max(melt.mass, 1e-3), length)
+    least, most = RUNNER_RANGE
+    kept = 0.0 if feed is None else feed.runner
+    if min(max(line.value, least), most) - SNAP <= kept <= most + SNAP:
+        return kept, Notes(quantities=(line,))
     diameter = math.ceil(line.value / CUTTER - 1e-9) * CUTTER
-    return min(max(diameter, RUNNER_RANGE[0]), RUNNER_RANGE[1]), Notes(quantities=(line,))
+    return min(max(diameter, least), most), Notes(quantities=(line,))
 
 
 def _up(value: float) -> float:

@@ -12,6 +12,7 @@ from moldgen.finding import Notes
 from moldgen.layout.flow_paths import FlowPaths
 from moldgen.layout.gate_size import Melt
 from moldgen.layout.keep_out import CANNOT_BE, is_side_rule
+from moldgen.layout.kept import KeptFeed
 from moldgen.layout.view import PartView
 from moldgen.model.layout import Chooser, GateLayout
 from moldgen.spec.sections import Gate
@@ -29,7 +30,10 @@ to a few percent, and a gate on a middle line is easier to make and to balance."
 
 @dataclass(frozen=True)
 class Task:
-    """One gate to place: the part, the wishes of the spec, what must flow, and the ways inside the part."""
+    """One gate to place: the part, the wishes of the spec, what must flow, and the ways inside the part.
+
+    feed : of an accepted gate, with the foot of its sprue brought to this parting plane; it stays where it suffices
+    """
 
     view: PartView
     section: Gate
@@ -38,6 +42,7 @@ class Task:
     paths: FlowPaths
     at: np.ndarray | None
     no_gate: frozenset[int]
+    feed: KeptFeed | None = None
 
     @property
     def chooser(self) -> Chooser:

@@ -18,13 +18,32 @@ REMEDY: Final = "accept the new layout with 'moldgen accept', or fix this item i
 
 @dataclass(frozen=True)
 class KeptItem:
-    """A pin or round core. shift : how far its feature moved, in part coordinates; gone : the feature is no more."""
+    """A pin or round core. shift : how far its feature moved, in part coordinates; gone : the feature is no more.
+
+    fit_end : mold z at which its fit ends and its bore widens, None if that is not known
+    length : of an ejector pin on the market, 0 if not known
+    """
 
     name: str
     at: Vector
     diameter: float
     shift: Vector = (0.0, 0.0, 0.0)
     gone: bool = False
+    fit_end: float | None = None
+    length: float = 0.0
+
+
+@dataclass(frozen=True)
+class KeptFeed:
+    """The feed of a gate [mm]: runner of an edge gate, and foot of its sprue or of a direct one; 0: not known.
+
+    stood : mold z of the foot when it was recorded: the sprue is narrower above it, wider below
+    """
+
+    runner: float = 0.0
+    length: float = 0.0
+    foot: float = 0.0
+    stood: float = 0.0
 
 
 @dataclass(frozen=True)
@@ -39,6 +58,7 @@ class KeptGate:
     diameter: float = 0.0
     shift: Vector = (0.0, 0.0, 0.0)
     gone: bool = False
+    feed: KeptFeed = KeptFeed()
 
 
 @dataclass(frozen=True)

@@ -8,6 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from moldgen.catalog import Pin, ShoulderedPin, ejector_pin_series, ejector_pin_up, shouldered_pin_series
+from moldgen.layout.carry_fits import Fit, keep_fit
 from moldgen.layout.sites import Disc
 from moldgen.layout.view import PartView
 from moldgen.model.layout import Chooser
@@ -52,7 +53,10 @@ class PinKind:
 
 @dataclass(frozen=True)
 class Place:
-    """One ejector pin: axis [mm] and size, what lies over its end face, who chose it; name : of one that is kept."""
+    """One ejector pin: axis [mm] and size, what lies over its end face, who chose it; name : of one that is kept.
+
+    fit_end, length : height at which the fit of a kept pin ends, None for a new hole, and its length on the market [mm]
+    """
 
     x: float
     y: float
@@ -60,6 +64,8 @@ class Place:
     disc: Disc
     chooser: Chooser
     name: str = ""
+    fit_end: float | None = None
+    length: float = 0.0
 
     @property
     def diameter(self) -> float:
@@ -109,21 +115,40 @@ def of_diameter(diameter: float, edge: float) -> PinKind:
     return PinKind(diameter, diameter, max(like.head_diameter, diameter + 2.0), like.head_height, like.lengths, edge)
 
 
-def stack_up(kind: PinKind, view: PartView, stroke: float, high: float, low: float) -> Stack:
+def fit_of(kind: PinKind, view: PartView, low: float, end: float | None = None) -> Fit:
+    """Return the fit of a pin over which the core's surface is at `low` or higher; end : of the fit of a kept pin."""
+    bottom = float(view.low[2])
+    usual = min(guided_fit_length(kind.diameter), max(low - bottom, 0.0))
+    return keep_fit(kind.diameter, usual, low, bottom, end)
+
+
+def stack_up(
+    kind: PinKind,
+    view: PartView,
+    stroke: float,
+    high: float,
+    low: float,
+    end: float | None = None,
+    bought: float = 0.0,
+) -> Stack:
     """Return the heights of a pin whose face lies between `low` and `high` [mm].
+
+    end, bought : height at which the fit of a kept pin ends, and its length on the market, which stay where they can
 
     A shoulder moves through the stroke in the wider bore and must not reach the end of the fit.
     """
     bottom = float(view.low[2])
     seat = bottom - stroke - RETAINER_PLATE.default
-    fit = min(guided_fit_length(kind.diameter), max(low - bottom, 0.0))
+    fit = fit_of(kind, view, low, end).length
     free, needed = max(low - fit - seat, 1.0), high - seat
     if not kind.stepped:
         length = next((one for one in kind.lengths if one >= needed), math.ceil(needed))
+        length = bought if bought >= needed else length
         load = euler_buckling_force(kind.diameter, free, end_factor=PIN_END_FACTOR.default)
         return Stack(seat, fit, 0.0, 0.0, length, load)
     most = max(free - stroke - SHOULDER_GAP.default, kind.head_height)
-    number = int(np.searchsorted(kind.lengths, needed - 1e-9))
+    wanted = bought if bought in kind.lengths and bought >= needed else needed
+    number = int(np.searchsorted(kind.lengths, wanted - 1e-9))
     known = number < len(kind.lengths)
     length, stock = (kind.lengths[number], kind.shank_lengths[number]) if known else (math.ceil(needed), most)
     shank = min(stock, most)

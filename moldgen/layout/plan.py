@@ -13,7 +13,7 @@ from moldgen.layout.clearances import check_clearances
 from moldgen.layout.core_pins import find_core_pins
 from moldgen.layout.ejection import EjectionLayout, GivenPin, place_ejector_pins
 from moldgen.layout.gate import place_gate
-from moldgen.layout.kept import Kept
+from moldgen.layout.kept import Kept, KeptItem
 from moldgen.layout.round_cores import find_round_cores
 from moldgen.layout.view import PartView
 from moldgen.model.layout import Chooser, CorePinLayout, Layout
@@ -71,9 +71,15 @@ def _agreed(wishes: Wishes) -> tuple[Wishes, Notes]:
         notes += _beaten("ejector pins kept", f"only those of the spec, {len(wishes.pins)}", "ejection.pins")
     diameter = wishes.ejection.diameter
     if diameter is not None and any(not math.isclose(p.diameter, diameter) for p in kept.ejector_pins):
-        kept = replace(kept, ejector_pins=tuple(replace(p, diameter=diameter) for p in kept.ejector_pins))
+        own = (p if math.isclose(p.diameter, diameter) else _other_size(p, diameter) for p in kept.ejector_pins)
+        kept = replace(kept, ejector_pins=tuple(own))
         notes += _beaten("ejector pins kept", f"their places, with {diameter:g} mm", "ejection.diameter")
     return replace(wishes, kept=kept), notes
+
+
+def _other_size(pin: KeptItem, diameter: float) -> KeptItem:
+    """Return a pin of another diameter at the same place: another pin in another hole."""
+    return replace(pin, diameter=diameter, fit_end=None, length=0.0)
 
 
 def _beaten(topic: str, choice: str, key: str) -> Notes:

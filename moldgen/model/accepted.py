@@ -13,8 +13,11 @@ from moldgen.model.side_action import SideKind
 FORMAT: Final = 1
 """Version of the file in which it is written."""
 
+PLACE_DIGITS: Final = 9
+"""Decimals of places and sizes: files are written and read back without moving anything that steel shows."""
+
 SNAP: Final = 2e-6
-"""mm: what was written with six decimals and what was worked out anew are the same within this."""
+"""mm: what was accepted and what was worked out anew are the same within this: older files have six decimals."""
 
 
 @dataclass(frozen=True)
@@ -22,6 +25,7 @@ class AcceptedPin:
     """One ejector pin. at : the middle of its end face; length : from the catalog, before cutting.
 
     feature : the face that it pushes on; None if nothing is known of it, then it stays where it is
+    fit_end : height along the pull at which its fit ends and the bore widens; None if it is not recorded
     """
 
     name: str
@@ -29,21 +33,29 @@ class AcceptedPin:
     diameter: float
     length: float
     feature: FaceSign | None = None
+    fit_end: float | None = None
 
 
 @dataclass(frozen=True)
 class AcceptedCore:
-    """One round core. at : on its axis, at its foot; diameter : of its pin's shank, 0 where it is part of the block."""
+    """One round core. at : on its axis, at its foot; diameter : of its pin's shank, 0 where it is part of the block.
+
+    fit_end : as of an ejector pin
+    """
 
     name: str
     at: Vector
     diameter: float
     feature: FaceSign | None = None
+    fit_end: float | None = None
 
 
 @dataclass(frozen=True)
 class AcceptedGate:
-    """The gate: its kind, where it opens into the part, and its sizes; those that its kind has not are 0."""
+    """The gate: its kind, where it opens into the part, and its sizes; those that its kind has not are 0.
+
+    runner_diameter, runner_length, sprue_foot : of the feed of an edge gate; 0 where they are not recorded
+    """
 
     kind: GateKind
     at: Vector
@@ -52,6 +64,9 @@ class AcceptedGate:
     land: float
     diameter: float
     feature: FaceSign | None = None
+    runner_diameter: float = 0.0
+    runner_length: float = 0.0
+    sprue_foot: float = 0.0
 
 
 @dataclass(frozen=True)

@@ -142,6 +142,7 @@ class _Pin(Section):
     at: _Place
     diameter: Length
     length: Length
+    fit_end: Coordinate | None = None
     feature: _Feature = None
 
 
@@ -149,6 +150,7 @@ class _Core(Section):
     name: Text = "round core"
     at: _Place
     diameter: Gap = 0.0
+    fit_end: Coordinate | None = None
     feature: _Feature = None
 
 
@@ -159,6 +161,9 @@ class _Gate(Section):
     depth: Gap = 0.0
     land: Gap = 0.0
     diameter: Gap = 0.0
+    runner_diameter: Gap = 0.0
+    runner_length: Gap = 0.0
+    sprue_foot: Gap = 0.0
     feature: _Feature = None
 
 
@@ -203,8 +208,10 @@ class _File(Section):
             blocks=AcceptedBlocks(**self.blocks.model_dump()),
             gate=AcceptedGate(**{**gate, "kind": GateKind(self.gate.kind), "feature": self.gate.feature}),
             stroke=self.ejection.stroke,
-            ejector_pins=tuple(AcceptedPin(p.name, p.at, p.diameter, p.length, p.feature) for p in self.ejection.pins),
-            core_pins=tuple(AcceptedCore(c.name, c.at, c.diameter, c.feature) for c in self.core_pins),
+            ejector_pins=tuple(
+                AcceptedPin(p.name, p.at, p.diameter, p.length, p.feature, p.fit_end) for p in self.ejection.pins
+            ),
+            core_pins=tuple(AcceptedCore(c.name, c.at, c.diameter, c.feature, c.fit_end) for c in self.core_pins),
             cores_in_block=tuple(AcceptedCore(c.name, c.at, 0.0, c.feature) for c in self.cores_in_block),
             side_actions=tuple(AcceptedSide(s.name, SideKind(s.kind), s.direction) for s in self.side_actions),
         )

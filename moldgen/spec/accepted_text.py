@@ -6,8 +6,8 @@ from collections.abc import Iterable, Iterator, Mapping
 from typing import Any, Final
 
 from moldgen.canon import to_json
-from moldgen.model.accepted import FORMAT, Accepted, AcceptedCore, AcceptedSide
-from moldgen.model.face_sign import AXIS_DIGITS, DIGITS, FaceSign
+from moldgen.model.accepted import FORMAT, PLACE_DIGITS, Accepted, AcceptedCore, AcceptedSide
+from moldgen.model.face_sign import AXIS_DIGITS, FaceSign
 from moldgen.model.layout import GateKind
 
 HEAD: Final = """\
@@ -15,7 +15,12 @@ HEAD: Final = """\
 # The next build keeps what is here wherever the changed part allows it, and says what it moved or dropped and why.
 # You may edit it, delete items or the whole file; `moldgen build --fresh` ignores it. What the spec gives comes first.
 # `feature` is how the face that an item belongs to is found again: the item follows it. Without one it stays.
+# `fit_end` is the height along the pull at which a pin's fit ends and its bore widens.
 """
+
+
+FEED: Final = ("runner_diameter", "runner_length", "sprue_foot")
+"""What is written of the feed of an edge gate."""
 
 
 def accepted_text(accepted: Accepted) -> str:
@@ -47,6 +52,7 @@ def _lines(accepted: Accepted) -> Iterator[str]:
                 "name": _text(p.name),
                 "at": _point(p.at),
                 **_numbers(p, "diameter length"),
+                **_fit_end(p.fit_end),
                 **_feature(p.feature),
             }
             for p in accepted.ejector_pins
@@ -54,6 +60,7 @@ def _lines(accepted: Accepted) -> Iterator[str]:
     )
     gate = accepted.gate
     sizes = "width depth land" if gate.kind is GateKind.EDGE else "diameter land"
+    sizes += "".join(f" {key}" for key in FEED if getattr(gate, key) > 0.0)
     yield "gate:"
     yield from _fields(
         2, {"kind": gate.kind.value, "at": _point(gate.at), **_numbers(gate, sizes), **_feature(gate.feature)}
@@ -66,7 +73,11 @@ def _side(side: AcceptedSide) -> dict[str, str]:
 
 def _core(core: AcceptedCore) -> dict[str, str]:
     size = {"diameter": _number(core.diameter)} if core.diameter > 0.0 else {}
-    return {"name": _text(core.name), "at": _point(core.at), **size, **_feature(core.feature)}
+    return {"name": _text(core.name), "at": _point(core.at), **size, **_fit_end(core.fit_end), **_feature(core.feature)}
+
+
+def _fit_end(height: float | None) -> dict[str, str]:
+    return {} if height is None else {"fit_end": _number(height)}
 
 
 def _list(key: str, indent: int, items: Iterable[Mapping[str, str]]) -> Iterator[str]:
@@ -111,7 +122,7 @@ def _direction(values: Iterable[float]) -> str:
     return "[" + ", ".join(_number(v, AXIS_DIGITS) for v in values) + "]"
 
 
-def _number(value: float, digits: int = DIGITS) -> str:
+def _number(value: float, digits: int = PLACE_DIGITS) -> str:
     """Return a number without an exponent, without trailing zeros and without a minus zero."""
     text = f"{round(value, digits) + 0.0:.{digits}f}".rstrip("0").rstrip(".")
     return "0" if text == "-0" else text

@@ -37,10 +37,10 @@ LAYOUT = Accepted(
     fixed_point=(1.0, 2.0, 3.0),
     parting_height=-4.5,
     blocks=AcceptedBlocks((0.5, 0.0, -4.5), 100.0, 80.0, 36.0, 46.0),
-    gate=AcceptedGate(GateKind.EDGE, (1.0, 2.0, 3.0), 3.0, 1.0, 0.75, 0.0, FLOOR),
+    gate=AcceptedGate(GateKind.EDGE, (1.0, 2.0, 3.0), 3.0, 1.0, 0.75, 0.0, FLOOR, 4.5, 12.0, 5.123456789),
     stroke=25.0,
-    ejector_pins=(AcceptedPin("ejector pin 1", (1.0, 2.0, 0.1), 3.0, 100.0, FLOOR),),
-    core_pins=(AcceptedCore("core pin 1", (1.0, 2.0, 3.0), 4.0),),
+    ejector_pins=(AcceptedPin("ejector pin 1", (1.0, 2.0, 0.1), 3.0, 100.0, FLOOR, -9.876543211),),
+    core_pins=(AcceptedCore("core pin 1", (1.0, 2.0, 3.0), 4.0, None, 0.0),),
     cores_in_block=(AcceptedCore("round core", (7.0, 2.0, 3.0), 0.0),),
     side_actions=(AcceptedSide("slide 1", SideKind.SLIDE, (1.0, 0.0, 0.0)),),
 )
@@ -55,13 +55,28 @@ def test_what_is_written_is_read_back(tmp_path: Path) -> None:
     assert read(tmp_path, accepted_text(LAYOUT)) == LAYOUT
 
 
-def test_lengths_have_six_decimals_and_no_exponent(tmp_path: Path) -> None:
-    text = accepted_text(replace(LAYOUT, stroke=1e-7 + 20.0, fixed_point=(-1e-9, 1.23456789, 2e-5)))
-    assert "fixed_point: [0, 1.234568, 0.00002]\n" in text
+def test_lengths_have_nine_decimals_and_no_exponent(tmp_path: Path) -> None:
+    text = accepted_text(replace(LAYOUT, stroke=1e-10 + 20.0, fixed_point=(-1e-10, 1.23456789012, 2e-5)))
+    assert "fixed_point: [0, 1.23456789, 0.00002]\n" in text
     assert "stroke: 20\n" in text
     again = read(tmp_path, text)
     assert again is not None
     assert accepted_text(again) == text
+
+
+def test_a_file_of_before_without_fits_and_feed_is_read(tmp_path: Path) -> None:
+    text = accepted_text(LAYOUT)
+    kept = [line for line in text.splitlines(keepends=True) if not line.lstrip().startswith(NEW_KEYS)]
+    assert len(text.splitlines()) - len(kept) == 5
+    found = read(tmp_path, "".join(kept))
+    assert found is not None
+    assert [p.fit_end for p in (*found.ejector_pins, *found.core_pins)] == [None, None]
+    gate = found.gate
+    assert (gate.runner_diameter, gate.runner_length, gate.sprue_foot) == (0.0, 0.0, 0.0)
+    assert replace(gate, runner_diameter=4.5, runner_length=12.0, sprue_foot=5.123456789) == LAYOUT.gate
+
+
+NEW_KEYS = ("fit_end:", "runner_diameter:", "runner_length:", "sprue_foot:")
 
 
 def test_without_a_file_there_is_no_layout(tmp_path: Path) -> None:
@@ -72,6 +87,8 @@ def test_without_a_file_there_is_no_layout(tmp_path: Path) -> None:
     ("old", "new", "place", "words"),
     [
         ("diameter: 3\n", "diameter: -3\n", "ejection.pins[0].diameter", "more than 0"),
+        ("fit_end: -9.876543211", "fit_end: deep", "ejection.pins[0].fit_end", "is not a length"),
+        ("sprue_foot: 5.123456789", "sprue_foot: -1", "gate.sprue_foot", "0"),
         ("stroke: 25", "strokes: 25", "strokes", "did you mean `stroke`?"),
         ("accepted: 1", "accepted: 2", "accepted", "2 is not one of 1"),
         ('{kind: "plane"', '{kind: "plain"', "ejection.pins[0].feature", "SurfaceKind"),
