@@ -96,9 +96,9 @@ def build_along(reviewed: Reviewed, stages: Stages) -> Built:
     """
     spec, tell = reviewed.loaded.spec, stages.tell
     shaped: Made[Shaped] = stages.make(
-        "part the mold",
+        "form the halves",
         {**key_values(spec, FORM_KEYS), **_given(reviewed), "accepted block": block_of(reviewed.accepted)},
-        lambda: _shaped(_narrow(reviewed, FORM_KEYS), tell),
+        lambda: _shaped(_narrow(reviewed, FORM_KEYS), stages),
     )
     layout, more = stages.make(
         "lay out pins and gate",
@@ -129,18 +129,18 @@ def _narrow(reviewed: Reviewed, keys: tuple[str, ...]) -> Reviewed:
     return replace(reviewed, loaded=narrowed(reviewed.loaded, keys), notes=Notes())
 
 
-def _shaped(reviewed: Reviewed, tell: Tell) -> Shaped:
-    formed, notes = part_mold(reviewed, tell)
+def _shaped(reviewed: Reviewed, stages: Stages) -> Shaped:
+    formed, notes = part_mold(reviewed, stages)
     section = reviewed.loaded.spec.ejection
     try:
-        sides, side_layout, more = make_sides(formed, reviewed.resin, section, tell)
+        sides, side_layout, more = make_sides(formed, reviewed.resin, section, stages.tell)
     except PartError as error:
         if all(is_level(d.front) or d.front.kind is SideKind.LIFTER for d in formed.driven):
             raise
         # a slide that leaves at an angle finds no way out of the block: what it was to form is left to other means
-        formed, notes = part_mold(reviewed, tell, inclined=False)
+        formed, notes = part_mold(reviewed, stages, inclined=False)
         notes += Notes(decisions=(Decision("side actions", "none that leave at an angle", error.what, error.where),))
-        sides, side_layout, more = make_sides(formed, reviewed.resin, section, tell)
+        sides, side_layout, more = make_sides(formed, reviewed.resin, section, stages.tell)
     return Shaped(sides, side_layout, notes + more)
 
 

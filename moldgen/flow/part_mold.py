@@ -15,7 +15,7 @@ from moldgen.flow.prepare import Prepared, prepared_body
 from moldgen.flow.review import Reviewed, refuse_undercuts, undercut_error
 from moldgen.flow.side_plan import plan_sides, turned_back
 from moldgen.flow.side_steel import Formed, with_room
-from moldgen.flow.tell import Tell
+from moldgen.flow.stages import Stages
 from moldgen.flow.words import direction_text, point_text
 from moldgen.kernel.body import Body
 from moldgen.kernel.meshsolid import mesh_solid
@@ -47,7 +47,7 @@ _REMEDY = "fill these places in the part, change them so that they taper along t
 Corners = tuple[np.ndarray, np.ndarray]
 
 
-def part_mold(reviewed: Reviewed, tell: Tell, *, inclined: bool = True) -> tuple[Formed, Notes]:
+def part_mold(reviewed: Reviewed, stages: Stages, *, inclined: bool = True) -> tuple[Formed, Notes]:
     """Return the halves, with the forming steel of side actions where the part needs any.
 
     inclined : whether slides may leave at an angle to the parting plane
@@ -58,60 +58,60 @@ def part_mold(reviewed: Reviewed, tell: Tell, *, inclined: bool = True) -> tuple
     """
     prepared, how = reviewed.prepared, reviewed.loaded.spec.parting.undercuts
     if not prepared.trapped.pieces:
-        return _plain(reviewed, prepared, tell)
+        return _plain(reviewed, prepared, stages)
     if how == "fill":
-        with tell.stage("fill the undercuts") as stage:
+        with stages.tell.stage("fill the undercuts") as stage:
             filled, notes = _filled(reviewed, prepared, prepared.trapped.pieces)
             stage.detail = f"{len(prepared.trapped.pieces)} places"
-        made, more = _plain(reviewed, filled, tell)
+        made, more = _plain(reviewed, filled, stages)
         return made, notes + more
     if how == "refuse":
         refuse_undercuts(reviewed)
     if prepared.trapped.undercuts or reviewed.loaded.spec.side_actions.given or how == "release_or_fill":
-        return _released(reviewed, prepared, tell, inclined)
-    return _plain(reviewed, prepared, tell)
+        return _released(reviewed, prepared, stages, inclined)
+    return _plain(reviewed, prepared, stages)
 
 
-def _plain(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Formed, Notes]:
-    parted, notes = _straight(reviewed, prepared, tell)
+def _plain(reviewed: Reviewed, prepared: Prepared, stages: Stages) -> tuple[Formed, Notes]:
+    parted, notes = _straight(reviewed, prepared, stages)
     return Formed(parted), notes
 
 
-def _released(reviewed: Reviewed, prepared: Prepared, tell: Tell, inclined: bool) -> tuple[Formed, Notes]:
+def _released(reviewed: Reviewed, prepared: Prepared, stages: Stages, inclined: bool) -> tuple[Formed, Notes]:
     """Return halves and side actions; what no side action releases is filled if the spec allows it."""
     notes, fills = Notes(), reviewed.loaded.spec.parting.undercuts == "release_or_fill"
     if fills and prepared.trapped.rubs:
-        prepared, notes = _with_rubs_filled(reviewed, prepared, tell)
+        prepared, notes = _with_rubs_filled(reviewed, prepared, stages)
     if not prepared.trapped.undercuts and not reviewed.loaded.spec.side_actions.given:
-        made, also = _plain(reviewed, prepared, tell)
+        made, also = _plain(reviewed, prepared, stages)
         return made, notes + also
-    plan, more = _planned(reviewed, prepared, tell, inclined)
+    plan, more = _planned(reviewed, prepared, stages, inclined)
     if plan.left and fills:
         pieces = tuple(prepared.trapped.pieces[u.piece] for u in plan.left if u.piece >= 0)
-        with tell.stage("fill what no side action releases") as stage:
+        with stages.tell.stage("fill what no side action releases") as stage:
             prepared, also = _filled(reviewed, prepared, pieces)
             notes += also
             stage.detail = f"{len(pieces)} places"
         if not prepared.trapped.undercuts:
-            made, also = _plain(reviewed, prepared, tell)
+            made, also = _plain(reviewed, prepared, stages)
             return made, notes + also
-        plan, more = _planned(reviewed, prepared, tell, inclined)
+        plan, more = _planned(reviewed, prepared, stages, inclined)
     if plan.left:
         raise _unreleased(reviewed, plan)
-    made, also = _with_sides(reviewed, prepared, plan, tell)
+    made, also = _with_sides(reviewed, prepared, plan, stages)
     return made, notes + more + also
 
 
-def _planned(reviewed: Reviewed, prepared: Prepared, tell: Tell, inclined: bool) -> tuple[SidePlan, Notes]:
-    with tell.stage("plan the side actions") as stage:
+def _planned(reviewed: Reviewed, prepared: Prepared, stages: Stages, inclined: bool) -> tuple[SidePlan, Notes]:
+    with stages.tell.stage("plan the side actions") as stage:
         plan, notes = plan_sides(reviewed, prepared, inclined=inclined)
         stage.detail = _counted(plan)
     return plan, notes
 
 
-def _with_rubs_filled(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Prepared, Notes]:
+def _with_rubs_filled(reviewed: Reviewed, prepared: Prepared, stages: Stages) -> tuple[Prepared, Notes]:
     """Return the part with its rubs filled, as it is where that cannot be done."""
-    with tell.stage("fill what rubs") as stage:
+    with stages.tell.stage("fill what rubs") as stage:
         try:
             filled, notes = _filled(reviewed, prepared, prepared.trapped.rubs)
         except PartError as error:
@@ -141,7 +141,7 @@ def _unreleased(reviewed: Reviewed, plan: SidePlan) -> PartError:
     return undercut_error(reviewed, remedy, "no side action releases:\n      " + "\n      ".join(left))
 
 
-def _with_sides(reviewed: Reviewed, prepared: Prepared, plan: SidePlan, tell: Tell) -> tuple[Formed, Notes]:
+def _with_sides(reviewed: Reviewed, prepared: Prepared, plan: SidePlan, stages: Stages) -> tuple[Formed, Notes]:
     refused: list[str] = []
     found = filled_candidates(prepared.body, prepared.kinds, prepared.trapped, plan.fronts, reviewed.frame)
     for filled in found:
@@ -153,7 +153,7 @@ def _with_sides(reviewed: Reviewed, prepared: Prepared, plan: SidePlan, tell: Te
             if whole.trapped.undercuts:
                 refused.append(f"{filled.rung}: {len(whole.trapped.undercuts)} places stay trapped")
                 continue
-            made, notes = _formed(reviewed, whole, prepared.body, plan, tell)
+            made, notes = _formed(reviewed, whole, prepared.body, plan, stages)
         except MoldgenError as error:
             if isinstance(error, SpecError):
                 raise
@@ -167,7 +167,7 @@ def _with_sides(reviewed: Reviewed, prepared: Prepared, plan: SidePlan, tell: Te
     )
 
 
-def _formed(reviewed: Reviewed, filled: Prepared, part: Body, plan: SidePlan, tell: Tell) -> tuple[Formed, Notes]:
+def _formed(reviewed: Reviewed, filled: Prepared, part: Body, plan: SidePlan, stages: Stages) -> tuple[Formed, Notes]:
     """Return the halves of the filled part without the fronts; the block grows where slides need room.
 
     What room they need depends on the height of the parting plane, which is known only after parting: the lower end of
@@ -182,22 +182,22 @@ def _formed(reviewed: Reviewed, filled: Prepared, part: Body, plan: SidePlan, te
         return with_room(corners, level, driven, SideTask(part, level, reviewed.resin), section)
 
     def sized(level: float) -> tuple[Corners, Notes]:
-        corners, notes = _blocks(reviewed, filled, section, level, tell, accepted=False)
+        corners, notes = _blocks(reviewed, filled, section, level, stages, accepted=False)
         wide, kept = room(corners, level), accepted_block(reviewed)
         if kept is None or found_again(block_between(*wide), kept):
             return wide, notes
-        corners, notes = _blocks(reviewed, filled, section, level, tell)
+        corners, notes = _blocks(reviewed, filled, section, level, stages)
         return room(corners, level), notes
 
     wide, notes = sized(guess)
-    parted = _parted(reviewed, filled, wide, given, tell)
-    parted, more = at_accepted_level(reviewed, parted, lambda z: _parted(reviewed, filled, wide, z, tell))
+    parted = _parted(reviewed, filled, wide, given, stages)
+    parted, more = at_accepted_level(reviewed, parted, lambda z: _parted(reviewed, filled, wide, z, stages))
     if abs(parted.level - guess) > ON_PLANE:
         wide, notes = sized(parted.level)
-        parted = _parted(reviewed, filled, wide, parted.level, tell)
+        parted = _parted(reviewed, filled, wide, parted.level, stages)
     notes += more
     halves = _halves(parted, reviewed.frame, *wide)
-    with tell.stage("form the side actions") as stage:
+    with stages.tell.stage("form the side actions") as stage:
         formed, more = _cut(halves, filled.body, part, plan.fronts)
         stage.detail = f"{len(formed.halves.sides)} side actions"
     return formed, notes + more + told(parted, reviewed.frame)
@@ -240,7 +240,7 @@ def _given_level(reviewed: Reviewed, prepared: Prepared) -> float | None:
     return None if height is None else _mold_level(reviewed, height, prepared.body)
 
 
-def _straight(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Halves, Notes]:
+def _straight(reviewed: Reviewed, prepared: Prepared, stages: Stages) -> tuple[Halves, Notes]:
     """Return the halves of a part that leaves by a straight pull."""
     spec, level = reviewed.loaded.spec, _given_level(reviewed, prepared)
     fixed = spec.blocks.cavity_height is not None or spec.blocks.core_height is not None
@@ -248,19 +248,25 @@ def _straight(reviewed: Reviewed, prepared: Prepared, tell: Tell) -> tuple[Halve
     section = spec.blocks
     if fixed and level is None:
         section = section.model_copy(update={"cavity_height": None, "core_height": None})
-    corners, more = _blocks(reviewed, prepared, section, level, tell)
-    parted = _parted(reviewed, prepared, corners, level, tell)
-    parted, also = at_accepted_level(reviewed, parted, lambda z: _parted(reviewed, prepared, corners, z, tell))
+    corners, more = _blocks(reviewed, prepared, section, level, stages)
+    parted = _parted(reviewed, prepared, corners, level, stages)
+    parted, also = at_accepted_level(reviewed, parted, lambda z: _parted(reviewed, prepared, corners, z, stages))
     if fixed and abs(parted.level - (np.inf if level is None else level)) > ON_PLANE:
-        corners, more = _blocks(reviewed, prepared, spec.blocks, parted.level, tell)
-        parted = _parted(reviewed, prepared, corners, parted.level, tell)
+        corners, more = _blocks(reviewed, prepared, spec.blocks, parted.level, stages)
+        parted = _parted(reviewed, prepared, corners, parted.level, stages)
     return _halves(parted, reviewed.frame, *corners), more + also + told(parted, reviewed.frame)
 
 
 def _blocks(
-    reviewed: Reviewed, prepared: Prepared, section: Blocks, level: float | None, tell: Tell, *, accepted: bool = True
+    reviewed: Reviewed,
+    prepared: Prepared,
+    section: Blocks,
+    level: float | None,
+    stages: Stages,
+    *,
+    accepted: bool = True,
 ) -> tuple[Corners, Notes]:
-    with tell.stage("size the blocks") as stage:
+    with stages.tell.stage("size the blocks") as stage:
         kept = accepted_block(reviewed) if accepted else None
         blocks, notes = size_blocks(prepared.body, reviewed.resin, section, level, kept)
         low, high = np.asarray(blocks.low), np.asarray(blocks.high)
@@ -268,8 +274,22 @@ def _blocks(
     return (low, high), notes
 
 
-def _parted(reviewed: Reviewed, prepared: Prepared, corners: Corners, level: float | None, tell: Tell) -> Parted:
-    with tell.stage("part the mold") as stage:
+def _parted(reviewed: Reviewed, prepared: Prepared, corners: Corners, level: float | None, stages: Stages) -> Parted:
+    """Return the parted mold; of the part as it was prepared this is a stage, since little else bears on it."""
+    if prepared is not reviewed.prepared:
+        return _parted_now(reviewed, prepared, corners, level, stages)
+    avoid = [point.tolist() for point in marked_points(reviewed, "no_parting_line")]
+    return stages.make(
+        "part the mold",
+        {"prepared part": reviewed.made, "block": [c.tolist() for c in corners], "level": level, "kept clear": avoid},
+        lambda: _parted_now(reviewed, prepared, corners, level, stages),
+    ).value
+
+
+def _parted_now(
+    reviewed: Reviewed, prepared: Prepared, corners: Corners, level: float | None, stages: Stages
+) -> Parted:
+    with stages.tell.stage("part the mold") as stage:
         avoid = marked_points(reviewed, "no_parting_line")
         part = prepared.trapped.part
         try:

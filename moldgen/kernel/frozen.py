@@ -10,14 +10,36 @@ from __future__ import annotations
 import io
 import pickle
 import struct
+from collections.abc import Callable
 from typing import Any
 
 from OCP.BinTools import BinTools
-from OCP.TopoDS import TopoDS_Shape
+from OCP.TopoDS import (
+    TopoDS,
+    TopoDS_Compound,
+    TopoDS_Edge,
+    TopoDS_Face,
+    TopoDS_Shape,
+    TopoDS_Shell,
+    TopoDS_Solid,
+    TopoDS_Vertex,
+    TopoDS_Wire,
+)
 
 from moldgen.kernel.topology import compound_of, parts_of
 
 _HEAD = struct.Struct(">Q")
+
+_AS_KIND: dict[type[TopoDS_Shape], Callable[[TopoDS_Shape], TopoDS_Shape]] = {
+    TopoDS_Compound: TopoDS.Compound_s,
+    TopoDS_Edge: TopoDS.Edge_s,
+    TopoDS_Face: TopoDS.Face_s,
+    TopoDS_Shell: TopoDS.Shell_s,
+    TopoDS_Solid: TopoDS.Solid_s,
+    TopoDS_Vertex: TopoDS.Vertex_s,
+    TopoDS_Wire: TopoDS.Wire_s,
+}
+"""The kernel tells an edge from a face by what is in it, Python by the type of the object that holds it."""
 
 
 def freeze(value: Any) -> bytes:
@@ -51,12 +73,12 @@ class _Writer(pickle.Pickler):
         super().__init__(stream, protocol=5)
         self.shapes: list[TopoDS_Shape] = []
 
-    def persistent_id(self, value: Any) -> int | None:
-        """Return the number of a shape, None for anything else."""
+    def persistent_id(self, value: Any) -> tuple[int, type[TopoDS_Shape] | None] | None:
+        """Return the number of a shape and the type that holds it, None for anything else."""
         if not isinstance(value, TopoDS_Shape):
             return None
         self.shapes.append(value)
-        return len(self.shapes) - 1
+        return len(self.shapes) - 1, type(value) if type(value) in _AS_KIND else None
 
 
 class _Reader(pickle.Unpickler):
@@ -64,6 +86,7 @@ class _Reader(pickle.Unpickler):
         super().__init__(stream)
         self._shapes = shapes
 
-    def persistent_load(self, number: Any) -> TopoDS_Shape:
-        """Return the shape of a number."""
-        return self._shapes[number]
+    def persistent_load(self, told: Any) -> TopoDS_Shape:
+        """Return the shape of a number, held as it was."""
+        number, kind = told
+        return self._shapes[number] if kind is None else _AS_KIND[kind](self._shapes[number])

@@ -192,24 +192,42 @@ def rebuilt(text: str, tmp_path: Path) -> tuple[dict[str, bytes], dict[str, byte
     place = tmp_path / "store"
     place.mkdir(mode=0o700)
     store = Store(place, GIB)
-    built(CUP, tmp_path / "first", store)
+    built(BASE, tmp_path / "first", store)
     kept, stages = built(text, tmp_path / "kept", store)
     alone, _ = built(text, tmp_path / "alone", Forgetful())
     return kept, alone, {run.name for run in stages.runs if not run.kept}
 
 
-LAID_OUT = {"lay out pins and gate", "cut the steel", "export", "prove the tool"}
+BASE = CUP + "shrink: 0.6\n"
+"""The cup with a shrink of its own, so that another resin leaves its size."""
+
+LAID_OUT = {
+    "lay out pins and gate",
+    "cut the steel",
+    "look for dimensions to be tuned",
+    "export",
+    "prove the tool",
+}
 
 CHANGES = {
-    "comment": ("# looked at\n" + CUP, set()),
-    "pin": (CUP + "ejection: {diameter: 3}\n", LAID_OUT),
-    "gate": (CUP + "gate: {kind: edge, width: 2.5}\n", LAID_OUT),
-    "material": (CUP + "blocks: {core_material: '1.2343'}\n", {"part the mold", *LAID_OUT} - {"prove the tool"}),
-    "draft": (CUP + "draft: {minimum: 1.5 deg}\n", {"review the draft"}),
-    "ap": (CUP + "output: {step: ap214}\n", {"export", "prove the tool"}),
+    "comment": ("# looked at\n" + BASE, set()),
+    "pin": (BASE + "ejection: {diameter: 3}\n", LAID_OUT),
+    "gate": (BASE + "gate: {kind: edge, width: 2.5}\n", LAID_OUT),
+    "material": (BASE + "blocks: {core_material: '1.2343'}\n", {"form the halves", *LAID_OUT} - {"prove the tool"}),
+    "resin": (BASE.replace("ABS", "PC"), {"review the draft", "form the halves", *LAID_OUT}),
+    "draft": (BASE + "draft: {minimum: 1.5 deg}\n", {"review the draft"}),
+    "ap": (BASE + "output: {step: ap214}\n", {"export", "prove the tool"}),
     "post": (
-        re.sub("at: .8, 4.", "at: [6, 4]", CUP),
-        {"read the part", "choose the pull", "prepare the part", "review the draft", "part the mold", *LAID_OUT},
+        re.sub("at: .8, 4.", "at: [6, 4]", BASE),
+        {
+            "read the part",
+            "choose the pull",
+            "prepare the part",
+            "review the draft",
+            "form the halves",
+            "part the mold",
+            *LAID_OUT,
+        },
     ),
 }
 """Changes of the cup, and the stages that must run for each."""

@@ -27,7 +27,7 @@ from moldgen.errors import KernelError, StageError
 from moldgen.kernel.measure import bounding_box, volume
 from moldgen.kernel.mesh import surface_mesh, tessellate
 from moldgen.kernel.step_read import read_step
-from moldgen.kernel.step_write import Looks, StepExport, step_text, write_assembly, write_component
+from moldgen.kernel.step_write import Looks, StepExport, step_text, without_noise, write_assembly, write_component
 from moldgen.kernel.topology import compound_of, faces_of, only_solid
 from moldgen.model.tool import Component, Motion, Role
 
@@ -201,7 +201,7 @@ import sys
 from pathlib import Path
 sys.path.insert(0, {tests!r})
 from test_step_write import LOOKS, components
-from moldgen.kernel.step_write import StepExport
+from moldgen.kernel.step_write import StepExport, without_noise
 for turn in range(2):  # the kernel counts on within a process: the second export must not differ either
     export = StepExport(components(), LOOKS)
     folder = Path({folder!r}) / str(turn)
@@ -279,3 +279,9 @@ def test_a_folder_that_is_not_there_is_an_os_error(tmp_path):
 def test_nothing_is_printed(tmp_path, capfd):
     StepExport(components(), LOOKS).write_assembly(tmp_path / "tool.step")
     assert capfd.readouterr() == ("", "")
+
+
+def test_numbers_that_are_noise_are_written_as_zero() -> None:
+    text = b"#1=CARTESIAN_POINT('',(1.972E-31,-8.88E-16,3.));#2=X(LENGTH_MEASURE(1.E-07),'(1.E-20 mm)',2.5E-12);"
+    clean = b"#1=CARTESIAN_POINT('',(0.,0.,3.));#2=X(LENGTH_MEASURE(1.E-07),'(1.E-20 mm)',2.5E-12);"
+    assert without_noise(text) == clean
