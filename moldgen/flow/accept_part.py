@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from dataclasses import replace
 from pathlib import Path
-from typing import Any
+from typing import Any, TypeVar
 
 import numpy as np
 
@@ -94,8 +94,8 @@ def _accepted(record: dict[str, Any], places: _Places, name: str, sha256: str) -
     level = float(parting["level_mm"])
     low, high = (_finite(corner, 3) for corner in parting["block_mm"])
     middle = ((low[0] + high[0]) / 2, (low[1] + high[1]) / 2, level)
-    own = [p for p in layout["ejector_pins"] if p["chosen_by"] != Chooser.GIVEN.value]
-    pins = (c for c in layout["core_pins"] if c["chosen_by"] != Chooser.GIVEN.value)
+    pins, given = _by_spec([_pin(p, places) for p in layout["ejector_pins"]], layout["ejector_pins"])
+    cores, given_cores = _by_spec([_core_pin(c, places) for c in layout["core_pins"]], layout["core_pins"])
     x, y, z = places.pull
     return Accepted(
         name=name,
@@ -106,11 +106,23 @@ def _accepted(record: dict[str, Any], places: _Places, name: str, sha256: str) -
         blocks=AcceptedBlocks(places.part(middle), high[0] - low[0], high[1] - low[1], high[2] - level, level - low[2]),
         gate=_gate(layout["gate"], places),
         stroke=float(layout["stroke_mm"]),
-        ejector_pins=tuple(_pin(p, places) for p in own),
-        core_pins=tuple(_core_pin(c, places) for c in pins),
+        ejector_pins=pins,
+        core_pins=cores,
         cores_in_block=tuple(_core("round core", at, 0.0, places) for at in layout["cores_in_block"]),
         side_actions=tuple(_sides(record, places)),
+        given_pins=tuple(replace(p, feature=None) for p in given),
+        given_cores=tuple(replace(c, feature=None) for c in given_cores),
     )
+
+
+_Item = TypeVar("_Item")
+
+
+def _by_spec(items: list[_Item], told: list[dict[str, Any]]) -> tuple[tuple[_Item, ...], tuple[_Item, ...]]:
+    """Return what moldgen chose, and what the spec gives."""
+    given = [t["chosen_by"] == Chooser.GIVEN.value for t in told]
+    own = (item for item, is_given in zip(items, given, strict=True) if not is_given)
+    return tuple(own), tuple(item for item, is_given in zip(items, given, strict=True) if is_given)
 
 
 def _pin(pin: dict[str, Any], places: _Places) -> AcceptedPin:

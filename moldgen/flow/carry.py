@@ -54,6 +54,8 @@ def kept_layout(reviewed: Reviewed) -> tuple[Kept | None, Notes]:
         ejector_pins=tuple(_item(p, accepted, frame, find) for p in accepted.ejector_pins),
         core_pins=tuple(_item(c, accepted, frame, find) for c in accepted.core_pins),
         cores_in_block=tuple(_item(c, accepted, frame, find) for c in accepted.cores_in_block),
+        given_pins=tuple(_item(p, accepted, frame, _stays) for p in accepted.given_pins),
+        given_cores=tuple(_item(c, accepted, frame, _stays) for c in accepted.given_cores),
         gate=_gate(accepted, frame, find),
         stroke=accepted.stroke,
         same_part=same,

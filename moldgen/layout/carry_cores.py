@@ -28,11 +28,15 @@ class Bore:
 
 @dataclass(frozen=True)
 class KeptCores:
-    """Round cores of an accepted layout: those that are pins, those in the block, and the bores of kept ejectors."""
+    """Round cores of an accepted layout: those that are pins, those in the block, and the bores of kept ejectors.
+
+    given : holes of pins that the spec gives
+    """
 
     pins: tuple[KeptItem, ...] = ()
     in_block: tuple[KeptItem, ...] = ()
     ejectors: tuple[Bore, ...] = ()
+    given: tuple[KeptItem, ...] = ()
 
 
 @dataclass(frozen=True)

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import math
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from typing import Final
 
@@ -67,6 +68,11 @@ def end_of(item: KeptItem, diameter: float, off: float) -> float | None:
     """
     same = off <= SAME_HOLE and max(map(abs, item.shift)) == 0.0 and abs(diameter - item.diameter) <= SNAP
     return item.fit_end if same else None
+
+
+def hole_of(x: float, y: float, cut: Iterable[KeptItem]) -> KeptItem | None:
+    """Return the accepted pin whose hole is at a place [mm], None if there is none."""
+    return next((item for item in cut if math.hypot(item.at[0] - x, item.at[1] - y) <= SAME_HOLE), None)
 
 
 def fits_told(pins: Sequence[tuple[str, Point, Fit]]) -> Notes:

@@ -11,7 +11,7 @@ import numpy as np
 from moldgen.catalog import Pin, Resin, core_pin_blank
 from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.layout.carry_cores import KeptCores, gap, in_the_way, match_cores, resized
-from moldgen.layout.carry_fits import Fit, end_of, fits_told, keep_fit, shortest_kept
+from moldgen.layout.carry_fits import Fit, end_of, fits_told, hole_of, keep_fit, shortest_kept
 from moldgen.layout.core_pin_checks import check_strength
 from moldgen.layout.keep_out import STEEL
 from moldgen.layout.kept import KeptItem, Reason, dropped, free_name
@@ -86,7 +86,8 @@ def find_core_pins(
     match, more = match_cores(view, cores, kept or KeptCores())
     notes += more
     stay, auto = match.pins, section.pick == "auto"
-    seats = [_kept_seat(view, core, stay.get(i)) for i, core in enumerate(cores)]
+    cut = {i: hole_of(cores[i].x, cores[i].y, kept.given if kept else ()) for i in wanted}
+    seats = [_kept_seat(view, core, cut.get(i) or stay.get(i)) for i, core in enumerate(cores)]
     use = [
         i for i, c in enumerate(cores) if i in wanted or i in stay or (auto and _pays(c) and i not in match.in_block)
     ]
@@ -109,7 +110,7 @@ def find_core_pins(
         chooser = Chooser.GIVEN if i in wanted else Chooser.KEPT if item else Chooser.MOLDGEN
         pins.append(_pin(seat, item.name if item else free_name("core pin", names), chooser))
         notes += check_strength(view, seat.core, pins[-1], resin)
-        notes += _as_kept(view, seat, item, pins[-1]) if item else Notes()
+        notes += _as_kept(view, seat, item, pins[-1])
     if pins or refused:
         why = "round cores up to 16 mm or longer than 1.5 diameters, not shallow (common practice)"
         notes += Notes(
@@ -131,10 +132,11 @@ def _left(view: PartView, seat: _Seat, item: KeptItem | None, kept: KeptCores | 
     return (f"core at {place[0]:g}, {place[1]:g}: {text}" if text else ""), told
 
 
-def _as_kept(view: PartView, seat: _Seat, item: KeptItem, pin: CorePinLayout) -> Notes:
-    """Return what of an accepted pin does not stay as it was."""
+def _as_kept(view: PartView, seat: _Seat, item: KeptItem | None, pin: CorePinLayout) -> Notes:
+    """Return what of an accepted pin, None for one of the spec, does not stay as it was."""
     place = view.place((pin.x, pin.y, pin.base_z))
-    return resized(view, seat.core, item, pin.diameter) + fits_told([(pin.name, place, seat.fit)])
+    size = resized(view, seat.core, item, pin.diameter) if item else Notes()
+    return size + fits_told([(pin.name, place, seat.fit)])
 
 
 def _kept_seat(view: PartView, core: RoundCore, item: KeptItem | None) -> _Seat:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Final
 
 import numpy as np
@@ -11,11 +11,11 @@ import numpy as np
 from moldgen.catalog import Resin, ejector_pin_down, ejector_pin_series
 from moldgen.finding import Finding, Notes, Severity
 from moldgen.layout.balance import shares
-from moldgen.layout.carry_fits import fits_told
+from moldgen.layout.carry_fits import fits_told, hole_of
 from moldgen.layout.carry_pins import carry_pins
 from moldgen.layout.ejection_checks import check_balance, check_given, check_stays
 from moldgen.layout.keep_out import STEEL
-from moldgen.layout.kept import REMEDY, Kept, free_name
+from moldgen.layout.kept import REMEDY, Kept, KeptItem, free_name
 from moldgen.layout.pin_kinds import Place, fit_of, of_diameter, stack_up
 from moldgen.layout.pin_search import Task, search_pins, side_steel, size_cap
 from moldgen.layout.sites import Underside
@@ -76,7 +76,7 @@ def place_ejector_pins(
     stroke, more = ejector_stroke(view, section, 0.0 if kept is None else kept.stroke)
     notes += more
     task = Task(view, section, resin, Underside(view, no_pins), core_pins, sticking, stroke, no_pins)
-    fixed, more = _given(task, given or ())
+    fixed, more = _given(task, given or (), () if kept is None else kept.given_pins)
     notes += more
     found: list[Place] = []
     if given is None or section.add:
@@ -139,8 +139,11 @@ def _longer(kept: float, own: float, needed: float) -> Finding:
     )
 
 
-def _given(task: Task, given: tuple[GivenPin, ...]) -> tuple[list[Place], Notes]:
-    """Return the user's pins as far as a pin can be made there at all, with a finding for each rule they break."""
+def _given(task: Task, given: tuple[GivenPin, ...], cut: tuple[KeptItem, ...] = ()) -> tuple[list[Place], Notes]:
+    """Return the user's pins as far as a pin can be made there at all, with a finding for each rule they break.
+
+    cut : pins of the spec in an accepted layout, for their holes
+    """
     kept: list[Place] = []
     notes = Notes()
     for number, pin in enumerate(given, 1):
@@ -148,7 +151,7 @@ def _given(task: Task, given: tuple[GivenPin, ...]) -> tuple[list[Place], Notes]
         diameter = pin.diameter or task.section.diameter or _fitting(task, spot)
         disc = task.under.discs(spot[None], np.array([diameter]))[0]
         kind = of_diameter(diameter, task.section.edge_clearance)
-        place = Place(float(spot[0]), float(spot[1]), kind, disc, Chooser.GIVEN)
+        place = _in_hole(Place(float(spot[0]), float(spot[1]), kind, disc, Chooser.GIVEN), cut)
         notes += check_given(task.under, place, number, kept, task.bores)
         notes += _marked(task.view, place, number, task.no_pins)
         notes += _near_side_action(task, place, number)
@@ -158,6 +161,14 @@ def _given(task: Task, given: tuple[GivenPin, ...]) -> tuple[list[Place], Notes]
         if disc.faces and disc.core_side and not disc.aside:
             kept.append(place)
     return kept, notes
+
+
+def _in_hole(place: Place, cut: tuple[KeptItem, ...]) -> Place:
+    """Return a pin of the spec with the fit and length that it was accepted with at that place."""
+    item = hole_of(place.x, place.y, cut)
+    if item is None or not math.isclose(item.diameter, place.diameter):
+        return place
+    return replace(place, fit_end=item.fit_end, length=item.length)
 
 
 def _near_edge(view: PartView, place: Place, number: int, left: float, limit: float) -> Finding:

@@ -67,6 +67,7 @@ class Kept:
 
     same_part : it was made for this very part: then a layout that moldgen finds again is taken to the last digit
     cores_in_block : round cores that are no pins
+    given_pins, given_cores : pins of the spec, which stand where it places them now: how their holes are cut
     """
 
     ejector_pins: tuple[KeptItem, ...] = ()
@@ -75,6 +76,8 @@ class Kept:
     gate: KeptGate | None = None
     stroke: float = 0.0
     same_part: bool = False
+    given_pins: tuple[KeptItem, ...] = ()
+    given_cores: tuple[KeptItem, ...] = ()
 
 
 @dataclass(frozen=True)

@@ -120,7 +120,7 @@ def _both(
     cores = None
     if kept is not None:
         bores = (Bore(p.at[0], p.at[1], clearance_bore_diameter(p.diameter) / 2, p.name) for p in kept.ejector_pins)
-        cores = KeptCores(kept.core_pins, kept.cores_in_block, tuple(bores))
+        cores = KeptCores(kept.core_pins, kept.cores_in_block, tuple(bores), kept.given_cores)
     core_pins, notes = find_core_pins(view, section, resin, wishes.core_pins_at, cores)
     ejection, more = place_ejector_pins(view, wishes.ejection, resin, core_pins, wishes.pins, wishes.no_pins, kept)
     return core_pins, ejection, notes + more

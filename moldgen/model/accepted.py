@@ -96,6 +96,7 @@ class Accepted:
     part_sha256 : of the part that it was made for
     pull : unit vector; fixed_point : of the shrink; parting_height : part coordinate along the pull
     cores_in_block : round cores that stay in the core block; stroke : travel of the ejectors
+    given_pins, given_cores : pins that the spec places: only what their holes and the pins bought for them are
     """
 
     name: str
@@ -110,3 +111,5 @@ class Accepted:
     core_pins: tuple[AcceptedCore, ...] = ()
     cores_in_block: tuple[AcceptedCore, ...] = ()
     side_actions: tuple[AcceptedSide, ...] = ()
+    given_pins: tuple[AcceptedPin, ...] = ()
+    given_cores: tuple[AcceptedCore, ...] = ()

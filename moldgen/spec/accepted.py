@@ -180,6 +180,15 @@ class _Parting(Section):
 class _Ejection(Section):
     stroke: Length
     pins: tuple[_Pin, ...] = ()
+    given_pins: tuple[_Pin, ...] = ()
+
+
+def _pin(pin: _Pin) -> AcceptedPin:
+    return AcceptedPin(pin.name, pin.at, pin.diameter, pin.length, pin.feature, pin.fit_end)
+
+
+def _core(core: _Core) -> AcceptedCore:
+    return AcceptedCore(core.name, core.at, core.diameter, core.feature, core.fit_end)
 
 
 class _File(Section):
@@ -192,6 +201,7 @@ class _File(Section):
     blocks: _Blocks
     side_actions: tuple[_Side, ...] = ()
     core_pins: tuple[_Core, ...] = ()
+    given_core_pins: tuple[_Core, ...] = ()
     cores_in_block: tuple[_Core, ...] = ()
     ejection: _Ejection
     gate: _Gate
@@ -208,10 +218,10 @@ class _File(Section):
             blocks=AcceptedBlocks(**self.blocks.model_dump()),
             gate=AcceptedGate(**{**gate, "kind": GateKind(self.gate.kind), "feature": self.gate.feature}),
             stroke=self.ejection.stroke,
-            ejector_pins=tuple(
-                AcceptedPin(p.name, p.at, p.diameter, p.length, p.feature, p.fit_end) for p in self.ejection.pins
-            ),
-            core_pins=tuple(AcceptedCore(c.name, c.at, c.diameter, c.feature, c.fit_end) for c in self.core_pins),
+            ejector_pins=tuple(map(_pin, self.ejection.pins)),
+            core_pins=tuple(map(_core, self.core_pins)),
             cores_in_block=tuple(AcceptedCore(c.name, c.at, 0.0, c.feature) for c in self.cores_in_block),
             side_actions=tuple(AcceptedSide(s.name, SideKind(s.kind), s.direction) for s in self.side_actions),
+            given_pins=tuple(map(_pin, self.ejection.given_pins)),
+            given_cores=tuple(map(_core, self.given_core_pins)),
         )

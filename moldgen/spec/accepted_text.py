@@ -6,7 +6,7 @@ from collections.abc import Iterable, Iterator, Mapping
 from typing import Any, Final
 
 from moldgen.canon import to_json
-from moldgen.model.accepted import FORMAT, PLACE_DIGITS, Accepted, AcceptedCore, AcceptedSide
+from moldgen.model.accepted import FORMAT, PLACE_DIGITS, Accepted, AcceptedCore, AcceptedPin, AcceptedSide
 from moldgen.model.face_sign import AXIS_DIGITS, FaceSign
 from moldgen.model.layout import GateKind
 
@@ -16,6 +16,7 @@ HEAD: Final = """\
 # You may edit it, delete items or the whole file; `moldgen build --fresh` ignores it. What the spec gives comes first.
 # `feature` is how the face that an item belongs to is found again: the item follows it. Without one it stays.
 # `fit_end` is the height along the pull at which a pin's fit ends and its bore widens.
+# `given_pins` and `given_core_pins` stand where the spec places them; here is only how their holes are cut.
 """
 
 
@@ -41,23 +42,14 @@ def _lines(accepted: Accepted) -> Iterator[str]:
     yield from _fields(2, {"at": _point(blocks.at), **_numbers(blocks, "length width cavity_height core_height")})
     yield from _list("side_actions", 0, (_side(s) for s in accepted.side_actions))
     yield from _list("core_pins", 0, (_core(c) for c in accepted.core_pins))
+    if accepted.given_cores:
+        yield from _list("given_core_pins", 0, (_core(c) for c in accepted.given_cores))
     yield from _list("cores_in_block", 0, (_core(c) for c in accepted.cores_in_block))
     yield "ejection:"
     yield f"  stroke: {_number(accepted.stroke)}"
-    yield from _list(
-        "pins",
-        2,
-        (
-            {
-                "name": _text(p.name),
-                "at": _point(p.at),
-                **_numbers(p, "diameter length"),
-                **_fit_end(p.fit_end),
-                **_feature(p.feature),
-            }
-            for p in accepted.ejector_pins
-        ),
-    )
+    yield from _list("pins", 2, (_pin(p) for p in accepted.ejector_pins))
+    if accepted.given_pins:
+        yield from _list("given_pins", 2, (_pin(p) for p in accepted.given_pins))
     gate = accepted.gate
     sizes = "width depth land" if gate.kind is GateKind.EDGE else "diameter land"
     sizes += "".join(f" {key}" for key in FEED if getattr(gate, key) > 0.0)
@@ -69,6 +61,11 @@ def _lines(accepted: Accepted) -> Iterator[str]:
 
 def _side(side: AcceptedSide) -> dict[str, str]:
     return {"name": _text(side.name), "kind": side.kind.value, "direction": _direction(side.direction)}
+
+
+def _pin(pin: AcceptedPin) -> dict[str, str]:
+    size = {**_numbers(pin, "diameter length"), **_fit_end(pin.fit_end)}
+    return {"name": _text(pin.name), "at": _point(pin.at), **size, **_feature(pin.feature)}
 
 
 def _core(core: AcceptedCore) -> dict[str, str]:

@@ -13,11 +13,11 @@ import pytest
 from moldgen.catalog import resin
 from moldgen.finding import Notes
 from moldgen.layout.carry_fits import keep_fit
-from moldgen.layout.ejection import ejector_stroke
+from moldgen.layout.ejection import GivenPin, ejector_stroke
 from moldgen.layout.kept import Kept, KeptFeed, KeptGate, KeptItem
 from moldgen.layout.plan import Wishes, plan_layout
 from moldgen.layout.view import PartView
-from moldgen.model.layout import CorePinLayout, EjectorPinLayout, Layout
+from moldgen.model.layout import Chooser, CorePinLayout, EjectorPinLayout, Layout
 from moldgen.spec.sections import Ejection, Gate
 
 from .shapes import box, plate, view_of
@@ -180,6 +180,28 @@ def test_a_pin_that_follows_its_face_gets_a_new_hole(first: Layout) -> None:
     assert now.x == pytest.approx(x + 0.5)
     assert now.fit_length == then.fit_length
     assert end_of(layout.ejector_pins[1]) == pytest.approx(end_of(first.ejector_pins[1]), abs=EXACT)
+
+
+def test_the_bores_of_pins_of_the_spec_stay_too(first: Layout) -> None:
+    """The spec gives the places; how their holes are cut is known from the accepted layout."""
+    accepted = kept(first)
+    given: dict[str, Any] = {
+        "pins": tuple(GivenPin(p.at, p.diameter) for p in accepted.ejector_pins),
+        "core_pins_at": tuple(p.at for p in accepted.core_pins),
+        "ejection": Ejection.model_validate({"pins": [{"at": [0, 0, 0]}]}),  # then none is added
+    }
+    cut = Kept(
+        given_pins=accepted.ejector_pins, given_cores=accepted.core_pins, gate=accepted.gate, stroke=accepted.stroke
+    )
+    layout, notes = laid(cap(19.4, end=8.5), cut, **given)
+    assert {p.chosen_by for p in (*layout.ejector_pins, *layout.core_pins)} == {Chooser.GIVEN}
+    now, then = ({(p.x, p.y): end_of(p) for p in pins(one).values()} for one in (layout, first))
+    assert now.keys() == then.keys()
+    assert [now[at] for at in then] == pytest.approx(list(then.values()), abs=EXACT)
+    assert codes(notes) == []
+    aside = tuple(GivenPin((p.at[0] + 1.0, *p.at[1:]), p.diameter) for p in accepted.ejector_pins)
+    layout, _ = laid(cap(19.4), cut, **{**given, "pins": aside})
+    assert {p.fit_length for p in layout.ejector_pins} == {p.fit_length for p in first.ejector_pins}, "new holes"
 
 
 # --- stroke and lengths ----------------------------------------------------------------------------------------------

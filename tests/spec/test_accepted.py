@@ -43,6 +43,8 @@ LAYOUT = Accepted(
     core_pins=(AcceptedCore("core pin 1", (1.0, 2.0, 3.0), 4.0, None, 0.0),),
     cores_in_block=(AcceptedCore("round core", (7.0, 2.0, 3.0), 0.0),),
     side_actions=(AcceptedSide("slide 1", SideKind.SLIDE, (1.0, 0.0, 0.0)),),
+    given_pins=(AcceptedPin("ejector pin 2", (5.0, 2.0, 0.1), 3.0, 100.0, None, -9.5),),
+    given_cores=(AcceptedCore("core pin 2", (6.0, 2.0, 3.0), 4.0, None, -10.0),),
 )
 
 
@@ -65,9 +67,10 @@ def test_lengths_have_nine_decimals_and_no_exponent(tmp_path: Path) -> None:
 
 
 def test_a_file_of_before_without_fits_and_feed_is_read(tmp_path: Path) -> None:
-    text = accepted_text(LAYOUT)
+    text = accepted_text(replace(LAYOUT, given_pins=(), given_cores=()))
     kept = [line for line in text.splitlines(keepends=True) if not line.lstrip().startswith(NEW_KEYS)]
     assert len(text.splitlines()) - len(kept) == 5
+    assert not any(line.lstrip().startswith("given") for line in kept)
     found = read(tmp_path, "".join(kept))
     assert found is not None
     assert [p.fit_end for p in (*found.ejector_pins, *found.core_pins)] == [None, None]
