@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import io
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from functools import cached_property
 
 import numpy as np
@@ -51,6 +51,22 @@ class SurfaceMesh:
         points = np.asarray(self.vertices[self.triangles])
         points.flags.writeable = False
         return points
+
+    @cached_property
+    def centres(self) -> np.ndarray:
+        """Centre of each triangle, (t, 3) [mm]."""
+        return np.asarray(self.corners.mean(axis=1))
+
+    @cached_property
+    def facet_normals(self) -> np.ndarray:
+        """Outward unit normal of each triangle as it lies, (t, 3)."""
+        p = self.corners
+        normal = np.cross(p[:, 1] - p[:, 0], p[:, 2] - p[:, 0])
+        return np.asarray(normal / np.maximum(np.linalg.norm(normal, axis=1), 1e-30)[:, None])
+
+    def __getstate__(self) -> dict[str, np.ndarray]:
+        """Return what is pickled: the rest follows from it."""
+        return {field.name: getattr(self, field.name) for field in fields(self)}
 
     @cached_property
     def sag(self) -> np.ndarray:

@@ -56,23 +56,11 @@ class FormedPart:
         return Probe(self.mesh)
 
     @cached_property
-    def centres(self) -> np.ndarray:
-        """Centre of each triangle, (t, 3) [mm]."""
-        return np.asarray(self.mesh.corners.mean(axis=1))
-
-    @cached_property
-    def normals(self) -> np.ndarray:
-        """Outward unit normal of each triangle, (t, 3)."""
-        p = self.mesh.corners
-        normal = np.cross(p[:, 1] - p[:, 0], p[:, 2] - p[:, 0])
-        return np.asarray(normal / np.maximum(np.linalg.norm(normal, axis=1), 1e-30)[:, None])
-
-    @cached_property
     def by_side(self) -> np.ndarray:
         """Number of the side action that forms each triangle, -1 for none, (t,)."""
-        found = np.full(len(self.centres), -1)
+        found = np.full(len(self.mesh.centres), -1)
         for number, side in reversed(list(enumerate(self._view.halves.sides))):
-            found[in_front(side, self.centres + OFF * self.normals)] = number
+            found[in_front(side, self.mesh.centres + OFF * self.mesh.facet_normals)] = number
         return found
 
     def former(self, point: np.ndarray, normal: np.ndarray) -> str:
@@ -93,9 +81,9 @@ class FormedPart:
     def face_place(self, face: int) -> tuple[np.ndarray, np.ndarray]:
         """Return a point in the middle of a face and the outward normal there, (3,) each."""
         rows = np.flatnonzero(self.mesh.face == face)
-        gap = np.linalg.norm(self.centres[rows] - self.body.face_centres[face], axis=1)
+        gap = np.linalg.norm(self.mesh.centres[rows] - self.body.face_centres[face], axis=1)
         row = rows[int(np.argmin(gap))]
-        return self.centres[row], self.normals[row]
+        return self.mesh.centres[row], self.mesh.facet_normals[row]
 
     def inside(self, point: np.ndarray) -> bool:
         """Return whether a point (3,) lies in plastic: the first surface over it is met from inside."""
@@ -103,7 +91,7 @@ class FormedPart:
             _, triangle = self.probe.first(point[None, :], np.array(way))
             if triangle[0] < 0:
                 return False
-            rise = float(self.normals[triangle[0]] @ np.array(way))
+            rise = float(self.mesh.facet_normals[triangle[0]] @ np.array(way))
             if abs(rise) > 1e-3:
                 return rise > 0.0
         return False
@@ -118,5 +106,5 @@ class FormedPart:
                 found.append(None)
                 continue
             one, other = point - back[i] * way, point + ahead[i] * way
-            found.append(Ends(one, other, self.normals[met[i]], self.normals[hit[i]]))
+            found.append(Ends(one, other, self.mesh.facet_normals[met[i]], self.mesh.facet_normals[hit[i]]))
         return found

@@ -56,12 +56,12 @@ def meant_face(part: FormedPart, rounds: list[RoundFeature], point: np.ndarray) 
     own = next((r for r in rounds if number in r.faces and r.whole), None)
     if own is not None:
         return Meant(off, round=own)
-    normal = part.normals[triangle]
+    normal = part.mesh.facet_normals[triangle]
     start = point - float((point - part.mesh.corners[triangle, 0]) @ normal) * normal
     (depth,), (behind,) = part.probe.first((start - ON_FACE * normal)[None, :], -normal)
     if not np.isfinite(depth):
         return Meant(off)
-    return Meant(off, face=Ends(start, start - (depth + ON_FACE) * normal, normal, part.normals[behind]))
+    return Meant(off, face=Ends(start, start - (depth + ON_FACE) * normal, normal, part.mesh.facet_normals[behind]))
 
 
 def meant_feature(
@@ -76,7 +76,7 @@ def meant_feature(
     if snap and near and np.linalg.norm(near[0].catch - point) <= ONE_LIP:
         return Meant(off, lip=near[0])
     if off <= ON_FACE:
-        point = point - INTO * part.normals[triangle]
+        point = point - INTO * part.mesh.facet_normals[triangle]
     own = [r for r in rounds if _within(r, point)]
     if own:
         return Meant(off, round=min(own, key=lambda r: (r.large, r.faces)))

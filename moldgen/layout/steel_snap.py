@@ -55,11 +55,11 @@ class SnapLip:
 
 def snap_lips(part: FormedPart, halves: Halves) -> list[SnapLip]:
     """Return the lips of the part, by place: of each the catch face with the least reach."""
-    steep = np.abs(part.normals[:, 2]) > FACES_PULL
+    steep = np.abs(part.mesh.facet_normals[:, 2]) > FACES_PULL
     found = _on(part, steep & (part.by_side >= 0))
     for loop in halves.parting_line[1:]:
         plan = np.asarray(loop, float)[:, :2]
-        through = _on(part, steep & (part.by_side < 0) & contains(plan, part.centres[:, :2]))
+        through = _on(part, steep & (part.by_side < 0) & contains(plan, part.mesh.centres[:, :2]))
         found += [lip for lip in through if _leaves(part, lip, plan)]
     found.sort(key=lambda lip: (*np.round([lip.reach.length, lip.thickness.length], 2), lip.catch.round(3).tolist()))
     kept: list[SnapLip] = []
@@ -103,12 +103,12 @@ def _leaves(part: FormedPart, lip: SnapLip, loop: np.ndarray) -> bool:
 def _lip(part: FormedPart, rows: np.ndarray) -> SnapLip | None:
     """Return the lip whose catch face these triangles are; None where it is none."""
     weights = part.body.triangle_areas[rows]
-    middle = np.average(part.centres[rows], axis=0, weights=weights)
-    row = rows[int(np.argmin(np.linalg.norm(part.centres[rows] - middle, axis=1)))]
-    point, up = part.centres[row], part.normals[row]
+    middle = np.average(part.mesh.centres[rows], axis=0, weights=weights)
+    row = rows[int(np.argmin(np.linalg.norm(part.mesh.centres[rows] - middle, axis=1)))]
+    point, up = part.mesh.centres[row], part.mesh.facet_normals[row]
     (drop,), (met,) = part.probe.first((middle + SKIN * up)[None, :], -up)
     if met >= 0 and part.mesh.face[met] == part.mesh.face[row] and drop < 2 * SKIN:  # the very middle, if it is there
-        point, up = middle + (SKIN - drop) * up, part.normals[met]
+        point, up = middle + (SKIN - drop) * up, part.mesh.facet_normals[met]
     turn = 2 * np.pi * np.arange(WAYS) / WAYS
     level = np.column_stack([np.cos(turn), np.sin(turn), np.zeros(WAYS)])
     ways = level - (level @ up)[:, None] * up  # along the catch face
@@ -118,7 +118,7 @@ def _lip(part: FormedPart, rows: np.ndarray) -> SnapLip | None:
     first = int(np.argmin(gap.round(6)))
     if not np.isfinite(gap[first]):
         return None
-    root_normal = part.normals[hit[first]]
+    root_normal = part.mesh.facet_normals[hit[first]]
     outward = root_normal - (root_normal @ up) * up
     outward = outward / max(float(np.linalg.norm(outward)), 1e-9)
     return _measured(part, point, up, outward)
@@ -135,8 +135,10 @@ def _measured(part: FormedPart, point: np.ndarray, up: np.ndarray, outward: np.n
     if not (np.isfinite(back) and np.isfinite(ahead) and np.isfinite(thick)):
         return None
     level = outward * np.array([1.0, 1.0, 0.0])  # a lip reaches as far as it stands out, however its catch face leans
-    reach = Ends(point - back * level, point + ahead * level, part.normals[root], part.normals[tip])
-    thickness = Ends(point, point - (thick + SKIN / abs(up[2])) * pull, up, part.normals[below])
+    reach = Ends(
+        point - back * level, point + ahead * level, part.mesh.facet_normals[root], part.mesh.facet_normals[tip]
+    )
+    thickness = Ends(point, point - (thick + SKIN / abs(up[2])) * pull, up, part.mesh.facet_normals[below])
     fits = LIP_LEAST.default <= reach.length <= LIP_MOST.default and thickness.length <= LIP_THICK.default
     room = free >= ahead + ROOM * reach.length
     return SnapLip(point, up, reach, thickness, int(part.mesh.face[tip])) if fits and room else None

@@ -90,17 +90,15 @@ class PartView:
             found[on] = self.keep_out.forms(points[on], self.normals[triangles[on]])
         return found
 
-    @cached_property
+    @property
     def centres(self) -> np.ndarray:
         """Centre of each triangle, (t, 3) [mm]."""
-        return np.asarray(self.mesh.corners.mean(axis=1))
+        return self.mesh.centres
 
-    @cached_property
+    @property
     def normals(self) -> np.ndarray:
         """Outward unit normal of each triangle as it lies, (t, 3)."""
-        p = self.mesh.corners
-        normal = np.cross(p[:, 1] - p[:, 0], p[:, 2] - p[:, 0])
-        return np.asarray(normal / np.maximum(np.linalg.norm(normal, axis=1), 1e-30)[:, None])
+        return self.mesh.facet_normals
 
     def thickness(self, points: np.ndarray, normals: np.ndarray) -> np.ndarray:
         """Return the wall under surface points (k, 3), straight against their outward normals (k, 3), (k,) [mm]."""
