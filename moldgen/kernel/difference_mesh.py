@@ -47,8 +47,10 @@ class MeshDifference:
         return not self.cut and not self.weld
 
 
-def mesh_difference(old: Body, new: Body, clip: Corners | None = None) -> MeshDifference:
-    """Return where two solids differ, inside the box `clip` [mm] if one is given.
+def mesh_difference(
+    old: Body, new: Body, clip: Corners | None = None, noise: float = DIFFERENCE_NOISE
+) -> MeshDifference:
+    """Return where one solid reaches out of the other by more than `noise`, inside the box `clip` if one is given [mm].
 
     Raises
     ------
@@ -57,7 +59,8 @@ def mesh_difference(old: Body, new: Body, clip: Corners | None = None) -> MeshDi
     new_mesh = snapped(new.mesh, old.mesh)
     if same_triangles(old.mesh, new_mesh):
         return MeshDifference()
-    return MeshDifference(_reaching_out(old.mesh, new_mesh, clip), _reaching_out(new_mesh, old.mesh, clip))
+    pairs = ((old.mesh, new_mesh), (new_mesh, old.mesh))
+    return MeshDifference(*(_reaching_out(one, other, clip, noise) for one, other in pairs))
 
 
 def snapped(mesh: SurfaceMesh, onto: SurfaceMesh) -> SurfaceMesh:
@@ -90,10 +93,10 @@ def _sorted_corners(mesh: SurfaceMesh) -> np.ndarray:
     return np.asarray(flat[np.lexsort(flat.T[::-1])])
 
 
-def _reaching_out(mesh: SurfaceMesh, other: SurfaceMesh, clip: Corners | None) -> list[MeshSolid]:
+def _reaching_out(mesh: SurfaceMesh, other: SurfaceMesh, clip: Corners | None, noise: float) -> list[MeshSolid]:
     """Return the pieces of one solid that reach out of the other by more than noise, largest first."""
     whole, rest = _solid(mesh), _solid(other)
-    grown = eroded(other, -DIFFERENCE_NOISE)
+    grown = eroded(other, -noise)
     if grown is None:
         raise KernelError("the mesh of the solid is not closed")
     seeds = [s for s in clipped(whole - grown, clip).decompose() if s.volume() > SMALL_VOLUME]

@@ -141,6 +141,33 @@ def test_depth_is_measured_from_the_old_steel_and_the_point_lies_inside() -> Non
         assert sum(map(ladder.volume, left)) == pytest.approx(piece.volume_mm3 - 8e-9, abs=2e-9)
 
 
+@pytest.mark.parametrize(("deeper", "count"), [(0.018, 0), (0.03, 1)])
+def test_where_the_kernel_refuses_only_what_is_sure_is_told(
+    deeper: float, count: int, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def gives_up(*_: Any) -> list[Any]:
+        raise KernelError("planted")
+
+    was, now = (cylinder(5.0, 16.0 + d, (5, 0, 10.0 - d)) for d in (0.0, deeper))
+    assert len(difference(steel(was), steel(now)).cut) == 1
+    monkeypatch.setattr(ladder, "_in_box", gives_up)
+    found = difference(steel(was), steel(now))
+    assert [p.exact for p in found.cut] == [False] * count
+    assert len(found.refused) == (1 if count == 0 else 3)
+
+
+def test_rungs_end_when_too_much_time_was_spent_on_refused_ones(monkeypatch: pytest.MonkeyPatch) -> None:
+    def gives_up(*_: Any) -> list[Any]:
+        raise KernelError("planted")
+
+    clock = iter(range(0, 1000, 45))
+    monkeypatch.setattr(ladder, "_spent", lambda: float(next(clock)))
+    monkeypatch.setattr(ladder, "_in_box", gives_up)
+    found = difference(steel(boss_pocket(2.0)), steel(boss_pocket(4.0)))
+    assert len(found.refused) == 2  # the third would begin after 90 s
+    assert [p.exact for p in (*found.cut, *found.weld)] == [False, False]
+
+
 def test_facets_are_the_last_rung_and_say_so(monkeypatch: pytest.MonkeyPatch) -> None:
     def gives_up(*_: Any) -> list[Any]:
         raise KernelError("planted")
