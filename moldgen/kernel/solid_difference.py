@@ -10,8 +10,9 @@ from __future__ import annotations
 
 import resource
 import time
-from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass, field
+from functools import partial
 
 import numpy as np
 from OCP.BRepPrimAPI import BRepPrimAPI_MakeBox
@@ -50,6 +51,9 @@ have taken minutes."""
 
 TRIED = 60.0
 """Processor time [s] of refused rungs in one pair of solids after which only facets are tried (our choice)."""
+
+FUZZY = (0.0, 1e-5, 1e-4)
+"""mm: the rungs of the kernel; coordinates that differ by less are taken as one [our choice]."""
 
 SAME_BALANCE = 1e-6
 """Volumes of solids agree when they differ by less than this share of the steel in the box [our choice]."""
@@ -108,19 +112,14 @@ def solid_difference(old: Body, new: Body, clip: Corners | None = None) -> Solid
     found = mesh_difference(old, new, clip)
     if found.none:
         return SolidDifference()
-    refused: list[str] = []
+    tries = _Tries(old, new, _spent())
     cuts: list[DifferentPiece] = []
     welds: list[DifferentPiece] = []
-    finer: list[Body] = []
-    begun = _spent()
     for place in _places(found, clip):
-        made = _made(old, new, place, refused, begun)
-        if made is None:
-            finer = finer or [Body(copied(b.solid), FINER, FINE_ANGLE) for b in (old, new)]
-            made = _of_facets(finer[0], finer[1], place.box)
-        cuts += made[0]
-        welds += made[1]
-    return SolidDifference(_in_order(cuts), _in_order(welds), tuple(refused))
+        for made in _at(place, tries):
+            cuts += made[0]
+            welds += made[1]
+    return SolidDifference(_in_order(cuts), _in_order(welds), tuple(tries.refused))
 
 
 def fine_body(solid: TopoDS_Shape) -> Body:
@@ -168,24 +167,45 @@ def _spent() -> float:
     return time.process_time() + children.ru_utime + children.ru_stime
 
 
-def _made(old: Body, new: Body, place: _Place, refused: list[str], begun: float) -> Made | None:
+@dataclass(eq=False)
+class _Tries:
+    """Two solids and what was tried with them. begun : processor time then [s]; finer : their finer meshes, if made."""
+
+    old: Body
+    new: Body
+    begun: float
+    refused: list[str] = field(default_factory=list)
+    finer: list[Body] = field(default_factory=list)
+
+
+def _at(place: _Place, tries: _Tries) -> Iterator[Made]:
+    """Yield the pieces at one place.
+
+    Where the kernel refuses, the place is looked at again without what is hardly more than noise: films along walls
+    join what lies far apart, and it is with them that the kernel has its trouble.
+    """
+    made = _made(tries, place, (0.0,))
+    if made is not None:
+        yield made
+        return
+    for sure in _places(mesh_difference(tries.old, tries.new, place.box, UNSURE), place.box):
+        same = all(np.allclose(a, b) for a, b in zip(sure.box, place.box, strict=True))
+        yield _made(tries, sure, FUZZY[1:] if same else FUZZY) or _of_facets(tries, sure.box)
+
+
+def _made(tries: _Tries, place: _Place, fuzzy: Sequence[float]) -> Made | None:
     """Return the pieces at one place by the first rung that stands; None when none does, or time is up."""
-    rungs: list[tuple[str, Callable[[], list[TopoDS_Shape]]]] = [
-        ("cut in a box", lambda: _in_box(old.solid, new.solid, place.box, 0.0)),
-        ("cut in a box, coordinates to 1e-5 mm", lambda: _in_box(old.solid, new.solid, place.box, 1e-5)),
-        ("cut in a box, coordinates to 1e-4 mm", lambda: _in_box(old.solid, new.solid, place.box, 1e-4)),
-    ]
-    for number, (name, work) in enumerate(rungs):
-        if number == 1 and mesh_difference(old, new, place.box, UNSURE).none:
-            return [], []
-        if refused and _spent() - begun > TRIED:
+    for size in fuzzy:
+        if tries.refused and _spent() - tries.begun > TRIED:
             return None
         try:
+            work = partial(_in_box, tries.old.solid, tries.new.solid, place.box, size)
             return _checked(made_apart(work, SECONDS), place)
         except KernelError as error:
             low, high = place.box
             middle = ", ".join(f"{v:.2f}" for v in 0.5 * (low + high))
-            refused.append(f"{name} about {middle}: {error.what}")
+            rung = f"cut in a box, coordinates to {size:g} mm" if size else "cut in a box"
+            tries.refused.append(f"{rung} about {middle}: {error.what}")
     return None
 
 
@@ -255,9 +275,10 @@ def _piece(solid: TopoDS_Shape) -> DifferentPiece:
     return DifferentPiece(solid, sure_volume(solid), exact=True)
 
 
-def _of_facets(old: Body, new: Body, box: Corners) -> Made:
+def _of_facets(tries: _Tries, box: Corners) -> Made:
     """Return the pieces of a finer mesh at one place as solids with plane facets: the last rung."""
-    found = mesh_difference(old, new, box)
+    tries.finer = tries.finer or [Body(copied(b.solid), FINER, FINE_ANGLE) for b in (tries.old, tries.new)]
+    found = mesh_difference(tries.finer[0], tries.finer[1], box, UNSURE)
     cuts, welds = (
         [DifferentPiece(facet_solid(p), float(p.volume()), exact=False) for p in pieces]
         for pieces in (found.cut, found.weld)

@@ -156,6 +156,24 @@ def test_where_the_kernel_refuses_only_what_is_sure_is_told(
     assert len(found.refused) == (1 if count == 0 else 3)
 
 
+def test_a_film_that_the_kernel_refuses_spoils_no_piece_beside_it(monkeypatch: pytest.MonkeyPatch) -> None:
+    """The slot's floor went down by 0.018 mm, and the box around that film reaches into the ring of the wider bore."""
+    real = ladder._in_box
+
+    def only_small(old: Any, new: Any, box_: Any, fuzzy: float) -> list[Any]:
+        if (box_[1] - box_[0]).max() > 30.0:
+            raise KernelError("planted")
+        return real(old, new, box_, fuzzy)
+
+    monkeypatch.setattr(ladder, "_in_box", only_small)
+    slots = (box((-12, -5, 10.0 - d), (26, -3, 26)) for d in (0.0, 0.018))
+    was, now = (steel(cylinder(r, 30.0, (5, 0, -1)), slot) for r, slot in zip((2.0, 2.3), slots, strict=True))
+    found = difference(was, now)
+    assert volumes(found.cut) == pytest.approx([bar(4.6, 25.0) - bar(4.0, 25.0)], rel=1e-6)
+    assert [p.exact for p in found.cut] == [True]
+    assert len(found.refused) == 1
+
+
 def test_rungs_end_when_too_much_time_was_spent_on_refused_ones(monkeypatch: pytest.MonkeyPatch) -> None:
     def gives_up(*_: Any) -> list[Any]:
         raise KernelError("planted")
