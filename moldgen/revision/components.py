@@ -73,7 +73,8 @@ def matched(old: ToolRecord, new: ToolRecord, placing: Placing) -> list[Match]:
             continue
         before = [s for c in old.components if c.role is role for s in _standing(old, c, placing)]
         after = [s for c in new.components if c.role is role for s in _standing(new, c, Placing())]
-        pairs += _pinned(before, after) if role in ROUND_PARTS else _built_in(before, after, placing)
+        placed = role in ROUND_PARTS and all(any(s.at) for s in (*before, *after))  # angled pins are built in place
+        pairs += _pinned(before, after) if placed else _built_in(before, after, placing)
     names = dict.fromkeys(c.name for c in (*new.components, *old.components))
     order = {name: n for n, name in enumerate(names)}
     groups: dict[tuple[object, ...], list[tuple[Standing | None, Standing | None]]] = {}

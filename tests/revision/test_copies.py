@@ -5,6 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 
 from OCP.BRepPrimAPI import BRepPrimAPI_MakeCylinder
+from OCP.gp import gp_Ax2, gp_Dir, gp_Pnt
 
 from moldgen.kernel.measure import bounding_box, volume
 from moldgen.kernel.step_read import read_assembly
@@ -48,3 +49,25 @@ def test_every_copy_of_a_shortened_pin_has_its_piece_in_the_step_file(tmp_path: 
         low, high = bounding_box(solid)
         middles.append(tuple(round(float(v), 3) + 0.0 for v in 0.5 * (low + high)))
     assert sorted(middles) == sorted((x, y, z + 59.75) for x, y, z in PLACES)
+
+
+def test_an_angled_pin_is_known_by_where_it_was_built(tmp_path: Path) -> None:
+    """A slide came in front of the old one, so that its pin is called 2 now; by their files all stand at the origin."""
+
+    def tool(*places: float) -> ToolRecord:
+        parts = []
+        for number, x in enumerate(places, start=1):
+            upright = gp_Ax2(gp_Pnt(x, 0.0, 0.0), gp_Dir(0.2, 0.0, 1.0))
+            file = tmp_path / f"pin_{len(places)}_{number}.step"
+            write_raw(BRepPrimAPI_MakeCylinder(upright, 4.0, 60.0).Solid(), file)
+            name = f"angled pin of slide {number}"
+            parts.append(SteelPart(name, Role.ANGLED_PIN, "1.2210", ((0.0, 0.0, 0.0),), file))
+        block = ((-90.0, -40.0, -60.0), (90.0, 40.0, 60.0))
+        return ToolRecord("cap", {"layout": {"ejector_pins": [], "core_pins": []}}, FRAME, block, tuple(parts))
+
+    found, _ = compare_steel(tool(40.0), tool(-60.0, 40.0), Placing(), Causes(FRAME, (), ()))
+    told = {c.change.new: (c.change.fate, c.change.old) for c in found}
+    assert told == {
+        "angled pin of slide 1": (Fate.NEW, ""),
+        "angled pin of slide 2": (Fate.UNCHANGED, "angled pin of slide 1"),
+    }
