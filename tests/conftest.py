@@ -21,6 +21,14 @@ def real_parts() -> Path:
     return folder
 
 
+@pytest.fixture(scope="session")
+def shared_cache(tmp_path_factory: pytest.TempPathFactory) -> str:
+    """A cache of this test run, for builds whose stages others need too; several processes of a run share it."""
+    folder = tmp_path_factory.getbasetemp()
+    folder = folder.parent if "PYTEST_XDIST_WORKER" in os.environ else folder
+    return str(folder / "cache")
+
+
 def pytest_collection_modifyitems(config: pytest.Config, items: list[pytest.Item]) -> None:
     """Leave out the long sweeps unless the marker is asked for: whatever else ``-m`` says, they are not meant."""
     if "sweep" in config.option.markexpr:

@@ -24,23 +24,23 @@ class Built:
 
 
 @pytest.fixture(scope="session")
-def demo(tmp_path_factory: pytest.TempPathFactory) -> Callable[[str], Built]:
+def demo(tmp_path_factory: pytest.TempPathFactory, shared_cache: str) -> Callable[[str], Built]:
     """Build a demo of specs/ when it is first asked for."""
 
     @cache
     def built(name: str) -> Built:
         start = tmp_path_factory.mktemp(name)
-        done = moldgen("build", SPECS / name / "spec.yaml", folder=start, timeout=300, PYTHONHASHSEED="1")
+        build = ("build", SPECS / name / "spec.yaml")
+        done = moldgen(*build, folder=start, timeout=300, PYTHONHASHSEED="1", MOLDGEN_CACHE=shared_cache)
         return Built(done, start / "out" / name)
 
     return built
 
 
 @pytest.fixture(scope="session")
-def cup(tmp_path_factory: pytest.TempPathFactory) -> Built:
+def cup(tmp_path_factory: pytest.TempPathFactory, shared_cache: str) -> Built:
     """A cup with one core pin, built without pictures; tests that change the folder copy it first."""
     start = tmp_path_factory.mktemp("cup")
-    done = moldgen(
-        "build", spec(start, CUP, "pull: +z\n", name="cup"), "--no-pictures", "--quiet", folder=start, timeout=120
-    )
+    build = ("build", spec(start, CUP, "pull: +z\n", name="cup"), "--no-pictures", "--quiet")
+    done = moldgen(*build, folder=start, timeout=120, MOLDGEN_CACHE=shared_cache)
     return Built(done, start / "out" / "cup")

@@ -30,7 +30,7 @@ Builder = Callable[[Path, Path, Path | str], object]
 
 TEXTS = (".json", ".csv", ".step")
 
-QUICK = ("sensor-lid", "thumb-knob")
+QUICK = ("thumb-knob",)
 """Demos of the default run; the others belong to the sweep."""
 
 EVERY_DEMO = [pytest.param(name, marks=() if name in QUICK else pytest.mark.sweep) for name in DEMOS]

@@ -26,11 +26,12 @@ K = 1 / (1 - 0.0055)
 
 
 @pytest.fixture
-def build(tmp_path: Path) -> Callable[..., dict[str, Any]]:
+def build(tmp_path: Path, shared_cache: str) -> Callable[..., dict[str, Any]]:
     """Build the cup with more lines of spec, and return the manifest (its folder under "folder")."""
 
     def run(text: str, code: int = 0, part: str = CUP) -> dict[str, Any]:
-        done = moldgen("build", spec(tmp_path, part, text), "--no-pictures", "--quiet", folder=tmp_path)
+        words = ("build", spec(tmp_path, part, text), "--no-pictures", "--quiet")
+        done = moldgen(*words, folder=tmp_path, MOLDGEN_CACHE=shared_cache)
         assert done.returncode == code, done.stdout + done.stderr
         return {**manifest(tmp_path / "out" / "part"), "folder": tmp_path / "out" / "part"}
 
@@ -38,11 +39,12 @@ def build(tmp_path: Path) -> Callable[..., dict[str, Any]]:
 
 
 @pytest.fixture
-def refusal(tmp_path: Path) -> Callable[[str], str]:
+def refusal(tmp_path: Path, shared_cache: str) -> Callable[[str], str]:
     """Return what a build that must end with exit code 2 says."""
 
     def run(text: str) -> str:
-        done = moldgen("build", spec(tmp_path, CUP, text), "--no-pictures", "--quiet", folder=tmp_path)
+        words = ("build", spec(tmp_path, CUP, text), "--no-pictures", "--quiet")
+        done = moldgen(*words, folder=tmp_path, MOLDGEN_CACHE=shared_cache)
         assert done.returncode == 2, done.stdout + done.stderr
         assert "Traceback" not in done.stderr
         return done.stderr
@@ -147,15 +149,18 @@ def test_given_pins_a_pin_gate_and_a_core_pin_asked_for(build) -> None:
 
 
 def test_illegal_pins_and_core_pins_fail_with_their_place_and_a_sprue_gate_is_built(build) -> None:
-    record = build(
-        "pull: +z\ngate: {kind: sprue, at: [5, 0, 16]}\ncore_pins: {pick: none, at: [[-8, 4, 8]]}\n"
-        "ejection: {pins: [{at: [0, 0, 14], diameter: 4}, {at: [19.5, 0, 0], diameter: 4}, {at: [60, 0, 0]}]}\n",
-        code=1,
+    pins = "ejection: {pins: [{at: [0, 0, 14], diameter: 4}, {at: [19.5, 0, 0], diameter: 4}, {at: [60, 0, 0]}]}\n"
+    text = "pull: +z\ngate: {kind: sprue, at: [5, 0, 16]}\ncore_pins: {pick: none, at: [[-8, 4, 8]]}\n"
+    record = build(text + pins, code=1)
+    line = CUP.count("\n") + text.count("\n") + 1
+    second, third = (
+        f"part.yaml:{line}:{pins.index(at) + 1} (ejection.pins[{number}])"
+        for number, at in ((1, "{at: [19.5"), (2, "{at: [60"))
     )
     failures = {(f["code"], f["where"]): f for f in record["findings"] if f["severity"] == "failure"}
-    assert ("ejector_pin.no_part", "ejection.pins[2]") in failures
-    assert ("ejector_pin.step", "ejection.pins[1]") in failures, "half of the pin lies under the rim, 14 mm lower"
-    assert failures["ejector_pin.step", "ejection.pins[1]"]["value"] == pytest.approx(14.0, abs=0.2)
+    assert ("ejector_pin.no_part", third) in failures
+    assert ("ejector_pin.step", second) in failures, "half of the pin lies under the rim, 14 mm lower"
+    assert failures["ejector_pin.step", second]["value"] == pytest.approx(14.0, abs=0.2)
     (no_core,) = findings(record, "core_pin.no_core")
     assert no_core["at"] == pytest.approx([-8, 4, 8], abs=1e-6)
     gate = record["layout"]["gate"]
