@@ -101,12 +101,21 @@ class Laid:
         return _vector(corners.min(axis=0)), _vector(corners.max(axis=0))
 
     def place(self, old: tuple[int, ...], new: tuple[int, ...]) -> Vector:
-        """Return a point on the largest of some faces, new ones first."""
+        """Return the axis of the largest of some faces where it goes around one, else a point on it; new ones first."""
+        signs, numbers = (self.new.signs, new) if new else (self.placed, old)
+        largest = max(numbers, key=lambda n: (signs[n].area_mm2, -n))
+        sign = signs[largest]
+        if sign.kind in (SurfaceKind.CYLINDER, SurfaceKind.CONE) and _inside(sign.at, self.box(old, new)):
+            return sign.at
         if new:
-            largest = max(new, key=lambda n: (self.new.signs[n].area_mm2, -n))
             return _vector(self.new.samples(largest, 1)[0])
-        largest = max(old, key=lambda n: (self.placed[n].area_mm2, -n))
         return _vector(self.over(self.old.samples(largest, 1))[0])
+
+
+def _inside(point: Vector, box: Box) -> bool:
+    """True for a point well inside a box: the axis of a rounding lies beside it, that of a hole in its middle."""
+    low, high = (np.asarray(corner) for corner in box)
+    return bool((np.minimum(point - low, high - point) >= 0.2 * (high - low)).all())
 
 
 def _all_on(points: np.ndarray, part: PartSigns) -> bool:
