@@ -17,9 +17,11 @@ from moldgen.kernel.place import moved, turned
 from moldgen.kernel.solid_difference import DifferentPiece, SolidDifference, fine_body, solid_difference
 from moldgen.model.part import Vector
 from moldgen.model.revision import ComponentChange, Fate, SteelPiece, Work
+from moldgen.model.tool import Role
 from moldgen.revision.causes import Causes
 from moldgen.revision.components import BLOCKS, SMALL_PARTS, Match, matched
 from moldgen.revision.placing import UPRIGHT, Placing
+from moldgen.revision.shared_block import shared_upright, turned_by_deg
 from moldgen.revision.tool_record import ToolRecord
 
 STANDS_STILL = 1e-3
@@ -174,7 +176,7 @@ def _clip(
     if match.new is None or match.new.role not in BLOCKS:
         return None, ""
     if not placing.square:
-        return None, "the tools are turned against each other: compared with the blocks' outsides"
+        return _clip_turned(match.new.role.value, tools, placing)
     (old_low, old_high), (low, high) = (np.array(b) for b in (placing.box(tools[0].block), tools[1].block))
     if match.new.role.value == "cavity":  # the height of each half is its own
         axes = np.array([True, True, False]), np.array([True, True, True])
@@ -195,6 +197,24 @@ def _clip(
         middle = 0.5 * (low + high - old_low - old_high)
         note = f"the form stands off the block's middle by {middle[0]:.3f}, {middle[1]:.3f} mm: the block can stay"
     return (clip_low, clip_high), note
+
+
+def _clip_turned(
+    role: str, tools: tuple[ToolRecord, ToolRecord], placing: Placing
+) -> tuple[tuple[np.ndarray, np.ndarray] | None, str]:
+    """Return an upright box that both blocks share although one is turned to the other, and what to say of that."""
+    by = f"the blocks stand turned to each other by {turned_by_deg(placing):.1f} deg"
+    (part,) = (c for c in tools[1].components if c.role is Role.PART)
+    low, high = bounding_box(part.solid)
+    old, new = tools[0].block, tools[1].block
+    found = shared_upright(old, new, placing, (_vector(low), _vector(high)))
+    if found is None:
+        return None, f"{by}: compared with their outsides"
+    floor, roof = placing.box(old)[0][2], placing.box(old)[1][2]
+    bottom = max(floor, new[0][2]) + OFF_SIDE if role == "core" and abs(floor - new[0][2]) > 1e-6 else -np.inf
+    top = min(roof, new[1][2]) - OFF_SIDE if role == "cavity" and abs(roof - new[1][2]) > 1e-6 else np.inf
+    box = np.array([*(found[0] + OFF_SIDE), bottom]), np.array([*(found[1] - OFF_SIDE), top])
+    return box, f"{by}: compared inside the box that both share"
 
 
 def _whole(match: Match, fate: Fate, note: str = "", shift: Vector | None = None) -> ComparedComponent:
