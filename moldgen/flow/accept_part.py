@@ -151,7 +151,8 @@ def _gate(gate: dict[str, Any], places: _Places) -> AcceptedGate:
         return found
     keys = ("runner_diameter", "runner_length", "sprue_foot_diameter")
     runner, length, foot = _finite([gate[key] for key in keys], 3)
-    return replace(found, runner_diameter=runner, runner_length=length, sprue_foot=foot)
+    inward = turned_back(places.frame, _finite(gate["inward"], 3))  # type: ignore[arg-type]
+    return replace(found, runner_diameter=runner, runner_length=length, sprue_foot=foot, inward=inward)
 
 
 def _sides(record: dict[str, Any], places: _Places) -> list[AcceptedSide]:

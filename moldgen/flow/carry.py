@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from dataclasses import replace
 
@@ -18,7 +19,7 @@ from moldgen.kernel.face_signature import PartSigns, part_signs
 from moldgen.layout.carry_block import KeptBlock
 from moldgen.layout.kept import REMEDY, Kept, KeptFeed, KeptGate, KeptItem
 from moldgen.model.accepted import SNAP, Accepted, AcceptedBlocks, AcceptedCore, AcceptedPin
-from moldgen.model.face_sign import FaceSign
+from moldgen.model.face_sign import AXIS_DIGITS, FaceSign
 from moldgen.model.halves import Halves
 from moldgen.model.part import MoldFrame, Vector
 from moldgen.model.side_action import SideKind
@@ -26,6 +27,10 @@ from moldgen.parting.halves import Parted
 
 ALIKE = 0.985
 """Cosine (10 deg) from which a side action counts as an accepted one that turned (our choice)."""
+
+
+PLAN = 0.5
+"""Share of the way of a gate into the part that must lie in plan: what is edited to point along the pull is no way."""
 
 
 def kept_layout(reviewed: Reviewed) -> tuple[Kept | None, Notes]:
@@ -110,7 +115,20 @@ def _gate(accepted: Accepted, frame: MoldFrame, find: _Find) -> KeptGate:
     stood = frame.to_mold(gate.at)[2]
     at, shift = _placed(gate.at, shift, frame)
     feed = KeptFeed(gate.runner_diameter, gate.runner_length, gate.sprue_foot or gate.diameter, stood)
-    return KeptGate(gate.kind, at, gate.width, gate.depth, gate.land, gate.diameter, shift, gone, feed)
+    inward = None if gate.inward is None else _inward(gate.inward, frame)
+    return KeptGate(gate.kind, at, gate.width, gate.depth, gate.land, gate.diameter, shift, gone, feed, inward)
+
+
+def _inward(direction: Vector, frame: MoldFrame) -> tuple[float, float] | None:
+    """Return a direction of the part in the mold's plan; steel does not shrink, so it only turns. None: along the pull.
+
+    In the digits in which it is written, so that it stays to the last one from one accepted layout to the next.
+    """
+    x, y, _ = (float(v) for v in np.array(frame.rotation) @ np.array(direction))
+    length = math.hypot(x, y)
+    if length < PLAN:
+        return None
+    return round(x / length, AXIS_DIGITS) + 0.0, round(y / length, AXIS_DIGITS) + 0.0
 
 
 # --- parting, blocks, side actions -----------------------------------------------------------------------------------

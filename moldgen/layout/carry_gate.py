@@ -31,6 +31,13 @@ TAPER: Final = math.tan(math.radians(SPRUE_TAPER.default))
 MOVED: Final = "kind"
 """What is kept of a gate that is moved: its feed is another one."""
 
+MOST_TURNED: Final = 5.0
+"""deg: how far the way of a kept edge gate may lean from the square to the parting line (our choice: its mouth, a few
+mm wide, then stands off the part by a few tenths of a mm at one end, which its land spans)."""
+
+TOLD_TURN: Final = 0.1
+"""deg: from here on it is told that a gate turned (our choice: 0.03 mm at the end of a usual runner)."""
+
 SOURCE: Final = "the accepted layout"
 
 SIZES: Final = {
@@ -53,6 +60,8 @@ def found_again(gate: GateLayout, kept: KeptGate) -> bool:
     """Return whether a gate that was searched anew is the accepted one."""
     sizes = [abs(getattr(gate, name) - getattr(kept, name)) for name in SIZES[kept.kind]]
     sizes += [abs(now - then) for _, now, then in _feed(gate, kept.feed) if then > 0.0]
+    if kept.inward is not None and gate.kind is GateKind.EDGE:
+        sizes += [abs(a - b) for a, b in zip(gate.inward[:2], kept.inward, strict=True)]
     return (
         gate.kind is kept.kind and max(*sizes, *(abs(a - b) for a, b in zip(gate.at, kept.at, strict=True))) < ROUNDING
     )
@@ -83,10 +92,12 @@ def carry_gate(task: Task, kept: KeptGate) -> tuple[Found | None, Notes]:
     sized, here = _cone(task, kept, (sized, here))
     size = _size_trouble(sized, plain, here, free)
     if not here.broken and size is None:
+        notes += _turned(task, here, kept)
         return _as_accepted(task, here, kept), notes + _kept(task, here, "place and size")
     if not free.broken:
         reason = size or Reason("gate", "; ".join(here.broken))
-        return free, notes + _resized(task, free, kept, reason) + _kept(task, free, "place")
+        notes += _resized(task, free, kept, reason) + _turned(task, free, kept)
+        return free, notes + _kept(task, free, "place")
     reason = Reason("gate", "; ".join(here.broken or free.broken))
     if kept.gone:
         reason = replace(reason, text=f"the face that it stood on is gone; {reason.text}")
@@ -113,6 +124,8 @@ def _at(task: Task, kept: KeptGate, within: float) -> Found:
     if kept.kind is not GateKind.EDGE:
         return top_gate_near(task, kept.kind, place, within)
     found = edge_gate_near(task, place, within)
+    if within == 0.0:
+        found = _as_it_looked(task, kept, found)
     off = math.dist(found.gate.at[:2], kept.at[:2])
     if off < ON_LINE:
         spot: Vector = (kept.at[0], kept.at[1], found.gate.at[2])
@@ -120,6 +133,48 @@ def _at(task: Task, kept: KeptGate, within: float) -> Found:
     if within == 0.0 or off > MOST_MOVED:
         return replace(found, broken=(f"the parting line runs {off:.2f} mm beside it", *found.broken))
     return found
+
+
+def _as_it_looked(task: Task, kept: KeptGate, square: Found) -> Found:
+    """Return the gate at its place with the accepted way into the part, where the rules hold with it as well.
+
+    square : the gate square to the parting line. That of a mesh leans by tenths of a degree where the part changes
+    elsewhere, and with it runner and sprue would stand elsewhere.
+    """
+    if kept.inward is None or not 0.0 < _turn(square.gate, kept) <= MOST_TURNED:
+        return square
+    found = edge_gate_near(task, np.array(kept.at), 0.0, kept.inward)
+    smaller = found.gate.width < square.gate.width or found.gate.depth < square.gate.depth
+    return square if found.broken or smaller else found
+
+
+def _turn(gate: GateLayout, kept: KeptGate) -> float:
+    """Return by how much the way of an edge gate turned from the accepted one [deg], 0 where that is not known."""
+    if kept.inward is None or gate.kind is not GateKind.EDGE:
+        return 0.0
+    (x, y), (a, b) = kept.inward, gate.inward[:2]
+    return abs(math.degrees(math.atan2(x * b - y * a, x * a + y * b)))
+
+
+def _turned(task: Task, found: Found, kept: KeptGate) -> Notes:
+    """Return the finding that the gate keeps its place, but not its way into the part."""
+    turn = _turn(found.gate, kept)
+    if turn <= TOLD_TURN:
+        return Notes()
+    far = turn > MOST_TURNED
+    why = "it would lean too far from the square to the parting line" if far else "its old way breaks rules of the gate"
+    finding = Finding(
+        "accepted.turned",
+        Severity.CAUTION,
+        f"the gate of the accepted layout is turned by {turn:.1f} deg: {why}",
+        where="gate",
+        at=task.view.place(found.gate.at),
+        value=round(turn, 3),
+        limit=MOST_TURNED if far else None,
+        unit="deg",
+        remedy=REMEDY,
+    )
+    return Notes((finding,))
 
 
 def _size_trouble(sized: Task, plain: Task, here: Found, free: Found) -> Reason | None:

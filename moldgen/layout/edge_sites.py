@@ -82,6 +82,7 @@ class Need:
     width, land, runner, foot : of the usual gate, its land, diameters of runner and sprue foot [mm]
     wanted : width and depth (k, 2) of the mouth into walls (k,) [mm]; fixed : whether the spec gives width and depth
     no_gate : faces to keep off; kept : length of the runner of an accepted gate [mm], 0 for none
+    inward : unit vector in plan into the part, of an accepted gate, for all places; None: square to the parting line
     """
 
     width: float
@@ -92,6 +93,7 @@ class Need:
     fixed: tuple[bool, bool]
     no_gate: frozenset[int]
     kept: float = 0.0
+    inward: tuple[float, float] | None = None
 
     @property
     def lengths(self) -> tuple[float, ...]:
@@ -108,6 +110,8 @@ def find_edge_sites(view: PartView, need: Need, near: np.ndarray | None = None, 
     line = _Line(view)
     middle = line.places(view.middle) if near is None else line.around(near, within)
     places, inward = line.at(middle), line.inward(middle, need.width)
+    if need.inward is not None:
+        inward = np.tile(need.inward, (len(places), 1))
     wall, faces = _entry(view, places, inward)
     wanted = need.wanted(wall)
     level = line.level(middle, wanted[:, 0], view.level)

@@ -43,15 +43,17 @@ def edge_gate(task: Task) -> Found:
     return _made(task, sites, int(order[first]), float(share[first]))
 
 
-def edge_gate_near(task: Task, at: np.ndarray, within: float) -> Found:
+def edge_gate_near(task: Task, at: np.ndarray, within: float, inward: tuple[float, float] | None = None) -> Found:
     """Return the edge gate nearest to a point on the parting line that keeps all rules, at most `within` away [mm].
 
-    Where none does, the one at the place itself, with the rules that it breaks.
+    inward : unit vector in plan into the part; None: square to the parting line
+    Where no place keeps the rules, the one at the place itself, with the rules that it breaks.
     """
     view = task.view
     height = float(view.high[2] - view.level)
     usual, _ = size_edge(task.section, task.resin, task.melt, view.wall, height, None, task.feed)
-    sites = find_edge_sites(view, _need(task, (usual.width, usual.land, usual.runner, usual.foot)), at, within)
+    need = replace(_need(task, (usual.width, usual.land, usual.runner, usual.foot)), inward=inward)
+    sites = find_edge_sites(view, need, at, within)
     share = _mouths(task, sites, np.arange(len(sites.places)), usual.land + usual.runner)
     good = np.flatnonzero((share >= WHOLE) & (sites.troubles == 0))
     choice = int(good[0]) if len(good) else 0

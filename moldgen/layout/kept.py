@@ -48,7 +48,10 @@ class KeptFeed:
 
 @dataclass(frozen=True)
 class KeptGate:
-    """The gate. Sizes that its kind has not are 0."""
+    """The gate. Sizes that its kind has not are 0.
+
+    inward : unit vector in plan into the part, of an edge gate; None: not known
+    """
 
     kind: GateKind
     at: Vector
@@ -59,6 +62,7 @@ class KeptGate:
     shift: Vector = (0.0, 0.0, 0.0)
     gone: bool = False
     feed: KeptFeed = KeptFeed()
+    inward: tuple[float, float] | None = None
 
 
 @dataclass(frozen=True)

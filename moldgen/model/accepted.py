@@ -55,6 +55,7 @@ class AcceptedGate:
     """The gate: its kind, where it opens into the part, and its sizes; those that its kind has not are 0.
 
     runner_diameter, runner_length, sprue_foot : of the feed of an edge gate; 0 where they are not recorded
+    inward : unit vector square to the pull, into the part, of an edge gate; None where it is not recorded
     """
 
     kind: GateKind
@@ -67,6 +68,7 @@ class AcceptedGate:
     runner_diameter: float = 0.0
     runner_length: float = 0.0
     sprue_foot: float = 0.0
+    inward: Vector | None = None
 
 
 @dataclass(frozen=True)

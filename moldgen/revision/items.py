@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
@@ -22,25 +23,33 @@ SAME_PIN = 0.05
 MOST_MOVED = 15.0
 """mm: a pin farther away is another pin, not this one moved (our choice: about the pitch of pins on a small part)."""
 
+MOST_TURNED = 0.1
+"""deg: an edge gate that looks this near to its old way did not turn (our choice: 0.03 mm at the end of a runner)."""
+
 BLOCK = "block"
 """Kind of the closed block: its size is told along the axes of the mold."""
 
 
 @dataclass(frozen=True)
 class Item:
-    """One thing of a layout in the mold [mm]: a point of it, its sizes in words, the box of the steel it needs."""
+    """One thing of a layout in the mold [mm]: a point of it, its sizes in words, the box of the steel it needs.
+
+    way : unit vector along which an edge gate enters the part; None of everything else
+    """
 
     kind: str
     name: str
     at: Vector
     size: str
     box: Box
+    way: Vector | None = None
 
     def placed(self, placing: Placing) -> Item:
         """Return the thing where the old tool stands in the new mold."""
         box = placing.box(self.box)
         size = _box_size(box) if self.kind == BLOCK and placing.square else self.size
-        return replace(self, at=placing.point(self.at), box=box, size=size)
+        way = None if self.way is None else placing.way(self.way)
+        return replace(self, at=placing.point(self.at), box=box, size=size, way=way)
 
 
 @dataclass(frozen=True)
@@ -68,9 +77,18 @@ class ItemPair:
 
     @property
     def same(self) -> bool:
-        """True when neither place nor size changed."""
+        """True when neither place nor size changed, nor the way of an edge gate."""
         still = self.shift is not None and max(map(abs, self.shift)) <= SAME_PLACE
-        return still and self.old is not None and self.new is not None and self.old.size == self.new.size
+        same_size = self.old is not None and self.new is not None and self.old.size == self.new.size
+        return still and same_size and self.turn <= MOST_TURNED
+
+    @property
+    def turn(self) -> float:
+        """By how much the way of an edge gate turned [deg]; 0 of everything else."""
+        if self.old is None or self.new is None or self.old.way is None or self.new.way is None:
+            return 0.0
+        across = float(np.linalg.norm(np.cross(self.old.way, self.new.way)))
+        return math.degrees(math.atan2(across, float(np.dot(self.old.way, self.new.way))))
 
     def change(self) -> ItemChange:
         """Return what is told of it."""
@@ -81,8 +99,12 @@ class ItemPair:
             note = f"its end is {abs(shift[2]):.3f} mm {'higher' if shift[2] > 0 else 'lower'}"
         elif max(map(abs, shift)) > SAME_PLACE:
             note = f"moved by {float(np.linalg.norm(shift)):.3f} mm"
+        elif old is not None and new is not None and old.size == new.size:
+            note = ""
         else:
             note = "other size"
+        if self.turn > MOST_TURNED:
+            note += f"{', ' if note else ''}turned by {self.turn:.1f} deg"
         return ItemChange(
             self.either.kind,
             self.either.name,
@@ -165,4 +187,5 @@ def _gate(gate: Mapping[str, Any], top: float) -> Item:
     deep = max(float(gate["runner_diameter"]), float(gate["depth"])) + 0.5
     low = (min(x, end[0]) - foot, min(y, end[1]) - foot, z - deep)
     high = (max(x, end[0]) + foot, max(y, end[1]) + foot, top + 0.1)
-    return Item("gate", f"{kind} gate", (x, y, z), size, (low, high))
+    way = tuple(float(v) for v in gate["inward"]) if kind == "edge" else None
+    return Item("gate", f"{kind} gate", (x, y, z), size, (low, high), way)  # type: ignore[arg-type]

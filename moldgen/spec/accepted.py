@@ -164,6 +164,7 @@ class _Gate(Section):
     runner_diameter: Gap = 0.0
     runner_length: Gap = 0.0
     sprue_foot: Gap = 0.0
+    inward: _Unit = None
     feature: _Feature = None
 
 

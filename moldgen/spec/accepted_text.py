@@ -54,9 +54,9 @@ def _lines(accepted: Accepted) -> Iterator[str]:
     sizes = "width depth land" if gate.kind is GateKind.EDGE else "diameter land"
     sizes += "".join(f" {key}" for key in FEED if getattr(gate, key) > 0.0)
     yield "gate:"
-    yield from _fields(
-        2, {"kind": gate.kind.value, "at": _point(gate.at), **_numbers(gate, sizes), **_feature(gate.feature)}
-    )
+    place = {"kind": gate.kind.value, "at": _point(gate.at)}
+    place |= {} if gate.inward is None else {"inward": _direction(gate.inward)}
+    yield from _fields(2, {**place, **_numbers(gate, sizes), **_feature(gate.feature)})
 
 
 def _side(side: AcceptedSide) -> dict[str, str]:

@@ -224,6 +224,8 @@ def test_the_gate_keeps_place_and_size_when_the_part_gets_heavier(cup: Cup, firs
     heavier = cup.laid(CUP + BAR.replace("X", "-4"))
     assert near(heavier.gate, first.gate)
     gate, then = heavier.layout.gate, first.layout.gate
+    assert cup.accepted.gate.inward == pytest.approx(then.inward), "this part is not turned in its mold"
+    assert gate.inward == pytest.approx(then.inward, abs=1e-9)
     for name in ("width", "depth", "land", "runner_diameter", "runner_length", "sprue_foot_diameter"):
         assert getattr(gate, name) == pytest.approx(getattr(then, name), abs=1e-8)
     assert gate.chosen_by is Chooser.KEPT

@@ -10,7 +10,7 @@ import numpy as np
 import pytest
 
 from moldgen.errors import PartError
-from moldgen.flow.carry import accepted_block, accepted_level, at_accepted_level, compare_sides
+from moldgen.flow.carry import accepted_block, accepted_level, at_accepted_level, compare_sides, kept_layout
 from moldgen.model.accepted import Accepted, AcceptedBlocks, AcceptedGate, AcceptedSide
 from moldgen.model.layout import GateKind
 from moldgen.model.part import MoldFrame, Pull
@@ -142,3 +142,26 @@ def test_side_actions_are_compared_by_kind_and_direction() -> None:
     assert new == "slide 3 along -x is new", "a lifter that releases the same way is not a slide"
     assert gone == "lifter 1 along -x is gone"
     assert compare_sides(reviewed(None), halves).decisions == ()
+
+
+@pytest.mark.parametrize(
+    ("pull", "inward", "plan"),
+    [
+        (UP, (0.6, 0.8, 0.0), (0.6, 0.8)),
+        (UP, None, None),
+        ((1.0, 0.0, 0.0), (0.0, 0.6, 0.8), None),
+        (UP, (0.0, 0.0, 1.0), None),  # edited by hand: along the pull it leads nowhere
+    ],
+)
+def test_the_way_of_the_gate_turns_with_the_part_and_keeps_its_length(pull: Any, inward: Any, plan: Any) -> None:
+    gate = replace(LAYOUT.gate, inward=inward)
+    now = reviewed(replace(LAYOUT, pull=pull, gate=gate, part_sha256="same"), pull)
+    now.part = SimpleNamespace(source_sha256="same")
+    kept, _ = kept_layout(now)
+    assert kept is not None
+    assert kept.gate is not None
+    if pull != UP:  # as its end, seen from its start, without the shrink
+        end = now.frame.to_mold(inward)
+        plan = (end[0] / 1.01, end[1] / 1.01)
+        assert end[2] == pytest.approx(0.0)
+    assert kept.gate.inward == (None if plan is None else pytest.approx(plan))

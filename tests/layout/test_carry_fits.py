@@ -18,6 +18,7 @@ from moldgen.layout.kept import Kept, KeptFeed, KeptGate, KeptItem
 from moldgen.layout.plan import Wishes, plan_layout
 from moldgen.layout.view import PartView
 from moldgen.model.layout import Chooser, CorePinLayout, EjectorPinLayout, Layout
+from moldgen.rules.layout_practice import STEEL_TO_EDGE
 from moldgen.spec.sections import Ejection, Gate
 
 from .shapes import box, plate, view_of
@@ -71,7 +72,7 @@ def kept(layout: Layout) -> Kept:
             KeptItem(p.name, (p.x, p.y, p.base_z), p.diameter, fit_end=end_of(p), length=0.0) for p in layout.core_pins
         ),
         tuple(KeptItem("round core", at, 0.0) for at in layout.cores_in_block),
-        KeptGate(gate.kind, gate.at, *sizes, feed=feed),
+        KeptGate(gate.kind, gate.at, *sizes, feed=feed, inward=gate.inward[:2]),
         layout.stroke_mm,
     )
 
@@ -325,3 +326,61 @@ def test_an_older_layout_without_fits_and_feed_is_kept_as_before(first: Layout) 
         assert (now.x, now.y, now.fit_length) == (then.x, then.y, then.fit_length)
     assert layout.gate.runner_diameter == first.gate.runner_diameter
     assert codes(notes) == []
+
+
+def looking(first: Layout, turn: float, *, same: bool = False) -> tuple[Any, Any, Notes]:
+    """Return the accepted way of the gate when it is turned [deg], and the gate on the part with notes."""
+    accepted = kept(first)
+    assert accepted.gate is not None
+    way = math.atan2(first.gate.inward[1], first.gate.inward[0]) + math.radians(turn)
+    gate = replace(accepted.gate, inward=(round(math.cos(way), 9), round(math.sin(way), 9)))
+    layout, notes = laid(cap(), replace(accepted, gate=gate, same_part=same))
+    assert layout.gate.at[:2] == pytest.approx(first.gate.at[:2], abs=1e-6)
+    return gate, layout.gate, notes
+
+
+@pytest.mark.parametrize("same", [False, True])
+@pytest.mark.parametrize("turn", [0.0, 0.4, -3.0])
+def test_the_gate_keeps_its_way_into_the_part_and_with_it_runner_and_sprue(
+    first: Layout, turn: float, same: bool
+) -> None:
+    accepted, gate, notes = looking(first, turn, same=same)
+    assert gate.inward == (*accepted.inward, 0.0)
+    assert (gate.width, gate.depth, gate.runner_length) == (
+        first.gate.width,
+        first.gate.depth,
+        first.gate.runner_length,
+    )
+    assert "accepted.turned" not in codes(notes)
+
+
+def test_a_gate_that_would_lean_too_far_turns_and_tells_it(first: Layout) -> None:
+    _, gate, notes = looking(first, 6.0)
+    assert gate.inward == first.gate.inward
+    (finding,) = [f for f in notes.findings if f.code == "accepted.turned"]
+    assert (finding.value, finding.limit) == (pytest.approx(6.0), 5.0)
+
+
+def test_where_the_old_way_has_no_room_the_gate_turns_and_tells_it(first: Layout) -> None:
+    """A block ends beside the sprue: square to the part it just has its steel, turned by 4 deg it has not."""
+    accepted, at, way = kept(first), np.array(first.gate.at[:2]), np.array(first.gate.inward[:2])
+    assert accepted.gate is not None
+    feed = replace(accepted.gate.feed, length=25.0)
+    turn = math.radians(4.0)
+    cos, sin = math.cos(turn), math.sin(turn)
+    turned = (float(cos * way[0] - sin * way[1]), float(sin * way[0] + cos * way[1]))
+    back = first.gate.land + 25.0
+    square, leaning = at - back * way, at - back * np.array(turned)
+    axis = int(np.argmax(np.abs(leaning - square)))
+    sign = 1.0 if leaning[axis] > square[axis] else -1.0
+    found = view_of(cap())
+    low, high = np.array([-120.0, -120.0, -40.0]), np.array([120.0, 120.0, 60.0])
+    edge = square[axis] + sign * (first.gate.sprue_foot_diameter / 2 + STEEL_TO_EDGE.default + 0.5)
+    (high if sign > 0 else low)[axis] = edge
+    part = PartView(replace(found.halves, low=low, high=high))
+    wishes = Wishes(kept=replace(accepted, gate=replace(accepted.gate, feed=feed, inward=turned)))
+    layout, notes = plan_layout(part, ABS, wishes)
+    assert layout.gate.runner_length == 25.0
+    assert layout.gate.inward == pytest.approx(first.gate.inward)
+    (finding,) = [f for f in notes.findings if f.code == "accepted.turned"]
+    assert "breaks rules" in finding.message

@@ -104,6 +104,26 @@ def test_pins_move_change_come_and_go() -> None:
     ]
 
 
+@pytest.mark.parametrize(
+    ("turn", "x", "notes"),
+    [
+        (0.05, 0.0, []),
+        (0.4, 0.0, ["turned by 0.4 deg"]),
+        (-0.4, 2.0, ["moved by 2.000 mm, turned by 0.4 deg"]),
+    ],
+)
+def test_an_edge_gate_that_turned_is_told(turn: float, x: float, notes: list[str]) -> None:
+    def edge(turn: float, x: float) -> ToolRecord:
+        found = record()
+        way = [math.cos(math.radians(turn)), math.sin(math.radians(turn)), 0.0]
+        found["layout"]["gate"] |= {"kind": "edge", "at": [x, 0, 12], "inward": way, "runner_length": 12.0}
+        return tool_record(Path(), found)
+
+    assert [note for *_, note in told(edge(0.0, 0.0), edge(turn, x))] == notes
+    turned_alike = paired_items(edge(0.0, 0.0), edge(90.0, 0.0), Placing(QUARTER))
+    assert all(p.same for p in turned_alike if p.either.kind == "gate"), "the old gate turns with the part"
+
+
 def test_numbers_beyond_noise_are_told_with_their_cause() -> None:
     old, new = record(pin("a", 0, 0)), record(pin("a", 0, 0), pin("b", 9, 0), resin="PP")
     new["shrink"] |= {"x": 1.015}

@@ -37,7 +37,9 @@ LAYOUT = Accepted(
     fixed_point=(1.0, 2.0, 3.0),
     parting_height=-4.5,
     blocks=AcceptedBlocks((0.5, 0.0, -4.5), 100.0, 80.0, 36.0, 46.0),
-    gate=AcceptedGate(GateKind.EDGE, (1.0, 2.0, 3.0), 3.0, 1.0, 0.75, 0.0, FLOOR, 4.5, 12.0, 5.123456789),
+    gate=AcceptedGate(
+        GateKind.EDGE, (1.0, 2.0, 3.0), 3.0, 1.0, 0.75, 0.0, FLOOR, 4.5, 12.0, 5.123456789, (0.6, -0.64, 0.48)
+    ),
     stroke=25.0,
     ejector_pins=(AcceptedPin("ejector pin 1", (1.0, 2.0, 0.1), 3.0, 100.0, FLOOR, -9.876543211),),
     core_pins=(AcceptedCore("core pin 1", (1.0, 2.0, 3.0), 4.0, None, 0.0),),
@@ -69,17 +71,19 @@ def test_lengths_have_nine_decimals_and_no_exponent(tmp_path: Path) -> None:
 def test_a_file_of_before_without_fits_and_feed_is_read(tmp_path: Path) -> None:
     text = accepted_text(replace(LAYOUT, given_pins=(), given_cores=()))
     kept = [line for line in text.splitlines(keepends=True) if not line.lstrip().startswith(NEW_KEYS)]
-    assert len(text.splitlines()) - len(kept) == 5
+    assert len(text.splitlines()) - len(kept) == 6
     assert not any(line.lstrip().startswith("given") for line in kept)
     found = read(tmp_path, "".join(kept))
     assert found is not None
     assert [p.fit_end for p in (*found.ejector_pins, *found.core_pins)] == [None, None]
     gate = found.gate
     assert (gate.runner_diameter, gate.runner_length, gate.sprue_foot) == (0.0, 0.0, 0.0)
-    assert replace(gate, runner_diameter=4.5, runner_length=12.0, sprue_foot=5.123456789) == LAYOUT.gate
+    assert gate.inward is None
+    feed = {"runner_diameter": 4.5, "runner_length": 12.0, "sprue_foot": 5.123456789}
+    assert replace(gate, **feed, inward=(0.6, -0.64, 0.48)) == LAYOUT.gate
 
 
-NEW_KEYS = ("fit_end:", "runner_diameter:", "runner_length:", "sprue_foot:")
+NEW_KEYS = ("fit_end:", "runner_diameter:", "runner_length:", "sprue_foot:", "inward:")
 
 
 def test_without_a_file_there_is_no_layout(tmp_path: Path) -> None:
@@ -92,6 +96,7 @@ def test_without_a_file_there_is_no_layout(tmp_path: Path) -> None:
         ("diameter: 3\n", "diameter: -3\n", "ejection.pins[0].diameter", "more than 0"),
         ("fit_end: -9.876543211", "fit_end: deep", "ejection.pins[0].fit_end", "is not a length"),
         ("sprue_foot: 5.123456789", "sprue_foot: -1", "gate.sprue_foot", "0"),
+        ("inward: [0.6", "inward: [0.7", "gate.inward", "no unit vector"),
         ("stroke: 25", "strokes: 25", "strokes", "did you mean `stroke`?"),
         ("accepted: 1", "accepted: 2", "accepted", "2 is not one of 1"),
         ('{kind: "plane"', '{kind: "plain"', "ejection.pins[0].feature", "SurfaceKind"),
