@@ -9,7 +9,7 @@ from moldgen.errors import SpecError
 from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.kernel.body import Body
 from moldgen.kernel.round_faces import hollow_round_faces
-from moldgen.layout.carry_block import KeptBlock, Least, found_again, keep_block, size_text
+from moldgen.layout.carry_block import KeptBlock, Least, found_again, keep_block, size_text, sized_anew, stands_in
 from moldgen.model.layout import BlockLayout
 from moldgen.quantity import Quantity
 from moldgen.rules.cavity_floor import cavity_floor_thickness_rectangular
@@ -65,7 +65,7 @@ def size_blocks(
     level : height of the parting plane [mm]; without it the lower end of the part is assumed, so that the cavity
         block holds the whole depth
     kept : an accepted block: it stays as it stands where the rules' least walls allow it, and grows only at the sides
-        where they do not; what the spec gives comes first
+        where they do not; what the spec gives comes first. Where the part stands elsewhere the block is sized anew
 
     Raises
     ------
@@ -98,6 +98,8 @@ def size_blocks(
     layout = BlockLayout(corner, (corner[0] + sizes[0], corner[1] + sizes[1], plane + up))
     if kept is None or found_again(layout, kept):
         return layout, notes + _told(layout)
+    if not stands_in(kept, body):
+        return layout, notes + sized_anew(layout, kept)
     walls = [s.wall if s.given_wall is None else s.given_wall for s in spans]
     layout, more = keep_block(layout, kept, Least(walls[0], walls[1], _over(), under), body, blocks)
     return layout, notes + more

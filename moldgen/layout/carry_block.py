@@ -5,9 +5,12 @@ from __future__ import annotations
 import math
 from collections.abc import Iterable
 from dataclasses import dataclass
+from typing import Final
+
+import numpy as np
 
 from moldgen.catalog import preferred_size_up
-from moldgen.finding import Decision, Notes
+from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.kernel.body import Body
 from moldgen.model.accepted import SNAP
 from moldgen.model.layout import BlockLayout
@@ -15,6 +18,14 @@ from moldgen.model.part import Vector
 from moldgen.spec.sections import Blocks
 
 KEPT = "kept from the accepted layout"
+
+ENOUGH: Final = 0.98
+"""Share of the rules' least steel with which an accepted wall or floor stays (our choice: 2 % are less than what the
+thumb rules behind them are good to, and a block that grows is a new one)."""
+
+INSIDE: Final = 0.5
+"""Share of the part's box in the accepted block, of what could lie in it at most, under which the part stands elsewhere
+(our choice: half)."""
 
 
 @dataclass(frozen=True)
@@ -60,39 +71,94 @@ def found_again(layout: BlockLayout, kept: KeptBlock) -> bool:
     return max(abs(a - b) for a, b in pairs) <= SNAP
 
 
+def stands_in(kept: KeptBlock, body: Body) -> bool:
+    """Return whether the part stands in the accepted block, if only with its larger share.
+
+    A part that outgrew the block stands in it; one that was moved or turned to another place of its file does not.
+    """
+    (low, high), one, other = body.box, np.array(kept.low), np.array(kept.high)
+    common = np.minimum(high, other) - np.maximum(low, one)
+    share = np.clip(common, 0.0, None) / np.maximum(np.minimum(high - low, other - one), SNAP)
+    return bool(share.prod() >= INSIDE)
+
+
+def sized_anew(fresh: BlockLayout, kept: KeptBlock) -> Notes:
+    """Return the notes that the block is not the accepted one, since the part does not stand in that."""
+    text = f"the part does not stand in the accepted block of {size_text(block_between(kept.low, kept.high))} mm"
+    finding = Finding(
+        "accepted.dropped",
+        Severity.CAUTION,
+        f"the block of the accepted layout is not kept: {text}",
+        where="blocks",
+        remedy="put the part where it stood in its file, or accept the new layout with 'moldgen accept'",
+    )
+    return Notes((finding,), decisions=(Decision("blocks", f"{size_text(fresh)} mm closed", f"sized anew: {text}"),))
+
+
 def keep_block(
     fresh: BlockLayout, kept: KeptBlock, least: Least, body: Body, blocks: Blocks
 ) -> tuple[BlockLayout, Notes]:
     """Return the accepted block, grown at the sides where the rules ask for more steel, and where that is.
 
     fresh : the block without an accepted one: what the spec gives, and heights that must grow, are taken from it
+    A wall or floor with nearly what the rules ask for stays, with a caution; what the spec asks for is kept in full.
     """
     part = [(float(a), float(b)) for a, b in zip(*body.box, strict=True)]
-    low, high, grown = list(kept.low), list(kept.high), list[str]()
+    low, high, grown, thin = list(kept.low), list(kept.high), list[str](), list[Finding]()
+    enough = ENOUGH if blocks.wall is None else 1.0
     for axis, wall, given in ((0, least.x, blocks.length), (1, least.y, blocks.width)):
         if given is not None:
             low[axis], high[axis] = fresh.low[axis], fresh.high[axis]
             continue
         left = (part[axis][0] - low[axis], high[axis] - part[axis][1])
-        by = _growth(high[axis] - low[axis], [wall - steel for steel in left])
+        by = _growth(high[axis] - low[axis], [0.0 if s >= enough * wall else wall - s for s in left])
         low[axis], high[axis] = low[axis] - by[0], high[axis] + by[1]
         for side, steel, more in zip("-+", left, by, strict=True):
             if more:
                 grown.append(_told(f"{side}{'xy'[axis]} side", more, steel, wall, "beside"))
+            else:
+                thin += _thin(f"at the {side}{'xy'[axis]} side of", steel, wall, ("length", "width")[axis])
     over, under = high[2] - part[2][1], part[2][0] - low[2]
     if blocks.cavity_height is not None:
         high[2] = fresh.high[2]
-    elif over < least.over - SNAP:
+    elif over >= ENOUGH * least.over:
+        thin += _thin("over", over, least.over, "cavity_height")
+    else:
         grown.append(_told("top", fresh.high[2] - high[2], over, least.over, "over"))
         high[2] = fresh.high[2]
     if blocks.core_height is not None:
         low[2] = fresh.low[2]
-    elif under < least.under - SNAP:
+    elif under >= ENOUGH * least.under:
+        thin += _thin("under", under, least.under, "core_height")
+    else:
         grown.append(_told("bottom", low[2] - fresh.low[2], under, least.under, "under"))
         low[2] = fresh.low[2]
     layout = BlockLayout((low[0], low[1], low[2]), (high[0], high[1], high[2]))
-    why = f"{KEPT}, grown at the {'; at the '.join(grown)}" if grown else f"{KEPT}: the least walls of the rules fit"
-    return layout, Notes(decisions=(Decision("blocks", f"{size_text(layout)} mm closed", why),))
+    fits = (
+        f"at least {100 * ENOUGH:.0f} % of the least walls of the rules are left"
+        if thin
+        else "the least walls of the rules fit"
+    )
+    why = f"{KEPT}, grown at the {'; at the '.join(grown)}" if grown else f"{KEPT}: {fits}"
+    return layout, Notes(tuple(thin), decisions=(Decision("blocks", f"{size_text(layout)} mm closed", why),))
+
+
+def _thin(where: str, steel: float, needed: float, key: str) -> tuple[Finding, ...]:
+    """Return the caution that a kept wall or floor has a little less steel than the rules ask for, if it has."""
+    if steel >= needed - SNAP:
+        return ()
+    finding = Finding(
+        "accepted.thin_wall",
+        Severity.CAUTION,
+        f"{steel:.2f} mm of steel are left {where} the part in the accepted block, the rules ask for {needed:.2f} mm: "
+        f"it stays, since that is at least {100 * ENOUGH:.0f} %",
+        where=f"blocks.{key}",
+        value=round(steel, 3),
+        limit=round(needed, 3),
+        unit="mm",
+        remedy=f"bear with it, or give blocks.{key} in the spec",
+    )
+    return (finding,)
 
 
 def _growth(size: float, missing: list[float]) -> list[float]:

@@ -2,6 +2,10 @@
 
 from __future__ import annotations
 
+import re
+from dataclasses import replace
+
+import numpy as np
 import pytest
 
 from moldgen.catalog import resin
@@ -84,3 +88,60 @@ def test_what_the_spec_gives_comes_first(first: BlockLayout) -> None:
     assert layout.high[0] - layout.low[0] == 200.0
     assert layout.high[2] == 60.0
     assert layout.low[1:] == first.low[1:]
+
+
+@pytest.mark.parametrize("shift", [(150.0, 0.0, 0.0), (55.0, -45.0, 0.0), (0.0, 0.0, 80.0)])
+def test_a_part_that_stands_elsewhere_gets_a_block_of_its_own(first: BlockLayout, shift: tuple[float, ...]) -> None:
+    part = PART.translate(shift)
+    body = view_of(part).body
+    layout, notes = size_blocks(body, resin("ABS"), Blocks(), shift[2], as_kept(first))
+    assert layout == size_blocks(body, resin("ABS"), Blocks(), shift[2])[0]
+    (decision,) = [d for d in notes.decisions if d.topic == "blocks"]
+    assert "the part does not stand in the accepted block" in decision.why
+    assert [f.where for f in notes.findings if f.code == "accepted.dropped"] == ["blocks"]
+
+
+def test_a_part_that_outgrew_the_block_still_stands_in_it(first: BlockLayout) -> None:
+    layout, why = sized(plate(400.0, 40.0, 12.0).translate((170.0, 0.0, 0.0)), as_kept(first))
+    assert layout.low[0] == first.low[0], "it got longer at +x only"
+    assert "+x side by" in why
+
+
+def least_walls(first: BlockLayout) -> tuple[float, float, float]:
+    """Return what the rules want at -x, over and under PART: what is needed is told where nothing is left."""
+    kept = as_kept(first)
+    bare = KeptBlock(kept.at, 60.0, kept.width, 12.0, 0.1)
+    _, why = sized(PART, bare)
+    return tuple(float(n) for n in re.findall(r"([0-9.]+) mm are needed", why))[1:]
+
+
+SLACK = {"x": 0, "over": 1, "under": 2}
+
+
+@pytest.mark.parametrize("where", sorted(SLACK))
+@pytest.mark.parametrize(("share", "stays"), [(1.01, True), (0.985, True), (0.975, False)])
+def test_a_hair_of_missing_steel_is_a_caution_and_not_another_block(
+    first: BlockLayout, where: str, share: float, stays: bool
+) -> None:
+    least, kept = least_walls(first), as_kept(first)
+    steel = share * least[SLACK[where]]
+    size = {"x": ("length", 60.0 + 2 * steel), "over": ("cavity_height", 12.0 + steel), "under": ("core_height", steel)}
+    key, value = size[where]
+    accepted = replace(kept, **{key: value})
+    layout, notes = size_blocks(view_of(PART).body, resin("ABS"), Blocks(), 0.0, accepted)
+    low, high = np.array(layout.low), np.array(layout.high)
+    assert (np.allclose(low, accepted.low) and np.allclose(high, accepted.high)) is stays
+    told = [f for f in notes.findings if f.code == "accepted.thin_wall"]
+    assert len(told) == ((2 if where == "x" else 1) if share == 0.985 else 0)
+    for finding in told:
+        assert finding.where == f"blocks.{key}"
+        assert finding.value == pytest.approx(steel, abs=1e-3)
+        assert finding.limit == pytest.approx(least[SLACK[where]], abs=6e-3)
+
+
+def test_a_wall_that_the_spec_gives_is_kept_in_full() -> None:
+    section = Blocks(wall=25.0)
+    kept = replace(as_kept(sized(PART, None, section)[0]), length=60.0 + 2 * 24.7)
+    layout, why = sized(PART, kept, section)
+    assert layout.high[0] >= 30.0 + 25.0
+    assert "25.00 mm are needed" in why
