@@ -94,7 +94,8 @@ def _accepted(record: dict[str, Any], places: _Places, name: str, sha256: str) -
     level = float(parting["level_mm"])
     low, high = (_finite(corner, 3) for corner in parting["block_mm"])
     middle = ((low[0] + high[0]) / 2, (low[1] + high[1]) / 2, level)
-    pins, given = _by_spec([_pin(p, places) for p in layout["ejector_pins"]], layout["ejector_pins"])
+    told = layout["ejector_pins"]
+    pins, given = _by_spec([_pin(p, places) for p in told], told)
     cores, given_cores = _by_spec([_core_pin(c, places) for c in layout["core_pins"]], layout["core_pins"])
     x, y, z = places.pull
     return Accepted(
@@ -106,6 +107,7 @@ def _accepted(record: dict[str, Any], places: _Places, name: str, sha256: str) -
         blocks=AcceptedBlocks(places.part(middle), high[0] - low[0], high[1] - low[1], high[2] - level, level - low[2]),
         gate=_gate(layout["gate"], places),
         stroke=float(layout["stroke_mm"]),
+        pressure=max(_finite([p["pressure_mpa"] for p in told], len(told)), default=0.0),
         ejector_pins=pins,
         core_pins=cores,
         cores_in_block=tuple(_core("round core", at, 0.0, places) for at in layout["cores_in_block"]),

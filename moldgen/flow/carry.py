@@ -63,6 +63,7 @@ def kept_layout(reviewed: Reviewed) -> tuple[Kept | None, Notes]:
         given_cores=tuple(_item(c, accepted, frame, _stays) for c in accepted.given_cores),
         gate=_gate(accepted, frame, find),
         stroke=accepted.stroke,
+        pressure=accepted.pressure,
         same_part=same,
     )
     return kept, notes

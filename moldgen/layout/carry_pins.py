@@ -38,6 +38,10 @@ ROUNDING: Final = SNAP
 BETTER: Final = 0.8
 """Added pins are taken when they bring what is passed down to this share of itself (our choice, as in the search)."""
 
+NO_WORSE: Final = 1.02
+"""Pins press no harder than in the accepted tool up to this share of what they did there (our choice: what is measured
+on the mesh of a part comes out otherwise by a percent where it changes elsewhere)."""
+
 _GONE: Final = Reason("gone", "the face that it pushed on is gone, and where it stood ")
 
 
@@ -57,6 +61,10 @@ def carry_pins(task: Task, kept: Kept, fixed: list[Place]) -> tuple[list[Place],
     places, notes = keep_pins(task, items, fixed)
     now, missing = lack_of(task, [*fixed, *places]), len(items) - len(places)
     added: list[Place] = []
+    if not missing and not now.suffices and now.borne(task, kept.pressure):
+        choice = _decision(len(places), len(items), [])
+        why = f"no pin is added: {now.text}, with {kept.pressure:.1f} MPa in the accepted tool"
+        return places, notes + Notes(decisions=(replace(choice, why=why),))
     if missing or not now.suffices:
         added, more = _added(task, [*fixed, *places], 0 if not now.suffices else missing)
         if not (now.suffices and added) and not now.worse_than(lack_of(task, [*fixed, *places, *added])):
@@ -228,6 +236,12 @@ class Lack:
     missing: int
     passed: float
     text: str
+    pressure: float = float("inf")
+    off: float = float("inf")
+
+    def borne(self, task: Task, accepted: float) -> bool:
+        """True when the pins push in the middle and press no harder than in the accepted tool, there with [MPa]."""
+        return self.off <= 1.0 and self.pressure * task.resin.push_pressure <= NO_WORSE * accepted
 
     @property
     def suffices(self) -> bool:
@@ -258,4 +272,5 @@ def lack_of(task: Task, places: list[Place]) -> Lack:
         f"they push {off:.1f} mm beside the centre of what sticks": off / (OFF_CENTRE * diagonal),
     }
     text = max(shares, key=lambda key: shares[key])
-    return Lack(max(least - len(places), 0), max(pressure, off / (OFF_CENTRE * diagonal)), text)
+    beside = off / (OFF_CENTRE * diagonal)
+    return Lack(max(least - len(places), 0), max(pressure, beside), text, pressure, beside)

@@ -71,6 +71,7 @@ class Kept:
 
     same_part : it was made for this very part: then a layout that moldgen finds again is taken to the last digit
     cores_in_block : round cores that are no pins
+    pressure : highest of an ejector pin on the part when it was accepted [MPa], 0: not known
     given_pins, given_cores : pins of the spec, which stand where it places them now: how their holes are cut
     """
 
@@ -82,6 +83,7 @@ class Kept:
     same_part: bool = False
     given_pins: tuple[KeptItem, ...] = ()
     given_cores: tuple[KeptItem, ...] = ()
+    pressure: float = 0.0
 
 
 @dataclass(frozen=True)

@@ -98,6 +98,7 @@ class Accepted:
     part_sha256 : of the part that it was made for
     pull : unit vector; fixed_point : of the shrink; parting_height : part coordinate along the pull
     cores_in_block : round cores that stay in the core block; stroke : travel of the ejectors
+    pressure : highest of an ejector pin on the part [MPa], 0 where it is not recorded
     given_pins, given_cores : pins that the spec places: only what their holes and the pins bought for them are
     """
 
@@ -115,3 +116,4 @@ class Accepted:
     side_actions: tuple[AcceptedSide, ...] = ()
     given_pins: tuple[AcceptedPin, ...] = ()
     given_cores: tuple[AcceptedCore, ...] = ()
+    pressure: float = 0.0

@@ -35,6 +35,8 @@ REMEDY: Final = "or delete the file, or build with --fresh"
 NEAR_UNIT: Final = 1e-4
 """By how much the length of a direction may differ from 1: it is written with nine decimals, or by hand with fewer."""
 
+_PRESSURE: Final = Number(Measure.PRESSURE, least=0.0, most=10_000.0)
+
 _COORDINATE: Final = Number(Measure.LENGTH, least=-10_000.0, most=10_000.0)
 
 
@@ -125,6 +127,7 @@ def _numbers(value: Any) -> list[float]:
 
 
 _Place = Annotated[tuple[Coordinate, Coordinate, Coordinate], BeforeValidator(_three)]
+_Pressure = Annotated[float, _PRESSURE]
 _Unit = Annotated[Any, BeforeValidator(_unit)]
 _Feature = Annotated[Any, BeforeValidator(_feature)]
 
@@ -180,6 +183,7 @@ class _Parting(Section):
 
 class _Ejection(Section):
     stroke: Length
+    pressure: _Pressure = 0.0
     pins: tuple[_Pin, ...] = ()
     given_pins: tuple[_Pin, ...] = ()
 
@@ -219,6 +223,7 @@ class _File(Section):
             blocks=AcceptedBlocks(**self.blocks.model_dump()),
             gate=AcceptedGate(**{**gate, "kind": GateKind(self.gate.kind), "feature": self.gate.feature}),
             stroke=self.ejection.stroke,
+            pressure=self.ejection.pressure,
             ejector_pins=tuple(map(_pin, self.ejection.pins)),
             core_pins=tuple(map(_core, self.core_pins)),
             cores_in_block=tuple(AcceptedCore(c.name, c.at, 0.0, c.feature) for c in self.cores_in_block),

@@ -20,6 +20,8 @@ HEAD: Final = """\
 """
 
 
+PRESSURE_DIGITS: Final = 3
+
 FEED: Final = ("runner_diameter", "runner_length", "sprue_foot")
 """What is written of the feed of an edge gate."""
 
@@ -47,6 +49,8 @@ def _lines(accepted: Accepted) -> Iterator[str]:
     yield from _list("cores_in_block", 0, (_core(c) for c in accepted.cores_in_block))
     yield "ejection:"
     yield f"  stroke: {_number(accepted.stroke)}"
+    if accepted.pressure > 0.0:
+        yield f"  pressure: {_number(accepted.pressure, PRESSURE_DIGITS)}  # MPa, the highest of a pin on the part"
     yield from _list("pins", 2, (_pin(p) for p in accepted.ejector_pins))
     if accepted.given_pins:
         yield from _list("given_pins", 2, (_pin(p) for p in accepted.given_pins))

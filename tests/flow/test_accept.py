@@ -130,6 +130,8 @@ def test_the_unchanged_part_gets_the_same_layout_to_the_last_digit(cup: Cup, fir
     ):
         assert replace(other, chosen_by=one.chosen_by) == one
     assert not any(f.code.startswith("accepted.") for f in again.notes.findings)
+    highest = max(p.pressure_mpa for p in first.layout.ejector_pins)
+    assert cup.accepted.pressure == pytest.approx(highest, abs=1e-3)
 
 
 def test_a_moved_post_takes_its_core_pin_along_and_nothing_else(cup: Cup, first: Laid) -> None:

@@ -47,6 +47,7 @@ LAYOUT = Accepted(
     side_actions=(AcceptedSide("slide 1", SideKind.SLIDE, (1.0, 0.0, 0.0)),),
     given_pins=(AcceptedPin("ejector pin 2", (5.0, 2.0, 0.1), 3.0, 100.0, None, -9.5),),
     given_cores=(AcceptedCore("core pin 2", (6.0, 2.0, 3.0), 4.0, None, -10.0),),
+    pressure=48.75,
 )
 
 
@@ -71,7 +72,7 @@ def test_lengths_have_nine_decimals_and_no_exponent(tmp_path: Path) -> None:
 def test_a_file_of_before_without_fits_and_feed_is_read(tmp_path: Path) -> None:
     text = accepted_text(replace(LAYOUT, given_pins=(), given_cores=()))
     kept = [line for line in text.splitlines(keepends=True) if not line.lstrip().startswith(NEW_KEYS)]
-    assert len(text.splitlines()) - len(kept) == 6
+    assert len(text.splitlines()) - len(kept) == 7
     assert not any(line.lstrip().startswith("given") for line in kept)
     found = read(tmp_path, "".join(kept))
     assert found is not None
@@ -79,11 +80,12 @@ def test_a_file_of_before_without_fits_and_feed_is_read(tmp_path: Path) -> None:
     gate = found.gate
     assert (gate.runner_diameter, gate.runner_length, gate.sprue_foot) == (0.0, 0.0, 0.0)
     assert gate.inward is None
+    assert found.pressure == 0.0
     feed = {"runner_diameter": 4.5, "runner_length": 12.0, "sprue_foot": 5.123456789}
     assert replace(gate, **feed, inward=(0.6, -0.64, 0.48)) == LAYOUT.gate
 
 
-NEW_KEYS = ("fit_end:", "runner_diameter:", "runner_length:", "sprue_foot:", "inward:")
+NEW_KEYS = ("fit_end:", "runner_diameter:", "runner_length:", "sprue_foot:", "inward:", "pressure:")
 
 
 def test_without_a_file_there_is_no_layout(tmp_path: Path) -> None:
@@ -97,6 +99,7 @@ def test_without_a_file_there_is_no_layout(tmp_path: Path) -> None:
         ("fit_end: -9.876543211", "fit_end: deep", "ejection.pins[0].fit_end", "is not a length"),
         ("sprue_foot: 5.123456789", "sprue_foot: -1", "gate.sprue_foot", "0"),
         ("inward: [0.6", "inward: [0.7", "gate.inward", "no unit vector"),
+        ("pressure: 48.75", "pressure: -1", "ejection.pressure", "0"),
         ("stroke: 25", "strokes: 25", "strokes", "did you mean `stroke`?"),
         ("accepted: 1", "accepted: 2", "accepted", "2 is not one of 1"),
         ('{kind: "plane"', '{kind: "plain"', "ejection.pins[0].feature", "SurfaceKind"),
