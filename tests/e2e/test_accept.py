@@ -18,7 +18,7 @@ pytestmark = pytest.mark.slow
 DEMOS = Path(__file__).resolve().parents[2] / "specs"
 BUILD = ("--no-pictures", "--quiet")
 EVERY_DEMO = [
-    pytest.param(path.parent.name, marks=() if path.parent.name == "sensor-lid" else pytest.mark.sweep)
+    pytest.param(path.parent.name, marks=() if path.parent.name == "thumb-knob" else pytest.mark.sweep)
     for path in sorted(DEMOS.glob("*/spec.yaml"))
 ]
 

@@ -90,6 +90,7 @@ def built_here(work: Path, out: Path, cache: Path | str) -> None:
     build_tool(load_spec(work), out, Options(pictures=False), Stages(store, silent()))
 
 
+@pytest.mark.sweep  # tests/flow/test_stages.py holds the same for single stages
 def test_a_changed_spec_built_through_the_cache_has_the_bytes_of_a_build_without(tmp_path: Path) -> None:
     changes_through_the_cache(spec(tmp_path, "name: cup\n", CUP, "pull: +z\n"), tmp_path, built_here)
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+import shutil
 from collections.abc import Callable
 from pathlib import Path
 
@@ -187,12 +188,18 @@ def built(text: str, folder: Path, memory: Memory) -> tuple[dict[str, bytes], St
     return {p.relative_to(out).as_posix(): p.read_bytes() for p in sorted(out.rglob("*")) if p.is_file()}, stages
 
 
-def rebuilt(text: str, tmp_path: Path) -> tuple[dict[str, bytes], dict[str, bytes], set[str]]:
-    """Build the cup and then `text` with one store; return its output, that of a build without, and what ran."""
-    place = tmp_path / "store"
-    place.mkdir(mode=0o700)
-    store = Store(place, GIB)
-    built(BASE, tmp_path / "first", store)
+@pytest.fixture(scope="module")
+def filled(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """A store with the stages of the cup."""
+    folder = tmp_path_factory.mktemp("filled")
+    (folder / "store").mkdir(mode=0o700)
+    built(BASE, folder / "first", Store(folder / "store", GIB))
+    return folder / "store"
+
+
+def rebuilt(text: str, filled: Path, tmp_path: Path) -> tuple[dict[str, bytes], dict[str, bytes], set[str]]:
+    """Build `text` with a store that has the cup; return its output, that of a build without, and what ran."""
+    store = Store(Path(shutil.copytree(filled, tmp_path / "store")), GIB)
     kept, stages = built(text, tmp_path / "kept", store)
     alone, _ = built(text, tmp_path / "alone", Forgetful())
     return kept, alone, {run.name for run in stages.runs if not run.kept}
@@ -235,9 +242,9 @@ CHANGES = {
 
 @pytest.mark.slow
 @pytest.mark.parametrize("name", CHANGES)
-def test_what_is_kept_leads_to_the_same_bytes(name: str, tmp_path: Path) -> None:
+def test_what_is_kept_leads_to_the_same_bytes(name: str, filled: Path, tmp_path: Path) -> None:
     text, must_run = CHANGES[name]
-    kept, alone, ran = rebuilt(text, tmp_path)
+    kept, alone, ran = rebuilt(text, filled, tmp_path)
     assert ran == must_run
     assert sorted(kept) == sorted(alone)
     assert [path for path in kept if kept[path] != alone[path]] == []

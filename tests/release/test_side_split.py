@@ -64,6 +64,7 @@ def test_a_slide_the_wrong_way_is_found_by_the_motion_that_the_tests_use():
     assert depth_met(body, loose, np.array(plan.fronts[0].release) * 30.0) > 0.0
 
 
+@pytest.mark.sweep  # a minute
 def test_a_groove_opposite_on_the_inside_keeps_the_slides_out_and_is_named():
     both = cut(TUBE, cut(cylinder(9.5, 8, 12), cylinder(2, 0, 20)))
     _, trapped, plan = planned(both)
