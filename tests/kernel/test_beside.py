@@ -50,9 +50,11 @@ def test_a_child_that_is_stopped_ends(tmp_path: Path) -> None:
         (tmp_path / "late").touch()
 
     beside = Beside(work)
+    child = beside._child
+    assert child > 0
     beside.stop()
     with pytest.raises(ChildProcessError):
-        os.waitpid(-1, os.WNOHANG)
+        os.waitpid(child, os.WNOHANG)
     assert not (tmp_path / "late").exists()
 
 
