@@ -19,7 +19,8 @@ from moldgen.flow.reread import read_listing
 from moldgen.flow.tell import Tell
 from moldgen.kernel.face_signature import part_signs
 from moldgen.kernel.step_write import Looks, write_assembly, write_component
-from moldgen.model.revision import Alignment, Comparison, Fate, PartChange
+from moldgen.model.part import UPRIGHT
+from moldgen.model.revision import Alignment, Comparison, Fate, PartChange, Work
 from moldgen.model.tool import Component, Motion, Role
 from moldgen.output import palette
 from moldgen.output.compare_page import write_compare_page
@@ -139,9 +140,8 @@ def _part_compared(old: ToolRecord, new: ToolRecord) -> tuple[Alignment, tuple[P
     parts = [next((c for c in t.components if c.role is Role.PART), None) for t in (old, new)]
     if parts[0] is not None and parts[1] is not None and parts[0].digest == parts[1].digest and old.frame == new.frame:
         count = int(new.record["part"].get("faces", 0))
-        upright = ((1.0, 0.0, 0.0), (0.0, 1.0, 0.0), (0.0, 0.0, 1.0))
         how = f"as drawn: {count} of {count} faces, the two files of the part are equal"
-        return Alignment(upright, (0.0, 0.0, 0.0), how, count, count, 0.0), ()
+        return Alignment(UPRIGHT, (0.0, 0.0, 0.0), how, count, count, 0.0), ()
     before, after = part_signs(old.part_solid()), part_signs(new.part_solid())
     alignment = align(before, after)
     x, y, z = (float(v) for v in new.record["pull"]["direction"])
@@ -210,9 +210,9 @@ def _steel_findings(components: Sequence[ComparedComponent]) -> tuple[Finding, .
         Finding(
             code="compare.weld",
             severity=Severity.CAUTION,
-            message=f"{c.new}: steel is missing, in pieces: {sum(p.work.value == 'weld' for p in c.pieces)}",
+            message=f"{c.new}: steel is missing, in pieces: {sum(p.work is Work.WELD for p in c.pieces)}",
             where=c.new,
-            at=next(p.at_part for p in c.pieces if p.work.value == "weld"),
+            at=next(p.at_part for p in c.pieces if p.work is Work.WELD),
             value=c.weld_mm3,
             unit="mm^3",
             remedy="weld, or set in an insert; or change the part so that steel is only cut",
@@ -228,7 +228,7 @@ def _write(compared: Compared, tools: tuple[ToolRecord, ToolRecord], folder: Pat
     listed: list[Component] = []
     for component in compared.components:
         for piece, body in zip(component.change.pieces, component.pieces, strict=True):
-            role = Role.CORE if piece.work.value == "cut" else Role.CAVITY  # only its colour is meant
+            role = Role.CORE if piece.work is Work.CUT else Role.CAVITY  # only its colour is meant
             name = Path(piece.file).stem.replace("_", " ")
             listed.append(Component(name, role, body.solid, component.change.material, Motion.CORE_HALF))
             write_component(listed[-1], folder / piece.file, looks)

@@ -9,9 +9,9 @@ from typing import Final
 import numpy as np
 
 from moldgen.kernel.face_compare import SAME_PLACE, coaxial, in_same_place, on_same_surface, same_form
-from moldgen.kernel.face_signature import PartSigns, vector
+from moldgen.kernel.face_signature import PartSigns
 from moldgen.model.face_sign import FaceSign, SurfaceKind
-from moldgen.model.part import Vector
+from moldgen.model.part import Vector, vector
 
 FARTHEST: Final = 20.0
 """mm: a face of the same form further away than this is taken for another one (our choice)."""

@@ -25,7 +25,7 @@ from moldgen.kernel.face_surface import FaceSurface, face_surface
 from moldgen.kernel.guard import operation
 from moldgen.kernel.nearest import nearest_triangle
 from moldgen.model.face_sign import MOST_TWINS, FaceSign, SurfaceKind
-from moldgen.model.part import Vector
+from moldgen.model.part import Vector, vector
 from moldgen.tolerances import SAME_SURFACE
 
 
@@ -198,12 +198,6 @@ def _sign(surfaces: list[FaceSurface], faces: tuple[int, ...], rim: np.ndarray) 
         rim=vector(rim[1:] / rim[0] if rim[0] > 0.0 else center),
         faces=faces,
     )
-
-
-def vector(values: np.ndarray) -> Vector:
-    """Return three numbers as a plain vector, without minus zeros."""
-    x, y, z = (float(v) + 0.0 for v in values)
-    return x, y, z
 
 
 def _with_twins(signs: list[FaceSign]) -> tuple[FaceSign, ...]:

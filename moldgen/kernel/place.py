@@ -10,7 +10,7 @@ from OCP.gp import gp_GTrsf, gp_Mat, gp_Pnt, gp_Trsf, gp_Vec, gp_XYZ
 from OCP.TopoDS import TopoDS_Shape
 
 from moldgen.kernel.guard import operation, present
-from moldgen.model.part import MoldFrame, Vector
+from moldgen.model.part import UPRIGHT, MoldFrame, Rows, Vector
 
 
 def to_mold(solid: TopoDS_Shape, frame: MoldFrame) -> TopoDS_Shape:
@@ -20,7 +20,7 @@ def to_mold(solid: TopoDS_Shape, frame: MoldFrame) -> TopoDS_Shape:
         turn = gp_Trsf()
         (a, b, c), (d, e, f), (g, h, i) = frame.rotation
         turn.SetValues(a, b, c, 0.0, d, e, f, 0.0, g, h, i, 0.0)
-        if frame.rotation == ((1.0, 0.0, 0.0), (0.0, 1.0, 0.0), (0.0, 0.0, 1.0)):
+        if frame.rotation == UPRIGHT:
             return scaled
         return present(BRepBuilderAPI_Transform(scaled, turn, True).Shape(), "turning the part")
 
@@ -30,12 +30,11 @@ def to_part(solid: TopoDS_Shape, frame: MoldFrame) -> TopoDS_Shape:
     (a, b, c), (d, e, f), (g, h, i) = frame.rotation
     back = turned(solid, ((a, d, g), (b, e, h), (c, f, i)))
     kx, ky, kz = frame.factors
-    upright = ((1.0, 0.0, 0.0), (0.0, 1.0, 0.0), (0.0, 0.0, 1.0))
     with operation("bring the part out of the mold", operands=(solid,)):
-        return _scaled(back, MoldFrame((1.0 / kx, 1.0 / ky, 1.0 / kz), frame.fixed_point, upright))
+        return _scaled(back, MoldFrame((1.0 / kx, 1.0 / ky, 1.0 / kz), frame.fixed_point, UPRIGHT))
 
 
-def turned(shape: TopoDS_Shape, rows: tuple[Vector, Vector, Vector], by: Vector = (0.0, 0.0, 0.0)) -> TopoDS_Shape:
+def turned(shape: TopoDS_Shape, rows: Rows, by: Vector = (0.0, 0.0, 0.0)) -> TopoDS_Shape:
     """Return a copy of a shape, turned about the origin by a rotation given by its rows, then moved [mm]."""
     motion = gp_Trsf()
     (a, b, c), (d, e, f), (g, h, i) = rows

@@ -8,10 +8,7 @@ from dataclasses import dataclass, replace
 from enum import StrEnum
 from typing import Any, Final
 
-from moldgen.model.part import Vector
-
-Rows = tuple[Vector, Vector, Vector]
-"""A rotation, row-major."""
+from moldgen.model.part import Rows, Vector, vector
 
 Spread = tuple[float, float, float, float, float, float]
 """A symmetric matrix: xx, yy, zz, xy, xz, yz."""
@@ -152,17 +149,17 @@ class FaceSign:
             return cls(
                 kind=SurfaceKind(plain["kind"]),
                 area_mm2=float(plain["area_mm2"]),
-                center=_vector(plain["center"]),
+                center=vector(plain["center"]),
                 spread=_spread(plain["spread"]),
-                axis=_vector(plain["axis"]),
-                at=_vector(plain["at"]),
+                axis=vector(plain["axis"]),
+                at=vector(plain["at"]),
                 radius=float(plain["radius"]),
                 minor=float(plain["minor"]),
                 angle_deg=float(plain["angle_deg"]),
                 side=int(plain["side"]),
                 perimeter_mm=float(plain["perimeter_mm"]),
-                rim=_vector(plain["rim"]),
-                twins=tuple(_vector(t) for t in plain["twins"]),
+                rim=vector(plain["rim"]),
+                twins=tuple(vector(t) for t in plain["twins"]),
             )
         except (KeyError, TypeError) as error:
             raise ValueError(f"this is no signature of a face: {error}") from error
@@ -172,9 +169,9 @@ MOST_TWINS: Final = 24
 """So many places of equal faces are kept (our choice): enough for a row of bosses, little enough to read."""
 
 
-def turned(rotation: Rows, vector: Vector) -> Vector:
-    """Return ``rotation @ vector``."""
-    x, y, z = (sum(a * b for a, b in zip(row, vector, strict=True)) for row in rotation)
+def turned(rotation: Rows, way: Vector) -> Vector:
+    """Return ``rotation @ way``."""
+    x, y, z = (sum(a * b for a, b in zip(row, way, strict=True)) for row in rotation)
     return x, y, z
 
 
@@ -187,11 +184,6 @@ def _turned_spread(rotation: Rows, spread: Spread) -> Spread:
 
 def _rounded(value: float, digits: int = DIGITS) -> float:
     return round(value, digits) + 0.0  # no minus zero
-
-
-def _vector(values: Sequence[Any]) -> Vector:
-    x, y, z = values
-    return float(x), float(y), float(z)
 
 
 def _spread(values: Sequence[Any]) -> Spread:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import Any
 
@@ -11,6 +12,23 @@ Solid = Any
 Vector = tuple[float, float, float]
 Box = tuple[Vector, Vector]
 """Lower and upper corner [mm]."""
+
+Rows = tuple[Vector, Vector, Vector]
+"""A rotation by its rows."""
+
+UPRIGHT: Rows = ((1.0, 0.0, 0.0), (0.0, 1.0, 0.0), (0.0, 0.0, 1.0))
+"""No rotation at all."""
+
+
+def vector(values: Iterable[Any]) -> Vector:
+    """Return three numbers, such as a row of an array, as a plain vector without minus zeros.
+
+    Raises
+    ------
+    TypeError, ValueError : these are not three numbers
+    """
+    x, y, z = (float(v) + 0.0 for v in values)
+    return x, y, z
 
 
 @dataclass(frozen=True)
@@ -56,7 +74,7 @@ class MoldFrame:
 
     factors: Vector
     fixed_point: Vector
-    rotation: tuple[Vector, Vector, Vector]
+    rotation: Rows
 
     def to_mold(self, point: Vector) -> Vector:
         """Return a part point [mm] in mold coordinates [mm]."""

@@ -10,7 +10,7 @@ from dataclasses import dataclass, field
 from enum import StrEnum
 
 from moldgen.finding import Finding
-from moldgen.model.part import Box, Vector
+from moldgen.model.part import Box, Rows, Vector
 
 
 class Fate(StrEnum):
@@ -41,7 +41,7 @@ class Alignment:
     scale : how much larger the whole new part is; 1 unless it is the old one grown or shrunk
     """
 
-    rotation: tuple[Vector, Vector, Vector]
+    rotation: Rows
     translation: Vector
     how: str
     matched: int

@@ -12,8 +12,8 @@ import numpy as np
 from moldgen.errors import PartError
 from moldgen.kernel.face_compare import SAME_PLACE, on_same_surface
 from moldgen.kernel.face_signature import PartSigns
-from moldgen.model.face_sign import FaceSign, Rows
-from moldgen.model.part import Vector
+from moldgen.model.face_sign import FaceSign
+from moldgen.model.part import Rows, Vector, vector
 from moldgen.model.revision import Alignment
 from moldgen.revision.congruent import STAY, Faces, Motion, Pairs
 from moldgen.revision.motion_search import Candidate, best_motions, moved_by
@@ -218,9 +218,8 @@ def _nothing_fits(found: _Fit | None) -> PartError:
 
 def _told(old: PartSigns, new: PartSigns, fit: _Fit) -> Alignment:
     rotation, shift = fit.motion.rotation, fit.motion.shift
-    rows: Rows = tuple(tuple(float(v) + 0.0 for v in row) for row in rotation)  # type: ignore[assignment]
-    by: Vector = (float(shift[0]) + 0.0, float(shift[1]) + 0.0, float(shift[2]) + 0.0)
-    bare = Alignment(rows, by, "", 0, 0, fit.residual, fit.scale)
+    a, b, c = (vector(row) for row in rotation)
+    bare = Alignment((a, b, c), vector(shift), "", 0, 0, fit.residual, fit.scale)
     placed = placed_signs(old, bare)
     matched = sum(len(s.faces) for s, p in zip(old.signs, placed, strict=True) if _lies_on(p, new.signs))
     count = len(old.body.faces)
@@ -244,7 +243,7 @@ def grown_motion(old: PartSigns, alignment: Alignment) -> tuple[Rows, Vector]:
     rotation, shift = np.array(alignment.rotation), np.array(alignment.translation)
     if alignment.scale != 1.0 and float(np.linalg.norm(shift)) > SAME_PLACE:
         shift = shift + (1.0 - alignment.scale) * rotation @ Faces.of(old.signs).corners.mean(axis=0)
-    return alignment.rotation, (float(shift[0]), float(shift[1]), float(shift[2]))
+    return alignment.rotation, vector(shift)
 
 
 def _lies_on(sign: FaceSign, signs: Sequence[FaceSign]) -> bool:

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from moldgen.model.part import Box, MoldFrame, Vector
+from moldgen.model.part import Box, MoldFrame, vector
 from moldgen.model.revision import PartChange, PartChangeKind
 from moldgen.revision.items import ItemPair
 
@@ -48,7 +48,7 @@ class Causes:
 def _told(pair: ItemPair) -> str:
     change = pair.change()
     if pair.old is None or pair.new is None:
-        return {"new": "is new"}.get(change.note, "is no longer there")
+        return "is new" if pair.old is None else "is no longer there"
     sizes = f"{change.was} to {change.now}" if change.was != change.now else ""
     return ", ".join(w for w in (change.note.replace("its end", "now ends").replace(" is ", " "), sizes) if w)
 
@@ -60,15 +60,15 @@ def _in_mold(change: PartChange, frame: MoldFrame) -> Box:
         low, high = np.minimum(low, low - change.shift), np.maximum(high, high - change.shift)
     corners = [frame.to_mold((float(x), float(y), float(z))) for x in (low[0], high[0]) for y in (low[1], high[1])
                for z in (low[2], high[2])]  # fmt: skip
-    return _vector(np.min(corners, axis=0)), _vector(np.max(corners, axis=0))
+    return vector(np.min(corners, axis=0)), vector(np.max(corners, axis=0))
 
 
 def _around(boxes: Sequence[Box]) -> Box:
-    return _vector(np.min([b[0] for b in boxes], axis=0)), _vector(np.max([b[1] for b in boxes], axis=0))
+    return vector(np.min([b[0] for b in boxes], axis=0)), vector(np.max([b[1] for b in boxes], axis=0))
 
 
 def _grown(box: Box, by: float) -> Box:
-    return _vector(np.array(box[0]) - by), _vector(np.array(box[1]) + by)
+    return vector(np.array(box[0]) - by), vector(np.array(box[1]) + by)
 
 
 def _meets(one: Box, other: Box) -> bool:
@@ -86,8 +86,3 @@ def _share(piece: Box, box: Box) -> float:
 
 def _size(box: Box) -> float:
     return float(np.prod(np.maximum(np.subtract(box[1], box[0]), 1e-9)))
-
-
-def _vector(values: np.ndarray) -> Vector:
-    x, y, z = (float(v) + 0.0 for v in values)
-    return (x, y, z)

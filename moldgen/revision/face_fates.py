@@ -9,15 +9,13 @@ from typing import Final
 import numpy as np
 
 from moldgen.kernel.face_compare import SAME_PLACE, on_same_surface, same_form, surface_gap
-from moldgen.model.face_sign import FaceSign, Rows, SurfaceKind
-from moldgen.model.part import Vector
+from moldgen.model.face_sign import FaceSign, SurfaceKind
+from moldgen.model.part import UPRIGHT, Vector, vector
 from moldgen.revision.laid import SAME_FREE, Laid
 from moldgen.revision.partners import Partner, partners
 
 SAME_SHIFT: Final = 2e-3
 """mm: shifts that differ by less are one (our choice: twice the tolerance of one place)."""
-
-_UNTURNED: Final[Rows] = ((1.0, 0.0, 0.0), (0.0, 1.0, 0.0), (0.0, 0.0, 1.0))
 
 
 @dataclass(frozen=True)
@@ -102,7 +100,7 @@ def _congruent(laid: Laid, old: Sequence[int], new: Sequence[int]) -> list[_Pair
     for m, n in np.argwhere(same_form(before, after, laid.tolerance)):
         a, b = before[m], after[n]
         x, y, z = (q - p for p, q in zip(a.center, b.center, strict=True))
-        there = a.placed(_UNTURNED, (x, y, z))
+        there = a.placed(UPRIGHT, (x, y, z))
         rims = float(np.linalg.norm(np.array(there.rim) - np.array(b.rim)))
         spread = float(np.abs(np.array(a.spread) - np.array(b.spread)).max())
         if rims > 2.0 * laid.tolerance or spread > 4.0 * laid.tolerance * max(a.reach_mm, laid.tolerance):
@@ -156,8 +154,7 @@ def _shift(laid: Laid, old: Sequence[int], new: Sequence[int]) -> Vector:
     exact = [k for k, i in enumerate(old) if laid.placed[i].kind is not SurfaceKind.FREE] or list(range(len(old)))
     weights = np.array([laid.placed[old[k]].area_mm2 for k in exact])
     shifts = [np.array(laid.new.signs[new[k]].center) - np.array(laid.placed[old[k]].center) for k in exact]
-    x, y, z = (weights @ np.array(shifts) / weights.sum()).tolist()
-    return x + 0.0, y + 0.0, z + 0.0
+    return vector(weights @ np.array(shifts) / weights.sum())
 
 
 def _with_trimmed(laid: Laid, group: MovedFaces, old: set[int], new: set[int]) -> MovedFaces:
@@ -166,7 +163,7 @@ def _with_trimmed(laid: Laid, group: MovedFaces, old: set[int], new: set[int]) -
     for i in first:  # grows while it is walked
         near = {k for j in second for k in laid.new.links[j]}
         for k in sorted((laid.old.links[i] & old) - set(first)):
-            there = laid.placed[k].placed(_UNTURNED, group.shift)
+            there = laid.placed[k].placed(UPRIGHT, group.shift)
             if not _leaves_its_surface(laid.placed[k], group.shift):
                 continue
             image = [n for n in sorted(near & new | set(second)) if on_same_surface(there, laid.new.signs[n])]
@@ -183,7 +180,7 @@ def _leaves_its_surface(sign: FaceSign, shift: Vector) -> bool:
     """
     if sign.kind is SurfaceKind.FREE:
         return float(np.linalg.norm(shift)) > SAME_FREE
-    return surface_gap(sign, sign.placed(_UNTURNED, shift)) > SAME_PLACE
+    return surface_gap(sign, sign.placed(UPRIGHT, shift)) > SAME_PLACE
 
 
 def components(numbers: Iterable[int], links: Callable[[int], Iterable[int]]) -> list[set[int]]:

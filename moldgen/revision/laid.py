@@ -11,7 +11,7 @@ import numpy as np
 from moldgen.kernel.face_compare import SAME_PLACE, on_same_surface
 from moldgen.kernel.face_signature import PartSigns
 from moldgen.model.face_sign import FaceSign, SurfaceKind
-from moldgen.model.part import Box, Vector
+from moldgen.model.part import Box, Vector, vector
 from moldgen.model.revision import Alignment
 from moldgen.revision.align import grown_motion, placed_signs
 from moldgen.revision.congruent import STAY, Faces, Pairs
@@ -70,10 +70,10 @@ class Laid:
     def overlap(self, old: int, new: int) -> bool:
         """True when an old and a new face, on one surface, have a place in common."""
         for point in self.over(self.old.samples(old, SAMPLES)):
-            if self.new.distance(new, _vector(point)) <= ON_MESH:
+            if self.new.distance(new, vector(point)) <= ON_MESH:
                 return True
         for point in self.back(self.new.samples(new, SAMPLES)):
-            if self.old.distance(old, _vector(point)) <= ON_MESH:
+            if self.old.distance(old, vector(point)) <= ON_MESH:
                 return True
         return False
 
@@ -98,7 +98,7 @@ class Laid:
             corners = np.vstack([self.new.box(n) for n in new])
         else:
             corners = self.over(np.vstack([self.old.vertices(n, 10**6) for n in old]))
-        return _vector(corners.min(axis=0)), _vector(corners.max(axis=0))
+        return vector(corners.min(axis=0)), vector(corners.max(axis=0))
 
     def place(self, old: tuple[int, ...], new: tuple[int, ...]) -> Vector:
         """Return the axis of the largest of some faces where it goes around one, else a point on it; new ones first."""
@@ -108,8 +108,8 @@ class Laid:
         if sign.kind in (SurfaceKind.CYLINDER, SurfaceKind.CONE) and _inside(sign.at, self.box(old, new)):
             return sign.at
         if new:
-            return _vector(self.new.samples(largest, 1)[0])
-        return _vector(self.over(self.old.samples(largest, 1))[0])
+            return vector(self.new.samples(largest, 1)[0])
+        return vector(self.over(self.old.samples(largest, 1))[0])
 
 
 def _inside(point: Vector, box: Box) -> bool:
@@ -120,12 +120,7 @@ def _inside(point: Vector, box: Box) -> bool:
 
 def _all_on(points: np.ndarray, part: PartSigns) -> bool:
     for point in points:
-        number, gap = part.nearest(_vector(point))
+        number, gap = part.nearest(vector(point))
         if gap > ON_MESH or part.exact_distance(number, point) > SAME_FREE:
             return False
     return True
-
-
-def _vector(values: np.ndarray) -> Vector:
-    x, y, z = (float(v) + 0.0 for v in values)
-    return x, y, z

@@ -9,8 +9,9 @@ from typing import Any
 
 import numpy as np
 
+from moldgen.model.part import UPRIGHT
 from moldgen.model.revision import Alignment, NumberChange, PartChange
-from moldgen.revision.placing import UPRIGHT, Placing
+from moldgen.revision.placing import Placing
 
 NOISE = 1e-6
 """Relative change below which a number is the same (our choice: rounding to twelve digits leaves far less)."""

@@ -11,7 +11,7 @@ import numpy as np
 
 from moldgen.kernel.face_compare import SAME_PLACE, coaxial
 from moldgen.model.face_sign import FaceSign, SurfaceKind
-from moldgen.model.part import Vector
+from moldgen.model.part import Vector, vector
 
 LARGEST_STEP: Final = 10.0
 """mm: a plane or a round face that moved further is another one (our choice)."""
@@ -88,7 +88,7 @@ def _plane(a: FaceSign, b: FaceSign) -> _Rated | None:
     if beside > 0.5 * max(a.reach_mm, b.reach_mm) or tilt > LARGEST_TILT or abs(along) > LARGEST_STEP:
         return None
     if tilt <= SAME_LEAN or np.radians(tilt) * reach <= SAME_PLACE:
-        return abs(along) + 0.3 * beside, Way.SHIFTED, _vector(along * normal)
+        return abs(along) + 0.3 * beside, Way.SHIFTED, vector(along * normal)
     if abs(along) > max(0.5 * reach, 1.0):
         return None
     return abs(along) + 0.3 * beside + 0.1 * float(np.radians(tilt)) * reach, Way.LEANING, _NONE
@@ -114,7 +114,7 @@ def _round(a: FaceSign, b: FaceSign) -> _Rated | None:
     if lean * np.pi / 180.0 * (a.reach_mm + b.reach_mm) > 2.0 * SAME_PLACE or a.kind is not b.kind:
         return cost + 1.0, Way.OTHER, _NONE
     if radius <= SAME_PLACE and abs(a.angle_deg - b.angle_deg) <= SAME_LEAN:
-        return cost, Way.SHIFTED, _vector(beside)
+        return cost, Way.SHIFTED, vector(beside)
     return cost + 0.5, Way.RADIUS, _NONE
 
 
@@ -127,8 +127,3 @@ def _curved(a: FaceSign, b: FaceSign) -> _Rated | None:
     if a.kind is SurfaceKind.FREE or sizes <= SAME_PLACE:
         return gap + 0.5, Way.OTHER, _NONE
     return gap + sizes, Way.RADIUS, _NONE
-
-
-def _vector(values: np.ndarray) -> Vector:
-    x, y, z = (float(v) + 0.0 for v in values)
-    return x, y, z

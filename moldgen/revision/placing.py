@@ -14,14 +14,11 @@ from typing import Any
 import numpy as np
 
 from moldgen.kernel.place import turned
-from moldgen.model.part import Box, MoldFrame, Vector
+from moldgen.model.part import UPRIGHT, Box, MoldFrame, Rows, Vector, vector
 from moldgen.model.revision import Alignment
 
 STILL = 1e-7
 """A turn by less than this [rad] and a move by less [mm] are none: the coordinates then stay to the last digit."""
-
-Rows = tuple[Vector, Vector, Vector]
-UPRIGHT: Rows = ((1.0, 0.0, 0.0), (0.0, 1.0, 0.0), (0.0, 0.0, 1.0))
 
 
 @dataclass(frozen=True)
@@ -48,16 +45,16 @@ class Placing:
 
     def point(self, old: Vector) -> Vector:
         """Return where a point of the old mold stands [mm]."""
-        return _vector(np.array(self.rotation) @ old + np.array(self.shift))
+        return vector(np.array(self.rotation) @ old + np.array(self.shift))
 
     def way(self, old: Vector) -> Vector:
         """Return where a direction of the old mold looks."""
-        return _vector(np.array(self.rotation) @ old)
+        return vector(np.array(self.rotation) @ old)
 
     def box(self, old: Box) -> Box:
         """Return the box around a box of the old mold [mm]."""
         corners = np.array([self.point((x, y, z)) for x in _ends(old, 0) for y in _ends(old, 1) for z in _ends(old, 2)])
-        return _vector(corners.min(axis=0)), _vector(corners.max(axis=0))
+        return vector(corners.min(axis=0)), vector(corners.max(axis=0))
 
     def solid(self, old: Any) -> Any:
         """Return a solid of the old mold where it stands; unchanged if the tool stays."""
@@ -76,13 +73,8 @@ def place_old(old: MoldFrame, new: MoldFrame, alignment: Alignment) -> Placing:
     shift = fixed - rows @ np.array(old.to_mold(old.fixed_point))
     if np.abs(shift).max() < STILL:
         shift = np.zeros(3)
-    a, b, c = (_vector(row) for row in rows)
-    return Placing((a, b, c), _vector(shift))
-
-
-def _vector(values: np.ndarray) -> Vector:
-    x, y, z = (float(v) + 0.0 for v in values)
-    return (x, y, z)
+    a, b, c = (vector(row) for row in rows)
+    return Placing((a, b, c), vector(shift))
 
 
 def _ends(box: Box, axis: int) -> tuple[float, float]:

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 
@@ -15,12 +14,12 @@ from moldgen.kernel.measure import bounding_box
 from moldgen.kernel.piece_measure import depth_from, point_inside
 from moldgen.kernel.place import moved, turned
 from moldgen.kernel.solid_difference import DifferentPiece, SolidDifference, fine_body, solid_difference
-from moldgen.model.part import Vector
+from moldgen.model.part import UPRIGHT, Vector, vector
 from moldgen.model.revision import ComponentChange, Fate, SteelPiece, Work
 from moldgen.model.tool import Role
 from moldgen.revision.causes import Causes
 from moldgen.revision.components import BLOCKS, SMALL_PARTS, Match, matched
-from moldgen.revision.placing import UPRIGHT, Placing
+from moldgen.revision.placing import Placing
 from moldgen.revision.shared_block import shared_upright, turned_by_deg
 from moldgen.revision.tool_record import ToolRecord
 
@@ -73,7 +72,7 @@ def _compared(
         return _whole(match, Fate.GONE if match.new is None else Fate.NEW)
     shift = match.shift or (0.0, 0.0, 0.0)
     still = max(map(abs, shift)) <= STANDS_STILL
-    if placing.rotation == Placing().rotation and match.old.digest == match.new.digest:
+    if placing.rotation == UPRIGHT and match.old.digest == match.new.digest:
         return _whole(match, Fate.UNCHANGED if still else Fate.MOVED, "" if still else _moved_by(shift))
     now = match.now[0]
     standing = moved(match.new.solid, now.at) if any(now.at) else match.new.solid
@@ -141,7 +140,7 @@ def _copies(
         # a copy with geometry of its own: STEP would hold shared geometry once only
         here = body if not any(by) else fine_body(turned(piece.solid, UPRIGHT, by))
         low, high = bounding_box(here.solid)
-        at, box = _vector(inside + by), (_vector(low), _vector(high))
+        at, box = vector(inside + by), (vector(low), vector(high))
         name = copy.name if len(copy.part.positions) > 1 else copy.part.name
         told = SteelPiece(
             component=name,
@@ -165,8 +164,8 @@ def _moved_whole(was: Body, steel: Body) -> Vector | None:
     by = low - old_low
     if np.abs((high - low) - (old_high - old_low)).max() > 1e-4 or np.abs(by).max() <= STANDS_STILL:
         return None
-    there = fine_body(moved(was.solid, _vector(by)))
-    return _vector(by) if solid_difference(there, steel).none else None
+    there = fine_body(moved(was.solid, vector(by)))
+    return vector(by) if solid_difference(there, steel).none else None
 
 
 def _clip(
@@ -207,7 +206,7 @@ def _clip_turned(
     (part,) = (c for c in tools[1].components if c.role is Role.PART)
     low, high = bounding_box(part.solid)
     old, new = tools[0].block, tools[1].block
-    found = shared_upright(old, new, placing, (_vector(low), _vector(high)))
+    found = shared_upright(old, new, placing, (vector(low), vector(high)))
     if found is None:
         return None, f"{by}: compared with their outsides"
     floor, roof = placing.box(old)[0][2], placing.box(old)[1][2]
@@ -263,8 +262,3 @@ def _moved_by(shift: Sequence[float]) -> str:
 
 def _difference(a: Vector, b: Vector) -> Vector:
     return (a[0] - b[0], a[1] - b[1], a[2] - b[2])
-
-
-def _vector(values: Any) -> Vector:
-    x, y, z = (float(v) + 0.0 for v in values)
-    return (x, y, z)

@@ -13,7 +13,7 @@ from moldgen.canon import sha256_file
 from moldgen.errors import PartError, SpecError
 from moldgen.kernel.place import to_part
 from moldgen.kernel.step_read import read_assembly
-from moldgen.model.part import Box, MoldFrame, Vector
+from moldgen.model.part import Box, MoldFrame, Vector, vector
 from moldgen.model.tool import Role
 
 SAME_AXIS = 1e-4
@@ -93,9 +93,9 @@ def tool_record(folder: Path, record: Mapping[str, Any]) -> ToolRecord:
     """
     try:
         shrink, pull = record["shrink"], record["pull"]
-        a, b, c = (_vector(row) for row in pull["part_to_mold_rotation"])
+        a, b, c = (vector(row) for row in pull["part_to_mold_rotation"])
         frame = MoldFrame(
-            (float(shrink["x"]), float(shrink["y"]), float(shrink["z"])), _vector(shrink["fixed_point_mm"]), (a, b, c)
+            (float(shrink["x"]), float(shrink["y"]), float(shrink["z"])), vector(shrink["fixed_point_mm"]), (a, b, c)
         )
         low, high = record["parting"]["block_mm"]
         components = tuple(
@@ -103,7 +103,7 @@ def tool_record(folder: Path, record: Mapping[str, Any]) -> ToolRecord:
                 str(c["name"]),
                 Role(c["role"]),
                 str(c["material"]),
-                tuple(_vector(p) for p in c["positions"]),
+                tuple(vector(p) for p in c["positions"]),
                 folder / str(c["file"]),
             )
             for c in record["components"]
@@ -114,9 +114,4 @@ def tool_record(folder: Path, record: Mapping[str, Any]) -> ToolRecord:
     except (KeyError, TypeError, ValueError) as error:
         what = f"the manifest lacks what a comparison needs: {error!r}"
         raise SpecError(what, where=str(folder), remedy="build the tool again with this version") from error
-    return ToolRecord(name, record, frame, (_vector(low), _vector(high)), components)
-
-
-def _vector(values: Any) -> Vector:
-    x, y, z = (float(v) for v in values)
-    return (x, y, z)
+    return ToolRecord(name, record, frame, (vector(low), vector(high)), components)

@@ -9,11 +9,11 @@ import pytest
 from OCP.BRepPrimAPI import BRepPrimAPI_MakeBox
 from OCP.gp import gp_Pnt
 
-from moldgen.model.part import MoldFrame
+from moldgen.model.part import UPRIGHT, MoldFrame
 from moldgen.model.revision import Fate
 from moldgen.model.tool import Role
 from moldgen.revision.causes import Causes
-from moldgen.revision.placing import UPRIGHT, Placing
+from moldgen.revision.placing import Placing
 from moldgen.revision.steel import compare_steel
 from moldgen.revision.tool_record import SteelPart, ToolRecord
 from tests.kernel_io.test_step_read import write_raw

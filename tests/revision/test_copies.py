@@ -10,11 +10,11 @@ from OCP.gp import gp_Ax2, gp_Dir, gp_Pnt
 from moldgen.kernel.measure import bounding_box, volume
 from moldgen.kernel.step_read import read_assembly
 from moldgen.kernel.step_write import Looks, write_assembly
-from moldgen.model.part import MoldFrame
+from moldgen.model.part import UPRIGHT, MoldFrame
 from moldgen.model.revision import Fate
 from moldgen.model.tool import Component, Motion, Role
 from moldgen.revision.causes import Causes
-from moldgen.revision.placing import UPRIGHT, Placing
+from moldgen.revision.placing import Placing
 from moldgen.revision.steel import compare_steel
 from moldgen.revision.tool_record import SteelPart, ToolRecord
 from tests.kernel_io.test_step_read import write_raw

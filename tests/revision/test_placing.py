@@ -12,11 +12,11 @@ import numpy as np
 import pytest
 
 from moldgen.errors import SpecError
-from moldgen.model.part import MoldFrame
+from moldgen.model.part import UPRIGHT, MoldFrame
 from moldgen.model.revision import Alignment
 from moldgen.revision.items import paired_items
 from moldgen.revision.numbers import choice_changes, number_changes
-from moldgen.revision.placing import UPRIGHT, Placing, place_old
+from moldgen.revision.placing import Placing, place_old
 from moldgen.revision.tool_record import ToolRecord, tool_record
 
 STILL = Alignment(UPRIGHT, (0.0, 0.0, 0.0), "as drawn", 10, 10, 0.0)
