@@ -11,19 +11,25 @@ from enum import Enum
 from pathlib import Path, PurePath
 from typing import Any
 
+DIGITS = 12
+"""Significant digits of numbers in outputs."""
 
-def plain(value: Any) -> Any:
-    """Return `value` as JSON types: dataclasses to mappings, enums to their value, floats rounded to 12 digits."""
+EXACT = 17
+"""Significant digits that tell any two numbers apart."""
+
+
+def plain(value: Any, digits: int = DIGITS) -> Any:
+    """Return `value` as JSON types: dataclasses to mappings, enums to their value, floats rounded to `digits`."""
     if isinstance(value, Enum):
-        return plain(value.value)
+        return plain(value.value, digits)
     if isinstance(value, (bool, str, int)) or value is None:
         return value
     if isinstance(value, PurePath):
         return value.as_posix()
     if isinstance(value, (list, tuple)):
-        return [plain(v) for v in value]
+        return [plain(v, digits) for v in value]
     members = _members(value)
-    return _number(value) if members is None else {str(k): plain(v) for k, v in members.items()}
+    return _number(value, digits) if members is None else {str(k): plain(v, digits) for k, v in members.items()}
 
 
 def _members(value: Any) -> Mapping[Any, Any] | None:
@@ -35,13 +41,13 @@ def _members(value: Any) -> Mapping[Any, Any] | None:
     return None
 
 
-def _number(value: Any) -> float:
+def _number(value: Any, digits: int) -> float:
     if not hasattr(value, "__float__"):
         raise TypeError(f"no JSON form for {type(value).__name__}")
     number = float(value)
     if not math.isfinite(number):
         raise ValueError(f"not a finite number: {number}")
-    return float(f"{number:.12g}") + 0.0  # + 0.0 turns -0.0 into 0.0
+    return float(f"{number:.{digits}g}") + 0.0  # + 0.0 turns -0.0 into 0.0
 
 
 def to_json(value: Any, *, indent: int | None = 2) -> str:
@@ -65,7 +71,7 @@ def sha256_file(path: Path) -> str:
         return ""
 
 
-def sha256_json(value: Any) -> str:
+def sha256_json(value: Any, digits: int = DIGITS) -> str:
     """Return the SHA-256 of the canonical JSON of `value`, independent of the order of mapping keys."""
-    text = json.dumps(plain(value), sort_keys=True, ensure_ascii=False, separators=(",", ":"))
+    text = json.dumps(plain(value, digits), sort_keys=True, ensure_ascii=False, separators=(",", ":"))
     return sha256_bytes(text.encode())

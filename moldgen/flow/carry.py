@@ -10,7 +10,7 @@ import numpy as np
 
 from moldgen.errors import KernelError, PartError
 from moldgen.finding import Decision, Finding, Notes, Severity
-from moldgen.flow.carry_pull import SAME_WAY
+from moldgen.flow.carry_pull import KEPT, SAME_WAY
 from moldgen.flow.review import Reviewed
 from moldgen.flow.side_plan import turned_back
 from moldgen.flow.words import direction_text
@@ -30,7 +30,8 @@ ALIKE = 0.985
 
 
 PLAN = 0.5
-"""Share of the way of a gate into the part that must lie in plan: what is edited to point along the pull is no way."""
+"""Share of the way of a gate into the part that must lie in plan: what is edited to point along the pull is no way
+(our choice)."""
 
 
 def kept_layout(reviewed: Reviewed) -> tuple[Kept | None, Notes]:
@@ -174,10 +175,8 @@ def at_accepted_level(reviewed: Reviewed, free: Parted, part_at: Callable[[float
     else:
         off = abs(parted.level - level)
         if off <= SNAP and (parted.check.proved or not free.check.proved):
-            text = "kept from the accepted layout"
-            return replace(parted, asked=None), Notes(
-                decisions=(Decision("parting height", f"{level:.3f} mm (mold)", text),)
-            )
+            decision = Decision("parting height", f"{level:.3f} mm (mold)", KEPT)
+            return replace(parted, asked=None), Notes(decisions=(decision,))
         why = f"the parting line settles {off:.3f} mm from it" if off > SNAP else parted.check.complaint
     finding = Finding(
         "accepted.parting_moved",

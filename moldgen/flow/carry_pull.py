@@ -8,12 +8,13 @@ import numpy as np
 
 from moldgen.finding import Decision, Notes
 from moldgen.model.accepted import SNAP, Accepted
+from moldgen.model.layout import Chooser
 from moldgen.model.part import MoldFrame, Pull
 
 SAME_WAY = 1e-9
 """1 - cosine up to which two directions are the same."""
 
-KEPT = "kept from the accepted layout"
+KEPT = Chooser.KEPT.value
 
 
 def pulls_as_accepted(pulls: tuple[Pull, ...], accepted: Accepted | None) -> tuple[Pull, ...]:
@@ -42,5 +43,5 @@ def frame_as_accepted(frame: MoldFrame, accepted: Accepted | None) -> tuple[Mold
     if off <= SNAP:
         return frame, Notes()
     place = ", ".join(f"{v:g}" for v in accepted.fixed_point)
-    why = f"kept from the accepted layout, though the middle of the part moved by {off:.3f} mm"
+    why = f"{KEPT}, though the middle of the part moved by {off:.3f} mm"
     return replace(frame, fixed_point=accepted.fixed_point), Notes(decisions=(Decision("fixed point", place, why),))

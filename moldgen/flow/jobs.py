@@ -15,9 +15,8 @@ from moldgen.flow.store import Store, open_store
 from moldgen.flow.tell import Tell
 from moldgen.flow.unchanged import UNCHANGED, build_key, remember, stage_table, unchanged
 from moldgen.spec.accepted import load_accepted
-from moldgen.spec.declared import located
+from moldgen.spec.declared import is_key, located
 from moldgen.spec.load import LoadedSpec, load_spec
-from moldgen.spec.schema import Spec
 
 LOADING = "load the kernel"
 """The stage that takes seconds before anything about the part happens."""
@@ -32,7 +31,7 @@ def build(job: Job, tell: Tell) -> JobResult:
     store, options = open_store(), job.options
     loaded = replace(loaded, accepted=None if options.fresh else load_accepted(loaded.path))
     tell.output(final)
-    key = build_key(loaded, options, loaded.accepted)
+    key = build_key(loaded, options)
     same = unchanged(key, final, store)
     if same is not None:
         explained = stage_table({"all": f"kept: {UNCHANGED}"})
@@ -147,12 +146,9 @@ def _located(loaded: LoadedSpec) -> Iterator[None]:
         yield
     except MoldgenError as error:
         error.what, error.where = located(error.what, loaded), located(error.where, loaded)
-        if not isinstance(error, SpecError):
-            raise
-        key = error.where.replace("[", ".").replace("]", "")
-        if key.partition(".")[0] in Spec.model_fields:
+        if isinstance(error, SpecError) and is_key(error.where):
             error.what = f"{error.where}: {error.what}"
-            error.where = loaded.locate(key)
+            error.where = loaded.locate(error.where)
         raise
 
 

@@ -276,21 +276,27 @@ def _blocks(
 
 def _parted(reviewed: Reviewed, prepared: Prepared, corners: Corners, level: float | None, stages: Stages) -> Parted:
     """Return the parted mold; of the part as it was prepared this is a stage, since little else bears on it."""
+    avoid = marked_points(reviewed, "no_parting_line")
+
+    def part() -> Parted:
+        return _parted_now(reviewed, prepared, corners, (level, avoid), stages)
+
     if prepared is not reviewed.prepared:
-        return _parted_now(reviewed, prepared, corners, level, stages)
-    avoid = [point.tolist() for point in marked_points(reviewed, "no_parting_line")]
-    return stages.make(
-        "part the mold",
-        {"prepared part": reviewed.made, "block": [c.tolist() for c in corners], "level": level, "kept clear": avoid},
-        lambda: _parted_now(reviewed, prepared, corners, level, stages),
-    ).value
+        return part()
+    plain = {"block": [c.tolist() for c in corners], "level": level, "kept clear": [p.tolist() for p in avoid]}
+    return stages.make("part the mold", {"prepared part": reviewed.made, **plain}, part).value
 
 
 def _parted_now(
-    reviewed: Reviewed, prepared: Prepared, corners: Corners, level: float | None, stages: Stages
+    reviewed: Reviewed,
+    prepared: Prepared,
+    corners: Corners,
+    asked: tuple[float | None, tuple[np.ndarray, ...]],
+    stages: Stages,
 ) -> Parted:
+    """Return the parted mold; `asked`: the level [mm], and points that the parting line keeps clear of (3,) [mm]."""
+    level, avoid = asked
     with stages.tell.stage("part the mold") as stage:
-        avoid = marked_points(reviewed, "no_parting_line")
         part = prepared.trapped.part
         try:
             parted = part_halves(prepared.body, prepared.kinds, part, corners, level=level, avoid=avoid)

@@ -14,10 +14,10 @@ from dataclasses import dataclass
 from functools import cached_property
 from typing import Any, Generic, TypeVar, cast
 
-from moldgen.canon import sha256_bytes, sha256_json
+from moldgen.canon import EXACT, sha256_bytes, sha256_json
 from moldgen.errors import PartError
 from moldgen.flow.tell import Tell
-from moldgen.flow.versions import versions
+from moldgen.flow.versions import Versioned
 from moldgen.kernel.frozen import freeze, thaw
 from moldgen.kernel.rehearse import times_given_up
 from moldgen.memory import Memory
@@ -61,7 +61,7 @@ class Asked(Generic[T]):
     def __init__(self, stages: Stages, name: str, inputs: Mapping[str, object], *, lasting: bool = True) -> None:
         hashes = {key: _hash(value) for key, value in inputs.items()}
         self._memory, self._lasting = stages.memory, lasting
-        self._key = sha256_json({"stage": name, "inputs": hashes, "versions": versions()})
+        self._key = sha256_json({"stage": name, "inputs": hashes})
         data = self._memory.recall(self._key) if lasting else None
         stages.runs.append(StageRun(stages.numbered(name), data is not None, hashes))
         self._given_up = times_given_up()
@@ -88,10 +88,13 @@ class Asked(Generic[T]):
 
 
 class Stages:
-    """Runs the stages of one build, or recalls what they made before; `runs` tells which."""
+    """Runs the stages of one build, or recalls what they made before; `runs` tells which.
+
+    memory : what was kept by the same versions of everything that computes
+    """
 
     def __init__(self, memory: Memory, tell: Tell) -> None:
-        self.memory = memory
+        self.memory = Versioned(memory)
         self.tell = tell
         self.runs: list[StageRun] = []
 
@@ -128,27 +131,8 @@ class Stages:
         return f"{name} ({before + 1})" if before else name
 
 
-class Versioned:
-    """A memory whose keys also name everything that computes."""
-
-    def __init__(self, memory: Memory) -> None:
-        self._memory = memory
-
-    def recall(self, key: str) -> bytes | None:
-        """Return what was kept under `key` by the same versions."""
-        return self._memory.recall(_versioned(key))
-
-    def keep(self, key: str, data: bytes) -> None:
-        """Keep `data` under `key` for the same versions."""
-        self._memory.keep(_versioned(key), data)
-
-
-def _versioned(key: str) -> str:
-    return sha256_json({"key": key, "versions": versions()})
-
-
 def _hash(value: object) -> str:
-    return value.key if isinstance(value, Made) else sha256_json(value)
+    return value.key if isinstance(value, Made) else sha256_json(value, EXACT)  # the last digit reaches the bytes
 
 
 def reasons(runs: list[StageRun], before: Mapping[str, Mapping[str, str]] | None) -> dict[str, str]:

@@ -11,9 +11,9 @@ from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from pathlib import Path
 
-from moldgen.canon import sha256_file, sha256_json
+from moldgen.canon import EXACT, sha256_file, sha256_json
 from moldgen.flow.job import JobResult, Options, Table
-from moldgen.flow.versions import versions
+from moldgen.flow.versions import Versioned
 from moldgen.memory import Memory
 from moldgen.spec.load import LoadedSpec
 
@@ -28,11 +28,8 @@ class _Outcome:
     files: dict[str, str]
 
 
-def build_key(loaded: LoadedSpec, options: Options, accepted: object = None) -> str:
-    """Return the SHA-256 of all that a build depends on, "" where nobody knows that (the user's own function).
-
-    accepted : the accepted layout that the build starts from
-    """
+def build_key(loaded: LoadedSpec, options: Options) -> str:
+    """Return the SHA-256 of all inputs of a build, "" where nobody knows them (the user's own function)."""
     if loaded.spec.part.function is not None:
         return ""
     return sha256_json(
@@ -40,16 +37,16 @@ def build_key(loaded: LoadedSpec, options: Options, accepted: object = None) -> 
             "spec": str(loaded.path),  # findings name the file as the user did
             "spec_sha256": loaded.sha256,
             "part_sha256": "" if loaded.part_file is None else sha256_file(loaded.part_file),
-            "accepted": accepted,
+            "accepted": loaded.accepted,
             "pictures": options.pictures,
-            "versions": versions(),
-        }
+        },
+        EXACT,
     )
 
 
 def unchanged(key: str, folder: Path, memory: Memory) -> JobResult | None:
     """Return what came of the build of `key` if the folder still holds its output, whole; None if it must run."""
-    data = memory.recall(key) if key else None
+    data = Versioned(memory).recall(key) if key else None
     if data is None:
         return None
     outcome: _Outcome = pickle.loads(data)  # noqa: S301  the store holds only our own
@@ -62,14 +59,10 @@ def unchanged(key: str, folder: Path, memory: Memory) -> JobResult | None:
 def remember(key: str, folder: Path, result: JobResult, memory: Memory) -> None:
     """Remember what came of the build of `key` that wrote `folder`."""
     if key:
-        outcome = _Outcome(replace(result, output=None, timings_s=()), files_in(folder))
-        memory.keep(key, pickle.dumps(outcome))
-
-
-def files_in(folder: Path) -> dict[str, str]:
-    """Return the SHA-256 of each file in a folder by its path inside, none for a folder that is absent."""
-    paths = sorted(p for p in folder.rglob("*") if p.is_file()) if folder.is_dir() else []
-    return {p.relative_to(folder).as_posix(): sha256_file(p) for p in paths}
+        files = sorted(path for path in folder.rglob("*") if path.is_file())
+        hashes = {path.relative_to(folder).as_posix(): sha256_file(path) for path in files}
+        outcome = _Outcome(replace(result, output=None, timings_s=()), hashes)
+        Versioned(memory).keep(key, pickle.dumps(outcome))
 
 
 def stage_table(reasons: Mapping[str, str]) -> Table:

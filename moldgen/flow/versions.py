@@ -9,6 +9,7 @@ from pathlib import Path
 
 import moldgen
 from moldgen.canon import sha256_bytes, sha256_json
+from moldgen.memory import Memory
 
 LIBRARIES = (
     "cadquery",
@@ -47,6 +48,25 @@ def versions() -> dict[str, str]:
         "machine": f"{platform.system()} {platform.machine()}",
         **found,
     }
+
+
+class Versioned:
+    """A memory whose keys also name everything that computes."""
+
+    def __init__(self, memory: Memory) -> None:
+        self._memory = memory
+
+    def recall(self, key: str) -> bytes | None:
+        """Return what was kept under `key` by the same versions."""
+        return self._memory.recall(_versioned(key))
+
+    def keep(self, key: str, data: bytes) -> None:
+        """Keep `data` under `key` for the same versions."""
+        self._memory.keep(_versioned(key), data)
+
+
+def _versioned(key: str) -> str:
+    return sha256_json({"key": key, "versions": versions()})
 
 
 def _version(name: str) -> str:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
@@ -16,8 +15,9 @@ from moldgen.flow.make_tool import Built
 from moldgen.flow.prove import proof_findings
 from moldgen.flow.record import component_files, component_record, notes_record, review_record
 from moldgen.flow.reread import TOOL_FILE
-from moldgen.flow.stages import Asked, Stages, Versioned
+from moldgen.flow.stages import Asked, Stages
 from moldgen.flow.words import direction_text
+from moldgen.kernel.beside import Beside
 from moldgen.model.proof import Proof
 from moldgen.output.pictures import PictureJob, start_pictures
 from moldgen.output.tool_scene import tool_scene
@@ -35,14 +35,14 @@ def write_tool(built: Built, folder: Path, options: Options, stages: Stages) -> 
     KernelError : the kernel cannot translate the solids, or read them back
     OSError : a file cannot be written
     """
-    written = _export(built, folder, stages)
+    export = _Export(built, folder, stages)
     pictures = _Pictures(built, folder, options, stages)
     try:
         proofs, volumes = _proved(built, folder, stages)
         notes = built.notes + Notes(proof_findings(proofs)) + pictures.finish()
-        written()
+        export.finish()
     finally:
-        written(stop=True)
+        export.stop()
         pictures.stop()
     loaded = built.reviewed.loaded
     notes = located_notes(notes, loaded)
@@ -54,25 +54,31 @@ def write_tool(built: Built, folder: Path, options: Options, stages: Stages) -> 
     return _result(built, notes, proofs)
 
 
-def _export(built: Built, folder: Path, stages: Stages) -> Callable[..., None]:
-    """Write STEP files and tables. The components' files are there when what is returned was called."""
-    schema = built.reviewed.loaded.spec.output.step
-    asked = stages.ask("export", {"tool": built.steel, "output.step": schema})
-    if asked.made is not None:
-        _write(asked.made.value, folder)
-        return lambda **_: None
-    with stages.tell.stage("export") as stage:
-        files = export_tool(built.tool, folder, schema)
-        stage.detail = "STEP files and tables"
+class _Export:
+    """STEP files and tables, the components' files written by a process of their own while the tool is proved."""
 
-    def finish(*, stop: bool = False) -> None:
-        if stop:
-            files.stop()
-        else:
-            files.result()
-            asked.keep({path: (folder / path).read_bytes() for path in exported_files(built.tool)})
+    def __init__(self, built: Built, folder: Path, stages: Stages) -> None:
+        self._built, self._folder = built, folder
+        self._files: Beside[None] | None = None
+        schema = built.reviewed.loaded.spec.output.step
+        self._asked = stages.ask("export", {"tool": built.steel, "output.step": schema})
+        if self._asked.made is not None:
+            _write(self._asked.made.value, folder)
+            return
+        with stages.tell.stage("export") as stage:
+            self._files = export_tool(built.tool, folder, schema)
+            stage.detail = "STEP files and tables"
 
-    return finish
+    def finish(self) -> None:
+        """Wait until every file is there."""
+        if self._files is not None:
+            self._files.result()
+            self._asked.keep({p: (self._folder / p).read_bytes() for p in exported_files(self._built.tool)})
+
+    def stop(self) -> None:
+        """End the writing if it is still under way."""
+        if self._files is not None:
+            self._files.stop()
 
 
 def _write(files: dict[str, bytes], folder: Path) -> None:
@@ -86,7 +92,7 @@ def _proved(built: Built, folder: Path, stages: Stages) -> tuple[tuple[Proof, ..
 
     def prove() -> tuple[tuple[Proof, ...], dict[str, float]]:
         with stages.tell.stage("prove the tool") as stage:
-            bodies = reread_bodies(built.tool, folder, Versioned(stages.memory))
+            bodies = reread_bodies(built.tool, folder, stages.memory)
             proofs = prove_tool(bodies, built.claims)
             stage.detail = f"{sum(p.passed for p in proofs)} of {len(proofs)} passed"
             return proofs, exported_volumes(built.tool, bodies)

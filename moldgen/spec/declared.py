@@ -3,14 +3,14 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import replace
 from typing import Any, cast
 
 from pydantic import BaseModel
 
 from moldgen.errors import StageError
-from moldgen.finding import Notes
+from moldgen.finding import Finding, Notes
 from moldgen.spec.load import LoadedSpec
 from moldgen.spec.schema import Spec
 from moldgen.spec.tree import Path, Tree
@@ -18,8 +18,8 @@ from moldgen.spec.tree import Path, Tree
 _MARK = "\ufdd0"
 """Stands around a key whose place in the file is told later: a character that no text may hold."""
 
-_KEY = re.compile(r"[a-z_]+((\.[a-z_]+)|(\[\d+\]))+")
-"""A key inside a section: ``ejection.pins[0]``. The name of a section alone may mean something else: the part."""
+_KEY = re.compile(r"([a-z_]+)((?:\.[a-z_]+|\[\d+\])*)")
+"""A key of a spec: its section, and where it stands inside."""
 
 
 def narrowed(loaded: LoadedSpec, keys: Iterable[str]) -> LoadedSpec:
@@ -35,6 +35,12 @@ def narrowed(loaded: LoadedSpec, keys: Iterable[str]) -> LoadedSpec:
 def located(text: str, loaded: LoadedSpec) -> str:
     """Return a text of a stage with its marks turned into places in the file of the spec."""
     return re.sub(f"{_MARK}([^{_MARK}]*){_MARK}", lambda found: loaded.locate(found[1]), text)
+
+
+def is_key(text: str) -> bool:
+    """True for the name of a key of the spec: ``blocks``, ``ejection.pins[0].at``."""
+    found = _KEY.fullmatch(text)
+    return found is not None and found[1] in Spec.model_fields
 
 
 def key_values(spec: Spec, keys: Iterable[str]) -> dict[str, Any]:
@@ -69,23 +75,22 @@ def _plain(value: Any) -> Any:
 def located_notes(notes: Notes, loaded: LoadedSpec) -> Notes:
     """Return the notes of stages with marks, and places that are keys the user wrote, told as places in his file."""
 
-    def told(text: str) -> str:
-        return located(text, loaded)
+    def place(finding: Finding) -> Finding:
+        key = finding.where
+        inside = is_key(key) and key not in Spec.model_fields  # a section's name may mean something else: the part
+        return replace(finding, where=f"{loaded.locate(key)} ({key})") if inside and loaded.has(key) else finding
 
-    def place(where: str) -> str:
-        return f"{loaded.locate(where)} ({where})" if _KEY.fullmatch(where) and loaded.has(where) else told(where)
-
-    findings = (replace(f, where=place(f.where), message=told(f.message)) for f in notes.findings)
-    decisions = (replace(d, why=told(d.why), refused=tuple(map(told, d.refused))) for d in notes.decisions)
-    return replace(notes, findings=tuple(findings), decisions=tuple(decisions))
+    notes = replace(notes, findings=tuple(map(place, notes.findings)))
+    return _retold(notes, lambda text: located(text, loaded))
 
 
 def without_folder(notes: Notes, loaded: LoadedSpec) -> Notes:
     """Return located notes with the spec named by its file alone: an output does not tell where it was made."""
+    return _retold(notes, lambda text: text.replace(f"{loaded.path}:", f"{loaded.path.name}:"))
 
-    def told(text: str) -> str:
-        return text.replace(f"{loaded.path}:", f"{loaded.path.name}:")
 
+def _retold(notes: Notes, told: Callable[[str], str]) -> Notes:
+    """Return notes with `told` of every text that may name a place in the spec."""
     findings = (replace(f, where=told(f.where), message=told(f.message)) for f in notes.findings)
     decisions = (replace(d, why=told(d.why), refused=tuple(map(told, d.refused))) for d in notes.decisions)
     return replace(notes, findings=tuple(findings), decisions=tuple(decisions))

@@ -19,7 +19,7 @@ from moldgen.flow.store import Store
 from moldgen.flow.tell import silent
 from moldgen.kernel.rehearse import survives
 from moldgen.memory import Forgetful, Memory
-from moldgen.spec.declared import key_values, located, located_notes, narrowed
+from moldgen.spec.declared import is_key, key_values, located, located_notes, narrowed
 from moldgen.spec.load import load_spec
 
 GIB = 2**30
@@ -60,6 +60,12 @@ def test_a_stage_runs_again_when_an_input_changes() -> None:
     assert [run.kept for run in stages.runs] == [False]
 
 
+def test_the_last_digit_of_a_number_counts() -> None:
+    calls: list[int] = []
+    twice(lambda: calls.append(1), {"pin": 3.0}, {"pin": 3.0000000000000004})
+    assert len(calls) == 2
+
+
 def test_a_stage_runs_again_when_an_earlier_one_made_something_else() -> None:
     memory, calls = Kept(), []
     for size in (1, 2, 1):
@@ -72,7 +78,7 @@ def test_a_stage_runs_again_when_an_earlier_one_made_something_else() -> None:
 def test_other_code_keeps_nothing(monkeypatch: pytest.MonkeyPatch) -> None:
     memory, calls = Kept(), []
     for program in ("a", "b", "a"):
-        monkeypatch.setattr("moldgen.flow.stages.versions", lambda program=program: {"program_sha256": program})
+        monkeypatch.setattr("moldgen.flow.versions.versions", lambda program=program: {"program_sha256": program})
         Stages(memory, silent()).make("read", {"size": 1}, lambda: calls.append(1))
     assert len(calls) == 2
 
@@ -262,3 +268,8 @@ def test_a_finding_about_a_key_names_its_place_in_the_file(tmp_path: Path) -> No
     assert where("ejection.stroke") == "ejection.stroke"  # not written: there is no place to name
     assert where("part") == "part"
     assert where("core pin 1") == "core pin 1"
+
+
+def test_a_place_in_a_file_is_no_key_of_a_spec() -> None:
+    assert [is_key(text) for text in ("blocks", "blocks.length", "ejection.pins[0].at", "marks[1]")] == [True] * 4
+    assert [is_key(text) for text in ("part.yaml:2:1", "core pin 1", "", "nothing.here")] == [False] * 4
