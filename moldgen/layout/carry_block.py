@@ -13,11 +13,9 @@ from moldgen.catalog import preferred_size_up
 from moldgen.finding import Decision, Finding, Notes, Severity
 from moldgen.kernel.body import Body
 from moldgen.model.accepted import SNAP
-from moldgen.model.layout import BlockLayout
+from moldgen.model.layout import BlockLayout, Chooser
 from moldgen.model.part import Vector
 from moldgen.spec.sections import Blocks
-
-KEPT = "kept from the accepted layout"
 
 ENOUGH: Final = 0.98
 """Share of the rules' least steel with which an accepted wall or floor stays (our choice: 2 % are less than what the
@@ -118,28 +116,24 @@ def keep_block(
                 grown.append(_told(f"{side}{'xy'[axis]} side", more, steel, wall, "beside"))
             else:
                 thin += _thin(f"at the {side}{'xy'[axis]} side of", steel, wall, ("length", "width")[axis])
-    over, under = high[2] - part[2][1], part[2][0] - low[2]
-    if blocks.cavity_height is not None:
-        high[2] = fresh.high[2]
-    elif over >= ENOUGH * least.over:
-        thin += _thin("over", over, least.over, "cavity_height")
-    else:
-        grown.append(_told("top", fresh.high[2] - high[2], over, least.over, "over"))
-        high[2] = fresh.high[2]
-    if blocks.core_height is not None:
-        low[2] = fresh.low[2]
-    elif under >= ENOUGH * least.under:
-        thin += _thin("under", under, least.under, "core_height")
-    else:
-        grown.append(_told("bottom", low[2] - fresh.low[2], under, least.under, "under"))
-        low[2] = fresh.low[2]
+    for where, end, corner, new, steel, floor in (
+        ("over", "top", high, fresh.high, high[2] - part[2][1], least.over),
+        ("under", "bottom", low, fresh.low, part[2][0] - low[2], least.under),
+    ):
+        key = "cavity_height" if where == "over" else "core_height"
+        if getattr(blocks, key) is None:
+            if steel >= ENOUGH * floor:
+                thin += _thin(where, steel, floor, key)
+                continue
+            grown.append(_told(end, abs(new[2] - corner[2]), steel, floor, where))
+        corner[2] = new[2]
     layout = BlockLayout((low[0], low[1], low[2]), (high[0], high[1], high[2]))
     fits = (
         f"at least {100 * ENOUGH:.0f} % of the least walls of the rules are left"
         if thin
         else "the least walls of the rules fit"
     )
-    why = f"{KEPT}, grown at the {'; at the '.join(grown)}" if grown else f"{KEPT}: {fits}"
+    why = f"{Chooser.KEPT.value}, grown at the {'; at the '.join(grown)}" if grown else f"{Chooser.KEPT.value}: {fits}"
     return layout, Notes(tuple(thin), decisions=(Decision("blocks", f"{size_text(layout)} mm closed", why),))
 
 

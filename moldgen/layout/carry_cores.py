@@ -4,16 +4,13 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import Final
 
 from moldgen.finding import Finding, Notes, Severity
+from moldgen.layout.carry_fits import SAME_HOLE
 from moldgen.layout.kept import MOST_MOVED, REMEDY, KeptItem, Reason, dropped, followed, moved
 from moldgen.layout.round_cores import RoundCore
 from moldgen.layout.view import PartView
 from moldgen.rules.layout_practice import STEEL_BETWEEN_BORES
-
-ON_AXIS: Final = 0.02
-"""mm: a round core stands where an accepted one stood within this: half of what decides on level ground."""
 
 
 @dataclass(frozen=True)
@@ -54,29 +51,28 @@ def match_cores(view: PartView, cores: list[RoundCore], kept: KeptCores) -> tupl
     rest: list[KeptItem] = []
     notes = Notes()
     for item in kept.pins:
-        found = _nearest(cores, item, set(pins), ON_AXIS)
+        found = _nearest(cores, item, set(pins), SAME_HOLE)
         if found is None:
             rest.append(item)
             continue
         pins[found] = item
         notes += followed(item.name, item.shift, view.place(item.at))
     for item in kept.in_block:
-        found = _nearest(cores, item, {*pins, *in_block}, ON_AXIS)
+        found = _nearest(cores, item, {*pins, *in_block}, SAME_HOLE)
         if found is not None:
             in_block.add(found)
     for item in rest:
         taken = {*pins, *in_block}
         found = _nearest(cores, item, taken, MOST_MOVED)
         off = min((gap(c, item) for n, c in enumerate(cores) if n not in taken), default=None)
-        reason = Reason(
-            "gone", "no round core stands there any more, this is the nearest that is free", off, ON_AXIS, "mm"
-        )
         if found is None:
             where = "there is none" if off is None else f"the nearest that is free is {off:.2f} mm away"
             text = f"the round core that it was is gone; {where}"
             notes += dropped(item.name, Reason("gone", text, off, MOST_MOVED, "mm"), view.place(item.at))
             continue
         pins[found] = item
+        text = "no round core stands there any more, this is the nearest that is free"
+        reason = Reason("gone", text, off, SAME_HOLE, "mm")
         notes += moved(item.name, gap(cores[found], item), reason, view.place(item.at))
     return Match(pins, frozenset(in_block)), notes
 

@@ -17,7 +17,7 @@ SHORTEST_KEPT: Final = 8.0
 tilts by a quarter more, and for less than that nobody welds a ring into a bore)."""
 
 SAME_HOLE: Final = 0.02
-"""mm: a pin stands where it stood within this, as round cores do."""
+"""mm: a pin or round core stands where it stood within this (our choice: what the sag of a mesh may make out)."""
 
 LEAST_RATIO, MOST_RATIO, MOST_LEAST = 2.0, 3.0, 12.0
 """Ends of the range of a fit: 2 to 3 diameters, the least of it up to 12 mm (common practice, as the rule says)."""

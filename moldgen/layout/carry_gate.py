@@ -14,13 +14,10 @@ from moldgen.layout.gate_task import Found, Task
 from moldgen.layout.gate_top import top_gate_near
 from moldgen.layout.kept import MOST_MOVED, REMEDY, KeptFeed, KeptGate, Reason, dropped, followed, moved
 from moldgen.model.accepted import SNAP
-from moldgen.model.layout import GateKind, GateLayout
+from moldgen.model.layout import Chooser, GateKind, GateLayout
 from moldgen.model.part import Vector
 from moldgen.rules.filling import round_shear_rate, slot_shear_rate
 from moldgen.rules.practice import SPRUE_TAPER
-
-ROUNDING: Final = SNAP
-"""mm: what lies closer is the same: older accepted layouts have six decimals."""
 
 ON_LINE: Final = 0.05
 """mm: a point this close to the parting line of the mesh lies on it: half the sag of the mesh on round walls."""
@@ -62,9 +59,7 @@ def found_again(gate: GateLayout, kept: KeptGate) -> bool:
     sizes += [abs(now - then) for _, now, then in _feed(gate, kept.feed) if then > 0.0]
     if kept.inward is not None and gate.kind is GateKind.EDGE:
         sizes += [abs(a - b) for a, b in zip(gate.inward[:2], kept.inward, strict=True)]
-    return (
-        gate.kind is kept.kind and max(*sizes, *(abs(a - b) for a, b in zip(gate.at, kept.at, strict=True))) < ROUNDING
-    )
+    return gate.kind is kept.kind and max(*sizes, *(abs(a - b) for a, b in zip(gate.at, kept.at, strict=True))) < SNAP
 
 
 def _feed(gate: GateLayout, feed: KeptFeed) -> list[tuple[str, float, float]]:
@@ -207,7 +202,7 @@ def _kept(task: Task, found: Found, what: str) -> Notes:
     told = (_other_feed(task, found, *one) for one in here)
     return Notes(
         tuple(f for f in told if f is not None),
-        decisions=(Decision("gate", text, f"kept from the accepted layout: {what}"),),
+        decisions=(Decision("gate", text, f"{Chooser.KEPT.value}: {what}"),),
     )
 
 

@@ -12,7 +12,7 @@ from moldgen.layout.balance import resultant
 from moldgen.layout.carry_fits import end_of
 from moldgen.layout.ejection_checks import OFF_CENTRE, steel_beside
 from moldgen.layout.keep_out import STEEL
-from moldgen.layout.kept import MOST_MOVED, Kept, KeptItem, Reason, dropped, followed, moved, still_held
+from moldgen.layout.kept import MOST_MOVED, Kept, KeptItem, Reason, dropped, followed, moved, steps_around, still_held
 from moldgen.layout.pin_kinds import PinKind, Place, of_diameter
 from moldgen.layout.pin_search import (
     HEADS_APART,
@@ -31,9 +31,6 @@ from moldgen.rules.layout_practice import PIN_SLOPE
 
 STEP: Final = 0.25
 """mm: distance of the places tried round one that breaks a rule (our choice)."""
-
-ROUNDING: Final = SNAP
-"""mm: what lies closer is the same place: older accepted layouts have six decimals."""
 
 BETTER: Final = 0.8
 """Added pins are taken when they bring what is passed down to this share of itself (our choice, as in the search)."""
@@ -89,7 +86,7 @@ def _found_again(found: list[Place], items: tuple[KeptItem, ...]) -> list[Place]
         return None
     for place, item in zip(order, items, strict=True):
         off = max(abs(place.x - item.at[0]), abs(place.y - item.at[1]), abs(place.diameter - item.diameter))
-        if off > ROUNDING:
+        if off > SNAP:
             return None
     return [
         replace(p, chooser=Chooser.KEPT, name=i.name, fit_end=i.fit_end, length=i.length)
@@ -179,7 +176,7 @@ def broken(task: Task, at: Vector, kind: PinKind, others: list[Place]) -> Reason
         text = f"would push on a surface that slopes by {disc.slope:.0f} deg"
         return Reason("slope", text, disc.slope, PIN_SLOPE.default, "deg")
     room = task.under.exact_room(spot)
-    if room < kind.room - ROUNDING:
+    if room < kind.room - SNAP:
         left = room - kind.diameter / 2
         text = f"would leave {left:.2f} mm to an edge of the surface that it pushes on"
         return Reason("edge_clearance", text, left, kind.edge, "mm")
@@ -192,7 +189,7 @@ def _crowded(task: Task, place: Place, others: list[Place]) -> Reason | None:
     for other in others:
         gap = float(np.hypot(other.x - place.x, other.y - place.y))
         heads = gap - (place.kind.head_diameter + other.kind.head_diameter) / 2
-        if heads < HEADS_APART - ROUNDING:
+        if heads < HEADS_APART - SNAP:
             whose = other.name or "a pin of the spec"
             return Reason(
                 "too_close",
@@ -202,12 +199,12 @@ def _crowded(task: Task, place: Place, others: list[Place]) -> Reason | None:
                 "mm",
             )
     for code, _, text, value, limit, unit in steel_beside(task.view, place, [], task.bores):
-        if value is None or limit is None or value < limit - ROUNDING:
+        if value is None or limit is None or value < limit - SNAP:
             return Reason(code, text, value, limit, unit)
     if task.view.halves.sides:
         near = side_steel(task, spot, place.kind, np.array([place.disc.high]))
         steel = float(near.steel[0])
-        if steel < STEEL - ROUNDING:
+        if steel < STEEL - SNAP:
             return Reason("side_action", f"would leave {steel:.2f} mm of steel to {near.names[0]}", steel, STEEL, "mm")
     return None
 
@@ -215,12 +212,7 @@ def _crowded(task: Task, place: Place, others: list[Place]) -> Reason | None:
 def _nearest(task: Task, item: KeptItem, others: list[Place]) -> np.ndarray | None:
     """Return the nearest place within `MOST_MOVED` at which a pin keeps all rules, (2,) [mm]."""
     kind, spot = kind_of(task, item.diameter), np.array(item.at[:2])
-    count = int(MOST_MOVED / STEP)
-    steps = STEP * np.arange(-count, count + 1)
-    ways = np.stack(np.meshgrid(steps, steps, indexing="ij"), axis=-1).reshape(-1, 2)
-    far = np.round(np.linalg.norm(ways, axis=1), 6)
-    order = np.lexsort((ways[:, 1], ways[:, 0], far))
-    places = spot + ways[order[far[order] <= MOST_MOVED]]
+    places = spot + steps_around(STEP, MOST_MOVED)
     places = places[task.under.room(places) >= kind.room]
     places = places[clear_of_steel(task, places, kind)] if len(places) else places
     for place in places:

@@ -20,7 +20,7 @@ SPACING: Final = 1.0
 MOST_PLACES: Final = 240
 
 NEAR_STEP: Final = 0.25
-"""mm: distance of the places tried round one that is asked for."""
+"""mm: distance of the places tried round one that is asked for (our choice)."""
 
 ON_LEVEL: Final = 0.01
 """mm: the parting line counts as level within this."""

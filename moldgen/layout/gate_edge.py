@@ -12,6 +12,7 @@ from moldgen.layout.edge_sites import EdgeSites, Need, find_edge_sites
 from moldgen.layout.gate_size import size_edge, wanted_edge
 from moldgen.layout.gate_task import ASIDE, FAR, MOST_WEIGHED, Found, Task
 from moldgen.layout.mouth import open_share
+from moldgen.layout.view import PartView
 from moldgen.model.layout import Chooser, GateKind, GateLayout
 from moldgen.rules.practice import SPRUE_TAPER
 
@@ -33,11 +34,10 @@ NOT_WHOLE: Final = "the mouth of the gate does not wholly open into the part"
 def edge_gate(task: Task) -> Found:
     """Return the best edge gate, with the rules that its place breaks."""
     view = task.view
-    height = float(view.high[2] - view.level)
-    usual, _ = size_edge(task.section, task.resin, task.melt, view.wall, height, None, task.feed)
-    sites = find_edge_sites(view, _need(task, (usual.width, usual.land, usual.runner, usual.foot)))
+    need = _need(task)
+    sites = find_edge_sites(view, need)
     order = _order(task, sites)
-    share = _mouths(task, sites, order[:CHECKED], usual.land + usual.runner)
+    share = _mouths(task, sites, order[:CHECKED], need.land + need.runner)
     whole = np.flatnonzero((share >= WHOLE) & (sites.troubles[order[:CHECKED]] == sites.troubles[order[0]]))
     first = int(whole[0]) if len(whole) else int(np.argmax(share))
     return _made(task, sites, int(order[first]), float(share[first]))
@@ -49,12 +49,9 @@ def edge_gate_near(task: Task, at: np.ndarray, within: float, inward: tuple[floa
     inward : unit vector in plan into the part; None: square to the parting line
     Where no place keeps the rules, the one at the place itself, with the rules that it breaks.
     """
-    view = task.view
-    height = float(view.high[2] - view.level)
-    usual, _ = size_edge(task.section, task.resin, task.melt, view.wall, height, None, task.feed)
-    need = replace(_need(task, (usual.width, usual.land, usual.runner, usual.foot)), inward=inward)
-    sites = find_edge_sites(view, need, at, within)
-    share = _mouths(task, sites, np.arange(len(sites.places)), usual.land + usual.runner)
+    need = replace(_need(task), inward=inward)
+    sites = find_edge_sites(task.view, need, at, within)
+    share = _mouths(task, sites, np.arange(len(sites.places)), need.land + need.runner)
     good = np.flatnonzero((share >= WHOLE) & (sites.troubles == 0))
     choice = int(good[0]) if len(good) else 0
     found = _made(task, sites, choice, float(share[choice]))
@@ -62,8 +59,7 @@ def edge_gate_near(task: Task, at: np.ndarray, within: float, inward: tuple[floa
 
 
 def _made(task: Task, sites: EdgeSites, choice: int, share: float) -> Found:
-    view = task.view
-    height = float(view.high[2] - view.level)
+    view, height = task.view, _depth(task.view)
     room = (float(sites.room[choice, 0]), float(sites.room[choice, 1])) if sites.fullness[choice] > 0.0 else None
     made, notes = size_edge(task.section, task.resin, task.melt, float(sites.wall[choice]), height, room, task.feed)
     end, flow = task.flow_from(sites.places[choice])
@@ -90,14 +86,22 @@ def _made(task: Task, sites: EdgeSites, choice: int, share: float) -> Found:
     return Found(gate, notes, broken, share, end)
 
 
-def _need(task: Task, usual: tuple[float, float, float, float]) -> Need:
-    section = task.section
+def _depth(view: PartView) -> float:
+    """Return how far the nozzle is over the parting plane [mm]."""
+    return float(view.high[2] - view.level)
+
+
+def _need(task: Task) -> Need:
+    """Return what the usual edge gate of the part needs."""
+    section, view = task.section, task.view
+    usual, _ = size_edge(section, task.resin, task.melt, view.wall, _depth(view), feed=task.feed)
 
     def wanted(walls: np.ndarray) -> np.ndarray:
         return wanted_edge(section, task.resin, task.melt, walls, task.feed)
 
     kept = 0.0 if task.feed is None else task.feed.length
-    return Need(*usual, wanted, (section.width is not None, section.depth is not None), task.no_gate, kept)
+    sizes = (usual.width, usual.land, usual.runner, usual.foot)
+    return Need(*sizes, wanted, (section.width is not None, section.depth is not None), task.no_gate, kept)
 
 
 def _order(task: Task, sites: EdgeSites) -> np.ndarray:

@@ -10,6 +10,7 @@ import numpy as np
 
 from moldgen.layout.gate_size import size_pin, size_sprue
 from moldgen.layout.gate_task import ASIDE, MOST_WEIGHED, Found, Task
+from moldgen.layout.kept import steps_around
 from moldgen.layout.top_sites import BESIDE, TopSites, centered, find_top_sites
 from moldgen.model.layout import Chooser, GateKind, GateLayout
 from moldgen.rules.practice import SPRUE_TAPER
@@ -18,7 +19,7 @@ SMALLER: Final = (1.0, 0.75, 0.5)
 """Shares of the usual diameter of a pin gate that are tried, the largest that finds room is taken."""
 
 NEAR_STEP: Final = 0.5
-"""mm: distance of the places tried round one that is asked for."""
+"""mm: distance of the places tried round one that is asked for (our choice)."""
 
 OPEN: Final = 0.999
 """Share of a mouth from which it counts as wholly open."""
@@ -51,11 +52,7 @@ def top_gate_near(task: Task, kind: GateKind, at: np.ndarray, within: float) -> 
 
     Where none does, the one at the place itself, with the rules that it breaks.
     """
-    steps = NEAR_STEP * np.arange(-int(within / NEAR_STEP), int(within / NEAR_STEP) + 1)
-    ways = np.stack(np.meshgrid(steps, steps, indexing="ij"), axis=-1).reshape(-1, 2)
-    far = np.round(np.linalg.norm(ways, axis=1), 6)
-    order = np.lexsort((ways[:, 1], ways[:, 0], far))
-    found = _of_size(task, kind, 1.0, at[:2] + ways[order[far[order] <= within]])
+    found = _of_size(task, kind, 1.0, at[:2] + steps_around(NEAR_STEP, within))
     return replace(found, gate=replace(found.gate, chosen_by=Chooser.KEPT))
 
 

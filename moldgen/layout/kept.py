@@ -5,6 +5,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Final
 
+import numpy as np
+
 from moldgen.finding import Finding, Notes, Point, Severity
 from moldgen.model.layout import GateKind
 from moldgen.model.part import Vector
@@ -95,6 +97,19 @@ class Reason:
     value: float | None = None
     limit: float | None = None
     unit: str = ""
+
+
+def steps_around(step: float, within: float) -> np.ndarray:
+    """Return the steps in plan from a place to those of a grid around it, itself first, then by distance, (k, 2) [mm].
+
+    step : of the grid; within : largest distance from the place [mm]
+    """
+    count = int(within / step)
+    steps = step * np.arange(-count, count + 1)
+    ways = np.stack(np.meshgrid(steps, steps, indexing="ij"), axis=-1).reshape(-1, 2)
+    far = np.round(np.linalg.norm(ways, axis=1), 6)
+    order = np.lexsort((ways[:, 1], ways[:, 0], far))
+    return np.asarray(ways[order[far[order] <= within]])
 
 
 def followed(name: str, shift: Vector, at: Point) -> Notes:

@@ -14,7 +14,7 @@ from moldgen.layout.steel_round import RoundFeature
 from moldgen.layout.steel_snap import ONE_LIP, SnapLip
 
 NEAR: Final = 0.5
-"""mm: a point that means a face lies at most this far from it."""
+"""mm: a point that means a face lies at most this far from it (our choice)."""
 
 ROUND_OFF: Final = 0.1
 """mm: how far a point may lie outside the round hole or pin that it means."""

@@ -19,7 +19,6 @@ from moldgen.layout.view import PartView
 from moldgen.model.layout import Layout
 from moldgen.model.part import MoldFrame, Vector
 from moldgen.model.steel_safe import Fit, SteelSafe
-from moldgen.rules.practice import Practice
 from moldgen.rules.steel_safe import DIRECTION, OTHER_ALLOWANCE, PRESS_ALLOWANCE, SNAP_ALLOWANCE, shrink_doubt
 from moldgen.spec.steel_safe import SteelSafe as SteelSafeSection
 from moldgen.spec.steel_safe import TunedPlace
@@ -231,7 +230,7 @@ def _allowance(
     given = place.allowance if place is not None and place.allowance is not None else section.allowance
     if given is not None:
         return given, "given in steel_safe.allowance"
-    practice = _practice(dimension.fit)
+    practice = _PRACTICE[dimension.fit]
     least = min(resin.shrink_along.low, resin.shrink_across.low)
     most = max(resin.shrink_along.high, resin.shrink_across.high)
     doubt = shrink_doubt(nominal, most - least) / dimension.faces
@@ -242,10 +241,6 @@ def _allowance(
         value = AUTO_SHARE * nominal / dimension.faces
         source = f"a quarter of the dimension: our choice, since {practice.default:g} mm would be much of it"
     return round(value, 2) or round(value, 4), source
-
-
-def _practice(fit: Fit) -> Practice:
-    return _PRACTICE[fit]
 
 
 def _vector(point: np.ndarray) -> Vector:
@@ -295,14 +290,14 @@ def _told(listed: tuple[SteelSafe, ...], dropped: list[SteelSafe], section: Stee
     for one in listed:
         share = one.allowance_mm * one.faces / max(one.nominal_mm, 1e-9)
         if share > LARGEST_SHARE:
-            where = "steel_safe.allowance" if one.given < 0 else f"steel_safe.places[{one.given}].allowance"
+            own = "steel_safe" if section.allowance is None else "steel_safe.allowance"
             findings.append(
                 Finding(
                     "steel_safe.large_allowance",
                     Severity.WARNING,
                     f"{one.feature}, {one.dimension}: {one.allowance_mm * one.faces:.2f} mm of steel in all would be "
                     f"left on {one.nominal_mm:.2f} mm",
-                    where=where if section.allowance is not None or one.given >= 0 else "steel_safe",
+                    where=own if one.given < 0 else f"steel_safe.places[{one.given}].allowance",
                     at=one.places[0],
                     value=round(share, 3),
                     limit=LARGEST_SHARE,
@@ -316,6 +311,6 @@ def _told(listed: tuple[SteelSafe, ...], dropped: list[SteelSafe], section: Stee
     choice = f"{count}; advice only: the steel itself is cut to size"
     more = tuple(f"{d.feature}, {d.dimension} {d.nominal_mm:.2f} mm" for d in dropped)
     why = DIRECTION if listed else "no snap fit, press fit or marked place was found"
-    lines = [_practice(f) for f in dict.fromkeys(one.fit for one in listed)]
+    lines = [_PRACTICE[f] for f in dict.fromkeys(one.fit for one in listed)]
     quantities = tuple(line.line("the steel-safe advice, not the steel") for line in lines)
     return Notes(tuple(findings), (Decision("steel-safe", choice, why, "", more),), quantities)

@@ -37,8 +37,6 @@ NEAR_UNIT: Final = 1e-4
 
 _PRESSURE: Final = Number(Measure.PRESSURE, least=0.0, most=10_000.0)
 
-_COORDINATE: Final = Number(Measure.LENGTH, least=-10_000.0, most=10_000.0)
-
 
 def accepted_file(spec: Path) -> Path:
     """Return where the accepted layout of a spec stands.
