@@ -80,7 +80,7 @@ def coaxial(a: FaceSign, b: FaceSign, tolerance: float = SAME_PLACE) -> bool:
     return tilt <= 2.0 * tolerance and float(np.linalg.norm(offset - float(offset @ axis) * axis)) <= tolerance
 
 
-def form_numbers(signs: Sequence[FaceSign]) -> np.ndarray:
+def _form_numbers(signs: Sequence[FaceSign]) -> np.ndarray:
     """Return what stays the same however a face is moved, as lengths [mm], (n, 9).
 
     Square root of the area, the radii, the reach along three principal axes, the reach of the half angle over the
@@ -89,8 +89,7 @@ def form_numbers(signs: Sequence[FaceSign]) -> np.ndarray:
     """
     rows = []
     for s in signs:
-        xx, yy, zz, xy, xz, yz = s.spread
-        principal = np.linalg.eigvalsh(np.array([[xx, xy, xz], [xy, yy, yz], [xz, yz, zz]]))
+        principal = np.linalg.eigvalsh(np.array(s.spread_rows))
         reach = np.sqrt(np.maximum(principal, 0.0))
         lean = np.radians(s.angle_deg) * s.reach_mm
         rim = float(np.linalg.norm(np.array(s.rim) - np.array(s.center)))
@@ -110,7 +109,7 @@ def same_form(a: Sequence[FaceSign], b: Sequence[FaceSign], tolerance: float = S
         np.array([[_KINDS.index(s.kind), s.side] for s in b]),
     )
     same = np.all(kinds[0][:, None] == kinds[1][None], axis=2)
-    first, second = form_numbers(a), form_numbers(b)
+    first, second = _form_numbers(a), _form_numbers(b)
     for k in range(first.shape[1]):
         same &= np.abs(first[:, None, k] - second[None, :, k]) <= tolerance
     return np.asarray(same)

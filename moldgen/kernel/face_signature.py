@@ -92,10 +92,7 @@ class PartSigns:
 
     def distance(self, number: int, point: Vector) -> float:
         """Return the distance of a point from the faces of one sign [mm], measured on the mesh."""
-        mesh = self.body.mesh
-        own = self._triangles(number)
-        parts = {name: getattr(mesh, name)[own] for name in ("triangles", "face", "normals", "bulge")}
-        return nearest_triangle(replace(mesh, **parts), np.asarray(point, dtype=float))[1]
+        return nearest_triangle(self.body.mesh.only(self._triangles(number)), np.asarray(point, dtype=float))[1]
 
 
 def part_signs(part: Body | TopoDS_Shape) -> PartSigns:

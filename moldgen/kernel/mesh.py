@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import io
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, fields, replace
 from functools import cached_property
 
 import numpy as np
@@ -51,6 +51,11 @@ class SurfaceMesh:
         points = np.asarray(self.vertices[self.triangles])
         points.flags.writeable = False
         return points
+
+    def only(self, chosen: np.ndarray) -> SurfaceMesh:
+        """Return the mesh of some triangles, by their numbers or by (t,) bool; all vertices stay."""
+        own = {name: getattr(self, name)[chosen] for name in ("triangles", "face", "normals", "bulge")}
+        return replace(self, **own)
 
     @cached_property
     def centres(self) -> np.ndarray:

@@ -52,7 +52,7 @@ def depth_from(piece: Body, steel: Body) -> float:
         if estimate[number] <= best + CLOSE_ENOUGH:
             break
         point, reach = points[number], float(estimate[number])
-        around = _some(near, ((low <= point + reach) & (high >= point - reach)).all(axis=1))
+        around = near.only(((low <= point + reach) & (high >= point - reach)).all(axis=1))
         triangle, distance = nearest_triangle(around, point)
         if distance > best:
             best, chosen, face = distance, int(number), int(around.face[triangle])
@@ -76,11 +76,7 @@ def point_inside(piece: Body) -> np.ndarray:
 def _near(mesh: SurfaceMesh, box: tuple[np.ndarray, np.ndarray], reach: float) -> SurfaceMesh:
     """Return the triangles of a mesh whose boxes come within `reach` [mm] of a box."""
     low, high = mesh.corners.min(axis=1), mesh.corners.max(axis=1)
-    return _some(mesh, ((low <= box[1] + reach) & (high >= box[0] - reach)).all(axis=1))
-
-
-def _some(mesh: SurfaceMesh, keep: np.ndarray) -> SurfaceMesh:
-    return SurfaceMesh(mesh.vertices, mesh.triangles[keep], mesh.face[keep], mesh.normals[keep], mesh.bulge[keep])
+    return mesh.only(((low <= box[1] + reach) & (high >= box[0] - reach)).all(axis=1))
 
 
 def _samples(corners: np.ndarray, most: int = MOST_SAMPLES) -> np.ndarray:

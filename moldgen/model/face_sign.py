@@ -66,6 +66,12 @@ class FaceSign:
         """How far the face reaches from its center, roughly: twice the radius of gyration [mm]."""
         return 2.0 * math.sqrt(max(sum(self.spread[:3]), 0.0))
 
+    @property
+    def spread_rows(self) -> Rows:
+        """The spread as the rows of its matrix [mm^2]."""
+        xx, yy, zz, xy, xz, yz = self.spread
+        return (xx, xy, xz), (xy, yy, yz), (xz, yz, zz)
+
     def placed(self, rotation: Rows, translation: Vector) -> FaceSign:
         """Return the same face of the part moved by ``rotation @ point + translation``."""
 
@@ -79,7 +85,7 @@ class FaceSign:
             at=point(self.at),
             rim=point(self.rim),
             axis=turned(rotation, self.axis),
-            spread=_turned_spread(rotation, self.spread),
+            spread=_turned_spread(rotation, self.spread_rows),
             twins=tuple(point(t) for t in self.twins),
         )
 
@@ -175,9 +181,8 @@ def turned(rotation: Rows, way: Vector) -> Vector:
     return x, y, z
 
 
-def _turned_spread(rotation: Rows, spread: Spread) -> Spread:
-    xx, yy, zz, xy, xz, yz = spread
-    half = [turned(rotation, column) for column in ((xx, xy, xz), (xy, yy, yz), (xz, yz, zz))]
+def _turned_spread(rotation: Rows, spread: Rows) -> Spread:
+    half = [turned(rotation, column) for column in spread]
     rows = [turned(rotation, tuple(h[k] for h in half)) for k in range(3)]  # type: ignore[arg-type]
     return rows[0][0], rows[1][1], rows[2][2], rows[0][1], rows[0][2], rows[1][2]
 

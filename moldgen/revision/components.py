@@ -11,6 +11,7 @@ from moldgen.kernel.measure import bounding_box
 from moldgen.model.part import Vector
 from moldgen.model.tool import Role
 from moldgen.revision.items import MOST_MOVED, SAME_PIN
+from moldgen.revision.pairing import nearest_pairs
 from moldgen.revision.placing import Placing
 from moldgen.revision.tool_record import SteelPart, ToolRecord
 
@@ -129,14 +130,9 @@ def _pinned(before: list[Standing], after: list[Standing]) -> list[tuple[Standin
             for n, b in enumerate(after)
             if not alike or a.part.digest == b.part.digest
         ]
-        taken: set[Standing] = set()
-        for gap, m, n in sorted(gaps):
-            one, other = before[m], after[n]
-            if gap <= reach and one not in taken and other not in taken:
-                found.append((one, other))
-                taken |= {one, other}
-        before[:] = [s for s in before if s not in taken]
-        after[:] = [s for s in after if s not in taken]
+        pairs = nearest_pairs(g for g in gaps if g[0] <= reach)
+        found.extend((before[m], after[n]) for m, n in pairs)
+        before[:], after[:] = _left(before, after, pairs)
 
     take(SAME_PIN, alike=False)
     take(float("inf"), alike=True)
@@ -161,11 +157,14 @@ def _built_in(
         for n, b in enumerate(after)
         if np.linalg.norm(middle[a] - middle[b]) < 0.5 * min(size[a], size[b])
     ]
-    found: list[tuple[Standing | None, Standing | None]] = []
-    taken: set[Standing] = set()
-    for _, m, n in sorted(gaps):
-        if before[m] not in taken and after[n] not in taken:
-            found.append((before[m], after[n]))
-            taken |= {before[m], after[n]}
-    rest: list[tuple[Standing | None, Standing | None]] = [(s, None) for s in before if s not in taken]
-    return [*found, *rest, *((None, s) for s in after if s not in taken)]
+    pairs = nearest_pairs(gaps)
+    gone, come = _left(before, after, pairs)
+    return [*((before[m], after[n]) for m, n in pairs), *((s, None) for s in gone), *((None, s) for s in come)]
+
+
+def _left(
+    before: Sequence[Standing], after: Sequence[Standing], pairs: Sequence[tuple[int, int]]
+) -> tuple[list[Standing], list[Standing]]:
+    """Return those that are in no pair."""
+    old, new = {m for m, _ in pairs}, {n for _, n in pairs}
+    return [s for m, s in enumerate(before) if m not in old], [s for n, s in enumerate(after) if n not in new]

@@ -55,14 +55,13 @@ class Faces:
     def of(cls, signs: Sequence[FaceSign]) -> Faces:
         """Return the arrays of some signs."""
         center = np.array([s.center for s in signs]).reshape(-1, 3)
-        xx, yy, zz, xy, xz, yz = np.array([s.spread for s in signs]).reshape(-1, 6).T
         return cls(
             signs,
             center,
             np.array([s.rim for s in signs]).reshape(-1, 3),
             np.array([s.axis for s in signs]).reshape(-1, 3),
             center - np.array([s.at for s in signs]).reshape(-1, 3),
-            np.stack([xx, xy, xz, xy, yy, yz, xz, yz, zz], axis=1).reshape(-1, 3, 3),
+            np.array([s.spread_rows for s in signs]).reshape(-1, 3, 3),
             np.array([s.reach_mm for s in signs]),
             np.sqrt(np.array([s.area_mm2 for s in signs])),
             np.array([s.kind in _SIGNED for s in signs], dtype=bool),

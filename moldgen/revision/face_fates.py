@@ -31,13 +31,11 @@ class MovedFaces:
 class Fates:
     """What became of every face, by the numbers of their signs.
 
-    same : pairs that lie on each other; trimmed_old, trimmed_new : on the same surface, with another boundary
+    Those that stayed, or kept to their surface within another boundary, are in none.
+
     moved : groups; partners : pairs that changed otherwise; gone, added : faces without a partner
     """
 
-    same: list[tuple[int, int]] = field(default_factory=list)
-    trimmed_old: set[int] = field(default_factory=set)
-    trimmed_new: set[int] = field(default_factory=set)
     moved: list[MovedFaces] = field(default_factory=list)
     partners: list[Partner] = field(default_factory=list)
     gone: set[int] = field(default_factory=set)
@@ -54,7 +52,6 @@ def face_fates(laid: Laid) -> Fates:
     old, new = set(range(len(laid.placed))), set(range(len(laid.new.signs)))
     for i, j in zip(*(side.tolist() for side in laid.in_place()), strict=True):
         if i in old and j in new:
-            found.same.append((i, j))
             old.discard(i)
             new.discard(j)
     found.moved = _moved(laid, old, new)
@@ -62,10 +59,8 @@ def face_fates(laid: Laid) -> Fates:
         old -= set(group.old)
         new -= set(group.new)
     pairs = [(i, j) for i in sorted(old) for j in sorted(new) if laid.trimmed(i, j)]
-    found.trimmed_old = {i for i, _ in pairs} | {i for i in sorted(old) if laid.old_lies_on_new(i)}
-    found.trimmed_new = {j for _, j in pairs} | {j for j in sorted(new) if laid.new_lies_on_old(j)}
-    old -= found.trimmed_old
-    new -= found.trimmed_new
+    old -= {i for i, _ in pairs} | {i for i in sorted(old) if laid.old_lies_on_new(i)}
+    new -= {j for _, j in pairs} | {j for j in sorted(new) if laid.new_lies_on_old(j)}
     found.partners = partners(laid.placed, laid.new.signs, sorted(old), sorted(new))
     found.gone = old - {p.old for p in found.partners}
     found.added = new - {p.new for p in found.partners}

@@ -224,8 +224,7 @@ def _has_back(part: PartSigns, a: int, b: int, thick: float) -> bool:
     across = across / np.linalg.norm(across)
     for n in part.links[a] & part.links[b]:
         sign = part.signs[n]
-        xx, yy, zz, xy, xz, yz = sign.spread
-        spread = np.array([[xx, xy, xz], [xy, yy, yz], [xz, yz, zz]])
+        spread = np.array(sign.spread_rows)
         width = float(np.sqrt(max(12.0 * across @ spread @ across, 0.0)))  # of an even strip
         if sign.kind is SurfaceKind.PLANE and abs(float(np.dot(sign.axis, across))) < 0.2 and width <= 1.5 * thick:
             return True

@@ -12,6 +12,7 @@ import numpy as np
 from moldgen.kernel.face_compare import SAME_PLACE, coaxial
 from moldgen.model.face_sign import FaceSign, SurfaceKind
 from moldgen.model.part import Vector, vector
+from moldgen.revision.pairing import nearest_pairs
 
 LARGEST_STEP: Final = 10.0
 """mm: a plane or a round face that moved further is another one (our choice)."""
@@ -49,20 +50,14 @@ _NONE: Final = (0.0, 0.0, 0.0)
 
 def partners(before: Sequence[FaceSign], after: Sequence[FaceSign], old: list[int], new: list[int]) -> list[Partner]:
     """Return the pairs among some old and new faces, the nearest first; each face has one partner at most."""
-    rated = []
+    rated: dict[tuple[int, int], _Rated] = {}
     for i in old:
         for j in new:
             one = _rated(before[i], after[j])
             if one is not None:
-                rated.append((round(one[0], 6), i, j, one))
-    rated.sort(key=lambda r: r[:3])
-    found, used_old, used_new = [], set(), set()
-    for _, i, j, (_, way, shift) in rated:
-        if i not in used_old and j not in used_new:
-            found.append(Partner(i, j, way, shift))
-            used_old.add(i)
-            used_new.add(j)
-    return sorted(found, key=lambda p: p.old)
+                rated[i, j] = one
+    pairs = nearest_pairs((round(cost, 6), i, j) for (i, j), (cost, _, _) in rated.items())
+    return [Partner(i, j, *rated[i, j][1:]) for i, j in sorted(pairs)]
 
 
 def _rated(a: FaceSign, b: FaceSign) -> _Rated | None:

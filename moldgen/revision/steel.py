@@ -14,7 +14,7 @@ from moldgen.kernel.measure import bounding_box
 from moldgen.kernel.piece_measure import depth_from, point_inside
 from moldgen.kernel.place import moved, turned
 from moldgen.kernel.solid_difference import DifferentPiece, SolidDifference, fine_body, solid_difference
-from moldgen.model.part import UPRIGHT, Vector, vector
+from moldgen.model.part import UPRIGHT, Box, Vector, vector
 from moldgen.model.revision import ComponentChange, Fate, SteelPiece, Work
 from moldgen.model.tool import Role
 from moldgen.revision.causes import Causes
@@ -175,19 +175,13 @@ def _clip(
     if match.new is None or match.new.role not in BLOCKS:
         return None, ""
     if not placing.square:
-        return _clip_turned(match.new.role.value, tools, placing)
+        return _clip_turned(match.new.role, tools, placing)
     (old_low, old_high), (low, high) = (np.array(b) for b in (placing.box(tools[0].block), tools[1].block))
-    if match.new.role.value == "cavity":  # the height of each half is its own
-        axes = np.array([True, True, False]), np.array([True, True, True])
-    else:
-        axes = np.array([True, True, True]), np.array([True, True, False])
-    apart_low, apart_high = (np.abs(low - old_low) > 1e-6) & axes[0], (np.abs(high - old_high) > 1e-6) & axes[1]
-    if not apart_low.any() and not apart_high.any():
+    (clip_low, clip_high), apart = _inside_both(match.new.role, placing.box(tools[0].block), tools[1].block)
+    if not apart.any():
         return None, ""
-    clip_low = np.where(apart_low, np.maximum(low, old_low) + OFF_SIDE, -np.inf)
-    clip_high = np.where(apart_high, np.minimum(high, old_high) - OFF_SIDE, np.inf)
     grown = (high - low) - (old_high - old_low)
-    if (np.where(apart_low | apart_high, grown, 0.0) > STANDS_STILL).any():
+    if (np.where(apart, grown, 0.0) > STANDS_STILL).any():
         was, now = (" x ".join(f"{v:g}" for v in np.round(b - a, 3)) for a, b in ((old_low, old_high), (low, high)))
         note = f"{MUST_GROW} from {was} to {now} mm, unless the spec keeps its size (blocks)"
     elif (grown < -STANDS_STILL).any():
@@ -198,8 +192,21 @@ def _clip(
     return (clip_low, clip_high), note
 
 
+def _inside_both(role: Role, old: Box, new: Box) -> tuple[tuple[np.ndarray, np.ndarray], np.ndarray]:
+    """Return the box just inside the sides of both blocks, and along which axes it bounds, (3,) bool.
+
+    A side in one plane does not bound, and none where the halves meet: there each half has its own steel.
+    """
+    (old_low, old_high), (low, high) = (np.array(b) for b in (old, new))
+    outer_low, outer_high = np.array([True, True, role is Role.CORE]), np.array([True, True, role is Role.CAVITY])
+    apart_low, apart_high = (np.abs(low - old_low) > 1e-6) & outer_low, (np.abs(high - old_high) > 1e-6) & outer_high
+    clip_low = np.where(apart_low, np.maximum(low, old_low) + OFF_SIDE, -np.inf)
+    clip_high = np.where(apart_high, np.minimum(high, old_high) - OFF_SIDE, np.inf)
+    return (clip_low, clip_high), apart_low | apart_high
+
+
 def _clip_turned(
-    role: str, tools: tuple[ToolRecord, ToolRecord], placing: Placing
+    role: Role, tools: tuple[ToolRecord, ToolRecord], placing: Placing
 ) -> tuple[tuple[np.ndarray, np.ndarray] | None, str]:
     """Return an upright box that both blocks share although one is turned to the other, and what to say of that."""
     by = f"the blocks stand turned to each other by {turned_by_deg(placing):.1f} deg"
@@ -209,10 +216,8 @@ def _clip_turned(
     found = shared_upright(old, new, placing, (vector(low), vector(high)))
     if found is None:
         return None, f"{by}: compared with their outsides"
-    floor, roof = placing.box(old)[0][2], placing.box(old)[1][2]
-    bottom = max(floor, new[0][2]) + OFF_SIDE if role == "core" and abs(floor - new[0][2]) > 1e-6 else -np.inf
-    top = min(roof, new[1][2]) - OFF_SIDE if role == "cavity" and abs(roof - new[1][2]) > 1e-6 else np.inf
-    box = np.array([*(found[0] + OFF_SIDE), bottom]), np.array([*(found[1] - OFF_SIDE), top])
+    (bottom, top), _ = _inside_both(role, placing.box(old), new)
+    box = np.array([*(found[0] + OFF_SIDE), bottom[2]]), np.array([*(found[1] - OFF_SIDE), top[2]])
     return box, f"{by}: compared inside the box that both share"
 
 
