@@ -6,7 +6,7 @@ import re
 from collections.abc import Iterator, Sequence
 
 from moldgen.flow.job import Cell, Table
-from moldgen.model.revision import Comparison, Fate, Work
+from moldgen.model.revision import Comparison, Fate
 from moldgen.output import compare_words as words
 
 MOST_ROWS = 30
@@ -39,7 +39,6 @@ def compare_tables(comparison: Comparison) -> tuple[Table, ...]:
 
 
 def _components(comparison: Comparison) -> Table:
-    changed = words.by_fate(comparison, *(fate for fate in Fate if fate is not Fate.UNCHANGED))
     rows = [
         (
             change.fate.value,
@@ -48,7 +47,7 @@ def _components(comparison: Comparison) -> Table:
             _volume(change.cut_mm3),
             change.note,
         )
-        for change in changed
+        for change in words.changed(comparison)
     ]
     unchanged = sum(c.fate is Fate.UNCHANGED for c in comparison.components)
     title = f"components, {unchanged} unchanged ones left out" if unchanged else "components"
@@ -57,9 +56,7 @@ def _components(comparison: Comparison) -> Table:
 
 def _steel(comparison: Comparison) -> Table:
     pieces = [
-        piece
-        for change in words.by_fate(comparison, Fate.WELD, Fate.CUT)
-        for piece in sorted(change.pieces, key=lambda p: (p.work is not Work.WELD, p.number))
+        piece for change in words.by_fate(comparison, Fate.WELD, Fate.CUT) for piece in words.pieces_in_order(change)
     ]
     rows = [
         (
@@ -88,7 +85,7 @@ def _items(comparison: Comparison) -> Table:
         for item in comparison.items
     ]
     columns = ("what", "was at x, y, z (mold)", "is at x, y, z (mold)", "moved [mm]", "size")
-    return _table("pins, gates, lines and plates that changed", columns, rows)
+    return _table("pins, gate and block that changed", columns, rows)
 
 
 def _numbers(comparison: Comparison) -> Table:

@@ -154,7 +154,7 @@ class ComponentChange:
 
 @dataclass(frozen=True)
 class ItemChange:
-    """A pin, a gate, a plate or a line that moved, changed its size, came or went.
+    """A pin, a gate or the block that moved, changed its size, came or went.
 
     kind : "ejector pin", "core pin", "gate", ...; was_at, now_at : in the mold, None where there is none
     was, now : sizes for the reader ("d 3 mm")

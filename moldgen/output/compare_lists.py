@@ -1,4 +1,4 @@
-"""The lists at the end of `compare.html`: findings, pins and plates, numbers, and the part itself."""
+"""The lists at the end of `compare.html`: findings, pins, gate and block, numbers, and the part itself."""
 
 from __future__ import annotations
 
@@ -24,7 +24,7 @@ def findings_section(findings: Sequence[Finding]) -> Markup:
 
 
 def item_section(items: Sequence[ItemChange]) -> Markup:
-    """Return the table of pins, gates, lines and plates that changed."""
+    """Return the table of pins, gate and block that changed."""
     rows = [
         (
             item.kind,
@@ -39,7 +39,7 @@ def item_section(items: Sequence[ItemChange]) -> Markup:
         for item in items
     ]
     columns = ("kind", "name", "was at (mold)", "is at (mold)", "moved [mm]", "was", "is", "note")
-    return _section("Pins, gates, lines and plates", columns, rows, (4,), "None of them changed.")
+    return _section("Pins, gate and block", columns, rows, (4,), "None of them changed.")
 
 
 def number_section(numbers: Sequence[NumberChange]) -> Markup:

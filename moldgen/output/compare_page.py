@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from pathlib import Path
 
-from moldgen.model.revision import Comparison, ComponentChange, Fate, SteelPiece, Work
+from moldgen.model.revision import Comparison, ComponentChange, Fate, SteelPiece
 from moldgen.output import compare_html as html
 from moldgen.output import compare_words as words
 from moldgen.output.compare_html import Markup, element
@@ -69,7 +69,7 @@ def _head(comparison: Comparison) -> Markup:
 
 def _summary(comparison: Comparison, anchors: dict[int, str]) -> Markup:
     """Return one row for each component that does not stay as it is."""
-    changed = words.by_fate(comparison, *(fate for fate in Fate if fate is not Fate.UNCHANGED))
+    changed = words.changed(comparison)
     heading = element("h2", "What becomes of the steel")
     if not changed:
         return html.lines([heading, element("p", "No component changes.")])
@@ -102,16 +102,15 @@ def _component(change: ComponentChange, anchor: str, pictures: DrawnComparison, 
             element("p", "; ".join(filter(None, facts))),
             *figures,
             element("p", *_spaced(legend), class_="quiet") if figures else Markup(),
-            _pieces(change.pieces, folder),
+            _pieces(words.pieces_in_order(change), folder),
         ]
     )
 
 
 def _pieces(pieces: Sequence[SteelPiece], folder: Path) -> Markup:
-    """Return the table of pieces, those to weld first."""
+    """Return the table of pieces, in their order."""
     if not pieces:
         return element("p", "No piece of steel is listed.", class_="quiet")
-    order = sorted(pieces, key=lambda p: (p.work is not Work.WELD, p.number))
     rows = [
         (
             _tag(p.work.value, words.piece_label(p)),
@@ -122,7 +121,7 @@ def _pieces(pieces: Sequence[SteelPiece], folder: Path) -> Markup:
             p.cause,
             html.file_link(folder, p.file) if p.file else NO_FILE,
         )
-        for p in order
+        for p in pieces
     ]
     columns = (
         "piece",

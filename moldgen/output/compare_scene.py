@@ -48,19 +48,6 @@ class Facets(Protocol):
 
 
 @dataclass(frozen=True)
-class PlainFacets:
-    """A mesh that knows no faces, such as the result of a mesh boolean: each triangle is a face of its own."""
-
-    vertices: Points
-    triangles: Indices
-
-    @property
-    def face(self) -> Indices:
-        """Return one face for each triangle."""
-        return np.arange(len(self.triangles))
-
-
-@dataclass(frozen=True)
 class ComparePicture:
     """What is drawn of one component, in the mold frame of the new tool [mm].
 

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from moldgen.output.picture_geometry import View, look_from
+from moldgen.output.picture_geometry import View, area_normals, look_from
 from moldgen.output.scene import Points, SceneBody
 
 SAMPLES = 96
@@ -130,7 +130,7 @@ def _sample(pieces: Sequence[SceneBody]) -> _Samples:
     points, normals, owner = [], [], []
     for k, piece in enumerate(pieces):
         corners = piece.vertices[piece.triangles]
-        across = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
+        across = area_normals(piece.vertices, piece.triangles)
         length = np.linalg.norm(across, axis=1)
         reached = np.cumsum(length)
         chosen = np.searchsorted(reached, (np.arange(each) + 0.5) / each * reached[-1])
@@ -141,9 +141,7 @@ def _sample(pieces: Sequence[SceneBody]) -> _Samples:
 
 
 def _areas(piece: SceneBody) -> Points:
-    corners = piece.vertices[piece.triangles]
-    across = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
-    return np.asarray(np.linalg.norm(across, axis=1) / 2.0)
+    return np.asarray(np.linalg.norm(area_normals(piece.vertices, piece.triangles), axis=1) / 2.0)
 
 
 def _anchor(samples: _Samples, opened: np.ndarray, piece: int) -> Points:

@@ -92,6 +92,16 @@ def by_fate(comparison: Comparison, *fates: Fate) -> list[ComponentChange]:
     return sorted(chosen, key=lambda c: (order[c.fate], -c.weld_mm3, -c.cut_mm3, c.new or c.old, c.old))
 
 
+def changed(comparison: Comparison) -> list[ComponentChange]:
+    """Return the components that do not stay as they are, as `by_fate` orders them."""
+    return by_fate(comparison, *(fate for fate in Fate if fate is not Fate.UNCHANGED))
+
+
+def pieces_in_order(change: ComponentChange) -> list[SteelPiece]:
+    """Return the pieces of a component, those to weld first."""
+    return sorted(change.pieces, key=lambda p: (p.work is not Work.WELD, p.number))
+
+
 def component_name(change: ComponentChange) -> str:
     """Return the name of a component: that of the new tool, and the old one where it was another."""
     if change.old and change.new and change.old != change.new:
@@ -163,7 +173,7 @@ def distance(was: Vector | None, now: Vector | None) -> float | None:
 
 
 def item_move(item: ItemChange) -> str:
-    """Return what happened to the place of a pin, gate, line or plate, in a word or with its way [mm]."""
+    """Return what happened to the place of a pin, gate or block, in a word or with its way [mm]."""
     way = distance(item.was_at, item.now_at)
     if way is not None:
         return f"{way:.3f}" if way > 0.0 else "0"

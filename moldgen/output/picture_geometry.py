@@ -66,7 +66,7 @@ def shade(body: SceneBody) -> Shaded:
     span = len(body.vertices) + 1
     keys, first, corner = np.unique(corner_face * span + welded[corner_vertex], return_index=True, return_inverse=True)
     corner = corner.reshape(-1)
-    flat = _unit(_area_normals(body.vertices, body.triangles))
+    flat = _unit(area_normals(body.vertices, body.triangles))
     weighted = (flat[:, None, :] * _corner_angles(body.vertices, body.triangles)[:, :, None]).reshape(-1, 3)
     normals = _unit(np.stack([np.bincount(corner, weighted[:, k], len(keys)) for k in range(3)], axis=1))
     return Shaded(body.vertices[corner_vertex[first]], normals, corner.reshape(-1, 3), corner_face[first])
@@ -93,7 +93,7 @@ def outline(body: SceneBody, view: View) -> Points:
     """
     points, welded = body.welded
     triangles = welded[body.triangles]
-    faces_viewer = _area_normals(points, triangles) @ view.toward > 0.0
+    faces_viewer = area_normals(points, triangles) @ view.toward > 0.0
     edges = np.sort(triangles[:, [0, 1, 1, 2, 2, 0]].reshape(-1, 2), axis=1)
     owner = np.repeat(np.arange(len(triangles)), 3)
     order = np.lexsort((owner, edges[:, 1], edges[:, 0]))
@@ -110,7 +110,7 @@ def sharp_edges(points: Points, triangles: Indices, face: Indices) -> tuple[Poin
 
     points : (n, 3), shared by triangles that touch; triangles : (m, 3); face : (m,) what each triangle belongs to
     """
-    normal = _area_normals(points, triangles)
+    normal = area_normals(points, triangles)
     normal /= np.maximum(np.linalg.norm(normal, axis=1), 1e-300)[:, None]
     ends = np.sort(np.vstack([triangles[:, [0, 1]], triangles[:, [1, 2]], triangles[:, [2, 0]]]), axis=1)
     owner = np.tile(np.arange(len(triangles)), 3)
@@ -141,7 +141,8 @@ def _cross(p: Points, q: Points) -> Points:
     return np.asarray(p[:, 0] * q[:, 1] - p[:, 1] * q[:, 0])
 
 
-def _area_normals(points: Points, triangles: Indices) -> Points:
+def area_normals(points: Points, triangles: Indices) -> Points:
+    """Return the normal of each triangle, as long as twice its area, (m, 3) [mm^2]."""
     a, b, c = (points[triangles[:, k]] for k in range(3))
     return np.cross(b - a, c - a)
 

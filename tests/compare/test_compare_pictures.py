@@ -19,15 +19,27 @@ from moldgen.output.compare_pictures import MOST_DRAWN, DrawnComparison, draw_co
 from moldgen.output.compare_scene import (
     MOST_CLOSE,
     ComparePicture,
-    PlainFacets,
     compare_picture,
     read_pictures,
     write_pictures,
 )
 from moldgen.output.compare_view import choose_sight
-from moldgen.output.scene import SceneBody
+from moldgen.output.scene import Indices, Points, SceneBody
 
 LOW, HIGH = (-30.0, -20.0, -20.0), (30.0, 20.0, 0.0)
+
+
+@dataclasses.dataclass(frozen=True)
+class PlainFacets:
+    """A mesh that knows no faces: each triangle is a face of its own."""
+
+    vertices: Points
+    triangles: Indices
+
+    @property
+    def face(self) -> Indices:
+        """Return one face for each triangle."""
+        return np.arange(len(self.triangles))
 
 
 def facets(low, high) -> PlainFacets:

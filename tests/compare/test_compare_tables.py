@@ -32,7 +32,7 @@ def test_tables_list_what_changed_and_nothing_else() -> None:
         ("core", "cut 1", 33.5),
         ("gate insert", "cut 1", 4.0),
     ]
-    items = tables["pins, gates, lines and plates that changed"].rows
+    items = tables["pins, gate and block that changed"].rows
     assert items[0] == ("ejector pin 3", "30.00, 18.00, -30.00", "28.00, 18.00, -30.00", "2.000", "d 3 mm")
     assert items[2][-1] == "0.8 x 2 mm -> 0.9 x 2 mm"
     assert tables["numbers that changed"].rows[0] == ("clamp force [kN]", 210.0, 214.2, "+2.0 %", "the rim grew")
