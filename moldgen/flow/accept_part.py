@@ -19,7 +19,7 @@ from moldgen.kernel.face_signature import PartSigns, part_signs
 from moldgen.model.accepted import Accepted, AcceptedBlocks, AcceptedCore, AcceptedGate, AcceptedPin, AcceptedSide
 from moldgen.model.face_sign import FaceSign, SurfaceKind
 from moldgen.model.layout import Chooser, GateKind
-from moldgen.model.part import MoldFrame, Vector
+from moldgen.model.part import MoldFrame, Vector, vector
 from moldgen.model.side_action import SideKind
 from moldgen.spec.load import LoadedSpec
 
@@ -60,17 +60,16 @@ class _Places:
         rows = tuple(_finite(row, 3) for row in pull["part_to_mold_rotation"])
         factors = _finite([shrink[axis] for axis in "xyz"], 3)
         self.frame = MoldFrame(factors, _finite(shrink["fixed_point_mm"], 3), rows)  # type: ignore[arg-type]
-        self.pull = _finite(pull["direction"], 3)
+        self.pull = vector(_finite(pull["direction"], 3))
         self._signs = signs
 
     def part(self, point: Any) -> Vector:
         """Return a mold point in part coordinates [mm]."""
-        return self.frame.to_part(_finite(point, 3))  # type: ignore[arg-type]
+        return self.frame.to_part(vector(_finite(point, 3)))
 
     def height(self, level: float) -> float:
         """Return a height of the mold as a part coordinate along the pull [mm]."""
-        base, unit = (self.frame.to_mold(tuple(c * h for c in self.pull))[2] for h in (0.0, 1.0))  # type: ignore[arg-type]
-        return (level - base) / (unit - base)
+        return self.frame.part_height(self.pull, level)
 
     def face(self, point: Any) -> FaceSign:
         """Return the face nearest to a mold point."""
@@ -153,7 +152,7 @@ def _gate(gate: dict[str, Any], places: _Places) -> AcceptedGate:
         return found
     keys = ("runner_diameter", "runner_length", "sprue_foot_diameter")
     runner, length, foot = _finite([gate[key] for key in keys], 3)
-    inward = turned_back(places.frame, _finite(gate["inward"], 3))  # type: ignore[arg-type]
+    inward = turned_back(places.frame, vector(_finite(gate["inward"], 3)))
     return replace(found, runner_diameter=runner, runner_length=length, sprue_foot=foot, inward=inward)
 
 

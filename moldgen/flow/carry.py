@@ -99,7 +99,7 @@ def _moved(at: Vector, shift: Vector) -> Vector:
 def _item(item: AcceptedPin | AcceptedCore, accepted: Accepted, frame: MoldFrame, find: _Find) -> KeptItem:
     shift, gone = find(item.feature, item.at)
     at, shift = _placed(item.at, shift, frame)
-    end = None if item.fit_end is None else _height(frame, accepted.pull, item.fit_end)
+    end = None if item.fit_end is None else frame.mold_height(accepted.pull, item.fit_end)
     length = item.length if isinstance(item, AcceptedPin) else 0.0
     return KeptItem(item.name, at, item.diameter, shift, gone, end, length)
 
@@ -151,13 +151,7 @@ def accepted_level(reviewed: Reviewed) -> float | None:
     accepted = reviewed.accepted
     if accepted is None or reviewed.loaded.spec.parting.height is not None or not _same_pull(reviewed, accepted):
         return None
-    return _height(reviewed.frame, accepted.pull, accepted.parting_height)
-
-
-def _height(frame: MoldFrame, pull: Vector, height: float) -> float:
-    """Return the mold z of a part coordinate along the pull."""
-    base, unit = (frame.to_mold(tuple(c * h for c in pull))[2] for h in (0.0, 1.0))  # type: ignore[arg-type]
-    return base + height * (unit - base)
+    return reviewed.frame.mold_height(accepted.pull, accepted.parting_height)
 
 
 def at_accepted_level(reviewed: Reviewed, free: Parted, part_at: Callable[[float], Parted]) -> tuple[Parted, Notes]:
@@ -198,7 +192,7 @@ def accepted_block(reviewed: Reviewed) -> KeptBlock | None:
         return None
     block = accepted.blocks
     x, y, _ = reviewed.frame.to_mold(block.at)
-    z = _height(reviewed.frame, accepted.pull, accepted.parting_height)
+    z = reviewed.frame.mold_height(accepted.pull, accepted.parting_height)
     return KeptBlock((x, y, z), block.length, block.width, block.cavity_height, block.core_height)
 
 

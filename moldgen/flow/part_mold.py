@@ -356,8 +356,8 @@ def _filled(reviewed: Reviewed, before: Prepared, pieces: tuple[TrapPiece, ...])
 
 def _mold_level(reviewed: Reviewed, height: float, body: Body) -> float:
     """Return the mold z of a part coordinate along the pull, which must lie on the part."""
-    base, unit = (reviewed.frame.to_mold(tuple(c * h for c in reviewed.pull.direction))[2] for h in (0.0, 1.0))  # type: ignore[arg-type]
-    low, high = ((float(corner[2]) - base) / (unit - base) for corner in body.box)
+    frame, pull = reviewed.frame, reviewed.pull.direction
+    low, high = (frame.part_height(pull, float(corner[2])) for corner in body.box)
     if not low - ON_PLANE <= height <= high + ON_PLANE:
         raise SpecError(
             f"the parting height {height:g} mm does not lie on the part, which reaches from {low:g} to {high:g} mm "
@@ -365,4 +365,4 @@ def _mold_level(reviewed: Reviewed, height: float, body: Body) -> float:
             where=reviewed.loaded.locate("parting.height"),
             remedy="give a height between these, or leave it out",
         )
-    return base + height * (unit - base)
+    return frame.mold_height(pull, height)

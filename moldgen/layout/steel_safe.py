@@ -17,7 +17,7 @@ from moldgen.layout.steel_round import RoundFeature, holes_in_bosses, round_feat
 from moldgen.layout.steel_snap import SnapLip, snap_lips
 from moldgen.layout.view import PartView
 from moldgen.model.layout import Layout
-from moldgen.model.part import MoldFrame, Vector
+from moldgen.model.part import MoldFrame, vector
 from moldgen.model.steel_safe import Fit, SteelSafe
 from moldgen.rules.steel_safe import DIRECTION, OTHER_ALLOWANCE, PRESS_ALLOWANCE, SNAP_ALLOWANCE, shrink_doubt
 from moldgen.spec.steel_safe import SteelSafe as SteelSafeSection
@@ -77,7 +77,7 @@ def steel_safe_advice(
     lips = snap_lips(part, view.halves) if section.find == "auto" or section.places else []
     given, notes = _given(part, rounds, lips, section, frame)
     found = _found(part, rounds, lips) if section.find == "auto" else []
-    asked = [_advice(d, section, resin, frame, number, section.places[number]) for d, number in given]
+    asked = [_advice(d, section, resin, frame, number) for d, number in given]
     own = [_advice(d, section, resin, frame) for d in found]
     own = [one for one in own if not any(_same_place(one, other) for other in asked)]
     folded = _folded(own)
@@ -195,13 +195,11 @@ def _advice(
     resin: Resin,
     frame: MoldFrame,
     number: int = -1,
-    place: TunedPlace | None = None,
 ) -> SteelSafe:
-    one, other = (frame.to_part(_vector(p)) for p in (dimension.ends.one, dimension.ends.other))
+    """Return the advice for a dimension. number : of its entry in `steel_safe.places`, -1 if moldgen found it."""
+    one, other = (frame.to_part(vector(p)) for p in (dimension.ends.one, dimension.ends.other))
     nominal = float(np.linalg.norm(np.subtract(one, other)))
-    allowance, source = _allowance(dimension, nominal, section, resin, place)
-    if place is not None and place.allowance is not None:
-        source = f"given in steel_safe.places[{number}].allowance"
+    allowance, source = _allowance(dimension, nominal, section, resin, number)
     change = allowance * dimension.faces * (1.0 if dimension.larger else -1.0)
     last = dimension.ends.length
     words = dimension.words.replace("{a}", f"{allowance:.2f}").replace("{t}", f"{2 * allowance:.2f}")
@@ -209,7 +207,7 @@ def _advice(
         fit=dimension.fit,
         feature=dimension.feature,
         dimension=dimension.name,
-        places=(_rounded(frame.to_part(_vector(dimension.place))),),
+        places=(vector(round(v, 3) for v in frame.to_part(vector(dimension.place))),),
         formed_by=dimension.formers,
         nominal_mm=round(nominal, 4),
         allowance_mm=allowance,
@@ -224,12 +222,14 @@ def _advice(
 
 
 def _allowance(
-    dimension: _Dimension, nominal: float, section: SteelSafeSection, resin: Resin, place: TunedPlace | None
+    dimension: _Dimension, nominal: float, section: SteelSafeSection, resin: Resin, number: int
 ) -> tuple[float, str]:
     """Return the steel to leave on each face [mm], and where the figure comes from."""
-    given = place.allowance if place is not None and place.allowance is not None else section.allowance
-    if given is not None:
-        return given, "given in steel_safe.allowance"
+    own = section.places[number].allowance if number >= 0 else None
+    if own is not None:
+        return own, f"given in steel_safe.places[{number}].allowance"
+    if section.allowance is not None:
+        return section.allowance, "given in steel_safe.allowance"
     practice = _PRACTICE[dimension.fit]
     least = min(resin.shrink_along.low, resin.shrink_across.low)
     most = max(resin.shrink_along.high, resin.shrink_across.high)
@@ -241,16 +241,6 @@ def _allowance(
         value = AUTO_SHARE * nominal / dimension.faces
         source = f"a quarter of the dimension: our choice, since {practice.default:g} mm would be much of it"
     return round(value, 2) or round(value, 4), source
-
-
-def _vector(point: np.ndarray) -> Vector:
-    x, y, z = (float(v) for v in point)
-    return (x, y, z)
-
-
-def _rounded(point: Vector) -> Vector:
-    x, y, z = (round(v, 3) + 0.0 for v in point)
-    return (x, y, z)
 
 
 def _same_place(one: SteelSafe, other: SteelSafe) -> bool:

@@ -87,6 +87,20 @@ class MoldFrame:
         scaled = _apply(columns, point)
         return tuple(f + (p - f) / k for p, f, k in zip(scaled, self.fixed_point, self.factors, strict=True))  # type: ignore[return-value]
 
+    def mold_height(self, pull: Vector, height: float) -> float:
+        """Return the mold z [mm] of a part coordinate [mm] along the pull, a unit vector turned to +z here."""
+        base, unit = self._heights(pull)
+        return base + height * (unit - base)
+
+    def part_height(self, pull: Vector, level: float) -> float:
+        """Return the part coordinate along the pull [mm] of a mold z [mm]."""
+        base, unit = self._heights(pull)
+        return (level - base) / (unit - base)
+
+    def _heights(self, pull: Vector) -> tuple[float, float]:
+        """Return the mold z of the part coordinates 0 and 1 mm along the pull."""
+        return self.to_mold((0.0, 0.0, 0.0))[2], self.to_mold(pull)[2]
+
 
 def _apply(rows: Any, point: Any) -> Vector:
     return tuple(sum(a * b for a, b in zip(row, point, strict=True)) for row in rows)  # type: ignore[return-value]
