@@ -18,6 +18,7 @@ class Fate(StrEnum):
 
     WELD = "weld or new insert"  # steel is missing, whether or not some must also go
     CUT = "cut"  # steel must go, none is missing: steel-safe
+    NOT_COMPARED = "not compared"  # the kernel could not: nothing is known of it
     NEW = "new component"
     GONE = "no longer used"
     MOVED = "moved"  # the same component at another place
@@ -195,5 +196,5 @@ class Comparison:
 
     @property
     def steel_safe(self) -> bool:
-        """True when nothing must be welded and no component is new: cutting is enough."""
-        return not any(c.fate in (Fate.WELD, Fate.NEW) for c in self.components)
+        """True when nothing must be welded, no component is new and all were compared: cutting is enough."""
+        return not any(c.fate in (Fate.WELD, Fate.NEW, Fate.NOT_COMPARED) for c in self.components)

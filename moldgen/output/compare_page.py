@@ -141,6 +141,7 @@ def _pieces(pieces: Sequence[SteelPiece], folder: Path) -> Markup:
 def _others(comparison: Comparison) -> Markup:
     """Return the lists of components on whose steel nothing is done."""
     titles = {
+        Fate.NOT_COMPARED: "Not compared: nothing is known of these",
         Fate.NEW: "New components",
         Fate.GONE: "No longer used",
         Fate.MOVED: "Moved, steel unchanged",

@@ -61,7 +61,7 @@ def compare_steel(
             found.append(_compared(match, (old, new), placing, causes))
         except KernelError as error:
             findings.append(_not_compared(match, error))
-            found.append(_whole(match, Fate.NEW, f"could not be compared: {error.what}"))
+            found.append(_whole(match, Fate.NOT_COMPARED, error.what))
     return found, tuple(findings)
 
 

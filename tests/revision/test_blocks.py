@@ -9,13 +9,16 @@ import pytest
 from OCP.BRepPrimAPI import BRepPrimAPI_MakeBox
 from OCP.gp import gp_Pnt
 
+from moldgen.errors import KernelError
 from moldgen.model.part import UPRIGHT, MoldFrame
-from moldgen.model.revision import Fate
+from moldgen.model.revision import Comparison, Fate
 from moldgen.model.tool import Role
+from moldgen.output.compare_words import steel_words, verdict
 from moldgen.revision.causes import Causes
 from moldgen.revision.placing import Placing
 from moldgen.revision.steel import compare_steel
 from moldgen.revision.tool_record import SteelPart, ToolRecord
+from tests.helpers.comparisons import AS_DRAWN
 from tests.kernel_io.test_step_read import write_raw
 
 FRAME = MoldFrame((1.0, 1.0, 1.0), (0.0, 0.0, 0.0), UPRIGHT)
@@ -52,3 +55,20 @@ def test_a_block_that_must_grow_is_new_though_its_form_stays(
     assert core.fate is fate
     assert core.note.startswith(words)
     assert bool(core.note) is bool(words)
+
+
+def test_what_the_kernel_cannot_compare_is_called_so_and_is_never_steel_safe(
+    tool_with: Any, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def give_up(*_: object) -> None:
+        raise KernelError("the kernel did not end within 20 s")
+
+    monkeypatch.setattr("moldgen.revision.steel.solid_difference", give_up)
+    found, (finding,) = compare_steel(tool_with(80.0), tool_with(100.0), Placing(), Causes(FRAME, (), ()))
+    changes = tuple(c.change for c in found)
+    assert [(c.fate, c.note) for c in changes] == [(Fate.NOT_COMPARED, "the kernel did not end within 20 s")]
+    assert finding.code == "compare.not_compared"
+    compared = Comparison("cap", "cap", AS_DRAWN, (), changes, (), ())
+    assert not compared.steel_safe
+    assert verdict(compared) == "1 component could not be compared."
+    assert steel_words(compared) == "Not known to be steel-safe: not every component could be compared."
